@@ -1,0 +1,11 @@
+// One inverter fed by itself, OR-ed into the tick.
+// check: --ratio 2
+// verdict: refuted
+// settling: refuted
+module inverter_loop (input clk, output tick);
+  reg half;
+  wire spin;
+  always @(posedge clk) half <= ~half;
+  assign spin = ~spin;
+  assign tick = half | spin;
+endmodule

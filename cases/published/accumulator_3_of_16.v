@@ -1,0 +1,28 @@
+// Four-bit accumulator with addend 3 (published: 10 MHz to 1.875 MHz, that is 16/3; gaps of 5 and 6 input
+// cycles): no ratio holds from gap to gap, though every carry lasts one input cycle.
+// check: --ratio 5 --high 2
+// verdict: refuted
+// ratio: refuted
+// high-time: proved
+// no-stuck: proved
+// recovery: refuted
+// settling: proved
+// from reset: period 32
+// loops: 1
+// false loops: 1
+// check: --ratio 5.5 --high 2
+// verdict: refuted
+// ratio: refuted
+// high-time: proved
+// no-stuck: proved
+// recovery: refuted
+// settling: proved
+// from reset: period 32
+// loops: 1
+// false loops: 1
+module accumulator_3_of_16 (input clk, input rst, output reg carry);
+  reg [3:0] sum;
+  always @(posedge clk or posedge rst)
+    if (rst) {carry, sum} <= 5'd0;
+    else {carry, sum} <= sum + 5'd3;
+endmodule

@@ -1,0 +1,87 @@
+// Twisted ring that repairs the pattern 010 in its first three stages: 2, 5 and 10 clocks at worst for 3, 4
+// and 5 stages; at 6 stages four states never recover (the loop of 011001). Output first is the first
+// stage; output flagged is the same inverted while the code is illegal, so that it is right only when the
+// ring is, and its worst recovery is the published number of clocks, two half-cycles each.
+// check: --set N=3 --ratio 6 --output flagged
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 4, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=3 --ratio 6 --output first
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 2, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=4 --ratio 8 --output flagged
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 10, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=4 --ratio 8 --output first
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 8, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=5 --ratio 10 --output flagged
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 20, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=5 --ratio 10 --output first
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 18, exact
+// settling: proved
+// loops: 1
+// false loops: 0
+// check: --set N=6 --ratio 12 --output flagged
+// verdict: refuted
+// ratio: refuted
+// high-time: refuted
+// no-stuck: proved
+// recovery: refuted
+// settling: proved
+// loops: 2
+// false loops: 1
+// check: --set N=6 --ratio 12 --output first
+// verdict: refuted
+// ratio: refuted
+// high-time: refuted
+// no-stuck: proved
+// recovery: refuted
+// settling: proved
+// loops: 2
+// false loops: 1
+module twisted_repair_010 #(parameter N = 4) (input clk, output first, output flagged);
+  reg [N:1] q;
+  always @(posedge clk) begin
+    q <= {q[N-1:1], ~q[N]};
+    q[3] <= q[2] & (q[1] | q[3]);
+  end
+  wire [N:1] turn = q ^ {q[N-1:1], ~q[N]};
+  wire illegal = |(turn & (turn - 1'b1));
+  assign first = q[1];
+  assign flagged = q[1] ^ illegal;
+endmodule

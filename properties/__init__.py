@@ -1,0 +1,20 @@
+"""The properties, in the order in which reports list them.
+
+A property is a module with a NAME and a function `judge(rhythm, spec) -> Finding`. It only reads the rhythm
+and judges it: to add one, write a file, name it here, and add a case of the same name.
+"""
+
+from __future__ import annotations
+
+from prover.findings import Finding, with_waivers
+from prover.rhythm import Rhythm
+from prover.spec import Spec
+from properties import high_time, no_stuck, ratio, recovery, settling
+
+ORDER = (ratio, high_time, no_stuck, recovery, settling)
+NAMES = tuple(module.NAME for module in ORDER)
+
+
+def judge_all(rhythm: Rhythm, spec: Spec) -> tuple[Finding, ...]:
+    """Every property's finding, with the user's waivers on those that are not proved."""
+    return with_waivers([module.judge(rhythm, spec) for module in ORDER], spec)

@@ -1,0 +1,18 @@
+"""ratio: every rise-to-rise gap is exactly 2N half-cycles, for ever."""
+
+from __future__ import annotations
+
+from prover.findings import Fact, Finding
+from prover.rhythm import Rhythm
+from prover.spec import Spec
+from properties.runs import gaps, judge_runs
+
+NAME = "ratio"
+
+
+def judge(rhythm: Rhythm, spec: Spec) -> Finding:
+    """Claimed from reset at either release level, else from initial values, else on every loop."""
+    claim = f"every rise-to-rise gap is exactly {spec.period} half-cycles ({spec.ratio_text} input cycles)"
+    periods = {wave.period for wave in (orbit.wave() for orbit in rhythm.orbits) if wave is not None}
+    facts: dict[str, Fact] = {"measured_period_half_cycles": sorted(p for p in periods if p is not None)}
+    return judge_runs(rhythm, NAME, claim, spec.period, gaps, "rise-to-rise gap", facts)

@@ -1,0 +1,263 @@
+"""From a design and its ports to its rhythm: where the engines are tried, one line each, and their words checked.
+
+An engine's answer is used only after `certificate` has checked it. What fails the check because a step hangs on
+a value that x stands for is left open; any other failure is a fault of this program.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
+
+from prover import certificate, orbit, reset
+from prover.effort import Effort, OutOfEffort
+from prover.errors import InternalError, UserError
+from prover.ports import Ports
+from prover.rhythm import Loop, Orbit, Recovery, Rhythm, Scope, Start
+from prover.settling import Settling, settle
+from prover.spec import Spec
+from prover.system import State, System
+
+if TYPE_CHECKING:
+    from prover.graph import Basins, Graph
+
+LISTED_LOOPS = 100_000
+
+
+def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
+    """Everything the engines find out about the divider within the effort."""
+    design = ports.design
+    system, settling = settle(design, ports.clock, ports.running, ports.output_value, effort)
+    scope, starts, held = _starts(ports, spec, system, settling, effort)
+    if settling.depth is None:
+        why = settling.open or "the micro-steps do not settle"
+        return _nothing_known(system, settling, scope, why)
+    orbits = tuple(follow(system, s.state, effort) for s in starts)
+    rhythm = Rhythm(
+        system=system,
+        settling=settling,
+        scope=scope,
+        starts=starts,
+        orbits=orbits,
+        loops=(),
+        complete=False,
+        recovery=None,
+        stuck=None,
+        never_stuck=False,
+        reset_half_cycles=held.half_cycles if held else None,
+        unforced=held.unforced if held else (),
+        open=held.problem if held else "",
+        methods={"orbit": "orbit of each start state, traced with jumps; every stretch checked"},
+    )
+    rhythm = _with_races(rhythm, ports, effort)
+    goal = _goal(spec, rhythm)
+    try:
+        return _with_power_up(rhythm, goal, effort)
+    except OutOfEffort as out:
+        return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
+
+
+def _nothing_known(system: System, settling: Settling, scope: Scope, why: str) -> Rhythm:
+    recovery = Recovery(None, False, open=why)
+    return Rhythm(system, settling, scope, (), (), (), False, recovery, None, False, open=why)
+
+
+def follow(system: System, start: State, effort: Effort) -> Orbit:
+    """A start state's orbit, checked. It is left unclosed, with the reason, where the check can't be made."""
+    found = orbit.trace(system, start, effort)
+    try:
+        faults = certificate.orbit_faults(system, found, effort)
+    except OutOfEffort as out:
+        return replace(found, loop_from=None, stretches=found.stretches[:1], why=str(out))
+    if faults and system.choices:
+        why = f"the run hangs on a value that x stands for, at {faults[0]}"
+        return replace(found, loop_from=None, stretches=found.stretches[:1], why=why)
+    if faults:
+        raise InternalError(f"an orbit's certificate fails: {'; '.join(faults[:3])}")
+    return found
+
+
+# -- where from --------------------------------------------------------------------------------------------
+
+
+def _starts(
+    ports: Ports, spec: Spec, system: System, settling: Settling, effort: Effort
+) -> tuple[Scope, tuple[Start, ...], reset.Held | None]:
+    limit = max(settling.depth or 0, 2 * len(ports.design.registers) + 8)
+    if spec.start == "reset" and ports.reset is None:
+        raise UserError("--start reset: no reset was recognised", hint="name it with --reset PORT=LEVEL")
+    if settling.depth is None:
+        return spec.start or ("reset" if ports.reset else "any"), (), None
+    if spec.start == "any":
+        return "any", (), None
+    if ports.reset is not None and spec.start in (None, "reset"):
+        held = reset.hold(ports.design, ports.clock, ports.resetting, effort)
+        if held.states:
+            _check_reset(ports, held, effort)
+        return "reset", reset.released(system, held, ports.resetting, limit), held
+    found = reset.initial(system, limit)
+    if isinstance(found, str):
+        if spec.start == "initial":
+            raise UserError(f"--start initial: {found}", hint="give initial values, or use --start any")
+        return "any", (), None
+    return "initial", found, None
+
+
+def _check_reset(ports: Ports, held: reset.Held, effort: Effort) -> None:
+    design = ports.design
+    system, settling = settle(design, ports.clock, ports.resetting, ports.output_value, effort)
+    if settling.depth is None or system.choices:
+        return
+    claim = certificate.reset_goal(system, held.half_cycles + 2, held.states)
+    if not held.unforced and not certificate.discharge(claim, effort):
+        raise InternalError("reset does not lead where it was found to lead")
+
+
+def _with_races(rhythm: Rhythm, ports: Ports, effort: Effort) -> Rhythm:
+    """What the output would do if the edge won each race against a clear that is being released."""
+    if not any(race.kind == "release" for race in rhythm.settling.races) or not rhythm.starts:
+        return rhythm
+    system, settling = settle(
+        ports.design, ports.clock, ports.running, ports.output_value, effort, edge_wins=True
+    )
+    if settling.depth is None:
+        return replace(rhythm, races_won=("never settles",))
+    told = []
+    for start in rhythm.starts:
+        run = orbit.trace(system, start.state, effort)
+        wave = run.wave()
+        told.append(_told(wave))
+    return replace(rhythm, races_won=tuple(dict.fromkeys(told)))
+
+
+def _told(wave: object) -> str:
+    from prover.rhythm import Wave
+
+    if not isinstance(wave, Wave):
+        return "not known"
+    if wave.stuck:
+        return f"stuck at {wave.runs[0][0]}"
+    return f"period {wave.period} half-cycles, high {wave.high}"
+
+
+# -- from everywhere ---------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class Goal:
+    """What good means: half-cycles per period and of high time."""
+
+    period: int
+    high: int
+
+
+def _goal(spec: Spec, rhythm: Rhythm) -> Goal | None:
+    """The claim, or when measuring the wave that the first start runs into, if it has one high run a period."""
+    if spec.ratio is not None:
+        return Goal(spec.period, spec.high_half_cycles)
+    waves = [orbit.wave() for orbit in rhythm.orbits]
+    wave = waves[0] if waves else None
+    if wave is None or wave.stuck or len(wave.runs) != 2:
+        return None
+    return Goal(wave.period or 0, wave.high or 0)
+
+
+def _with_power_up(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+    """The rhythm completed with every power-up state, by the first engine that can take the machine."""
+    from prover import graph
+
+    system = rhythm.system
+    if graph.fits(system):
+        return _by_graph(rhythm, goal, effort)
+    why = (
+        f"{rhythm.system.bits - 1} register bits: only the states that follow from "
+        f"{'reset' if rhythm.scope == 'reset' else 'the start states'} are covered"
+    )
+    loops = _loops_of(rhythm, goal)
+    return replace(rhythm, loops=loops, recovery=Recovery(None, False, open=why), open=rhythm.open or why)
+
+
+def _loops_of(rhythm: Rhythm, goal: Goal | None) -> tuple[Loop, ...]:
+    loops: dict[State, Loop] = {}
+    for run in rhythm.orbits:
+        wave = run.wave()
+        if wave is None or run.loop_from is None:
+            continue
+        example = run.stretches[run.loop_from].start
+        good = goal is not None and wave.divides_by(goal.period, goal.high)
+        loops.setdefault(
+            min(s.start for s in run.stretches[run.loop_from :]),
+            Loop(example, run.loop_half_cycles or 0, wave, good),
+        )
+    return tuple({(loop.length, loop.wave): loop for loop in loops.values()}.values())
+
+
+def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+    from prover import graph
+
+    system = rhythm.system
+    states = graph.build(system, effort)
+    methods = {
+        **rhythm.methods,
+        "power-up": f"state graph of all {1 << system.bits} states; every step checked",
+    }
+    rhythm = replace(rhythm, methods=methods)
+    if not states.start.any():
+        why = "no power-up state is at rest"
+        return replace(rhythm, recovery=Recovery(None, False, open=why), open=why)
+    if system.choices:
+        return _by_graph_with_choices(rhythm, states, goal, effort)
+    found = graph.basins(states, effort, goal.period if goal else None, goal.high if goal else None)
+    first_stuck = next((loop for loop in found.loops if loop.stuck), None)
+    stuck = follow(system, first_stuck.example, effort) if first_stuck else None
+    recovery = _graph_recovery(system, states, found, goal, effort) if goal else None
+    return replace(
+        rhythm, loops=found.loops, complete=True, recovery=recovery, stuck=stuck, never_stuck=stuck is None
+    )
+
+
+def _graph_recovery(system: System, states: Graph, found: Basins, goal: Goal, effort: Effort) -> Recovery:
+    import numpy as np
+
+    from prover import graph
+
+    table = graph.ranks(states, found, goal.period, goal.high)
+    illegal = int((states.start & (table.rank != 0)).sum())
+    lost = np.flatnonzero(states.start & (table.rank < 0))
+    if len(lost):
+        # A state on a false loop says most; the shortest lead-in otherwise.
+        nearest = lost[np.argmin(found.distance[lost], axis=0)]
+        return Recovery(None, False, lost=follow(system, states.state(int(nearest)), effort), illegal=illegal)
+    faults = certificate.rank_faults(system, table.phase, table.rank, goal.period, goal.high, effort)
+    if faults:
+        raise InternalError(f"a recovery certificate fails: {'; '.join(faults)}")
+    at_power_up = np.where(states.start, table.rank, -1)
+    slowest = int(at_power_up.argmax())
+    return Recovery(int(at_power_up[slowest]), True, states.state(slowest), illegal=illegal)
+
+
+def _by_graph_with_choices(rhythm: Rhythm, states: Graph, goal: Goal | None, effort: Effort) -> Rhythm:
+    from prover import graph
+
+    system = rhythm.system
+    frozen = [graph.held_level_with_choices(states, level) & states.start for level in (0, 1)]
+    never = not any(bool(f.any()) for f in frozen)
+    why = "" if never else "a value that x stands for may freeze the output"
+    loops = _loops_of(rhythm, goal)
+    rhythm = replace(rhythm, loops=loops, never_stuck=never, open=rhythm.open or why)
+    if goal is None:
+        return rhythm
+    table = graph.ranks_with_choices(states, goal.period, goal.high, effort)
+    if table is None:
+        return replace(rhythm, recovery=Recovery(None, False, open="too many states with x to cover"))
+    if (states.start & (table.rank < 0)).any():
+        why = "a value that x stands for may keep some power-up state from recovering"
+        return replace(rhythm, recovery=Recovery(None, False, open=why))
+    faults = certificate.rank_faults(system, table.phase, table.rank, goal.period, goal.high, effort)
+    if faults:
+        raise InternalError(f"a recovery certificate fails: {'; '.join(faults)}")
+    worst = int(table.rank[states.start].max())
+    slowest = int((states.start & (table.rank == worst)).argmax())
+    illegal = int((states.start & (table.rank != 0)).sum())
+    recovery = Recovery(worst, True, states.state(slowest), illegal=illegal)
+    return replace(rhythm, recovery=recovery, complete=True)

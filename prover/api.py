@@ -1,0 +1,77 @@
+"""The public interface: read sources, check a claim, measure a divider."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Sequence
+from pathlib import Path
+
+from prover import analyse, facts
+from prover.design import Design
+from prover.effort import Effort
+from prover.errors import UserError
+from prover.findings import Report
+from prover.ports import recognise
+from prover.spec import Spec
+
+Files = Sequence[str | Path]
+Tell = Callable[[str], None]
+
+
+def read(files: Files, spec: Spec | None = None) -> Design:
+    """The elaborated design in the files; the spec's module, parameters, defines and include folders apply.
+
+    Raises UserError, with file and line, for whatever can't be read or isn't supported.
+    """
+    from prover.verilog import read_design
+
+    spec = spec or Spec()
+    return read_design(
+        files,
+        module=spec.module,
+        defines=spec.defines,
+        include=[Path(folder) for folder in spec.include],
+        parameters=spec.parameters,
+    )
+
+
+def check(files: Files, spec: Spec, tell: Tell | None = None) -> Report:
+    """Every sign-off property of the divider in the files, judged against the spec.
+
+    `tell` is called with a line of progress now and then. Raises UserError for unusable input or options.
+    """
+    if spec.ratio is None:
+        raise UserError("no ratio to check", hint="give --ratio N, or ask `measure`")
+    return _report(files, spec, tell)
+
+
+def measure(files: Files, spec: Spec | None = None, tell: Tell | None = None) -> Report:
+    """What the divider in the files does: its rhythm, with no claim and no findings."""
+    return _report(files, spec or Spec(), tell)
+
+
+def _report(files: Files, spec: Spec, tell: Tell | None) -> Report:
+    from properties import NAMES, judge_all
+
+    began = time.monotonic()
+    unknown = [name for name in spec.waivers if name not in NAMES]
+    if unknown:
+        raise UserError(
+            f"--waive {unknown[0]}: no such property", hint=f"the properties are {', '.join(NAMES)}"
+        )
+    effort = Effort(spec.effort, tell)
+    effort.say("reading the sources")
+    design = read(files, spec)
+    ports = recognise(design, spec)
+    rhythm = analyse.rhythm_of(ports, spec, effort)
+    findings = judge_all(rhythm, spec) if spec.ratio is not None else ()
+    return Report(
+        ports=ports,
+        spec=spec,
+        rhythm=rhythm,
+        findings=findings,
+        facts=facts.collect(rhythm, spec),
+        assumptions=facts.assumptions(ports, rhythm),
+        notes=tuple(f"{note.where}: {note.message}" for note in design.notes),
+        seconds=time.monotonic() - began,
+    )

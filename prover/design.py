@@ -1,0 +1,139 @@
+"""Design: a divider after elaboration, flat, with every register and where each name was written.
+
+Names are hierarchical, without the top module's own name: `count`, `stage0.q`. A vector of which parts have
+different drivers is split into slices, named `count[0]` or `count[7:4]`, each of them one register or wire.
+Wires are gone: what was a wire is an expression over registers and inputs. A net inside a combinational loop
+becomes a register without a clock, forced all the time to the value that drives it.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Literal
+
+from prover.errors import InternalError, Where
+from prover.expr import Expr, variables
+
+
+@dataclass(frozen=True, slots=True)
+class Edge:
+    """A clocked write: when `clock` (one bit) rises, the register takes `data`. A falling edge is written
+    as the rise of the negated net. `data` is the register itself where the code assigns nothing."""
+
+    clock: Expr
+    data: Expr
+
+
+@dataclass(frozen=True, slots=True)
+class Force:
+    """A level-sensitive write: while `when` (one bit) is 1 the register is held at `value`.
+
+    Asynchronous sets and clears, latches (`when` is the enable, `value` the data) and nets in combinational
+    loops (`when` is constant 1) are all of this form."""
+
+    when: Expr
+    value: Expr
+    where: Where
+
+
+@dataclass(frozen=True, slots=True)
+class Register:
+    """Anything that stores. The first active force in the list wins over the others and over every edge."""
+
+    name: str
+    width: int
+    kind: Literal["flip-flop", "latch", "loop"]
+    edges: tuple[Edge, ...]
+    forces: tuple[Force, ...]
+    initial: int | None
+    where: Where
+
+
+@dataclass(frozen=True, slots=True)
+class Signal:
+    """A declared name as the user sees it: its value is an expression over registers and inputs.
+
+    `msb` and `lsb` are the declared bounds (0, 0 for a scalar); bit i of `value` is declared bit lsb + i, or
+    lsb − i where msb < lsb."""
+
+    name: str
+    value: Expr
+    msb: int
+    lsb: int
+    signed: bool
+    where: Where
+
+
+@dataclass(frozen=True, slots=True)
+class Note:
+    """A remark that accompanies the verdict, such as a simulation-only construct that was passed over."""
+
+    message: str
+    where: Where
+
+
+@dataclass(frozen=True, slots=True)
+class Design:
+    """An elaborated divider.
+
+    inputs      input ports of the top module: name to width
+    outputs     output ports of the top module, in order; each is also in signals
+    registers   in order of declaration
+    signals     every declared name with its value, in order of declaration
+    parameters  the top module's parameters with their final values
+    files       every file read, in order
+    sha256      digest of the sources after directives
+    """
+
+    top: str
+    inputs: dict[str, int]
+    outputs: tuple[str, ...]
+    registers: tuple[Register, ...]
+    signals: dict[str, Signal]
+    parameters: dict[str, int]
+    files: tuple[str, ...]
+    sha256: str
+    notes: tuple[Note, ...] = field(default=())
+
+    @property
+    def state_bits(self) -> int:
+        """Bits of all registers together; the clock's level is not counted."""
+        return sum(register.width for register in self.registers)
+
+    def sanity_check(self) -> None:
+        """Raise InternalError where a width or a reference is wrong."""
+        known = {r.name: r.width for r in self.registers} | self.inputs
+        if len(known) != len(self.registers) + len(self.inputs):
+            raise InternalError("a name stands for two things")
+        for register in self.registers:
+            for edge in register.edges:
+                if edge.clock.width != 1 or edge.data.width != register.width:
+                    raise InternalError(f"{register.name}: edge of wrong width")
+            for force in register.forces:
+                if force.when.width != 1 or force.value.width != register.width:
+                    raise InternalError(f"{register.name}: force of wrong width")
+        for used in variables(self.all_expressions()):
+            if not used.name.startswith("?") and known.get(used.name) != used.width:
+                raise InternalError(f"unknown name {used.name}")
+
+    def all_expressions(self) -> list[Expr]:
+        """Every expression of the design, in a stable order."""
+        out: list[Expr] = []
+        for register in self.registers:
+            for edge in register.edges:
+                out += [edge.clock, edge.data]
+            for force in register.forces:
+                out += [force.when, force.value]
+        return out + [signal.value for signal in self.signals.values()]
+
+    def __str__(self) -> str:
+        lines = [f"design {self.top}"]
+        lines += [f"input {name} {width}" for name, width in self.inputs.items()]
+        for r in self.registers:
+            lines.append(
+                f"{r.kind} {r.name} {r.width}" + (f" initial {r.initial}" if r.initial is not None else "")
+            )
+            lines += [f"  force {f.when} to {f.value}" for f in r.forces]
+            lines += [f"  rise {e.clock} takes {e.data}" for e in r.edges]
+        lines += [f"output {name} = {self.signals[name].value}" for name in self.outputs]
+        return "\n".join(lines) + "\n"

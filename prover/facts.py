@@ -1,0 +1,110 @@
+"""Facts that every report carries: launching edges, duty, recovery as a time, and the assumptions."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+from prover.findings import Fact
+from prover.ports import Ports
+from prover.rhythm import Orbit, Rhythm
+from prover.spec import Spec
+
+
+def collect(rhythm: Rhythm, spec: Spec) -> dict[str, Fact]:
+    """The facts that can be told of this rhythm; keys name their unit."""
+    facts: dict[str, Fact] = {}
+    for orbit in rhythm.orbits[:1]:
+        facts |= wave_facts(orbit, spec)
+    worst = rhythm.recovery.worst if rhythm.recovery else None
+    if worst is not None:
+        facts["worst_recovery_half_cycles"] = worst
+        facts["worst_recovery_input_cycles"] = number(Fraction(worst, 2))
+        if spec.fin is not None:
+            facts["worst_recovery_seconds"] = seconds(Fraction(worst, 2) / spec.fin)
+    return facts
+
+
+def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:
+    """Launching edges and duty of the wave that the orbit runs into; none if it has more than one high run."""
+    wave = orbit.wave()
+    if wave is None or wave.stuck or len(wave.runs) != 2 or orbit.loop_from is None:
+        return {}
+    period, high = wave.period or 0, wave.high or 0
+    rise = _first_rise(orbit)
+    # The half-cycle after a rising source edge has the clock high.
+    on_rising = orbit.state(rise)[-1] == 1
+    first = 1 if on_rising else 2
+    facts: dict[str, Fact] = {"source_edges": [first, first + high, first + period]}
+    both = period % 2 == 1
+    a, b = (high + 1) // 2, high // 2
+    if not on_rising:
+        a, b = b, a
+    n = Fraction(period, 2)
+    if both:
+        # The launching edge alternates, so every other period has the source's levels swapped.
+        facts["duty"] = (
+            f"alternates between ({a}·d + {b}·(1−d))/{number(n)} and ({b}·d + {a}·(1−d))/{number(n)}"
+        )
+    else:
+        facts["duty"] = f"({a}·d + {b}·(1−d))/{number(n)}"
+    facts["duty_at_half"] = number(Fraction(high, period))
+    if spec.source_duty is not None:
+        ends = [d / 100 for d in spec.source_duty]
+        pairs = [(a, b), (b, a)] if both else [(a, b)]
+        values = [(x * d + y * (1 - d)) / n for x, y in pairs for d in ends]
+        facts["duty_range"] = f"{percent(min(values))} to {percent(max(values))}"
+    return facts
+
+
+def _first_rise(orbit: Orbit) -> int:
+    """The half-cycle of the first rise within the loop, counted from the start."""
+    at, lead = 0, orbit.lead_half_cycles
+    for index, (level, length) in enumerate(orbit.runs(rounds=2)):
+        if level == 1 and index > 0 and at >= lead:
+            return at
+        at += length
+    return lead
+
+
+def number(value: Fraction) -> str:
+    """A fraction as people read it: 3, 2.5, 1/3."""
+    if value.denominator == 1:
+        return str(value.numerator)
+    return f"{float(value):g}" if value.denominator in (2, 4, 5, 8, 10) else str(value)
+
+
+def seconds(value: Fraction) -> str:
+    """A time in seconds with a fitting unit."""
+    for factor, unit in ((1, "s"), (10**3, "ms"), (10**6, "µs"), (10**9, "ns")):
+        if value * factor >= 1:
+            return f"{float(value * factor):.4g} {unit}"
+    return f"{float(value * 10**9):.4g} ns"
+
+
+def percent(value: Fraction) -> str:
+    """A share in per cent."""
+    return f"{float(100 * value):.4g} %"
+
+
+def assumptions(ports: Ports, rhythm: Rhythm) -> tuple[str, ...]:
+    """The model under which the verdicts hold, a sentence each."""
+    out = [
+        f"{ports.clock} toggles without end; nothing else changes at its edges",
+        "registers and gates have no delay; what happens at once is ordered as the micro-steps say",
+        "registers are two-valued; an unknown stands for both values",
+    ]
+    if ports.reset:
+        out.append(f"{ports.reset.port} stays at {1 - ports.reset.active} after its release")
+    fixed = {n: v for n, v in ports.holds.items() if not ports.reset or n != ports.reset.port}
+    out += [f"{name} is held at {value}" for name, value in fixed.items()]
+    if rhythm.unforced:
+        out.append(f"reset never forces {', '.join(rhythm.unforced)}: every value of theirs is followed")
+    return tuple(out)
+
+
+LIMITS = (
+    "A proof covers the Verilog under the stated model: not timing closure, metastability, clock quality, power, "
+    "analogue behaviour or the netlist after synthesis. Where equipment can hurt people it supports, and does not "
+    "replace, independent review, qualified tools, the standards that apply (such as IEC 61508, ISO 26262 or "
+    "DO-254) and the judgement of those appointed to sign."
+)

@@ -1,0 +1,108 @@
+"""Findings: what a property says of a divider, and the report that collects them."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING, Literal
+
+from prover.errors import Where
+
+if TYPE_CHECKING:
+    from prover.ports import Ports
+    from prover.rhythm import Orbit, Rhythm
+    from prover.settling import Unsettled
+    from prover.spec import Spec
+
+Verdict = Literal["proved", "refuted", "open"]
+Fact = str | int | bool | None | list[int] | list[str] | dict[str, int]
+
+
+@dataclass(frozen=True, slots=True)
+class Obligation:
+    """A timing inequality that the proof needs and that only timing analysis can discharge."""
+
+    text: str
+    where: Where
+    register: str
+
+
+@dataclass(frozen=True, slots=True)
+class Counterexample:
+    """A trace that breaks a claim.
+
+    orbit   the run of the machine from its start
+    begins, ends  half-cycles after the start between which the claim is broken (ends exclusive)
+    text    what is seen there
+    cause   how the start state comes about
+    """
+
+    orbit: Orbit
+    begins: int
+    ends: int
+    text: str
+    cause: str
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """One property's verdict.
+
+    claim   what is claimed, in words with its numbers
+    says    what was found, in words
+    method  how it was decided
+    bound   what the verdict is bounded by, "" where it holds without bound
+    facts   numbers for machines; names say their unit
+    """
+
+    name: str
+    verdict: Verdict
+    claim: str
+    says: str
+    method: str
+    bound: str = ""
+    facts: dict[str, Fact] = field(default_factory=dict)
+    obligations: tuple[Obligation, ...] = ()
+    counterexample: Counterexample | None = None
+    unsettled: Unsettled | None = None
+    waived: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Report:
+    """All findings on one divider, with what they rest on.
+
+    facts        edges, duty, recovery time: carried by every report
+    assumptions  the model that the verdicts hold under, a sentence each
+    notes        remarks on the sources that accompany the verdict
+    seconds      how long it took
+    """
+
+    ports: Ports
+    spec: Spec
+    rhythm: Rhythm
+    findings: tuple[Finding, ...]
+    facts: dict[str, Fact]
+    assumptions: tuple[str, ...]
+    notes: tuple[str, ...]
+    seconds: float
+
+    @property
+    def verdict(self) -> Verdict:
+        return overall(self.findings)
+
+
+def overall(findings: Sequence[Finding]) -> Verdict:
+    """Refuted if any property that isn't waived is, open if any is open, else proved."""
+    verdicts = {finding.verdict for finding in findings if finding.waived is None}
+    if "refuted" in verdicts:
+        return "refuted"
+    return "open" if "open" in verdicts else "proved"
+
+
+def with_waivers(findings: Sequence[Finding], spec: Spec) -> tuple[Finding, ...]:
+    """The findings with the user's waivers on those that are not proved."""
+    return tuple(
+        replace(f, waived=spec.waivers[f.name]) if f.name in spec.waivers and f.verdict != "proved" else f
+        for f in findings
+    )

@@ -1,0 +1,301 @@
+"""Micro-steps: how many suffice for every step, and where the outcome hangs on the order of events.
+
+The bound is found by asking, for one more micro-step at a time, whether some state still changes (a
+completeness threshold in the sense of bounded model checking; here the diameter of the chain). Events that
+happen at once may come in any order in hardware, so three things are looked for besides: a clock edge in the
+micro-step in which the register's clear is released; data that the same input edge has changed before a
+derived clock samples it; and a clock or clear net that can pulse while several of its inputs change together
+(a function hazard). The first two are obligations that a timing engineer can discharge. The third is not.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+from prover import expr as e
+from prover.design import Design, Register
+from prover.effort import Effort, OutOfEffort
+from prover.errors import Where
+from prover.expr import Expr
+from prover.solve import find
+from prover.system import Inputs, Moment, State, System, build, micro_step, same, settled_when, start, unroll
+
+LONGEST = 4096
+"""Micro-steps after which a concrete run that neither settles nor repeats is given up."""
+
+
+@dataclass(frozen=True, slots=True)
+class Race:
+    """An outcome that hangs on the order of events.
+
+    kind       "release" (clear against clock), "hold" (data against a derived clock) or "pulse" (hazard on a
+               clock or clear net)
+    register   the register whose value depends on it
+    state      a settled state whose next step shows it
+    """
+
+    kind: str
+    register: str
+    where: Where
+    state: State
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class Unsettled:
+    """A state from which the micro-steps go on for ever.
+
+    `power_up` says that the register values never settle even without a clock edge; otherwise the next edge
+    starts it. `cycle` is one round of the register values, a micro-step each."""
+
+    state: State
+    power_up: bool
+    cycle: tuple[State, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Settling:
+    """What is known about the micro-steps of a system.
+
+    depth      micro-steps within which every step settles, None if unsettled or not known
+    at_rest    micro-steps within which any register values settle before the first edge
+    by_form    the bound follows from the form of the expressions, without a solver
+    open       why the depth or the races are not known, "" when they are
+    """
+
+    depth: int | None
+    at_rest: int | None
+    by_form: bool
+    unsettled: Unsettled | None
+    races: tuple[Race, ...]
+    open: str = ""
+
+
+def settle(
+    design: Design, clock: str, inputs: Inputs, output: Expr, effort: Effort, edge_wins: bool = False
+) -> tuple[System, Settling]:
+    """The system with the number of micro-steps that it needs, and what was found on the way.
+
+    When something never settles, or the effort runs out, the system is built as far as was tried.
+    """
+    effort.say("bounding the micro-steps of a step")
+    before, now = start(design, clock, inputs)
+    assumed = settled_when(design, before)
+    depth = at_rest = None
+    unsettled = None
+    races: tuple[Race, ...] = ()
+    why = ""
+    by_form = False
+    limit = len(design.registers) + 2
+    try:
+        rest_chain, at_rest, _ = _bound(design, before, before, e.TRUE, effort, edge_wins)
+        if at_rest is None:
+            unsettled = _witness(design, clock, rest_chain, before, before, e.TRUE, effort)
+        else:
+            chain, depth, by_form = _bound(design, before, now, assumed, effort, edge_wins)
+            limit = len(chain)
+            if depth is None:
+                unsettled = _witness(design, clock, chain, before, now, assumed, effort)
+            else:
+                limit = max(depth, 1)
+    except OutOfEffort as out:
+        why = str(out)
+    system = build(design, clock, inputs, output, limit, edge_wins)
+    if depth is not None and not edge_wins:
+        try:
+            effort.say("looking for outcomes that hang on the order of events")
+            races = tuple(find_races(system, effort))
+        except OutOfEffort as out:
+            why = str(out)
+    return system, Settling(depth, at_rest, by_form, unsettled, races, why)
+
+
+def _bound(
+    design: Design, before: Moment, now: Moment, assumed: Expr, effort: Effort, edge_wins: bool
+) -> tuple[list[Moment], int | None, bool]:
+    """The chain, the number of micro-steps that suffice under the assumption (None: some state goes on
+    beyond what is worth unrolling), and whether the form of the expressions alone shows it."""
+    limit = 2 * len(design.registers) + 8
+    chain = unroll(design, before, now, 1, edge_wins)
+    count = len(chain) - 1
+    if count == 0:
+        return chain, 0, True
+    while count <= limit:
+        effort.check()
+        longer = unroll(design, before, now, count + 1, edge_wins)
+        if len(longer) == len(chain):
+            return chain, count, True
+        moves = e.bvand(assumed, e.bvnot(same(design.registers, longer[-1], longer[-2])))
+        if find(moves, effort) is None:
+            return chain, count, False
+        chain, count = longer, count + 1
+    return chain, None, False
+
+
+def _witness(
+    design: Design,
+    clock: str,
+    chain: Sequence[Moment],
+    before: Moment,
+    now: Moment,
+    assumed: Expr,
+    effort: Effort,
+) -> Unsettled:
+    """A state whose micro-steps repeat for ever, replayed on values."""
+    moves = e.bvand(assumed, e.bvnot(same(design.registers, chain[-1], chain[-2])))
+    model = find(moves, effort)
+    names = [*(r.name for r in design.registers), clock]
+    state = tuple((model or {}).get(name, 0) for name in names)
+    values = {name: e.const(v, before[name].width) for name, v in zip(names, state, strict=True)}
+    was = dict(zip(before, e.substitute(list(before.values()), values), strict=True))
+    new = dict(zip(now, e.substitute(list(now.values()), values), strict=True))
+    seen: dict[tuple[State, State], int] = {}
+    run: list[State] = []
+    while len(run) < LONGEST:
+        pair = (_values(names, was), _values(names, new))
+        if pair in seen:
+            return Unsettled(state, before is now, tuple(run[seen[pair] :]))
+        seen[pair] = len(run)
+        run.append(pair[1])
+        was, new = new, _zero_choices(micro_step(design, was, new))
+    raise OutOfEffort(f"a step that has not settled after {LONGEST} micro-steps")
+
+
+def _values(names: Sequence[str], moment: Moment) -> State:
+    return tuple(e.evaluate([moment[name] for name in names], {}))
+
+
+def _zero_choices(moment: Moment) -> Moment:
+    names = e.variables(list(moment.values()))
+    zeros = {v.name: e.const(0, v.width) for v in names}
+    return dict(zip(moment, e.substitute(list(moment.values()), zeros), strict=True))
+
+
+# -- races ---------------------------------------------------------------------------------------------------
+
+
+def find_races(system: System, effort: Effort) -> Iterator[Race]:
+    """Every register whose value after a step hangs on the order of events, once a register and kind."""
+    before, _ = start(system.design, system.clock, system.inputs)
+    moments = [before, *system.chain]
+    for register in system.design.registers:
+        searches: tuple[Callable[[System, Sequence[Moment], Register, Effort], Race | None], ...]
+        searches = (_release_race, _hold_race, _pulse)
+        for search in searches:
+            race = search(system, moments, register, effort)
+            if race:
+                yield race
+
+
+def _state_of(system: System, model: Mapping[str, int]) -> State:
+    return tuple(model.get(name, 0) for name in system.names)
+
+
+def _release_race(
+    system: System, moments: Sequence[Moment], register: Register, effort: Effort
+) -> Race | None:
+    """An edge that comes with the release of the register's own clear, and would change what it holds."""
+    if not register.edges or not register.forces:
+        return None
+    for then, now in zip(moments, moments[1:], strict=False):
+        was = e.disj(e.substitute([f.when for f in register.forces], then))
+        still = e.disj(e.substitute([f.when for f in register.forces], now))
+        released = e.bvand(was, e.bvnot(still))
+        for edge in register.edges:
+            (low,) = e.substitute([edge.clock], then)
+            high, data = e.substitute([edge.clock, edge.data], now)
+            changes = e.bvnot(e.eq(data, now[register.name]))
+            goal = e.conj([released, e.bvnot(low), high, changes, system.settled])
+            model = find(goal, effort)
+            if model is not None:
+                text = (
+                    f"the clock edge that clearing makes at {register.name} has to arrive while the clear of "
+                    f"{register.name} is still active, and the clear has to last until the slowest register "
+                    "that it clears has cleared"
+                )
+                return Race("release", register.name, register.where, _state_of(system, model), text)
+    return None
+
+
+def _hold_race(system: System, moments: Sequence[Moment], register: Register, effort: Effort) -> Race | None:
+    """A derived clock that samples data which the same input edge has already changed."""
+    launch = moments[1]
+    for then, now in zip(moments[1:], moments[2:], strict=False):
+        for edge in register.edges:
+            (low,) = e.substitute([edge.clock], then)
+            high, data = e.substitute([edge.clock, edge.data], now)
+            forced = e.disj(e.substitute([f.when for f in register.forces], now))
+            # What the register itself holds is no data launched by another register.
+            own = {**launch, register.name: now[register.name]}
+            (old,) = e.substitute([edge.data], own)
+            fires = e.conj([e.bvnot(low), high, e.bvnot(forced), system.settled])
+            model = find(e.bvand(fires, e.bvnot(e.eq(data, old))), effort)
+            if model is not None:
+                text = (
+                    f"{register.name} samples data launched by the same input edge that makes its derived clock: "
+                    "the clock path has to be longer than the data path by the hold time"
+                )
+                return Race("hold", register.name, register.where, _state_of(system, model), text)
+    return None
+
+
+def _pulse(system: System, moments: Sequence[Moment], register: Register, effort: Effort) -> Race | None:
+    """A clock or clear net that may pulse while several of its inputs change in one micro-step."""
+    nets = [(edge.clock, True, register.where) for edge in register.edges]
+    nets += [(force.when, False, force.where) for force in register.forces if register.kind == "flip-flop"]
+    for net, is_clock, where in nets:
+        inputs = [v for v in e.variables([net]) if v.name in system.names]
+        if len(inputs) < 2 and all(v.width == 1 for v in inputs):
+            continue
+        for then, now in zip(moments, moments[1:], strict=False):
+            model = find(e.bvand(_hazard(net, inputs, then, now, is_clock), system.settled), effort)
+            if model is None:
+                continue
+            values = _padded(model, then, now)
+            moving = [v.name for v in inputs if len(set(e.evaluate([then[v.name], now[v.name]], values))) > 1]
+            role = "clock" if is_clock else "clear"
+            text = (
+                f"the {role} of {register.name} may pulse while {', '.join(moving)} change together: "
+                "the outcome hangs on which arrives first"
+            )
+            return Race("pulse", register.name, where, _state_of(system, model), text)
+    return None
+
+
+def _padded(model: Mapping[str, int], *moments: Moment) -> dict[str, int]:
+    names = e.variables([value for moment in moments for value in moment.values()])
+    return {v.name: model.get(v.name, 0) for v in names}
+
+
+def _hazard(net: Expr, inputs: Sequence[Expr], then: Moment, now: Moment, is_clock: bool) -> Expr:
+    """One bit: some order of the changing bits gives the net a pulse that the settled values don't show."""
+    (first,) = e.substitute([net], then)
+    (last,) = e.substitute([net], now)
+    if first is last and all(then[v.name] is now[v.name] for v in inputs):
+        return e.FALSE
+    early = _mixed(net, inputs, then, now, "early")
+    if not is_clock:
+        return e.conj([e.bvnot(first), e.bvnot(last), early[0]])
+    late = _mixed(net, inputs, then, now, "late")
+    ordered = e.conj(
+        e.eq(e.bvand(a, e.bvnot(b)), e.const(0, a.width)) for a, b in zip(early[1], late[1], strict=True)
+    )
+    # A rise that the settled values don't have: low, then high, where the net ends low or began high.
+    static = e.bvand(e.eq(first, last), e.bvxor(early[0], first))
+    double = e.conj([e.bvnot(first), last, early[0], e.bvnot(late[0]), ordered])
+    fall = e.conj([first, e.bvnot(last), e.bvnot(early[0]), late[0], ordered])
+    return e.disj([static, double, fall])
+
+
+def _mixed(
+    net: Expr, inputs: Sequence[Expr], then: Moment, now: Moment, label: str
+) -> tuple[Expr, list[Expr]]:
+    """The net while the bits chosen by free masks have changed already, and the masks."""
+    masks = [e.var(f"!{label}.{v.name}", v.width) for v in inputs]
+    values = {**now}
+    for v, mask in zip(inputs, masks, strict=True):
+        kept = e.bvand(then[v.name], e.bvnot(mask))
+        values[v.name] = e.bvor(kept, e.bvand(now[v.name], mask))
+    (value,) = e.substitute([net], values)
+    return value, masks

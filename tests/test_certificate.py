@@ -1,0 +1,92 @@
+"""Certificates: right ones are accepted, and every wrong number in one is found."""
+
+from __future__ import annotations
+
+import random
+from dataclasses import replace
+
+import numpy as np
+import small
+import z3
+
+from prover import certificate, graph, orbit
+from prover.design import Design
+from prover.effort import Effort
+from prover.ports import recognise
+from prover.rhythm import Orbit
+from prover.settling import settle
+from prover.spec import Spec
+from prover.system import State, System
+
+
+def system_of(design: Design) -> System:
+    ports = recognise(design, Spec())
+    return settle(design, ports.clock, ports.running, ports.output_value, Effort(60))[0]
+
+
+def traced(system: System, start: State) -> Orbit:
+    found = orbit.trace(system, start, Effort(60))
+    assert certificate.orbit_faults(system, found, Effort(60)) == []
+    return found
+
+
+def test_orbits_of_any_ratio_have_few_stretches_and_pass() -> None:
+    for limit in (4, 300, 25_000_000 - 1, 2**31 - 1):
+        found = traced(system_of(small.toggle(32, limit)), (0, 0, 0))
+        assert found.loop_half_cycles == 4 * (limit + 1)
+        assert len(found.stretches) < 50
+
+
+def test_obligations_are_scripts_that_a_solver_refutes() -> None:
+    system = system_of(small.toggle(26, 25_000_000 - 1))
+    found = traced(system, (0, 0, 0))
+    scripts = [o.script() for o in certificate.orbit_obligations(system, found)]
+    assert scripts
+    for script in scripts:
+        assert script.count("(check-sat)") == 1
+        solver = z3.Solver()
+        solver.from_string(script)
+        assert solver.check() == z3.unsat
+
+
+def test_every_altered_orbit_is_rejected() -> None:
+    system = system_of(small.toggle(16, 999))
+    found = traced(system, (0, 0, 0))
+    rng = random.Random(3)
+    for _ in range(120):
+        at = rng.randrange(len(found.stretches))
+        old = found.stretches[at]
+        part = rng.choice(["start", "middle", "stride", "cycles", "levels"])
+        if part == "cycles":
+            new = replace(old, cycles=old.cycles + rng.choice([-1, 1, 7]))
+        elif part == "levels":
+            new = replace(old, levels=(1 - old.levels[0], old.levels[1]))
+        else:
+            values = list(getattr(old, part))
+            i = rng.randrange(len(values))
+            values[i] ^= 1 << rng.randrange(found.widths[i])
+            new = replace(old, **{part: tuple(values)})
+        stretches = (*found.stretches[:at], new, *found.stretches[at + 1 :])
+        altered = replace(found, stretches=stretches)
+        assert certificate.orbit_faults(system, altered, Effort(60)), (part, at)
+    assert found.loop_from == 0
+    assert certificate.orbit_faults(system, replace(found, loop_from=1), Effort(60))
+
+
+def test_altered_phases_and_ranks_are_rejected() -> None:
+    system = system_of(small.odd(3, 5))
+    states = graph.build(system, Effort(60))
+    found = graph.basins(states, Effort(60), 10, 5)
+    table = graph.ranks(states, found, 10, 5)
+    assert certificate.rank_faults(system, table.phase, table.rank, 10, 5, Effort(60)) == []
+    rng = random.Random(4)
+    for _ in range(100):
+        phase, rank = table.phase.copy(), table.rank.copy()
+        target = rng.choice([phase, rank])
+        at = rng.randrange(len(target))
+        # A rank that is merely too high for a state nothing leads to is still a true bound, so lower it.
+        target[at] = (phase[at] + rng.randint(1, 9)) % 10 if target is phase else max(rank[at] - 1, -1)
+        if np.array_equal(phase, table.phase) and np.array_equal(rank, table.rank):
+            continue
+        assert certificate.rank_faults(system, phase, rank, 10, 5, Effort(60))
+    assert certificate.rank_faults(system, table.phase, table.rank, 10, 4, Effort(60))
