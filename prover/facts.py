@@ -6,14 +6,15 @@ from fractions import Fraction
 
 from prover.findings import Fact
 from prover.ports import Ports
-from prover.rhythm import Orbit, Rhythm
+from prover.rhythm import Orbit, Rhythm, Wave
 from prover.spec import Spec
+from prover.system import State
 
 
 def collect(rhythm: Rhythm, spec: Spec) -> dict[str, Fact]:
     """The facts that can be told of this rhythm; keys name their unit."""
     facts: dict[str, Fact] = {}
-    for orbit in rhythm.orbits[:1]:
+    for orbit in rhythm.orbits[:1] or _agreed(rhythm):
         facts |= wave_facts(orbit, spec)
     worst = rhythm.recovery.worst if rhythm.recovery else None
     if worst is not None:
@@ -22,6 +23,25 @@ def collect(rhythm: Rhythm, spec: Spec) -> dict[str, Fact]:
         if spec.fin is not None:
             facts["worst_recovery_seconds"] = seconds(Fraction(worst, 2) / spec.fin)
     return facts
+
+
+def loop_orbits(rhythm: Rhythm, most: int) -> tuple[Orbit, ...]:
+    """Orbits that show what the loops do where no start state is singled out: one for each wave that is not
+    stuck, good ones first, at most so many."""
+    from prover.analyse import follow
+    from prover.effort import Effort
+
+    shown: dict[Wave, State] = {}
+    for loop in sorted(rhythm.loops, key=lambda loop: not loop.good):
+        if len(shown) < most and not loop.stuck:
+            shown.setdefault(loop.wave, loop.example)
+    return tuple(follow(rhythm.system, example, Effort(10)) for example in shown.values())
+
+
+def _agreed(rhythm: Rhythm) -> tuple[Orbit, ...]:
+    """The good loop, or any loop where all have one wave; none where it is not plain which one to tell of."""
+    good = any(loop.good for loop in rhythm.loops)
+    return loop_orbits(rhythm, 1) if good or len({loop.wave for loop in rhythm.loops}) == 1 else ()
 
 
 def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:

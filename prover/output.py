@@ -6,6 +6,7 @@ its target and renamed; when one can't be, none is left behind.
 
 from __future__ import annotations
 
+import errno
 import os
 import stat
 from collections.abc import Iterable, Sequence
@@ -18,7 +19,7 @@ STANDARD_OUTPUT = "-"
 
 
 def harmless(text: str) -> str:
-    """The text with control characters, direction marks and stray surrogates written as escapes; newlines stay."""
+    """The text with control characters, direction marks and stray surrogates as escapes; newlines stay."""
     return "\n".join(_escaped(line) for line in text.split("\n"))
 
 
@@ -99,6 +100,8 @@ def _is_special(path: str) -> bool:
 def _written_beside(target: str, text: str) -> str:
     """A new file in the target's folder with the text in it, and the target's permissions if it exists."""
     folder, name = os.path.split(target)
+    if os.path.exists(target) and not os.access(target, os.W_OK):
+        raise PermissionError(errno.EACCES, os.strerror(errno.EACCES), target)
     temporary = os.path.join(folder, f".{name[:100]}.{os.getpid()}.part")
     descriptor = os.open(temporary, os.O_WRONLY | os.O_CREAT | os.O_EXCL, 0o666)
     try:

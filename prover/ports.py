@@ -101,7 +101,10 @@ def _holds(design: Design, spec: Spec) -> dict[str, int]:
         _known_input(design, name, "--hold")
         width = design.inputs[name]
         if not -(1 << (width - 1)) <= value < 1 << width:
-            raise UserError(f"--hold {name}={value}: the port has {width} bit{'s' * (width > 1)}")
+            raise UserError(
+                f"--hold {name}={value}: the port has {width} bit{'s' * (width > 1)}",
+                hint=f"give a value from 0 to {(1 << width) - 1}",
+            )
         holds[name] = value % (1 << width)
     return holds
 
@@ -135,9 +138,11 @@ def _clock(design: Design, spec: Spec, holds: Mapping[str, int]) -> str:
     if spec.clock is not None:
         name = _known_input(design, spec.clock, "--clock")
         if design.inputs[name] != 1:
-            raise UserError(f"--clock {name}: the port has {design.inputs[name]} bits")
+            raise UserError(
+                f"--clock {name}: the port has {design.inputs[name]} bits", hint="name an input of one bit"
+            )
         if name in holds:
-            raise UserError(f"{name} is named both as clock and as held")
+            raise UserError(f"{name} is named both as clock and as held", hint="leave one of the two out")
         return name
     candidates = _clock_inputs(design, holds)
     if not candidates:
@@ -166,9 +171,13 @@ def _reset(design: Design, spec: Spec, clock: str, holds: Mapping[str, int]) -> 
         name, equals, level = spec.reset.partition("=")
         _known_input(design, name, "--reset")
         if design.inputs[name] != 1:
-            raise UserError(f"--reset {name}: the port has {design.inputs[name]} bits")
+            raise UserError(
+                f"--reset {name}: the port has {design.inputs[name]} bits", hint="name an input of one bit"
+            )
         if equals and level not in ("0", "1"):
-            raise UserError(f"--reset {spec.reset}: the active level is 0 or 1")
+            raise UserError(
+                f"--reset {spec.reset}: the active level is 0 or 1", hint=f"such as --reset {name}=0"
+            )
         kind: Literal["asynchronous", "synchronous"]
         kind = "asynchronous" if name in asynchronous else "synchronous"
         levels = asynchronous.get(name) or synchronous.get(name) or set()
@@ -283,5 +292,9 @@ def _named_output(design: Design, text: str) -> Expr:
         else signal.lsb - int(number[1])
     )
     if place is None or not 0 <= place < signal.value.width:
-        raise UserError(f"--output {text}: the bits are {signal.msb} to {signal.lsb}", signal.where)
+        raise UserError(
+            f"--output {text}: the bits are {signal.msb} to {signal.lsb}",
+            signal.where,
+            hint=f"name one of them, such as --output '{name}[{signal.lsb}]'",
+        )
     return e.extract(signal.value, place, place)

@@ -103,6 +103,9 @@ class Spec:
 def read_ratio(text: str) -> Fraction:
     """A ratio as written on the command line: 3, 2.5, 5/2, 50_000_001."""
     try:
+        # No exponents: 1e999999999 would fill the memory before it is found to be nonsense.
+        if not re.fullmatch(r"[-+]?[0-9_.]{1,100}(/[0-9_]{1,100})?", text.strip()):
+            raise ValueError
         return Fraction(text.replace("_", "").strip())
     except (ValueError, ZeroDivisionError):
         raise UserError(f"ratio '{text}' is not a number", hint="such as 3, 2.5 or 5/2") from None
@@ -113,6 +116,8 @@ def read_number(text: str) -> int:
     plain = text.replace("_", "").strip()
     literal = re.fullmatch(r"\d*'s?([bodh])([0-9a-f]+)", plain.lower())
     try:
+        if len(plain) > 1000:
+            raise ValueError
         if literal:
             return int(literal[2], {"b": 2, "o": 8, "d": 10, "h": 16}[literal[1]])
         return int(plain, 0)
@@ -122,7 +127,7 @@ def read_number(text: str) -> int:
 
 def read_frequency(text: str) -> Fraction:
     """A frequency in Hz: 50MHz, 32.768kHz, 1e6."""
-    match = re.fullmatch(r"\s*([0-9._]+(?:e[0-9]+)?)\s*([kMG]?)(?:Hz)?\s*", text)
+    match = re.fullmatch(r"\s*([0-9._]+(?:e[0-9]{1,2})?)\s*([kMG]?)(?:Hz)?\s*", text)
     try:
         if not match:
             raise ValueError
@@ -138,6 +143,8 @@ def read_duty_range(text: str) -> tuple[Fraction, Fraction]:
     """A range of the source's duty in per cent: 45..55, or 50."""
     low, dots, high = text.partition("..")
     try:
+        if not re.fullmatch(r"[0-9. ]{1,100}", text):
+            raise ValueError
         ends = Fraction(low.strip()), Fraction((high if dots else low).strip())
     except (ValueError, ZeroDivisionError):
         raise UserError(f"source duty '{text}' not understood", hint="such as 45..55, in per cent") from None

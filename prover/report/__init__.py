@@ -1,4 +1,4 @@
-"""Reports: one form a file. Each has a function that turns a `Report` into text and does nothing else; `cli` writes.
+"""Reports: one form a file. Each turns a `Report` into text and does nothing else; `cli` writes it.
 
 To add one, write a file with `render(report, ...) -> str` and give it an option in `cli`.
 """

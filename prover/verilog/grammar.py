@@ -30,7 +30,7 @@ INHERITED = frozenset(
     const_expression_intnum const_expression_floatnum const_expression_stringliteral floatnumber
     stringliteral functioncall func_args func_args_one func_args_empty identifier scope_identifier scope
     scope_pointer if_statement if_statement_woelse cond ifcontent_statement true_statement else_statement
-    case_statement casex_statement casez_statement unique_case_statement case_comp casecontent_statement
+    case_statement casex_statement casez_statement case_comp casecontent_statement
     casecontent_condition_single casecontent_condition_one casecontent_statement_default initial
     initial_statement while_statement whilecontent_statement empty""".split()
 )
@@ -41,6 +41,8 @@ class Grammar(VerilogParser):  # type: ignore[misc]
 
     start = "definition"
     tokens = Lexer.tokens
+    # The conditional operator is the weakest and groups to the right (clause 5.1.2); pyverilog leaves it open.
+    precedence = (("right", "COND", "COLON"), *VerilogParser.precedence)
 
     def __init__(self) -> None:
         self.lexer = Lexer()
@@ -137,7 +139,6 @@ class Grammar(VerilogParser):  # type: ignore[misc]
         | case_statement
         | casex_statement
         | casez_statement
-        | unique_case_statement
         | while_statement
         | block
         expression : fill
@@ -356,9 +357,7 @@ class Grammar(VerilogParser):  # type: ignore[misc]
         """generate_for : FOR LPAREN ID EQUALS expression SEMICOLON expression SEMICOLON step RPAREN item
         | FOR LPAREN GENVAR ID EQUALS expression SEMICOLON expression SEMICOLON step RPAREN item"""
         more = len(p) - 12
-        p[0] = tree.GenerateFor(
-            p[3 + more], p[5 + more], p[7 + more], p[9 + more], p[11 + more], p.lineno(1)
-        )
+        p[0] = tree.GenerateFor(p[3 + more], p[5 + more], p[7 + more], p[9 + more], p[11 + more], p.lineno(1))
 
     def p_generate_case(self, p: Any) -> None:
         "generate_case : CASE LPAREN expression RPAREN generate_arms ENDCASE"
@@ -373,12 +372,9 @@ class Grammar(VerilogParser):  # type: ignore[misc]
     # -- functions and tasks -------------------------------------------------------------------------------
 
     def p_subroutine(self, p: Any) -> None:
-        """subroutine : FUNCTION optional_type ID SEMICOLON block_items ENDFUNCTION
-        | FUNCTION optional_type ID portlist block_items ENDFUNCTION
-        | TASK optional_type ID SEMICOLON block_items ENDTASK
+        """subroutine : FUNCTION optional_type ID portlist block_items ENDFUNCTION
         | TASK optional_type ID portlist block_items ENDTASK"""
-        ports = p[4] if isinstance(p[4], list) else []
-        p[0] = tree.Subroutine(p[3], p[2], p[1] == "task", ports, p[5], p.lineno(3))
+        p[0] = tree.Subroutine(p[3], p[2], p[1] == "task", p[4], p[5], p.lineno(3))
 
     # -- statements ----------------------------------------------------------------------------------------
 
@@ -453,7 +449,8 @@ class Grammar(VerilogParser):  # type: ignore[misc]
         p[0] = tree.Repeat(p[3], p[5], p.lineno(1))
 
     def p_priority_case(self, p: Any) -> None:
-        """basic_statement : UNIQUE casez_statement
+        """basic_statement : UNIQUE case_statement
+        | UNIQUE casez_statement
         | UNIQUE if_statement
         | PRIORITY case_statement
         | PRIORITY casez_statement

@@ -67,7 +67,9 @@ def make_tables(grammar: Grammar) -> dict[str, Any]:
     table = yacc.LRGeneratedTable(made, "LALR", quiet)
     unforeseen = [c for c in table.sr_conflicts if c[1] != "ELSE"] + table.rr_conflicts
     if unforeseen or made.undefined_symbols() or made.find_unreachable():
-        raise ValueError(f"the grammar is ambiguous or incomplete: {unforeseen[:5]}, {made.find_unreachable()}")
+        raise ValueError(
+            f"the grammar is ambiguous or incomplete: {unforeseen[:5]}, {made.find_unreachable()}"
+        )
     rows = range(len(table.lr_action))
     return {
         "signature": signature(grammar),
@@ -111,7 +113,8 @@ def _parser() -> Any:
             yacc.MiniProduction(text, name, length, function, "", 0)
             for text, name, length, function in tables["productions"]
         ]
-        table.lr_action, table.lr_goto = tables["action"], tables["goto"]
+        table.lr_action = dict(enumerate(tables["action"]))
+        table.lr_goto = dict(enumerate(tables["goto"]))
         table.bind_callables(_productions(grammar))
         _cache["parser"] = (yacc.LRParser(table, _syntax_error), grammar.lexer)
     return _cache["parser"]

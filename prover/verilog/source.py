@@ -113,7 +113,10 @@ class _Branch:
 
 
 def read_source(
-    files: Sequence[Path | str], *, defines: Mapping[str, str] | None = None, include: Sequence[Path | str] = ()
+    files: Sequence[Path | str],
+    *,
+    defines: Mapping[str, str] | None = None,
+    include: Sequence[Path | str] = (),
 ) -> Source:
     """Read the files in order, as one compilation unit, and carry out their directives.
 
@@ -131,7 +134,9 @@ def _load(path: Path, name: str, where: Where | None) -> _File:
         reason = error.strerror or "can't be read"
         raise UserError(f"{printable(name)}: {reason}", where, "name a Verilog source file") from None
     if len(data) > MAX_FILE_BYTES:
-        raise UserError(f"{printable(name)}: more than {MAX_FILE_BYTES} bytes", where, "is this a source file?")
+        raise UserError(
+            f"{printable(name)}: more than {MAX_FILE_BYTES} bytes", where, "is this a source file?"
+        )
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError:
@@ -239,7 +244,9 @@ class _Preprocessor:
                 if kind == "opened":
                     raise UserError("this comment never ends", file.where(start), "close it with */")
                 if kind == "quote":
-                    raise UserError("this string never ends", file.where(start), 'close it with " on its line')
+                    raise UserError(
+                        "this string never ends", file.where(start), 'close it with " on its line'
+                    )
                 self._emit(lexeme, file, start)
         if branches:
             raise UserError("this conditional has no `endif", branches[-1].where)
@@ -321,7 +328,9 @@ class _Preprocessor:
         """The rest of the line with comments removed, and where the next one begins; a backslash joins lines."""
         text, parts = file.text, []
         while True:
-            found = re.compile(r'\\\n|\n|//[^\n]*|/\*.*?\*/|"(?:[^"\\\n]|\\.)*"', re.DOTALL).search(text, position)
+            found = re.compile(r'\\\n|\n|//[^\n]*|/\*.*?\*/|"(?:[^"\\\n]|\\.)*"', re.DOTALL).search(
+                text, position
+            )
             if not found:
                 parts.append(text[position:])
                 return "".join(parts), len(text)
@@ -366,7 +375,9 @@ class _Preprocessor:
             line = self._rescan(line, where, ())
         found = re.match(r'\s*(?:"([^"]+)"|<([^>]+)>)\s*$', line)
         if not found:
-            raise UserError("`include needs a file name", where, 'write `include "name.vh" on a line of its own')
+            raise UserError(
+                "`include needs a file name", where, 'write `include "name.vh" on a line of its own'
+            )
         name = found.group(1) or found.group(2)
         if Path(name).is_absolute():
             raise UserError("`include of an absolute path", where, "give its folder with --include")

@@ -183,7 +183,9 @@ def _classified(kind: str, value: str, start: int, before: list[Any]) -> Any:
         return _token(OPERATORS[value], value, start)
     if kind == "based":
         # `4 'd3` is one number, but in `#4 'd3` the 4 is a delay.
-        sized = before and before[-1].type == "NUMBER" and not (len(before) > 1 and before[-2].type == "DELAY")
+        sized = (
+            before and before[-1].type == "NUMBER" and not (len(before) > 1 and before[-2].type == "DELAY")
+        )
         if sized:
             size = before.pop()
             return _token("BASED", size.value + value, size.lineno)
@@ -218,7 +220,9 @@ def chunks(source: Source, tokens: list[Any]) -> list[Chunk]:
                     )
                 end += 1
             if end >= len(tokens):
-                raise UserError(f"{first.value} without end{first.value}", source.where(first.lineno))
+                raise UserError(
+                    f"syntax error: {first.value} without end{first.value}", source.where(first.lineno)
+                )
             body = tokens[position : end + 1]
             position = _skip_label(tokens, end + 1)
             out.append(_chunk(source, body, shared))

@@ -1,0 +1,427 @@
+"""The command line: the only place that prints and exits.
+
+Exit status: 0 proved or measured, 1 refuted, 2 usage, unreadable or unsupported input, 3 open, 70 a fault of
+ours. Options are read here and results sent on their way. Nothing heavy is imported before a command runs.
+"""
+
+from __future__ import annotations
+
+import math
+import os
+import sys
+import threading
+from collections.abc import Callable, Iterable, Sequence
+from enum import IntEnum
+from pathlib import Path
+from types import TracebackType
+from typing import TYPE_CHECKING, Any, NoReturn, TextIO
+
+import click
+
+from prover import __version__
+from prover.errors import UserError, Where
+from prover.output import STANDARD_OUTPUT, Result, check_targets, harmless, write_files
+from prover.spec import Spec, read_duty_range, read_frequency, read_number, read_pair, read_ratio
+
+if TYPE_CHECKING:
+    from prover.findings import Report
+
+PATIENCE = 1.0
+"""Seconds a run may last before it shows what it is doing."""
+
+REFRESH = 0.1
+"""Seconds between two drawings of the progress line."""
+
+LONGEST_EFFORT = 10_000_000
+"""Seconds that --effort may ask for."""
+
+
+class Status(IntEnum):
+    """What the command's exit status means."""
+
+    PROVED = 0
+    REFUTED = 1
+    USAGE = 2
+    OPEN = 3
+    FAULT = 70
+    INTERRUPTED = 130
+
+
+def status_of(report: Report) -> Status:
+    """The exit status that a report stands for: its verdict, or whether there was something to measure."""
+    if report.findings:
+        return {"proved": Status.PROVED, "refuted": Status.REFUTED, "open": Status.OPEN}[report.verdict]
+    rhythm = report.rhythm
+    if rhythm.settling.unsettled is not None:
+        return Status.REFUTED
+    known = rhythm.complete or any(orbit.wave() is not None for orbit in rhythm.orbits)
+    return Status.PROVED if known else Status.OPEN
+
+
+def status_after(work: Callable[[], object]) -> int:
+    """The status of a piece of work: what it returns if that is one, or what its failure stands for, told."""
+    try:
+        done = work()
+        return int(done) if isinstance(done, int) else Status.PROVED
+    except UserError as error:
+        _complain(_user_error(error))
+        return Status.USAGE
+    except click.exceptions.Exit as left:
+        return left.exit_code
+    except click.ClickException as error:
+        _complain(_usage_error(error))
+        return Status.USAGE
+    except (KeyboardInterrupt, click.Abort):
+        _complain("interrupted")
+        return Status.INTERRUPTED
+    except Exception as fault:
+        if _out_of_effort(fault):
+            _complain(f"open: {fault}; nothing is claimed\nhint: give more --effort")
+            return Status.OPEN
+        if os.environ.get("SUBHARMONIC_TRACEBACK"):
+            raise
+        _complain(
+            f"a fault of this program, not of your input: {type(fault).__name__}: {fault}\n"
+            "hint: set SUBHARMONIC_TRACEBACK=1 to see where, and report it with the input that shows it"
+        )
+        return Status.FAULT
+
+
+def _out_of_effort(fault: Exception) -> bool:
+    from prover.effort import OutOfEffort
+
+    return isinstance(fault, OutOfEffort)
+
+
+def _user_error(error: UserError) -> str:
+    """The message with the source line made harmless, and its caret still in place."""
+    where = error.where
+    if where is not None:
+        text = where.text.replace("\t", " ")
+        before = harmless(text[: where.column - 1])
+        where = Where(where.file, where.line, len(before) + 1, harmless(text))
+    return f"error: {UserError(error.message, where, error.hint)}"
+
+
+def _usage_error(error: click.ClickException) -> str:
+    hint = ""
+    if isinstance(error, click.UsageError) and error.ctx is not None:
+        hint = f"\nhint: see {error.ctx.command_path} --help"
+    return f"error: {error.format_message()}{hint}"
+
+
+def _complain(text: str) -> None:
+    click.echo(harmless(text), err=True)
+
+
+class Program(click.Group):
+    """The group of commands; however it is called, the status is picked in one place."""
+
+    def main(self, *args: Any, **extra: Any) -> NoReturn:
+        for stream in (sys.stdout, sys.stderr):
+            if hasattr(stream, "reconfigure"):
+                # A terminal that lacks a character shows its code, and never stops the report.
+                stream.reconfigure(errors="backslashreplace")
+        options: dict[str, Any] = {**extra, "standalone_mode": False}
+        options["prog_name"] = "subharmonic"
+        sys.exit(status_after(lambda: click.Group.main(self, *args, **options)))
+
+
+# -- options -----------------------------------------------------------------------------------------------
+
+Decorator = Callable[[Callable[..., Any]], Callable[..., Any]]
+
+
+def _options(*chosen: Decorator) -> Decorator:
+    def decorate(function: Callable[..., Any]) -> Callable[..., Any]:
+        for option in reversed(chosen):
+            function = option(function)
+        return function
+
+    return decorate
+
+
+READING = (
+    click.argument("files", nargs=-1, required=True, metavar="FILE..."),
+    click.option("--module", metavar="NAME", help="Top module."),
+    click.option("--clock", metavar="PORT", help="Input clock."),
+    click.option("--reset", metavar="PORT[=LEVEL]", help="Reset, and its active level (PORT=0: low)."),
+    click.option("--output", metavar="PORT", help="Divided clock: port, net or bit 'PORT[3]'."),
+    click.option(
+        "--set", "parameters", multiple=True, metavar="PARAM=VALUE", help="Parameter of the top module."
+    ),
+    click.option(
+        "--hold", "holds", multiple=True, metavar="PORT=VALUE", help="Value at which an input is held."
+    ),
+    click.option("--define", "defines", multiple=True, metavar="NAME=TEXT", help="Macro, as by `define."),
+    click.option("--include", multiple=True, metavar="DIR", help="Folder to look in for `include."),
+    click.option(
+        "--start",
+        type=click.Choice(["reset", "initial", "any"]),
+        help="Where the claim begins [reset if there is one].",
+    ),
+)
+CLAIMING = (
+    click.option("--ratio", required=True, metavar="N", help="Input cycles per output period, such as 2.5."),
+    click.option("--high", metavar="H", help="High time in half-cycles [N, which is 50 %]."),
+    click.option("--within", metavar="K", help="Limit on the recovery, in half-cycles."),
+    click.option("--waive", "waivers", multiple=True, metavar="PROPERTY=REASON", help="Excuse a property."),
+)
+FIGURES = (
+    click.option("--fin", metavar="FREQ", help="Input frequency, such as 50MHz."),
+    click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
+    click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60]."),
+    click.option("--json", "json_path", metavar="PATH", help="Write the report as JSON."),
+)
+TRACES = (
+    click.option(
+        "--vcd",
+        "vcd_path",
+        metavar="PATH",
+        help="Write the refuted property's wave; more of them to PATH with -PROPERTY, or all into a folder.",
+    ),
+)
+SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
+
+
+@click.group(cls=Program, context_settings=SETTINGS)
+@click.version_option(__version__, prog_name="subharmonic", message="%(prog)s %(version)s")
+def main() -> None:
+    """Prove what a hand-written Verilog clock divider does, from every state its registers can be in.
+
+    \b
+    Example:
+      subharmonic measure divider.v
+      subharmonic check divider.v --ratio 3
+    """
+
+
+@main.command(short_help="Prove or refute that a divider divides by N.")
+@_options(*CLAIMING, *READING, *FIGURES, *TRACES)
+def check(files: tuple[str, ...], json_path: str | None, vcd_path: str | None, **options: Any) -> Status:
+    """Prove or refute the sign-off properties of one divider: ratio, high time, never stuck, recovery,
+    settling.
+
+    \b
+    Example: subharmonic check divider.v --ratio 2.5 --high 2 --vcd broken.vcd
+    Exit status: 0 proved, 1 refuted, 2 unusable input, 3 open, 70 our fault.
+    A PATH of - is standard output, in place of the report for people.
+    """
+    return _run(files, options, json_path, vcd_path)
+
+
+@main.command(short_help="Tell what a divider divides by.")
+@_options(*READING, *FIGURES)
+def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> Status:
+    """Tell what a divider does: its period, its high time, and every loop that its registers can run into.
+
+    \b
+    Example: subharmonic measure divider.v --output tick
+    Exit status: 0 measured, 1 never settles, 2 bad input, 3 open, 70 our fault.
+    A PATH of - is standard output, in place of the report for people.
+    """
+    return _run(files, options, json_path, None)
+
+
+def _spec(options: dict[str, Any]) -> Spec:
+    """The options of the command line as a claim. Raises UserError for those that mean nothing."""
+    ratio, fin, duty = (options.get(name) for name in ("ratio", "fin", "source_duty"))
+    effort = options.get("effort")
+    return Spec(
+        ratio=read_ratio(ratio) if ratio is not None else None,
+        high=_number(options, "high"),
+        module=options["module"],
+        clock=options["clock"],
+        reset=options["reset"],
+        output=options["output"],
+        parameters=_numbers(options["parameters"], "--set"),
+        holds=_numbers(options["holds"], "--hold"),
+        defines=_pairs(options["defines"], "--define"),
+        include=options["include"],
+        start=options["start"],
+        within=_number(options, "within"),
+        waivers=_waivers(options.get("waivers", ())),
+        fin=read_frequency(fin) if fin is not None else None,
+        source_duty=read_duty_range(duty) if duty is not None else None,
+        **({"effort": _seconds(effort)} if effort is not None else {}),
+    )
+
+
+def _number(options: dict[str, Any], name: str) -> int | None:
+    text = options.get(name)
+    if text is None:
+        return None
+    value = read_number(text)
+    if value < 0:
+        raise UserError(f"--{name} {text}: less than nothing", hint="give a number of half-cycles")
+    return value
+
+
+def _pairs(texts: Iterable[str], option: str) -> dict[str, str]:
+    out: dict[str, str] = {}
+    for text in texts:
+        name, value = read_pair(text, option)
+        if name in out:
+            raise UserError(f"{option} {name} is given twice", hint="give it once")
+        out[name] = value
+    return out
+
+
+def _numbers(texts: Iterable[str], option: str) -> dict[str, int]:
+    return {name: read_number(value) for name, value in _pairs(texts, option).items()}
+
+
+def _waivers(texts: Iterable[str]) -> dict[str, str]:
+    waivers = _pairs(texts, "--waive")
+    for name, reason in waivers.items():
+        if not reason:
+            raise UserError(f"--waive {name}: no reason", hint="write --waive 'PROPERTY=why it is excused'")
+    return waivers
+
+
+def _seconds(text: str) -> float:
+    try:
+        value = float(text)
+    except ValueError:
+        value = math.nan
+    if not 0 < value <= LONGEST_EFFORT:
+        raise UserError(
+            f"--effort {text}: not a time", hint=f"give seconds, more than 0 and up to {LONGEST_EFFORT}"
+        )
+    return value
+
+
+# -- running -----------------------------------------------------------------------------------------------
+
+
+def _run(
+    files: Sequence[str], options: dict[str, Any], json_path: str | None, vcd_path: str | None
+) -> Status:
+    spec = _spec(options)
+    check_targets([path for path in (json_path, _target(vcd_path)) if path], files)
+    with Progress(sys.stderr) as progress:
+        from prover.api import check, measure
+
+        ask = measure if spec.ratio is None else check
+        report = ask(files, spec, progress.tell)
+        waves = _vcd(report, vcd_path)
+        results = [*_json(report, json_path), *waves]
+        check_targets([result.path for result in results], report.ports.design.files)
+        piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
+        text = "".join(piped) or _told(report, [wave.path for wave in waves])
+        write_files([result for result in results if result.path != STANDARD_OUTPUT])
+    if STANDARD_OUTPUT not in (json_path, vcd_path) or piped:
+        _print(text)
+    return status_of(report)
+
+
+def _json(report: Report, path: str | None) -> list[Result]:
+    if path is None:
+        return []
+    from prover.report import json
+
+    return [Result(path, json.render(report))]
+
+
+def _is_folder(path: str) -> bool:
+    return path.endswith(os.sep) or os.path.isdir(path)
+
+
+def _target(vcd_path: str | None) -> str | None:
+    """A path in the place where waves will go, to be checked before there are any."""
+    if vcd_path is None or not _is_folder(vcd_path):
+        return vcd_path
+    return str(Path(vcd_path) / "ratio.vcd")
+
+
+def _vcd(report: Report, path: str | None) -> list[Result]:
+    """Where each refuted property's wave goes. On standard output there is room for the first only."""
+    if path is None:
+        return []
+    from prover.report import vcd
+
+    dumps = vcd.dumps(report)
+    if path == STANDARD_OUTPUT:
+        return [Result(path, dump.text) for dump in dumps[:1]]
+    place = Path(path)
+    if _is_folder(path):
+        return [Result(str(place / f"{dump.name}.vcd"), dump.text) for dump in dumps]
+    others = [place.with_name(f"{place.stem}-{dump.name}{place.suffix}") for dump in dumps]
+    return [Result(path if i == 0 else str(others[i]), dump.text) for i, dump in enumerate(dumps)]
+
+
+def _told(report: Report, traces: Sequence[str]) -> str:
+    from prover.report import terminal
+
+    return terminal.render(report, terminal.Look(_speaks_unicode(), _has_colour()), traces) + "\n"
+
+
+def _print(text: str) -> None:
+    if sys.stdout is None:
+        return
+    try:
+        click.echo(text, nl=False, color=_has_colour())
+        sys.stdout.flush()
+    except OSError as fault:
+        # Python would try to write the rest once more when it ends.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        # A reader that has seen enough leaves the verdict standing.
+        if not isinstance(fault, BrokenPipeError):
+            raise UserError(
+                f"can't write to standard output: {fault.strerror}", hint="send it where there is room"
+            ) from fault
+
+
+def _speaks_unicode() -> bool:
+    encoding = getattr(sys.stdout, "encoding", None) or ""
+    return encoding.lower().replace("-", "") in ("utf8", "utf16", "utf32", "cp65001")
+
+
+def _has_colour() -> bool:
+    if sys.stdout is None or not sys.stdout.isatty():
+        return False
+    return not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
+
+
+class Progress:
+    """A line on the terminal that says what is being done, from a second on; nothing anywhere else.
+
+    It is gone when the run ends, and so is the thread that draws it.
+    """
+
+    def __init__(self, stream: TextIO | None) -> None:
+        self._doing = ""
+        self._over = threading.Event()
+        self._thread: threading.Thread | None = None
+        if stream is not None and stream.isatty() and os.environ.get("TERM") != "dumb":
+            self._thread = threading.Thread(target=self._draw, daemon=True)
+
+    def __enter__(self) -> Progress:
+        if self._thread is not None:
+            self._thread.start()
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, at: TracebackType | None
+    ) -> None:
+        self._over.set()
+        if self._thread is not None:
+            self._thread.join()
+
+    def tell(self, doing: str) -> None:
+        """Say what is being done."""
+        self._doing = harmless(doing)
+
+    def _draw(self) -> None:
+        if self._over.wait(PATIENCE):
+            return
+        from rich.console import Console
+        from rich.live import Live
+        from rich.spinner import Spinner
+        from rich.text import Text
+
+        spinner = Spinner("dots")
+        with Live(spinner, console=Console(stderr=True), auto_refresh=False, transient=True) as live:
+            while not self._over.wait(REFRESH):
+                spinner.update(text=Text(self._doing))
+                live.refresh()

@@ -1,0 +1,203 @@
+"""Paths: what a machine runs through, written short with nested repetition.
+
+A path is a sequence of items. A beat is one half-cycle: a state and the output's level in it. A repeat runs a
+body a number of times and adds a constant vector to every state in it each time (mod 2^width). A counter's
+pass is one repeat of two beats; a cascade's is a repeat whose body holds another. Times of billions cost
+nothing, and every question here is answered without unrolling them.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Sequence
+from dataclasses import dataclass, field
+from itertools import groupby
+
+State = tuple[int, ...]
+Run = tuple[int, int]
+"""A level and the number of half-cycles for which the output keeps it."""
+
+
+@dataclass(frozen=True, slots=True)
+class Beat:
+    """One half-cycle: the state (with every enclosing repeat in its first round) and the output's level."""
+
+    state: State
+    level: int
+
+    @property
+    def length(self) -> int:
+        return 1
+
+    @property
+    def steady(self) -> int | None:
+        """The level, as for a repeat."""
+        return self.level
+
+
+@dataclass(frozen=True, slots=True)
+class Repeat:
+    """The body `times` times over, `stride` added to its states each time.
+
+    `length` is in half-cycles; `steady` is the output's level if it never changes within, else None."""
+
+    times: int
+    stride: State
+    body: tuple[Item, ...]
+    length: int = field(init=False)
+    steady: int | None = field(init=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "length", self.times * length(self.body))
+        levels = {item.steady for item in self.body}
+        object.__setattr__(self, "steady", levels.pop() if len(levels) == 1 else None)
+
+
+Item = Beat | Repeat
+Path = tuple[Item, ...]
+
+
+def length(path: Sequence[Item]) -> int:
+    """Half-cycles from the path's first beat to the end of its last."""
+    return sum(item.length for item in path)
+
+
+def merged(runs: Iterable[Run]) -> Iterator[Run]:
+    """Neighbouring runs of one level joined."""
+    for level, group in groupby(runs, key=lambda run: run[0]):
+        yield level, sum(size for _, size in group)
+
+
+def pieces(path: Sequence[Item]) -> Iterator[Run]:
+    """The output's levels with their half-cycles, in order; neighbours may have one level."""
+    for item in path:
+        if item.steady is not None:
+            yield item.steady, item.length
+        elif isinstance(item, Repeat):
+            for _ in range(item.times):
+                yield from pieces(item.body)
+
+
+def changes(path: Sequence[Item], limit: int) -> int:
+    """The number of pieces of the path's output, or more than the limit."""
+    total = 0
+    for item in path:
+        if item.steady is not None or isinstance(item, Beat):
+            total += 1
+        else:
+            total += item.times * changes(item.body, limit)
+        if total > limit:
+            return total
+    return total
+
+
+def moved(state: State, stride: State, times: int, widths: Sequence[int]) -> State:
+    """state + times · stride, each component mod 2^width."""
+    return tuple((v + times * d) & ((1 << w) - 1) for v, d, w in zip(state, stride, widths, strict=True))
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """Where in a path a half-cycle lies.
+
+    state   the machine's state there
+    level   the output there
+    calm    half-cycles, this one included, until the path leaves the innermost repeat
+    around  the innermost repeat, with the number of half-cycles into one of its rounds; None outside any
+    """
+
+    state: State
+    level: int
+    calm: int
+    around: tuple[Repeat, int] | None
+
+
+def place(path: Sequence[Item], at: int, widths: Sequence[int]) -> Place:
+    """The place `at` half-cycles after the path's start. Raises IndexError beyond its end."""
+    offset: State = (0,) * len(widths)
+    around: tuple[Repeat, int] | None = None
+    calm = 1
+    items: Sequence[Item] = path
+    while True:
+        for item in items:
+            if at < item.length:
+                break
+            at -= item.length
+        else:
+            raise IndexError("beyond the end of the path")
+        if isinstance(item, Beat):
+            return Place(moved(item.state, offset, 1, widths), item.level, calm, around)
+        calm = item.length - at
+        round_length = item.length // item.times
+        times, at = divmod(at, round_length)
+        offset = moved(offset, item.stride, times, widths)
+        around = (item, at)
+        items = item.body
+
+
+def first_state(path: Sequence[Item]) -> State:
+    """The state in the path's first half-cycle."""
+    item = path[0]
+    while isinstance(item, Repeat):
+        item = item.body[0]
+    return item.state
+
+
+def last_beat(path: Sequence[Item], widths: Sequence[int]) -> Beat:
+    """The path's last half-cycle, every repeat in it in its last round."""
+    offset: State = (0,) * len(widths)
+    item = path[-1]
+    while isinstance(item, Repeat):
+        offset = moved(offset, item.stride, item.times - 1, widths)
+        item = item.body[-1]
+    return Beat(moved(item.state, offset, 1, widths), item.level)
+
+
+def beats(path: Sequence[Item]) -> Iterator[Beat]:
+    """Every beat as written, each repeat's body once."""
+    stack = list(reversed(path))
+    while stack:
+        item = stack.pop()
+        if isinstance(item, Beat):
+            yield item
+        else:
+            stack.extend(reversed(item.body))
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """A claim of a path: for all indices within the axes, `source` steps to `target` and shows `level`.
+
+    Both states have the sum of index · stride over the axes added to them. An axis is (count, stride)."""
+
+    source: State
+    target: State
+    level: int
+    axes: tuple[tuple[int, State], ...]
+
+
+def steps(path: Sequence[Item], widths: Sequence[int], then: State | None) -> Iterator[Step]:
+    """Everything that has to hold for the machine to run through the path, and from its end to `then`.
+
+    Without `then` the last beat's successor is not claimed, only its level: its step is given with target
+    equal to source and has to be dropped by the caller if that is not wanted, so it is not given at all.
+    """
+    yield from _steps(path, widths, then, ())
+
+
+def _steps(
+    path: Sequence[Item], widths: Sequence[int], then: State | None, axes: tuple[tuple[int, State], ...]
+) -> Iterator[Step]:
+    for i, item in enumerate(path):
+        following = first_state(path[i + 1 :]) if i + 1 < len(path) else then
+        if isinstance(item, Repeat):
+            inner = (*axes, (item.times, item.stride))
+            yield from _steps(item.body, widths, None, inner)
+            last = last_beat(item.body, widths)
+            if item.times > 1:
+                back = moved(first_state(item.body), item.stride, 1, widths)
+                yield Step(last.state, back, last.level, (*axes, (item.times - 1, item.stride)))
+            last = last_beat((item,), widths)
+        else:
+            last = item
+        if following is not None:
+            yield Step(last.state, following, last.level, axes)

@@ -1,0 +1,186 @@
+"""The report for machines, schema "subharmonic/report-1": key order is stable, and times are half-cycles
+unless the key says otherwise. Keys may be added; none is renamed."""
+
+from __future__ import annotations
+
+from json import dumps
+from typing import Any
+
+from prover.errors import Where
+from prover.facts import LIMITS
+from prover.findings import Counterexample, Finding, Obligation, Report
+from prover.rhythm import Loop, Orbit, Rhythm, Start
+from prover.settling import Unsettled
+from prover.system import State
+
+SCHEMA = "subharmonic/report-1"
+
+MOST_RUNS = 64
+"""Runs of a wave that are written out; `wave_cut` gives the number of all where there are more, else null."""
+
+MOST_LOOPS = 10_000
+"""Loops that are written out; `loops_found` is the number of all."""
+
+MOST_MICRO_STEPS = 64
+
+Object = dict[str, Any]
+
+
+def render(report: Report) -> str:
+    """The report as JSON text, one object, ended by a newline."""
+    return dumps(as_object(report), indent=2) + "\n"
+
+
+def as_object(report: Report) -> Object:
+    """The report as plain dictionaries and lists."""
+    return {
+        "schema": SCHEMA,
+        "verdict": verdict(report),
+        "design": _design(report),
+        "spec": _spec(report),
+        "measured": _measured(report.rhythm),
+        "properties": [_property(finding, report.rhythm) for finding in report.findings],
+        "facts": dict(report.facts),
+        "assumptions": list(report.assumptions),
+        "notes": list(report.notes),
+        "limits": LIMITS,
+        "seconds": round(report.seconds, 3),
+    }
+
+
+def verdict(report: Report) -> str | None:
+    """The overall verdict; null for a measurement, which claims nothing."""
+    return report.verdict if report.findings else None
+
+
+def _design(report: Report) -> Object:
+    ports, design = report.ports, report.ports.design
+    reset = ports.reset
+    return {
+        "top": design.top,
+        "files": list(design.files),
+        "clock": ports.clock,
+        "reset": {"port": reset.port, "active": reset.active, "kind": reset.kind} if reset else None,
+        "output": ports.output,
+        "parameters": dict(design.parameters),
+        "holds": dict(ports.holds),
+        "state_bits": design.state_bits,
+        "sha256": design.sha256,
+    }
+
+
+def _spec(report: Report) -> Object:
+    spec = report.spec
+    claimed = spec.ratio is not None
+    return {
+        "ratio": spec.ratio_text if claimed else None,
+        "period_half_cycles": spec.period if claimed else None,
+        "high_half_cycles": spec.high_half_cycles if claimed else None,
+        "within": spec.within,
+    }
+
+
+def _measured(rhythm: Rhythm) -> Object:
+    starts = list(zip(rhythm.starts, rhythm.orbits, strict=True))
+    return {
+        "from_reset": _from_reset(rhythm),
+        "loops": [_loop(loop, rhythm) for loop in rhythm.loops[:MOST_LOOPS]],
+        "complete": rhythm.complete,
+        "loops_found": len(rhythm.loops),
+        "scope": rhythm.scope,
+        "reset_half_cycles": rhythm.reset_half_cycles,
+        "starts": [_start(start, orbit, rhythm) for start, orbit in starts],
+        "open": rhythm.open,
+    }
+
+
+def _from_reset(rhythm: Rhythm) -> Object | None:
+    """The wave of the first start state that has one (reset released at either level, or initial values)."""
+    for orbit in rhythm.orbits:
+        wave = _wave(orbit)
+        if wave["period_half_cycles"] is not None:
+            return wave
+    return None
+
+
+def _wave(orbit: Orbit) -> Object:
+    wave = orbit.wave()
+    runs = wave.runs if wave else ()
+    return {
+        "period_half_cycles": wave.period if wave else None,
+        "high_half_cycles": wave.high if wave else None,
+        "wave": [list(run) for run in runs[:MOST_RUNS]] if wave else None,
+        "wave_cut": len(runs) if len(runs) > MOST_RUNS else None,
+    }
+
+
+def _start(start: Start, orbit: Orbit, rhythm: Rhythm) -> Object:
+    return {
+        "cause": start.cause,
+        "state": rhythm.system.describe(start.state),
+        **_wave(orbit),
+        "lead_half_cycles": orbit.lead_half_cycles if orbit.loop_from is not None else None,
+        "loop_half_cycles": orbit.loop_half_cycles,
+        "open": orbit.why,
+    }
+
+
+def _loop(loop: Loop, rhythm: Rhythm) -> Object:
+    return {
+        "period_half_cycles": loop.wave.period,
+        "high_half_cycles": loop.wave.high,
+        "good": loop.good,
+        "stuck": loop.stuck,
+        "states": loop.length,
+        "example": rhythm.system.describe(loop.example),
+    }
+
+
+def _property(finding: Finding, rhythm: Rhythm) -> Object:
+    out: Object = {
+        "name": finding.name,
+        "verdict": finding.verdict,
+        "claim": finding.claim,
+        "says": finding.says,
+        "method": finding.method,
+        "bound": finding.bound,
+        "facts": dict(finding.facts),
+        "obligations": [_obligation(obligation) for obligation in finding.obligations],
+        "counterexample": _counterexample(finding.counterexample, rhythm),
+        "waived": finding.waived,
+    }
+    if finding.unsettled is not None:
+        out["unsettled"] = _unsettled(finding.unsettled, rhythm)
+    return out
+
+
+def _obligation(obligation: Obligation) -> Object:
+    return {"text": obligation.text, "register": obligation.register, **_where(obligation.where)}
+
+
+def _where(where: Where) -> Object:
+    return {"file": where.file, "line": where.line, "source": where.text.strip()}
+
+
+def _counterexample(broken: Counterexample | None, rhythm: Rhythm) -> Object | None:
+    if broken is None:
+        return None
+    return {
+        "cause": broken.cause,
+        "start": rhythm.system.describe(broken.orbit.start),
+        "begins": broken.begins,
+        "ends": broken.ends,
+        "text": broken.text,
+    }
+
+
+def _unsettled(unsettled: Unsettled, rhythm: Rhythm) -> Object:
+    def told(state: State) -> dict[str, int]:
+        return rhythm.system.describe(state)
+
+    return {
+        "power_up": unsettled.power_up,
+        "state": told(unsettled.state),
+        "micro_steps": len(unsettled.cycle),
+        "cycle": [told(state) for state in unsettled.cycle[:MOST_MICRO_STEPS]],
+    }

@@ -1,0 +1,212 @@
+"""Waves for a viewer: a counterexample as a value change dump, one time unit a half-cycle.
+
+The dump covers the lead-in and once round the loop (or to the end of what is broken, if that is later), with
+every register, the input clock, the output and what is held. Long stretches are elided: their first and last
+half-cycles stand at their true times, and what moves in between is x meanwhile. A comment lists what is
+elided. There is no date: the same input gives the same bytes. The format is that of IEEE 1364-2005 clause 18.
+"""
+
+from __future__ import annotations
+
+import io
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from prover import __version__
+from prover.findings import Counterexample, Finding, Report
+from prover.report.wave import Piece, Timeline
+from prover.settling import Unsettled
+
+END_SHOWN = 16
+"""Half-cycles shown at either end of a stretch that is elided."""
+
+MOST_SHOWN = 100_000
+"""Half-cycles shown in one dump, which caps its size."""
+
+MOST_LISTED = 32
+"""Elided ranges that the comment lists; it counts the rest."""
+
+
+@dataclass(frozen=True, slots=True)
+class Dump:
+    """A dump and the property whose counterexample it is."""
+
+    name: str
+    text: str
+
+
+def dumps(report: Report) -> list[Dump]:
+    """One dump for each finding that has a trace, in the order of the report."""
+    return [Dump(f.name, text) for f in report.findings if (text := render(report, f)) is not None]
+
+
+def render(report: Report, finding: Finding) -> str | None:
+    """The finding's trace as a dump; None if it has none."""
+    if finding.counterexample is not None:
+        return _trace(report, finding.name, finding.counterexample)
+    if finding.unsettled is not None:
+        return _micro_steps(report, finding.name, finding.unsettled)
+    return None
+
+
+def _trace(report: Report, name: str, broken: Counterexample) -> str:
+    timeline = Timeline(broken.orbit)
+    # One input cycle more, so that the edge that ends what is broken is seen.
+    ends = timeline.end(max(timeline.once, broken.ends) + 2)
+    pieces = choose(timeline, ends, broken.begins, broken.ends)
+    loop = f"{timeline.loop} half-cycles from time {timeline.lead} on" if timeline.loop else "not closed"
+    comment = [
+        f"{name}: {broken.text}",
+        f"start: {broken.cause}; one time unit is one half-cycle of {report.ports.clock}",
+        f"broken from time {broken.begins} to {broken.ends}; loop: {loop}",
+        *_elided([piece for piece in pieces if piece.folded]),
+    ]
+    file = _File(report, comment)
+    for piece in pieces:
+        if piece.folded:
+            file.put(piece.begins, timeline.steady(piece.begins, piece.ends))
+            continue
+        for time in range(piece.begins, piece.ends):
+            file.put(time, (*timeline.state(time), timeline.level(time)))
+    return file.close(ends)
+
+
+def _elided(folded: Sequence[Piece]) -> Iterator[str]:
+    for piece in folded[:MOST_LISTED]:
+        yield f"elided: {piece.length} half-cycles, time {piece.begins} to {piece.ends}; what moves is x"
+    if len(folded) > MOST_LISTED:
+        yield f"elided: {len(folded) - MOST_LISTED} more ranges"
+
+
+def choose(timeline: Timeline, ends: int, broken_from: int, broken_to: int) -> list[Piece]:
+    """What is shown of the half-cycles up to `ends`: all but the middles of long stretches, and where that is
+    still too much, the beginning, what is around the ends of the broken range, and the end."""
+    windows: list[tuple[int, int]] | None = None
+    if ends > MOST_SHOWN and _shown_in_full(timeline, ends) > MOST_SHOWN:
+        part = MOST_SHOWN // 8
+        around = [(at - part, at + part) for at in (part, broken_from, broken_to, ends - part)]
+        windows = sorted((max(0, a), min(ends, b)) for a, b in around)
+        return _windowed(timeline, ends, windows)
+    return _merged(_stretch_by_stretch(timeline, 0, ends))
+
+
+def _shown_in_full(timeline: Timeline, ends: int) -> int:
+    return sum(min(length, 2 * END_SHOWN) for length in timeline.regular(0, ends))
+
+
+def _stretch_by_stretch(timeline: Timeline, begins: int, ends: int) -> Iterator[Piece]:
+    at = begins
+    for length in timeline.regular(begins, ends):
+        if length <= 4 * END_SHOWN:
+            yield Piece(at, at + length)
+        else:
+            yield Piece(at, at + END_SHOWN)
+            yield Piece(at + END_SHOWN, at + length - END_SHOWN, folded=True)
+            yield Piece(at + length - END_SHOWN, at + length)
+        at += length
+
+
+def _merged(pieces: Iterator[Piece]) -> list[Piece]:
+    """Neighbouring pieces that are shown, joined."""
+    out: list[Piece] = []
+    for piece in pieces:
+        if out and not out[-1].folded and not piece.folded:
+            out[-1] = Piece(out[-1].begins, piece.ends)
+        else:
+            out.append(piece)
+    return out
+
+
+def _windowed(timeline: Timeline, ends: int, windows: Sequence[tuple[int, int]]) -> list[Piece]:
+    pieces: list[Piece] = []
+    at = 0
+    for begins, upto in windows:
+        if at < begins:
+            pieces.append(Piece(at, begins, folded=True))
+        if max(at, begins) < upto:
+            pieces += _stretch_by_stretch(timeline, max(at, begins), upto)
+        at = max(at, upto)
+    if at < ends:
+        pieces.append(Piece(at, ends, folded=True))
+    return _merged(iter(pieces))
+
+
+def _micro_steps(report: Report, name: str, unsettled: Unsettled) -> str:
+    """Twice through the round of micro-steps that never ends, one time unit each."""
+    when = "with no clock edge" if unsettled.power_up else "at a clock edge"
+    count = len(unsettled.cycle)
+    comment = [
+        f"{name}: {count} micro-steps that repeat for ever {when}",
+        "one time unit is one micro-step: no time passes between them",
+    ]
+    file = _File(report, comment)
+    system = report.rhythm.system
+    shown = [*unsettled.cycle, *unsettled.cycle][:MOST_SHOWN]
+    for time, state in enumerate(shown):
+        file.put(time, (*state, system.out(state)))
+    return file.close(len(shown))
+
+
+# -- the file ----------------------------------------------------------------------------------------------
+
+
+class _File:
+    """A dump being written: one variable for each register, the clock, the output and every held input."""
+
+    def __init__(self, report: Report, comment: Sequence[str]) -> None:
+        from vcd import VCDWriter
+
+        self._text = io.StringIO()
+        self._writer = VCDWriter(
+            self._text,
+            timescale="1 ns",
+            date="",
+            comment="\n".join(_plain(line) for line in comment),
+            version=f"Subharmonic {__version__}",
+        )
+        self._taken: set[tuple[str, ...]] = set()
+        top = _word(report.ports.design.top)
+        system = report.rhythm.system
+        kinds = ["reg"] * (len(system.variables) - 1) + ["wire"]
+        self._variables = [
+            self._declare(top, name, width, kind)
+            for (name, width), kind in zip(system.variables, kinds, strict=True)
+        ]
+        # A register that is the output under its own name is not declared twice.
+        output = report.ports.output
+        self._variables.append(None if output in system.names else self._declare(top, output, 1, "wire"))
+        for name, value in report.ports.running.values:
+            self._declare(top, name, report.ports.design.inputs[name], "wire", value)
+
+    def _declare(self, top: str, name: str, width: int, kind: str, value: int | None = None) -> Any:
+        *scopes, last = [_word(part) for part in name.split(".")]
+        path = (top, *scopes, last)
+        count = 1
+        while path in self._taken:
+            count += 1
+            path = (top, *scopes, f"{last}_{count}")
+        self._taken.add(path)
+        init = "x" if value is None else value
+        return self._writer.register_var(path[:-1], path[-1], kind, size=width, init=init)
+
+    def put(self, time: int, values: Sequence[int | None]) -> None:
+        """The values of the state and the output from a time on; None is x."""
+        for variable, value in zip(self._variables, values, strict=True):
+            if variable is not None:
+                self._writer.change(variable, time, "x" if value is None else value)
+
+    def close(self, time: int) -> str:
+        self._writer.close(time)
+        return self._text.getvalue()
+
+
+def _plain(text: str) -> str:
+    """Text that can stand in a comment: ASCII, one line, no keyword that would end it."""
+    return text.encode("ascii", "backslashreplace").decode("ascii").replace("\n", " ").replace("$", "")
+
+
+def _word(name: str) -> str:
+    """A name that every reader takes as one word; what a dump can't hold is replaced by underscores."""
+    kept = "".join(c if "!" <= c <= "~" and c != "$" else "_" for c in name)
+    return kept or "_"

@@ -1,0 +1,793 @@
+"""Expressions by the width and sign rules of IEEE 1364-2005 clause 5.
+
+An expression is read in two passes, as clause 5.4 and 5.5 have it: `type_of` finds from the operands up how
+wide and of which sign it is on its own, `build` carries the type of the context down to the operands that
+take it and makes the word. Both are generators for `deep.run`. What the standard calls x is a choice: a
+fresh variable that may have any value.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import Any, NamedTuple, Protocol
+
+from pyverilog.vparser import ast as vast
+
+from prover import expr as e
+from prover.expr import Expr
+from prover.verilog import tree
+from prover.verilog.deep import Task, run
+from prover.verilog.names import MAX_WIDTH, Constant, Net, Report, Routine, Type
+from prover.verilog.source import printable
+from prover.verilog.words import cut
+
+_CAST_TYPES = {"int": Type(32, True), "integer": Type(32, True), "byte": Type(8, True), "shortint": Type(16, True),
+               "longint": Type(64, True), "bit": Type(1, False), "logic": Type(1, False)}  # fmt: skip
+_RADIX = {"b": 1, "o": 3, "h": 4}
+
+
+class Env(Protocol):
+    """What an expression is read against."""
+
+    @property
+    def report(self) -> Report:
+        """Where refusals and notes go."""
+
+    def find(self, node: Any) -> Any:
+        """The Net, Constant or Routine that an identifier stands for; UserError if nothing."""
+
+    def read(self, net: Net, node: Any) -> Expr:
+        """The present word of a net; UserError where only constants may stand."""
+
+    def call(self, routine: Routine, arguments: tuple[Any, ...], node: Any) -> Task[Expr]:
+        """The result of a function call."""
+
+
+class Value(NamedTuple):
+    """A word and its sign."""
+
+    word: Expr
+    signed: bool
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """A net or a part of it: `word` picks a memory's word, `low` the lowest bit, both counted from 0 at the
+    bottom. A number is a constant; an expression is signed and wide enough not to wrap."""
+
+    net: Net | Constant
+    word: int | Expr | None
+    low: int | Expr
+    width: int
+    signed: bool
+
+
+# -- literals ----------------------------------------------------------------------------------------------
+
+
+@lru_cache(maxsize=4096)
+def literal(text: str) -> Constant:
+    """The constant that a number stands for (clause 3.5.1). Raises ValueError with the reason if none."""
+    text = re.sub(r"\s|_", "", text).lower()
+    size, tick, rest = text.partition("'")
+    if not tick:
+        number = int(size)
+        # Without a size a number has at least 32 bits; a larger one has as many as it needs.
+        return Constant(number, 0, 0, Type(max(32, number.bit_length() + 1), True), sized=False)
+    signed = rest.startswith("s")
+    base, digits = rest[signed], rest[signed + 1 :]
+    bits, x, z = _decimal(digits) if base == "d" else _digits(digits, base)
+    natural = max(1, len(digits) * _RADIX[base] if base != "d" else bits.bit_length())
+    width = int(size) if size else max(32, natural if natural > 32 or base != "d" else 32)
+    if not 1 <= width <= MAX_WIDTH:
+        raise ValueError(f"a width of {width} bits")
+    if digits[0] in "xz?" and width > natural:
+        fill = ((1 << width) - 1) ^ ((1 << natural) - 1)
+        x, z = (x | fill, z) if digits[0] == "x" else (x, z | fill)
+    mask = (1 << width) - 1
+    return Constant(bits & mask, x & mask, z & mask, Type(width, signed), bool(size))
+
+
+def _decimal(digits: str) -> tuple[int, int, int]:
+    if digits in ("x", "z", "?"):
+        return 0, *((1, 0) if digits == "x" else (0, 1))
+    if not digits.isdecimal():
+        raise ValueError(f"{digits!r} is no decimal number")
+    if len(digits) > 20_000:
+        raise ValueError("a number of more than 20 000 digits")
+    return int(digits), 0, 0
+
+
+def _digits(digits: str, base: str) -> tuple[int, int, int]:
+    shift = _RADIX[base]
+    if len(digits) > MAX_WIDTH:
+        raise ValueError(f"a number of more than {MAX_WIDTH} digits")
+    planes = []
+    for mapping in ("0", "x", "z"):
+        ones = format((1 << shift) - 1, "x")
+        hexed = []
+        for digit in digits:
+            known = digit not in "xz?"
+            if known and int(digit, 36) >= 1 << shift:
+                raise ValueError(f"digit {digit!r} in a number of base {1 << shift}")
+            if mapping == "0":
+                hexed.append(digit if known else "0")
+            else:
+                hexed.append(ones if (digit == "x") == (mapping == "x") and not known else "0")
+        planes.append(int("".join(hexed), 1 << shift))
+    return planes[0], planes[1], planes[2]
+
+
+def constant_word(report: Report, constant: Constant, to: Type) -> Expr:
+    """The word of a constant in a context; each run of x or z bits is a fresh choice."""
+    width, unknown = constant.type.width, constant.x | constant.z
+    if not unknown:
+        return e.resize(e.const(constant.bits, width), to.width, to.signed)
+    if not constant.sized and unknown >> (width - 1) & 1 and to.width > width:
+        # A leading x or z without a size goes on to the left (clause 3.5.1).
+        unknown |= ((1 << to.width) - 1) ^ ((1 << width) - 1)
+        width = to.width
+    parts, low = [], 0
+    while low < width:
+        high = low
+        while high + 1 < width and (unknown >> (high + 1) & 1) == (unknown >> low & 1):
+            high += 1
+        size = high - low + 1
+        parts.append(report.choice(size) if unknown >> low & 1 else e.const(constant.bits >> low, size))
+        low = high + 1
+    return e.resize(e.concat_all(parts[::-1]), to.width, to.signed)
+
+
+# -- parts of words ----------------------------------------------------------------------------------------
+
+
+def read_part(report: Report, place: Place, whole: Expr) -> Expr:
+    """The bits that the place picks; what lies outside is a choice."""
+    word = whole
+    if isinstance(place.net, Net) and place.net.words:
+        size = place.net.type.width
+        if isinstance(place.word, int):
+            word = cut(whole, place.word * size + size - 1, place.word * size)
+        else:
+            assert place.word is not None
+            count = place.net.count
+            word = report.choice(size)
+            if _fits(place.word, count):
+                count -= 1
+                word = cut(whole, count * size + size - 1, count * size)
+            for k in reversed(range(count)):
+                here = cut(whole, k * size + size - 1, k * size)
+                word = e.ite(e.eq(place.word, e.const(k, place.word.width)), here, word)
+    if isinstance(place.low, int):
+        return cut(word, place.low + place.width - 1, place.low)
+    if place.width == 1 and _fits(place.low, word.width):
+        return _shifted(word, place.low, 1)
+    # The word with choices on both sides, so that a part that sticks out reads its inner bits exactly.
+    more = place.width
+    padded = e.concat_all([report.choice(more), word, report.choice(more)])
+    low, inside = _offset(place.low, more, word.width)
+    return e.ite(inside, _shifted(padded, low, place.width), report.choice(place.width))
+
+
+def write_part(place: Place, whole: Expr, value: Expr) -> Expr:
+    """The whole word with the bits that the place picks replaced; what lies outside is dropped."""
+    net = place.net
+    assert isinstance(net, Net)
+    if not net.words:
+        return _put(whole, place.low, place.width, value)
+    size = net.type.width
+    words = [cut(whole, k * size + size - 1, k * size) for k in range(net.count)]
+    for k, word in enumerate(words):
+        if isinstance(place.word, int):
+            if k == place.word:
+                words[k] = _put(word, place.low, place.width, value)
+        else:
+            assert place.word is not None
+            here = e.eq(place.word, e.const(k, place.word.width))
+            words[k] = e.ite(here, _put(word, place.low, place.width, value), word)
+    return e.concat_all(words[::-1])
+
+
+def written_mask(place: Place) -> int:
+    """The bits of the whole word that a write to the place may reach."""
+    net = place.net
+    assert isinstance(net, Net)
+    size = net.type.width
+    inner = (1 << size) - 1
+    if isinstance(place.low, int):
+        inner = ((1 << place.width) - 1) << place.low
+    if isinstance(place.word, int):
+        return inner << place.word * size
+    return sum(inner << k * size for k in range(net.count)) if net.words else inner
+
+
+def _fits(low: Expr, width: int) -> bool:
+    """A position that was only widened from an unsigned index can't be negative nor reach the width."""
+    return low.op == "zero_extend" and 1 << low.args[0].width <= width
+
+
+def _offset(low: Expr, more: int, width: int) -> tuple[Expr, Expr]:
+    """The position counted from `more` bits below, and whether any picked bit lies inside the word."""
+    size = max(low.width, (width + 2 * more).bit_length()) + 2
+    moved = e.bvadd(e.resize(low, size, signed=True), e.const(more, size))
+    inside = e.bvand(e.bvslt(e.const(0, size), moved), e.bvslt(moved, e.const(width + more, size)))
+    return moved, inside
+
+
+def _shifted(word: Expr, low: Expr, width: int) -> Expr:
+    size = max(word.width, low.width)
+    moved = e.binary("bvlshr", e.resize(word, size, False), e.resize(low, size, False))
+    return cut(moved, width - 1, 0)
+
+
+def _put(word: Expr, low: int | Expr, width: int, value: Expr) -> Expr:
+    if isinstance(low, int):
+        parts = [value]
+        if low + width < word.width:
+            parts.insert(0, cut(word, word.width - 1, low + width))
+        if low:
+            parts.append(cut(word, low - 1, 0))
+        return e.concat_all(parts)
+    if width == 1 and word.width <= 64:
+        bits = [
+            e.ite(e.eq(low, e.const(i, low.width)), value, cut(word, i, i))
+            if i >> (low.width - 1) == 0
+            else cut(word, i, i)
+            for i in range(word.width)
+        ]
+        return e.concat_all(bits[::-1])
+    moved, inside = _offset(low, width, word.width)
+    size = max(word.width + 2 * width, moved.width)
+    amount = e.resize(moved, size, False)
+    padded = e.zero_extend(e.concat(word, e.const(0, width)), size - word.width - width)
+    hole = e.bvnot(e.binary("bvshl", e.const((1 << width) - 1, size), amount))
+    filled = e.binary("bvshl", e.resize(value, size, False), amount)
+    changed = e.bvor(e.bvand(padded, hole), filled)
+    return e.ite(inside, cut(changed, width + word.width - 1, width), word)
+
+
+# -- the two passes ----------------------------------------------------------------------------------------
+
+
+class Sizer:
+    """Reads one expression; types that were found are kept for the second pass."""
+
+    def __init__(self, env: Env) -> None:
+        self.env = env
+        self.report = env.report
+        self.types: dict[int, Type] = {}
+        self.places: dict[int, Place] = {}
+
+    def type_of(self, node: Any) -> Task[Type]:
+        """The type of the node on its own (clauses 5.4.1 and 5.5.1)."""
+        known = self.types.get(id(node))
+        if known is None:
+            rule = _TYPE_RULES.get(type(node))
+            if rule is None:
+                self._refuse(node)
+            found: Type = yield rule(self, node)
+            if found.width > MAX_WIDTH:
+                self.report.fail(
+                    f"an expression of {found.width} bits", node, f"at most {MAX_WIDTH} are read"
+                )
+            self.types[id(node)] = known = found
+        return known
+
+    def build(self, node: Any, to: Type) -> Task[Expr]:
+        """The node's word in a context of the given type, which is at least as wide as its own."""
+        rule = _BUILD_RULES[type(node)]
+        word: Expr = yield rule(self, node, to)
+        return word
+
+    def alone(self, node: Any) -> Task[Value]:
+        """The node where nothing around it counts (self-determined)."""
+        own: Type = yield self.type_of(node)
+        word: Expr = yield self.build(node, own)
+        return Value(word, own.signed)
+
+    def condition(self, node: Any) -> Task[Expr]:
+        """One bit: the node is not zero."""
+        value: Value = yield self.alone(node)
+        return e.nonzero(value.word)
+
+    def assigned(self, node: Any, width: int) -> Task[Expr]:
+        """The node as the right side of an assignment to `width` bits (clause 5.4.1, last paragraph)."""
+        own: Type = yield self.type_of(node)
+        word: Expr = yield self.build(node, Type(max(width, own.width), own.signed))
+        if word.is_const and width < word.width:
+            negative = own.signed and bool(word.value >> (word.width - 1))
+            number = word.value - (1 << word.width) if negative else word.value
+            if not -(1 << (width - 1)) <= number < 1 << width:
+                left = word.value & ((1 << width) - 1)
+                self.report.note(f"constant {number} is cut to {width} bits and becomes {left}", node)
+        return cut(word, width - 1, 0) if width < word.width else e.resize(word, width, own.signed)
+
+    def constant(self, node: Any, what: str) -> Task[Constant]:
+        """The node as a constant; UserError names `what` needs it."""
+        bare = self.pattern(node)
+        if bare is not None:
+            return bare
+        value: Value = yield self.alone(node)
+        if not value.word.is_const:
+            self.report.fail(f"{what} must be a known constant", node)
+        return Constant(value.word.value, 0, 0, Type(value.word.width, value.signed))
+
+    def number(self, node: Any, what: str) -> Task[int]:
+        """The node as a whole number."""
+        found: Constant = yield self.constant(node, what)
+        if found.x | found.z:
+            self.report.fail(f"{what} can't be x or z", node)
+        return found.number
+
+    def pattern(self, node: Any) -> Constant | None:
+        """The constant that a literal or a parameter's name stands for, with its x and z digits."""
+        if isinstance(node, vast.IntConst):
+            return self._literal(node)
+        if isinstance(node, vast.Identifier):
+            found = self.env.find(node)
+            return found if isinstance(found, Constant) else None
+        return None
+
+    def _literal(self, node: Any) -> Constant:
+        try:
+            found = literal(node.value)
+        except ValueError as error:
+            self.report.fail(f"{printable(node.value[:40])}: {error}", node)
+        size, tick, _ = node.value.partition("'")
+        if tick and size.strip() and not found.x | found.z:
+            full = literal("'" + node.value.partition("'")[2]).bits
+            if full != found.bits:
+                self.report.note(
+                    f"constant {printable(node.value[:40])} doesn't fit its size and becomes {found.bits}",
+                    node,
+                )
+        return found
+
+    def _refuse(self, node: Any) -> Any:
+        if isinstance(node, vast.FloatConst):
+            self.report.fail("real numbers aren't supported", node, "write an integer")
+        if isinstance(node, vast.StringConst):
+            self.report.fail("a string has no place in an expression here", node)
+        self.report.fail(f"{type(node).__name__} isn't supported in an expression", node)
+
+    # -- names and their parts -----------------------------------------------------------------------------
+
+    def place(self, node: Any) -> Task[Place]:
+        """What a name with selects stands for (clause 5.2)."""
+        known = self.places.get(id(node))
+        if known is not None:
+            return known
+        chain, base = [], node
+        while not isinstance(base, vast.Identifier):
+            chain.append(base)
+            base = base.var
+        chain.reverse()
+        found = self.env.find(base)
+        if isinstance(found, Routine):
+            self.report.fail(f"{printable(found.name)} is a routine, not a value", base)
+        name = printable(base.name)
+        word: int | Expr | None = None
+        if isinstance(found, Net) and found.words:
+            if not chain or not isinstance(chain[0], vast.Pointer):
+                self.report.fail(f"memory {name} can only be used word by word", node, f"write {name}[index]")
+            first, last = found.words
+            word = yield self._position(
+                chain.pop(0).ptr, max(first, last), min(first, last), found.count, name
+            )
+        msb, lsb = _bounds(found)
+        type_ = found.type
+        low: int | Expr = 0
+        width, signed = type_.width, type_.signed
+        if chain:
+            if len(chain) > 1:
+                self.report.fail(f"{name} has no further part to select", chain[1])
+            low, width = yield self._select(chain[0], msb, lsb, type_.width, name)
+            signed = False
+        made = Place(found, word, low, width, signed)
+        self.places[id(node)] = made
+        return made
+
+    def _position(self, node: Any, msb: int, lsb: int, count: int, name: str) -> Task[int | Expr]:
+        """Where an index points, counted from the bottom."""
+        value: Value = yield self.alone(node)
+        low: int | Expr = self._moved(value, msb, lsb)
+        if isinstance(low, int) and not 0 <= low < count:
+            self.report.fail(f"index {self._number(value)} lies outside {name}[{msb}:{lsb}]", node)
+        return low
+
+    @staticmethod
+    def _number(value: Value) -> int:
+        return Constant(value.word.value, 0, 0, Type(value.word.width, value.signed)).number
+
+    def _moved(self, value: Value, msb: int, lsb: int, more: int = 0) -> int | Expr:
+        """The bit position of a declared index plus `more` positions."""
+        if value.word.is_const:
+            number = self._number(value)
+            return (number - lsb if msb >= lsb else lsb - number) + more
+        if msb >= lsb and lsb == 0 and not value.signed and not more:
+            return e.zero_extend(value.word, 1)
+        size = max(value.word.width, abs(lsb).bit_length(), abs(more).bit_length()) + 3
+        index, start = e.resize(value.word, size, value.signed), e.const(lsb, size)
+        moved = e.bvsub(index, start) if msb >= lsb else e.bvsub(start, index)
+        return e.bvadd(moved, e.const(more, size))
+
+    def _select(self, node: Any, msb: int, lsb: int, count: int, name: str) -> Task[tuple[int | Expr, int]]:
+        if isinstance(node, vast.Pointer):
+            low: int | Expr = yield self._position(node.ptr, msb, lsb, count, name)
+            return low, 1
+        if isinstance(node, tree.IndexedSelect):
+            width: int = yield self.number(node.width, "the width of a part select")
+            if not 1 <= width <= count:
+                self.report.fail(f"a part of {width} bits of {name}, which has {count}", node)
+            value: Value = yield self.alone(node.base)
+            # The base names the part's lowest bit where the part grows the way the declaration does.
+            low = self._moved(value, msb, lsb, 0 if node.up == (msb >= lsb) else 1 - width)
+        else:
+            left: int = yield self.number(node.msb, "the bound of a part select")
+            right: int = yield self.number(node.lsb, "the bound of a part select")
+            if (left < right) == (msb > lsb) and left != right:
+                self.report.fail(f"{name}[{left}:{right}] runs against its declaration [{msb}:{lsb}]", node)
+            low = right - lsb if msb >= lsb else lsb - right
+            width = abs(left - right) + 1
+        if isinstance(low, int) and not 0 <= low <= count - width:
+            self.report.fail(f"this part lies outside {name}[{msb}:{lsb}]", node)
+        return low, width
+
+    def _type_place(self, node: Any) -> Task[Type]:
+        place: Place = yield self.place(node)
+        return Type(place.width, place.signed)
+
+    def _build_place(self, node: Any, to: Type) -> Task[Expr]:
+        place: Place = yield self.place(node)
+        if isinstance(place.net, Constant):
+            if isinstance(node, vast.Identifier):
+                return constant_word(self.report, place.net, to)
+            whole = constant_word(self.report, place.net, place.net.type)
+        else:
+            whole = self.env.read(place.net, node)
+        return e.resize(read_part(self.report, place, whole), to.width, to.signed)
+
+    # -- types ---------------------------------------------------------------------------------------------
+
+    def _type_literal(self, node: Any) -> Task[Type]:
+        return self._literal(node).type
+        yield
+
+    def _type_fill(self, node: Any) -> Task[Type]:
+        return Type(1, False)
+        yield
+
+    def _type_wide(self, node: Any) -> Task[Type]:
+        left: Type = yield self.type_of(node.left)
+        right: Type = yield self.type_of(node.right)
+        return Type(max(left.width, right.width), left.signed and right.signed)
+
+    def _type_left(self, node: Any) -> Task[Type]:
+        left: Type = yield self.type_of(node.left)
+        return left
+
+    def _type_unary(self, node: Any) -> Task[Type]:
+        right: Type = yield self.type_of(node.right)
+        return right
+
+    def _type_bit(self, node: Any) -> Task[Type]:
+        return Type(1, False)
+        yield
+
+    def _type_cond(self, node: Any) -> Task[Type]:
+        true: Type = yield self.type_of(node.true_value)
+        false: Type = yield self.type_of(node.false_value)
+        return Type(max(true.width, false.width), true.signed and false.signed)
+
+    def _type_concat(self, node: Any) -> Task[Type]:
+        total = 0
+        for part in node.list:
+            if isinstance(part, tree.Fill) or (
+                isinstance(part, vast.IntConst) and not self._literal(part).sized
+            ):
+                self.report.fail(
+                    "a number without a size in a concatenation", part, "give its width, as in 4'd3"
+                )
+            own: Type = yield self.type_of(part)
+            total += own.width
+        return Type(total, False)
+
+    def _type_repeat(self, node: Any) -> Task[Type]:
+        times: int = yield self.number(node.times, "a replication count")
+        own: Type = yield self.type_of(node.value)
+        if not 1 <= times <= MAX_WIDTH:
+            self.report.fail(f"a replication of {times} times", node)
+        return Type(times * own.width, False)
+
+    def _type_call(self, node: Any) -> Task[Type]:
+        routine = self._function(node)
+        assert routine.result is not None
+        return routine.result.type
+        yield
+
+    def _function(self, node: Any) -> Routine:
+        found = self.env.find(node.name)
+        if not isinstance(found, Routine) or found.result is None:
+            self.report.fail(f"{printable(node.name.name)} is no function", node)
+        return found
+
+    def _type_system(self, node: Any) -> Task[Type]:
+        name = node.syscall
+        if name in ("clog2", "bits"):
+            return Type(32, True)
+        if name not in ("signed", "unsigned") or len(node.args) != 1 or node.args[0] is None:
+            self.report.fail(f"${printable(name)} isn't supported in an expression", node)
+        own: Type = yield self.type_of(node.args[0])
+        return Type(own.width, name == "signed")
+
+    def _type_cast(self, node: Any) -> Task[Type]:
+        own: Type = yield self.type_of(node.value)
+        if node.type in ("signed", "unsigned"):
+            return Type(own.width, node.type == "signed")
+        if isinstance(node.type, str):
+            if node.type not in _CAST_TYPES:
+                self.report.fail(f"a cast to {printable(node.type)} isn't supported", node)
+            return _CAST_TYPES[node.type]
+        width: int = yield self.number(node.type, "the width of a cast")
+        if not 1 <= width <= MAX_WIDTH:
+            self.report.fail(f"a cast to {width} bits", node)
+        return Type(width, own.signed)
+
+    # -- words ---------------------------------------------------------------------------------------------
+
+    def _build_literal(self, node: Any, to: Type) -> Task[Expr]:
+        return constant_word(self.report, self._literal(node), to)
+        yield
+
+    def _build_fill(self, node: Any, to: Type) -> Task[Expr]:
+        if node.digit in "xXzZ":
+            return self.report.choice(to.width)
+        return e.const(-int(node.digit), to.width)
+        yield
+
+    def _build_wide(self, node: Any, to: Type) -> Task[Expr]:
+        left: Expr = yield self.build(node.left, to)
+        right: Expr = yield self.build(node.right, to)
+        return _WIDE[type(node)](left, right)
+
+    def _build_division(self, node: Any, to: Type) -> Task[Expr]:
+        left: Expr = yield self.build(node.left, to)
+        right: Expr = yield self.build(node.right, to)
+        kind = "div" if isinstance(node, vast.Divide) else "rem"
+        result = e.binary(f"bv{'s' if to.signed else 'u'}{kind}", left, right)
+        if right.is_const and right.value:
+            return result
+        # Division by zero is x (clause 5.1.5).
+        return e.ite(e.eq(right, e.const(0, to.width)), self.report.choice(to.width), result)
+
+    def _build_shift(self, node: Any, to: Type) -> Task[Expr]:
+        left: Expr = yield self.build(node.left, to)
+        amount: Value = yield self.alone(node.right)
+        op = "bvshl" if isinstance(node, (vast.Sll, vast.Sla)) else "bvlshr"
+        if isinstance(node, vast.Sra) and to.signed:
+            op = "bvashr"
+        # The amount counts as unsigned, whatever its type (clause 5.1.12).
+        size = max(to.width, amount.word.width)
+        by = e.resize(amount.word, size, False)
+        return e.resize(e.binary(op, e.resize(left, size, op == "bvashr"), by), to.width, False)
+
+    def _build_power(self, node: Any, to: Type) -> Task[Expr]:
+        left: Expr = yield self.build(node.left, to)
+        exponent: Value = yield self.alone(node.right)
+        if left.is_const and exponent.word.is_const:
+            base = Constant(left.value, 0, 0, to).number
+            power = Constant(exponent.word.value, 0, 0, Type(exponent.word.width, exponent.signed)).number
+            return self._power(base, power, to)
+        if left.is_const and left.value == 2 and not exponent.signed:
+            size = max(to.width, exponent.word.width)
+            one, by = e.const(1, size), e.resize(exponent.word, size, False)
+            return e.resize(e.binary("bvshl", one, by), to.width, False)
+        self.report.fail(
+            "** of values that aren't constant", node, "only 2 ** unsigned is read; write << or *"
+        )
+
+    def _power(self, base: int, power: int, to: Type) -> Expr:
+        """Clause 5.1.5, table 5-6: a negative power is 1/base^n rounded to zero."""
+        if power >= 0:
+            return e.const(pow(base, power, 1 << to.width), to.width)
+        if base == 0:
+            return self.report.choice(to.width)
+        return e.const({1: 1, -1: -1 if power % 2 else 1}.get(base, 0), to.width)
+
+    def _build_unary(self, node: Any, to: Type) -> Task[Expr]:
+        right: Expr = yield self.build(node.right, to)
+        return e.bvneg(right) if isinstance(node, vast.Uminus) else e.bvnot(right)
+
+    def _build_reduction(self, node: Any, to: Type) -> Task[Expr]:
+        value: Value = yield self.alone(node.right)
+        return e.resize(_REDUCTIONS[type(node)](value.word), to.width, False)
+
+    def _build_logical(self, node: Any, to: Type) -> Task[Expr]:
+        left: Expr = yield self.condition(node.left)
+        right: Expr = yield self.condition(node.right)
+        bit = e.bvand(left, right) if isinstance(node, vast.Land) else e.bvor(left, right)
+        return e.resize(bit, to.width, False)
+
+    def _build_comparison(self, node: Any, to: Type) -> Task[Expr]:
+        common: Type = yield self._type_wide(node)
+        exact = isinstance(node, (vast.Eql, vast.NotEql))
+        if exact and any(p and (p.x | p.z) for p in map(self.pattern, (node.left, node.right))):
+            self.report.note("=== with x or z never holds for values of 0 and 1", node)
+            return e.resize(e.FALSE if isinstance(node, vast.Eql) else e.TRUE, to.width, False)
+        left: Expr = yield self.build(node.left, common)
+        right: Expr = yield self.build(node.right, common)
+        bit = _comparison(type(node), left, right, common.signed)
+        self._remark(node, left, right, bit, common.signed)
+        return e.resize(bit, to.width, False)
+
+    def _remark(self, node: Any, left: Expr, right: Expr, bit: Expr, signed: bool) -> None:
+        """Note a comparison that its operands' ranges decide."""
+        if left.is_const == right.is_const:
+            return
+        (low, high), (low2, high2) = _range(left, signed), _range(right, signed)
+        kind = type(node)
+        outside = high < low2 or high2 < low
+        never = {
+            vast.Eq: outside, vast.Eql: outside, vast.LessThan: low >= high2, vast.GreaterThan: high <= low2,
+            vast.LessEq: low > high2, vast.GreaterEq: high < low2,
+        }.get(kind, False)  # fmt: skip
+        always = {
+            vast.NotEq: outside, vast.NotEql: outside, vast.LessThan: high < low2, vast.GreaterThan: low > high2,
+            vast.LessEq: high <= low2, vast.GreaterEq: low >= high2,
+        }.get(kind, False)  # fmt: skip
+        if never or always:
+            bound = right if right.is_const else left
+            self.report.note(
+                f"this comparison {'never' if never else 'always'} holds: {bound.value} is out of the other side's reach"
+                if outside or never
+                else f"this comparison always holds: the other side can't pass {bound.value}",
+                node,
+            )
+
+    def _build_cond(self, node: Any, to: Type) -> Task[Expr]:
+        test: Expr = yield self.condition(node.cond)
+        if test.is_const:
+            taken: Expr = yield self.build(node.true_value if test.value else node.false_value, to)
+            return taken
+        true: Expr = yield self.build(node.true_value, to)
+        false: Expr = yield self.build(node.false_value, to)
+        return e.ite(test, true, false)
+
+    def _build_concat(self, node: Any, to: Type) -> Task[Expr]:
+        parts = []
+        for part in node.list:
+            value: Value = yield self.alone(part)
+            parts.append(value.word)
+        return e.resize(e.concat_all(parts), to.width, False)
+
+    def _build_repeat(self, node: Any, to: Type) -> Task[Expr]:
+        total: Type = yield self.type_of(node)
+        value: Value = yield self.alone(node.value)
+        word = value.word
+        while word.width < total.width:
+            word = e.concat(word, cut(word, min(word.width, total.width - word.width) - 1, 0))
+        return e.resize(word, to.width, False)
+
+    def _build_call(self, node: Any, to: Type) -> Task[Expr]:
+        routine = self._function(node)
+        assert routine.result is not None
+        word: Expr = yield self.env.call(routine, node.args, node)
+        return e.resize(word, to.width, to.signed)
+
+    def _build_system(self, node: Any, to: Type) -> Task[Expr]:
+        if node.syscall == "bits":
+            own: Type = yield self.type_of(node.args[0])
+            return e.const(own.width, to.width)
+        if node.syscall == "clog2":
+            if len(node.args) != 1 or node.args[0] is None:
+                self.report.fail("$clog2 takes one argument", node)
+            number: int = yield self.number(node.args[0], "the argument of $clog2")
+            # Clause 17.11.1: the argument counts as unsigned.
+            found: Type = yield self.type_of(node.args[0])
+            number &= (1 << found.width) - 1
+            return e.const(max(0, number - 1).bit_length() if number else 0, to.width)
+        value: Value = yield self.alone(node.args[0])
+        return e.resize(value.word, to.width, to.signed)
+
+    def _build_cast(self, node: Any, to: Type) -> Task[Expr]:
+        own: Type = yield self.type_of(node)
+        value: Value = yield self.alone(node.value)
+        return e.resize(e.resize(value.word, own.width, value.signed), to.width, to.signed)
+
+
+def _bounds(found: Net | Constant) -> tuple[int, int]:
+    if isinstance(found, Net):
+        return found.msb, found.lsb
+    return (found.type.width - 1 if found.msb is None else found.msb), found.lsb
+
+
+def _range(word: Expr, signed: bool) -> tuple[int, int]:
+    """Bounds of the word's value that its shape shows."""
+    if word.is_const:
+        number = Constant(word.value, 0, 0, Type(word.width, signed)).number
+        return number, number
+    if word.op == "zero_extend":
+        return 0, (1 << word.args[0].width) - 1
+    if not signed:
+        return 0, (1 << word.width) - 1
+    width = word.args[0].width if word.op == "sign_extend" else word.width
+    return -(1 << (width - 1)), (1 << (width - 1)) - 1
+
+
+def _comparison(kind: Any, left: Expr, right: Expr, signed: bool) -> Expr:
+    left, right = _narrowed(left, right, signed)
+    less, less_equal = (e.bvslt, e.bvsle) if signed else (e.bvult, e.bvule)
+    if kind in (vast.Eq, vast.Eql):
+        return e.eq(left, right)
+    if kind in (vast.NotEq, vast.NotEql):
+        return e.bvnot(e.eq(left, right))
+    if kind is vast.LessThan:
+        return less(left, right)
+    if kind is vast.GreaterThan:
+        return less(right, left)
+    return less_equal(left, right) if kind is vast.LessEq else less_equal(right, left)
+
+
+def _narrowed(left: Expr, right: Expr, signed: bool) -> tuple[Expr, Expr]:
+    """The operands of a comparison without the extension that both share; a constant may lose it too."""
+    extension = "sign_extend" if signed else "zero_extend"
+    widths = []
+    for word in (left, right):
+        if word.op == extension:
+            widths.append(word.args[0].width)
+        elif word.is_const:
+            number = _range(word, signed)[0]
+            widths.append((number if number >= 0 else ~number).bit_length() + signed)
+        else:
+            return left, right
+    width = max(1, *widths)
+    return (
+        (left, right)
+        if left.is_const and right.is_const
+        else (cut(left, width - 1, 0), cut(right, width - 1, 0))
+    )
+
+
+_WIDE: dict[Any, Callable[[Expr, Expr], Expr]] = {
+    vast.Plus: e.bvadd, vast.Minus: e.bvsub, vast.Times: e.bvmul, vast.And: e.bvand, vast.Or: e.bvor,
+    vast.Xor: e.bvxor, vast.Xnor: lambda a, b: e.bvnot(e.bvxor(a, b)),
+}  # fmt: skip
+_REDUCTIONS: dict[Any, Callable[[Expr], Expr]] = {
+    vast.Ulnot: lambda a: e.bvnot(e.nonzero(a)), vast.Uor: e.nonzero, vast.Unor: lambda a: e.bvnot(e.nonzero(a)),
+    vast.Uand: lambda a: e.eq(a, e.const(-1, a.width)),
+    vast.Unand: lambda a: e.bvnot(e.eq(a, e.const(-1, a.width))),
+    vast.Uxor: e.parity, vast.Uxnor: lambda a: e.bvnot(e.parity(a)),
+}  # fmt: skip
+_COMPARISONS = (vast.Eq, vast.NotEq, vast.Eql, vast.NotEql, vast.LessThan, vast.GreaterThan, vast.LessEq,
+                vast.GreaterEq)  # fmt: skip
+
+_S = Sizer
+_RULES: list[tuple[tuple[Any, ...], Any, Any]] = [
+    ((vast.Identifier, vast.Pointer, vast.Partselect, tree.IndexedSelect), _S._type_place, _S._build_place),
+    ((vast.IntConst,), _S._type_literal, _S._build_literal),
+    ((tree.Fill,), _S._type_fill, _S._build_fill),
+    (tuple(_WIDE), _S._type_wide, _S._build_wide),
+    ((vast.Divide, vast.Mod), _S._type_wide, _S._build_division),
+    ((vast.Sll, vast.Srl, vast.Sla, vast.Sra), _S._type_left, _S._build_shift),
+    ((vast.Power,), _S._type_left, _S._build_power),
+    ((vast.Uminus, vast.Unot), _S._type_unary, _S._build_unary),
+    (tuple(_REDUCTIONS), _S._type_bit, _S._build_reduction),
+    ((vast.Land, vast.Lor), _S._type_bit, _S._build_logical),
+    (_COMPARISONS, _S._type_bit, _S._build_comparison),
+    ((vast.Cond,), _S._type_cond, _S._build_cond),
+    ((vast.Concat,), _S._type_concat, _S._build_concat),
+    ((vast.Repeat,), _S._type_repeat, _S._build_repeat),
+    ((vast.FunctionCall,), _S._type_call, _S._build_call),
+    ((vast.SystemCall,), _S._type_system, _S._build_system),
+    ((tree.Cast,), _S._type_cast, _S._build_cast),
+]
+_TYPE_RULES: dict[Any, Any] = {kind: types for kinds, types, _ in _RULES for kind in kinds}
+_BUILD_RULES: dict[Any, Any] = {kind: words for kinds, _, words in _RULES for kind in kinds}
+
+
+def constant(env: Env, node: Any, what: str) -> int:
+    """The value of a constant expression; UserError says that `what` needs one."""
+    return run(Sizer(env).number(node, what))

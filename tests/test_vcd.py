@@ -1,0 +1,165 @@
+"""Dumps, read back by an independent reader (vcdvcd) and compared with a run of the machine on values."""
+
+from __future__ import annotations
+
+import itertools
+from pathlib import Path
+from typing import Any
+
+import pytest
+from texts import BY_3, SECOND, SHIFT, SPINS, STICKS_AT_7, checked
+from vcdvcd import VCDVCD
+
+from prover.findings import Finding, Report
+from prover.report import vcd
+from prover.report.wave import Timeline
+
+
+def read_back(folder: Path, text: str) -> Any:
+    path = folder / "read_back.vcd"
+    path.write_text(text)
+    return VCDVCD(str(path))
+
+
+def levels(dump: Any, name: str, ends: int) -> list[str]:
+    """The value at every time before `ends`."""
+    out: list[str] = []
+    changes = dump[name].tv
+    for (begins, value), after in zip(changes, [*changes[1:], (ends, "")], strict=True):
+        out += [value] * (after[0] - begins)
+    return out
+
+
+def found(report: Report, name: str) -> Finding:
+    return next(finding for finding in report.findings if finding.name == name)
+
+
+def stepped(report: Report, finding: Finding, count: int) -> list[tuple[int, ...]]:
+    """States from the counterexample's start on, by stepping the machine."""
+    assert finding.counterexample is not None
+    states = [finding.counterexample.orbit.start]
+    while len(states) < count:
+        states.append(report.rhythm.system.next(states[-1]))
+    return states
+
+
+def test_every_register_the_clock_and_the_output_are_as_stepped(tmp_path: Path) -> None:
+    report = checked(tmp_path, BY_3, "3", high=2)
+    finding = found(report, "high-time")
+    text = vcd.render(report, finding)
+    assert text is not None
+    dump = read_back(tmp_path, text)
+    ends = dump.endtime
+    states = stepped(report, finding, ends)
+    for index, (name, _) in enumerate(report.rhythm.system.variables):
+        values = [int(v, 2) for v in levels(dump, f"by_3.{name}", ends)]
+        assert values == [state[index] for state in states]
+    output = [int(v, 2) for v in levels(dump, "by_3.tick", ends)]
+    assert output == [report.rhythm.system.out(state) for state in states]
+    assert set(levels(dump, "by_3.rst", ends)) == {"0"}
+
+
+def test_the_claimed_run_is_seen_in_the_dump(tmp_path: Path) -> None:
+    # A third at 50 % is high for three half-cycles, where two were asked for.
+    report = checked(tmp_path, BY_3, "3", high=2)
+    broken = found(report, "high-time").counterexample
+    assert broken is not None
+    text = vcd.render(report, found(report, "high-time"))
+    assert text is not None
+    changes = read_back(tmp_path, text)["by_3.tick"].tv
+    rises = [(begins, after[0] - begins) for (begins, v), after in itertools.pairwise(changes) if v == "1"]
+    assert (broken.begins, 3) in rises
+    assert broken.ends - broken.begins == 3
+
+
+def test_a_refuted_ratio_shows_its_gap(tmp_path: Path) -> None:
+    report = checked(tmp_path, BY_3, "4")
+    broken = found(report, "ratio").counterexample
+    assert broken is not None
+    text = vcd.render(report, found(report, "ratio"))
+    assert text is not None
+    rises = [time for time, value in read_back(tmp_path, text)["by_3.tick"].tv if value == "1" and time > 0]
+    assert {b - a for a, b in itertools.pairwise(rises)} == {6}
+    assert broken.begins in rises
+    assert broken.ends in rises
+
+
+def test_registers_stand_in_the_scope_of_their_module(tmp_path: Path) -> None:
+    report = checked(tmp_path, STICKS_AT_7, "5", high=4)
+    text = vcd.render(report, found(report, "no-stuck"))
+    assert text is not None
+    dump = read_back(tmp_path, text)
+    assert levels(dump, "sticks_at_7.stage0.count", dump.endtime)[-1] == "111"
+    assert levels(dump, "sticks_at_7.tick", dump.endtime)[-1] == "0"
+
+
+def test_what_is_elided_is_x_and_what_is_shown_is_true(tmp_path: Path) -> None:
+    report = checked(tmp_path, SECOND, "50000000")
+    finding = found(report, "high-time")
+    assert finding.counterexample is not None
+    timeline = Timeline(finding.counterexample.orbit)
+    text = vcd.render(report, finding)
+    assert text is not None
+    assert len(text) < 20_000
+    assert "elided: " in text
+    dump = read_back(tmp_path, text)
+    # Where it is high is plain arithmetic: counts below 24 999 999 of 50 000 000, two half-cycles each.
+    rises = [time for time, value in dump["second.tick"].tv if value == "1"]
+    falls = [time for time, value in dump["second.tick"].tv if value == "0"]
+    assert 49_999_998 in [fall - rise for rise in rises for fall in falls]
+    assert "x" not in [value for _, value in dump["second.tick"].tv]
+    counts = [(time, value) for time, value in dump["second.count"].tv if value != "x"]
+    assert counts
+    for time, value in counts:
+        assert int(value, 2) == timeline.state(time)[0]
+    assert any(value == "x" for _, value in dump["second.count"].tv)
+
+
+def test_a_dump_is_capped(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(vcd, "MOST_SHOWN", 1000)
+    report = checked(tmp_path, SHIFT, "2")
+    finding = found(report, "ratio")
+    assert finding.counterexample is not None
+    timeline = Timeline(finding.counterexample.orbit)
+    assert timeline.once > 60_000
+    text = vcd.render(report, finding)
+    assert text is not None
+    assert text.count("\n#") < 1100
+    dump = read_back(tmp_path, text)
+    assert dump.endtime == timeline.once + 2
+    shown = {time: value for time, value in dump["shift.q"].tv if value != "x"}
+    assert finding.counterexample.begins in shown or finding.counterexample.begins - 1 in shown
+    for time, value in shown.items():
+        assert int(value, 2) == timeline.state(time)[0]
+
+
+def test_the_round_that_never_settles_is_dumped_a_micro_step_a_unit(tmp_path: Path) -> None:
+    report = checked(tmp_path, SPINS, "2")
+    finding = found(report, "settling")
+    assert finding.unsettled is not None
+    text = vcd.render(report, finding)
+    assert text is not None
+    dump = read_back(tmp_path, text)
+    values = levels(dump, "spins.spin", dump.endtime)
+    # An inverter fed by itself changes at every step, for ever.
+    assert all(a != b for a, b in itertools.pairwise(values))
+    assert len(values) == 2 * len(finding.unsettled.cycle) >= 4
+
+
+def test_the_same_report_gives_the_same_bytes(tmp_path: Path) -> None:
+    reports = [checked(tmp_path, STICKS_AT_7, "5", high=4) for _ in range(2)]
+    first, second = ([dump.text for dump in vcd.dumps(report)] for report in reports)
+    assert first == second
+    assert len(first) == 2
+    assert "$date" not in first[0]
+
+
+@pytest.mark.parametrize(
+    ("name", "word"), [("a b", "a_b"), ("$end", "_end"), ("q\x1b[3:0]", "q_[3:0]"), ("", "_")]
+)
+def test_names_that_a_dump_cannot_hold_are_spelt_otherwise(name: str, word: str) -> None:
+    assert vcd._word(name) == word
+
+
+def test_a_comment_cannot_be_ended_from_within() -> None:
+    assert vcd._plain("waits $end\nfor µ") == "waits end for \\xb5"
