@@ -1,4 +1,4 @@
-"""What ratio and high-time share: finding the first stretch of output that breaks a claim about runs."""
+"""What ratio and high-time share: finding the first span of output that breaks a claim about runs."""
 
 from __future__ import annotations
 
@@ -59,7 +59,7 @@ def judge_runs(
             says = [f"{start.cause}: {broken.text}"]
             method = "counterexample replayed on the machine"
             return Finding(name, "refuted", claim, says[0], method, facts=facts, counterexample=broken)
-        if orbit.loop_from is None:
+        if not orbit.closed:
             found = "open"
             says.append(orbit.why)
     text = f"every {noun} is {wanted} half-cycles" if found == "proved" else "; ".join(dict.fromkeys(says))
@@ -70,7 +70,7 @@ def judge_runs(
 def _covered(rhythm: Rhythm) -> str:
     if not rhythm.orbits:
         return "nothing"
-    lengths = [sum(2 * s.cycles for s in orbit.stretches) for orbit in rhythm.orbits]
+    lengths = [orbit.lead_half_cycles + orbit.loop_half_cycles for orbit in rhythm.orbits]
     return f"{min(lengths)} half-cycles from each start state"
 
 
@@ -111,6 +111,6 @@ def _broken(orbit: Orbit, wanted: int, measure: Measure, noun: str, cause: str) 
         lead = orbit.lead_half_cycles
         text = f"the output stays {wave.runs[0][0]} from half-cycle {lead} on"
         return Counterexample(orbit, lead, lead + (orbit.loop_half_cycles or 2), text, cause)
-    if orbit.loop_from is not None and not seen:
+    if orbit.closed and not seen:
         return Counterexample(orbit, 0, orbit.lead_half_cycles, f"no {noun} at all", cause)
     return None

@@ -9,7 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
-from prover import certificate, orbit, reset
+from prover import certificate, orbit, path, reset
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
 from prover.ports import Ports
@@ -47,7 +47,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         reset_half_cycles=held.half_cycles if held else None,
         unforced=held.unforced if held else (),
         open=held.problem if held else "",
-        methods={"orbit": "orbit of each start state, traced with jumps; every stretch checked"},
+        methods={"orbit": "orbit of each start state, traced with jumps; every step checked"},
     )
     rhythm = _with_races(rhythm, ports, effort)
     goal = _goal(spec, rhythm)
@@ -68,13 +68,19 @@ def follow(system: System, start: State, effort: Effort) -> Orbit:
     try:
         faults = certificate.orbit_faults(system, found, effort)
     except OutOfEffort as out:
-        return replace(found, loop_from=None, stretches=found.stretches[:1], why=str(out))
+        return _start_only(system, start, str(out))
     if faults and system.choices:
         why = f"the run hangs on a value that x stands for, at {faults[0]}"
-        return replace(found, loop_from=None, stretches=found.stretches[:1], why=why)
+        return _start_only(system, start, why)
     if faults:
         raise InternalError(f"an orbit's certificate fails: {'; '.join(faults[:3])}")
     return found
+
+
+def _start_only(system: System, start: State, why: str) -> Orbit:
+    """An orbit of which nothing but the start is certain."""
+    widths = tuple(width for _, width in system.variables)
+    return Orbit((path.Beat(start, system.out(start)),), (), widths, why)
 
 
 # -- where from --------------------------------------------------------------------------------------------
@@ -181,13 +187,13 @@ def _loops_of(rhythm: Rhythm, goal: Goal | None) -> tuple[Loop, ...]:
     loops: dict[State, Loop] = {}
     for run in rhythm.orbits:
         wave = run.wave()
-        if wave is None or run.loop_from is None:
+        if wave is None:
             continue
-        example = run.stretches[run.loop_from].start
+        example = path.first_state(run.loop)
         good = goal is not None and wave.divides_by(goal.period, goal.high)
         loops.setdefault(
-            min(s.start for s in run.stretches[run.loop_from :]),
-            Loop(example, run.loop_half_cycles or 0, wave, good),
+            min(beat.state for beat in path.beats(run.loop)),
+            Loop(example, run.loop_half_cycles, wave, good),
         )
     return tuple({(loop.length, loop.wave): loop for loop in loops.values()}.values())
 

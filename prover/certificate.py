@@ -1,8 +1,8 @@
 """Certificates: what an engine claims, written as obligations, and their check.
 
-Nothing here searches, and nothing here is used by a search. An orbit is checked stretch by stretch: one
-quantifier-free formula for each stretch of more than one cycle says that no cycle of it breaks the stride or
-the output's levels, single cycles are computed, and stretches must join end to start. A graph's phases and
+Nothing here searches, and nothing here is used by a search. An orbit is checked step by step: those
+outside any repeat are computed, and for those inside one a quantifier-free formula over the repeats' indices
+says that no step of any round leads elsewhere or shows another level. A graph's phases and
 ranks are checked as one-step claims on every state: phase plus one along each step from a good state, a lower
 rank along each step from any other (a simulation relation onto the ideal divider, and a ranking function).
 """
@@ -14,16 +14,18 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from prover import expr as e
+from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.rhythm import Orbit, Stretch
+from prover.path import Step
+from prover.rhythm import Orbit
 from prover.system import State, System
 
 if TYPE_CHECKING:
     import numpy as np
 
-COMPUTED_SINGLY = 512
-"""Single cycles up to which each is evaluated by itself; more are evaluated together on arrays."""
+COMPUTED_SINGLY = 64
+"""Single steps up to which each is evaluated by itself; more are evaluated together on arrays."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -60,130 +62,92 @@ def discharge(obligation: Obligation, effort: Effort) -> bool:
 def orbit_faults(system: System, orbit: Orbit, effort: Effort) -> list[str]:
     """What is wrong with the claim that the machine runs through the orbit; empty if nothing is."""
     effort.say("checking an orbit's certificate")
-    faults = [f"stretch {i} does not join the next" for i in _loose_ends(orbit)]
-    singles = [s for s in orbit.stretches if s.cycles == 1]
-    faults += _wrong_cycles(system, singles)
+    singles = [step for step in orbit_steps(orbit) if not step.axes]
+    faults = _wrong_steps(system, singles)
     for obligation in orbit_obligations(system, orbit):
         if not discharge(obligation, effort):
             faults.append(obligation.name)
     return faults
 
 
-def _loose_ends(orbit: Orbit) -> Iterator[int]:
-    """Indices of stretches that do not end where the next one (or the loop) begins."""
-    for i, stretch in enumerate(orbit.stretches):
-        if i + 1 < len(orbit.stretches):
-            following = orbit.stretches[i + 1].start
-        elif orbit.loop_from is not None:
-            following = orbit.stretches[orbit.loop_from].start
-        else:
-            return
-        end = tuple(
-            (value + stretch.cycles * step) & ((1 << width) - 1)
-            for value, step, width in zip(stretch.start, stretch.stride, orbit.widths, strict=True)
-        )
-        if end != following or stretch.cycles < 1:
-            yield i
+def orbit_steps(orbit: Orbit) -> Iterator[Step]:
+    """Every step that the orbit claims: along the lead-in, into the loop, and round it."""
+    if orbit.loop:
+        entry = path.first_state(orbit.loop)
+        yield from path.steps(orbit.lead, orbit.widths, entry)
+        yield from path.steps(orbit.loop, orbit.widths, entry)
+    else:
+        yield from path.steps(orbit.lead, orbit.widths, None)
 
 
-def _wrong_cycles(system: System, singles: Sequence[Stretch]) -> list[str]:
-    if not singles:
-        return []
-    if len(singles) > COMPUTED_SINGLY:
-        return _wrong_cycles_together(system, singles)
-    faults = []
-    for stretch in singles:
-        if not _computes(system, stretch):
-            faults.append(f"the cycle from {system.describe(stretch.start)}")
-    return faults
+def _wrong_steps(system: System, singles: Sequence[Step]) -> list[str]:
+    if len(singles) > COMPUTED_SINGLY and not system.choices:
+        return _wrong_steps_together(system, singles)
+    return [f"the step from {system.describe(s.source)}" for s in singles if not _computes(system, s)]
 
 
-def _computes(system: System, stretch: Stretch) -> bool:
-    """Whether one cycle, computed for every value of the choices at zero, is as the stretch says."""
-    end = tuple(
-        (value + step) & ((1 << width) - 1)
-        for value, step, (_, width) in zip(stretch.start, stretch.stride, system.variables, strict=True)
-    )
-    pairs = ((stretch.start, stretch.middle, stretch.levels[0]), (stretch.middle, end, stretch.levels[1]))
-    for state, following, level in pairs:
-        values = dict(zip(system.names, state, strict=True))
-        if system.choices:
-            fixed = {n: e.const(v, w) for (n, w), v in zip(system.variables, state, strict=True)}
-            *step, out = e.substitute([*system.step, system.output], fixed)
-            wanted = [e.const(v, w) for (_, w), v in zip(system.variables, following, strict=True)]
-            wrong = e.disj(e.bvnot(e.eq(a, b)) for a, b in zip(step, wanted, strict=True))
-            wrong = e.bvor(wrong, e.bvxor(out, e.const(level, 1)))
-            if not discharge(Obligation("a single step", wrong), Effort(10)):
-                return False
-            continue
-        *step_values, level_value = e.evaluate([*system.step, system.output], values)
-        if tuple(step_values) != following or level_value != level:
-            return False
-    return True
+def _computes(system: System, step: Step) -> bool:
+    """Whether a single step, computed for every value of the choices, is as claimed."""
+    if system.choices:
+        fixed = {n: e.const(v, w) for (n, w), v in zip(system.variables, step.source, strict=True)}
+        *after, out = e.substitute([*system.step, system.output], fixed)
+        wanted = [e.const(v, w) for (_, w), v in zip(system.variables, step.target, strict=True)]
+        wrong = e.disj(e.bvnot(e.eq(a, b)) for a, b in zip(after, wanted, strict=True))
+        wrong = e.bvor(wrong, e.bvxor(out, e.const(step.level, 1)))
+        return discharge(Obligation("a single step", wrong), Effort(10))
+    values = dict(zip(system.names, step.source, strict=True))
+    *computed, level = e.evaluate([*system.step, system.output], values)
+    return tuple(computed) == step.target and level == step.level
 
 
-def _wrong_cycles_together(system: System, singles: Sequence[Stretch]) -> list[str]:
+def _wrong_steps_together(system: System, singles: Sequence[Step]) -> list[str]:
     import numpy as np
 
-    if system.choices:
-        return [f"the cycle from {s.start}" for s in singles if not _computes(system, s)]
+    kind = np.uint64 if all(w <= 64 for _, w in system.variables) else object
 
     def columns(states: Sequence[State]) -> list[np.ndarray]:
-        kind = np.uint64 if all(w <= 64 for _, w in system.variables) else object
         return [np.array(column, dtype=kind) for column in zip(*states, strict=True)]
 
-    starts, middles = columns([s.start for s in singles]), columns([s.middle for s in singles])
-    widths = [w for _, w in system.variables]
-    ends = columns([
-        tuple((v + d) & ((1 << w) - 1) for v, d, w in zip(s.start, s.stride, widths, strict=True))
-        for s in singles
-    ])  # fmt: skip
-    wrong = np.zeros(len(singles), dtype=bool)
-    for half, (here, there) in enumerate(((starts, middles), (middles, ends))):
-        values = dict(zip(system.names, here, strict=True))
-        *step, out = e.arrays([*system.step, system.output], values)
-        for computed, claimed in zip(step, there, strict=True):
-            wrong |= computed != claimed
-        wrong |= out != np.array([s.levels[half] for s in singles], dtype=out.dtype)
-    return [f"the cycle from {system.describe(singles[int(i)].start)}" for i in np.flatnonzero(wrong)]
+    values = dict(zip(system.names, columns([s.source for s in singles]), strict=True))
+    *after, out = e.arrays([*system.step, system.output], values)
+    wrong = out != np.array([s.level for s in singles], dtype=out.dtype)
+    for computed, claimed in zip(after, columns([s.target for s in singles]), strict=True):
+        wrong |= computed != claimed
+    return [f"the step from {system.describe(singles[int(i)].source)}" for i in np.flatnonzero(wrong)]
 
 
 def orbit_obligations(system: System, orbit: Orbit) -> Iterator[Obligation]:
-    """One obligation for each stretch of several cycles: no cycle of it is other than claimed."""
-    for i, stretch in enumerate(orbit.stretches):
-        if stretch.cycles > 1:
-            yield Obligation(f"stretch {i}", _stretch_goal(system, stretch))
+    """One obligation for all the steps that share their repeats: none of them is other than claimed."""
+    groups: dict[tuple[tuple[int, State], ...], list[Step]] = {}
+    for step in orbit_steps(orbit):
+        if step.axes:
+            groups.setdefault(step.axes, []).append(step)
+    for number, (axes, members) in enumerate(groups.items()):
+        yield Obligation(f"repeat {number}", _steps_goal(system, axes, members))
 
 
-def _stretch_goal(system: System, stretch: Stretch) -> Expr:
-    """True of a cycle number in which the stretch is broken."""
-    # One bit more than the count needs, so that count + 1 does not wrap.
-    size = stretch.cycles.bit_length() + 1
-    index = e.var("!cycle", size)
-    within = e.bvult(index, e.const(stretch.cycles, size))
-    following = e.bvadd(index, e.const(1, size))
-
-    def place(base: State, at: Expr) -> dict[str, Expr]:
-        out = {}
-        for (name, width), value, step in zip(system.variables, base, stretch.stride, strict=True):
-            if step == 0:
-                out[name] = e.const(value, width)
-            else:
-                times = e.bvmul(e.resize(at, width, False), e.const(step, width))
-                out[name] = e.bvadd(times, e.const(value, width))
-        return out
-
-    first, second, third = (
-        place(stretch.start, index),
-        place(stretch.middle, index),
-        place(stretch.start, following),
-    )
+def _steps_goal(system: System, axes: Sequence[tuple[int, State]], members: Sequence[Step]) -> Expr:
+    """True of indices within the axes at which some of the steps is another than claimed."""
+    within = e.TRUE
+    shift = [e.const(0, width) for _, width in system.variables]
+    for i, (count, stride) in enumerate(axes):
+        size = count.bit_length() + 1
+        index = e.var(f"!index{i}", size)
+        within = e.bvand(within, e.bvult(index, e.const(count, size)))
+        for j, (_, width) in enumerate(system.variables):
+            if stride[j]:
+                scaled = e.bvmul(e.resize(index, width, False), e.const(stride[j], width))
+                shift[j] = e.bvadd(shift[j], scaled)
     broken = e.FALSE
-    for here, there, level in ((first, second, stretch.levels[0]), (second, third, stretch.levels[1])):
-        computed = e.substitute([*system.step, system.output], here)
-        for value, name in zip(computed, system.names, strict=False):
-            broken = e.bvor(broken, e.bvnot(e.eq(value, there[name])))
-        broken = e.bvor(broken, e.bvxor(computed[-1], e.const(level, 1)))
+    for step in members:
+        here = {
+            name: e.bvadd(by, e.const(value, width))
+            for (name, width), by, value in zip(system.variables, shift, step.source, strict=True)
+        }
+        *computed, out = e.substitute([*system.step, system.output], here)
+        for value, by, wanted in zip(computed, shift, step.target, strict=True):
+            broken = e.bvor(broken, e.bvnot(e.eq(value, e.bvadd(by, e.const(wanted, by.width)))))
+        broken = e.bvor(broken, e.bvxor(out, e.const(step.level, 1)))
     return e.bvand(within, broken)
 
 

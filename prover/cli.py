@@ -251,7 +251,7 @@ def _number(options: dict[str, Any], name: str) -> int | None:
     text = options.get(name)
     if text is None:
         return None
-    value = read_number(text)
+    value = read_number(text, f"--{name}")
     if value < 0:
         raise UserError(f"--{name} {text}: less than nothing", hint="give a number of half-cycles")
     return value
@@ -268,7 +268,7 @@ def _pairs(texts: Iterable[str], option: str) -> dict[str, str]:
 
 
 def _numbers(texts: Iterable[str], option: str) -> dict[str, int]:
-    return {name: read_number(value) for name, value in _pairs(texts, option).items()}
+    return {name: read_number(value, f"{option} {name}:") for name, value in _pairs(texts, option).items()}
 
 
 def _waivers(texts: Iterable[str]) -> dict[str, str]:

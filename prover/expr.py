@@ -259,7 +259,23 @@ def bvmul(a: Expr, b: Expr) -> Expr:
 
 def binary(op: str, a: Expr, b: Expr) -> Expr:
     """Any operator of two words of equal width and a result as wide: divisions and shifts come this way."""
-    return _fold(op, _same_width(a, b), (a, b))
+    width = _same_width(a, b)
+    if b.is_const and not a.is_const and op in ("bvshl", "bvlshr", "bvashr"):
+        return _shifted(op, a, min(b.value, width))
+    return _fold(op, width, (a, b))
+
+
+def _shifted(op: str, a: Expr, by: int) -> Expr:
+    """A shift by a known amount, as the part of the word that it keeps."""
+    if by == 0:
+        return a
+    if op == "bvshl":
+        kept = extract(a, a.width - 1 - by, 0) if by < a.width else None
+        return const(0, a.width) if kept is None else concat(kept, const(0, by))
+    if op == "bvashr":
+        by = min(by, a.width - 1)
+        return sign_extend(extract(a, a.width - 1, by), by)
+    return zero_extend(extract(a, a.width - 1, by), by) if by < a.width else const(0, a.width)
 
 
 def concat(a: Expr, b: Expr) -> Expr:
@@ -301,6 +317,9 @@ def extract(a: Expr, high: int, low: int) -> Expr:
             a = a.args[1]
         elif a.op in ("zero_extend", "sign_extend") and high < a.args[0].width:
             a = a.args[0]
+        elif a.op == "concat":
+            below = a.args[1].width
+            return concat(extract(a.args[0], high - below, 0), extract(a.args[1], below - 1, low))
         elif a.op == "zero_extend" and low >= a.args[0].width:
             return const(0, high - low + 1)
         else:

@@ -47,7 +47,7 @@ def _agreed(rhythm: Rhythm) -> tuple[Orbit, ...]:
 def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:
     """Launching edges and duty of the wave that the orbit runs into; none if it has more than one high run."""
     wave = orbit.wave()
-    if wave is None or wave.stuck or len(wave.runs) != 2 or orbit.loop_from is None:
+    if wave is None or wave.stuck or len(wave.runs) != 2:
         return {}
     period, high = wave.period or 0, wave.high or 0
     rise = _first_rise(orbit)

@@ -1,56 +1,69 @@
 """The orbit of one start state, traced with jumps (loop acceleration).
 
-Follow the machine one input cycle at a time. When two cycles in a row add the same vector d to the registers,
-ask the solver for the least number k of cycles after which the next one no longer does, or the output changes,
-and jump there. A counter's pass from zero to its limit becomes one stretch whatever the limit, so an orbit of
-billions of half-cycles is a list of a few stretches. Acceleration of guarded counters is due to Comon and
-Jurski (1998) and Finkel and Leroux (2002); here the guard is whatever the solver says it is.
+Follow the machine one input cycle at a time. When several cycles in a row add the same vector to the registers,
+ask the solver for the least number of cycles after which the next one no longer does, or the output changes,
+and jump there. A counter's pass from zero to its limit becomes one repeat whatever the limit. When whole blocks
+of such items recur, each moved by the same vector (a prescaler's rounds, as the next counter counts them), the
+block becomes the body of a repeat in the same way, so a cascade of counters costs no more than its depth.
+Acceleration of guarded counters is due to Comon and Jurski (1998) and Finkel and Leroux (2002); here the guard
+is whatever the solver says it is.
 
 Limits: an orbit that never adds the same vector twice (a shift register, a Gray counter) is followed state by
-state, and one that runs through more stretches than the effort allows is left open.
+state, and one that runs through more items than the effort allows is left open.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from prover import expr as e
+from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.rhythm import Orbit, Stretch
+from prover.path import Beat, Item, Repeat
+from prover.rhythm import Orbit
 from prover.system import State, System
 
 PATIENCE = 6
 """Cycles with the same stride that are followed one by one before a jump is tried: short counters, the
 common case, never need the solver."""
 
+BLOCK = 128
+"""Items up to which a recurring block is looked for."""
+
 
 def trace(system: System, start: State, effort: Effort) -> Orbit:
-    """The orbit of `start`, as far as the effort allows; `loop_from` is None if it did not close.
+    """The orbit of `start`, as far as the effort allows; it is not closed if that did not suffice.
 
-    The stretches are the search's word only: `certificate` checks them.
+    The path is the search's word only: `certificate` checks it.
     """
-    widths = tuple(width for _, width in system.variables)
-    search = _Search(system, widths, effort)
+    search = _Search(system, effort)
     try:
         search.follow(start)
     except OutOfEffort as out:
-        return Orbit(search.stretches(), None, widths, str(out))
-    return Orbit(search.stretches(), search.loop_from, widths)
+        return Orbit(path.joined(search.items), (), search.widths, str(out))
+    lead, loop = search.items[: search.loop_from], search.items[search.loop_from :]
+    return Orbit(path.joined(lead), path.joined(loop), search.widths)
+
+
+Shape = tuple[object, ...]
 
 
 class _Search:
-    """The orbit as found so far. `seen` gives for a state at a stretch's start the stretch's index."""
+    """The orbit as found so far: one item a cycle (a pair of beats as a repeat of one round) or a jump.
 
-    def __init__(self, system: System, widths: tuple[int, ...], effort: Effort) -> None:
+    `seen` gives for the state at an item's start the item's index; `jumps` for the shape of a repeat the
+    indices where it stands."""
+
+    def __init__(self, system: System, effort: Effort) -> None:
         self.system = system
-        self.widths = widths
+        self.widths = tuple(width for _, width in system.variables)
         self.effort = effort
-        self.found: list[Stretch] = []
+        self.items: list[Repeat] = []
         self.seen: dict[State, int] = {}
-        self.loop_from: int | None = None
+        self.jumps: dict[Shape, list[int]] = {}
+        self.loop_from = 0
         self.refused: set[State] = set()
-
-    def stretches(self) -> tuple[Stretch, ...]:
-        return tuple(self.found)
 
     def follow(self, state: State) -> None:
         run, choices = self.system.run, [0] * len(self.system.choices)
@@ -60,50 +73,107 @@ class _Search:
         while state not in self.seen:
             count += 1
             if count % 1024 == 0:
-                self.effort.say(f"following an orbit, stretch {len(self.found)}")
+                self.effort.say(f"following an orbit, cycle {count}")
             *middle_list, first = run(*state, *choices)
             middle = tuple(middle_list)
             *after_list, second = run(*middle, *choices)
             after = tuple(after_list)
-            stride = tuple((b - a) % (1 << w) for a, b, w in zip(state, after, self.widths, strict=True))
+            stride = tuple((b - a) & ((1 << w) - 1) for a, b, w in zip(state, after, self.widths, strict=True))
             repeats = repeats + 1 if stride == previous else 0
             previous = stride
-            cycles = 1
+            cycle = Repeat(1, stride, (Beat(state, first), Beat(middle, second)))
+            self.seen[state] = len(self.items)
             if repeats >= PATIENCE and any(stride) and stride not in self.refused:
-                cycles = self._jump(state, middle, stride, (first, second))
-                if cycles < 4:
+                jump = self._extended(cycle)
+                if jump.times < 4:
                     # Not worth a question again: this stride holds for no more than a few cycles.
                     self.refused.add(stride)
-            self.seen[state] = len(self.found)
-            self.found.append(Stretch(state, middle, stride, cycles, (first, second)))
-            if cycles > 1:
-                repeats = 0
-                state = self.found[-1].state(2 * cycles, self.widths)
-            else:
-                state = after
+                if jump.times > 1:
+                    repeats, previous = 0, None
+                    state = self._append_jump(jump)
+                    continue
+            self.items.append(cycle)
+            state = after
         self.loop_from = self.seen[state]
 
-    def _jump(self, start: State, middle: State, stride: State, levels: tuple[int, int]) -> int:
-        """The greatest number of cycles for which the stride and the output's levels surely hold."""
-        self.effort.say(f"jumping along an orbit, stretch {len(self.found)}")
-        return least_break(self.system, Stretch(start, middle, stride, 1, levels), self.effort)
+    def _extended(self, block: Repeat) -> Repeat:
+        """The block repeated as often as it surely holds."""
+        self.effort.say(f"jumping along an orbit, item {len(self.items)}")
+        return Repeat(least_break(self.system, block, self.effort), block.stride, block.body)
+
+    def _append_jump(self, jump: Repeat) -> State:
+        """Append a repeat, and fold it with the blocks before it as long as these recur; the state after it."""
+        while True:
+            at = len(self.items)
+            self.items.append(jump)
+            shape = _shape(jump)
+            places = self.jumps.setdefault(shape, [])
+            places.append(at)
+            block = self._recurring(places)
+            if block is None:
+                break
+            folded = self._extended(block)
+            if folded.times < 2:
+                break
+            # The last block goes into the repeat; what stood there is forgotten.
+            begins = places[-2] + 1
+            for state, index in list(self.seen.items()):
+                if index >= begins:
+                    del self.seen[state]
+            for known in self.jumps.values():
+                while known and known[-1] >= begins:
+                    known.pop()
+            del self.items[begins:]
+            self.seen[path.first_state((folded,))] = len(self.items)
+            jump = folded
+        return path.moved(path.first_state((jump,)), jump.stride, jump.times, self.widths)
+
+    def _recurring(self, places: Sequence[int]) -> Repeat | None:
+        """The block that ends with the last item, if the two blocks before it are the same moved by one vector."""
+        if len(places) < 4:
+            return None
+        size = places[-1] - places[-2]
+        if size > BLOCK or places[-2] - places[-3] != size or places[-3] - places[-4] != size:
+            return None
+        blocks = [self.items[p - size + 1 : p + 1] for p in places[-3:]]
+        if any([_shape(i) for i in b] != [_shape(i) for i in blocks[0]] for b in blocks[1:]):
+            return None
+        starts = [path.first_state(b) for b in blocks]
+        strides = [
+            tuple((y - x) & ((1 << w) - 1) for x, y, w in zip(a, b, self.widths, strict=True))
+            for a, b in zip(starts, starts[1:], strict=False)
+        ]
+        if strides[0] != strides[1] or not any(strides[0]):
+            return None
+        return Repeat(1, strides[0], tuple(path.joined(blocks[-1])))
 
 
-def least_break(system: System, stretch: Stretch, effort: Effort) -> int:
-    """The least number of cycles after which the stretch is broken, or the cycles until it returns to its start.
+def _shape(item: Item) -> Shape:
+    """What two items share that differ by a constant vector only."""
+    if isinstance(item, Beat):
+        return (item.level,)
+    return (item.times, item.stride, *(_shape(inner) for inner in item.body))
 
-    Found with the solver by asking for any break, then for an earlier one, halving the range as it goes."""
+
+# -- how far a repeat holds --------------------------------------------------------------------------------
+
+
+def least_break(system: System, block: Repeat, effort: Effort, then: State | None = None) -> int:
+    """The greatest number of rounds for which the block surely repeats, or until it returns to its start.
+
+    A round is broken if a step in it is not as in the first, moved by the stride, or leads elsewhere than to
+    the next round, which is `then` away (the stride itself unless given). Asks for any broken round, then for an earlier one, halving the range as it goes."""
     import z3
 
     widths = tuple(width for _, width in system.variables)
-    size = max(w for w, d in zip(widths, stretch.stride, strict=True) if d) + 1
-    count = e.var("!k", size)
-    (broken,) = e.z3_terms([broken_at(system, stretch, count)])
-    index = z3.BitVec("!k", size)
+    size = max(w for w, d in zip(widths, block.stride, strict=True) if d) + 1
+    count = e.var("!round", size)
+    (broken,) = e.z3_terms([broken_round(system, block, count, then or block.stride)])
+    index = z3.BitVec("!round", size)
     solver = z3.SolverFor("QF_BV")
     solver.add(broken == 1)
-    # The stretch returns to its own start after 2^(size-1) cycles at the latest.
-    low, high = 1, _likely_break(system, stretch, 1 << (size - 1))
+    # The block returns to its own start after 2^(size-1) rounds at the latest.
+    low, high = 1, _likely_break(system, block, 1 << (size - 1), then or block.stride)
 
     def any_below(bound: int) -> int | None:
         effort.check()
@@ -115,64 +185,83 @@ def least_break(system: System, stretch: Stretch, effort: Effort) -> int:
         solver.pop()
         if answer == z3.unknown:
             raise OutOfEffort(f"the solver gave up while {effort.doing}")
-        return model.eval(index).as_long() if model is not None else None
+        return int(model.eval(index, model_completion=True).as_long()) if model is not None else None
 
     found = any_below(high)
     while found is not None:
         high = found
         if low >= high:
             break
-        # An unbroken half is excluded at once; otherwise the model found is a better bound.
+        # An unbroken half is excluded at once; otherwise the round found is a better bound.
         half = (low + high) // 2
         below = any_below(half) if half > low else None
         if below is None:
-            if half > low:
-                low = half
+            low = max(half, low)
             found = any_below(high)
         else:
             found = below
     return high
 
 
-def _likely_break(system: System, stretch: Stretch, limit: int) -> int:
-    """A number of cycles at which the stretch is broken, or the limit: guessed from the constants of the design
-    and from powers of two, and tried. The solver then only has to show that there is none before it."""
+def _likely_break(system: System, block: Repeat, limit: int, then: State) -> int:
+    """A round that is broken, or the limit: guessed from the constants of the design and from powers of two, and
+    tried. The solver then only has to show that there is none before it."""
     widths = tuple(width for _, width in system.variables)
+    start = path.first_state(block.body)
     constants = {node.value for node in e.topological(system.step) if node.is_const and node.width > 1}
     guesses: set[int] = set()
-    for value, step, width in zip(stretch.start, stretch.stride, widths, strict=True):
+    for value, step, width in zip(start, block.stride, widths, strict=True):
         if step in (1, (1 << width) - 1):
             sign = 1 if step == 1 else -1
             powers = {1 << i for i in range(width)}
             near = {c + slip for c in constants | powers for slip in (-1, 0, 1)}
             guesses |= {sign * (c - value) % (1 << width) for c in near}
-    for cycles in sorted(guess for guess in guesses if 0 < guess < limit):
-        here, half, after = (stretch.state(2 * cycles + i, widths) for i in range(3))
-        choices = [0] * len(system.choices)
-        if system.run(*here, *choices) != (*half, stretch.levels[0]):
-            return cycles
-        if system.run(*half, *choices) != (*after, stretch.levels[1]):
-            return cycles
+    following = path.moved(start, then, 1, widths)
+    claims = list(path.steps(block.body, widths, following))
+    zeros = [0] * len(system.choices)
+    for rounds in sorted(guess for guess in guesses if 0 < guess < limit):
+        for claim in claims:
+            source = path.moved(claim.source, block.stride, rounds, widths)
+            target = path.moved(claim.target, block.stride, rounds, widths)
+            if system.run(*source, *zeros) != (*target, claim.level):
+                return rounds
     return limit
 
 
-def broken_at(system: System, stretch: Stretch, count: Expr) -> Expr:
-    """One bit: in cycle number `count` of the stretch the step, its stride or an output level is another."""
-    here = _along(system, stretch.start, stretch.stride, count)
-    half = _along(system, stretch.middle, stretch.stride, count)
-    beyond = _along(system, stretch.start, stretch.stride, e.bvadd(count, e.const(1, count.width)))
+def broken_round(system: System, block: Repeat, count: Expr, then: State) -> Expr:
+    """One bit: in round number `count` some step or some level of the block is another than in its first."""
+    widths = tuple(width for _, width in system.variables)
+    following = path.moved(path.first_state(block.body), then, 1, widths)
     wrong: list[Expr] = []
-    for state, after, level in ((here, half, stretch.levels[0]), (half, beyond, stretch.levels[1])):
-        values = dict(zip(system.names, state, strict=True))
+    for claim in path.steps(block.body, widths, following):
+        indices = [(count, block.stride)]
+        bounds = e.TRUE
+        for i, (times, stride) in enumerate(claim.axes):
+            size = times.bit_length() + 1
+            inner = e.var(f"!inner{i}", size)
+            bounds = e.bvand(bounds, e.bvult(inner, e.const(times, size)))
+            indices.append((inner, stride))
+        here, there = _along(system, claim.source, indices), _along(system, claim.target, indices)
+        values = dict(zip(system.names, here, strict=True))
         *stepped, out = e.substitute([*system.step, system.output], values)
-        wrong += [e.bvnot(e.eq(a, b)) for a, b in zip(stepped, after, strict=True)]
-        wrong.append(e.bvnot(out) if level else out)
+        differs = e.disj(e.bvnot(e.eq(a, b)) for a, b in zip(stepped, there, strict=True))
+        differs = e.bvor(differs, e.bvnot(out) if claim.level else out)
+        wrong.append(e.bvand(bounds, differs))
     return e.disj(wrong)
 
 
-def _along(system: System, base: State, stride: State, count: Expr) -> list[Expr]:
+def _along(system: System, base: State, indices: Sequence[tuple[Expr, State]]) -> list[Expr]:
     out: list[Expr] = []
-    for value, step, (_, width) in zip(base, stride, system.variables, strict=True):
-        scaled = e.bvmul(e.resize(count, width, False), e.const(step, width))
-        out.append(e.bvadd(e.const(value, width), scaled))
+    for i, (_, width) in enumerate(system.variables):
+        total = e.const(base[i], width)
+        for index, stride in indices:
+            scaled = e.bvmul(e.resize(index, width, False), e.const(stride[i], width))
+            total = e.bvadd(scaled, total)
+        out.append(total)
     return out
+
+
+def least_break_backwards(system: System, block: Repeat, stride: State, effort: Effort) -> int:
+    """How many rounds the block can be extended backwards by, its own first counted: the greatest k so that for
+    all rounds below k, moved back by the stride, every step is as in the first round."""
+    return least_break(system, Repeat(1, stride, block.body), effort, then=block.stride)

@@ -61,6 +61,14 @@ def length(path: Sequence[Item]) -> int:
     return sum(item.length for item in path)
 
 
+def joined(items: Sequence[Item]) -> Path:
+    """The items as a path: repeats of a single round give way to their body."""
+    out: list[Item] = []
+    for item in items:
+        out.extend(item.body if isinstance(item, Repeat) and item.times == 1 else (item,))
+    return tuple(out)
+
+
 def merged(runs: Iterable[Run]) -> Iterator[Run]:
     """Neighbouring runs of one level joined."""
     for level, group in groupby(runs, key=lambda run: run[0]):
@@ -102,19 +110,19 @@ class Place:
     state   the machine's state there
     level   the output there
     calm    half-cycles, this one included, until the path leaves the innermost repeat
-    around  the innermost repeat, with the number of half-cycles into one of its rounds; None outside any
+    around  the innermost repeat; None outside any
     """
 
     state: State
     level: int
     calm: int
-    around: tuple[Repeat, int] | None
+    around: Repeat | None
 
 
 def place(path: Sequence[Item], at: int, widths: Sequence[int]) -> Place:
     """The place `at` half-cycles after the path's start. Raises IndexError beyond its end."""
     offset: State = (0,) * len(widths)
-    around: tuple[Repeat, int] | None = None
+    around: Repeat | None = None
     calm = 1
     items: Sequence[Item] = path
     while True:
@@ -130,7 +138,7 @@ def place(path: Sequence[Item], at: int, widths: Sequence[int]) -> Place:
         round_length = item.length // item.times
         times, at = divmod(at, round_length)
         offset = moved(offset, item.stride, times, widths)
-        around = (item, at)
+        around = item
         items = item.body
 
 
@@ -178,8 +186,7 @@ class Step:
 def steps(path: Sequence[Item], widths: Sequence[int], then: State | None) -> Iterator[Step]:
     """Everything that has to hold for the machine to run through the path, and from its end to `then`.
 
-    Without `then` the last beat's successor is not claimed, only its level: its step is given with target
-    equal to source and has to be dropped by the caller if that is not wanted, so it is not given at all.
+    Without `then` nothing is claimed of the last beat.
     """
     yield from _steps(path, widths, then, ())
 

@@ -9,13 +9,14 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 from prover import expr as e
-from prover.design import Design
+from prover.design import Design, Edge
 from prover.errors import UserError, Where
 from prover.expr import Expr
+from prover.solve import constant
 from prover.spec import Spec
 from prover.system import Inputs
 
@@ -64,6 +65,7 @@ def recognise(design: Design, spec: Spec) -> Ports:
     """
     holds = _holds(design, spec)
     clock = _clock(design, spec, holds)
+    design = _with_holds(design, holds)
     reset = _reset(design, spec, clock, holds)
     output, value = _output(design, spec)
     used = _used_inputs(design, value)
@@ -81,9 +83,35 @@ def recognise(design: Design, spec: Spec) -> Ports:
     return Ports(design, clock, reset, output, value, holds)
 
 
+def _with_holds(design: Design, holds: Mapping[str, int]) -> Design:
+    """The design with the held inputs' values put in: what is held takes no part in recognition."""
+    if not holds:
+        return design
+    values = {name: e.const(value, design.inputs[name]) for name, value in holds.items()}
+
+    def held(x: Expr) -> Expr:
+        return e.substitute([x], values)[0]
+
+    registers = tuple(
+        replace(
+            register,
+            edges=tuple(Edge(held(edge.clock), held(edge.data)) for edge in register.edges),
+            forces=tuple(replace(f, when=held(f.when), value=held(f.value)) for f in register.forces),
+        )
+        for register in design.registers
+    )
+    signals = {name: replace(signal, value=held(signal.value)) for name, signal in design.signals.items()}
+    return replace(design, registers=registers, signals=signals)
+
+
 def _where(design: Design, name: str) -> Where | None:
     signal = design.signals.get(name)
     return signal.where if signal else None
+
+
+def _top(design: Design) -> Where | None:
+    """Where the top module declares its first name."""
+    return next((signal.where for signal in design.signals.values()), None)
 
 
 def _known_input(design: Design, name: str, option: str) -> str:
@@ -146,10 +174,15 @@ def _clock(design: Design, spec: Spec, holds: Mapping[str, int]) -> str:
         return name
     candidates = _clock_inputs(design, holds)
     if not candidates:
-        where = design.registers[0].where if design.registers else None
-        raise UserError(
-            f"no input of {design.top} clocks a register", where, hint="name the clock with --clock PORT"
-        )
+        held = [name for name in _clock_inputs(design, {}) if name in holds]
+        if held:
+            raise UserError(
+                f"--hold {held[0]}: no other input of {design.top} clocks a register",
+                _where(design, held[0]),
+                hint="the clock can't be held",
+            )
+        hint = "a divider has flip-flops that an input clocks; name the clock with --clock PORT"
+        raise UserError(f"no input of {design.top} clocks a register", _top(design), hint=hint)
     best = max(candidates.values())
     names = [name for name, count in candidates.items() if count == best]
     if len(names) > 1:
@@ -226,7 +259,7 @@ def _asynchronous(design: Design, clock: str, holds: Mapping[str, int]) -> dict[
             for name in _free_inputs(design, [force.when], clock, holds):
                 for level in (0, 1):
                     when, value = e.substitute([force.when, force.value], {name: e.const(level, 1)})
-                    if when.is_const and when.value and value.is_const:
+                    if constant(when) == 1 and constant(value) is not None:
                         found.setdefault(name, set()).add(level)
     return found
 
@@ -236,12 +269,13 @@ def _synchronous(design: Design, clock: str, holds: Mapping[str, int]) -> dict[s
     found: dict[str, set[int]] = {}
     for register in design.registers:
         for edge in register.edges:
-            if edge.data.is_const:
+            names = _free_inputs(design, [edge.data], clock, holds)
+            if not names or constant(edge.data) is not None:
                 continue
-            for name in _free_inputs(design, [edge.data], clock, holds):
+            for name in names:
                 for level in (0, 1):
                     (data,) = e.substitute([edge.data], {name: e.const(level, 1)})
-                    if data.is_const:
+                    if constant(data) is not None:
                         found.setdefault(name, set()).add(level)
     return found
 
@@ -254,7 +288,8 @@ def _output(design: Design, spec: Spec) -> tuple[str, Expr]:
         return scalar[0], design.signals[scalar[0]].value
     listed = scalar or [f"{n}[{_bounds(design, n)}]" for n in design.outputs]
     if not listed:
-        raise UserError(f"{design.top} drives no output", hint="name a net with --output NAME")
+        hint = "name a net with --output NAME"
+        raise UserError(f"{design.top} drives no output", _top(design), hint=hint)
     raise UserError(
         f"several outputs could be the divided clock: {', '.join(listed)}",
         _where(design, design.outputs[0]),

@@ -14,6 +14,7 @@ from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
 from prover.rhythm import Start
+from prover.solve import constant
 from prover.system import Inputs, Moment, State, System, change_inputs, clock_edge
 
 MOST_UNKNOWN_BITS = 10
@@ -46,6 +47,10 @@ def hold(design: Design, clock: str, active: Inputs, effort: Effort) -> Held:
     moment |= active.moment(design.inputs) | {clock: e.FALSE}
     moment = change_inputs(design, clock, moment, active, limit)
     for count in range(longest):
+        for name in names:
+            known = constant(moment[name])
+            if known is not None:
+                moment[name] = e.const(known, moment[name].width)
         unknown = e.variables([moment[name] for name in names])
         if not unknown:
             states = _round(design, clock, moment, names, limit, effort)

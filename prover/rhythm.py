@@ -1,8 +1,7 @@
 """Rhythm: what a divider does from a set of start states. The engines' common answer; properties read it.
 
 Wave      the output's runs, (level, half-cycles), a lead-in and a round that repeats for ever
-Stretch   a piece of an orbit along which each input cycle adds the same vector to the registers
-Orbit     one start state's path into its loop, as a short list of stretches
+Orbit     one start state's run: a path into a loop, and the loop
 Loop      a cycle of states that the machine settles into
 Recovery  how long until a state is good, over all power-up states
 Rhythm    all of it together
@@ -12,23 +11,15 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, field
-from itertools import groupby
 from typing import Literal
 
+from prover import path
+from prover.path import Path, Run
 from prover.settling import Settling
 from prover.system import State, System
 
-Run = tuple[int, int]
-"""A level and the number of half-cycles for which the output keeps it."""
-
 LONGEST_ROUND = 200_000
 """Runs in a wave's round beyond which the round is not written out."""
-
-
-def merged(runs: Iterable[Run]) -> Iterator[Run]:
-    """Neighbouring runs of one level joined."""
-    for level, group in groupby(runs, key=lambda run: run[0]):
-        yield level, sum(length for _, length in group)
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,7 +33,7 @@ class Wave:
     @staticmethod
     def of_round(runs: Iterable[Run]) -> Wave:
         """The wave of a loop whose output, once round from anywhere, is `runs`."""
-        joined = list(merged(runs))
+        joined = list(path.merged(runs))
         if len(joined) == 1:
             return Wave(((joined[0][0], 1),))
         if joined[0][0] == joined[-1][0]:
@@ -81,100 +72,62 @@ def _least_rotation(runs: list[Run]) -> list[Run]:
 
 
 @dataclass(frozen=True, slots=True)
-class Stretch:
-    """`cycles` input cycles of an orbit, each of which adds `stride` to the state (mod 2^width each).
-
-    start   the state at the first half-cycle, at the clock level of the orbit's start
-    middle  the state one half-cycle later
-    levels  the output in the first and in the second half-cycle of every cycle of the stretch
-    """
-
-    start: State
-    middle: State
-    stride: State
-    cycles: int
-    levels: tuple[int, int]
-
-    def runs(self) -> Iterator[Run]:
-        first, second = self.levels
-        if first == second:
-            yield first, 2 * self.cycles
-        else:
-            for _ in range(self.cycles):
-                yield first, 1
-                yield second, 1
-
-    def state(self, half_cycle: int, widths: tuple[int, ...]) -> State:
-        """The state `half_cycle` half-cycles after the stretch's start."""
-        times, odd = divmod(half_cycle, 2)
-        base = self.middle if odd else self.start
-        return tuple(
-            (value + times * step) % (1 << width)
-            for value, step, width in zip(base, self.stride, widths, strict=True)
-        )
-
-
-@dataclass(frozen=True, slots=True)
 class Orbit:
-    """The path of one start state: stretches, of which those from index `loop_from` on repeat for ever.
+    """The run of one start state: a lead-in, then a loop that repeats for ever.
 
-    `loop_from` is None where the search ended before the orbit closed; `why` then says so."""
+    `loop` is empty where the search ended before the run closed; `why` then says so, and `lead` is what was
+    covered. `widths` are those of the state's components."""
 
-    stretches: tuple[Stretch, ...]
-    loop_from: int | None
+    lead: Path
+    loop: Path
     widths: tuple[int, ...]
     why: str = ""
 
     @property
+    def closed(self) -> bool:
+        """Whether the run is known for ever."""
+        return bool(self.loop)
+
+    @property
     def start(self) -> State:
-        return self.stretches[0].start
+        return path.first_state(self.lead or self.loop)
 
     @property
     def lead_half_cycles(self) -> int:
-        """Half-cycles before the loop is entered."""
-        lead = self.stretches[: self.loop_from]
-        return sum(2 * stretch.cycles for stretch in lead)
+        """Half-cycles before the loop is entered, or all that is known of a run that did not close."""
+        return path.length(self.lead)
 
     @property
-    def loop_half_cycles(self) -> int | None:
-        """Half-cycles once round the loop; None for an orbit that has not closed."""
-        if self.loop_from is None:
-            return None
-        return sum(2 * stretch.cycles for stretch in self.stretches[self.loop_from :])
+    def loop_half_cycles(self) -> int:
+        """Half-cycles once round the loop; 0 for a run that did not close."""
+        return path.length(self.loop)
 
     def runs(self, rounds: int) -> Iterator[Run]:
-        """The output's runs: lead-in, then the loop `rounds` times (once as far as known if not closed)."""
+        """The output's runs: lead-in, then the loop `rounds` times."""
 
-        def pieces() -> Iterator[Run]:
-            for stretch in self.stretches[: self.loop_from]:
-                yield from stretch.runs()
-            if self.loop_from is not None:
-                for _ in range(rounds):
-                    for stretch in self.stretches[self.loop_from :]:
-                        yield from stretch.runs()
+        def parts() -> Iterator[Run]:
+            yield from path.pieces(self.lead)
+            for _ in range(rounds if self.loop else 0):
+                yield from path.pieces(self.loop)
 
-        return merged(pieces())
+        return path.merged(parts())
 
     def wave(self) -> Wave | None:
-        """The loop's wave, None for an orbit that has not closed or a round too long to write out."""
-        if self.loop_from is None:
+        """The loop's wave, None for a run that did not close or a round too long to write out."""
+        if not self.loop or path.changes(self.loop, LONGEST_ROUND) > LONGEST_ROUND:
             return None
-        loop = self.stretches[self.loop_from :]
-        if sum(2 * s.cycles for s in loop if s.levels[0] != s.levels[1]) > LONGEST_ROUND:
-            return None
-        return Wave.of_round(run for stretch in loop for run in stretch.runs())
+        return Wave.of_round(path.pieces(self.loop))
+
+    def place(self, half_cycle: int) -> path.Place:
+        """Where the run is that many half-cycles after its start; IndexError where that is not known."""
+        lead = self.lead_half_cycles
+        if half_cycle < lead or not self.loop:
+            return path.place(self.lead, half_cycle, self.widths)
+        return path.place(self.loop, (half_cycle - lead) % self.loop_half_cycles, self.widths)
 
     def state(self, half_cycle: int) -> State:
         """The state that many half-cycles after the start."""
-        total = self.lead_half_cycles
-        if self.loop_from is not None and half_cycle >= total:
-            loop = self.loop_half_cycles or 1
-            half_cycle = total + (half_cycle - total) % loop
-        for stretch in self.stretches:
-            if half_cycle < 2 * stretch.cycles:
-                return stretch.state(half_cycle, self.widths)
-            half_cycle -= 2 * stretch.cycles
-        raise IndexError("beyond the end of an orbit that has not closed")
+        return self.place(half_cycle).state
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import random
 from typing import Any
 
 from prover import expr as e
@@ -39,3 +40,18 @@ def find(goal: Expr, effort: Effort) -> Model | None:
     if e.evaluate([goal], values) != [1]:
         raise InternalError("the solver's model does not satisfy the question")
     return values
+
+
+def constant(value: Expr) -> int | None:
+    """The value that an expression always has, if there is one: by its form, else by samples and the solver."""
+    if value.is_const:
+        return value.value
+    used = e.variables([value])
+    rng = random.Random(0)
+    samples = [{v.name: rng.getrandbits(v.width) for v in used} for _ in range(8)]
+    seen = {e.evaluate([value], sample)[0] for sample in samples}
+    if len(seen) > 1:
+        return None
+    (only,) = seen
+    differs = e.bvnot(e.eq(value, e.const(only, value.width)))
+    return only if find(differs, Effort(5)) is None else None

@@ -111,7 +111,7 @@ def read_ratio(text: str) -> Fraction:
         raise UserError(f"ratio '{text}' is not a number", hint="such as 3, 2.5 or 5/2") from None
 
 
-def read_number(text: str) -> int:
+def read_number(text: str, option: str) -> int:
     """A value as users write it: 12, 1_000, 0x1f, or a Verilog literal such as 8'h1f."""
     plain = text.replace("_", "").strip()
     literal = re.fullmatch(r"\d*'s?([bodh])([0-9a-f]+)", plain.lower())
@@ -122,7 +122,7 @@ def read_number(text: str) -> int:
             return int(literal[2], {"b": 2, "o": 8, "d": 10, "h": 16}[literal[1]])
         return int(plain, 0)
     except ValueError:
-        raise UserError(f"'{text}' is not a whole number", hint="such as 12, 0x1f or 8'h1f") from None
+        raise UserError(f"{option} '{text}' is not a whole number", hint="such as 12, 0x1f or 8'h1f") from None
 
 
 def read_frequency(text: str) -> Fraction:
@@ -133,9 +133,9 @@ def read_frequency(text: str) -> Fraction:
             raise ValueError
         value = Fraction(match[1].replace("_", "")) * UNITS[match[2]]
     except ValueError:
-        raise UserError(f"frequency '{text}' not understood", hint="such as 50MHz or 32.768kHz") from None
+        raise UserError(f"--fin '{text}' is not understood", hint="such as 50MHz or 32.768kHz") from None
     if value <= 0:
-        raise UserError(f"frequency '{text}' is not positive", hint="such as 50MHz")
+        raise UserError(f"--fin '{text}' is not positive", hint="such as 50MHz")
     return value
 
 
@@ -147,9 +147,9 @@ def read_duty_range(text: str) -> tuple[Fraction, Fraction]:
             raise ValueError
         ends = Fraction(low.strip()), Fraction((high if dots else low).strip())
     except (ValueError, ZeroDivisionError):
-        raise UserError(f"source duty '{text}' not understood", hint="such as 45..55, in per cent") from None
+        raise UserError(f"--source-duty '{text}' is not understood", hint="such as 45..55, in per cent") from None
     if not 0 < ends[0] <= ends[1] < 100:
-        raise UserError(f"source duty '{text}' is not a range within 0 to 100", hint="such as 45..55")
+        raise UserError(f"--source-duty '{text}' is not a range within 0 to 100", hint="such as 45..55")
     return ends
 
 

@@ -79,3 +79,18 @@ def twisted_ring(stages: int) -> Design:
     q = [e.var(f"q{i}", 1) for i in range(stages)]
     registers = [flop(f"q{i}", 1, CLOCK, q[i - 1] if i else e.bvnot(q[-1])) for i in range(stages)]
     return design(registers, q[0])
+
+
+def cascade(width: int, depth: int, limit: int) -> Design:
+    """`depth` counters of limit + 1 each, every one counting when all before it wrap; the output is high in the
+    last one's upper half."""
+    counts = [e.var(f"count{i}", width) for i in range(depth)]
+    last = e.const(limit, width)
+    ticks = e.TRUE
+    registers = []
+    for i, count in enumerate(counts):
+        wraps = e.eq(count, last)
+        following = e.ite(wraps, e.const(0, width), e.bvadd(count, e.const(1, width)))
+        registers.append(flop(f"count{i}", width, CLOCK, e.ite(RESET, e.const(0, width), e.ite(ticks, following, count))))
+        ticks = e.bvand(ticks, wraps)
+    return design(registers, e.bvult(e.const(limit // 2, width), counts[-1]), ("clk", "rst"))

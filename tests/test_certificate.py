@@ -6,12 +6,14 @@ import random
 from dataclasses import replace
 
 import numpy as np
+import pytest
 import small
 import z3
 
-from prover import certificate, graph, orbit
+from prover import certificate, graph, orbit, path
 from prover.design import Design
 from prover.effort import Effort
+from prover.path import Beat, Item, Repeat
 from prover.ports import recognise
 from prover.rhythm import Orbit
 from prover.settling import settle
@@ -30,11 +32,18 @@ def traced(system: System, start: State) -> Orbit:
     return found
 
 
-def test_orbits_of_any_ratio_have_few_stretches_and_pass() -> None:
+def test_orbits_of_any_ratio_have_few_items_and_pass() -> None:
     for limit in (4, 300, 25_000_000 - 1, 2**31 - 1):
         found = traced(system_of(small.toggle(32, limit)), (0, 0, 0))
         assert found.loop_half_cycles == 4 * (limit + 1)
-        assert len(found.stretches) < 50
+        assert len(found.loop) < 80
+
+
+@pytest.mark.parametrize("depth", [2, 3])
+def test_cascades_cost_no_more_than_their_depth(depth: int) -> None:
+    found = traced(system_of(small.cascade(16, depth, 49_999)), (0,) * (depth + 1))
+    assert found.loop_half_cycles == 2 * 50_000**depth
+    assert len(list(path.beats(found.loop))) < 3000
 
 
 def test_obligations_are_scripts_that_a_solver_refutes() -> None:
@@ -49,28 +58,41 @@ def test_obligations_are_scripts_that_a_solver_refutes() -> None:
         assert solver.check() == z3.unsat
 
 
-def test_every_altered_orbit_is_rejected() -> None:
-    system = system_of(small.toggle(16, 999))
+def altered(item: Item, widths: tuple[int, ...], rng: random.Random) -> Item:
+    """The item with one number changed."""
+
+    def flipped(state: State) -> State:
+        values = list(state)
+        i = rng.randrange(len(values))
+        values[i] ^= 1 << rng.randrange(widths[i])
+        return tuple(values)
+
+    if isinstance(item, Beat):
+        if rng.random() < 0.5:
+            return Beat(item.state, 1 - item.level)
+        return Beat(flipped(item.state), item.level)
+    part = rng.choice(["times", "stride", "body"])
+    if part == "times":
+        return Repeat(item.times + rng.choice([-1, 1, 7]), item.stride, item.body)
+    if part == "stride":
+        return Repeat(item.times, flipped(item.stride), item.body)
+    at = rng.randrange(len(item.body))
+    inner = altered(item.body[at], widths, rng)
+    return Repeat(item.times, item.stride, (*item.body[:at], inner, *item.body[at + 1 :]))
+
+
+@pytest.mark.parametrize("name", ["toggle", "cascade"])
+def test_every_altered_orbit_is_rejected(name: str) -> None:
+    design = small.toggle(16, 999) if name == "toggle" else small.cascade(8, 2, 199)
+    system = system_of(design)
     found = traced(system, (0, 0, 0))
     rng = random.Random(3)
-    for _ in range(120):
-        at = rng.randrange(len(found.stretches))
-        old = found.stretches[at]
-        part = rng.choice(["start", "middle", "stride", "cycles", "levels"])
-        if part == "cycles":
-            new = replace(old, cycles=old.cycles + rng.choice([-1, 1, 7]))
-        elif part == "levels":
-            new = replace(old, levels=(1 - old.levels[0], old.levels[1]))
-        else:
-            values = list(getattr(old, part))
-            i = rng.randrange(len(values))
-            values[i] ^= 1 << rng.randrange(found.widths[i])
-            new = replace(old, **{part: tuple(values)})
-        stretches = (*found.stretches[:at], new, *found.stretches[at + 1 :])
-        altered = replace(found, stretches=stretches)
-        assert certificate.orbit_faults(system, altered, Effort(60)), (part, at)
-    assert found.loop_from == 0
-    assert certificate.orbit_faults(system, replace(found, loop_from=1), Effort(60))
+    for _ in range(100):
+        at = rng.randrange(len(found.loop))
+        loop = (*found.loop[:at], altered(found.loop[at], found.widths, rng), *found.loop[at + 1 :])
+        assert certificate.orbit_faults(system, replace(found, loop=loop), Effort(60)), at
+    assert certificate.orbit_faults(system, replace(found, loop=found.loop[1:]), Effort(60))
+    assert certificate.orbit_faults(system, replace(found, loop=found.loop[:-1]), Effort(60))
 
 
 def test_altered_phases_and_ranks_are_rejected() -> None:

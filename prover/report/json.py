@@ -119,7 +119,7 @@ def _start(start: Start, orbit: Orbit, rhythm: Rhythm) -> Object:
         "cause": start.cause,
         "state": rhythm.system.describe(start.state),
         **_wave(orbit),
-        "lead_half_cycles": orbit.lead_half_cycles if orbit.loop_from is not None else None,
+        "lead_half_cycles": orbit.lead_half_cycles if orbit.closed else None,
         "loop_half_cycles": orbit.loop_half_cycles,
         "open": orbit.why,
     }

@@ -132,7 +132,7 @@ def _from(rhythm: Rhythm) -> str:
         return "from the declared initial values"
     held = rhythm.reset_half_cycles
     return "from reset" + (
-        f" held for {held} half-cycle{'s' * (held != 1)} or longer" if held is not None else ""
+        f" held for {held} half-cycle{'s' * (held != 1)} or longer" if held else ""
     )
 
 

@@ -83,19 +83,25 @@ def choose(timeline: Timeline, ends: int, broken_from: int, broken_to: int) -> l
     """What is shown of the half-cycles up to `ends`: all but the middles of long stretches, and where that is
     still too much, the beginning, what is around the ends of the broken range, and the end."""
     windows: list[tuple[int, int]] | None = None
-    if ends > MOST_SHOWN and _shown_in_full(timeline, ends) > MOST_SHOWN:
+    if ends > MOST_SHOWN and _too_much(timeline, ends):
         part = MOST_SHOWN // 8
         around = [(at - part, at + part) for at in (part, broken_from, broken_to, ends - part)]
         windows = sorted((max(0, a), min(ends, b)) for a, b in around)
         return _windowed(timeline, ends, windows)
-    return _merged(_stretch_by_stretch(timeline, 0, ends))
+    return _merged(_span_by_span(timeline, 0, ends))
 
 
-def _shown_in_full(timeline: Timeline, ends: int) -> int:
-    return sum(min(length, 2 * END_SHOWN) for length in timeline.regular(0, ends))
+def _too_much(timeline: Timeline, ends: int) -> bool:
+    """Whether the ends of all spans alone are more than what is shown."""
+    shown = 0
+    for length in timeline.regular(0, ends):
+        shown += min(length, 2 * END_SHOWN)
+        if shown > MOST_SHOWN:
+            return True
+    return False
 
 
-def _stretch_by_stretch(timeline: Timeline, begins: int, ends: int) -> Iterator[Piece]:
+def _span_by_span(timeline: Timeline, begins: int, ends: int) -> Iterator[Piece]:
     at = begins
     for length in timeline.regular(begins, ends):
         if length <= 4 * END_SHOWN:
@@ -125,7 +131,7 @@ def _windowed(timeline: Timeline, ends: int, windows: Sequence[tuple[int, int]])
         if at < begins:
             pieces.append(Piece(at, begins, folded=True))
         if max(at, begins) < upto:
-            pieces += _stretch_by_stretch(timeline, max(at, begins), upto)
+            pieces += _span_by_span(timeline, max(at, begins), upto)
         at = max(at, upto)
     if at < ends:
         pieces.append(Piece(at, ends, folded=True))

@@ -1,6 +1,6 @@
 """Waves for the eye: an orbit looked up by half-cycle, and the choice of what to show of it.
 
-    Timeline   an orbit's state and output at any half-cycle, found by bisection over its stretches
+    Timeline   an orbit's state and output at any half-cycle, whatever its length
     Piece      half-cycles that are shown, or folded away with their number stated
     plan       the pieces of a range of half-cycles that show the points that matter
     draw       rows of levels and values under a ruler, in columns of one half-cycle
@@ -11,16 +11,16 @@ is shown.
 
 from __future__ import annotations
 
-from bisect import bisect_right
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
-from itertools import accumulate, islice
+from itertools import islice
 
-from prover.rhythm import Orbit, Stretch
+from prover.path import Place, length
+from prover.rhythm import Orbit
 from prover.system import State
 
-MOST_STRETCHES = 256
-"""Stretches that are looked at to tell what stays constant over a range; over more, nothing is claimed to."""
+MOST_SPANS = 256
+"""Spans that are looked at to tell what stays constant over a range; over more, nothing is claimed to."""
 
 
 class Timeline:
@@ -30,90 +30,68 @@ class Timeline:
         self.orbit = orbit
         self.lead = orbit.lead_half_cycles
         self.loop = orbit.loop_half_cycles
-        self._begins = list(accumulate((2 * s.cycles for s in orbit.stretches), initial=0))
 
     @property
     def once(self) -> int:
         """Half-cycles of the lead-in and once round the loop, or all that is known of an unclosed orbit."""
-        return self._begins[-1]
+        return self.lead + self.loop
 
     def end(self, wanted: int) -> int:
         """`wanted`, or the half-cycle at which an orbit that has not closed ends, whichever comes first."""
-        return wanted if self.loop is not None else min(wanted, self.once)
-
-    def _folded(self, half_cycle: int) -> int:
-        """The same moment within the first round."""
-        if self.loop is None or half_cycle < self.once:
-            return half_cycle
-        return self.lead + (half_cycle - self.lead) % self.loop
-
-    def place(self, half_cycle: int) -> tuple[Stretch, int]:
-        """The stretch that a half-cycle falls into, and how many half-cycles into it."""
-        at = self._folded(half_cycle)
-        index = bisect_right(self._begins, at) - 1
-        if at < 0 or index >= len(self.orbit.stretches):
-            raise IndexError("beyond the end of an orbit that has not closed")
-        return self.orbit.stretches[index], at - self._begins[index]
+        return wanted if self.loop else min(wanted, self.once)
 
     def state(self, half_cycle: int) -> State:
         """Register values, then the clock's level."""
-        stretch, into = self.place(half_cycle)
-        return stretch.state(into, self.orbit.widths)
+        return self.orbit.place(half_cycle).state
 
     def level(self, half_cycle: int) -> int:
         """The output."""
-        stretch, into = self.place(half_cycle)
-        return stretch.levels[into % 2]
+        return self.orbit.place(half_cycle).level
 
-    def parts(self, begins: int, ends: int) -> Iterator[tuple[Stretch, int, int]]:
-        """The stretches that make up a range of half-cycles, each with the range of itself that it gives."""
+    def spans(self, begins: int, ends: int) -> Iterator[tuple[Place, int]]:
+        """The places from which a range of half-cycles runs on regularly, each with how far it does."""
         at = begins
         while at < ends:
-            stretch, into = self.place(at)
-            upto = min(2 * stretch.cycles, into + ends - at)
-            yield stretch, into, upto
-            at += upto - into
+            place = self.orbit.place(at)
+            size = min(place.calm, ends - at)
+            yield place, size
+            at += size
 
     def regular(self, begins: int, ends: int) -> Iterator[int]:
-        """The lengths of the stretches that make up a range, along each of which registers move steadily."""
-        for _, into, upto in self.parts(begins, ends):
-            yield upto - into
+        """The lengths of the spans that make up a range, along each of which registers move steadily."""
+        for _, size in self.spans(begins, ends):
+            yield size
 
     def edges(self, begins: int, ends: int) -> Iterator[int]:
         """The half-cycles in the range that begin with a change of the output."""
-        at = begins
-        before = self.level(begins - 1) if begins > 0 else None
-        for stretch, into, upto in self.parts(begins, ends):
-            if stretch.levels[0] == stretch.levels[1]:
-                if before is not None and before != stretch.levels[0]:
-                    yield at
-            else:
-                if before is None or before != stretch.levels[into % 2]:
-                    yield from (at,) if before is not None else ()
-                yield from range(at + 1, at + upto - into)
-            before = stretch.levels[(upto - 1) % 2]
-            at += upto - into
+        rounds = max(ends - self.lead, 0) // self.loop + 2 if self.loop else 0
+        at = 0
+        for index, (_, size) in enumerate(self.orbit.runs(rounds)):
+            if at >= ends:
+                return
+            if index > 0 and at >= begins:
+                yield at
+            at += size
 
     def steady(self, begins: int, ends: int) -> tuple[int | None, ...]:
         """The value that each component of the state, and last the output, keeps all through the range; None
         for one that moves in it, or where the range is too varied to tell."""
         kept: tuple[int | None, ...] | None = None
-        for count, (stretch, into, upto) in enumerate(self.parts(begins, ends)):
-            if count == MOST_STRETCHES:
+        at = begins
+        for count, (place, size) in enumerate(self.spans(begins, ends)):
+            if count == MOST_SPANS:
                 return (None,) * len(kept or ())
-            here = _steady_within(stretch, into, upto, self.orbit.widths)
+            here = self._steady_within(at, place, size)
             both = zip(kept or here, here, strict=True)
             kept = tuple(a if a == b else None for a, b in both)
+            at += size
         return kept or ()
 
-
-def _steady_within(stretch: Stretch, into: int, upto: int, widths: tuple[int, ...]) -> tuple[int | None, ...]:
-    first = (*stretch.state(into, widths), stretch.levels[into % 2])
-    if upto - into == 1:
-        return first
-    second = (*stretch.state(into + 1, widths), stretch.levels[(into + 1) % 2])
-    strides = (*stretch.stride, 0) if upto - into > 2 else (0,) * len(first)
-    return tuple(a if a == b and not d else None for a, b, d in zip(first, second, strides, strict=True))
+    def _steady_within(self, at: int, place: Place, size: int) -> tuple[int | None, ...]:
+        """The same within one span, of which two rounds of its repeat show all that changes."""
+        shown = min(size, 2 * length(place.around.body)) if place.around else 1
+        rows = [(*p.state, p.level) for p in (self.orbit.place(at + i) for i in range(shown))]
+        return tuple(column[0] if len(set(column)) == 1 else None for column in zip(*rows, strict=True))
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections import deque
 from collections.abc import Iterable
 from dataclasses import dataclass, field, replace
+from typing import Literal
 
 from prover import expr as e
 from prover.design import Edge, Force, Register, Signal
@@ -18,7 +19,7 @@ from prover.expr import Expr
 from prover.verilog.names import Net, Report
 from prover.verilog.processes import Driver
 from prover.verilog.source import printable
-from prover.verilog.words import cut, reads, runs
+from prover.verilog.words import Replacer, Search, cut, joined, reads, runs
 
 UNDRIVEN = "?undriven "
 
@@ -52,7 +53,11 @@ class Drivers:
     initial: dict[Net, tuple[int, int]] = field(default_factory=dict)
     slices: dict[Net, list[Slice]] = field(default_factory=dict)
     named: dict[str, Slice] = field(default_factory=dict)
-    whole: dict[str, Expr] = field(default_factory=dict)
+    whole: dict[Expr, Expr] = field(default_factory=dict)
+    cuts: dict[tuple[Expr, int, int], Expr] = field(default_factory=dict)
+    expand: Replacer = field(default_factory=lambda: Replacer({}))
+    final: Replacer = field(default_factory=lambda: Replacer({}))
+    searches: dict[tuple[Expr, int], Search] = field(default_factory=dict)
 
     def add(self, driver: Driver) -> None:
         self.by_net.setdefault(driver.net, []).append(driver)
@@ -146,18 +151,19 @@ class Drivers:
             self.slices[net] = made
             self.named.update({s.name: s for s in made})
             if len(made) > 1 or made[0].name != net.name:
-                self.whole[net.name] = e.concat_all([e.var(s.name, s.width) for s in reversed(made)])
-        memo: dict[tuple[Expr, int, int], Expr] = {}
+                self.whole[net.value] = joined([e.var(s.name, s.width) for s in reversed(made)])
+        self.expand, self.cuts = Replacer(self.whole), {}
         for net in self.nets:
             for part in self.slices[net]:
                 if part.driver is not None and part.driver.word is not None:
-                    part.word = self._sliced(part.driver.word, part, memo)
+                    part.word = self._sliced(part.driver.word, part)
                 elif part.driver is None and net.words and part.initial is not None:
                     # A memory that only initial values fill is a table, not state.
                     part.word = e.const(part.initial, part.width)
 
-    def _sliced(self, word: Expr, part: Slice, memo: dict[tuple[Expr, int, int], Expr]) -> Expr:
-        return e.substitute([cut(word, part.high, part.low, memo)], self.whole)[0]
+    def _sliced(self, word: Expr, part: Slice) -> Expr:
+        """A driver's word for one slice, in terms of slices."""
+        return self.expand(cut(word, part.high, part.low, self.cuts))
 
     def _parts(self, net: Net, split: set[Net]) -> list[tuple[int, int, int]]:
         """(low, high, index of the driver or -1) for every slice of the net."""
@@ -232,24 +238,26 @@ class Drivers:
         """For each slice its value over registers and inputs."""
         values: dict[str, Expr] = {}
         edges = self._edges()
+        self.final = Replacer({})
         for name, part in self.named.items():
             if part.word is not None and name not in loops:
                 continue
             driven = part.driver is not None or part.net in self.inputs or part.initial is not None
             values[name] = e.var(name if driven else UNDRIVEN + name, part.width)
+            self.final.memo[e.var(name, part.width)] = values[name]
         for name in _operands_first(
             {n: [o for o in os if o not in loops] for n, os in edges.items() if n not in loops}
         ):
-            word = self.named[name].word
-            assert word is not None
-            values[name] = e.substitute([word], values)[0]
+            part = self.named[name]
+            assert part.word is not None
+            values[name] = self.final(part.word)
+            self.final.memo[e.var(name, part.width)] = values[name]
         return values
 
     # -- results -------------------------------------------------------------------------------------------
 
     def _registers(self, values: dict[str, Expr], loops: set[str]) -> list[Register]:
         out: list[Register] = []
-        memo: dict[tuple[Expr, int, int], Expr] = {}
         for part in self.named.values():
             if part.net in self.inputs or (part.word is not None and part.name not in loops):
                 continue
@@ -258,52 +266,45 @@ class Drivers:
             where = self.report.where(part.net.offset)
             if part.name in loops:
                 assert part.word is not None and part.driver is not None
-                value = e.substitute([part.word], values)[0]
+                value = self.final(part.word)
                 force = Force(e.TRUE, value, self.report.where(part.driver.at))
                 out.append(Register(part.name, part.width, "loop", (), (force,), part.initial, where))
             else:
-                out.append(self._stored(part, values, memo))
+                out.append(self._stored(part))
         self._check_read(out, values)
         return out
 
-    def _stored(
-        self, part: Slice, values: dict[str, Expr], memo: dict[tuple[Expr, int, int], Expr]
-    ) -> Register:
+    def _stored(self, part: Slice) -> Register:
         driver = part.driver
         edges: list[Edge] = []
         forces: list[Force] = []
         for edge in driver.edges if driver else ():
-            clock, data = e.substitute([edge.clock, self._sliced(edge.data, part, memo)], {**self.whole})
-            clock, data = e.substitute([clock, data], values)
+            clock, data = (self.final(x) for x in (self.expand(edge.clock), self._sliced(edge.data, part)))
             self._check_race(part, clock, data)
             if clock.is_const:
                 self.report.note(f"the clock of {printable(part.name)} never moves", part.net.offset)
             else:
                 edges.append(Edge(clock, data))
         for force in driver.forces if driver else ():
-            when, value = e.substitute([force.when, self._sliced(force.value, part, memo)], {**self.whole})
-            when, value = e.substitute([when, value], values)
+            when, value = (self.final(x) for x in (self.expand(force.when), self._sliced(force.value, part)))
             if when is not e.FALSE:
                 forces.append(replace(force, when=when, value=value))
-        kind: str = "latch" if driver and driver.latch else "flip-flop"
         where = self.report.where(driver.at if driver else part.net.offset)
-        return Register(part.name, part.width, "latch" if kind == "latch" else "flip-flop", tuple(edges),
-                        tuple(forces), part.initial, where)  # fmt: skip
+        kind: Literal["latch", "flip-flop"] = "latch" if driver and driver.latch else "flip-flop"
+        return Register(part.name, part.width, kind, tuple(edges), tuple(forces), part.initial, where)
 
     def _check_race(self, part: Slice, clock: Expr, data: Expr) -> None:
         """A clock that is plainly a signal must not be its own register's data (the value would race)."""
         signal = clock.args[0] if clock.op == "bvnot" else clock
-        plain = signal.op == "var" or (signal.op == "extract" and signal.args[0].op == "var")
-        if not plain or signal.is_const:
+        variable = signal.args[0] if signal.op == "extract" else signal
+        if variable.op != "var" or variable.name == part.name:
             return
-        mine = reads([signal])
-        name = next(iter(mine), "")
-        if name == part.name or name not in reads([data]):
-            return
-        if mine[name] & reads([data])[name]:
+        mask = reads([signal]).get(variable.name, 0)
+        search = self.searches.setdefault((variable, mask), Search(variable, mask))
+        if search.reads(data):
             assert part.driver is not None
             self.report.fail(
-                f"{printable(part.name)} samples {printable(name)}, which is the signal that clocks it: "
+                f"{printable(part.name)} samples {printable(variable.name)}, which is the signal that clocks it: "
                 "a simulator reads its new value, gates race",
                 part.driver.at,
                 "sample something else, or use the other edge",
@@ -330,12 +331,12 @@ class Drivers:
         out: dict[str, Signal] = {}
         for net in self.nets:
             parts = [values[part.name] for part in reversed(self.slices[net])]
-            word = e.concat_all(parts)
+            word = joined(parts)
             where = self.report.where(net.offset)
             size = net.type.width
             for k in range(net.count):
                 name = net.part(k * size + size - 1, k * size)
-                value = e.extract(word, k * size + size - 1, k * size)
+                value = cut(word, k * size + size - 1, k * size, self.cuts)
                 out[name] = Signal(name, value, net.msb, net.lsb, net.type.signed, where)
         return out
 

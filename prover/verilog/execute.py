@@ -22,8 +22,8 @@ from prover.verilog.sizing import Place, Sizer, constant, write_part, written_ma
 from prover.verilog.source import printable
 from prover.verilog.words import cut
 
-MAX_STEPS = 400_000
-MAX_ROUNDS = 70_000
+MAX_STEPS = 30_000
+MAX_ROUNDS = 10_000
 
 _SILENT = frozenset(
     """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff strobe
@@ -110,11 +110,11 @@ class Environment:
     def report(self) -> Report:
         return self.executor.report
 
-    def find(self, node: Any) -> Any:
+    def find(self, node: Any, routine: bool = False) -> Any:
         name = printable(node.name)
         entry: Any
         if node.scope is None:
-            entry = self.scope.find(node.name)
+            entry = self.scope.find(node.name, routine)
         else:
             entry = self._descend(node)
         if isinstance(entry, Lazy):
@@ -173,6 +173,8 @@ class Executor:
 
     report: Report
     declares: Declares | None = None
+    unrolling: int = 0
+    steps: int = 0
 
     def run(self, statement: Any, scope: Scope, state: State | None = None) -> State:
         """The state after the statement."""
@@ -346,6 +348,7 @@ class Executor:
     def _loop(
         self, node: Any, condition: Any, body: Any, step: Any, scope: Scope, state: State
     ) -> Task[None]:
+        self.unrolling += 1
         for _ in range(MAX_ROUNDS):
             test: Expr = yield Sizer(Environment(self, scope, state)).condition(condition)
             if not test.is_const:
@@ -353,6 +356,7 @@ class Executor:
                     "how often this loop runs isn't known beforehand", node, "give it constant bounds"
                 )
             if not test.value:
+                self.unrolling -= 1
                 return
             yield self.execute(body, scope, state)
             if step is not None:
@@ -363,8 +367,10 @@ class Executor:
         times: int = yield Sizer(Environment(self, scope, state)).number(node.times, "the count of a repeat")
         if times > MAX_ROUNDS:
             self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node)
+        self.unrolling += 1
         for _ in range(times):
             yield self.execute(node.body, scope, state)
+        self.unrolling -= 1
 
     # -- blocks and calls ----------------------------------------------------------------------------------
 
@@ -380,7 +386,7 @@ class Executor:
     def _task(self, node: Any, scope: Scope, state: State) -> Task[None]:
         name, arguments = (node.name, node.args) if isinstance(node, vast.FunctionCall) else (node.name, ())
         env = Environment(self, scope, state)
-        routine = env.find(name)
+        routine = env.find(name, routine=True)
         if not isinstance(routine, Routine) or routine.result is not None:
             self.report.fail(f"{printable(name.name)} is no task", node)
         yield self.call(routine, tuple(arguments), env, state, node)
@@ -410,8 +416,10 @@ class Executor:
             if word is not None:
                 state.values[formal] = word
         routine.active += 1
+        self.unrolling += 1
         for statement in routine.body:
             yield self.execute(statement, routine.scope, state)
+        self.unrolling -= 1
         routine.active -= 1
         outcome = {net: state.values.get(net) or self.report.choice(net.width) for net in own}
         for table in (state.values, state.written, state.touched):

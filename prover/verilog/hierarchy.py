@@ -21,6 +21,7 @@ from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
 
 MAX_DEPTH = 64
+MAX_BLOCKS = 200
 MAX_SCOPES = 20_000
 
 
@@ -226,6 +227,8 @@ class Hierarchy:
     ) -> Scope:
         if name in scope.names:
             self.report.fail(f"{printable(name)} is declared twice", at, "rename one of them")
+        if scope.depth >= MAX_BLOCKS:
+            self.report.fail(f"blocks nest more than {MAX_BLOCKS} deep", at)
         inner = scope.child(name, kind, module)
         scope.names[name] = inner
         return inner

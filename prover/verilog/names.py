@@ -31,7 +31,6 @@ class Report:
     source: Source
     notes: dict[tuple[str, Where], Note] = field(default_factory=dict)
     choices: int = 0
-    steps: int = 0
 
     def fail(self, message: str, at: int | Any, hint: str = "") -> NoReturn:
         """Refuse the input at a node or an offset."""
@@ -182,19 +181,21 @@ class Scope:
     names: dict[str, Entry] = field(default_factory=dict)
     blocks: int = 0
     local: bool = False
+    depth: int = 0
 
     def child(self, name: str, kind: str, module: str | None = None) -> Scope:
         """A scope inside this one; a module sees no names from outside."""
         inner = Scope(f"{self.prefix}{name}.", self, kind, module or self.module)
         inner.local = self.local or kind == "routine"
+        inner.depth = self.depth + 1
         return inner
 
-    def find(self, name: str) -> Entry | None:
+    def find(self, name: str, routine: bool = False) -> Entry | None:
         """What the name stands for here: the innermost scope up to the module decides (clause 12.7)."""
         scope: Scope | None = self
         while scope is not None:
             found = scope.names.get(name)
-            if found is not None:
+            if found is not None and not (routine and isinstance(found, Net)):
                 return found
             scope = None if scope.kind == "module" else scope.parent
         return None

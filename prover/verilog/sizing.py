@@ -22,7 +22,7 @@ from prover.verilog import tree
 from prover.verilog.deep import Task, run
 from prover.verilog.names import MAX_WIDTH, Constant, Net, Report, Routine, Type
 from prover.verilog.source import printable
-from prover.verilog.words import cut
+from prover.verilog.words import cut, joined
 
 _CAST_TYPES = {"int": Type(32, True), "integer": Type(32, True), "byte": Type(8, True), "shortint": Type(16, True),
                "longint": Type(64, True), "bit": Type(1, False), "logic": Type(1, False)}  # fmt: skip
@@ -36,8 +36,9 @@ class Env(Protocol):
     def report(self) -> Report:
         """Where refusals and notes go."""
 
-    def find(self, node: Any) -> Any:
-        """The Net, Constant or Routine that an identifier stands for; UserError if nothing."""
+    def find(self, node: Any, routine: bool = False) -> Any:
+        """The Net, Constant or Routine that an identifier stands for; UserError if nothing. Inside a function
+        its name is the result's, unless a `routine` is asked for."""
 
     def read(self, net: Net, node: Any) -> Expr:
         """The present word of a net; UserError where only constants may stand."""
@@ -188,7 +189,7 @@ def write_part(place: Place, whole: Expr, value: Expr) -> Expr:
             assert place.word is not None
             here = e.eq(place.word, e.const(k, place.word.width))
             words[k] = e.ite(here, _put(word, place.low, place.width, value), word)
-    return e.concat_all(words[::-1])
+    return joined(words[::-1])
 
 
 def written_mask(place: Place) -> int:
@@ -238,7 +239,7 @@ def _put(word: Expr, low: int | Expr, width: int, value: Expr) -> Expr:
             else cut(word, i, i)
             for i in range(word.width)
         ]
-        return e.concat_all(bits[::-1])
+        return joined(bits[::-1])
     moved, inside = _offset(low, width, word.width)
     size = max(word.width + 2 * width, moved.width)
     amount = e.resize(moved, size, False)
@@ -509,7 +510,7 @@ class Sizer:
         yield
 
     def _function(self, node: Any) -> Routine:
-        found = self.env.find(node.name)
+        found = self.env.find(node.name, routine=True)
         if not isinstance(found, Routine) or found.result is None:
             self.report.fail(f"{printable(node.name.name)} is no function", node)
         return found
@@ -661,7 +662,7 @@ class Sizer:
         for part in node.list:
             value: Value = yield self.alone(part)
             parts.append(value.word)
-        return e.resize(e.concat_all(parts), to.width, False)
+        return e.resize(joined(parts), to.width, False)
 
     def _build_repeat(self, node: Any, to: Type) -> Task[Expr]:
         total: Type = yield self.type_of(node)

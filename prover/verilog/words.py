@@ -5,20 +5,76 @@ All that `prover.expr` builds is simplified as it is built, operand by operand; 
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 
 from prover import expr as e
 from prover.expr import Expr
 from prover.verilog.deep import Task, run
 
 
-def replace(roots: Sequence[Expr], by_node: dict[Expr, Expr]) -> list[Expr]:
+class Replacer:
+    """Replaces nodes and simplifies what stands above them; what was done once is kept for the next root."""
+
+    def __init__(self, by_node: Mapping[Expr, Expr]) -> None:
+        self.memo: dict[Expr, Expr] = dict(by_node)
+
+    def __call__(self, root: Expr) -> Expr:
+        memo = self.memo
+        stack = [root]
+        while stack:
+            node = stack[-1]
+            if node in memo:
+                stack.pop()
+                continue
+            missing = [a for a in node.args if a not in memo]
+            if missing:
+                stack += missing
+            else:
+                stack.pop()
+                memo[node] = e.rebuild(node, [memo[a] for a in node.args])
+        return memo[root]
+
+
+def replace(roots: Sequence[Expr], by_node: Mapping[Expr, Expr]) -> list[Expr]:
     """The roots with whole nodes replaced and everything above them simplified."""
-    memo = dict(by_node)
-    for node in e.topological(roots):
-        if node not in memo:
-            memo[node] = e.rebuild(node, [memo[a] for a in node.args])
-    return [memo[root] for root in roots]
+    replacer = Replacer(by_node)
+    return [replacer(root) for root in roots]
+
+
+class Search:
+    """Tells whether expressions read some bits of a variable; what was searched once isn't searched again."""
+
+    def __init__(self, variable: Expr, mask: int) -> None:
+        self.variable, self.mask = variable, mask
+        self.without: set[Expr] = set()
+
+    def reads(self, root: Expr) -> bool:
+        """Does the root read any of the bits?"""
+        if root is self.variable:
+            return True
+        stack = [root]
+        while stack:
+            node = stack.pop()
+            if node in self.without:
+                continue
+            if self.variable in node.args:
+                bits = (1 << self.variable.width) - 1
+                if node.op == "extract":
+                    bits = ((1 << (int(node.params[0]) + 1)) - 1) ^ ((1 << int(node.params[1])) - 1)
+                if bits & self.mask:
+                    return True
+            self.without.add(node)
+            stack += (a for a in node.args if a is not self.variable)
+        return False
+
+
+def joined(parts: Sequence[Expr]) -> Expr:
+    """The parts as one word, the first uppermost, in a balanced tree: cutting it up again is quick."""
+    level = list(parts)
+    while len(level) > 1:
+        pairs = [e.concat(level[i], level[i + 1]) for i in range(0, len(level) - 1, 2)]
+        level = pairs + level[len(level) - 1 :] if len(level) % 2 else pairs
+    return level[0]
 
 
 def cut(word: Expr, high: int, low: int, memo: dict[tuple[Expr, int, int], Expr] | None = None) -> Expr:
@@ -122,4 +178,4 @@ def masked(word: Expr, mask: int, memo: dict[tuple[Expr, int, int], Expr]) -> Ex
         above = high + 1
     if above < word.width:
         parts.append(e.const(0, word.width - above))
-    return e.concat_all(parts[::-1])
+    return joined(parts[::-1])

@@ -1,0 +1,531 @@
+"""Wide machines from every power-up state: paths that cover all states, found by counterexample and widened.
+
+The idea is a cover. Trace a start state into its loop with jumps; a jump through a counter's pass is one repeat,
+extended backwards to where its stride no longer holds, so that one path covers every state of a counter's
+overshoot. Then ask the solver for a power-up state that is on no path yet, nor gets on one within a few
+half-cycles, trace that one, and go on until there is none (counterexample-guided widening). A state that joins a
+path after j half-cycles at a place at least j from the path's start needs no longer than the path's own start, so
+the worst recovery is that of some start, and exact.
+
+A machine of which the last states need more steps than paths can be merged with, such as a ring with
+correction, is unrolled for as many half-cycles as its worst start needs, which is found in the same way.
+
+Cascades are taken in stages. A stage is a set of registers that depends on no other; the states of one stage are
+covered under the assumption that the stages before it are on their loops, and the times add up.
+
+Limits: membership in a path is a formula only where each repeat moves some register that no other repeat around
+the same beat moves.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from itertools import accumulate
+
+from prover import certificate, orbit, path
+from prover import expr as e
+from prover.effort import Effort, OutOfEffort
+from prover.errors import InternalError
+from prover.expr import Expr
+from prover.path import Beat, Item, Path, Repeat
+from prover.rhythm import Orbit
+from prover.solve import find
+from prover.system import State, System, settled_when
+
+MERGE = 6
+"""Half-cycles within which a state has to join a path."""
+
+UNROLLED = 320
+"""Half-cycles up to which a machine is unrolled from all states."""
+
+EARLY = 4
+"""Half-cycles before a known good place within which a state is recognised as good by its output."""
+
+PATIENCE = orbit.PATIENCE + 2
+"""Rounds that a repeat has to gain backwards for a line to be traced anew: orbits follow fewer singly."""
+
+DRAWN_BACK = 4
+"""Times that a line is drawn out backwards."""
+
+MOST_PATHS = 48
+"""Paths in a cover beyond which it is given up."""
+
+
+@dataclass(frozen=True, slots=True)
+class Goal:
+    """The wave that is good: half-cycles per period and of high time; None to look for loops only."""
+
+    period: int
+    high: int
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """An orbit with its recovery: half-cycles from its start until good, None if it never is."""
+
+    orbit: Orbit
+    recovery: int | None
+
+
+@dataclass(frozen=True, slots=True)
+class Cover:
+    """What is known of all power-up states of a system.
+
+    lines   the orbits traced; together they meet every power-up state if `complete`
+    worst   half-cycles within which every state recovers, None if some line never does or not complete
+    slowest a start state that needs exactly `worst`, None if the bound may not be exact
+    why     what is missing where it isn't complete
+    method  in words
+    """
+
+    lines: tuple[Line, ...]
+    complete: bool
+    worst: int | None
+    slowest: State | None
+    why: str
+    method: str
+
+
+# -- recovery along one orbit ------------------------------------------------------------------------------
+
+
+def recovery_on(run: Orbit, period: int, high: int) -> int | None:
+    """Half-cycles from the orbit's start until its wave is for ever `high` of every `period`; None if never."""
+    wave = run.wave()
+    if wave is None or not wave.divides_by(period, high):
+        return None
+    # Walk back from the loop, run by run: the phase there fixes what every earlier half-cycle has to show.
+    pieces = list(path.merged([*path.pieces(run.lead), *_two_rounds(run)]))
+    begins = list(accumulate((size for _, size in pieces), initial=0))
+    rise = first_rise(run)
+    index = begins.index(rise) - 1
+    edge, level = rise, 0
+    while index >= 0:
+        wanted = period - high if level == 0 else high
+        piece_level, size = pieces[index]
+        if piece_level != level:
+            raise InternalError("runs that do not alternate")
+        if size != wanted:
+            # The tail of a longer run fits as far as the ideal run goes; a shorter one at the start fits whole.
+            return max(edge - wanted, 0) if size > wanted else (0 if index == 0 else begins[index])
+        edge -= size
+        level = 1 - level
+        index -= 1
+    return 0
+
+
+def _two_rounds(run: Orbit) -> Iterator[path.Run]:
+    for _ in range(2):
+        yield from path.pieces(run.loop)
+
+
+def first_rise(run: Orbit) -> int:
+    """A half-cycle of the loop, counted from the start and at least the lead-in's length, at which the output rises."""
+    at, lead = 0, run.lead_half_cycles
+    for index, (level, size) in enumerate(path.merged([*path.pieces(run.lead), *_two_rounds(run)])):
+        if level == 1 and index > 0 and at >= lead:
+            return at
+        at += size
+    raise InternalError("a loop without a rise")
+
+
+Axes = tuple[tuple[int, State], ...]
+"""The repeats around a beat, outermost first: how many rounds, and what each adds."""
+
+
+# -- membership --------------------------------------------------------------------------------------------
+
+
+def on_beat(system: System, state: Sequence[Expr], beat: State, axes: Sequence[tuple[int, State]]) -> Expr | None:
+    """One bit: the state is the beat's for some indices of the repeats around it. None if that can't be said."""
+    widths = [w for _, w in system.variables]
+    parts: list[Expr] = []
+    expected = [e.const(v, w) for v, w in zip(beat, widths, strict=True)]
+    for number, (times, stride) in enumerate(axes):
+        others = [s for i, (_, s) in enumerate(axes) if i != number]
+        witness = _witness(stride, others, widths)
+        if witness is None:
+            return None
+        width, step = widths[witness], stride[witness]
+        shift = (step & -step).bit_length() - 1
+        odd = step >> shift
+        difference = e.bvsub(state[witness], e.const(beat[witness], width))
+        if shift:
+            difference = e.binary("bvlshr", difference, e.const(shift, width))
+        index = e.bvmul(difference, e.const(pow(odd, -1, 1 << width), width))
+        if shift:
+            index = e.bvand(index, e.const((1 << (width - shift)) - 1, width))
+        if times < 1 << width:
+            parts.append(e.bvult(index, e.const(times, width)))
+        for i, w in enumerate(widths):
+            if stride[i]:
+                scaled = e.bvmul(e.resize(index, w, False), e.const(stride[i], w))
+                expected[i] = e.bvadd(scaled, expected[i])
+    for i, (value, wanted) in enumerate(zip(state, expected, strict=True)):
+        if not (len(axes) == 1 and _is_plain_witness(i, axes[0][1], widths)):
+            parts.append(e.eq(value, wanted))
+    return e.conj(parts)
+
+
+def _witness(stride: State, others: Sequence[State], widths: Sequence[int]) -> int | None:
+    """The register from which a repeat's index can be read: moved by this repeat alone, by an odd step if any is."""
+    found = [i for i, d in enumerate(stride) if d and not any(o[i] for o in others)]
+    found.sort(key=lambda i: ((stride[i] & -stride[i]).bit_length(), -widths[i]))
+    return found[0] if found else None
+
+
+def _is_plain_witness(place: int, stride: State, widths: Sequence[int]) -> bool:
+    """Whether the register equals its expectation by construction: the index was read from it, by an odd step."""
+    return _witness(stride, (), widths) == place and stride[place] % 2 == 1
+
+
+def placed_beats(
+    items: Sequence[Item], at: int = 0, axes: Axes = ()
+) -> Iterator[tuple[int, State, Axes]]:
+    """Every beat with the first half-cycle at which it comes, and the repeats around it."""
+    for item in items:
+        if isinstance(item, Beat):
+            yield at, item.state, axes
+        else:
+            yield from placed_beats(item.body, at, (*axes, (item.times, item.stride)))
+        at += item.length
+
+
+def placed_spans(
+    items: Sequence[Item], at: int = 0, last: int | None = None, axes: Axes = ()
+) -> Iterator[tuple[int, State, Axes, int]]:
+    """Every beat with the first and the last half-cycle at which it comes, and the repeats around it."""
+    last = at if last is None else last
+    for item in items:
+        if isinstance(item, Beat):
+            yield at, item.state, axes, last
+        else:
+            inner = item.length // item.times
+            later = last + item.length - inner
+            yield from placed_spans(item.body, at, later, (*axes, (item.times, item.stride)))
+        at += item.length
+        last += item.length
+
+
+def peeled(items: Sequence[Item], widths: Sequence[int], rounds: int) -> Path:
+    """The same path with the first rounds of every repeat written out."""
+    out: list[Item] = []
+    for item in items:
+        if isinstance(item, Beat):
+            out.append(item)
+            continue
+        body = peeled(item.body, widths, rounds)
+        for i in range(min(rounds, item.times)):
+            out.extend(_shifted(part, item.stride, i, widths) for part in body)
+        if item.times > rounds:
+            rest = tuple(_shifted(part, item.stride, rounds, widths) for part in body)
+            out.append(Repeat(item.times - rounds, item.stride, rest))
+    return tuple(out)
+
+
+def shortened(items: Sequence[Item], widths: Sequence[int], keep: int) -> Path:
+    """The same path with cycles before and after a repeat drawn into it where they fit its stride, but for the
+    first `keep` half-cycles."""
+    out: list[Item] = []
+    at = 0
+    for item in items:
+        out.append(item)
+        at += item.length
+        while len(out) >= 3 and isinstance(out[-1], Repeat) and at - out[-1].length - 2 >= keep:
+            block = out[-1]
+            size = len(block.body)
+            before = out[-1 - size : -1]
+            if len(before) < size or not _fits_before(before, block, widths):
+                break
+            earlier = tuple(_shifted(i, block.stride, -1, widths) for i in block.body)
+            out[-1 - size :] = [Repeat(block.times + 1, block.stride, earlier)]
+        while len(out) >= 2:
+            joined = _drawn_in(out, widths)
+            if joined is None:
+                break
+            out = joined
+    return tuple(out)
+
+
+def _shifted(item: Item, stride: State, times: int, widths: Sequence[int]) -> Item:
+    if isinstance(item, Beat):
+        return Beat(path.moved(item.state, stride, times, widths), item.level)
+    return Repeat(item.times, item.stride, tuple(_shifted(i, stride, times, widths) for i in item.body))
+
+
+def _fits_before(before: Sequence[Item], block: Repeat, widths: Sequence[int]) -> bool:
+    return all(a == _shifted(b, block.stride, -1, widths) for a, b in zip(before, block.body, strict=True))
+
+
+def _drawn_in(out: list[Item], widths: Sequence[int]) -> list[Item] | None:
+    """The items with what follows a repeat drawn into it, if it is one more round of it."""
+    for back in range(1, len(out)):
+        block = out[-1 - back]
+        if not isinstance(block, Repeat):
+            continue
+        if len(block.body) != back:
+            return None
+        wanted = tuple(_shifted(i, block.stride, block.times, widths) for i in block.body)
+        if tuple(out[-back:]) != wanted:
+            return None
+        return [*out[: -1 - back], Repeat(block.times + 1, block.stride, block.body)]
+    return None
+
+
+# -- the cover ---------------------------------------------------------------------------------------------
+
+
+class _Cover:
+    """Lines traced so far, with the formulas of the places on them."""
+
+    def __init__(self, system: System, goal: Goal | None, assumed: Expr, effort: Effort) -> None:
+        self.system = system
+        self.goal = goal
+        self.assumed = assumed
+        self.effort = effort
+        self.widths = [w for _, w in system.variables]
+        self.lines: list[Line] = []
+        self.loops: set[State] = set()
+
+    def add(self, start: State) -> Line:
+        """Trace a start state, widened backwards, and take its line into the cover."""
+        run = self._earliest(self._traced(start))
+        recovery: int | None = run.lead_half_cycles
+        if self.goal is not None:
+            recovery = recovery_on(run, self.goal.period, self.goal.high)
+        line = Line(run, recovery)
+        self.lines.append(line)
+        return line
+
+    def _traced(self, start: State) -> Orbit:
+        run = orbit.trace(self.system, start, self.effort)
+        if not run.closed:
+            raise OutOfEffort(run.why)
+        faults = certificate.orbit_faults(self.system, run, self.effort)
+        if faults:
+            raise OutOfEffort(f"an orbit that hangs on a value x stands for: {faults[0]}")
+        return run
+
+    def _earliest(self, run: Orbit) -> Orbit:
+        """The run drawn out backwards: along its repeats' strides, and by single steps, while that leads on."""
+        for _ in range(DRAWN_BACK):
+            start = self._before_repeat(run)
+            if start is None:
+                start = self._predecessor(run)
+            if start is None or not _holds(self.system, self.assumed, start):
+                return run
+            run = self._traced(start)
+        return run
+
+    def _before_repeat(self, run: Orbit) -> State | None:
+        """The farthest state from which the longest of the first repeats is reached by its own stride."""
+        blocks = [i for i in run.lead[:40] if isinstance(i, Repeat) and i.times > 3]
+        for block in sorted(blocks, key=lambda i: -i.length):
+            # Going backwards is a repeat of the same body by the opposite stride.
+            stride = tuple(-d & ((1 << w) - 1) for d, w in zip(block.stride, self.widths, strict=True))
+            rounds = orbit.least_break_backwards(self.system, block, stride, self.effort)
+            if rounds > PATIENCE:
+                return path.moved(path.first_state(block.body), stride, rounds - 1, self.widths)
+        return None
+
+    def _predecessor(self, run: Orbit) -> State | None:
+        """A state that steps to the run's start, unless the start is on the run's loop."""
+        if not run.lead:
+            return None
+        parts = [self.assumed]
+        for value, wanted in zip(self.system.step, run.start, strict=True):
+            parts.append(e.eq(value, e.const(wanted, value.width)))
+        model = find(e.conj(parts), self.effort)
+        return None if model is None else tuple(model.get(name, 0) for name in self.system.names)
+
+    def outside(self, merge: int) -> Expr:
+        """True of a power-up state that gets on no line within `merge` half-cycles."""
+        state: list[Expr] = [e.var(name, width) for name, width in self.system.variables]
+        parts = [self.assumed]
+        for j in range(merge + 1):
+            parts.append(e.bvnot(self.member(state, j)))
+            if j < merge:
+                values = dict(zip(self.system.names, state, strict=True))
+                state = e.substitute(list(self.system.step), values)
+        return e.conj(parts)
+
+    def member(self, state: Sequence[Expr], least: int | None) -> Expr:
+        """True of a state on some line where it is good, or at a place at least `least` half-cycles from its start
+        (None: nowhere else)."""
+        places: dict[tuple[State, Axes], None] = {}
+        for line in self.lines:
+            for at, beat, axes in self._places(line):
+                good = line.recovery is not None and at >= line.recovery
+                if good or (least is not None and at >= least):
+                    places[beat, axes] = None
+        formulas = (on_beat(self.system, state, beat, axes) for beat, axes in places)
+        return e.disj(formula for formula in formulas if formula is not None)
+
+    def late_after(self, bound: int, early: bool) -> State | None:
+        """A state that after `bound` half-cycles is not known to be good; `early` knows more of them, at a price."""
+        clock = self.system.clock
+        for level in (0, 1):
+            fixed = {clock: e.const(level, 1)}
+            (assumed,) = e.substitute([self.assumed], fixed)
+            state = [fixed.get(n, e.var(n, w)) for n, w in self.system.variables]
+            state, _ = self._ahead(state, bound)
+            model = find(e.bvand(assumed, e.bvnot(self._known_good(state, early))), self.effort)
+            if model is not None:
+                model[clock] = level
+                return tuple(model.get(name, 0) for name in self.system.names)
+        return None
+
+    def _ahead(self, state: list[Expr], count: int) -> tuple[list[Expr], list[Expr]]:
+        """The state `count` half-cycles on, and the output's levels until then."""
+        levels = []
+        for _ in range(count):
+            values = dict(zip(self.system.names, state, strict=True))
+            *state, level = e.substitute([*self.system.step, self.system.output], values)
+            levels.append(level)
+        return state, levels
+
+    def _known_good(self, state: list[Expr], early: bool) -> Expr:
+        """True of a state on a line where that is good, or (early) that comes there within a few half-cycles while
+        the output is as the phase of that place wants it."""
+        parts = [self.member(state, None)]
+        if self.goal is not None and early:
+            for count in range(1, EARLY + 1):
+                later, levels = self._ahead(state, count)
+                parts.append(self._good_behind(later, levels))
+        return e.disj(parts)
+
+    def _good_behind(self, state: Sequence[Expr], levels: Sequence[Expr]) -> Expr:
+        """True of a state on a good place, where the levels before it are what the wave has there."""
+        places: dict[tuple[State, Axes, tuple[int, ...]], None] = {}
+        for line in self.lines:
+            for beat, axes, before in self._phased(line):
+                if before is not None:
+                    places[beat, axes, before[-len(levels) :]] = None
+        parts = []
+        for beat, axes, wanted in places:
+            formula = on_beat(self.system, state, beat, axes)
+            if formula is not None:
+                fits = [e.eq(x, e.const(v, 1)) for x, v in zip(levels, wanted, strict=True)]
+                parts.append(e.conj([*fits, formula]))
+        return e.disj(parts)
+
+    def _phased(self, line: Line) -> list[tuple[State, Axes, tuple[int, ...] | None]]:
+        """Places on the line's loop, with the levels of the wave in the EARLY half-cycles before each."""
+        assert self.goal is not None
+        rise = first_rise(line.orbit)
+        out = []
+        loop = peeled(shortened(line.orbit.loop, self.widths, 0), self.widths, EARLY // 2 + 1)
+        for at, beat, axes, last in placed_spans(loop, line.orbit.lead_half_cycles):
+            out.append((beat, axes, self._levels_before(at - rise, last - rise, axes)))
+        return out
+
+    def _levels_before(self, first: int, last: int, axes: Axes) -> tuple[int, ...] | None:
+        """The wave's levels before phases `first` to `last`, if they are the same for all of these."""
+        assert self.goal is not None
+        period, high = self.goal.period, self.goal.high
+        begins = first - EARLY
+        same_run = (begins % period < high) == (last % period < high) and (last - begins) < period
+        whole = same_run and (begins % period) + (last - begins) < (high if begins % period < high else period)
+        if axes and not whole:
+            return None
+        return tuple(int((begins + i) % period < high) for i in range(EARLY))
+
+    def has(self, state: State) -> bool:
+        """Whether the state is on a line."""
+        constants = [e.const(v, w) for v, (_, w) in zip(state, self.system.variables, strict=True)]
+        return bool(self.lines) and self.member(constants, 0) is e.TRUE
+
+    def lost(self) -> Cover:
+        return Cover(tuple(self.lines), False, None, None, "a state that never becomes good", "path of a lost state")
+
+    def given_up(self, why: str) -> Cover:
+        return Cover(tuple(self.lines), False, None, None, why, "")
+
+    def _places(self, line: Line) -> list[tuple[int, State, Axes]]:
+        lead = shortened(line.orbit.lead, self.widths, MERGE + 2)
+        loop = shortened(line.orbit.loop, self.widths, 0)
+        total = line.orbit.lead_half_cycles
+        return [*placed_beats(lead), *((at + total, s, a) for at, s, a in placed_beats(loop))]
+
+
+def cover(system: System, goal: Goal | None, assumed: Expr, seeds: Sequence[State], effort: Effort) -> Cover:
+    """Lines that every state under the assumption gets on, or as far as the effort goes.
+
+    Without a goal the time that counts is that until a loop is entered. With one, a line that is not good ends
+    the search at once: its start is lost, and that decides every property that asks for all states to be good.
+    """
+    made = _Cover(system, goal, assumed, effort)
+    try:
+        for seed in seeds:
+            if _holds(system, assumed, seed) and not made.has(seed) and made.add(seed).recovery is None:
+                return made.lost()
+        found = _by_unrolling(made)
+        return found if found is not None else _by_lines(made)
+    except OutOfEffort as out:
+        return made.given_up(str(out))
+
+
+def _by_unrolling(made: _Cover) -> Cover | None:
+    """All states followed for as many half-cycles as the slowest one needs; None if that is too many.
+
+    Gallops up to a number after which all are where a line is good, and bisects down to the least such; then
+    asks whether the slowest line's own time would do where the output of the last few half-cycles counts too."""
+    low, high, bound = -1, UNROLLED + 1, 0
+    while low + 1 < high:
+        made.effort.say(f"unrolling {bound} half-cycles from all states")
+        late = made.late_after(bound, early=bound == 0)
+        if late is None:
+            high = bound
+        else:
+            line = made.add(late)
+            if line.recovery is None:
+                return made.lost()
+            if line.recovery > UNROLLED or len(made.lines) >= MOST_PATHS:
+                return None
+            low = max(low, bound if bound > 0 else 0)
+        bound = min(2 * bound + 2, UNROLLED) if high > UNROLLED else (low + high) // 2
+        if low >= UNROLLED:
+            return None
+    for _ in range(MOST_PATHS):
+        slowest = max(made.lines, key=lambda line: line.recovery or 0)
+        worst = slowest.recovery or 0
+        late = None if worst >= high else made.late_after(worst, early=True)
+        if late is None:
+            break
+        line = made.add(late)
+        if line.recovery is None:
+            return made.lost()
+        if (line.recovery or 0) <= worst:
+            # Good by then, but not known to be: the bound stays, without a start that needs it.
+            worst = high
+            break
+    exact = worst == slowest.recovery
+    method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
+    return Cover(tuple(made.lines), True, worst, slowest.orbit.start if exact else None, "", method)
+
+
+def _by_lines(made: _Cover) -> Cover:
+    """Lines added until every state gets on one within a few half-cycles."""
+    while True:
+        made.effort.say(f"looking for a state outside {len(made.lines)} paths")
+        model = find(made.outside(MERGE), made.effort)
+        if model is None:
+            break
+        if len(made.lines) >= MOST_PATHS:
+            return made.given_up(f"more than {MOST_PATHS} paths")
+        if made.add(tuple(model.get(name, 0) for name in made.system.names)).recovery is None:
+            return made.lost()
+    slowest = max(made.lines, key=lambda line: line.recovery or 0)
+    method = (
+        f"every power-up state is on one of {len(made.lines)} traced paths or joins one within {MERGE} "
+        "half-cycles (solver)"
+    )
+    # A state that joins a path where it is good already may need as long as joining takes.
+    worst = max(slowest.recovery or 0, MERGE)
+    exact = worst == slowest.recovery
+    return Cover(tuple(made.lines), True, worst, slowest.orbit.start if exact else None, "", method)
+
+
+def _holds(system: System, assumed: Expr, state: State) -> bool:
+    return e.evaluate([assumed], dict(zip(system.names, state, strict=True))) == [1]
