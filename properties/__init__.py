@@ -6,10 +6,10 @@ and judges it: to add one, write a file, name it here, and add a case of the sam
 
 from __future__ import annotations
 
+from properties import high_time, no_stuck, ratio, recovery, settling
 from prover.findings import Finding, with_waivers
 from prover.rhythm import Rhythm
 from prover.spec import Spec
-from properties import high_time, no_stuck, ratio, recovery, settling
 
 ORDER = (ratio, high_time, no_stuck, recovery, settling)
 NAMES = tuple(module.NAME for module in ORDER)

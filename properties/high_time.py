@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
+from properties.runs import high_runs, judge_runs
 from prover.findings import Fact, Finding
 from prover.rhythm import Rhythm
 from prover.spec import Spec
-from properties.runs import high_runs, judge_runs
 
 NAME = "high-time"
 

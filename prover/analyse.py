@@ -6,22 +6,20 @@ a value that x stands for is left open; any other failure is a fault of this pro
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
-from typing import TYPE_CHECKING
+import random
+from collections.abc import Sequence
+from dataclasses import replace
 
-from prover import certificate, orbit, path, reset
+from prover import certificate, graph, orbit, path, reset
+from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
 from prover.ports import Ports
-from prover.rhythm import Loop, Orbit, Recovery, Rhythm, Scope, Start
+from prover.rhythm import Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
+from prover.solve import find
 from prover.spec import Spec
-from prover.system import State, System
-
-if TYPE_CHECKING:
-    from prover.graph import Basins, Graph
-
-LISTED_LOOPS = 100_000
+from prover.system import State, System, cone, project
 
 
 def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
@@ -32,9 +30,12 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     if settling.depth is None:
         why = settling.open or "the micro-steps do not settle"
         return _nothing_known(system, settling, scope, why)
-    orbits = tuple(follow(system, s.state, effort) for s in starts)
+    won = _races_won(ports, settling, starts, effort)
+    machine = system if graph.fits(system) else cone(system)
+    starts = tuple(replace(s, state=project(system, s.state, machine)) for s in starts)
+    orbits = tuple(follow(machine, s.state, effort) for s in starts)
     rhythm = Rhythm(
-        system=system,
+        system=machine,
         settling=settling,
         scope=scope,
         starts=starts,
@@ -48,11 +49,11 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         unforced=held.unforced if held else (),
         open=held.problem if held else "",
         methods={"orbit": "orbit of each start state, traced with jumps; every step checked"},
+        races_won=won,
     )
-    rhythm = _with_races(rhythm, ports, effort)
     goal = _goal(spec, rhythm)
     try:
-        return _with_power_up(rhythm, goal, effort)
+        return _with_power_up(rhythm, system, goal, effort)
     except OutOfEffort as out:
         return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
 
@@ -119,27 +120,23 @@ def _check_reset(ports: Ports, held: reset.Held, effort: Effort) -> None:
         raise InternalError("reset does not lead where it was found to lead")
 
 
-def _with_races(rhythm: Rhythm, ports: Ports, effort: Effort) -> Rhythm:
+def _races_won(ports: Ports, settling: Settling, starts: Sequence[Start], effort: Effort) -> tuple[str, ...]:
     """What the output would do if the edge won each race against a clear that is being released."""
-    if not any(race.kind == "release" for race in rhythm.settling.races) or not rhythm.starts:
-        return rhythm
-    system, settling = settle(
+    if not any(race.kind == "release" for race in settling.races):
+        return ()
+    system, other = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, edge_wins=True
     )
-    if settling.depth is None:
-        return replace(rhythm, races_won=("never settles",))
-    told = []
-    for start in rhythm.starts:
-        run = orbit.trace(system, start.state, effort)
-        wave = run.wave()
-        told.append(_told(wave))
-    return replace(rhythm, races_won=tuple(dict.fromkeys(told)))
+    if other.depth is None:
+        return ("never settles",)
+    # Without a start state of its own, the divider is followed from the states that show the races.
+    states = [start.state for start in starts] or [race.state for race in settling.races]
+    told = [_told(orbit.trace(system, state, effort).wave()) for state in states]
+    return tuple(dict.fromkeys(told))
 
 
-def _told(wave: object) -> str:
-    from prover.rhythm import Wave
-
-    if not isinstance(wave, Wave):
+def _told(wave: Wave | None) -> str:
+    if wave is None:
         return "not known"
     if wave.stuck:
         return f"stuck at {wave.runs[0][0]}"
@@ -147,14 +144,6 @@ def _told(wave: object) -> str:
 
 
 # -- from everywhere ---------------------------------------------------------------------------------------
-
-
-@dataclass(frozen=True, slots=True)
-class Goal:
-    """What good means: half-cycles per period and of high time."""
-
-    period: int
-    high: int
 
 
 def _goal(spec: Spec, rhythm: Rhythm) -> Goal | None:
@@ -168,24 +157,32 @@ def _goal(spec: Spec, rhythm: Rhythm) -> Goal | None:
     return Goal(wave.period or 0, wave.high or 0)
 
 
-def _with_power_up(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | None, effort: Effort) -> Rhythm:
     """The rhythm completed with every power-up state, by the first engine that can take the machine."""
-    from prover import graph
+    engine = _by_graph if graph.fits(rhythm.system) else _by_cover
+    found = engine(rhythm, goal, effort)
+    lost = found.recovery.lost if found.recovery else None
+    for run in (lost, found.stuck):
+        if run is not None and not _is_power_up(whole, rhythm.system, run.start, effort):
+            why = "a state that would be lost, if registers beside it could power up so"
+            return replace(
+                found, recovery=Recovery(None, False, open=why), stuck=None, never_stuck=False, open=why
+            )
+    return found
 
-    system = rhythm.system
-    if graph.fits(system):
-        return _by_graph(rhythm, goal, effort)
-    why = (
-        f"{rhythm.system.bits - 1} register bits: only the states that follow from "
-        f"{'reset' if rhythm.scope == 'reset' else 'the start states'} are covered"
-    )
-    loops = _loops_of(rhythm, goal)
-    return replace(rhythm, loops=loops, recovery=Recovery(None, False, open=why), open=rhythm.open or why)
+
+def _is_power_up(whole: System, machine: System, state: State, effort: Effort) -> bool:
+    """Whether a state of the cone is part of a power-up state of the whole machine."""
+    if whole is machine:
+        return True
+    here = [e.eq(e.var(n, w), e.const(v, w)) for (n, w), v in zip(machine.variables, state, strict=True)]
+    return find(e.conj([whole.settled, *here]), effort) is not None
 
 
-def _loops_of(rhythm: Rhythm, goal: Goal | None) -> tuple[Loop, ...]:
+def _loops_of(rhythm: Rhythm, more: Sequence[Orbit], goal: Goal | None) -> tuple[Loop, ...]:
+    """The loops of the start states' orbits and of more, each once."""
     loops: dict[State, Loop] = {}
-    for run in rhythm.orbits:
+    for run in (*rhythm.orbits, *more):
         wave = run.wave()
         if wave is None:
             continue
@@ -198,9 +195,50 @@ def _loops_of(rhythm: Rhythm, goal: Goal | None) -> tuple[Loop, ...]:
     return tuple({(loop.length, loop.wave): loop for loop in loops.values()}.values())
 
 
-def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
-    from prover import graph
+def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+    """The power-up states of a machine too wide for its graph."""
+    from prover import wide
 
+    system = rhythm.system
+    seeds = [orbit.start for orbit in rhythm.orbits]
+    found = wide.cover(system, goal, system.settled, [*seeds, *_corners(system)], effort)
+    loops = _loops_of(rhythm, [line.orbit for line in found.lines], goal)
+    methods = {**rhythm.methods, "power-up": found.method}
+    rhythm = replace(rhythm, loops=loops, methods=methods)
+    stuck = next((line.orbit for line in found.lines if _frozen(line.orbit)), None)
+    lost = next((line.orbit for line in found.lines if line.recovery is None), None)
+    if lost is not None:
+        why = rhythm.open or "the search ended with the first power-up state that never becomes good"
+        return replace(rhythm, recovery=Recovery(None, False, lost=lost), stuck=stuck, open=why)
+    if found.claim is None:
+        why = f"{system.bits - 1} register bits: {found.why}"
+        recovery = Recovery(None, False, open=why) if goal is not None else None
+        return replace(rhythm, recovery=recovery, stuck=stuck, open=rhythm.open or why)
+    faults = certificate.cover_faults(system, system.settled, found.claim, effort)
+    if faults:
+        raise InternalError(f"a cover's certificate fails: {'; '.join(faults[:3])}")
+    worst = Recovery(found.worst, found.slowest is not None, found.slowest)
+    # Every state gets on one of the lines, so their loops are all there are.
+    return replace(
+        rhythm, complete=True, recovery=worst if goal else None, stuck=stuck, never_stuck=stuck is None
+    )
+
+
+def _frozen(run: Orbit) -> bool:
+    wave = run.wave()
+    return wave is not None and wave.stuck
+
+
+def _corners(system: System) -> list[State]:
+    """Start states that are often lost: all zeros, all ones, a single one, and a few at random."""
+    rng = random.Random(0)
+    widths = [width for _, width in system.variables]
+    zeros, ones = tuple(0 for _ in widths), tuple((1 << w) - 1 for w in widths)
+    states = [zeros, ones, (*ones[:-1], 0), (1, *zeros[1:])]
+    return states + [tuple(rng.getrandbits(w) for w in widths) for _ in range(6)]
+
+
+def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     system = rhythm.system
     states = graph.build(system, effort)
     methods = {
@@ -222,10 +260,10 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     )
 
 
-def _graph_recovery(system: System, states: Graph, found: Basins, goal: Goal, effort: Effort) -> Recovery:
+def _graph_recovery(
+    system: System, states: graph.Graph, found: graph.Basins, goal: Goal, effort: Effort
+) -> Recovery:
     import numpy as np
-
-    from prover import graph
 
     table = graph.ranks(states, found, goal.period, goal.high)
     illegal = int((states.start & (table.rank != 0)).sum())
@@ -242,14 +280,12 @@ def _graph_recovery(system: System, states: Graph, found: Basins, goal: Goal, ef
     return Recovery(int(at_power_up[slowest]), True, states.state(slowest), illegal=illegal)
 
 
-def _by_graph_with_choices(rhythm: Rhythm, states: Graph, goal: Goal | None, effort: Effort) -> Rhythm:
-    from prover import graph
-
+def _by_graph_with_choices(rhythm: Rhythm, states: graph.Graph, goal: Goal | None, effort: Effort) -> Rhythm:
     system = rhythm.system
     frozen = [graph.held_level_with_choices(states, level) & states.start for level in (0, 1)]
     never = not any(bool(f.any()) for f in frozen)
     why = "" if never else "a value that x stands for may freeze the output"
-    loops = _loops_of(rhythm, goal)
+    loops = _loops_of(rhythm, (), goal)
     rhythm = replace(rhythm, loops=loops, never_stuck=never, open=rhythm.open or why)
     if goal is None:
         return rhythm

@@ -17,7 +17,7 @@ from prover import expr as e
 from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.path import Step
+from prover.path import Beat, Item, Step
 from prover.rhythm import Orbit
 from prover.system import State, System
 
@@ -205,6 +205,202 @@ def _every_choice(system: System) -> Iterator[Mapping[str, int]]:
             out[name] = number & ((1 << width) - 1)
             number >>= width
         yield out
+
+
+# -- covers ------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class CoverClaim:
+    """Every state under the assumption is good within `bound` half-cycles.
+
+    orbits   runs whose loops are good; `recoveries` says after how many half-cycles each of them is
+    unrolled 0: every state is on one of the orbits within `merge` half-cycles, at a place no nearer to the
+             orbit's start than the half-cycles that took (or where it is good). Otherwise: after so many
+             half-cycles every state is at a good place of some orbit, or comes to one within `merge` half-cycles
+             with the output on the way as the phase of that place wants it.
+    period, high  what good means, in half-cycles; period 0: on a loop, whatever its wave
+    """
+
+    orbits: tuple[Orbit, ...]
+    recoveries: tuple[int, ...]
+    unrolled: int | None
+    merge: int
+    bound: int
+    period: int
+    high: int
+
+
+def cover_faults(system: System, assumed: Expr, claim: CoverClaim, effort: Effort) -> list[str]:
+    """What is wrong with a cover; empty if nothing is."""
+    effort.say("checking a cover")
+    faults: list[str] = []
+    for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
+        faults += orbit_faults(system, run, effort)
+        if not run.closed or recovery > claim.bound or not _good_from(run, recovery, claim):
+            faults.append(f"an orbit that is not good after {recovery} half-cycles")
+    if faults:
+        return faults
+    for obligation in cover_obligations(system, assumed, claim):
+        if not discharge(obligation, effort):
+            faults.append(obligation.name)
+    return faults
+
+
+def _good_from(run: Orbit, recovery: int, claim: CoverClaim) -> bool:
+    """Whether from half-cycle `recovery` on the output is high `high` of every `period` half-cycles, for ever."""
+    if claim.period == 0:
+        return recovery >= run.lead_half_cycles
+    if recovery > run.lead_half_cycles:
+        return False
+    rounds = [*path.pieces(run.lead), *path.pieces(run.loop), *path.pieces(run.loop)]
+    at = 0
+    runs: list[tuple[int, int]] = []
+    for level, size in path.merged(rounds):
+        begins = max(at, recovery)
+        at += size
+        if at > begins:
+            runs.append((level, at - begins))
+    # All but the first and the last run are whole.
+    whole = all(size == (claim.high if level else claim.period - claim.high) for level, size in runs[1:-1])
+    ends = all(
+        size <= (claim.high if level else claim.period - claim.high) for level, size in (runs[0], runs[-1])
+    )
+    # Twice round shows the seam of the loop; a round that holds no change at all is not periodic.
+    return len(runs) > 2 and whole and ends and run.loop_half_cycles % claim.period == 0
+
+
+def cover_obligations(system: System, assumed: Expr, claim: CoverClaim) -> Iterator[Obligation]:
+    """One obligation for each level of the clock: no state under the assumption escapes the orbits."""
+    for level in (0, 1):
+        fixed = {system.clock: e.const(level, 1)}
+        (premise,) = e.substitute([assumed], fixed)
+        state = [fixed.get(name, e.var(name, width)) for name, width in system.variables]
+        yield Obligation(f"cover, clock {level}", e.bvand(premise, e.bvnot(_covered(system, state, claim))))
+
+
+def _covered(system: System, state: list[Expr], claim: CoverClaim) -> Expr:
+    levels: list[Expr] = []
+
+    def onward() -> None:
+        nonlocal state
+        values = dict(zip(system.names, state, strict=True))
+        *state, level = e.substitute([*system.step, system.output], values)
+        levels.append(level)
+
+    reached: list[Expr] = []
+    if claim.unrolled is None:
+        for count in range(claim.merge + 1):
+            if count > claim.bound:
+                break
+            reached.append(_on_orbits(system, state, claim, count))
+            onward()
+        return e.disj(reached)
+    for _ in range(claim.unrolled):
+        onward()
+    levels.clear()
+    for count in range(claim.merge + 1):
+        if count == 0:
+            reached.append(_on_orbits(system, state, claim, None))
+        elif claim.period:
+            reached.append(_behind_loops(system, state, levels, claim))
+        onward()
+    return e.disj(reached)
+
+
+Axes = tuple[tuple[int, State], ...]
+
+
+def _written(
+    items: Sequence[Item], first: int, last: int, axes: Axes
+) -> Iterator[tuple[State, Axes, int, int]]:
+    """Beats with the repeats around them and the first and last half-cycle at which they come."""
+    for item in items:
+        if isinstance(item, Beat):
+            yield item.state, axes, first, last
+        else:
+            once = path.length(item.body)
+            later = last + (item.times - 1) * once
+            yield from _written(item.body, first, later, (*axes, (item.times, item.stride)))
+        first += item.length
+        last += item.length
+
+
+def _on_orbits(system: System, state: Sequence[Expr], claim: CoverClaim, count: int | None) -> Expr:
+    """True of a state on an orbit where it is good or, given `count`, at least that far from the orbit's start."""
+    places: set[tuple[State, Axes]] = set()
+    for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
+        lead = run.lead_half_cycles
+        for items, offset in ((run.lead, 0), (run.loop, lead)):
+            for beat, axes, first, _ in _written(items, offset, offset, ()):
+                if first >= recovery or (count is not None and first >= count):
+                    places.add((beat, axes))
+    return e.disj(_is_at(system, state, beat, axes) for beat, axes in sorted(places))
+
+
+def _behind_loops(system: System, state: Sequence[Expr], levels: Sequence[Expr], claim: CoverClaim) -> Expr:
+    """True of a state on a loop, where the output before it was what the wave has there."""
+    places: set[tuple[State, Axes, tuple[int, ...]]] = set()
+    back = len(levels)
+    for run in claim.orbits:
+        lead = run.lead_half_cycles
+        rise = _rise(run)
+        for beat, axes, first, last in _written(run.loop, lead, lead, ()):
+            begins, ends = (first - back - rise) % claim.period, last - first + back
+            in_high = begins < claim.high
+            room = (claim.high if in_high else claim.period) - begins
+            if axes and ends >= room:
+                continue
+            wanted = tuple(int((begins + i) % claim.period < claim.high) for i in range(back))
+            places.add((beat, axes, wanted))
+    parts = []
+    for beat, axes, wanted in sorted(places):
+        fits = e.conj(e.bvnot(e.bvxor(x, e.const(v, 1))) for x, v in zip(levels, wanted, strict=True))
+        parts.append(e.bvand(fits, _is_at(system, state, beat, axes)))
+    return e.disj(parts)
+
+
+def _rise(run: Orbit) -> int:
+    """A half-cycle, counted from the orbit's start, in its loop or the next round, at which the output rises."""
+    at = run.lead_half_cycles
+    before: int | None = None
+    for level, size in [*path.pieces(run.loop), *path.pieces(run.loop)]:
+        if level == 1 and before == 0:
+            return at
+        before = level
+        at += size
+    return at
+
+
+def _is_at(system: System, state: Sequence[Expr], beat: State, axes: Axes) -> Expr:
+    """True of the beat's state in some round of each repeat around it. False where that can't be written: a claim
+    may then fail, but nothing false passes."""
+    shift = [e.const(value, width) for value, (_, width) in zip(beat, system.variables, strict=True)]
+    within = e.TRUE
+    for i, (count, stride) in enumerate(axes):
+        others = [other for j, (_, other) in enumerate(axes) if j != i]
+        free = [
+            (stride[r] & -stride[r], r)
+            for r in range(len(stride))
+            if stride[r] and not any(other[r] for other in others)
+        ]
+        if not free:
+            return e.FALSE
+        unit, register = min(free)
+        width = system.variables[register][1]
+        # stride · index = difference (mod 2^width): divide by the power of two, then by the odd rest.
+        twos = unit.bit_length() - 1
+        difference = e.bvsub(state[register], e.const(beat[register], width))
+        exact = e.extract(difference, width - 1, twos)
+        inverse = pow(stride[register] >> twos, -1, 1 << (width - twos))
+        index = e.bvmul(exact, e.const(inverse, width - twos))
+        if count < 1 << (width - twos):
+            within = e.bvand(within, e.bvult(index, e.const(count, width - twos)))
+        for r, (_, w) in enumerate(system.variables):
+            if stride[r]:
+                moved = e.bvmul(e.resize(index, w, False), e.const(stride[r], w))
+                shift[r] = e.bvadd(shift[r], moved)
+    return e.conj([within, *(e.eq(a, b) for a, b in zip(state, shift, strict=True))])
 
 
 def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligation:

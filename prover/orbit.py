@@ -78,7 +78,9 @@ class _Search:
             middle = tuple(middle_list)
             *after_list, second = run(*middle, *choices)
             after = tuple(after_list)
-            stride = tuple((b - a) & ((1 << w) - 1) for a, b, w in zip(state, after, self.widths, strict=True))
+            stride = tuple(
+                (b - a) & ((1 << w) - 1) for a, b, w in zip(state, after, self.widths, strict=True)
+            )
             repeats = repeats + 1 if stride == previous else 0
             previous = stride
             cycle = Repeat(1, stride, (Beat(state, first), Beat(middle, second)))

@@ -131,6 +131,14 @@ class Orbit:
 
 
 @dataclass(frozen=True, slots=True)
+class Goal:
+    """The wave that is good: half-cycles per period and of high time."""
+
+    period: int
+    high: int
+
+
+@dataclass(frozen=True, slots=True)
 class Loop:
     """A cycle of states. `length` is in half-cycles, `example` the state on it that sorts first."""
 

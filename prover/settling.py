@@ -81,7 +81,7 @@ def settle(
     """
     effort.say("bounding the micro-steps of a step")
     before, now = start(design, clock, inputs)
-    assumed = settled_when(design, before)
+    assumed = settled_when(design.registers, before)
     depth = at_rest = None
     unsettled = None
     races: tuple[Race, ...] = ()

@@ -122,7 +122,9 @@ def read_number(text: str, option: str) -> int:
             return int(literal[2], {"b": 2, "o": 8, "d": 10, "h": 16}[literal[1]])
         return int(plain, 0)
     except ValueError:
-        raise UserError(f"{option} '{text}' is not a whole number", hint="such as 12, 0x1f or 8'h1f") from None
+        raise UserError(
+            f"{option} '{text}' is not a whole number", hint="such as 12, 0x1f or 8'h1f"
+        ) from None
 
 
 def read_frequency(text: str) -> Fraction:
@@ -147,7 +149,9 @@ def read_duty_range(text: str) -> tuple[Fraction, Fraction]:
             raise ValueError
         ends = Fraction(low.strip()), Fraction((high if dots else low).strip())
     except (ValueError, ZeroDivisionError):
-        raise UserError(f"--source-duty '{text}' is not understood", hint="such as 45..55, in per cent") from None
+        raise UserError(
+            f"--source-duty '{text}' is not understood", hint="such as 45..55, in per cent"
+        ) from None
     if not 0 < ends[0] <= ends[1] < 100:
         raise UserError(f"--source-duty '{text}' is not a range within 0 to 100", hint="such as 45..55")
     return ends

@@ -12,7 +12,7 @@ never settles.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 from prover import expr as e
@@ -83,10 +83,10 @@ def _react(
     return out
 
 
-def settled_when(design: Design, now: Moment) -> Expr:
-    """One bit: no force is pulling a register away from the value it has."""
+def settled_when(registers: Sequence[Register], now: Moment) -> Expr:
+    """One bit: no force is pulling any of the registers away from the value it has."""
     parts: list[Expr] = []
-    for register in design.registers:
+    for register in registers:
         higher = e.FALSE
         for force in register.forces:
             when, value = e.substitute([force.when, force.value], now)
@@ -216,7 +216,7 @@ def build(
         variables=variables,
         step=tuple(last[name] for name, _ in variables),
         output=out,
-        settled=settled_when(design, before),
+        settled=settled_when(design.registers, before),
         chain=tuple(chain),
     )
 
@@ -231,3 +231,34 @@ def clock_edge(design: Design, clock: str, moment: Moment, limit: int) -> Moment
     """The moment after one more edge of the clock, from any moment at rest."""
     now = {**moment, clock: e.bvnot(moment[clock])}
     return unroll(design, moment, now, limit)[-1]
+
+
+def cone(system: System) -> System:
+    """The system without the registers on which the output does not depend, now or later.
+
+    Its power-up states are a superset: what a dropped register would have excluded is let in."""
+    by_name = dict(zip(system.names, system.step, strict=True))
+    kept = {system.clock}
+    todo = [system.output]
+    while todo:
+        for v in e.variables([todo.pop()]):
+            if v.name in by_name and v.name not in kept:
+                kept.add(v.name)
+                todo.append(by_name[v.name])
+    if len(kept) == len(by_name):
+        return system
+    moment = system.moment()
+    parts = [settled_when([r], moment) for r in system.design.registers if r.name in kept]
+    parts = [part for part in parts if {v.name for v in e.variables([part])} <= kept]
+    return replace(
+        system,
+        variables=tuple(pair for pair in system.variables if pair[0] in kept),
+        step=tuple(by_name[name] for name in system.names if name in kept),
+        settled=e.conj(parts),
+    )
+
+
+def project(system: System, state: State, onto: System) -> State:
+    """A state of the whole system as a state of its cone."""
+    values = system.describe(state)
+    return tuple(values[name] for name in onto.names)

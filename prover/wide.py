@@ -29,9 +29,9 @@ from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.expr import Expr
 from prover.path import Beat, Item, Path, Repeat
-from prover.rhythm import Orbit
+from prover.rhythm import Goal, Orbit
 from prover.solve import find
-from prover.system import State, System, settled_when
+from prover.system import State, System
 
 MERGE = 6
 """Half-cycles within which a state has to join a path."""
@@ -53,14 +53,6 @@ MOST_PATHS = 48
 
 
 @dataclass(frozen=True, slots=True)
-class Goal:
-    """The wave that is good: half-cycles per period and of high time; None to look for loops only."""
-
-    period: int
-    high: int
-
-
-@dataclass(frozen=True, slots=True)
 class Line:
     """An orbit with its recovery: half-cycles from its start until good, None if it never is."""
 
@@ -75,6 +67,7 @@ class Cover:
     lines   the orbits traced; together they meet every power-up state if `complete`
     worst   half-cycles within which every state recovers, None if some line never does or not complete
     slowest a start state that needs exactly `worst`, None if the bound may not be exact
+    claim   what `certificate` has to check, None where it isn't complete
     why     what is missing where it isn't complete
     method  in words
     """
@@ -83,6 +76,7 @@ class Cover:
     complete: bool
     worst: int | None
     slowest: State | None
+    claim: certificate.CoverClaim | None
     why: str
     method: str
 
@@ -93,7 +87,9 @@ class Cover:
 def recovery_on(run: Orbit, period: int, high: int) -> int | None:
     """Half-cycles from the orbit's start until its wave is for ever `high` of every `period`; None if never."""
     wave = run.wave()
-    if wave is None or not wave.divides_by(period, high):
+    if wave is None:
+        raise OutOfEffort("a round of too many changes of the output to be written out")
+    if not wave.divides_by(period, high):
         return None
     # Walk back from the loop, run by run: the phase there fixes what every earlier half-cycle has to show.
     pieces = list(path.merged([*path.pieces(run.lead), *_two_rounds(run)]))
@@ -137,7 +133,9 @@ Axes = tuple[tuple[int, State], ...]
 # -- membership --------------------------------------------------------------------------------------------
 
 
-def on_beat(system: System, state: Sequence[Expr], beat: State, axes: Sequence[tuple[int, State]]) -> Expr | None:
+def on_beat(
+    system: System, state: Sequence[Expr], beat: State, axes: Sequence[tuple[int, State]]
+) -> Expr | None:
     """One bit: the state is the beat's for some indices of the repeats around it. None if that can't be said."""
     widths = [w for _, w in system.variables]
     parts: list[Expr] = []
@@ -180,9 +178,7 @@ def _is_plain_witness(place: int, stride: State, widths: Sequence[int]) -> bool:
     return _witness(stride, (), widths) == place and stride[place] % 2 == 1
 
 
-def placed_beats(
-    items: Sequence[Item], at: int = 0, axes: Axes = ()
-) -> Iterator[tuple[int, State, Axes]]:
+def placed_beats(items: Sequence[Item], at: int = 0, axes: Axes = ()) -> Iterator[tuple[int, State, Axes]]:
     """Every beat with the first half-cycle at which it comes, and the repeats around it."""
     for item in items:
         if isinstance(item, Beat):
@@ -286,7 +282,6 @@ class _Cover:
         self.effort = effort
         self.widths = [w for _, w in system.variables]
         self.lines: list[Line] = []
-        self.loops: set[State] = set()
 
     def add(self, start: State) -> Line:
         """Trace a start state, widened backwards, and take its line into the cover."""
@@ -426,7 +421,9 @@ class _Cover:
         period, high = self.goal.period, self.goal.high
         begins = first - EARLY
         same_run = (begins % period < high) == (last % period < high) and (last - begins) < period
-        whole = same_run and (begins % period) + (last - begins) < (high if begins % period < high else period)
+        whole = same_run and (begins % period) + (last - begins) < (
+            high if begins % period < high else period
+        )
         if axes and not whole:
             return None
         return tuple(int((begins + i) % period < high) for i in range(EARLY))
@@ -437,10 +434,35 @@ class _Cover:
         return bool(self.lines) and self.member(constants, 0) is e.TRUE
 
     def lost(self) -> Cover:
-        return Cover(tuple(self.lines), False, None, None, "a state that never becomes good", "path of a lost state")
+        why = "a state that never becomes good"
+        return Cover(tuple(self.lines), False, None, None, None, why, "path of a lost state")
 
     def given_up(self, why: str) -> Cover:
-        return Cover(tuple(self.lines), False, None, None, why, "")
+        return Cover(tuple(self.lines), False, None, None, None, why, "")
+
+    def proved(
+        self, worst: int, slowest: Line | None, unrolled: int | None, merge: int, method: str
+    ) -> Cover:
+        """The cover with the claim that it is one."""
+        claim = certificate.CoverClaim(
+            orbits=tuple(self._claimed(line.orbit) for line in self.lines),
+            recoveries=tuple(line.recovery or 0 for line in self.lines),
+            unrolled=unrolled,
+            merge=merge,
+            bound=worst,
+            period=self.goal.period if self.goal else 0,
+            high=self.goal.high if self.goal else 0,
+        )
+        start = slowest.orbit.start if slowest else None
+        return Cover(tuple(self.lines), True, worst, start, claim, "", method)
+
+    def _claimed(self, run: Orbit) -> Orbit:
+        """The orbit as the claim writes it: cycles drawn into repeats, the first rounds of the loop's written out."""
+        lead = shortened(run.lead, self.widths, MERGE + 2)
+        loop = shortened(run.loop, self.widths, 0)
+        if self.goal is not None:
+            loop = peeled(loop, self.widths, EARLY // 2 + 1)
+        return Orbit(lead, loop, run.widths)
 
     def _places(self, line: Line) -> list[tuple[int, State, Axes]]:
         lead = shortened(line.orbit.lead, self.widths, MERGE + 2)
@@ -502,7 +524,7 @@ def _by_unrolling(made: _Cover) -> Cover | None:
             break
     exact = worst == slowest.recovery
     method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
-    return Cover(tuple(made.lines), True, worst, slowest.orbit.start if exact else None, "", method)
+    return made.proved(worst, slowest if exact else None, worst, EARLY, method)
 
 
 def _by_lines(made: _Cover) -> Cover:
@@ -523,8 +545,7 @@ def _by_lines(made: _Cover) -> Cover:
     )
     # A state that joins a path where it is good already may need as long as joining takes.
     worst = max(slowest.recovery or 0, MERGE)
-    exact = worst == slowest.recovery
-    return Cover(tuple(made.lines), True, worst, slowest.orbit.start if exact else None, "", method)
+    return made.proved(worst, slowest if worst == slowest.recovery else None, None, MERGE, method)
 
 
 def _holds(system: System, assumed: Expr, state: State) -> bool:

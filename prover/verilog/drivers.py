@@ -22,6 +22,9 @@ from prover.verilog.source import printable
 from prover.verilog.words import Replacer, Search, cut, joined, reads, runs
 
 UNDRIVEN = "?undriven "
+# Wider vectors aren't looked at bit by bit for circles, and more circles than this are no divider.
+MAX_SPLIT = 256
+MAX_LOOPS = 2_000
 
 
 @dataclass(slots=True, eq=False)
@@ -86,7 +89,7 @@ class Drivers:
             self._cut_up(split)
             circles = self._circles()
             more = {self.named[name].net for circle in circles for name in circle} - split
-            more = {net for net in more if net.width > 1}
+            more = {net for net in more if 1 < net.width <= MAX_SPLIT}
             if not more:
                 break
             split |= more
@@ -214,8 +217,14 @@ class Drivers:
     def _kept(self, circle: list[str]) -> list[str]:
         """Slices whose removal leaves no circle: the busiest first, until none is left."""
         edges = self._edges()
-        kept: list[str] = []
+        # A wire that reads itself is a circle by itself.
+        kept = sorted(name for name in circle if name in edges[name])
         pending = [circle]
+        if kept:
+            rest = set(circle) - set(kept)
+            pending = strongly_connected({name: [o for o in edges[name] if o in rest] for name in sorted(rest)})
+        for name in kept:
+            self._remark_loop([name, name])
         while pending:
             inside = set(pending.pop())
             inner = {name: [other for other in edges[name] if other in inside] for name in sorted(inside)}
@@ -223,16 +232,21 @@ class Drivers:
             for others in inner.values():
                 for other in others:
                     into[other] += 1
-            choice = max(sorted(inner), key=lambda name: (name in inner[name], into[name] * len(inner[name])))
+            choice = max(sorted(inner), key=lambda name: into[name] * len(inner[name]))
             kept.append(choice)
-            path = " -> ".join(printable(name) for name in _round(inner, choice))
-            at = self.named[choice].driver
-            assert at is not None
-            self.report.note(f"combinational loop: {path}", at.at)
+            if len(kept) > MAX_LOOPS:
+                driver = self.named[choice].driver
+                self.report.fail("too many combinational loops", driver.at if driver else 0)
+            self._remark_loop(_round(inner, choice))
             del inner[choice]
-            rest = {name: [other for other in others if other != choice] for name, others in inner.items()}
-            pending += strongly_connected(rest)
+            rest_edges = {name: [o for o in others if o != choice] for name, others in inner.items()}
+            pending += strongly_connected(rest_edges)
         return kept
+
+    def _remark_loop(self, path: list[str]) -> None:
+        driver = self.named[path[0]].driver
+        assert driver is not None
+        self.report.note("combinational loop: " + " -> ".join(map(printable, path)), driver.at)
 
     def _write_out(self, loops: set[str]) -> dict[str, Expr]:
         """For each slice its value over registers and inputs."""

@@ -183,11 +183,13 @@ class Executor:
         return state
 
     def execute(self, node: Any, scope: Scope, state: State) -> Task[None]:
-        self.report.steps += 1
-        if self.report.steps > MAX_STEPS:
-            self.report.fail(
-                f"unrolling takes more than {MAX_STEPS} steps", node, "are the loop bounds right?"
-            )
+        if self.unrolling:
+            # Straight code is as long as its source; only what is repeated can run away.
+            self.steps += 1
+            if self.steps > MAX_STEPS:
+                self.report.fail(
+                    f"unrolling takes more than {MAX_STEPS} steps", node, "are the loop bounds right?"
+                )
         rule = _STATEMENTS.get(type(node))
         if rule is None:
             self.report.fail(f"{type(node).__name__} isn't supported as a statement", node)
