@@ -207,6 +207,9 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     rhythm = replace(rhythm, loops=loops, methods=methods)
     stuck = next((line.orbit for line in found.lines if _frozen(line.orbit)), None)
     lost = next((line.orbit for line in found.lines if line.recovery is None), None)
+    for run in (stuck, lost):
+        if run is not None and certificate.orbit_faults(system, run, effort):
+            raise InternalError("the orbit of a lost state does not replay")
     if lost is not None:
         why = rhythm.open or "the search ended with the first power-up state that never becomes good"
         return replace(rhythm, recovery=Recovery(None, False, lost=lost), stuck=stuck, open=why)
@@ -235,7 +238,7 @@ def _corners(system: System) -> list[State]:
     widths = [width for _, width in system.variables]
     zeros, ones = tuple(0 for _ in widths), tuple((1 << w) - 1 for w in widths)
     states = [zeros, ones, (*ones[:-1], 0), (1, *zeros[1:])]
-    return states + [tuple(rng.getrandbits(w) for w in widths) for _ in range(6)]
+    return states + [tuple(rng.getrandbits(w) for w in widths) for _ in range(3)]
 
 
 def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:

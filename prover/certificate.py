@@ -342,7 +342,7 @@ def _behind_loops(system: System, state: Sequence[Expr], levels: Sequence[Expr],
     """True of a state on a loop, where the output before it was what the wave has there."""
     places: set[tuple[State, Axes, tuple[int, ...]]] = set()
     back = len(levels)
-    for run in claim.orbits:
+    for run in {frozenset(run.loop): run for run in claim.orbits}.values():
         lead = run.lead_half_cycles
         rise = _rise(run)
         for beat, axes, first, last in _written(run.loop, lead, lead, ()):

@@ -14,13 +14,13 @@ state, and one that runs through more items than the effort allows is left open.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 from prover import expr as e
 from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.path import Beat, Item, Repeat
+from prover.path import Beat, Item, Path, Repeat
 from prover.rhythm import Orbit
 from prover.system import State, System
 
@@ -32,16 +32,19 @@ BLOCK = 128
 """Items up to which a recurring block is looked for."""
 
 
-def trace(system: System, start: State, effort: Effort) -> Orbit:
+def trace(system: System, start: State, effort: Effort, known: Mapping[State, Path] | None = None) -> Orbit:
     """The orbit of `start`, as far as the effort allows; it is not closed if that did not suffice.
 
-    The path is the search's word only: `certificate` checks it.
+    `known` gives for states on loops found before the loop from there on, so that it is not traced again. The
+    path is the search's word only: `certificate` checks it.
     """
-    search = _Search(system, effort)
+    search = _Search(system, effort, known or {})
     try:
         search.follow(start)
     except OutOfEffort as out:
         return Orbit(path.joined(search.items), (), search.widths, str(out))
+    if search.joins:
+        return Orbit(path.joined(search.items), search.joins, search.widths)
     lead, loop = search.items[: search.loop_from], search.items[search.loop_from :]
     return Orbit(path.joined(lead), path.joined(loop), search.widths)
 
@@ -55,8 +58,10 @@ class _Search:
     `seen` gives for the state at an item's start the item's index; `jumps` for the shape of a repeat the
     indices where it stands."""
 
-    def __init__(self, system: System, effort: Effort) -> None:
+    def __init__(self, system: System, effort: Effort, known: Mapping[State, Path]) -> None:
         self.system = system
+        self.known = known
+        self.joins: Path = ()
         self.widths = tuple(width for _, width in system.variables)
         self.effort = effort
         self.items: list[Repeat] = []
@@ -71,6 +76,9 @@ class _Search:
         repeats = 0
         count = 0
         while state not in self.seen:
+            if state in self.known:
+                self.joins = self.known[state]
+                return
             count += 1
             if count % 1024 == 0:
                 self.effort.say(f"following an orbit, cycle {count}")
@@ -174,8 +182,9 @@ def least_break(system: System, block: Repeat, effort: Effort, then: State | Non
     index = z3.BitVec("!round", size)
     solver = z3.SolverFor("QF_BV")
     solver.add(broken == 1)
-    # The block returns to its own start after 2^(size-1) rounds at the latest.
-    low, high = 1, _likely_break(system, block, 1 << (size - 1), then or block.stride)
+    # The block is back at its own start after this many rounds; more would go round the loop several times.
+    returns = max((1 << w) // (d & -d) for w, d in zip(widths, block.stride, strict=True) if d)
+    low, high = 1, _likely_break(system, block, returns, then or block.stride)
 
     def any_below(bound: int) -> int | None:
         effort.check()

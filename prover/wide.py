@@ -19,8 +19,9 @@ the same beat moves.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import accumulate
 
 from prover import certificate, orbit, path
@@ -47,6 +48,9 @@ PATIENCE = orbit.PATIENCE + 2
 
 DRAWN_BACK = 4
 """Times that a line is drawn out backwards."""
+
+REFINED = 12
+"""Times that the slowest line's time is asked about after the bound is known."""
 
 MOST_PATHS = 48
 """Paths in a cover beyond which it is given up."""
@@ -282,24 +286,36 @@ class _Cover:
         self.effort = effort
         self.widths = [w for _, w in system.variables]
         self.lines: list[Line] = []
+        self.loops: set[frozenset[Item]] = set()
+        self.known: dict[State, Path] = {}
 
     def add(self, start: State) -> Line:
-        """Trace a start state, widened backwards, and take its line into the cover."""
-        run = self._earliest(self._traced(start))
-        recovery: int | None = run.lead_half_cycles
-        if self.goal is not None:
-            recovery = recovery_on(run, self.goal.period, self.goal.high)
-        line = Line(run, recovery)
-        self.lines.append(line)
-        return line
+        """Take a start state's line into the cover, and the line that widens it; the slower of the two."""
+        run = self._traced(start)
+        made = [run]
+        early = self._earliest(run)
+        if early is not run and (early.lead or not self.has(early.start)):
+            made.append(early)
+        lines = [self._line(found) for found in made]
+        self.lines += lines
+        return max(lines, key=lambda line: math.inf if line.recovery is None else line.recovery)
+
+    def _line(self, run: Orbit) -> Line:
+        if self.goal is None:
+            return Line(run, run.lead_half_cycles)
+        return Line(run, recovery_on(run, self.goal.period, self.goal.high))
 
     def _traced(self, start: State) -> Orbit:
-        run = orbit.trace(self.system, start, self.effort)
+        run = orbit.trace(self.system, start, self.effort, self.known)
         if not run.closed:
             raise OutOfEffort(run.why)
-        faults = certificate.orbit_faults(self.system, run, self.effort)
-        if faults:
-            raise OutOfEffort(f"an orbit that hangs on a value x stands for: {faults[0]}")
+        if self.system.choices and certificate.orbit_faults(self.system, run, self.effort):
+            raise OutOfEffort("an orbit hangs on a value that x stands for")
+        if frozenset(run.loop) not in self.loops:
+            run = replace(run, loop=shortened(run.loop, self.widths, 0))
+            self.loops.add(frozenset(run.loop))
+            for i, item in enumerate(run.loop):
+                self.known.setdefault(path.first_state((item,)), (*run.loop[i:], *run.loop[:i]))
         return run
 
     def _earliest(self, run: Orbit) -> Orbit:
@@ -349,7 +365,7 @@ class _Cover:
         """True of a state on some line where it is good, or at a place at least `least` half-cycles from its start
         (None: nowhere else)."""
         places: dict[tuple[State, Axes], None] = {}
-        for line in self.lines:
+        for line in self._distinct():
             for at, beat, axes in self._places(line):
                 good = line.recovery is not None and at >= line.recovery
                 if good or (least is not None and at >= least):
@@ -393,7 +409,7 @@ class _Cover:
     def _good_behind(self, state: Sequence[Expr], levels: Sequence[Expr]) -> Expr:
         """True of a state on a good place, where the levels before it are what the wave has there."""
         places: dict[tuple[State, Axes, tuple[int, ...]], None] = {}
-        for line in self.lines:
+        for line in self._distinct():
             for beat, axes, before in self._phased(line):
                 if before is not None:
                     places[beat, axes, before[-len(levels) :]] = None
@@ -410,7 +426,7 @@ class _Cover:
         assert self.goal is not None
         rise = first_rise(line.orbit)
         out = []
-        loop = peeled(shortened(line.orbit.loop, self.widths, 0), self.widths, EARLY // 2 + 1)
+        loop = peeled(line.orbit.loop, self.widths, EARLY // 2 + 1)
         for at, beat, axes, last in placed_spans(loop, line.orbit.lead_half_cycles):
             out.append((beat, axes, self._levels_before(at - rise, last - rise, axes)))
         return out
@@ -445,7 +461,7 @@ class _Cover:
     ) -> Cover:
         """The cover with the claim that it is one."""
         claim = certificate.CoverClaim(
-            orbits=tuple(self._claimed(line.orbit) for line in self.lines),
+            orbits=tuple(self._claimed(line.orbit, unrolled is not None) for line in self.lines),
             recoveries=tuple(line.recovery or 0 for line in self.lines),
             unrolled=unrolled,
             merge=merge,
@@ -456,17 +472,26 @@ class _Cover:
         start = slowest.orbit.start if slowest else None
         return Cover(tuple(self.lines), True, worst, start, claim, "", method)
 
-    def _claimed(self, run: Orbit) -> Orbit:
+    def _claimed(self, run: Orbit, phases: bool) -> Orbit:
         """The orbit as the claim writes it: cycles drawn into repeats, the first rounds of the loop's written out."""
         lead = shortened(run.lead, self.widths, MERGE + 2)
-        loop = shortened(run.loop, self.widths, 0)
-        if self.goal is not None:
+        loop = run.loop
+        if self.goal is not None and phases:
             loop = peeled(loop, self.widths, EARLY // 2 + 1)
         return Orbit(lead, loop, run.widths)
 
+    def _distinct(self) -> Iterator[Line]:
+        """The lines, those that have nothing but a loop that another has too left out."""
+        seen: set[frozenset[Item]] = set()
+        for line in self.lines:
+            loop = frozenset(line.orbit.loop)
+            if line.orbit.lead or loop not in seen:
+                yield line
+            seen.add(loop)
+
     def _places(self, line: Line) -> list[tuple[int, State, Axes]]:
         lead = shortened(line.orbit.lead, self.widths, MERGE + 2)
-        loop = shortened(line.orbit.loop, self.widths, 0)
+        loop = line.orbit.loop
         total = line.orbit.lead_half_cycles
         return [*placed_beats(lead), *((at + total, s, a) for at, s, a in placed_beats(loop))]
 
@@ -493,6 +518,8 @@ def _by_unrolling(made: _Cover) -> Cover | None:
 
     Gallops up to a number after which all are where a line is good, and bisects down to the least such; then
     asks whether the slowest line's own time would do where the output of the last few half-cycles counts too."""
+    if any((line.recovery or 0) > UNROLLED for line in made.lines):
+        return None
     low, high, bound = -1, UNROLLED + 1, 0
     while low + 1 < high:
         made.effort.say(f"unrolling {bound} half-cycles from all states")
@@ -509,19 +536,18 @@ def _by_unrolling(made: _Cover) -> Cover | None:
         bound = min(2 * bound + 2, UNROLLED) if high > UNROLLED else (low + high) // 2
         if low >= UNROLLED:
             return None
-    for _ in range(MOST_PATHS):
+    for _ in range(REFINED):
         slowest = max(made.lines, key=lambda line: line.recovery or 0)
         worst = slowest.recovery or 0
         late = None if worst >= high else made.late_after(worst, early=True)
         if late is None:
             break
-        line = made.add(late)
-        if line.recovery is None:
+        # Either a slower state, or one that is good by then and was not known to be.
+        if made.add(late).recovery is None:
             return made.lost()
-        if (line.recovery or 0) <= worst:
-            # Good by then, but not known to be: the bound stays, without a start that needs it.
-            worst = high
-            break
+    else:
+        # The bound stays, without a start that needs it.
+        worst = high
     exact = worst == slowest.recovery
     method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
     return made.proved(worst, slowest if exact else None, worst, EARLY, method)

@@ -5,7 +5,7 @@
 // ratio: proved
 // high-time: proved
 // no-stuck: proved or open
-// recovery: proved or open, worst ODD, exact
+// recovery: proved or open, worst 3, exact
 // settling: proved
 // from reset: period 4294967294, high 2147483647
 module season_by_2147483647 (input clk, input rst, output slow);

@@ -5,7 +5,7 @@
 // ratio: proved
 // high-time: proved
 // no-stuck: proved or open
-// recovery: proved or open, worst ODD, exact
+// recovery: proved or open, worst 3, exact
 // settling: proved
 // from reset: period 100000002, high 50000001
 module second_by_50000001 (input clk, input rst, output slow);

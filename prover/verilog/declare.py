@@ -9,6 +9,7 @@ from typing import Any
 from pyverilog.vparser import ast as vast
 
 from prover import expr as e
+from prover.errors import UserError
 from prover.verilog import tree
 from prover.verilog.deep import run
 from prover.verilog.execute import Environment, Executor
@@ -188,7 +189,7 @@ class Declarer:
             return self._complete(known, shape, name)
         if shape.msb < 0 == shape.lsb:
             self.report.fail(
-                f"{printable(name.name)}[{shape.msb}:0] has {shape.type.width} bits by the letter and hardly by intent",
+                f"{printable(name.name)}[{shape.msb}:0] has {shape.type.width} bits, which is hardly meant",
                 name.lineno,
                 "is a width of 0 meant?",
             )
@@ -197,8 +198,18 @@ class Declarer:
             words = self._dimension(name, scope)
             if shape.direction:
                 self.report.fail(f"port {printable(name.name)} can't be a memory", name.lineno)
-        made = Net(f"{scope.prefix}{name.name}", shape.type, shape.msb, shape.lsb, shape.kind, name.lineno, words,
-                   shape.direction, scope.local, shape.complete)  # fmt: skip
+        made = Net(
+            name=f"{scope.prefix}{name.name}",
+            type=shape.type,
+            msb=shape.msb,
+            lsb=shape.lsb,
+            kind=shape.kind,
+            offset=name.lineno,
+            words=words,
+            direction=shape.direction,
+            local=scope.local,
+            complete=shape.complete,
+        )
         if made.width > MAX_WIDTH:
             self.report.fail(f"a memory of {made.width} bits", name.lineno, f"at most {MAX_WIDTH} are read")
         self._add(scope, name.name, made, name.lineno)
@@ -225,7 +236,7 @@ class Declarer:
             self.report.fail(f"{printable(name.name)} is declared twice", name.lineno)
         if (net.msb, net.lsb) != (shape.msb, shape.lsb):
             self.report.fail(
-                f"{printable(name.name)} is declared as [{net.msb}:{net.lsb}] and as [{shape.msb}:{shape.lsb}]",
+                f"{printable(name.name)} is both [{net.msb}:{net.lsb}] and [{shape.msb}:{shape.lsb}]",
                 name.lineno,
                 "give both the same range",
             )
@@ -255,8 +266,18 @@ class Declarer:
             if name.dimensions:
                 self.report.fail("a parameter array isn't supported", name.lineno)
             make = self._parameter(node.type, name, scope, given)
-            self._add(scope, name.name, Lazy(make, name.lineno), name.lineno)
+            self._add(scope, name.name, Lazy(make, name.lineno, parameter=True), name.lineno)
         return [] if node.local else [name.name for name in node.names]
+
+    def settle(self, scope: Scope) -> None:
+        """Work out a scope's parameters in order, so that none has to wait for a long row of others."""
+        for name, entry in list(scope.names.items()):
+            if isinstance(entry, Lazy) and entry.parameter:
+                try:
+                    entry.get(self.report, name)
+                except UserError:
+                    # A real or a string, say, is no harm unless it is used; then the error comes again.
+                    continue
 
     def _parameter(
         self, type_: tree.Type | None, name: tree.Named, scope: Scope, given: Constant | None

@@ -84,6 +84,7 @@ class Drivers:
         self._drop_temporaries()
         for net in self.nets:
             self._check_single(net)
+        self._remark_races()
         split: set[Net] = set()
         while True:
             self._cut_up(split)
@@ -118,8 +119,38 @@ class Drivers:
                 self.by_net.pop(net, None)
                 self.nets.remove(net)
 
+    def _remark_races(self) -> None:
+        """Note registers assigned with = that another block samples at the same edge."""
+        racy = {
+            (net.name, edge.clock): net
+            for net, drivers in self.by_net.items()
+            for driver in drivers
+            for edge in driver.edges
+            if driver.procedural
+        }
+        if not racy:
+            return
+        names = {name for name, _ in racy}
+        for drivers in self.by_net.values():
+            for driver in drivers:
+                for edge in driver.edges:
+                    for name in names & reads([edge.data]).keys():
+                        source = racy.get((name, edge.clock))
+                        if source is not None and not self._same_block(source, driver):
+                            self.report.note(
+                                f"{printable(name)} is assigned with = and read at the same edge by another "
+                                "block: a simulator may take either value, gates take the old one",
+                                driver.at,
+                            )
+
+    def _same_block(self, source: Net, driver: Driver) -> bool:
+        return any(other.block == driver.block for other in self.by_net[source])
+
     def _check_single(self, net: Net) -> None:
         drivers = self.by_net.get(net, [])
+        for driver in drivers:
+            if driver.error is not None:
+                raise driver.error
         if net in self.inputs and drivers:
             self.report.fail(f"{printable(net.name)} is an input and can't be driven here", drivers[0].at)
         taken: list[Driver] = []
@@ -134,8 +165,9 @@ class Drivers:
                         if procedural and self._is_block(other)
                         else "driven twice"
                     )
+                    place = self.report.where(other.at)
                     self.report.fail(
-                        f"{printable(net.part(high, low))} is {what}: here and at {self.report.where(other.at)}",
+                        f"{printable(net.part(high, low))} is {what}: here and at {place}",
                         driver.at,
                         "leave one driver",
                     )
@@ -222,7 +254,9 @@ class Drivers:
         pending = [circle]
         if kept:
             rest = set(circle) - set(kept)
-            pending = strongly_connected({name: [o for o in edges[name] if o in rest] for name in sorted(rest)})
+            pending = strongly_connected(
+                {name: [o for o in edges[name] if o in rest] for name in sorted(rest)}
+            )
         for name in kept:
             self._remark_loop([name, name])
         while pending:
@@ -279,7 +313,8 @@ class Drivers:
                 continue
             where = self.report.where(part.net.offset)
             if part.name in loops:
-                assert part.word is not None and part.driver is not None
+                assert part.word is not None
+                assert part.driver is not None
                 value = self.final(part.word)
                 force = Force(e.TRUE, value, self.report.where(part.driver.at))
                 out.append(Register(part.name, part.width, "loop", (), (force,), part.initial, where))
@@ -318,8 +353,8 @@ class Drivers:
         if search.reads(data):
             assert part.driver is not None
             self.report.fail(
-                f"{printable(part.name)} samples {printable(variable.name)}, which is the signal that clocks it: "
-                "a simulator reads its new value, gates race",
+                f"{printable(part.name)} samples {printable(variable.name)}, which is the signal that "
+                "clocks it: a simulator reads its new value, gates race",
                 part.driver.at,
                 "sample something else, or use the other edge",
             )
@@ -345,6 +380,9 @@ class Drivers:
         out: dict[str, Signal] = {}
         for net in self.nets:
             parts = [values[part.name] for part in reversed(self.slices[net])]
+            if all(part.op == "var" and part.name.startswith(UNDRIVEN) for part in parts):
+                # Nothing reads it, or it would have been refused: it has no value to show.
+                continue
             word = joined(parts)
             where = self.report.where(net.offset)
             size = net.type.width

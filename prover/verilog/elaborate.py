@@ -191,8 +191,9 @@ class _Elaboration:
             if not isinstance(place.low, int) or isinstance(place.word, Expr):
                 self.report.fail("a continuous assignment to a bit that changes isn't supported", at)
             if net.kind == "variable":
-                self.report.fail(f"{printable(net.name)} is a reg and can't be driven from outside a process", at,
-                                 f"declare {printable(net.name)} as wire")  # fmt: skip
+                name = printable(net.name)
+                what = f"{name} is a reg and can't be driven from outside a process"
+                self.report.fail(what, at, f"declare {name} as wire")
             low = place.low + (place.word or 0) * net.type.width
             word = part
             if low:

@@ -17,7 +17,7 @@ from prover import expr as e
 from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import Task, run
-from prover.verilog.names import MAX_CALL_DEPTH, Constant, Lazy, Net, Report, Routine, Scope, Type
+from prover.verilog.names import MAX_CALL_DEPTH, Constant, Lazy, Net, Report, Routine, Scope, Type, words
 from prover.verilog.sizing import Place, Sizer, constant, write_part, written_mask
 from prover.verilog.source import printable
 from prover.verilog.words import cut
@@ -25,10 +25,10 @@ from prover.verilog.words import cut
 MAX_STEPS = 30_000
 MAX_ROUNDS = 10_000
 
-_SILENT = frozenset(
-    """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff strobe
-    fdisplay fwrite fclose dumpfile dumpvars dumpon dumpoff dumpall dumpflush dumplimit timeformat
-    printtimescale finish stop error warning info fatal""".split()
+_SILENT = words(
+    """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff
+    strobe fdisplay fwrite fclose dumpfile dumpvars dumpon dumpoff dumpall dumpflush dumplimit
+    timeformat printtimescale finish stop error warning info fatal"""
 )
 
 
@@ -112,11 +112,7 @@ class Environment:
 
     def find(self, node: Any, routine: bool = False) -> Any:
         name = printable(node.name)
-        entry: Any
-        if node.scope is None:
-            entry = self.scope.find(node.name, routine)
-        else:
-            entry = self._descend(node)
+        entry: Any = self.scope.find(node.name, routine) if node.scope is None else self._descend(node)
         if isinstance(entry, Lazy):
             entry = entry.get(self.report, node.name)
         if entry is None:
@@ -335,7 +331,8 @@ class Executor:
 
     def _for(self, node: tree.For, scope: Scope, state: State) -> Task[None]:
         if node.type is not None:
-            assert self.declares is not None and node.start is not None
+            assert self.declares is not None
+            assert node.start is not None
             name = tree.Named(node.start.left.name, [], None, node.lineno)
             scope = self.declares.block(scope, node, [tree.Declaration(node.type, [name], None, node.lineno)])
         if node.start is not None:
@@ -426,7 +423,7 @@ class Executor:
         outcome = {net: state.values.get(net) or self.report.choice(net.width) for net in own}
         for table in (state.values, state.written, state.touched):
             for net in [n for n in table if n.local and n.name.startswith(routine.scope.prefix)]:
-                del table[net]  # type: ignore[attr-defined]
+                del table[net]
         state.values.update({net: word for net, word in saved.items() if word is not None})
         for formal, actual in zip(routine.arguments, arguments, strict=True):
             if formal.direction in ("output", "inout"):

@@ -14,25 +14,26 @@ from pyverilog.vparser import ast as vast
 from pyverilog.vparser.parser import VerilogParser
 
 from prover.verilog import tree
+from prover.verilog.names import words
 from prover.verilog.tokens import Lexer
 
-INHERITED = frozenset(
-    f"p_{name}"
-    for name in """expression_uminus expression_uplus expression_ulnot expression_unot expression_uand
-    expression_unand expression_unor expression_uor expression_uxor expression_uxnor expression_power
-    expression_times expression_div expression_mod expression_plus expression_minus expression_sll
-    expression_srl expression_sla expression_sra expression_lessthan expression_greaterthan
-    expression_lesseq expression_greatereq expression_eq expression_noteq expression_eql expression_noteql
-    expression_And expression_Xor expression_Xnor expression_Or expression_land expression_lor
-    expression_cond expression_expr expression_concat expression_repeat expression_partselect
-    expression_pointer expression_functioncall expression_systemcall expression_id expression_const concat
-    concatlist concatlist_one repeat partselect partselect_pointer pointer pointer_pointer
-    const_expression_intnum const_expression_floatnum const_expression_stringliteral floatnumber
-    stringliteral functioncall func_args func_args_one func_args_empty identifier scope_identifier scope
-    scope_pointer if_statement if_statement_woelse cond ifcontent_statement true_statement else_statement
+INHERITED = words(
+    """expression_uminus expression_uplus expression_ulnot expression_unot expression_uand
+    expression_unand expression_unor expression_uor expression_uxor expression_uxnor
+    expression_power expression_times expression_div expression_mod expression_plus expression_minus
+    expression_sll expression_srl expression_sla expression_sra expression_lessthan
+    expression_greaterthan expression_lesseq expression_greatereq expression_eq expression_noteq
+    expression_eql expression_noteql expression_And expression_Xor expression_Xnor expression_Or
+    expression_land expression_lor expression_cond expression_expr expression_concat
+    expression_repeat expression_partselect expression_pointer expression_functioncall
+    expression_systemcall expression_id expression_const concat concatlist concatlist_one repeat
+    partselect partselect_pointer pointer pointer_pointer const_expression_intnum
+    const_expression_floatnum const_expression_stringliteral floatnumber stringliteral functioncall
+    func_args func_args_one func_args_empty identifier scope_identifier scope scope_pointer
+    if_statement if_statement_woelse cond ifcontent_statement true_statement else_statement
     case_statement casex_statement casez_statement case_comp casecontent_statement
     casecontent_condition_single casecontent_condition_one casecontent_statement_default initial
-    initial_statement while_statement whilecontent_statement empty""".split()
+    initial_statement while_statement whilecontent_statement empty"""
 )
 
 
@@ -41,7 +42,7 @@ class Grammar(VerilogParser):  # type: ignore[misc]
 
     start = "definition"
     tokens = Lexer.tokens
-    # The conditional operator is the weakest and groups to the right (clause 5.1.2); pyverilog leaves it open.
+    # The conditional operator is the weakest and groups to the right (clause 5.1.2).
     precedence = (("right", "COND", "COLON"), *VerilogParser.precedence)
 
     def __init__(self) -> None:

@@ -54,7 +54,7 @@ class Primitive:
 
 @dataclass(slots=True)
 class Hierarchy:
-    """What elaboration of the top module finds; the lists hold what drives nets, with the scope it is read in."""
+    """What elaboration of the top module finds: what drives nets, with the scope it is read in."""
 
     report: Report
     modules: Callable[[str], tree.Module | tree.Primitive | None]
@@ -178,6 +178,7 @@ class Hierarchy:
                 self.declarer.typedef(item, scope)
             elif isinstance(item, tree.Subroutine):
                 self.declarer.routine(item, scope)
+        self.declarer.settle(scope)
         for item in items:
             if isinstance(item, tree.Declaration):
                 self.declarer.declare(item, scope, ports)
@@ -297,8 +298,8 @@ class Hierarchy:
             if not constant(self.declarer.env(turn), item.condition, "the condition of a generate for"):
                 break
             if value in seen or self.scopes + len(opened) > MAX_SCOPES:
-                self.report.fail("this generate for never ends" if value in seen else
-                                 f"more than {MAX_SCOPES} instances and generate blocks", item.lineno)  # fmt: skip
+                what = f"more than {MAX_SCOPES} instances and generate blocks"
+                self.report.fail("this generate for never ends" if value in seen else what, item.lineno)
             seen.add(value)
             name = f"{label}[{value}]"
             inner = self._open(scope, name, item.lineno)
@@ -431,8 +432,8 @@ class Hierarchy:
                 name = names[i]
             elif name not in names:
                 known = ", ".join(map(printable, names)) or "none"
-                self.report.fail(f"{printable(module.name)} has no parameter {printable(name)}", source.lineno,
-                                 f"it has: {known}")  # fmt: skip
+                what = f"{printable(module.name)} has no parameter {printable(name)}"
+                self.report.fail(what, source.lineno, f"it has: {known}")
             if name in given:
                 self.report.fail(f"parameter {printable(name)} is given twice", source.lineno)
             if source.value is not None:

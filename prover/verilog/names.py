@@ -15,6 +15,12 @@ from prover.verilog.source import Source, printable
 # A wider word or more state than this is a mistake or an attack, and no divider.
 MAX_WIDTH = 65_536
 MAX_CALL_DEPTH = 200
+MAX_NESTED = 30
+
+
+def words(text: str) -> frozenset[str]:
+    """The words of a text: a long list of names that stays readable."""
+    return frozenset(text.split())
 
 
 class Type(NamedTuple):
@@ -31,6 +37,7 @@ class Report:
     source: Source
     notes: dict[tuple[str, Where], Note] = field(default_factory=dict)
     choices: int = 0
+    depth: int = 0
 
     def fail(self, message: str, at: int | Any, hint: str = "") -> NoReturn:
         """Refuse the input at a node or an offset."""
@@ -98,9 +105,7 @@ class Net:
     def part(self, high: int, low: int) -> str:
         """The name of the bits high..low, counted from 0, as the user would write it."""
         if self.words:
-            word, first = low // self.type.width, min(self.words)
-            step = word if self.words[0] <= self.words[1] else word
-            base = f"{self.name}[{first + step}]"
+            base = f"{self.name}[{min(self.words) + low // self.type.width}]"
             bits = (high % self.type.width, low % self.type.width)
             whole = bits == (self.type.width - 1, 0)
         else:
@@ -150,20 +155,28 @@ class Routine:
 
 @dataclass(slots=True, eq=False)
 class Lazy:
-    """A name that is worked out when first used: a parameter, whose value may need later ones, or a routine."""
+    """A name worked out when first used: a parameter, whose value may need later ones, or a routine."""
 
     make: Callable[[], Constant | Routine]
     offset: int
     value: Constant | Routine | None = None
     busy: bool = False
+    parameter: bool = False
 
     def get(self, report: Report, name: str) -> Constant | Routine:
+        """The constant or routine; UserError where it needs itself."""
         if self.value is None:
             if self.busy:
                 report.fail(f"{printable(name)} is defined by itself", self.offset)
+            if report.depth >= MAX_NESTED:
+                report.fail(f"{printable(name)} hangs on too many others", self.offset)
             self.busy = True
-            self.value = self.make()
-            self.busy = False
+            report.depth += 1
+            try:
+                self.value = self.make()
+            finally:
+                self.busy = False
+                report.depth -= 1
         return self.value
 
 

@@ -32,7 +32,7 @@ def _productions(grammar: Grammar) -> dict[str, Any]:
     return {
         name: getattr(grammar, name)
         for name in dir(grammar)
-        if name.startswith("p_") and name != "p_error" and (name in own or name in INHERITED)
+        if name.startswith("p_") and name != "p_error" and (name in own or name[2:] in INHERITED)
     }
 
 
@@ -44,7 +44,7 @@ def signature(grammar: Grammar) -> str:
 
 
 def make_tables(grammar: Grammar) -> dict[str, Any]:
-    """The LALR tables as plain data. Raises ValueError where the grammar has a conflict that isn't foreseen."""
+    """The LALR tables as plain data. Raises ValueError where the grammar has a conflict nobody foresaw."""
     module = SimpleNamespace(tokens=grammar.tokens, precedence=grammar.precedence, start=grammar.start)
     module.p_error = grammar.p_error
     module.__file__ = module.__name__ = "grammar"
@@ -153,9 +153,10 @@ def parse_chunk(source: Source, chunk: Chunk) -> tree.Module | tree.Primitive:
     raise _explain(source, chunk, first.token)
 
 
-def _parse(tokens: list[Any]) -> Any:
+def _parse(tokens: list[Any]) -> tree.Module | tree.Primitive:
     parser, lexer = _parser()
-    return parser.parse(tokens, lexer=lexer, tracking=True)
+    parsed: tree.Module | tree.Primitive = parser.parse(tokens, lexer=lexer, tracking=True)
+    return parsed
 
 
 def _explain(source: Source, chunk: Chunk, token: Any) -> UserError:

@@ -11,11 +11,13 @@ simulator and gates would do differently is refused.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from dataclasses import replace as replaced
 from itertools import product
-from typing import Any, NamedTuple
+from typing import Any, NamedTuple, NoReturn
 
 from prover import expr as e
 from prover.design import Edge, Force
+from prover.errors import UserError
 from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import run
@@ -34,7 +36,8 @@ class Driver:
     """What drives some bits of a net. Words are as wide as the net; only the bits of the mask count.
 
     A wire has `word`, a register has edges and forces; `latch` tells the latter's kind. `procedural` marks
-    what an always block assigns with =, which is no register where nothing else reads it.
+    what an always block assigns with =: no register where nothing else reads it, and only if something does
+    is `error` raised. `block` numbers the always blocks.
     """
 
     net: Net
@@ -46,6 +49,8 @@ class Driver:
     latch: bool = False
     procedural: bool = False
     keeps_itself: bool = False
+    error: UserError | None = None
+    block: int = 0
 
 
 class _Result(NamedTuple):
@@ -72,6 +77,7 @@ class Processes:
 
     report: Report
     executor: Executor
+    blocks: int = 0
 
     def always(self, scope: Scope, node: tree.Always) -> list[Driver]:
         """The drivers that an always block makes."""
@@ -83,8 +89,8 @@ class Processes:
             events, statement = statement.events, statement.statement
         elif node.kind in ("always", "always_ff"):
             what = "a delay" if isinstance(statement, tree.DelayControl) else "no event"
-            self.report.fail(f"an {node.kind} block with {what} at its head describes no hardware", node.lineno,
-                             "write always @(posedge clk) or always @*")  # fmt: skip
+            message = f"an {node.kind} block with {what} at its head describes no hardware"
+            self.report.fail(message, node.lineno, "write always @(posedge clk) or always @*")
         edges = {kind for kind, _, _ in events or ()}
         if node.kind == "always_ff" and (not edges or "level" in edges):
             self.report.fail("always_ff needs edges only", node.lineno, "write always_ff @(posedge clk)")
@@ -92,13 +98,16 @@ class Processes:
         if len(edges) > 1 and "level" in edges:
             level = next(at for kind, _, at in events or () if kind == "level")
             self.report.fail(
-                "edges and levels in one list: a simulator would sample data when the level changes, gates wouldn't",
+                "edges and levels in one list: a simulator would sample data at a level too, gates wouldn't",
                 level,
                 "write posedge or negedge before it",
             )
+        self.blocks += 1
         if edges and "level" not in edges:
-            return self._clocked(scope, events or [], state)
-        return self._combinational(scope, node, events, state)
+            made = self._clocked(scope, events or [], state)
+        else:
+            made = self._combinational(scope, node, events, state)
+        return [replaced(driver, block=self.blocks) for driver in made]
 
     def _results(self, state: State) -> dict[Net, _Result]:
         """What the block makes of each variable; bits that it never assigns are 0 in both words."""
@@ -145,7 +154,15 @@ class Processes:
             self.report.note("both edges of one clock: this needs dual-edge flip-flops", levels[clock][1].at)
         out: list[Driver] = []
         for net, result in results.items():
-            out += self._register(net, result, levels[clock], controls, state)
+            try:
+                out += self._register(net, result, levels[clock], controls, state)
+            except UserError as error:
+                if not state.blocking[net]:
+                    raise
+                keeps = depends_on_itself(net, *result)
+                out.append(
+                    Driver(net, state.touched[net], state.at[net], None, (), (), False, True, keeps, error)
+                )
         return out
 
     def _clock(
@@ -168,14 +185,18 @@ class Processes:
         last = next(iter(levels.values()))[0]
         if len(levels) == 1:
             self.report.fail(
-                "this signal is sampled by the edge it makes: a simulator reads its new value, gates race", last.at,
+                "this signal is sampled by the edge it makes: a simulator reads its new value, gates race",
+                last.at,
                 "sample something else, or use the other edge",
-            )  # fmt: skip
+            )
         names = ", ".join(printable(str(base)) for base in levels)
-        self.report.fail(f"which of {names} is the clock isn't plain: the block looks at all of them", last.at,
-                         "test every edge but the clock's, and the clock's not")  # fmt: skip
+        return self.report.fail(
+            f"which of {names} is the clock isn't plain: the block looks at all of them",
+            last.at,
+            "test every edge but the clock's, and the clock's not",
+        )
 
-    def _two_clocks(self, event: _Event, other: _Event) -> None:
+    def _two_clocks(self, event: _Event, other: _Event) -> NoReturn:
         one, two = (printable(str(x.base)) for x in (other, event))
         self.report.fail(
             f"edges of both {one} and {two} clock this block: no flip-flop has two clocks",
@@ -232,19 +253,20 @@ class Processes:
         settled = _constant_on(forced.word, touched)
         if forced == idle and not settled:
             self.report.fail(
-                f"{name} takes its data at the {edge} of {control} as well as at the clock's", first.at,
+                f"{name} takes its data at the {edge} of {control} as well as at the clock's",
+                first.at,
                 f"give {name} a value where {control} is active, or a block of its own",
-            )  # fmt: skip
+            )
         if not settled and (_constant_on(idle.word, touched) or idle.written is e.const(0, net.width)):
             self.report.fail(
-                f"the {edge} of {control} is in the list, but the block resets when {control} is {1 - first.level}: "
-                f"a simulator would sample data at that edge, gates would reset at the other level",
+                f"the {edge} of {control} is in the list, but the block resets when {control} is "
+                f"{1 - first.level}: a simulator would sample data at that edge, gates reset at the other",
                 first.at,
                 f"write {other} {control}, or test {control} for {first.level}",
-            )  # fmt: skip
+            )
         if depends_on_itself(net, *forced):
             self.report.fail(
-                f"{name} moves on at the {edge} of {control} as well as at the clock's: no flip-flop has two clocks",
+                f"{name} moves on at the {edge} of {control} as well as at the clock's: no flip-flop does",
                 first.at,
                 f"leave {control} out of the list, or give {name} a fixed value where it is active",
             )
@@ -257,7 +279,7 @@ class Processes:
             )
         if not settled:
             self.report.note(
-                f"{name} is loaded while {control} is active: gates follow the value, a simulator takes it at edges",
+                f"{name} is loaded while {control} is active: gates follow it, a simulator looks at edges",
                 first.at,
             )
 
@@ -362,13 +384,13 @@ class Processes:
             if condition is e.TRUE:
                 out.append(Driver(net, mask, at, word, procedural=True, keeps_itself=keeps))
                 continue
+            error = None
             if node.kind == "always_comb":
-                self.report.fail(
-                    f"{printable(net.name)} isn't assigned on every path of an always_comb", at,
-                    "assign it in every branch, or first of all",
-                )  # fmt: skip
+                message = f"{printable(net.name)} isn't assigned on every path of an always_comb"
+                hint = "assign it in every branch, or first of all"
+                error = UserError(message, self.report.where(at), hint)
             force = Force(condition, assume(word, condition), self.report.where(at))
-            out.append(Driver(net, mask, at, None, (), (force,), True, True, keeps))
+            out.append(Driver(net, mask, at, None, (), (force,), True, True, keeps, error))
         return out
 
     # -- initial blocks ------------------------------------------------------------------------------------

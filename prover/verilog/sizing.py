@@ -12,7 +12,7 @@ import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import Any, NamedTuple, Protocol
+from typing import Any, NamedTuple, NoReturn, Protocol
 
 from pyverilog.vparser import ast as vast
 
@@ -24,8 +24,15 @@ from prover.verilog.names import MAX_WIDTH, Constant, Net, Report, Routine, Type
 from prover.verilog.source import printable
 from prover.verilog.words import cut, joined
 
-_CAST_TYPES = {"int": Type(32, True), "integer": Type(32, True), "byte": Type(8, True), "shortint": Type(16, True),
-               "longint": Type(64, True), "bit": Type(1, False), "logic": Type(1, False)}  # fmt: skip
+_CAST_TYPES = {
+    "int": Type(32, True),
+    "integer": Type(32, True),
+    "byte": Type(8, True),
+    "shortint": Type(16, True),
+    "longint": Type(64, True),
+    "bit": Type(1, False),
+    "logic": Type(1, False),
+}
 _RADIX = {"b": 1, "o": 3, "h": 4}
 
 
@@ -347,7 +354,7 @@ class Sizer:
                 )
         return found
 
-    def _refuse(self, node: Any) -> Any:
+    def _refuse(self, node: Any) -> NoReturn:
         if isinstance(node, vast.FloatConst):
             self.report.fail("real numbers aren't supported", node, "write an integer")
         if isinstance(node, vast.StringConst):
@@ -629,22 +636,23 @@ class Sizer:
         if left.is_const == right.is_const:
             return
         (low, high), (low2, high2) = _range(left, signed), _range(right, signed)
-        kind = type(node)
-        outside = high < low2 or high2 < low
-        never = {
-            vast.Eq: outside, vast.Eql: outside, vast.LessThan: low >= high2, vast.GreaterThan: high <= low2,
-            vast.LessEq: low > high2, vast.GreaterEq: high < low2,
-        }.get(kind, False)  # fmt: skip
-        always = {
-            vast.NotEq: outside, vast.NotEql: outside, vast.LessThan: high < low2, vast.GreaterThan: low > high2,
-            vast.LessEq: high <= low2, vast.GreaterEq: low >= high2,
-        }.get(kind, False)  # fmt: skip
+        below, above = high < low2, high2 < low
+        # For each comparison: when it never holds, and when it always does.
+        never, always = {
+            vast.Eq: (below or above, False),
+            vast.Eql: (below or above, False),
+            vast.NotEq: (False, below or above),
+            vast.NotEql: (False, below or above),
+            vast.LessThan: (low >= high2, below),
+            vast.GreaterThan: (high <= low2, above),
+            vast.LessEq: (above, high <= low2),
+            vast.GreaterEq: (below, low >= high2),
+        }[type(node)]
         if never or always:
-            bound = right if right.is_const else left
+            number = (low2, low)[left.is_const]
             self.report.note(
-                f"this comparison {'never' if never else 'always'} holds: {bound.value} is out of the other side's reach"
-                if outside or never
-                else f"this comparison always holds: the other side can't pass {bound.value}",
+                f"this comparison {'never' if never else 'always'} holds: "
+                f"{number} is at or beyond the end of the other side's range",
                 node,
             )
 
@@ -757,7 +765,8 @@ _WIDE: dict[Any, Callable[[Expr, Expr], Expr]] = {
     vast.Xor: e.bvxor, vast.Xnor: lambda a, b: e.bvnot(e.bvxor(a, b)),
 }  # fmt: skip
 _REDUCTIONS: dict[Any, Callable[[Expr], Expr]] = {
-    vast.Ulnot: lambda a: e.bvnot(e.nonzero(a)), vast.Uor: e.nonzero, vast.Unor: lambda a: e.bvnot(e.nonzero(a)),
+    vast.Ulnot: lambda a: e.bvnot(e.nonzero(a)), vast.Uor: e.nonzero,
+    vast.Unor: lambda a: e.bvnot(e.nonzero(a)),
     vast.Uand: lambda a: e.eq(a, e.const(-1, a.width)),
     vast.Unand: lambda a: e.bvnot(e.eq(a, e.const(-1, a.width))),
     vast.Uxor: e.parity, vast.Uxnor: lambda a: e.bvnot(e.parity(a)),

@@ -41,8 +41,10 @@ _PRAGMA = re.compile(r"(?://|/\*)\s*(?:synthesis|synopsys|pragma)\s+(?:translate
 _TIMESCALE = re.compile(r"\s*\d+\s*[munpf]?s\s*/\s*\d+\s*[munpf]?s")
 _STRING = re.compile(r'\s*"[^"\n]*"')
 
-_NO_ARGUMENT = {"celldefine", "endcelldefine", "nounconnected_drive", "end_keywords", "delay_mode_distributed",
-                "delay_mode_path", "delay_mode_unit", "delay_mode_zero"}  # fmt: skip
+_NO_ARGUMENT = {
+    "celldefine", "endcelldefine", "nounconnected_drive", "end_keywords", "delay_mode_distributed",
+    "delay_mode_path", "delay_mode_unit", "delay_mode_zero",
+}  # fmt: skip
 _WHOLE_LINE = {"line", "pragma", "default_decay_time", "default_trireg_strength", "unconnected_drive"}
 _CONDITIONALS = {"ifdef", "ifndef", "elsif", "else", "endif"}
 _DIRECTIVES = _NO_ARGUMENT | _WHOLE_LINE | _CONDITIONALS
@@ -72,7 +74,7 @@ class _File:
 
 @dataclass(frozen=True, slots=True)
 class Source:
-    """The expanded text. `where` gives the place of an offset in it, `net_type` the `default_nettype there."""
+    """The expanded text; what stands at an offset in it was written `where`, under which `net_type`."""
 
     text: str
     files: tuple[str, ...]
@@ -325,7 +327,7 @@ class _Preprocessor:
         return position
 
     def _logical_line(self, file: _File, position: int) -> tuple[str, int]:
-        """The rest of the line with comments removed, and where the next one begins; a backslash joins lines."""
+        """The rest of the line without comments, and where the next one begins; a backslash joins lines."""
         text, parts = file.text, []
         while True:
             found = re.compile(r'\\\n|\n|//[^\n]*|/\*.*?\*/|"(?:[^"\\\n]|\\.)*"', re.DOTALL).search(
@@ -467,7 +469,7 @@ class _Preprocessor:
 
 
 def _arguments(text: str, opening: int, where: Where) -> tuple[list[str], int]:
-    """The comma-separated pieces between the bracket at `opening` and its partner, and the place after that."""
+    """The pieces between the bracket at `opening` and its partner, at commas, and the place after that."""
     pieces, depth, start = [], 0, opening + 1
     for found in re.compile(r'"(?:[^"\\\n]|\\.)*"|\\\S+|[()\[\]{},]').finditer(text, opening):
         lexeme = found.group()

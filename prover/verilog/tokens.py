@@ -16,27 +16,29 @@ from ply.lex import LexToken
 from pyverilog.vparser.lexer import VerilogLexer
 
 from prover.errors import UserError
+from prover.verilog.names import words
 from prover.verilog.source import Source, printable
 
 # Reserved words that the grammar knows, by the standard that reserves them.
-VERILOG_WORDS = frozenset(
-    """always and assign automatic begin buf bufif0 bufif1 case casex casez deassign default defparam disable
-    edge else end endcase endfunction endgenerate endmodule endprimitive endtask event for force forever fork
-    function generate genvar if initial inout input integer join localparam module macromodule nand negedge
-    nor not notif0 notif1 or output parameter posedge primitive real realtime reg release repeat signed
-    supply0 supply1 table task time tri tri0 tri1 triand trior trireg unsigned wait wand while wire wor xnor
-    xor""".split()
+VERILOG_WORDS = words(
+    """always and assign automatic begin buf bufif0 bufif1 case casex casez deassign default defparam
+    disable edge else end endcase endfunction endgenerate endmodule endprimitive endtask event for
+    force forever fork function generate genvar if initial inout input integer join localparam
+    module macromodule nand negedge nor not notif0 notif1 or output parameter posedge primitive real
+    realtime reg release repeat signed supply0 supply1 table task time tri tri0 tri1 triand trior
+    trireg unsigned wait wand while wire wor xnor xor"""
 )
-SYSTEM_WORDS = frozenset(
-    """always_comb always_ff always_latch bit byte enum int logic longint packed priority return shortint
-    static typedef unique unique0 var void""".split()
+SYSTEM_WORDS = words(
+    """always_comb always_ff always_latch bit byte enum int logic longint packed priority return
+    shortint static typedef unique unique0 var void"""
 )
 # Reserved, and nothing that a divider needs.
-REFUSED_WORDS = frozenset(
-    """cell cmos config design endconfig endspecify endtable highz0 highz1 ifnone incdir include instance
-    large liblist library medium nmos noshowcancelled pmos pull0 pull1 pulldown pullup
-    pulsestyle_ondetect pulsestyle_onevent rcmos rnmos rpmos rtran rtranif0 rtranif1 scalared showcancelled
-    small specify specparam strong0 strong1 tran tranif0 tranif1 use uwire vectored weak0 weak1""".split()
+REFUSED_WORDS = words(
+    """cell cmos config design endconfig endspecify endtable highz0 highz1 ifnone incdir include
+    instance large liblist library medium nmos noshowcancelled pmos pull0 pull1 pulldown pullup
+    pulsestyle_ondetect pulsestyle_onevent rcmos rnmos rpmos rtran rtranif0 rtranif1 scalared
+    showcancelled small specify specparam strong0 strong1 tran tranif0 tranif1 use uwire vectored
+    weak0 weak1"""
 )
 
 OPERATORS = {
@@ -52,9 +54,8 @@ OPERATORS = {
     "{": "LBRACE", "}": "RBRACE", "#": "DELAY", "'": "TICK",
 }  # fmt: skip
 
-GATES = frozenset("and nand nor xor xnor buf not bufif0 bufif1 notif0 notif1".split())
-_NETS = frozenset("tri0 tri1 triand trior trireg wand wor realtime event".split())
-_TYPES = {word: word.upper() for word in "int bit byte shortint longint time".split()}
+GATES = words("""and nand nor xor xnor buf not bufif0 bufif1 notif0 notif1""")
+_NETS = words("""tri0 tri1 triand trior trireg wand wor realtime event""")
 
 _LEXEME = re.compile(
     r"""(?P<space>\s+)

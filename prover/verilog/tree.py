@@ -6,14 +6,23 @@ As in pyverilog's nodes `lineno` holds an offset in the expanded text. A range i
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, TypeVar, dataclass_transform
 
 Node = Any
 Range = tuple[Node, Node | None]
+T = TypeVar("T")
 
 
-@dataclass(slots=True, eq=False)
+@dataclass_transform(eq_default=False, field_specifiers=(field,))
+def _node(cls: type[T]) -> type[T]:
+    """A plain dataclass; what is left out makes up most of the time that importing thirty of them takes."""
+    make: Callable[[type[T]], type[T]] = dataclass(eq=False, repr=False, match_args=False, slots=True)
+    return make(cls)
+
+
+@_node
 class Type:
     """What stands before declared names: keywords (`input`, `reg`, `signed` …, or an EnumType) and ranges."""
 
@@ -24,14 +33,16 @@ class Type:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class EnumType:
+    """An enumeration: its base type, and its members with value and offset."""
+
     base: Type | None
     members: list[tuple[str, Node | None, int]]
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Named:
     """A declared name with its unpacked dimensions and its initial value."""
 
@@ -41,22 +52,26 @@ class Named:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Declaration:
+    """One declaration of nets, variables or genvars."""
+
     type: Type
     names: list[Named]
     delay: Node | None
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Typedef:
+    """A named type."""
+
     name: str
     type: Type
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Parameters:
     """`parameter` or `localparam`; `type` is None where only the value gives one."""
 
@@ -66,7 +81,7 @@ class Parameters:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class PortItem:
     """One entry of a module's or function's bracketed list; `type` is None where it is left out."""
 
@@ -75,8 +90,10 @@ class PortItem:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Module:
+    """A module."""
+
     name: str
     parameters: list[Node]
     ports: list[PortItem]
@@ -84,7 +101,7 @@ class Module:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Primitive:
     """A user-defined primitive: its ports, declarations and initial statement, and its table as written."""
 
@@ -96,7 +113,7 @@ class Primitive:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Gates:
     """Instances of a built-in gate: pairs of name and terminals."""
 
@@ -106,7 +123,7 @@ class Gates:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Instance:
     """`array` is the range of an array of instances."""
 
@@ -116,8 +133,10 @@ class Instance:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Instances:
+    """Instances of one module or primitive; `delay` is a number without brackets."""
+
     module: str
     parameters: list[PortArgument]
     instances: list[Instance]
@@ -125,7 +144,7 @@ class Instances:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class PortArgument:
     """`name` is None by position and `*` for `.*`; `shorthand` marks `.name` without brackets."""
 
@@ -135,14 +154,16 @@ class PortArgument:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Defparam:
+    """One parameter set from outside."""
+
     target: Node
     value: Node
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class IndexedSelect:
     """`var[base +: width]`, or `-:` where `up` is False."""
 
@@ -153,7 +174,7 @@ class IndexedSelect:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Fill:
     """`'0`, `'1`, `'x`, `'z`: as wide as its context."""
 
@@ -161,7 +182,7 @@ class Fill:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Cast:
     """`type'(value)`: `type` is a keyword, or an expression that gives the width."""
 
@@ -170,7 +191,7 @@ class Cast:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Always:
     """`kind` is the keyword."""
 
@@ -179,7 +200,7 @@ class Always:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class EventControl:
     """`@(…) statement`: events are pairs of edge (posedge, negedge or level) and expression; None is `@*`."""
 
@@ -188,14 +209,16 @@ class EventControl:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class DelayControl:
+    """`#delay statement`."""
+
     delay: Node
     statement: Node
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Assignment:
     """`blocking` tells = from <=; `delay` is the delay or event control on the right, if any."""
 
@@ -206,7 +229,7 @@ class Assignment:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class For:
     """`type` is that of a loop variable declared in the loop itself."""
 
@@ -218,25 +241,31 @@ class For:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Repeat:
+    """`repeat (times) body`."""
+
     times: Node
     body: Node
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Return:
+    """`return value;`."""
+
     value: Node | None
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Null:
+    """A lone semicolon."""
+
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Refused:
     """A statement that is recognised only to be refused: what it is."""
 
@@ -244,7 +273,7 @@ class Refused:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class Subroutine:
     """A function, or a task where `result` is None; `ports` come from the brackets, `items` from the body."""
 
@@ -256,23 +285,29 @@ class Subroutine:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class GenerateBlock:
+    """`begin … end` among a module's items."""
+
     name: str | None
     items: list[Node]
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class GenerateIf:
+    """A generate if; a branch is an item, or a list of them."""
+
     condition: Node
     then: Node
     other: Node | None
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class GenerateFor:
+    """A generate for with its genvar."""
+
     variable: str
     start: Node
     condition: Node
@@ -281,7 +316,7 @@ class GenerateFor:
     lineno: int
 
 
-@dataclass(slots=True, eq=False)
+@_node
 class GenerateCase:
     """Arms are pairs of labels and item; no labels is the default."""
 

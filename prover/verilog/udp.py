@@ -143,7 +143,8 @@ def _sequential(
     report: Report = elaboration.report
     place = places[0]
     net = place.net
-    assert isinstance(net, Net) and isinstance(place.low, int)
+    assert isinstance(net, Net)
+    assert isinstance(place.low, int)
     if net.kind == "variable" or place.word is not None:
         report.fail(f"{net.name} is a reg and can't be driven from outside a process", primitive.at)
     low = place.low

@@ -50,15 +50,15 @@ class Program:
         a, b = self.value(names, depth - 1), self.value(names, depth - 1)
         pick = r.randrange(12)
         if pick < 5:
-            return f"({a} {r.choice('+ - * & | ^ ~^'.split())} {b})"
+            return f"({a} {r.choice(['+', '-', '*', '&', '|', '^', '~^'])} {b})"
         if pick == 5:
-            return f"({a} {r.choice('<< >> >>>'.split())} {r.randrange(4)})"
+            return f"({a} {r.choice(['<<', '>>', '>>>'])} {r.randrange(4)})"
         if pick < 8:
-            return f"({a} {r.choice('< > <= >= == != && ||'.split())} {b})"
+            return f"({a} {r.choice(['<', '>', '<=', '>=', '==', '!=', '&&', '||'])} {b})"
         if pick == 8:
             return f"({a} ? {b} : {self.value(names, depth - 1)})"
         if pick == 9:
-            return f"{r.choice('~ - ! & | ^ ~|'.split())}({a})"
+            return f"{r.choice(['~', '-', '!', '&', '|', '^', '~|'])}({a})"
         if pick == 10:
             return f"{{{r.choice(names)}, {r.choice(names)}}}"
         return f"f({a}, {b})"

@@ -128,17 +128,17 @@ class Writer:
         pick, r = self.random.randrange(22), self.random
         a, b = self.term(depth - 1), self.term(r.randrange(depth))
         if pick < 9:
-            return f"({a} {r.choice('+ - * & | ^ ~^ ^~'.split())} {b})"
+            return f"({a} {r.choice(['+', '-', '*', '&', '|', '^', '~^', '^~'])} {b})"
         if pick < 11:
-            return f"({a} {r.choice('/ %'.split())} {b})"
+            return f"({a} {r.choice(['/', '%'])} {b})"
         if pick < 13:
-            return f"({a} {r.choice('<< >> <<< >>>'.split())} {r.choice(['u3', 's3', 'u1', 'u4', b])})"
+            return f"({a} {r.choice(['<<', '>>', '<<<', '>>>'])} {r.choice(['u3', 's3', 'u1', 'u4', b])})"
         if pick < 15:
-            return f"({a} {r.choice('< > <= >= == != === !== && ||'.split())} {b})"
+            return f"({a} {r.choice(['<', '>', '<=', '>=', '==', '!=', '===', '!==', '&&', '||'])} {b})"
         if pick < 17:
             return f"({self.term(0)} {r.choice(['', '== u1', '< s4'])} ? {a} : {b})"
         if pick == 17:
-            return f"{r.choice('~ - + ! & | ^ ~& ~| ~^ ^~'.split())}({a})"
+            return f"{r.choice(['~', '-', '+', '!', '&', '|', '^', '~&', '~|', '~^', '^~'])}({a})"
         if pick == 18:
             return f"{{{self.sized(depth - 1)}, {self.sized(0)}}}"
         if pick == 19:

@@ -1,0 +1,162 @@
+"""The comment block at the head of a case: what to ask of it, and what has to come out.
+
+Prose first; then lines of the form `// key: value`. A `check` line opens a group: the options of one run of the
+command, and under it what that run has to say. Times are half-cycles. A line that is none of the known kinds is an
+error, so that nothing that a case states goes unread.
+"""
+
+from __future__ import annotations
+
+import re
+import shlex
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from pathlib import Path
+
+CASES = Path(__file__).parents[1] / "cases"
+PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling")
+VERDICTS = {"proved", "refuted", "open"}
+
+
+class FormatError(Exception):
+    """A comment block that says something this reader doesn't know."""
+
+
+@dataclass(frozen=True)
+class Stated:
+    """What a group states of one property."""
+
+    verdicts: frozenset[str]
+    worst: int | None = None
+    exact: bool = False
+    obligation: bool = False
+
+
+@dataclass(frozen=True)
+class StatedWave:
+    """A wave: half-cycles per period and of high time; a period of None never toggles, a high of None is not stated
+    (several high runs)."""
+
+    period: int | None
+    high: int | None = None
+
+
+@dataclass
+class Group:
+    """One run of `check` on a case, and what it has to say. `error` are words of the message of a refusal, `line` the
+    line that it points at."""
+
+    options: list[str]
+    verdicts: frozenset[str] = frozenset()
+    properties: dict[str, Stated] = field(default_factory=dict)
+    loops: int | None = None
+    false_loops: int | None = None
+    stuck: bool = False
+    from_reset: StatedWave | None = None
+    from_initial: StatedWave | None = None
+    error: list[str] = field(default_factory=list)
+    line: int | None = None
+
+
+@dataclass(frozen=True)
+class Case:
+    """A file with its groups. `delayed` are the gates and nets that the event simulator gives one unit of delay."""
+
+    path: Path
+    prose: str
+    delayed: tuple[str, ...]
+    groups: tuple[Group, ...]
+
+    @property
+    def name(self) -> str:
+        """Folder and file, such as gauge/chopper_by_2.v."""
+        return f"{self.path.parent.name}/{self.path.name}"
+
+
+def read_case(path: Path) -> Case:
+    """The case in a file. Raises FormatError for a block that can't be read."""
+    prose: list[str] = []
+    delayed: list[str] = []
+    groups: list[Group] = []
+    for number, line in enumerate(path.read_text(encoding="utf-8").splitlines(), 1):
+        if not line.startswith("//"):
+            break
+        text = line[2:].strip()
+        key, colon, value = text.partition(": ")
+        try:
+            if key == "unit delay" and colon:
+                delayed += value.split()
+            elif key == "check":
+                groups.append(Group(shlex.split(value)))
+            elif groups:
+                _state(groups[-1], key, value if colon else "")
+            else:
+                prose.append(text)
+        except (ValueError, KeyError) as fault:
+            raise FormatError(f"{path}:{number}: {line!r} is not understood") from fault
+    if not groups:
+        raise FormatError(f"{path}: no check line")
+    for group in groups:
+        if bool(group.error) == bool(group.verdicts):
+            raise FormatError(f"{path}: check {shlex.join(group.options)}: a verdict or an error, one of the two")
+    return Case(path, " ".join(prose), tuple(delayed), tuple(groups))
+
+
+def _state(group: Group, key: str, value: str) -> None:
+    """Take one line into its group. Raises ValueError or KeyError for what is not known."""
+    if key in PROPERTIES:
+        group.properties[key] = _property(value)
+    elif key == "verdict":
+        group.verdicts = _verdicts(value)
+    elif key == "loops":
+        group.loops = int(value)
+    elif key == "false loops":
+        group.false_loops = int(value)
+    elif key == "stuck":
+        group.stuck = {"yes": True}[value]
+    elif key == "from reset":
+        group.from_reset = _wave(value)
+    elif key == "from initial":
+        group.from_initial = _wave(value)
+    elif key == "error" and value:
+        group.error = value.split()
+    elif key == "line":
+        group.line = int(value)
+    else:
+        raise KeyError(key)
+
+
+def _verdicts(value: str) -> frozenset[str]:
+    found = frozenset(value.split(" or "))
+    if not found <= VERDICTS:
+        raise ValueError(value)
+    return found
+
+
+def _property(value: str) -> Stated:
+    """Such as `proved, worst 3, exact`; the words after the verdict in any order."""
+    verdict, *parts = value.split(", ")
+    worst = None
+    for part in parts:
+        match = re.fullmatch(r"worst (\d+)", part)
+        if match:
+            worst = int(match[1])
+        elif part not in ("exact", "obligation"):
+            raise ValueError(part)
+    return Stated(_verdicts(verdict), worst, "exact" in parts, "obligation" in parts)
+
+
+def _wave(value: str) -> StatedWave:
+    if value == "never toggles":
+        return StatedWave(None)
+    match = re.fullmatch(r"period (\d+)(?:, high (\d+))?", value)
+    if not match:
+        raise ValueError(value)
+    return StatedWave(int(match[1]), int(match[2]) if match[2] else None)
+
+
+def cases(*folders: str) -> Iterator[Case]:
+    """Every case of the folders, in order; of all folders if none is named."""
+    for folder in folders or sorted(p.name for p in CASES.iterdir() if p.is_dir()):
+        for path in sorted((CASES / folder).glob("*.v")):
+            yield read_case(path)

@@ -1,0 +1,122 @@
+"""Every group of every case: verdicts, figures and refusals are those that the case's comment states.
+
+The figures were computed outside this program when the cases were written, by an event simulator, by enumeration, or
+taken from the published table that the case names; tests/agreement computes those of up to 12 register bits anew.
+"""
+
+from __future__ import annotations
+
+import json
+import re
+import shlex
+from pathlib import Path
+from typing import Any
+
+import pytest
+from cases_format import CASES, PROPERTIES, Case, Group, Stated, StatedWave, cases
+from click.testing import CliRunner, Result
+
+from prover import cli
+
+STATUS = {"proved": 0, "refuted": 1, "open": 3}
+
+ALL = [(case, group) for case in cases() for group in case.groups]
+
+
+def named(pairs: list[tuple[Case, Group]]) -> list[Any]:
+    return [pytest.param(c, g, id=f"{c.name}: {shlex.join(g.options)}") for c, g in pairs]
+
+
+def run(case: Case, *options: str) -> Result:
+    return CliRunner().invoke(cli.main, ["check", str(case.path), *options], catch_exceptions=False)
+
+
+@pytest.mark.parametrize(("case", "group"), named([pair for pair in ALL if not pair[1].error]))
+def test_a_case_is_judged_as_it_states(case: Case, group: Group) -> None:
+    result = run(case, *group.options, "--json", "-")
+    assert result.exit_code in STATUS.values(), result.stderr
+    report = json.loads(result.stdout)
+    assert report["verdict"] in group.verdicts
+    assert result.exit_code == STATUS[report["verdict"]]
+    found = {each["name"]: each for each in report["properties"]}
+    assert tuple(found) == PROPERTIES
+    if found["settling"]["verdict"] == "refuted":
+        # Of a machine that never settles nothing else is known, and nothing else may be said.
+        assert {found[name]["verdict"] for name in PROPERTIES[:-1]} == {"open"}
+        assert set(group.properties) == {"settling"}
+        return
+    assert tuple(group.properties) == PROPERTIES
+    for name, stated in group.properties.items():
+        check_property(found[name], stated)
+    check_measured(report["measured"], found, group)
+
+
+def check_property(found: dict[str, Any], stated: Stated) -> None:
+    verdict, facts = found["verdict"], found["facts"]
+    assert verdict in stated.verdicts, found
+    assert bool(found["obligations"]) == stated.obligation, found
+    if verdict == "refuted":
+        assert found["counterexample"] is not None
+    if verdict != "open" and found["name"] == "recovery":
+        assert facts["worst_half_cycles"] == stated.worst
+        assert facts["exact"] == stated.exact
+
+
+def check_measured(measured: dict[str, Any], found: dict[str, Any], group: Group) -> None:
+    loops = measured["loops"]
+    if group.loops is not None:
+        assert measured["complete"]
+        assert (len(loops), sum(not loop["good"] for loop in loops)) == (group.loops, group.false_loops)
+        assert any(loop["stuck"] for loop in loops) == group.stuck
+    assert (found["no-stuck"]["verdict"] == "refuted") == group.stuck
+    for scope, stated in (("reset", group.from_reset), ("initial", group.from_initial)):
+        if stated is not None:
+            assert measured["scope"] == scope
+            check_starts(measured, stated)
+
+
+def check_starts(measured: dict[str, Any], stated: StatedWave) -> None:
+    """Every start state runs into the stated wave, at whichever clock level it begins."""
+    starts = measured["starts"]
+    assert starts
+    for start in starts:
+        assert start["period_half_cycles"] == stated.period
+        assert start["loop_half_cycles"] > 0
+        if stated.high is not None:
+            assert start["high_half_cycles"] == stated.high
+            assert start["wave"] == [[1, stated.high], [0, (stated.period or 0) - stated.high]]
+    first = measured["from_reset"]
+    assert (first["period_half_cycles"] if first else None) == stated.period
+
+
+@pytest.mark.parametrize(("case", "group"), named([pair for pair in ALL if pair[1].error]))
+def test_a_refused_case_names_the_place_and_a_remedy_and_writes_nothing(
+    case: Case, group: Group, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    before = sorted(CASES.rglob("*"))
+    result = run(case, *group.options, "--json", "report.json", "--vcd", "wave.vcd")
+    assert result.exit_code == 2, result.stdout
+    assert result.stdout == ""
+    message, hint, remedy = result.stderr.partition("\nhint: ")
+    assert hint
+    assert remedy.strip()
+    for word in group.error:
+        assert word in result.stderr
+    if group.line is not None:
+        assert re.match(rf"error: {re.escape(str(case.path))}:{group.line}: ", message), message
+        assert case.path.read_text(encoding="utf-8").splitlines()[group.line - 1].strip() in message
+    assert list(tmp_path.iterdir()) == []
+    assert sorted(CASES.rglob("*")) == before
+
+
+def test_every_folder_has_the_cases_it_is_for() -> None:
+    folders = {case.path.parent.name for case, _ in ALL}
+    assert folders == {"gauge", "faulty", "published", "refused"}
+    for case, group in ALL:
+        if case.path.parent.name == "refused":
+            assert group.error
+        if case.path.parent.name == "gauge":
+            assert "refuted" not in group.verdicts
+    for case in cases("faulty"):
+        assert "refuted" in case.groups[0].verdicts
