@@ -14,6 +14,7 @@ from prover import certificate, graph, orbit, path, reset
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
+from prover.expr import Expr
 from prover.ports import Ports
 from prover.rhythm import Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
@@ -33,7 +34,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     won = _races_won(ports, settling, starts, effort)
     machine = system if graph.fits(system) else cone(system)
     starts = tuple(replace(s, state=project(system, s.state, machine)) for s in starts)
-    orbits = tuple(follow(machine, s.state, effort) for s in starts)
+    orbits = _orbits(machine, starts, effort)
     rhythm = Rhythm(
         system=machine,
         settling=settling,
@@ -63,11 +64,31 @@ def _nothing_known(system: System, settling: Settling, scope: Scope, why: str) -
     return Rhythm(system, settling, scope, (), (), (), False, recovery, None, False, open=why)
 
 
-def follow(system: System, start: State, effort: Effort) -> Orbit:
-    """A start state's orbit, checked. It is left unclosed, with the reason, where the check can't be made."""
-    found = orbit.trace(system, start, effort)
+def _orbits(system: System, starts: Sequence[Start], effort: Effort) -> tuple[Orbit, ...]:
+    """The start states' orbits; a loop that they share is traced and checked once."""
+    known: dict[State, path.Path] = {}
+    refuted: set[Expr] = set()
+    found = []
+    for start in starts:
+        run = follow(system, start.state, effort, known, refuted)
+        known |= orbit.onward(run.loop)
+        found.append(run)
+    return tuple(found)
+
+
+def follow(
+    system: System,
+    start: State,
+    effort: Effort,
+    known: dict[State, path.Path] | None = None,
+    refuted: set[Expr] | None = None,
+) -> Orbit:
+    """A start state's orbit, checked. It is left unclosed, with the reason, where the check can't be made.
+
+    `known` are loops found before, and `refuted` obligations discharged before, on the same system."""
+    found = orbit.trace(system, start, effort, known)
     try:
-        faults = certificate.orbit_faults(system, found, effort)
+        faults = certificate.orbit_faults(system, found, effort, refuted)
     except OutOfEffort as out:
         return _start_only(system, start, str(out))
     if faults and system.choices:
@@ -237,8 +258,7 @@ def _corners(system: System) -> list[State]:
     rng = random.Random(0)
     widths = [width for _, width in system.variables]
     zeros, ones = tuple(0 for _ in widths), tuple((1 << w) - 1 for w in widths)
-    states = [zeros, ones, (*ones[:-1], 0), (1, *zeros[1:])]
-    return states + [tuple(rng.getrandbits(w) for w in widths) for _ in range(3)]
+    return [zeros, ones, (1, *zeros[1:]), *(tuple(rng.getrandbits(w) for w in widths) for _ in range(2))]
 
 
 def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:

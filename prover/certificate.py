@@ -59,13 +59,23 @@ def discharge(obligation: Obligation, effort: Effort) -> bool:
 # -- orbits ------------------------------------------------------------------------------------------------
 
 
-def orbit_faults(system: System, orbit: Orbit, effort: Effort) -> list[str]:
-    """What is wrong with the claim that the machine runs through the orbit; empty if nothing is."""
+def orbit_faults(
+    system: System, orbit: Orbit, effort: Effort, refuted: set[Expr] | None = None
+) -> list[str]:
+    """What is wrong with the claim that the machine runs through the orbit; empty if nothing is.
+
+    `refuted` holds goals that were discharged before, such as those of a loop that two orbits share; what is
+    discharged here is added."""
+    refuted = set() if refuted is None else refuted
     effort.say("checking an orbit's certificate")
     singles = [step for step in orbit_steps(orbit) if not step.axes]
     faults = _wrong_steps(system, singles)
     for obligation in orbit_obligations(system, orbit):
-        if not discharge(obligation, effort):
+        if obligation.goal in refuted:
+            continue
+        if discharge(obligation, effort):
+            refuted.add(obligation.goal)
+        else:
             faults.append(obligation.name)
     return faults
 
@@ -235,8 +245,9 @@ def cover_faults(system: System, assumed: Expr, claim: CoverClaim, effort: Effor
     """What is wrong with a cover; empty if nothing is."""
     effort.say("checking a cover")
     faults: list[str] = []
+    refuted: set[Expr] = set()
     for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
-        faults += orbit_faults(system, run, effort)
+        faults += orbit_faults(system, run, effort, refuted)
         if not run.closed or recovery > claim.bound or not _good_from(run, recovery, claim):
             faults.append(f"an orbit that is not good after {recovery} half-cycles")
     if faults:

@@ -49,6 +49,11 @@ def trace(system: System, start: State, effort: Effort, known: Mapping[State, Pa
     return Orbit(path.joined(lead), path.joined(loop), search.widths)
 
 
+def onward(loop: Path) -> dict[State, Path]:
+    """For the state at each item of a loop, the loop from there on."""
+    return {path.first_state((item,)): (*loop[i:], *loop[:i]) for i, item in enumerate(loop)}
+
+
 Shape = tuple[object, ...]
 
 

@@ -195,7 +195,7 @@ def _steps(
     path: Sequence[Item], widths: Sequence[int], then: State | None, axes: tuple[tuple[int, State], ...]
 ) -> Iterator[Step]:
     for i, item in enumerate(path):
-        following = first_state(path[i + 1 :]) if i + 1 < len(path) else then
+        following = first_state(path[i + 1 : i + 2]) if i + 1 < len(path) else then
         if isinstance(item, Repeat):
             inner = (*axes, (item.times, item.stride))
             yield from _steps(item.body, widths, None, inner)

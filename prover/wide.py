@@ -49,8 +49,9 @@ PATIENCE = orbit.PATIENCE + 2
 DRAWN_BACK = 4
 """Times that a line is drawn out backwards."""
 
+ASKED_FIRST = 5
 REFINED = 12
-"""Times that the slowest line's time is asked about after the bound is known."""
+"""Times that the slowest line's time is asked about, before and after a bound is known."""
 
 MOST_PATHS = 48
 """Paths in a cover beyond which it is given up."""
@@ -314,8 +315,7 @@ class _Cover:
         if frozenset(run.loop) not in self.loops:
             run = replace(run, loop=shortened(run.loop, self.widths, 0))
             self.loops.add(frozenset(run.loop))
-            for i, item in enumerate(run.loop):
-                self.known.setdefault(path.first_state((item,)), (*run.loop[i:], *run.loop[:i]))
+            self.known = orbit.onward(run.loop) | self.known
         return run
 
     def _earliest(self, run: Orbit) -> Orbit:
@@ -375,6 +375,7 @@ class _Cover:
 
     def late_after(self, bound: int, early: bool) -> State | None:
         """A state that after `bound` half-cycles is not known to be good; `early` knows more of them, at a price."""
+        self.effort.say(f"following all states for {bound} half-cycles")
         clock = self.system.clock
         for level in (0, 1):
             fixed = {clock: e.const(level, 1)}
@@ -516,41 +517,60 @@ def cover(system: System, goal: Goal | None, assumed: Expr, seeds: Sequence[Stat
 def _by_unrolling(made: _Cover) -> Cover | None:
     """All states followed for as many half-cycles as the slowest one needs; None if that is too many.
 
-    Gallops up to a number after which all are where a line is good, and bisects down to the least such; then
-    asks whether the slowest line's own time would do where the output of the last few half-cycles counts too."""
-    if any((line.recovery or 0) > UNROLLED for line in made.lines):
-        return None
-    low, high, bound = -1, UNROLLED + 1, 0
+    First the slowest known line's time is asked about as it is. If that goes on being too short, a time after
+    which all are where a line is good is found by galloping and bisection, and then again the slowest line's
+    own time is asked about."""
+    found = _slowest_suffices(made, ASKED_FIRST)
+    if found is None and not _too_slow(made):
+        high = _least_time(made)
+        if high is not None:
+            found = _slowest_suffices(made, REFINED) or _without_start(made, high)
+    return made.lost() if any(line.recovery is None for line in made.lines) else found
+
+
+def _too_slow(made: _Cover) -> bool:
+    late = any(line.recovery is None or line.recovery > UNROLLED for line in made.lines)
+    return late or len(made.lines) >= MOST_PATHS
+
+
+def _slowest_suffices(made: _Cover, tries: int) -> Cover | None:
+    """The cover if every state is good after the time that the slowest line needs; each try adds a line."""
+    for _ in range(tries):
+        if _too_slow(made):
+            return None
+        slowest = max(made.lines, key=lambda line: line.recovery or 0, default=None)
+        worst = (slowest.recovery or 0) if slowest else 0
+        late = made.late_after(worst, early=True)
+        if late is None:
+            method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
+            return made.proved(worst, slowest, worst, EARLY, method)
+        # Either a slower state, or one that is good by then and was not known to be.
+        made.add(late)
+    return None
+
+
+def _least_time(made: _Cover) -> int | None:
+    """The least time after which every state is at a good place of a line; None if it is too long."""
+    low, high, bound = -1, UNROLLED + 1, 2
     while low + 1 < high:
-        made.effort.say(f"unrolling {bound} half-cycles from all states")
-        late = made.late_after(bound, early=bound == 0)
+        late = made.late_after(bound, early=False)
         if late is None:
             high = bound
         else:
-            line = made.add(late)
-            if line.recovery is None:
-                return made.lost()
-            if line.recovery > UNROLLED or len(made.lines) >= MOST_PATHS:
+            made.add(late)
+            if _too_slow(made) or bound >= UNROLLED:
                 return None
-            low = max(low, bound if bound > 0 else 0)
+            low = bound
         bound = min(2 * bound + 2, UNROLLED) if high > UNROLLED else (low + high) // 2
-        if low >= UNROLLED:
-            return None
-    for _ in range(REFINED):
-        slowest = max(made.lines, key=lambda line: line.recovery or 0)
-        worst = slowest.recovery or 0
-        late = None if worst >= high else made.late_after(worst, early=True)
-        if late is None:
-            break
-        # Either a slower state, or one that is good by then and was not known to be.
-        if made.add(late).recovery is None:
-            return made.lost()
-    else:
-        # The bound stays, without a start that needs it.
-        worst = high
-    exact = worst == slowest.recovery
-    method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
-    return made.proved(worst, slowest if exact else None, worst, EARLY, method)
+    return high
+
+
+def _without_start(made: _Cover, high: int) -> Cover | None:
+    """The bound as it is, without a start that needs it."""
+    if _too_slow(made):
+        return None
+    method = f"after {high} half-cycles every power-up state is on a known good run (solver)"
+    return made.proved(high, None, high, EARLY, method)
 
 
 def _by_lines(made: _Cover) -> Cover:

@@ -16,6 +16,7 @@ from prover.verilog.source import Source, printable
 MAX_WIDTH = 65_536
 MAX_CALL_DEPTH = 200
 MAX_NESTED = 30
+MAX_NOTES = 1_000
 
 
 def words(text: str) -> frozenset[str]:
@@ -50,7 +51,10 @@ class Report:
     def note(self, message: str, at: int | Any) -> None:
         """Remark once what is worth knowing at a node or an offset."""
         where = self.where(at)
-        self.notes.setdefault((message, where), Note(message, where))
+        if len(self.notes) == MAX_NOTES:
+            message = "more remarks are left out"
+        if len(self.notes) <= MAX_NOTES:
+            self.notes.setdefault((message, where), Note(message, where))
 
     def choice(self, width: int) -> Expr:
         """A value that may be anything."""

@@ -58,18 +58,23 @@ def printable(text: str) -> str:
 
 @dataclass(frozen=True, slots=True)
 class _File:
-    """A file that was read: its name as the user gave it, its text, and where its lines begin."""
+    """A file that was read: its name as the user gave it, its text, where its lines begin, and lines that
+    were shown before, because one line may hold all remarks."""
 
     name: str
     text: str
     lines: list[int]
+    shown: dict[int, str] = field(default_factory=dict)
 
     def where(self, offset: int) -> Where:
         line = bisect_right(self.lines, offset) - 1
         start = self.lines[line]
-        end = self.text.find("\n", start)
-        text = self.text[start : end if end >= 0 else len(self.text)]
-        return Where(printable(self.name), line + 1, offset - start + 1, printable(text.rstrip("\r")))
+        text = self.shown.get(line)
+        if text is None:
+            end = self.text.find("\n", start)
+            text = printable(self.text[start : end if end >= 0 else len(self.text)])
+            self.shown[line] = text
+        return Where(printable(self.name), line + 1, offset - start + 1, text)
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,0 +1,202 @@
+"""Every case of up to 12 register bits in the event simulator (Icarus Verilog), from every power-up state.
+
+Registers and output have to be System's at the end of each of 200 half-cycles, and the verdict's figures those that
+plain enumeration finds on the simulator's own map. Self-clearing loops have one unit of delay at the gates that the
+case names, because every simulator orders in its own way what it does at one moment.
+"""
+
+from __future__ import annotations
+
+import shlex
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+import pytest
+from agreement import brute, simulator
+from agreement.simulator import Bench, Reset, SimulatorError, Start
+from agreement.stepping import differences, power_up_states, simulated_registers
+from cases_format import Case, Group, cases
+
+from prover import cli
+from prover.api import check, read
+from prover.errors import UserError
+from prover.findings import Report
+from prover.ports import Ports
+from prover.spec import Spec
+from prover.system import State
+
+MOST_BITS = 12
+HALF_CYCLES = 200
+
+
+def spec_of(group: Group) -> Spec:
+    """The claim that the command line makes of the group's options."""
+    context = cli.check.make_context("check", ["case.v", *group.options])
+    files_apart = {name: value for name, value in context.params.items() if name not in ("files", "json_path")}
+    return cli._spec(files_apart)
+
+
+def register_bits(case: Case, group: Group) -> int:
+    try:
+        return read([case.path], spec_of(group)).state_bits
+    except UserError:
+        # It is the case's own test that fails, not the collection of all.
+        return 0
+
+
+def small(settles: bool) -> list[Any]:
+    """The groups with up to 12 register bits, of machines that settle or of those that don't."""
+    out = []
+    for case in cases():
+        for group in case.groups:
+            if group.error or (group.properties["settling"].verdicts == {"proved"}) != settles:
+                continue
+            if register_bits(case, group) <= MOST_BITS:
+                out.append(pytest.param(case, group, id=f"{case.name}: {shlex.join(group.options)}"))
+    return out
+
+
+SETTLING, UNSETTLED = small(True), small(False)
+
+
+def bench_of(case: Case, ports: Ports, spec: Spec) -> Bench:
+    return Bench(
+        sources=[case.path],
+        top=ports.design.top,
+        clock=ports.clock,
+        output=spec.output or ports.output,
+        registers=simulated_registers(ports.design),
+        holds=dict(ports.running.values),
+        parameters=spec.parameters,
+        delayed=case.delayed,
+        defines=spec.defines,
+        includes=[Path(folder) for folder in spec.include],
+    )
+
+
+def test_most_cases_are_small_enough() -> None:
+    stated = sum(not group.error for case in cases() for group in case.groups)
+    assert len(SETTLING) + len(UNSETTLED) > 0.8 * stated
+
+
+@pytest.mark.parametrize(("case", "group"), SETTLING)
+def test_the_simulator_steps_and_recovers_as_the_verdict_says(case: Case, group: Group) -> None:
+    spec = spec_of(group)
+    report = check([case.path], spec)
+    system = report.rhythm.system
+    assert not system.choices
+    states = power_up_states(system)
+    bench = bench_of(case, report.ports, spec)
+    told, step, output = differences(system, bench, states, HALF_CYCLES)
+    assert not told, "\n".join(told[:5])
+    assert set(step.values()) <= set(states)
+    compare_figures(report, brute.analyse(step, output, spec.period, spec.high_half_cycles))
+    if report.rhythm.scope != "any":
+        compare_starts(report, bench, states, step, output)
+
+
+def compare_figures(report: Report, found: brute.BruteResult[State]) -> None:
+    rhythm, recovery = report.rhythm, report.rhythm.recovery
+    assert rhythm.complete
+    ours = [(a.length, a.wave.period, a.wave.high, a.good) for a in rhythm.loops]
+    theirs = [(len(b.states), b.period_half_cycles, b.high_half_cycles, b.good) for b in found.loops]
+    assert sorted(ours, key=str) == sorted(theirs, key=str)
+    assert recovery is not None
+    assert recovery.worst == found.worst_half_cycles
+    assert recovery.illegal == (
+        None if recovery.illegal is None else sum(time != 0 for time in found.recovery_half_cycles.values())
+    )
+    if found.lost_states:
+        assert recovery.lost is not None
+        assert recovery.lost.start in found.lost_states
+    else:
+        assert recovery.exact
+        assert recovery.slowest is not None
+        assert found.recovery_half_cycles[recovery.slowest] == found.worst_half_cycles
+    verdicts = {finding.name: finding.verdict for finding in report.findings}
+    assert verdicts["no-stuck"] == ("refuted" if found.stuck else "proved")
+    within, worst = report.spec.within, found.worst_half_cycles
+    late = worst is None or (within is not None and worst > within)
+    assert verdicts["recovery"] == ("refuted" if late else "proved")
+    if rhythm.scope == "any":
+        period, high = report.spec.period, report.spec.high_half_cycles
+        gaps = all(rise_gaps(loop.wave) == {period} for loop in found.loops)
+        runs = all(high_runs(loop.wave) == {high} for loop in found.loops)
+        assert verdicts["ratio"] == ("proved" if gaps else "refuted")
+        assert verdicts["high-time"] == ("proved" if runs else "refuted")
+
+
+def rises(wave: tuple[int, ...]) -> list[int]:
+    return [i for i in range(len(wave)) if wave[i] == 1 and wave[i - 1] == 0]
+
+
+def rise_gaps(wave: tuple[int, ...]) -> set[int]:
+    """The gaps between neighbouring rises of an endlessly repeated wave."""
+    at = rises(wave)
+    return {(b - a - 1) % len(wave) + 1 for a, b in zip(at, at[1:] + at[:1], strict=True)}
+
+
+def high_runs(wave: tuple[int, ...]) -> set[int]:
+    """The lengths of its high runs."""
+    return {next(n for n in range(1, len(wave)) if not wave[(i + n) % len(wave)]) for i in rises(wave)}
+
+
+def compare_starts(
+    report: Report,
+    bench: Bench,
+    states: list[State],
+    step: Mapping[State, State],
+    output: Mapping[State, int],
+) -> None:
+    """The states that reset or initial values leave, and the waves from there, at both levels of the clock."""
+    rhythm, spec = report.rhythm, report.spec
+    first = initial_states(bench) if rhythm.scope == "initial" else released_states(report, bench, states)
+    assert {state[-1] for state in first} == {0, 1}
+    orbits = dict(zip((start.state for start in rhythm.starts), rhythm.orbits, strict=True))
+    assert first == set(orbits)
+    right = {"ratio": True, "high-time": True}
+    for state, orbit in orbits.items():
+        path = [state]
+        while len(path) < orbit.lead_half_cycles + 2 * orbit.loop_half_cycles:
+            path.append(step[path[-1]])
+        levels = [level for level, length in orbit.runs(rounds=2) for _ in range(length)]
+        assert levels == [output[at] for at in path]
+        (loop,) = brute.find_loops({at: step[at] for at in path})
+        round_ = brute.BruteLoop(loop, tuple(output[at] for at in loop), good=False)
+        wave = orbit.wave()
+        assert wave is not None
+        assert (wave.period, wave.high) == (round_.period_half_cycles, round_.high_half_cycles)
+        right["ratio"] &= rise_gaps(round_.wave) == {spec.period}
+        right["high-time"] &= high_runs(round_.wave) == {spec.high_half_cycles}
+    # None of the cases has a wrong pulse on the way from its start to its loop only.
+    for finding in report.findings:
+        if finding.name in right:
+            assert finding.verdict == ("proved" if right[finding.name] else "refuted")
+
+
+def initial_states(bench: Bench) -> set[State]:
+    return {(*simulator.run_initial(bench, clock, 0)[0].values, clock) for clock in (0, 1)}
+
+
+def released_states(report: Report, bench: Bench, states: list[State]) -> set[State]:
+    """The states just after reset was held for long enough, from every power-up state, and released."""
+    reset, held = report.ports.reset, report.rhythm.reset_half_cycles
+    assert reset is not None
+    assert held is not None
+    pulse = Reset(reset.port, reset.active, held + held % 2)
+    starts = [Start(state[:-1], state[-1]) for state in states]
+    runs = simulator.run(bench, starts, 0, pulse)
+    # After an even number of half-cycles the clock is where it began.
+    return {(*samples[0].values, start.clock) for start, samples in zip(starts, runs, strict=True)}
+
+
+@pytest.mark.parametrize(("case", "group"), UNSETTLED)
+def test_the_simulator_does_not_settle_either(case: Case, group: Group) -> None:
+    spec = spec_of(group)
+    report = check([case.path], spec)
+    found = report.rhythm.settling.unsettled
+    assert found is not None
+    bench = bench_of(case, report.ports, spec)
+    with pytest.raises(SimulatorError, match="took more than"):
+        simulator.run(bench, [Start(found.state[:-1], found.state[-1])], 2, timeout_seconds=3)
