@@ -6,7 +6,8 @@ from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 
 from prover.findings import Counterexample, Fact, Finding, Verdict
-from prover.rhythm import Orbit, Rhythm, Run
+from prover.path import Run
+from prover.rhythm import Orbit, Rhythm
 
 
 @dataclass(frozen=True, slots=True)

@@ -222,7 +222,10 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
 
     system = rhythm.system
     seeds = [orbit.start for orbit in rhythm.orbits]
-    found = wide.cover(system, goal, system.settled, [*seeds, *_corners(system)], effort)
+    starts = [*seeds, *_corners(system)]
+    found = wide.cover_in_stages(system, goal, starts, effort)
+    if found is None:
+        found = wide.cover(system, goal, system.settled, starts, effort)
     loops = _loops_of(rhythm, [line.orbit for line in found.lines], goal)
     methods = {**rhythm.methods, "power-up": found.method}
     rhythm = replace(rhythm, loops=loops, methods=methods)
@@ -234,11 +237,11 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     if lost is not None:
         why = rhythm.open or "the search ended with the first power-up state that never becomes good"
         return replace(rhythm, recovery=Recovery(None, False, lost=lost), stuck=stuck, open=why)
-    if found.claim is None:
+    if found.worst is None:
         why = f"{system.bits - 1} register bits: {found.why}"
         recovery = Recovery(None, False, open=why) if goal is not None else None
         return replace(rhythm, recovery=recovery, stuck=stuck, open=rhythm.open or why)
-    faults = certificate.cover_faults(system, system.settled, found.claim, effort)
+    faults = certificate.stage_faults(system, found.claims, found.worst, effort)
     if faults:
         raise InternalError(f"a cover's certificate fails: {'; '.join(faults[:3])}")
     worst = Recovery(found.worst, found.slowest is not None, found.slowest)

@@ -9,8 +9,8 @@ rank along each step from any other (a simulation relation onto the ideal divide
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping, Sequence, Set
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from prover import expr as e
@@ -19,7 +19,7 @@ from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
 from prover.rhythm import Orbit
-from prover.system import State, System
+from prover.system import State, System, settled_when
 
 if TYPE_CHECKING:
     import numpy as np
@@ -59,9 +59,7 @@ def discharge(obligation: Obligation, effort: Effort) -> bool:
 # -- orbits ------------------------------------------------------------------------------------------------
 
 
-def orbit_faults(
-    system: System, orbit: Orbit, effort: Effort, refuted: set[Expr] | None = None
-) -> list[str]:
+def orbit_faults(system: System, orbit: Orbit, effort: Effort, refuted: set[Expr] | None = None) -> list[str]:
     """What is wrong with the claim that the machine runs through the orbit; empty if nothing is.
 
     `refuted` holds goals that were discharged before, such as those of a loop that two orbits share; what is
@@ -239,6 +237,62 @@ class CoverClaim:
     bound: int
     period: int
     high: int
+
+
+@dataclass(frozen=True, slots=True)
+class Stage:
+    """A set of registers that depends on no other, and the claim that it is covered.
+
+    The claim of a stage is made for states in which the stage before it is on its loops."""
+
+    system: System
+    claim: CoverClaim
+
+
+def part(system: System, names: Set[str]) -> System:
+    """The machine of some registers (and the clock) that depend on no other; its output is of no interest."""
+    moment = system.moment()
+    settled = [settled_when([r], moment) for r in system.design.registers if r.name in names]
+    inner = [x for x in settled if {v.name for v in e.variables([x])} <= names]
+    return replace(
+        system,
+        variables=tuple(pair for pair in system.variables if pair[0] in names),
+        step=tuple(x for name, x in zip(system.names, system.step, strict=True) if name in names),
+        output=e.FALSE,
+        settled=e.conj(inner),
+    )
+
+
+def assumption(system: System, before: Stage | None) -> Expr:
+    """One bit: a power-up state in which the stage before is on one of its loops."""
+    if before is None:
+        return system.settled
+    state = [e.var(name, width) for name, width in before.system.variables]
+    loops = {frozenset(run.loop): run.loop for run in before.claim.orbits}
+    places = {(beat, axes) for loop in loops.values() for beat, axes, _, _ in _written(loop, 0, 0, ())}
+    on_loop = e.disj(_is_at(before.system, state, beat, axes) for beat, axes in sorted(places))
+    return e.bvand(system.settled, on_loop)
+
+
+def stage_faults(system: System, stages: Sequence[Stage], bound: int, effort: Effort) -> list[str]:
+    """What is wrong with the claim that every power-up state is good within the bound, stage after stage."""
+    if not stages or stages[-1].system.variables != system.variables:
+        return ["the last stage is not the whole machine"]
+    faults: list[str] = []
+    before: Stage | None = None
+    for stage in stages:
+        names = set(stage.system.names)
+        ours = system if stage is stages[-1] else part(system, names)
+        outside = {v.name for v in e.variables(ours.step) if not v.name.startswith("?")} - names
+        if outside or (before is not None and not set(before.system.names) <= names):
+            faults.append("a stage that depends on registers outside it")
+        if stage is not stages[-1] and stage.claim.period:
+            faults.append("a stage before the last that claims a wave")
+        faults += cover_faults(ours, assumption(ours, before), stage.claim, effort)
+        before = stage
+    if sum(stage.claim.bound for stage in stages) > bound:
+        faults.append("stages that take longer than the bound together")
+    return faults
 
 
 def cover_faults(system: System, assumed: Expr, claim: CoverClaim, effort: Effort) -> list[str]:

@@ -698,16 +698,15 @@ def _array_shift(op: str, a: np.ndarray, by: np.ndarray, width: int, kind: Any) 
     small = np.minimum(by, kind(width - 1))
     beyond = by >= kind(width)
     if op == "bvshl":
-        return np.where(beyond, kind(0), (a << small) & kind(_mask(width)))
+        return np.asarray(np.where(beyond, kind(0), (a << small) & kind(_mask(width))))
     shifted = a >> small
     if op == "bvlshr":
-        return np.where(beyond, kind(0), shifted)
+        return np.asarray(np.where(beyond, kind(0), shifted))
     negative = (a >> kind(width - 1)) == kind(1)
     # Ones move in from above: what a logical shift leaves zero is filled for negative words.
     filled = shifted | (kind(_mask(width)) ^ (kind(_mask(width)) >> small))
-    return np.where(
-        negative, np.where(beyond, kind(_mask(width)), filled), np.where(beyond, kind(0), shifted)
-    )
+    high = np.where(beyond, kind(_mask(width)), filled)
+    return np.asarray(np.where(negative, high, np.where(beyond, kind(0), shifted)))
 
 
 # -- z3 ----------------------------------------------------------------------------------------------------

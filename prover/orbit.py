@@ -15,6 +15,7 @@ state, and one that runs through more items than the effort allows is left open.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from itertools import pairwise
 
 from prover import expr as e
 from prover import path
@@ -156,7 +157,7 @@ class _Search:
         starts = [path.first_state(b) for b in blocks]
         strides = [
             tuple((y - x) & ((1 << w) - 1) for x, y, w in zip(a, b, self.widths, strict=True))
-            for a, b in zip(starts, starts[1:], strict=False)
+            for a, b in pairwise(starts)
         ]
         if strides[0] != strides[1] or not any(strides[0]):
             return None
@@ -177,7 +178,8 @@ def least_break(system: System, block: Repeat, effort: Effort, then: State | Non
     """The greatest number of rounds for which the block surely repeats, or until it returns to its start.
 
     A round is broken if a step in it is not as in the first, moved by the stride, or leads elsewhere than to
-    the next round, which is `then` away (the stride itself unless given). Asks for any broken round, then for an earlier one, halving the range as it goes."""
+    the next round, which is `then` away (the stride itself unless given). Asks for any broken round, then for an
+    earlier one, halving the range as it goes."""
     import z3
 
     widths = tuple(width for _, width in system.variables)

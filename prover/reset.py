@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
+from prover.expr import Expr
 from prover.rhythm import Start
 from prover.solve import constant
 from prover.system import Inputs, Moment, State, System, change_inputs, clock_edge
@@ -41,34 +42,56 @@ def hold(design: Design, clock: str, active: Inputs, effort: Effort) -> Held:
     """Hold reset at its active value from every state, until what can become known is known."""
     effort.say("holding reset")
     limit = 2 * len(design.registers) + 8
-    longest = 4 * len(design.registers) + 8
+    names = [*(r.name for r in design.registers), clock]
+    found: set[State] = set()
+    unforced: list[str] = []
+    longest = 0
+    # What the first edge is makes a difference: a register on the other edge may have to wait for it once more.
+    for level in (e.FALSE, e.TRUE):
+        count, moment = _known_after(design, clock, active, level, limit, effort)
+        unknown = e.variables([moment[name] for name in names])
+        unforced += [name for name in names if e.variables([moment[name]]) and name not in unforced]
+        longest = max(longest, count)
+        if sum(v.width for v in unknown) > MOST_UNKNOWN_BITS:
+            return Held(longest, (), tuple(unforced), f"reset never forces {', '.join(unforced)}")
+        for filled in _fillings(moment):
+            states = _round(design, clock, filled, names, limit, effort)
+            if not states:
+                return Held(longest, (), tuple(unforced), "the registers run on while reset is held")
+            found |= set(states)
+    return Held(longest, tuple(sorted(found)), tuple(unforced))
+
+
+def _known_after(
+    design: Design, clock: str, active: Inputs, level: Expr, limit: int, effort: Effort
+) -> tuple[int, Moment]:
+    """Half-cycles of reset, begun at that level of the clock, after which all is known or no more will be; and what
+    the registers are then."""
     names = [*(r.name for r in design.registers), clock]
     moment: Moment = {r.name: e.var(r.name, r.width) for r in design.registers}
-    moment |= active.moment(design.inputs) | {clock: e.FALSE}
-    moment = change_inputs(design, clock, moment, active, limit)
+    moment |= active.moment(design.inputs) | {clock: level}
+    moment = _fresh_choices(change_inputs(design, clock, moment, active, limit), f"{level.value}")
+    longest = 4 * len(design.registers) + 8
     for count in range(longest):
         for name in names:
             known = constant(moment[name])
             if known is not None:
                 moment[name] = e.const(known, moment[name].width)
-        unknown = e.variables([moment[name] for name in names])
-        if not unknown:
-            states = _round(design, clock, moment, names, limit, effort)
-            return (
-                Held(count, states, ())
-                if states
-                else Held(count, (), (), "the registers run on while reset is held")
-            )
-        moment = clock_edge(design, clock, moment, limit)
+        if not e.variables([moment[name] for name in names]):
+            return count, moment
+        moment = _fresh_choices(clock_edge(design, clock, moment, limit), f"{level.value}.{count}")
         effort.check()
-    unforced = tuple(name for name in names if e.variables([moment[name]]))
-    bits = sum(v.width for v in e.variables([moment[name] for name in names]))
-    if bits > MOST_UNKNOWN_BITS:
-        return Held(longest, (), unforced, f"reset never forces {', '.join(unforced)}")
-    found: set[State] = set()
-    for filled in _fillings(moment):
-        found |= set(_round(design, clock, filled, names, limit, effort))
-    return Held(longest, tuple(sorted(found)), unforced)
+    return longest, moment
+
+
+def _fresh_choices(moment: Moment, label: str) -> Moment:
+    """The moment with the choices that came in since the last call named anew: x is another value every time."""
+    new = {
+        v.name: e.var(f"{v.name}#{label}", v.width)
+        for v in e.variables(list(moment.values()))
+        if v.name.startswith("?") and "#" not in v.name
+    }
+    return dict(zip(moment, e.substitute(list(moment.values()), new), strict=True)) if new else moment
 
 
 def _fillings(moment: Moment) -> Iterator[Moment]:

@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 from prover import expr as e
 from prover.design import Design, Register
@@ -198,7 +199,7 @@ def _release_race(
     """An edge that comes with the release of the register's own clear, and would change what it holds."""
     if not register.edges or not register.forces:
         return None
-    for then, now in zip(moments, moments[1:], strict=False):
+    for then, now in pairwise(moments):
         was = e.disj(e.substitute([f.when for f in register.forces], then))
         still = e.disj(e.substitute([f.when for f in register.forces], now))
         released = e.bvand(was, e.bvnot(still))
@@ -221,7 +222,7 @@ def _release_race(
 def _hold_race(system: System, moments: Sequence[Moment], register: Register, effort: Effort) -> Race | None:
     """A derived clock that samples data which the same input edge has already changed."""
     launch = moments[1]
-    for then, now in zip(moments[1:], moments[2:], strict=False):
+    for then, now in pairwise(moments[1:]):
         for edge in register.edges:
             (low,) = e.substitute([edge.clock], then)
             high, data = e.substitute([edge.clock, edge.data], now)
@@ -248,7 +249,7 @@ def _pulse(system: System, moments: Sequence[Moment], register: Register, effort
         inputs = [v for v in e.variables([net]) if v.name in system.names]
         if len(inputs) < 2 and all(v.width == 1 for v in inputs):
             continue
-        for then, now in zip(moments, moments[1:], strict=False):
+        for then, now in pairwise(moments):
             model = find(e.bvand(_hazard(net, inputs, then, now, is_clock), system.settled), effort)
             if model is None:
                 continue

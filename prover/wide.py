@@ -20,7 +20,7 @@ the same beat moves.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import accumulate
 
@@ -32,9 +32,9 @@ from prover.expr import Expr
 from prover.path import Beat, Item, Path, Repeat
 from prover.rhythm import Goal, Orbit
 from prover.solve import find
-from prover.system import State, System
+from prover.system import State, System, project
 
-MERGE = 6
+MERGE = 4
 """Half-cycles within which a state has to join a path."""
 
 UNROLLED = 320
@@ -52,6 +52,9 @@ DRAWN_BACK = 4
 ASKED_FIRST = 5
 REFINED = 12
 """Times that the slowest line's time is asked about, before and after a bound is known."""
+
+COUNTER = 4
+"""Bits of registers that depend on one another from which they make a stage of their own."""
 
 MOST_PATHS = 48
 """Paths in a cover beyond which it is given up."""
@@ -72,7 +75,7 @@ class Cover:
     lines   the orbits traced; together they meet every power-up state if `complete`
     worst   half-cycles within which every state recovers, None if some line never does or not complete
     slowest a start state that needs exactly `worst`, None if the bound may not be exact
-    claim   what `certificate` has to check, None where it isn't complete
+    claims  what `certificate` has to check, a claim a stage; empty where it isn't complete
     why     what is missing where it isn't complete
     method  in words
     """
@@ -81,7 +84,7 @@ class Cover:
     complete: bool
     worst: int | None
     slowest: State | None
-    claim: certificate.CoverClaim | None
+    claims: tuple[certificate.Stage, ...]
     why: str
     method: str
 
@@ -122,7 +125,7 @@ def _two_rounds(run: Orbit) -> Iterator[path.Run]:
 
 
 def first_rise(run: Orbit) -> int:
-    """A half-cycle of the loop, counted from the start and at least the lead-in's length, at which the output rises."""
+    """A half-cycle at which the output rises, counted from the start and no earlier than the loop's entry."""
     at, lead = 0, run.lead_half_cycles
     for index, (level, size) in enumerate(path.merged([*path.pieces(run.lead), *_two_rounds(run)])):
         if level == 1 and index > 0 and at >= lead:
@@ -452,10 +455,10 @@ class _Cover:
 
     def lost(self) -> Cover:
         why = "a state that never becomes good"
-        return Cover(tuple(self.lines), False, None, None, None, why, "path of a lost state")
+        return Cover(tuple(self.lines), False, None, None, (), why, "path of a lost state")
 
     def given_up(self, why: str) -> Cover:
-        return Cover(tuple(self.lines), False, None, None, None, why, "")
+        return Cover(tuple(self.lines), False, None, None, (), why, "")
 
     def proved(
         self, worst: int, slowest: Line | None, unrolled: int | None, merge: int, method: str
@@ -471,7 +474,8 @@ class _Cover:
             high=self.goal.high if self.goal else 0,
         )
         start = slowest.orbit.start if slowest else None
-        return Cover(tuple(self.lines), True, worst, start, claim, "", method)
+        claims = (certificate.Stage(self.system, claim),)
+        return Cover(tuple(self.lines), True, worst, start, claims, "", method)
 
     def _claimed(self, run: Orbit, phases: bool) -> Orbit:
         """The orbit as the claim writes it: cycles drawn into repeats, the first rounds of the loop's written out."""
@@ -512,6 +516,110 @@ def cover(system: System, goal: Goal | None, assumed: Expr, seeds: Sequence[Stat
         return found if found is not None else _by_lines(made)
     except OutOfEffort as out:
         return made.given_up(str(out))
+
+
+# -- stages ------------------------------------------------------------------------------------------------
+
+
+def cover_in_stages(
+    system: System, goal: Goal | None, seeds: Sequence[State], effort: Effort
+) -> Cover | None:
+    """The cover of a cascade, stage by stage; None if the registers do not fall into several stages."""
+    parts = stages(system)
+    if len(parts) < 2:
+        return None
+    claims: list[certificate.Stage] = []
+    slowest: dict[str, int] = {}
+    total, exact = 0, True
+    for names in parts:
+        last = names is parts[-1]
+        stage = system if last else certificate.part(system, names)
+        assumed = certificate.assumption(stage, claims[-1] if claims else None)
+        starts = [project(system, seed, stage) for seed in seeds]
+        found = cover(stage, goal if last else None, assumed, starts, effort)
+        if not found.claims or found.worst is None:
+            return found if last else None
+        claims += found.claims
+        total += found.worst
+        exact = exact and found.slowest is not None
+        if found.slowest is not None:
+            slowest = dict(zip(stage.names, found.slowest, strict=True)) | slowest
+    method = (
+        f"{len(parts)} stages of registers, each covered with those before it on their loops: {found.method}"
+    )
+    start = _start_that_needs(system, goal, slowest, total, effort) if exact else None
+    return Cover(found.lines, True, total, start, tuple(claims), "", method)
+
+
+def _start_that_needs(
+    system: System, goal: Goal | None, values: dict[str, int], total: int, effort: Effort
+) -> State | None:
+    """The state with those values, if it really needs that long."""
+    start = tuple(values[name] for name in system.names)
+    if goal is None or not _holds(system, system.settled, start):
+        return None
+    run = orbit.trace(system, start, effort)
+    if not run.closed or certificate.orbit_faults(system, run, effort):
+        return None
+    return start if recovery_on(run, goal.period, goal.high) == total else None
+
+
+def stages(system: System) -> list[set[str]]:
+    """Growing sets of registers, none of which depends on others: a new one for each counter that is added.
+
+    The registers that depend on one another (the strongly connected components of the dependency graph) stay
+    together; small ones are added with the next counter, the rest last."""
+    needs = {
+        name: [v.name for v in e.variables([step]) if not v.name.startswith("?")]
+        for name, step in zip(system.names, system.step, strict=True)
+    }
+    widths = dict(system.variables)
+    out: list[set[str]] = []
+    taken: set[str] = {system.clock}
+    for component in components(needs):
+        taken |= set(component)
+        if sum(widths[name] for name in component) >= COUNTER:
+            out.append(set(taken))
+    if out:
+        out[-1] = set(system.names)
+    return out
+
+
+def components(needs: Mapping[str, Sequence[str]]) -> list[list[str]]:
+    """Strongly connected components, those needed before those that need them (Tarjan 1972, without recursion)."""
+    index: dict[str, int] = {}
+    low: dict[str, int] = {}
+    stack: list[str] = []
+    on_stack: set[str] = set()
+    out: list[list[str]] = []
+    for root in needs:
+        if root in index:
+            continue
+        work = [(root, iter(needs[root]))]
+        index[root] = low[root] = len(index)
+        stack.append(root)
+        on_stack.add(root)
+        while work:
+            name, rest = work[-1]
+            for other in rest:
+                if other not in index:
+                    index[other] = low[other] = len(index)
+                    stack.append(other)
+                    on_stack.add(other)
+                    work.append((other, iter(needs[other])))
+                    break
+                if other in on_stack:
+                    low[name] = min(low[name], index[other])
+            else:
+                work.pop()
+                if work:
+                    low[work[-1][0]] = min(low[work[-1][0]], low[name])
+                if low[name] == index[name]:
+                    at = stack.index(name)
+                    out.append(stack[at:])
+                    on_stack -= set(stack[at:])
+                    del stack[at:]
+    return out
 
 
 def _by_unrolling(made: _Cover) -> Cover | None:

@@ -98,7 +98,9 @@ def read_case(path: Path) -> Case:
         raise FormatError(f"{path}: no check line")
     for group in groups:
         if bool(group.error) == bool(group.verdicts):
-            raise FormatError(f"{path}: check {shlex.join(group.options)}: a verdict or an error, one of the two")
+            raise FormatError(
+                f"{path}: check {shlex.join(group.options)}: a verdict or an error, one of the two"
+            )
     return Case(path, " ".join(prose), tuple(delayed), tuple(groups))
 
 

@@ -11,7 +11,7 @@ from prover.errors import Where
 from prover.expr import Expr
 
 HERE = Where("random.v", 1)
-SAME = ["bvand", "bvor", "bvxor", "bvadd", "bvsub", "bvmul"]
+SAME = [e.bvand, e.bvor, e.bvxor, e.bvadd, e.bvsub, e.bvmul]
 OTHER = ["bvudiv", "bvurem", "bvsdiv", "bvsrem", "bvshl", "bvlshr", "bvashr"]
 
 
@@ -28,7 +28,7 @@ def random_expression(rng: random.Random, leaves: Sequence[Expr], width: int, de
         if kind == 0:
             return rng.choice([e.bvnot, e.bvneg])(make(wanted, left - 1))
         if kind in (1, 2):
-            operator = getattr(e, rng.choice(SAME))
+            operator = rng.choice(SAME)
             return operator(make(wanted, left - 1), make(wanted, left - 1))
         if kind == 3:
             return e.binary(rng.choice(OTHER), make(wanted, left - 1), make(wanted, left - 1))
@@ -69,7 +69,7 @@ def random_design(rng: random.Random, bits: int) -> Design:
         if rng.random() < 0.4:
             net = e.bvnot(net)
         data = _data(rng, held, registers, width)
-        forces = ()
+        forces: tuple[Force, ...] = ()
         if rng.random() < 0.15:
             forces = (
                 Force(random_expression(rng, registers, 1, 2), e.const(rng.getrandbits(width), width), HERE),

@@ -91,6 +91,8 @@ def cascade(width: int, depth: int, limit: int) -> Design:
     for i, count in enumerate(counts):
         wraps = e.eq(count, last)
         following = e.ite(wraps, e.const(0, width), e.bvadd(count, e.const(1, width)))
-        registers.append(flop(f"count{i}", width, CLOCK, e.ite(RESET, e.const(0, width), e.ite(ticks, following, count))))
+        registers.append(
+            flop(f"count{i}", width, CLOCK, e.ite(RESET, e.const(0, width), e.ite(ticks, following, count)))
+        )
         ticks = e.bvand(ticks, wraps)
     return design(registers, e.bvult(e.const(limit // 2, width), counts[-1]), ("clk", "rst"))

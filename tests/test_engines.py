@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import random
-from itertools import product
 from fractions import Fraction
+from itertools import product
 
 import pytest
 from agreement import brute as enumeration

@@ -129,14 +129,26 @@ def test_memory_words(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("base", "power", "expected"),
     # Clause 5.1.5, table 5-6; 0 to a negative power is x.
-    [(2, 10, 1024), (0, 0, 1), (5, 0, 1), (1, -4, 1), (-1, -3, -1), (-1, -2, 1), (7, -1, 0), (-2, 3, -8), (0, -1, None)],
+    [
+        (2, 10, 1024),
+        (0, 0, 1),
+        (5, 0, 1),
+        (1, -4, 1),
+        (-1, -3, -1),
+        (-1, -2, 1),
+        (7, -1, 0),
+        (-2, 3, -8),
+        (0, -1, None),
+    ],
 )
 def test_power_of_constants(tmp_path: Path, base: int, power: int, expected: int | None) -> None:
     found = outcomes(design(tmp_path, f"assign y = ({base}) ** ({power});", 32))
     assert found == {expected & 2**32 - 1} if expected is not None else len(found) > 1
 
 
-@pytest.mark.parametrize(("number", "expected"), [(0, 0), (1, 0), (2, 1), (3, 2), (4, 2), (5, 3), (256, 8), (257, 9)])
+@pytest.mark.parametrize(
+    ("number", "expected"), [(0, 0), (1, 0), (2, 1), (3, 2), (4, 2), (5, 3), (256, 8), (257, 9)]
+)
 def test_clog2(tmp_path: Path, number: int, expected: int) -> None:
     assert outcomes(design(tmp_path, f"assign y = $clog2({number});")) == {expected}, "clause 17.11.1"
 
@@ -145,8 +157,14 @@ def test_clog2(tmp_path: Path, number: int, expected: int) -> None:
     ("body", "values"),
     [
         # The wild cards of clause 9.5.1, label by label.
-        ("casez (a) 8'b1???_????: p = 1; 8'b01zz_zzzz: p = 2; default: p = 3; endcase", {0x80: 1, 0x7F: 2, 0x3F: 3}),
-        ("casex (a) 8'b1xxx_xxxx: p = 1; 8'b0000_000?: p = 2; default: p = 3; endcase", {0xFF: 1, 1: 2, 2: 3}),
+        (
+            "casez (a) 8'b1???_????: p = 1; 8'b01zz_zzzz: p = 2; default: p = 3; endcase",
+            {0x80: 1, 0x7F: 2, 0x3F: 3},
+        ),
+        (
+            "casex (a) 8'b1xxx_xxxx: p = 1; 8'b0000_000?: p = 2; default: p = 3; endcase",
+            {0xFF: 1, 1: 2, 2: 3},
+        ),
         ("case (a) 8'b1xxx_xxxx: p = 1; 8'h80: p = 2; default: p = 3; endcase", {0x80: 2, 0xFF: 3}),
         ("casez (a) 8'b1xxx_xxxx: p = 1; default: p = 3; endcase", {0x80: 3}),
         ("case (1'b1) a[0]: p = 1; a[1]: p = 2; default: p = 3; endcase", {1: 1, 2: 2, 3: 1, 4: 3}),
@@ -169,7 +187,10 @@ def test_division_by_zero_is_any_value_and_nothing_else_is(tmp_path: Path) -> No
 @pytest.mark.parametrize(
     ("body", "message"),
     [
-        ("reg [2:0] p; always @(posedge clk) p <= 8; assign y = p;", "constant 8 is cut to 3 bits and becomes 0"),
+        (
+            "reg [2:0] p; always @(posedge clk) p <= 8; assign y = p;",
+            "constant 8 is cut to 3 bits and becomes 0",
+        ),
         ("assign y = 3'd9;", "3'd9 doesn't fit its size and becomes 1"),
         ("assign y = a == 300;", "never holds"),
         ("assign y = i > 15;", "never holds"),

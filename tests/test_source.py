@@ -34,14 +34,14 @@ def expanded(tmp_path: Path, text: str | bytes, **options: object) -> str:
         ("`define TWO one \\\n two\n`TWO", "one two"),
         ("`define F(x) `G(x)\n`define G(x) <x>\n`F(`F(1))", "< < 1 > >"),
         ("`define CAT(x) r_``x\n`CAT(q)", "r_q"),
-        ("`define S(x) \"x\" x\n`S(1)", '"x" 1'),
+        ('`define S(x) "x" x\n`S(1)', '"x" 1'),
         ("`define N 5\n`undef N\n`ifdef N\nyes\n`else\nno\n`endif", "no"),
         ("`ifdef A\na\n`elsif B\nb\n`else\nc\n`endif", "b"),
         ("`ifndef A\na\n`ifdef B\nb\n`endif\n`endif", "a b"),
         ("`ifdef A\n`ifdef B\nx\n`else\ny\n`endif\n`NOT_DEFINED\n`endif z", "z"),
         ("`timescale 1ns / 10ps\nmodule m;", "module m;"),
         ("`timescale 1ns/1ps module m;", "module m;"),
-        ("`celldefine\nx\n`endcelldefine\n`resetall\n`line 3 \"f\" 0\ny", "x y"),
+        ('`celldefine\nx\n`endcelldefine\n`resetall\n`line 3 "f" 0\ny', "x y"),
         ('"// no comment" x', '"// no comment" x'),
         ('"a \\" // b" x', '"a \\" // b" x'),
         ("\\a//b x", "\\a//b x"),
@@ -89,7 +89,9 @@ def test_digest_ignores_comments_and_layout_only(tmp_path: Path) -> None:
 
 
 def test_default_net_type_by_place(tmp_path: Path) -> None:
-    made = source(tmp_path, "a\n`default_nettype none\nb\n`default_nettype wire\nc\n`default_nettype none\n`resetall\nd")
+    made = source(
+        tmp_path, "a\n`default_nettype none\nb\n`default_nettype wire\nc\n`default_nettype none\n`resetall\nd"
+    )
     assert [made.net_type(made.text.index(x)) for x in "abcd"] == ["wire", "none", "wire", "wire"]
 
 
@@ -107,10 +109,10 @@ def test_default_net_type_by_place(tmp_path: Path) -> None:
         ("`define F(x) x\n`F(1", 2, "never ends"),
         ("`define F(x) x\n`F(1, 2)", 2, "takes 1 arguments"),
         ("`define A `B\n`define B `A\n`A", 3, "expands to itself"),
-        ("`include \"nothing.vh\"", 1, "no such file"),
-        ("`include \"/etc/passwd\"", 1, "absolute path"),
-        ("`include \"../outside.vh\"", 1, "outside the folders"),
-        ("`include \"main.v\"", 1, "includes itself"),
+        ('`include "nothing.vh"', 1, "no such file"),
+        ('`include "/etc/passwd"', 1, "absolute path"),
+        ('`include "../outside.vh"', 1, "outside the folders"),
+        ('`include "main.v"', 1, "includes itself"),
         ("// synthesis translate_off\n", 1, "without translate_on"),
         ("`define define x", 1, "can't be defined"),
     ],
@@ -152,7 +154,7 @@ def test_missing_file_and_folder(tmp_path: Path) -> None:
     ids=["doubling", "empty", "arguments", "deep"],
 )
 def test_macro_bombs_end_in_an_error(tmp_path: Path, text: str) -> None:
-    with pytest.raises(UserError, match="without measure|too deeply"):
+    with pytest.raises(UserError, match=r"without measure|too deeply"):
         source(tmp_path, text)
 
 

@@ -131,9 +131,7 @@ def _from(rhythm: Rhythm) -> str:
     if rhythm.scope == "initial":
         return "from the declared initial values"
     held = rhythm.reset_half_cycles
-    return "from reset" + (
-        f" held for {held} half-cycle{'s' * (held != 1)} or longer" if held else ""
-    )
+    return "from reset" + (f" held for {held} half-cycle{'s' * (held != 1)} or longer" if held else "")
 
 
 # -- what was found ----------------------------------------------------------------------------------------

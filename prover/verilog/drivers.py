@@ -24,7 +24,7 @@ from prover.verilog.words import Replacer, Search, cut, joined, reads, runs
 UNDRIVEN = "?undriven "
 # Wider vectors aren't looked at bit by bit for circles, and more circles than this are no divider.
 MAX_SPLIT = 256
-MAX_LOOPS = 2_000
+MAX_LOOPS = 200
 
 
 @dataclass(slots=True, eq=False)
@@ -249,14 +249,11 @@ class Drivers:
     def _kept(self, circle: list[str]) -> list[str]:
         """Slices whose removal leaves no circle: the busiest first, until none is left."""
         edges = self._edges()
+        rank = {name: i for i, name in enumerate(self.named)}
         # A wire that reads itself is a circle by itself.
-        kept = sorted(name for name in circle if name in edges[name])
-        pending = [circle]
-        if kept:
-            rest = set(circle) - set(kept)
-            pending = strongly_connected(
-                {name: [o for o in edges[name] if o in rest] for name in sorted(rest)}
-            )
+        kept = sorted((name for name in circle if name in edges[name]), key=rank.__getitem__)
+        rest = set(circle) - set(kept)
+        pending = strongly_connected({name: [o for o in edges[name] if o in rest] for name in sorted(rest)})
         for name in kept:
             self._remark_loop([name, name])
         while pending:
@@ -266,7 +263,7 @@ class Drivers:
             for others in inner.values():
                 for other in others:
                     into[other] += 1
-            choice = max(sorted(inner), key=lambda name: into[name] * len(inner[name]))
+            choice = max(inner, key=lambda name: (into[name] * len(inner[name]), -rank[name]))
             kept.append(choice)
             if len(kept) > MAX_LOOPS:
                 driver = self.named[choice].driver
@@ -346,7 +343,9 @@ class Drivers:
         """A clock that is plainly a signal must not be its own register's data (the value would race)."""
         signal = clock.args[0] if clock.op == "bvnot" else clock
         variable = signal.args[0] if signal.op == "extract" else signal
-        if variable.op != "var" or variable.name == part.name:
+        # A primitive's table says itself what an edge of any of its inputs does.
+        primitive = part.driver is not None and not part.driver.block
+        if variable.op != "var" or variable.name == part.name or primitive:
             return
         mask = reads([signal]).get(variable.name, 0)
         search = self.searches.setdefault((variable, mask), Search(variable, mask))

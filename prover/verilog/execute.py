@@ -22,7 +22,7 @@ from prover.verilog.sizing import Place, Sizer, constant, write_part, written_ma
 from prover.verilog.source import printable
 from prover.verilog.words import cut
 
-MAX_STEPS = 30_000
+MAX_STEPS = 20_000
 MAX_ROUNDS = 10_000
 
 _SILENT = words(

@@ -22,7 +22,7 @@ from prover.verilog.source import printable
 
 MAX_DEPTH = 64
 MAX_BLOCKS = 200
-MAX_SCOPES = 20_000
+MAX_SCOPES = 10_000
 
 
 @dataclass(slots=True, frozen=True)

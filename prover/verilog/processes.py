@@ -231,10 +231,8 @@ class Processes:
                 word = e.ite(busy, net.value, word)
             edges = []
             for event in clock:
-                if len(clock) == 2:
-                    sampled = replace([word], {event.base: e.const(event.level, 1)})[0]
-                else:
-                    sampled = word
+                after = {event.base: e.const(event.level, 1)} if len(clock) == 2 else {}
+                sampled = replace([word], after)[0]
                 edges.append(Edge(_active(event), sampled))
             out.append(Driver(net, mask, at, None, tuple(edges), forces, False, blocking, keeps))
         return out

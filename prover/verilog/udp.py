@@ -19,6 +19,7 @@ from prover.verilog.deep import run
 from prover.verilog.names import Net, Report
 from prover.verilog.processes import Driver
 from prover.verilog.sizing import Place, Sizer
+from prover.verilog.words import replace
 
 if TYPE_CHECKING:
     from prover.verilog.hierarchy import Primitive
@@ -162,15 +163,14 @@ def _sequential(
     edges = []
     for i, word in enumerate(inputs):
         for after in "01":
-            # While a level row matches it decides, whatever edge came (clause 8.6).
             data = report.choice(1)
             for row in reversed(read):
-                if row.edge is None:
-                    data = e.ite(_matches(row, inputs, state), _value(report, row, state), data)
-                elif row.edge == i and after in row.inputs[i][1] and "10"[int(after)] in row.inputs[i][0]:
+                if row.edge == i and after in row.inputs[i][1] and "10"[int(after)] in row.inputs[i][0]:
                     data = e.ite(_matches(row, inputs, state, i), _value(report, row, state), data)
+            # While a level row matches it decides, whatever edge came (clause 8.6): its force wins.
             for row in levels:
-                data = e.ite(_matches(row, inputs, state), _value(report, row, state), data)
+                data = e.ite(_matches(row, inputs, state), state, data)
+            data = replace([data], {} if word.is_const else {word: e.const(int(after), 1)})[0]
             if data is not state:
                 edges.append(Edge(word if after == "1" else e.bvnot(word), placed(data)))
     elaboration.drivers.add(Driver(net, 1 << low, primitive.at, None, tuple(edges), forces))

@@ -50,7 +50,9 @@ def power_up_states(system: System) -> list[State]:
     return [s for s in product(*(range(1 << w) for _, w in system.variables)) if settled(*s) == (1,)]
 
 
-def differences(system: System, bench: Bench, states: Sequence[State], half_cycles: int) -> tuple[list[str], Map, dict[State, int]]:
+def differences(
+    system: System, bench: Bench, states: Sequence[State], half_cycles: int
+) -> tuple[list[str], Map, dict[State, int]]:
     """Where System and the simulator part ways, a line for each start that does, with the simulator's own map of the
     start states: each to the next, and to the output. Registers and output are compared at the end of the half-cycle
     of the start and of each of the `half_cycles` after it."""
@@ -69,7 +71,9 @@ def differences(system: System, bench: Bench, states: Sequence[State], half_cycl
     return told, step, output
 
 
-def _difference(system: System, known: dict[State, tuple[State, int]], start: State, samples: Sequence[Sample]) -> str:
+def _difference(
+    system: System, known: dict[State, tuple[State, int]], start: State, samples: Sequence[Sample]
+) -> str:
     at = start
     for half_cycle, sample in enumerate(samples):
         if at not in known:

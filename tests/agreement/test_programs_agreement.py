@@ -133,7 +133,8 @@ class Program:
         outputs = ", ".join(f"o_{n}" for n in [*self.regs, *wires])
         ports = "".join(f"  output [15:0] o_{n};\n  assign o_{n} = {n};\n" for n in [*self.regs, *wires])
         return (
-            f"module {self.name}(clk, rst, {outputs});\n  input clk, rst;\n{regs}{temps}{nets}  reg [2:0] k = 0, kk;\n"
+            f"module {self.name}(clk, rst, {outputs});\n  input clk, rst;\n{regs}{temps}{nets}"
+            "  reg [2:0] k = 0, kk;\n"
             f"{ports}{function}{clocked}  always @* begin kk = 2; {' '.join(combinational)} end\nendmodule\n"
         )
 
@@ -189,7 +190,7 @@ def check(tmp_path: Path, seeds: range) -> None:
         listed = ", ".join(f"{p.name}_{o}" for o in outputs)
         prints[p.name] = f'$display("{" ".join(["%0d"] * len(outputs))}", {listed});'
     show = " ".join(prints.values())
-    lines.append("  initial for (c = 0; c < %d; c = c + 1) begin" % CYCLES)
+    lines.append(f"  initial for (c = 0; c < {CYCLES}; c = c + 1) begin")
     lines.append("    clk = 0; high = c == 5 || c == 6; low = !high; #1;")
     lines.append(f"    {show} clk = 1; #1; {show} end")
     lines.append("endmodule")

@@ -66,9 +66,9 @@ def _outcomes(tmp_path: Path, width: int, text: str) -> set[int]:
     """Every value that the reading allows, choices set to all zeros, all ones and something else."""
     source = tmp_path / "row.v"
     source.write_text(
-        "module row(input clk, output [%d:0] y);\n"
+        f"module row(input clk, output [{width - 1}:0] y);\n"
         "  wire [3:0] a4 = 15, b4 = 1, u4 = 2; wire [1:0] u2 = 2; wire [2:0] idx = 5;\n"
-        "  wire signed [3:0] s4 = -3;\n  assign y = %s;\nendmodule\n" % (width - 1, text)
+        f"  wire signed [3:0] s4 = -3;\n  assign y = {text};\nendmodule\n"
     )
     value = read_design([source]).signals["y"].value
     names = [v.name for v in variables([value])]
