@@ -27,6 +27,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     """Everything the engines find out about the divider within the effort."""
     design = ports.design
     system, settling = settle(design, ports.clock, ports.running, ports.output_value, effort)
+    settling = _checked(settling, effort)
     scope, starts, held = _starts(ports, spec, system, settling, effort)
     if settling.depth is None:
         why = settling.open or "the micro-steps do not settle"
@@ -57,6 +58,17 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         return _with_power_up(rhythm, system, goal, effort)
     except OutOfEffort as out:
         return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
+
+
+def _checked(settling: Settling, effort: Effort) -> Settling:
+    """The micro-steps' bound and the absence of races, with each of their questions asked again from its text."""
+    try:
+        for number, goal in enumerate(settling.goals):
+            if not certificate.discharge(certificate.Obligation(f"micro-steps {number}", goal), effort):
+                raise InternalError("a bound on the micro-steps fails its check")
+    except OutOfEffort as out:
+        return replace(settling, depth=None, open=str(out))
+    return settling
 
 
 def _nothing_known(system: System, settling: Settling, scope: Scope, why: str) -> Rhythm:
@@ -278,6 +290,9 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     if system.choices:
         return _by_graph_with_choices(rhythm, states, goal, effort)
     found = graph.basins(states, effort, goal.period if goal else None, goal.high if goal else None)
+    faults = certificate.loop_faults(system, found.members, found.distance, effort)
+    if faults:
+        raise InternalError(f"a list of loops fails its check: {'; '.join(faults)}")
     first_stuck = next((loop for loop in found.loops if loop.stuck), None)
     stuck = follow(system, first_stuck.example, effort) if first_stuck else None
     recovery = _graph_recovery(system, states, found, goal, effort) if goal else None

@@ -205,6 +205,41 @@ def rank_faults(
     return faults
 
 
+def loop_faults(
+    system: System, loops: Sequence[Sequence[int]], distance: np.ndarray, effort: Effort
+) -> list[str]:
+    """What is wrong with the claim that these are all the loops, in a system without choices.
+
+    `loops` lists the numbers of the states on each, in order; `distance` has for every state the half-cycles
+    until it is on one. Every step from a state off the loops has to bring one nearer, and on one lead along it.
+    """
+    import numpy as np
+
+    effort.say("checking the list of loops")
+    numbers = np.arange(1 << system.bits, dtype=np.uint64)
+    values, shifts = {}, []
+    at = 0
+    for name, width in system.variables:
+        values[name] = (numbers >> np.uint64(at)) & np.uint64((1 << width) - 1)
+        shifts.append(at)
+        at += width
+    *step, settled = e.arrays([*system.step, system.settled], values)
+    after = sum(part.astype(np.int64) << shift for part, shift in zip(step, shifts, strict=True))
+    faults: list[str] = []
+    following = np.full(len(numbers), -1, dtype=np.int64)
+    for states in loops:
+        following[list(states)] = [*states[1:], states[0]]
+    on_loop = following >= 0
+    if (on_loop & (following != after)).any():
+        faults.append("a loop that does not lead along itself")
+    reached = settled == 1
+    if (reached[after][reached] == 0).any():
+        faults.append("a settled state that steps to one that is not")
+    if (reached & ~on_loop & ((distance <= 0) | (distance[after] >= distance))).any():
+        faults.append("a state that gets no nearer to a loop")
+    return faults
+
+
 def _every_choice(system: System) -> Iterator[Mapping[str, int]]:
     bits = sum(width for _, width in system.choices)
     for number in range(1 << bits):

@@ -19,8 +19,11 @@ from prover.design import Design, Register
 from prover.effort import Effort, OutOfEffort
 from prover.errors import Where
 from prover.expr import Expr
-from prover.solve import find
+from prover.solve import Model, find
 from prover.system import Inputs, Moment, State, System, build, micro_step, same, settled_when, start, unroll
+
+Ask = Callable[[Expr], Model | None]
+"""Values that make a one-bit expression true, or None."""
 
 LONGEST = 4096
 """Micro-steps after which a concrete run that neither settles nor repeats is given up."""
@@ -62,6 +65,7 @@ class Settling:
     depth      micro-steps within which every step settles, None if unsettled or not known
     at_rest    micro-steps within which any register values settle before the first edge
     by_form    the bound follows from the form of the expressions, without a solver
+    goals      what must not be satisfiable for the depth and the absence of further races, to be checked again
     open       why the depth or the races are not known, "" when they are
     """
 
@@ -71,6 +75,7 @@ class Settling:
     unsettled: Unsettled | None
     races: tuple[Race, ...]
     open: str = ""
+    goals: tuple[Expr, ...] = ()
 
 
 def settle(
@@ -89,12 +94,21 @@ def settle(
     why = ""
     by_form = False
     limit = len(design.registers) + 2
+    goals: list[Expr] = []
+
+    def none(goal: Expr) -> Model | None:
+        """The solver's answer; where it is that there is none, the question is kept."""
+        model = find(goal, effort)
+        if model is None and not goal.is_const:
+            goals.append(goal)
+        return model
+
     try:
-        rest_chain, at_rest, _ = _bound(design, before, before, e.TRUE, effort, edge_wins)
+        rest_chain, at_rest, _ = _bound(design, before, before, e.TRUE, none, edge_wins)
         if at_rest is None:
             unsettled = _witness(design, clock, rest_chain, before, before, e.TRUE, effort)
         else:
-            chain, depth, by_form = _bound(design, before, now, assumed, effort, edge_wins)
+            chain, depth, by_form = _bound(design, before, now, assumed, none, edge_wins)
             limit = len(chain)
             if depth is None:
                 unsettled = _witness(design, clock, chain, before, now, assumed, effort)
@@ -106,14 +120,14 @@ def settle(
     if depth is not None and not edge_wins:
         try:
             effort.say("looking for outcomes that hang on the order of events")
-            races = tuple(find_races(system, effort))
+            races = tuple(find_races(system, none))
         except OutOfEffort as out:
             why = str(out)
-    return system, Settling(depth, at_rest, by_form, unsettled, races, why)
+    return system, Settling(depth, at_rest, by_form, unsettled, races, why, tuple(goals))
 
 
 def _bound(
-    design: Design, before: Moment, now: Moment, assumed: Expr, effort: Effort, edge_wins: bool
+    design: Design, before: Moment, now: Moment, assumed: Expr, ask: Ask, edge_wins: bool
 ) -> tuple[list[Moment], int | None, bool]:
     """The chain, the number of micro-steps that suffice under the assumption (None: some state goes on
     beyond what is worth unrolling), and whether the form of the expressions alone shows it."""
@@ -123,12 +137,11 @@ def _bound(
     if count == 0:
         return chain, 0, True
     while count <= limit:
-        effort.check()
         longer = unroll(design, before, now, count + 1, edge_wins)
         if len(longer) == len(chain):
             return chain, count, True
         moves = e.bvand(assumed, e.bvnot(same(design.registers, longer[-1], longer[-2])))
-        if find(moves, effort) is None:
+        if ask(moves) is None:
             return chain, count, False
         chain, count = longer, count + 1
     return chain, None, False
@@ -176,15 +189,15 @@ def _zero_choices(moment: Moment) -> Moment:
 # -- races ---------------------------------------------------------------------------------------------------
 
 
-def find_races(system: System, effort: Effort) -> Iterator[Race]:
+def find_races(system: System, ask: Ask) -> Iterator[Race]:
     """Every register whose value after a step hangs on the order of events, once a register and kind."""
     before, _ = start(system.design, system.clock, system.inputs)
     moments = [before, *system.chain]
     for register in system.design.registers:
-        searches: tuple[Callable[[System, Sequence[Moment], Register, Effort], Race | None], ...]
+        searches: tuple[Callable[[System, Sequence[Moment], Register, Ask], Race | None], ...]
         searches = (_release_race, _hold_race, _pulse)
         for search in searches:
-            race = search(system, moments, register, effort)
+            race = search(system, moments, register, ask)
             if race:
                 yield race
 
@@ -193,9 +206,7 @@ def _state_of(system: System, model: Mapping[str, int]) -> State:
     return tuple(model.get(name, 0) for name in system.names)
 
 
-def _release_race(
-    system: System, moments: Sequence[Moment], register: Register, effort: Effort
-) -> Race | None:
+def _release_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
     """An edge that comes with the release of the register's own clear, and would change what it holds."""
     if not register.edges or not register.forces:
         return None
@@ -208,7 +219,7 @@ def _release_race(
             high, data = e.substitute([edge.clock, edge.data], now)
             changes = e.bvnot(e.eq(data, now[register.name]))
             goal = e.conj([released, e.bvnot(low), high, changes, system.settled])
-            model = find(goal, effort)
+            model = ask(goal)
             if model is not None:
                 text = (
                     f"the clock edge that clearing makes at {register.name} has to arrive while the clear of "
@@ -219,7 +230,7 @@ def _release_race(
     return None
 
 
-def _hold_race(system: System, moments: Sequence[Moment], register: Register, effort: Effort) -> Race | None:
+def _hold_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
     """A derived clock that samples data which the same input edge has already changed."""
     launch = moments[1]
     for then, now in pairwise(moments[1:]):
@@ -231,7 +242,7 @@ def _hold_race(system: System, moments: Sequence[Moment], register: Register, ef
             own = {**launch, register.name: now[register.name]}
             (old,) = e.substitute([edge.data], own)
             fires = e.conj([e.bvnot(low), high, e.bvnot(forced), system.settled])
-            model = find(e.bvand(fires, e.bvnot(e.eq(data, old))), effort)
+            model = ask(e.bvand(fires, e.bvnot(e.eq(data, old))))
             if model is not None:
                 text = (
                     f"{register.name} samples data launched by the same input edge that makes its derived clock: "
@@ -241,7 +252,7 @@ def _hold_race(system: System, moments: Sequence[Moment], register: Register, ef
     return None
 
 
-def _pulse(system: System, moments: Sequence[Moment], register: Register, effort: Effort) -> Race | None:
+def _pulse(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
     """A clock or clear net that may pulse while several of its inputs change in one micro-step."""
     nets = [(edge.clock, True, register.where) for edge in register.edges]
     nets += [(force.when, False, force.where) for force in register.forces if register.kind == "flip-flop"]
@@ -250,7 +261,7 @@ def _pulse(system: System, moments: Sequence[Moment], register: Register, effort
         if len(inputs) < 2 and all(v.width == 1 for v in inputs):
             continue
         for then, now in pairwise(moments):
-            model = find(e.bvand(_hazard(net, inputs, then, now, is_clock), system.settled), effort)
+            model = ask(e.bvand(_hazard(net, inputs, then, now, is_clock), system.settled))
             if model is None:
                 continue
             values = _padded(model, then, now)

@@ -23,7 +23,7 @@ from prover.verilog.source import printable
 from prover.verilog.words import cut
 
 MAX_STEPS = 20_000
-MAX_ROUNDS = 10_000
+MAX_ROUNDS = 8_192
 
 _SILENT = words(
     """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff

@@ -358,7 +358,9 @@ class Grammar(VerilogParser):  # type: ignore[misc]
         """generate_for : FOR LPAREN ID EQUALS expression SEMICOLON expression SEMICOLON step RPAREN item
         | FOR LPAREN GENVAR ID EQUALS expression SEMICOLON expression SEMICOLON step RPAREN item"""
         more = len(p) - 12
-        p[0] = tree.GenerateFor(p[3 + more], p[5 + more], p[7 + more], p[9 + more], p[11 + more], p.lineno(1))
+        p[0] = tree.GenerateFor(
+            p[3 + more], p[5 + more], p[7 + more], p[9 + more], p[11 + more], bool(more), p.lineno(1)
+        )
 
     def p_generate_case(self, p: Any) -> None:
         "generate_case : CASE LPAREN expression RPAREN generate_arms ENDCASE"

@@ -280,6 +280,9 @@ class Hierarchy:
     def _generate_for(
         self, item: tree.GenerateFor, scope: Scope, defparams: dict[tuple[str, ...], Any], depth: int
     ) -> None:
+        if not item.inline and scope.find(item.variable) != "genvar":
+            name = printable(item.variable)
+            self.report.fail(f"{name} isn't a genvar", item.lineno, f"declare genvar {name}")
         body = item.body
         if isinstance(body, list):
             body = tree.GenerateBlock(None, body, item.lineno)

@@ -168,13 +168,14 @@ def _explain(source: Source, chunk: Chunk, token: Any) -> UserError:
     hints = {
         "REFUSED": "&&& belongs to SystemVerilog patterns and timing checks; write && or &",
         "FLOATNUMBER": "real numbers aren't supported; write an integer",
-        "COND": "a ? directly after a based number is one of its digits; put a space between",
     }
     at = chunk.tokens.index(token) if token in chunk.tokens else 0
     before = chunk.tokens[at - 1] if at else None
     hint = hints.get(token.type, "")
     if not hint and before is not None:
         hint = f"this can't follow {printable(str(before.value))!r}"
+        if before.type == "BASED" and str(before.value).endswith("?"):
+            hint = "a ? right after a based number is one of its digits; put a space between"
     return UserError(f"syntax error at {shown!r}", where, hint)
 
 

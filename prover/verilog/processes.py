@@ -15,6 +15,8 @@ from dataclasses import replace as replaced
 from itertools import product
 from typing import Any, NamedTuple, NoReturn
 
+from pyverilog.vparser import ast as vast
+
 from prover import expr as e
 from prover.design import Edge, Force
 from prover.errors import UserError
@@ -395,6 +397,9 @@ class Processes:
 
     def initial(self, scope: Scope, statement: tree.Node) -> dict[Net, tuple[int, int]]:
         """The known bits that an initial block gives: for each variable a mask and a value."""
+        if not _assigns(statement):
+            self.report.note("initial block passed over: it only serves simulation", statement)
+            return {}
         state = self.executor.run(statement, scope)
         out: dict[Net, tuple[int, int]] = {}
         for net, (word, written) in self._results(state).items():
@@ -418,6 +423,24 @@ class Processes:
                         "an initial value must be constant", at, "assign a literal or a parameter"
                     )
         return mask, value
+
+
+def _assigns(statement: tree.Node) -> bool:
+    """May the statement assign anything? A call or a statement that is refused counts as if it did."""
+    stack = [statement]
+    while stack:
+        node = stack.pop()
+        if isinstance(node, (tree.DelayControl, tree.EventControl)):
+            stack.append(node.statement)
+        elif isinstance(node, vast.Block):
+            stack += node.statements
+        elif isinstance(node, vast.IfStatement):
+            stack += [node.true_statement, node.false_statement]
+        elif isinstance(node, (tree.Repeat, tree.For)):
+            stack.append(node.body)
+        elif node is not None and not isinstance(node, (tree.Null, vast.SystemCall)):
+            return True
+    return False
 
 
 def _active(event: _Event) -> Expr:

@@ -547,7 +547,10 @@ class Sizer:
     # -- words ---------------------------------------------------------------------------------------------
 
     def _build_literal(self, node: Any, to: Type) -> Task[Expr]:
-        return constant_word(self.report, self._literal(node), to)
+        found = self._literal(node)
+        if found.z:
+            self.report.note("z counts as any value", node)
+        return constant_word(self.report, found, to)
         yield
 
     def _build_fill(self, node: Any, to: Type) -> Task[Expr]:

@@ -306,13 +306,14 @@ class GenerateIf:
 
 @_node
 class GenerateFor:
-    """A generate for with its genvar."""
+    """A generate for; `inline` tells that the genvar is declared in its head."""
 
     variable: str
     start: Node
     condition: Node
     step: Assignment
     body: Node
+    inline: bool
     lineno: int
 
 
