@@ -10,7 +10,7 @@ import random
 from collections.abc import Sequence
 from dataclasses import replace
 
-from prover import certificate, graph, orbit, path, reset
+from prover import certificate, graph, orbit, path, recode, reset
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
@@ -33,8 +33,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         why = settling.open or "the micro-steps do not settle"
         return _nothing_known(system, settling, scope, why)
     won = _races_won(ports, settling, starts, effort)
-    machine = system if graph.fits(system) else cone(system)
-    starts = tuple(replace(s, state=project(system, s.state, machine)) for s in starts)
+    machine, starts = _machine(system, starts, effort)
     orbits = _orbits(machine, starts, effort)
     rhythm = Rhythm(
         system=machine,
@@ -60,6 +59,19 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
 
 
+def _machine(
+    system: System, starts: tuple[Start, ...], effort: Effort
+) -> tuple[System, tuple[Start, ...]]:
+    """What the engines work on, with the start states in it: the whole system while its graph is small enough,
+    else what the output depends on, ripple chains read as words."""
+    if graph.fits(system):
+        return system, starts
+    inner = cone(system)
+    machine = inner if graph.fits(inner) else recode.words(inner, effort)
+    placed = (recode.moved(project(system, s.state, inner), inner, machine) for s in starts)
+    return machine, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
+
+
 def _checked(settling: Settling, effort: Effort) -> Settling:
     """The micro-steps' bound and the absence of races, with each of their questions asked again from its text."""
     try:
@@ -78,7 +90,7 @@ def _nothing_known(system: System, settling: Settling, scope: Scope, why: str) -
 
 def _orbits(system: System, starts: Sequence[Start], effort: Effort) -> tuple[Orbit, ...]:
     """The start states' orbits; a loop that they share is traced and checked once."""
-    known: dict[State, path.Path] = {}
+    known: orbit.Places = {}
     refuted: set[Expr] = set()
     found = []
     for start in starts:
@@ -92,7 +104,7 @@ def follow(
     system: System,
     start: State,
     effort: Effort,
-    known: dict[State, path.Path] | None = None,
+    known: orbit.Places | None = None,
     refuted: set[Expr] | None = None,
 ) -> Orbit:
     """A start state's orbit, checked. It is left unclosed, with the reason, where the check can't be made.
@@ -208,7 +220,9 @@ def _is_power_up(whole: System, machine: System, state: State, effort: Effort) -
     """Whether a state of the cone is part of a power-up state of the whole machine."""
     if whole is machine:
         return True
-    here = [e.eq(e.var(n, w), e.const(v, w)) for (n, w), v in zip(machine.variables, state, strict=True)]
+    widths = dict(whole.variables)
+    values = machine.describe(state)
+    here = [e.eq(e.var(name, widths[name]), e.const(v, widths[name])) for name, v in values.items()]
     return find(e.conj([whole.settled, *here]), effort) is not None
 
 

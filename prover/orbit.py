@@ -14,7 +14,7 @@ state, and one that runs through more items than the effort allows is left open.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from itertools import pairwise
 
 from prover import expr as e
@@ -33,11 +33,14 @@ BLOCK = 128
 """Items up to which a recurring block is looked for."""
 
 
-def trace(system: System, start: State, effort: Effort, known: Mapping[State, Path] | None = None) -> Orbit:
+Places = dict[State, tuple[Path, int]]
+"""States on loops found before: the loop, and the index of the item that begins with the state."""
+
+
+def trace(system: System, start: State, effort: Effort, known: Places | None = None) -> Orbit:
     """The orbit of `start`, as far as the effort allows; it is not closed if that did not suffice.
 
-    `known` gives for states on loops found before the loop from there on, so that it is not traced again. The
-    path is the search's word only: `certificate` checks it.
+    A loop that is `known` is not traced again. The path is the search's word only: `certificate` checks it.
     """
     search = _Search(system, effort, known or {})
     try:
@@ -50,9 +53,9 @@ def trace(system: System, start: State, effort: Effort, known: Mapping[State, Pa
     return Orbit(path.joined(lead), path.joined(loop), search.widths)
 
 
-def onward(loop: Path) -> dict[State, Path]:
-    """For the state at each item of a loop, the loop from there on."""
-    return {path.first_state((item,)): (*loop[i:], *loop[:i]) for i, item in enumerate(loop)}
+def onward(loop: Path) -> Places:
+    """The place of the state at each item of a loop."""
+    return {path.first_state((item,)): (loop, i) for i, item in enumerate(loop)}
 
 
 Shape = tuple[object, ...]
@@ -64,7 +67,7 @@ class _Search:
     `seen` gives for the state at an item's start the item's index; `jumps` for the shape of a repeat the
     indices where it stands."""
 
-    def __init__(self, system: System, effort: Effort, known: Mapping[State, Path]) -> None:
+    def __init__(self, system: System, effort: Effort, known: Places) -> None:
         self.system = system
         self.known = known
         self.joins: Path = ()
@@ -83,7 +86,8 @@ class _Search:
         count = 0
         while state not in self.seen:
             if state in self.known:
-                self.joins = self.known[state]
+                loop, at = self.known[state]
+                self.joins = (*loop[at:], *loop[:at])
                 return
             count += 1
             if count % 1024 == 0:

@@ -137,6 +137,7 @@ class System:
     output      one bit over the variables: the output in the half-cycle of the state
     settled     one bit over the variables: a power-up state
     chain       the moments of one step; chain[0] is just after the clock's edge, chain[-1] is `step`
+    words       variables that stand for several registers side by side (see recode), with these, lowest first
     """
 
     design: Design
@@ -147,6 +148,7 @@ class System:
     output: Expr
     settled: Expr
     chain: tuple[Moment, ...]
+    words: tuple[tuple[str, tuple[str, ...]], ...] = ()
 
     @property
     def depth(self) -> int:
@@ -186,8 +188,15 @@ class System:
         return {**self.inputs.moment(self.design.inputs), **{n: e.var(n, w) for n, w in self.variables}}
 
     def describe(self, state: State) -> dict[str, int]:
-        """Register and clock values by name."""
-        return dict(zip(self.names, state, strict=True))
+        """Register and clock values by name, in a state of this system."""
+        bits = dict(self.words)
+        out: dict[str, int] = {}
+        for name, value in zip(self.names, state, strict=True):
+            if name in bits:
+                out |= {bit: value >> place & 1 for place, bit in enumerate(bits[name])}
+            else:
+                out[name] = value
+        return out
 
 
 def start(design: Design, clock: str, inputs: Inputs) -> tuple[Moment, Moment]:

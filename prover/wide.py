@@ -291,7 +291,7 @@ class _Cover:
         self.widths = [w for _, w in system.variables]
         self.lines: list[Line] = []
         self.loops: set[frozenset[Item]] = set()
-        self.known: dict[State, Path] = {}
+        self.known: orbit.Places = {}
 
     def add(self, start: State) -> Line:
         """Take a start state's line into the cover, and the line that widens it; the slower of the two."""

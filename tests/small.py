@@ -96,3 +96,11 @@ def cascade(width: int, depth: int, limit: int) -> Design:
         )
         ticks = e.bvand(ticks, wraps)
     return design(registers, e.bvult(e.const(limit // 2, width), counts[-1]), ("clk", "rst"))
+
+
+def ripple(stages: int) -> Design:
+    """÷2^stages: toggle stages, each clocked by the falling edge of the one before; the last is the output."""
+    bits = [e.var(f"q[{i}]", 1) for i in range(stages)]
+    clocks = [CLOCK, *(e.bvnot(bit) for bit in bits)]
+    registers = [flop(f"q[{i}]", 1, clocks[i], e.bvnot(bit)) for i, bit in enumerate(bits)]
+    return design(registers, bits[-1])

@@ -350,10 +350,10 @@ def machine_of(design: Design) -> str:
         ("module m(input c); k u(c); endmodule module k(input c); m u(c); endmodule", "no module with ports"),
         ("module m(input c); genvar i; for (i = 0; i < 1 << 30; i = i + 1) wire w; endmodule", "more than 10000"),
         ("module m(input c); k u[9999999:0](c); endmodule module k(input c); endmodule", "more than 10000"),
-        ("module m(input c, output reg q); integer i;\nalways @(posedge c)\nfor (i = 0; i < 9999; i = i + 1) q <= i;\n"
+        ("module m(input c, output reg q); integer i;\nalways @(posedge c)\nfor (i = 0; i < 9999; i = i + 1) q <= 1;"
          "endmodule", "runs more than"),
         ("module m(input c, output reg q); integer i, j; always @(posedge c) for (i = 0; i < 9999; i = i + 1) "
-         "for (j = 0; j < 9999; j = j + 1) q <= i; endmodule", "unrolling takes more"),
+         "for (j = 0; j < 999; j = j + 1) q <= i; endmodule", "unrolling takes more"),
         ("module m(input c, output q); function automatic integer f(input integer x); f = x < 2 ? x : f(x - 1) + "
          "f(x - 2); endfunction localparam P = f(60); assign q = P; endmodule", "unrolling takes more"),
         ("module m(input c, output q); function automatic f(input x); f = f(x); endfunction\n assign q = f(c);\n"

@@ -218,6 +218,7 @@ def test_refusal(tmp_path: Path, body: str, message: str | None) -> None:
         ("module m(input a, output y,);", "syntax error"),
         ("module m(.p(a), output y);", "syntax error"),
         ("module (input a);", "without a name"),
+        ("module m(a, input b, output y);", "has no direction"),
     ],
 )
 def test_bad_ports(tmp_path: Path, header: str, message: str) -> None:

@@ -13,7 +13,7 @@ from prover.design import Design
 from prover.errors import UserError
 from prover.expr import evaluate, variables
 from prover.verilog import read_design
-from prover.verilog.sizing import literal
+from prover.verilog.parts import literal
 
 
 def design(tmp_path: Path, body: str, width: int = 8) -> Design:

@@ -158,6 +158,12 @@ def test_macro_bombs_end_in_an_error(tmp_path: Path, text: str) -> None:
         source(tmp_path, text)
 
 
+def test_very_long_lines_and_names_are_not_shown_whole(tmp_path: Path) -> None:
+    with pytest.raises(UserError) as caught:
+        source(tmp_path, "`" + "x" * 100_000)
+    assert len(str(caught.value)) < 2_000
+
+
 def test_what_a_terminal_would_act_on_is_not_shown(tmp_path: Path) -> None:
     with pytest.raises(UserError) as caught:
         source(tmp_path, "x \x1b[31m \u202e /* ")

@@ -1,5 +1,5 @@
-// Sonde clock by 8, 4 or 2: a chain of toggle stages made by a generate loop, each on the falling edge of the one
-// before, with an asynchronous clear.
+// Sonde clock by 8, 4 or 2: a chain of toggle stages made by a generate loop, each on the falling edge of
+// the one before, with an asynchronous clear.
 // check: --ratio 8
 // verdict: proved
 // ratio: proved

@@ -63,7 +63,10 @@ class Declarer:
         at = type_.lineno if type_ else 0
         if type_ and type_.named:
             inner = scope.find(f"type {type_.named}")
-            assert isinstance(inner, Shape)
+            if not isinstance(inner, Shape):
+                self.report.fail(
+                    f"type {printable(type_.named)} isn't declared", at, "declare it before its use"
+                )
             if ranges:
                 self.report.fail("a range on a named type isn't supported", at)
             direction = self._direction(words, at)

@@ -20,8 +20,9 @@ from prover.verilog.execute import Environment, Executor, State
 from prover.verilog.hierarchy import Connection, Hierarchy, Primitive
 from prover.verilog.names import Constant, Net, Report, Scope, Type
 from prover.verilog.parse import parse_chunk, read_chunks
+from prover.verilog.parts import Place
 from prover.verilog.processes import Driver, Processes
-from prover.verilog.sizing import Place, Sizer, Value
+from prover.verilog.sizing import Sizer, Value
 from prover.verilog.source import Source, printable
 from prover.verilog.words import cut
 
@@ -117,10 +118,12 @@ def elaborate(source: Source, module: str | None, parameters: Mapping[str, int])
     """The Design of a source; `module` names the top and `parameters` override its parameters."""
     library = Library.of(source)
     top = library.top(module)
-    return _Elaboration(library, top).run(parameters)
+    return Elaboration(library, top).run(parameters)
 
 
-class _Elaboration:
+class Elaboration:
+    """One reading: the parts that do the work, and the drivers that they find."""
+
     def __init__(self, library: Library, top: tree.Module) -> None:
         self.library, self.top, self.report = library, top, library.report
         self.executor = Executor(self.report)
@@ -141,13 +144,7 @@ class _Elaboration:
         self._continuous()
         self._primitives()
         self._processes()
-        both_ways = self._connect([c for c in self.hierarchy.connections if c.port.direction != "inout"])
-        assert not both_ways
-        for connection in sorted(
-            (c for c in self.hierarchy.connections if c.port.direction == "inout"),
-            key=lambda c: -c.port.name.count("."),
-        ):
-            self._connect_one(connection, outward=bool(self.drivers.by_net.get(connection.port)))
+        self._connections()
         self._initial()
         driven = self.drivers.by_net
         for port in ports:
@@ -180,7 +177,7 @@ class _Elaboration:
 
     # -- drivers of nets -----------------------------------------------------------------------------------
 
-    def _drive(self, places: list[Place], value: Expr, at: int) -> None:
+    def drive(self, places: list[Place], value: Expr, at: int) -> None:
         """A continuous driver for the places, the uppermost bits for the first."""
         high = value.width
         for place in places:
@@ -206,7 +203,7 @@ class _Elaboration:
             env = Environment(self.executor, scope, State())
             places: list[Place] = run(self.executor.targets(left, env))
             value = run(Sizer(env).assigned(right, sum(p.width for p in places)))
-            self._drive(places, value, at)
+            self.drive(places, value, at)
 
     def _primitives(self) -> None:
         for primitive in self.hierarchy.primitives:
@@ -262,7 +259,7 @@ class _Elaboration:
         else:
             value = _joined(kind, bits)
         for place in places:
-            self._drive(place, value, gate.at)
+            self.drive(place, value, gate.at)
 
     def _processes(self) -> None:
         for scope, node in self.hierarchy.processes:
@@ -271,12 +268,16 @@ class _Elaboration:
 
     # -- ports ---------------------------------------------------------------------------------------------
 
-    def _connect(self, connections: list[Connection]) -> list[Connection]:
-        for connection in connections:
-            self._connect_one(connection, outward=connection.port.direction == "output")
-        return []
+    def _connections(self) -> None:
+        """Ports, those that go both ways last and from the inside out: by then it shows which way they go."""
+        both_ways = [c for c in self.hierarchy.connections if c.port.direction == "inout"]
+        for connection in self.hierarchy.connections:
+            if connection.port.direction != "inout":
+                self._connect(connection, outward=connection.port.direction == "output")
+        for connection in sorted(both_ways, key=lambda c: -c.port.name.count(".")):
+            self._connect(connection, outward=connection.port in self.drivers.by_net)
 
-    def _connect_one(self, connection: Connection, outward: bool) -> None:
+    def _connect(self, connection: Connection, outward: bool) -> None:
         port, at, count = connection.port, connection.at, connection.count
         env = Environment(self.executor, connection.outer, State())
         if outward:
@@ -295,7 +296,7 @@ class _Elaboration:
             elif count > 1 and total != port.width:
                 self.report.fail(f"{total} bits on {count} ports of {port.width}", at)
             self._remark_width(port, total, at)
-            self._drive(places, e.resize(value, total, port.type.signed), at)
+            self.drive(places, e.resize(value, total, port.type.signed), at)
             return
         own: Type = run(Sizer(env).type_of(connection.value))
         if count > 1 and own.width == count * port.width:

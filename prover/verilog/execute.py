@@ -18,7 +18,8 @@ from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import Task, run
 from prover.verilog.names import MAX_CALL_DEPTH, Constant, Lazy, Net, Report, Routine, Scope, Type, words
-from prover.verilog.sizing import Place, Sizer, constant, write_part, written_mask
+from prover.verilog.parts import Place, write_part, written_mask
+from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
 from prover.verilog.words import cut
 
@@ -144,6 +145,10 @@ class Environment:
                 return scope
             scope = scope.parent
         return None
+
+    def named_type(self, name: str) -> Type | None:
+        shape = self.scope.find(f"type {name}")
+        return None if shape is None else Type(*shape.type)
 
     def read(self, net: Net, node: Any) -> Expr:
         if self.state is None:

@@ -109,17 +109,18 @@ class Hierarchy:
                 header = tree.Parameters(previous.local, previous.type, header.names, header.lineno)
             names += self.declarer.parameters(header, scope, outer, used)
             previous = header
-        ansi = any(item.type is not None for item in module.ports)
-        ports = self._ansi_ports(module, scope) if ansi else []
         items = list(_flat(module.items))
-        listed = frozenset() if ansi else frozenset(item.name.name for item in module.ports)
         # With parameters in the header those in the body are local (clause 4.10.1).
         for item in items:
             if isinstance(item, tree.Parameters):
                 local = item.local or bool(module.parameters)
                 item = tree.Parameters(local, item.type, item.names, item.lineno)
                 names += self.declarer.parameters(item, scope, outer, used)
-        self._declarations(items, scope, listed)
+        self._types(items, scope)
+        ansi = any(item.type is not None for item in module.ports)
+        ports = self._ansi_ports(module, scope) if ansi else []
+        listed = frozenset() if ansi else frozenset(item.name.name for item in module.ports)
+        self._nets(items, scope, listed)
         if not ansi:
             ports = self._listed_ports(module, scope)
         unknown = [name for name in outer if name not in used]
@@ -139,9 +140,7 @@ class Hierarchy:
                 type_ = item.type
                 shape = self.declarer.shape(type_, scope)
                 direction = shape.direction or direction
-            assert type_ is not None
-            shape = self.declarer.shape(type_, scope)
-            if direction is None:
+            if direction is None or type_ is None:
                 self.report.fail(f"port {printable(item.name.name)} has no direction", item.lineno)
             words = [w for w in type_.words if w not in ("input", "output", "inout")]
             typed = tree.Type([direction, *words], type_.ranges, type_.enum, type_.named, type_.lineno)
@@ -172,13 +171,16 @@ class Hierarchy:
 
     # -- items ---------------------------------------------------------------------------------------------
 
-    def _declarations(self, items: list[Any], scope: Scope, ports: frozenset[str]) -> None:
+    def _types(self, items: list[Any], scope: Scope) -> None:
+        """What ranges may hang on: types and routines, and then the parameters' values."""
         for item in items:
             if isinstance(item, tree.Typedef):
                 self.declarer.typedef(item, scope)
             elif isinstance(item, tree.Subroutine):
                 self.declarer.routine(item, scope)
         self.declarer.settle(scope)
+
+    def _nets(self, items: list[Any], scope: Scope, ports: frozenset[str]) -> None:
         for item in items:
             if isinstance(item, tree.Declaration):
                 self.declarer.declare(item, scope, ports)
@@ -318,7 +320,8 @@ class Hierarchy:
         for item in items:
             if isinstance(item, tree.Parameters):
                 self.declarer.parameters(item, scope, {}, set())
-        self._declarations(items, scope, frozenset())
+        self._types(items, scope)
+        self._nets(items, scope, frozenset())
         self._pending.append((scope, items, defparams, depth))
 
     # -- instances and gates -------------------------------------------------------------------------------

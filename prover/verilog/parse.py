@@ -38,7 +38,8 @@ def _productions(grammar: Grammar) -> dict[str, Any]:
 
 def signature(grammar: Grammar) -> str:
     """A digest of all that decides the tables: productions, precedence, tokens and the table format."""
-    rules = [(name, method.__doc__) for name, method in sorted(_productions(grammar).items())]
+    # How a docstring is indented hangs on Python's version.
+    rules = [(name, method.__doc__.split()) for name, method in sorted(_productions(grammar).items())]
     version = f"{yacc.__version__} {yacc.__tabversion__}"
     return hashlib.sha256(repr((version, grammar.precedence, grammar.tokens, rules)).encode()).hexdigest()
 

@@ -22,6 +22,7 @@ MAX_TEXT = 16_000_000
 MAX_EXPANSIONS = 100_000
 MAX_EXPANDED = 4_000_000
 MAX_DEPTH = 60
+MAX_SHOWN = 1_000
 
 # What may not reach a terminal: control characters other than tab, and those that turn the reading direction.
 _UNPRINTABLE = re.compile("[\x00-\x08\x0a-\x1f\x7f-\x9f\u200e\u200f\u202a-\u202e\u2066-\u2069\ufeff]")
@@ -51,9 +52,10 @@ _DIRECTIVES = _NO_ARGUMENT | _WHOLE_LINE | _CONDITIONALS
 _DIRECTIVES |= {"define", "undef", "include", "timescale", "default_nettype", "resetall", "begin_keywords"}
 
 
-def printable(text: str) -> str:
-    """The text with everything replaced that could act on a terminal."""
-    return _UNPRINTABLE.sub("?", text)
+def printable(text: str, most: int = 200) -> str:
+    """The text with everything replaced that could act on a terminal, and cut where it is very long."""
+    shown = _UNPRINTABLE.sub("?", text[: most + 1])
+    return shown if len(shown) <= most else shown[:most] + "…"
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,9 +74,11 @@ class _File:
         text = self.shown.get(line)
         if text is None:
             end = self.text.find("\n", start)
-            text = printable(self.text[start : end if end >= 0 else len(self.text)])
+            end = end if end >= 0 else len(self.text)
+            # A line that fills screens is no help, and its column would point nowhere.
+            text = printable(self.text[start:end], MAX_SHOWN) if end - start <= MAX_SHOWN else ""
             self.shown[line] = text
-        return Where(printable(self.name), line + 1, offset - start + 1, text)
+        return Where(printable(self.name, MAX_SHOWN), line + 1, offset - start + 1, text)
 
 
 @dataclass(frozen=True, slots=True)

@@ -17,11 +17,13 @@ from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import run
 from prover.verilog.names import Net, Report
+from prover.verilog.parts import Place
 from prover.verilog.processes import Driver
-from prover.verilog.sizing import Place, Sizer
+from prover.verilog.sizing import Sizer
 from prover.verilog.words import replace
 
 if TYPE_CHECKING:
+    from prover.verilog.elaborate import Elaboration
     from prover.verilog.hierarchy import Primitive
 
 MAX_INPUTS = 10
@@ -103,7 +105,7 @@ def _value(report: Report, row: Row, state: Expr | None) -> Expr:
     return e.const(int(row.result), 1) if row.result in "01" else report.choice(1)
 
 
-def udp_driver(elaboration: Any, primitive: Primitive) -> None:
+def udp_driver(elaboration: Elaboration, primitive: Primitive) -> None:
     """Add the driver of one instance of a user-defined primitive."""
     report: Report = elaboration.report
     table = primitive.table
@@ -127,13 +129,13 @@ def udp_driver(elaboration: Any, primitive: Primitive) -> None:
         value = report.choice(1)
         for row in reversed(read):
             value = e.ite(_matches(row, inputs, None), _value(report, row, None), value)
-        elaboration._drive(places[0], value, primitive.at)
+        elaboration.drive(places[0], value, primitive.at)
         return
     _sequential(elaboration, primitive, table, places[0], inputs, read)
 
 
 def _sequential(
-    elaboration: Any,
+    elaboration: Elaboration,
     primitive: Primitive,
     table: tree.Primitive,
     places: list[Place],
