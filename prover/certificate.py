@@ -159,6 +159,59 @@ def _steps_goal(system: System, axes: Sequence[tuple[int, State]], members: Sequ
     return e.bvand(within, broken)
 
 
+def spread_obligation(system: System, run: Orbit, spread: tuple[int, State], number: int) -> Obligation:
+    """No run beside an orbit's lead-in does anything else than the lead-in, moved, and then enters the loop."""
+    count, stride = spread
+    size = count.bit_length() + 1
+    index = e.var("!beside", size)
+    within = e.bvult(index, e.const(count, size))
+    wrong = e.disj(differs(system, a, b) for a, b in lead_steps(system, run, index, stride))
+    return Obligation(f"beside orbit {number}", e.bvand(within, wrong))
+
+
+def lead_steps(
+    system: System, run: Orbit, index: Expr, stride: State
+) -> Iterator[tuple[tuple[list[Expr], Expr], tuple[list[Expr], int]]]:
+    """The steps of a lead-in moved `index` times by a stride: a state and the condition under which it counts, then
+    the claimed successor and level. The last step leads to the loop's entry, unmoved."""
+    lead = list(path.steps(run.lead, run.widths, None))
+    last = path.last_beat(run.lead, run.widths)
+    entry = path.first_state(run.loop)
+    for step in [*lead, Step(last.state, entry, last.level, ())]:
+        within = e.TRUE
+        moves = [(index, stride)]
+        for i, (times, along) in enumerate(step.axes):
+            size = times.bit_length() + 1
+            inner = e.var(f"!along{i}", size)
+            within = e.bvand(within, e.bvult(inner, e.const(times, size)))
+            moves.append((inner, along))
+        enters = step.target == entry and step.source == last.state and not step.axes
+        source = _moved(system, step.source, moves)
+        target = _moved(system, step.target, [] if enters else moves)
+        yield (source, within), (target, step.level)
+
+
+def _moved(system: System, base: State, moves: Sequence[tuple[Expr, State]]) -> list[Expr]:
+    out: list[Expr] = []
+    for place, (_, width) in enumerate(system.variables):
+        total = e.const(base[place], width)
+        for index, stride in moves:
+            if stride[place]:
+                scaled = e.bvmul(e.resize(index, width, False), e.const(stride[place], width))
+                total = e.bvadd(scaled, total)
+        out.append(total)
+    return out
+
+
+def differs(system: System, source: tuple[list[Expr], Expr], target: tuple[list[Expr], int]) -> Expr:
+    """True where the source's step counts and is another than to the target at that level."""
+    state, within = source
+    wanted, level = target
+    *step, out = e.substitute([*system.step, system.output], dict(zip(system.names, state, strict=True)))
+    wrong = e.disj(e.bvnot(e.eq(a, b)) for a, b in zip(step, wanted, strict=True))
+    return e.bvand(within, e.bvor(wrong, e.bvxor(out, e.const(level, 1))))
+
+
 # -- graphs ------------------------------------------------------------------------------------------------
 
 
@@ -262,11 +315,14 @@ class CoverClaim:
              orbit's start than the half-cycles that took (or where it is good). Otherwise: after so many
              half-cycles every state is at a good place of some orbit, or comes to one within `merge` half-cycles
              with the output on the way as the phase of that place wants it.
+    spreads  for each orbit a count and a vector if its lead-in stands for that many, side by side, each moved by
+             the vector from the one before, and all entering the loop at the same place; else None
     period, high  what good means, in half-cycles; period 0: on a loop, whatever its wave
     """
 
     orbits: tuple[Orbit, ...]
     recoveries: tuple[int, ...]
+    spreads: tuple[tuple[int, State] | None, ...]
     unrolled: int | None
     merge: int
     bound: int
@@ -341,6 +397,9 @@ def cover_faults(system: System, assumed: Expr, claim: CoverClaim, effort: Effor
             faults.append(f"an orbit that is not good after {recovery} half-cycles")
     if faults:
         return faults
+    for number, (run, spread) in enumerate(zip(claim.orbits, claim.spreads, strict=True)):
+        if spread and not discharge(spread_obligation(system, run, spread, number), effort):
+            faults.append(f"runs beside orbit {number}")
     for obligation in cover_obligations(system, assumed, claim):
         if not discharge(obligation, effort):
             faults.append(obligation.name)
@@ -429,10 +488,10 @@ def _written(
 def _on_orbits(system: System, state: Sequence[Expr], claim: CoverClaim, count: int | None) -> Expr:
     """True of a state on an orbit where it is good or, given `count`, at least that far from the orbit's start."""
     places: set[tuple[State, Axes]] = set()
-    for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
+    for run, recovery, spread in zip(claim.orbits, claim.recoveries, claim.spreads, strict=True):
         lead = run.lead_half_cycles
-        for items, offset in ((run.lead, 0), (run.loop, lead)):
-            for beat, axes, first, _ in _written(items, offset, offset, ()):
+        for items, offset, around in ((run.lead, 0, (spread,) if spread else ()), (run.loop, lead, ())):
+            for beat, axes, first, _ in _written(items, offset, offset, around):
                 if first >= recovery or (count is not None and first >= count):
                     places.add((beat, axes))
     return e.disj(_is_at(system, state, beat, axes) for beat, axes in sorted(places))

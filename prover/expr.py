@@ -756,8 +756,8 @@ def z3_terms(roots: Sequence[Expr], memo: dict[Expr, z3.ExprRef] | None = None) 
 
 
 def symbol(name: str) -> str:
-    """A name as a quoted SMT-LIB symbol; the two characters that can't stand in one are replaced."""
-    return "|" + name.replace("\\", "/").replace("|", "!") + "|"
+    """A name as a quoted SMT-LIB symbol; the two characters that can't stand in one are written as their codes."""
+    return "|" + name.replace("%", "%25").replace("\\", "%5c").replace("|", "%7c") + "|"
 
 
 def smtlib(goal: Expr, title: str = "") -> str:

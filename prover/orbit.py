@@ -182,20 +182,25 @@ def least_break(system: System, block: Repeat, effort: Effort, then: State | Non
     """The greatest number of rounds for which the block surely repeats, or until it returns to its start.
 
     A round is broken if a step in it is not as in the first, moved by the stride, or leads elsewhere than to
-    the next round, which is `then` away (the stride itself unless given). Asks for any broken round, then for an
-    earlier one, halving the range as it goes."""
-    import z3
-
+    the next round, which is `then` away (the stride itself unless given)."""
     widths = tuple(width for _, width in system.variables)
-    size = max(w for w, d in zip(widths, block.stride, strict=True) if d) + 1
-    count = e.var("!round", size)
-    (broken,) = e.z3_terms([broken_round(system, block, count, then or block.stride)])
-    index = z3.BitVec("!round", size)
-    solver = z3.SolverFor("QF_BV")
-    solver.add(broken == 1)
+    size = max(w for w, d in zip(widths, block.stride, strict=True) if d)
     # The block is back at its own start after this many rounds; more would go round the loop several times.
     returns = max((1 << w) // (d & -d) for w, d in zip(widths, block.stride, strict=True) if d)
-    low, high = 1, _likely_break(system, block, returns, then or block.stride)
+    likely = _likely_break(system, block, returns, then or block.stride)
+    return least(lambda count: broken_round(system, block, count, then or block.stride), size, likely, effort)
+
+
+def least(broken: Callable[[Expr], Expr], size: int, likely: int, effort: Effort) -> int:
+    """The least number from 1 on for which a formula over a word of size + 1 bits is true; `likely` if there is
+    none below that. Asks for any, then for a lesser one, halving the range as it goes."""
+    import z3
+
+    (formula,) = e.z3_terms([broken(e.var("!round", size + 1))])
+    index = z3.BitVec("!round", size + 1)
+    solver = z3.SolverFor("QF_BV")
+    solver.add(formula == 1)
+    low, high = 1, likely
 
     def any_below(bound: int) -> int | None:
         effort.check()
@@ -214,7 +219,7 @@ def least_break(system: System, block: Repeat, effort: Effort, then: State | Non
         high = found
         if low >= high:
             break
-        # An unbroken half is excluded at once; otherwise the round found is a better bound.
+        # An unbroken half is excluded at once; otherwise the number found is a better bound.
         half = (low + high) // 2
         below = any_below(half) if half > low else None
         if below is None:

@@ -76,12 +76,19 @@ class Orbit:
     """The run of one start state: a lead-in, then a loop that repeats for ever.
 
     `loop` is empty where the search ended before the run closed; `why` then says so, and `lead` is what was
-    covered. `widths` are those of the state's components."""
+    covered. `widths` are those of the state's components. `lead_half_cycles` is the time before the loop is
+    entered (or all that is known of a run that did not close), `loop_half_cycles` that once round (0 then)."""
 
     lead: Path
     loop: Path
     widths: tuple[int, ...]
     why: str = ""
+    lead_half_cycles: int = field(init=False)
+    loop_half_cycles: int = field(init=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "lead_half_cycles", path.length(self.lead))
+        object.__setattr__(self, "loop_half_cycles", path.length(self.loop))
 
     @property
     def closed(self) -> bool:
@@ -91,16 +98,6 @@ class Orbit:
     @property
     def start(self) -> State:
         return path.first_state(self.lead or self.loop)
-
-    @property
-    def lead_half_cycles(self) -> int:
-        """Half-cycles before the loop is entered, or all that is known of a run that did not close."""
-        return path.length(self.lead)
-
-    @property
-    def loop_half_cycles(self) -> int:
-        """Half-cycles once round the loop; 0 for a run that did not close."""
-        return path.length(self.loop)
 
     def runs(self, rounds: int) -> Iterator[Run]:
         """The output's runs: lead-in, then the loop `rounds` times."""

@@ -11,7 +11,7 @@ derived clock samples it; and a clock or clear net that can pulse while several 
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from prover import expr as e
@@ -195,7 +195,7 @@ def find_races(system: System, ask: Ask) -> Iterator[Race]:
     moments = [before, *system.chain]
     for register in system.design.registers:
         searches: tuple[Callable[[System, Sequence[Moment], Register, Ask], Race | None], ...]
-        searches = (_release_race, _hold_race, _pulse)
+        searches = (_release_race, _hold_race, _pulse, _transient)
         for search in searches:
             race = search(system, moments, register, ask)
             if race:
@@ -273,6 +273,54 @@ def _pulse(system: System, moments: Sequence[Moment], register: Register, ask: A
             )
             return Race("pulse", register.name, where, _state_of(system, model), text)
     return None
+
+
+def _transient(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
+    """A clock or clear net that is active on the way only, as a ripple passes through the values that it decodes.
+
+    A counter that clears itself ends its own clear, and a flip-flop that turns its own clock over ends its own edge;
+    those are meant. So the chain is followed on from where the net becomes active without what it then does: a net
+    that is inactive once all has settled would have been so whether or not anything had seen it."""
+    nets = [(edge.clock, True, register.where) for edge in register.edges]
+    nets += [(force.when, False, force.where) for force in register.forces if register.kind == "flip-flop"]
+    for net, is_clock, where in nets:
+        inputs = [v for v in e.variables([net]) if v.name in system.names]
+        if len(inputs) < 2 and all(v.width == 1 for v in inputs):
+            continue
+        for then, now in pairwise(moments[:-1]):
+            low, high = e.substitute([net], then)[0], e.substitute([net], now)[0]
+            rises = e.bvand(e.bvnot(low), high)
+            if rises is e.FALSE:
+                continue
+            (last,) = e.substitute([net], _unseen(system.design, then, now, net))
+            model = ask(e.conj([rises, e.bvnot(last), system.settled]))
+            if model is not None:
+                role = "clock" if is_clock else "clear"
+                text = (
+                    f"the {role} of {register.name} is active for a moment on the way: whether that is seen hangs on "
+                    "how fast its net is"
+                )
+                return Race("pulse", register.name, where, _state_of(system, model), text)
+    return None
+
+
+def _unseen(design: Design, then: Moment, now: Moment, net: Expr) -> Moment:
+    """Where the micro-steps lead from the two moments if nothing reacts to the net as a clock, nor to a set or
+    clear of a flip-flop that was not active before."""
+    was: dict[str, Expr] = {}
+    registers = []
+    for register in design.registers:
+        edges = tuple(edge for edge in register.edges if edge.clock is not net)
+        forces = []
+        for force in register.forces:
+            if register.kind == "flip-flop":
+                label = f"!was{len(was)}"
+                (was[label],) = e.substitute([force.when], then)
+                force = replace(force, when=e.bvand(force.when, e.var(label, 1)))
+            forces.append(force)
+        registers.append(replace(register, edges=edges, forces=tuple(forces)))
+    blind = replace(design, registers=tuple(registers))
+    return unroll(blind, then | was, now | was, 2 * len(registers) + 8)[-1]
 
 
 def _padded(model: Mapping[str, int], *moments: Moment) -> dict[str, int]:

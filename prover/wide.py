@@ -19,8 +19,8 @@ the same beat moves.
 
 from __future__ import annotations
 
-import math
-from collections.abc import Iterator, Mapping, Sequence
+import functools
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import accumulate
 
@@ -30,7 +30,7 @@ from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.expr import Expr
 from prover.path import Beat, Item, Path, Repeat
-from prover.rhythm import Goal, Orbit
+from prover.rhythm import LONGEST_ROUND, Goal, Orbit
 from prover.solve import find
 from prover.system import State, System, project
 
@@ -56,16 +56,23 @@ REFINED = 12
 COUNTER = 4
 """Bits of registers that depend on one another from which they make a stage of their own."""
 
-MOST_PATHS = 48
+WRITTEN = 60
+"""Items of a lead-in up to which runs beside it are looked for."""
+
+MOST_PATHS = 80
 """Paths in a cover beyond which it is given up."""
 
 
 @dataclass(frozen=True, slots=True)
 class Line:
-    """An orbit with its recovery: half-cycles from its start until good, None if it never is."""
+    """An orbit with its recovery: half-cycles from its start until good, None if it never is.
+
+    With a spread, of a count and a vector, it stands for that many orbits, each moved by the vector from the one
+    before: their lead-ins run side by side and enter the loop at the same place."""
 
     orbit: Orbit
     recovery: int | None
+    spread: tuple[int, State] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,7 +102,7 @@ class Cover:
 def recovery_on(run: Orbit, period: int, high: int) -> int | None:
     """Half-cycles from the orbit's start until its wave is for ever `high` of every `period`; None if never."""
     wave = run.wave()
-    if wave is None:
+    if wave is None or path.changes(run.lead, LONGEST_ROUND) > LONGEST_ROUND:
         raise OutOfEffort("a round of too many changes of the output to be written out")
     if not wave.divides_by(period, high):
         return None
@@ -213,18 +220,20 @@ def placed_spans(
 
 
 def peeled(items: Sequence[Item], widths: Sequence[int], rounds: int) -> Path:
-    """The same path with the first rounds of every repeat written out."""
+    """The same path with the first rounds of every innermost repeat written out, and the first of every other."""
     out: list[Item] = []
     for item in items:
         if isinstance(item, Beat):
             out.append(item)
             continue
+        inner = any(isinstance(part, Repeat) for part in item.body)
         body = peeled(item.body, widths, rounds)
-        for i in range(min(rounds, item.times)):
+        first = min(1 if inner else rounds, item.times)
+        for i in range(first):
             out.extend(_shifted(part, item.stride, i, widths) for part in body)
-        if item.times > rounds:
-            rest = tuple(_shifted(part, item.stride, rounds, widths) for part in body)
-            out.append(Repeat(item.times - rounds, item.stride, rest))
+        if item.times > first:
+            rest = tuple(_shifted(part, item.stride, first, widths) for part in body)
+            out.append(Repeat(item.times - first, item.stride, rest))
     return tuple(out)
 
 
@@ -277,6 +286,14 @@ def _drawn_in(out: list[Item], widths: Sequence[int]) -> list[Item] | None:
     return None
 
 
+def _repeats(items: Sequence[Item]) -> Iterator[Repeat]:
+    """Every repeat, the outer ones first."""
+    for item in items:
+        if isinstance(item, Repeat):
+            yield item
+            yield from _repeats(item.body)
+
+
 # -- the cover ---------------------------------------------------------------------------------------------
 
 
@@ -292,22 +309,65 @@ class _Cover:
         self.lines: list[Line] = []
         self.loops: set[frozenset[Item]] = set()
         self.known: orbit.Places = {}
+        # By identity: a line's hash would walk its whole path. The line is kept, so that its id stays its own.
+        self.placed: dict[int, tuple[Line, list[tuple[int, State, Axes]]]] = {}
 
     def add(self, start: State) -> Line:
         """Take a start state's line into the cover, and the line that widens it; the slower of the two."""
         run = self._traced(start)
-        made = [run]
+        line = self._line(run)
         early = self._earliest(run)
-        if early is not run and (early.lead or not self.has(early.start)):
-            made.append(early)
-        lines = [self._line(found) for found in made]
-        self.lines += lines
-        return max(lines, key=lambda line: math.inf if line.recovery is None else line.recovery)
+        if early is run or line.recovery is None:
+            self.lines.append(line)
+            return line
+        wider = self._line(early)
+        self.lines.append(wider)
+        if not self.has(start):
+            self.lines.append(line)
+        slower = wider.recovery is None or wider.recovery > line.recovery
+        return wider if slower else line
 
     def _line(self, run: Orbit) -> Line:
-        if self.goal is None:
-            return Line(run, run.lead_half_cycles)
-        return Line(run, recovery_on(run, self.goal.period, self.goal.high))
+        recovery: int | None = run.lead_half_cycles
+        if self.goal is not None:
+            recovery = recovery_on(run, self.goal.period, self.goal.high)
+        if recovery is None:
+            return Line(run, None)
+        low, spread = self._spread(run)
+        return Line(low, recovery, spread)
+
+    def _spread(self, run: Orbit) -> tuple[Orbit, tuple[int, State] | None]:
+        """The lowest of the runs that lie beside this one, and how many there are: a register that the lead-in
+        holds, and the loop forgets, may have any of a range of values."""
+        if len(run.lead) > WRITTEN:
+            return run, None
+        beats = list(path.beats(run.lead))
+        strides = [item.stride for item in _repeats(run.lead)]
+        for place, width in enumerate(self.widths):
+            held = len({beat.state[place] for beat in beats}) == 1 and not any(d[place] for d in strides)
+            if width == 1 or not held or not beats:
+                continue
+            counts = []
+            for direction in (-1, 1):
+                stride = tuple(direction % (1 << w) if i == place else 0 for i, w in enumerate(self.widths))
+                beside = functools.partial(self._broken_beside, run, stride)
+                counts.append(orbit.least(beside, width, 1 << width, self.effort) - 1)
+            if sum(counts):
+                down = tuple(
+                    (1 << w) - counts[0] if i == place and counts[0] else 0 for i, w in enumerate(self.widths)
+                )
+                lead = tuple(_shifted(item, down, 1, self.widths) for item in run.lead)
+                up = tuple(int(i == place) for i in range(len(self.widths)))
+                many = min(sum(counts) + 1, 1 << width)
+                return replace(run, lead=lead), (many, up)
+        return run, None
+
+    def _broken_beside(self, run: Orbit, stride: State, count: Expr) -> Expr:
+        """True of a number for which the lead-in, moved that many times by the stride, is no run into the loop."""
+        broken = []
+        for source, target in certificate.lead_steps(self.system, run, count, stride):
+            broken.append(certificate.differs(self.system, source, target))
+        return e.disj(broken)
 
     def _traced(self, start: State) -> Orbit:
         run = orbit.trace(self.system, start, self.effort, self.known)
@@ -367,14 +427,24 @@ class _Cover:
     def member(self, state: Sequence[Expr], least: int | None) -> Expr:
         """True of a state on some line where it is good, or at a place at least `least` half-cycles from its start
         (None: nowhere else)."""
+        formulas = (on_beat(self.system, state, beat, axes) for beat, axes in self._where(least))
+        return e.disj(formula for formula in formulas if formula is not None)
+
+    def _where(self, least: int | None) -> Iterable[tuple[State, Axes]]:
+        """Places on the lines where a state is good, or at least that far from a line's start. Where only good ones
+        are wanted, single ones far from the loop are left out: they are many, and decide nothing."""
         places: dict[tuple[State, Axes], None] = {}
         for line in self._distinct():
+            lead = line.orbit.lead_half_cycles
             for at, beat, axes in self._places(line):
+                if line.spread and at < lead:
+                    axes = (*axes, line.spread)
                 good = line.recovery is not None and at >= line.recovery
+                if least is None and not axes and at < lead - EARLY:
+                    good = False
                 if good or (least is not None and at >= least):
                     places[beat, axes] = None
-        formulas = (on_beat(self.system, state, beat, axes) for beat, axes in places)
-        return e.disj(formula for formula in formulas if formula is not None)
+        return places
 
     def late_after(self, bound: int, early: bool) -> State | None:
         """A state that after `bound` half-cycles is not known to be good; `early` knows more of them, at a price."""
@@ -430,7 +500,7 @@ class _Cover:
         assert self.goal is not None
         rise = first_rise(line.orbit)
         out = []
-        loop = peeled(line.orbit.loop, self.widths, EARLY // 2 + 1)
+        loop = peeled(line.orbit.loop, self.widths, EARLY // 2)
         for at, beat, axes, last in placed_spans(loop, line.orbit.lead_half_cycles):
             out.append((beat, axes, self._levels_before(at - rise, last - rise, axes)))
         return out
@@ -451,7 +521,10 @@ class _Cover:
     def has(self, state: State) -> bool:
         """Whether the state is on a line."""
         constants = [e.const(v, w) for v, (_, w) in zip(state, self.system.variables, strict=True)]
-        return bool(self.lines) and self.member(constants, 0) is e.TRUE
+        for beat, axes in self._where(0):
+            if beat == state or (axes and on_beat(self.system, constants, beat, axes) is e.TRUE):
+                return True
+        return False
 
     def lost(self) -> Cover:
         why = "a state that never becomes good"
@@ -464,9 +537,11 @@ class _Cover:
         self, worst: int, slowest: Line | None, unrolled: int | None, merge: int, method: str
     ) -> Cover:
         """The cover with the claim that it is one."""
+        lines = self.lines if unrolled is None else self._needed()
         claim = certificate.CoverClaim(
-            orbits=tuple(self._claimed(line.orbit, unrolled is not None) for line in self.lines),
-            recoveries=tuple(line.recovery or 0 for line in self.lines),
+            orbits=tuple(self._claimed(line.orbit, unrolled is not None) for line in lines),
+            recoveries=tuple(line.recovery or 0 for line in lines),
+            spreads=tuple(line.spread for line in lines),
             unrolled=unrolled,
             merge=merge,
             bound=worst,
@@ -477,12 +552,29 @@ class _Cover:
         claims = (certificate.Stage(self.system, claim),)
         return Cover(tuple(self.lines), True, worst, start, claims, "", method)
 
+    def _needed(self) -> list[Line]:
+        """What a claim about unrolled states rests on: each loop once, and the lead-ins that are families."""
+        loops = {frozenset(line.orbit.loop): line.orbit.loop for line in self.lines}
+        plain = [Line(Orbit((), loop, self.lines[0].orbit.widths), 0) for loop in loops.values()]
+        near = [self._cut(line) for line in self.lines if line.orbit.lead]
+        return plain + near
+
+    def _cut(self, line: Line) -> Line:
+        """The line without the single half-cycles before it is near its loop or on a repeat."""
+        lead = list(line.orbit.lead)
+        if line.spread:
+            return line
+        while lead and isinstance(lead[0], Beat) and path.length(lead) > EARLY:
+            del lead[0]
+        cut = line.orbit.lead_half_cycles - path.length(lead)
+        return Line(replace(line.orbit, lead=tuple(lead)), max((line.recovery or 0) - cut, 0))
+
     def _claimed(self, run: Orbit, phases: bool) -> Orbit:
         """The orbit as the claim writes it: cycles drawn into repeats, the first rounds of the loop's written out."""
         lead = shortened(run.lead, self.widths, MERGE + 2)
         loop = run.loop
         if self.goal is not None and phases:
-            loop = peeled(loop, self.widths, EARLY // 2 + 1)
+            loop = peeled(loop, self.widths, EARLY // 2)
         return Orbit(lead, loop, run.widths)
 
     def _distinct(self) -> Iterator[Line]:
@@ -495,6 +587,12 @@ class _Cover:
             seen.add(loop)
 
     def _places(self, line: Line) -> list[tuple[int, State, Axes]]:
+        """Every place on the line, with the half-cycle at which it first comes."""
+        if id(line) not in self.placed:
+            self.placed[id(line)] = (line, self._placed(line))
+        return self.placed[id(line)][1]
+
+    def _placed(self, line: Line) -> list[tuple[int, State, Axes]]:
         lead = shortened(line.orbit.lead, self.widths, MERGE + 2)
         loop = line.orbit.loop
         total = line.orbit.lead_half_cycles
@@ -632,7 +730,7 @@ def _by_unrolling(made: _Cover) -> Cover | None:
     if found is None and not _too_slow(made):
         high = _least_time(made)
         if high is not None:
-            found = _slowest_suffices(made, REFINED) or _without_start(made, high)
+            found = _narrowed(made, high)
     return made.lost() if any(line.recovery is None for line in made.lines) else found
 
 
@@ -673,12 +771,24 @@ def _least_time(made: _Cover) -> int | None:
     return high
 
 
-def _without_start(made: _Cover, high: int) -> Cover | None:
-    """The bound as it is, without a start that needs it."""
-    if _too_slow(made):
-        return None
+def _narrowed(made: _Cover, high: int) -> Cover | None:
+    """The bound brought down towards what the slowest line needs, where the output before a place counts too."""
+    for _ in range(REFINED):
+        slowest = max(made.lines, key=lambda line: line.recovery or 0)
+        worst = slowest.recovery or 0
+        if _too_slow(made):
+            return None
+        if worst >= high:
+            break
+        middle = (worst + high) // 2
+        late = made.late_after(middle, early=True)
+        if late is None:
+            high = middle
+        else:
+            made.add(late)
+    exact = slowest.recovery == high
     method = f"after {high} half-cycles every power-up state is on a known good run (solver)"
-    return made.proved(high, None, high, EARLY, method)
+    return made.proved(high, slowest if exact else None, high, EARLY, method)
 
 
 def _by_lines(made: _Cover) -> Cover:

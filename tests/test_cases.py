@@ -13,7 +13,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from cases_format import CASES, PROPERTIES, Case, Group, Stated, StatedWave, cases
+from cases_format import CASES, FOLDERS, PROPERTIES, Case, Group, Stated, StatedWave, cases
 from click.testing import CliRunner, Result
 
 from prover import cli
@@ -111,8 +111,7 @@ def test_a_refused_case_names_the_place_and_a_remedy_and_writes_nothing(
 
 
 def test_every_folder_has_the_cases_it_is_for() -> None:
-    folders = {case.path.parent.name for case, _ in ALL}
-    assert folders == {"gauge", "faulty", "published", "refused"}
+    assert {case.path.parent.name for case, _ in ALL} == set(FOLDERS)
     for case, group in ALL:
         if case.path.parent.name == "refused":
             assert group.error

@@ -79,6 +79,11 @@ def test_both_edges_of_one_clock(tmp_path: Path) -> None:
     assert machine(tmp_path, body) == "flip-flop q 1\n  rise clk takes d\n  rise (bvnot clk) takes e"
 
 
+def test_a_clear_whose_branches_come_to_the_same(tmp_path: Path) -> None:
+    body = "parameter ON = 0; always @(posedge clk or posedge rst) if (rst) q <= 0; else q <= ON && d;"
+    assert machine(tmp_path, body) == "flip-flop q 1\n  force rst to 1'd0\n  rise clk takes 1'd0"
+
+
 def test_ripple_stages_of_one_vector(tmp_path: Path) -> None:
     body = "always @(posedge clk) q[0] <= ~q[0]; always @(negedge q[0]) q[1] <= ~q[1];"
     assert machine(tmp_path, body, "input clk, output reg [1:0] q") == (
@@ -197,6 +202,8 @@ def test_latches_of_some_bits(tmp_path: Path) -> None:
     )
     found = machine(tmp_path, body, "input clk, d, output reg [1:0] q")
     assert found == "latch p[0] 1\n  force d to clk"
+    notes = read(tmp_path, f"module m(input clk, d, output reg [1:0] q); {body} endmodule").notes
+    assert [note.message for note in notes] == ["p[0] is a latch: not every path assigns it"]
 
 
 def test_cross_coupled_gates(tmp_path: Path) -> None:

@@ -89,6 +89,9 @@ class Timeline:
 
     def _steady_within(self, at: int, place: Place, size: int) -> tuple[int | None, ...]:
         """The same within one span, of which two rounds of its repeat show all that changes."""
+        if place.around and 2 * length(place.around.body) > MOST_SPANS:
+            # A long round: its output alone is known without looking at each half-cycle of it.
+            return (*(None for _ in place.state), place.around.steady)
         shown = min(size, 2 * length(place.around.body)) if place.around else 1
         rows = [(*p.state, p.level) for p in (self.orbit.place(at + i) for i in range(shown))]
         return tuple(column[0] if len(set(column)) == 1 else None for column in zip(*rows, strict=True))

@@ -68,7 +68,9 @@ class Declarer:
                     f"type {printable(type_.named)} isn't declared", at, "declare it before its use"
                 )
             if ranges:
-                self.report.fail("a range on a named type isn't supported", at)
+                self.report.fail(
+                    "a range on a named type isn't supported", at, "give the range in the typedef"
+                )
             direction = self._direction(words, at)
             return Shape(inner.type, inner.msb, inner.lsb, inner.kind, direction, False)
         if type_ and type_.enum:
@@ -80,9 +82,9 @@ class Declarer:
         for word in words:
             known = word in _DIRECTIONS or word in _NETS or word in _VECTORS or word in _FIXED
             if not known and word not in ("signed", "unsigned", "automatic", "static"):
-                self.report.fail(f"{word} isn't supported", at)
+                self.report.fail(f"{word} isn't supported", at, "declare a wire, a reg or an integer")
         if len(fixed) > 1 or (fixed and ranges) or len([k for k in kinds if k != "var"]) + len(fixed) > 1:
-            self.report.fail(f"{' '.join(words)} makes no type", at)
+            self.report.fail(f"{' '.join(words)} makes no type", at, "use one type word and one sign")
         kind = "net"
         if fixed:
             kind = "variable" if fixed[0] in ("integer", "time") else "any"
@@ -97,7 +99,7 @@ class Declarer:
         if ranges:
             msb = constant(self.env(scope), ranges[0][0], "the bound of a range")
             if ranges[0][1] is None:
-                self.report.fail("a packed range needs two bounds", at)
+                self.report.fail("a packed range needs two bounds", at, "write [msb:lsb]")
             lsb = constant(self.env(scope), ranges[0][1], "the bound of a range")
         elif fixed:
             msb = _FIXED[fixed[0]].width - 1
@@ -112,7 +114,7 @@ class Declarer:
     def _direction(self, words: list[str], at: int) -> str | None:
         found = [w for w in words if w in _DIRECTIONS]
         if len(found) > 1:
-            self.report.fail(f"{' '.join(found)}: one direction is enough", at)
+            self.report.fail(f"{' '.join(found)}: one direction is enough", at, "keep one of them")
         return found[0] if found else None
 
     def _enum(self, enum: tree.EnumType, scope: Scope) -> Shape:
@@ -128,7 +130,11 @@ class Declarer:
             )
             following = number + 1
             if not -(1 << base.type.width - 1) <= number < 1 << base.type.width:
-                self.report.fail(f"{printable(name)} = {number} doesn't fit {base.type.width} bits", at)
+                self.report.fail(
+                    f"{printable(name)} = {number} doesn't fit {base.type.width} bits",
+                    at,
+                    "give the enum a wider base type",
+                )
             bits = number & ((1 << base.type.width) - 1)
             known = scope.names.get(name)
             if known is None or not isinstance(known, Constant):
@@ -156,7 +162,11 @@ class Declarer:
         shape = self.shape(node.type, scope)
         for name in node.names:
             if shape.direction and not scope.local and name.name not in ports:
-                self.report.fail(f"{printable(name.name)} isn't in the module's port list", name.lineno)
+                self.report.fail(
+                    f"{printable(name.name)} isn't in the module's port list",
+                    name.lineno,
+                    "list it, or drop the direction",
+                )
             net = self.net(shape, name, scope)
             if name.value is not None:
                 self.first_value(net, name, scope)
@@ -171,13 +181,17 @@ class Declarer:
 
     def first_value(self, net: Net, name: tree.Named, scope: Scope) -> None:
         if net.words:
-            self.report.fail("an initial value for a whole memory isn't supported", name.lineno)
+            self.report.fail(
+                "an initial value for a whole memory isn't supported",
+                name.lineno,
+                "assign its words in an initial block",
+            )
         if scope.local:
             self.report.fail(
                 "an initial value inside a function or task isn't supported", name.lineno, "assign it"
             )
         if net.direction == "input":
-            self.report.fail("an initial value for an input isn't supported", name.lineno)
+            self.report.fail("an initial value for an input isn't supported", name.lineno, "leave it out")
         if net.kind == "net":
             target = vast.Identifier(name.name, lineno=name.lineno)
             self.drivers.append((scope, target, name.value, name.lineno))
@@ -200,7 +214,11 @@ class Declarer:
         if name.dimensions:
             words = self._dimension(name, scope)
             if shape.direction:
-                self.report.fail(f"port {printable(name.name)} can't be a memory", name.lineno)
+                self.report.fail(
+                    f"port {printable(name.name)} can't be a memory",
+                    name.lineno,
+                    "pass its words as one vector",
+                )
         made = Net(
             name=f"{scope.prefix}{name.name}",
             type=shape.type,
@@ -221,22 +239,28 @@ class Declarer:
 
     def _dimension(self, name: tree.Named, scope: Scope) -> tuple[int, int]:
         if len(name.dimensions) > 1:
-            self.report.fail("a memory of more than one dimension isn't supported", name.lineno)
+            self.report.fail(
+                "a memory of more than one dimension isn't supported", name.lineno, "use one dimension"
+            )
         left, right = name.dimensions[0]
         first = constant(self.env(scope), left, "the bound of a memory")
         if right is None:
             if first < 1:
-                self.report.fail("a memory without words", name.lineno)
+                self.report.fail("a memory without words", name.lineno, "give it at least one word")
             return 0, first - 1
         last = constant(self.env(scope), right, "the bound of a memory")
         if abs(first - last) >= MAX_WIDTH:
-            self.report.fail(f"a memory of {abs(first - last) + 1} words", name.lineno)
+            self.report.fail(
+                f"a memory of {abs(first - last) + 1} words", name.lineno, "at most 65536 bits are read"
+            )
         return first, last
 
     def _complete(self, net: Net, shape: Shape, name: tree.Named) -> Net:
         """`output q; reg q;`, in either order: the two must agree (clause 12.3.3)."""
         if net.local or name.dimensions:
-            self.report.fail(f"{printable(name.name)} is declared twice", name.lineno)
+            self.report.fail(
+                f"{printable(name.name)} is declared twice", name.lineno, "keep one of the declarations"
+            )
         if (net.msb, net.lsb) != (shape.msb, shape.lsb):
             self.report.fail(
                 f"{printable(name.name)} is both [{net.msb}:{net.lsb}] and [{shape.msb}:{shape.lsb}]",
@@ -248,7 +272,9 @@ class Declarer:
         if kind == "variable" and direction in ("input", "inout"):
             self.report.fail(f"an {direction} can't be declared reg", name.lineno, "leave the reg out")
         if net.words:
-            self.report.fail(f"port {printable(name.name)} can't be a memory", name.lineno)
+            self.report.fail(
+                f"port {printable(name.name)} can't be a memory", name.lineno, "pass its words as one vector"
+            )
         net.direction, net.kind, net.complete = direction, kind, True
         net.type = Type(net.type.width, net.type.signed or shape.type.signed)
         return net
@@ -265,9 +291,15 @@ class Declarer:
                 given = outer[name.name]
                 used.add(name.name)
             if name.value is None and given is None:
-                self.report.fail(f"parameter {printable(name.name)} has no value", name.lineno)
+                self.report.fail(
+                    f"parameter {printable(name.name)} has no value",
+                    name.lineno,
+                    "write parameter NAME = value",
+                )
             if name.dimensions:
-                self.report.fail("a parameter array isn't supported", name.lineno)
+                self.report.fail(
+                    "a parameter array isn't supported", name.lineno, "use one parameter for each value"
+                )
             make = self._parameter(node.type, name, scope, given)
             self._add(scope, name.name, Lazy(make, name.lineno, parameter=True), name.lineno)
         return [] if node.local else [name.name for name in node.names]

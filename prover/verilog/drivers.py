@@ -152,9 +152,13 @@ class Drivers:
             if driver.error is not None:
                 raise driver.error
         if net in self.inputs and drivers:
-            self.report.fail(f"{printable(net.name)} is an input and can't be driven here", drivers[0].at)
+            self.report.fail(
+                f"{printable(net.name)} is an input and can't be driven here",
+                drivers[0].at,
+                "make it an output, or drive another net",
+            )
         taken: list[Driver] = []
-        for driver in drivers:
+        for driver in sorted(drivers, key=lambda d: d.at):
             for other in taken:
                 both = driver.mask & other.mask
                 if both:
@@ -267,7 +271,9 @@ class Drivers:
             kept.append(choice)
             if len(kept) > MAX_LOOPS:
                 driver = self.named[choice].driver
-                self.report.fail("too many combinational loops", driver.at if driver else 0)
+                self.report.fail(
+                    "too many combinational loops", driver.at if driver else 0, "cut them with registers"
+                )
             self._remark_loop(_round(inner, choice))
             del inner[choice]
             rest_edges = {name: [o for o in others if o != choice] for name, others in inner.items()}
@@ -336,6 +342,8 @@ class Drivers:
             if when is not e.FALSE:
                 forces.append(replace(force, when=when, value=value))
         where = self.report.where(driver.at if driver else part.net.offset)
+        if driver and driver.latch:
+            self.report.note(f"{printable(part.name)} is a latch: not every path assigns it", driver.at)
         kind: Literal["latch", "flip-flop"] = "latch" if driver and driver.latch else "flip-flop"
         return Register(part.name, part.width, kind, tuple(edges), tuple(forces), part.initial, where)
 

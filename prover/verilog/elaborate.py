@@ -47,7 +47,9 @@ class Library:
             if chunk.name in library.chunks:
                 other = source.where(library.chunks[chunk.name].offset)
                 report.fail(
-                    f"module {printable(chunk.name)} is defined twice: here and at {other}", chunk.offset
+                    f"module {printable(chunk.name)} is defined twice: here and at {other}",
+                    chunk.offset,
+                    "rename or remove one of them",
                 )
             library.chunks[chunk.name] = chunk
         for message, at in remarks:
@@ -186,7 +188,9 @@ class Elaboration:
             part = cut(value, high - 1, high - place.width)
             high -= place.width
             if not isinstance(place.low, int) or isinstance(place.word, Expr):
-                self.report.fail("a continuous assignment to a bit that changes isn't supported", at)
+                self.report.fail(
+                    "a continuous assignment to a bit that changes isn't supported", at, "use an always block"
+                )
             if net.kind == "variable":
                 name = printable(net.name)
                 what = f"{name} is a reg and can't be driven from outside a process"
@@ -249,7 +253,11 @@ class Elaboration:
         outputs = len(gate.terminals) - 1 if kind in ("buf", "not") else 1
         inputs = len(gate.terminals) - outputs
         if outputs < 1 or inputs < 1 or (tri_state and inputs != 2):
-            self.report.fail(f"a {kind} gate with {len(gate.terminals)} terminals", gate.at)
+            self.report.fail(
+                f"a {kind} gate with {len(gate.terminals)} terminals",
+                gate.at,
+                "a gate has its outputs first, then its inputs",
+            )
         places, bits = self.terminals(gate, outputs)
         if tri_state:
             control = bits[1] if kind.endswith("1") else e.bvnot(bits[1])
@@ -294,7 +302,11 @@ class Elaboration:
                 low = places[0].low + connection.index * port.width
                 places, total = [Place(place.net, place.word, low, port.width, False)], port.width
             elif count > 1 and total != port.width:
-                self.report.fail(f"{total} bits on {count} ports of {port.width}", at)
+                self.report.fail(
+                    f"{total} bits on {count} ports of {port.width}",
+                    at,
+                    "give one bit for each, or the same for all",
+                )
             self._remark_width(port, total, at)
             self.drive(places, e.resize(value, total, port.type.signed), at)
             return
@@ -305,7 +317,11 @@ class Elaboration:
             value = cut(value, low + port.width - 1, low)
         else:
             if count > 1 and own.width != port.width:
-                self.report.fail(f"{own.width} bits on {count} ports of {port.width}", at)
+                self.report.fail(
+                    f"{own.width} bits on {count} ports of {port.width}",
+                    at,
+                    "give one bit for each, or the same for all",
+                )
             if not isinstance(connection.value, vast.IntConst):
                 self._remark_width(port, own.width, at)
             value = run(Sizer(env).assigned(connection.value, port.width))

@@ -39,7 +39,7 @@ class State:
 
     `written` has a word per variable whose bits say under which condition each bit was assigned, and
     `touched` the bits assigned on any path. The rest is shared by all copies: where a variable was first
-    assigned, and how.
+    assigned, and how, and what has been read at all.
     """
 
     values: dict[Net, Expr] = field(default_factory=dict)
@@ -48,6 +48,7 @@ class State:
     touched: dict[Net, int] = field(default_factory=dict)
     blocking: dict[Net, bool] = field(default_factory=dict)
     at: dict[Net, int] = field(default_factory=dict)
+    reads: set[Net] = field(default_factory=set)
 
     def copy(self) -> State:
         return State(
@@ -57,6 +58,7 @@ class State:
             dict(self.touched),
             self.blocking,
             self.at,
+            self.reads,
         )
 
     def result(self, net: Net) -> Expr:
@@ -119,7 +121,9 @@ class Environment:
         if entry is None:
             self.report.fail(f"{name} isn't declared", node, f"declare {name}, or correct the name")
         if not isinstance(entry, (Net, Constant, Routine)):
-            self.report.fail(f"{name} is the name of a block or instance, not a value", node)
+            self.report.fail(
+                f"{name} is the name of a block or instance, not a value", node, "name something inside it"
+            )
         return entry
 
     def _descend(self, node: Any) -> Any:
@@ -153,6 +157,7 @@ class Environment:
     def read(self, net: Net, node: Any) -> Expr:
         if self.state is None:
             self.report.fail(f"{printable(net.name)} isn't constant", node, "use a parameter or a literal")
+        self.state.reads.add(net)
         found = self.state.values.get(net)
         if found is None:
             found = self.report.choice(net.width) if net.local else net.value
@@ -193,7 +198,9 @@ class Executor:
                 )
         rule = _STATEMENTS.get(type(node))
         if rule is None:
-            self.report.fail(f"{type(node).__name__} isn't supported as a statement", node)
+            self.report.fail(
+                f"{type(node).__name__} isn't supported as a statement", node, "the README lists what is read"
+            )
         yield rule(self, node, scope, state)
 
     # -- assignments ---------------------------------------------------------------------------------------
@@ -222,7 +229,7 @@ class Executor:
             self.report.fail("this can't be assigned", node, "assign a variable, a part of one, or {a, b}")
         place: Place = yield Sizer(env).place(node)
         if isinstance(place.net, Constant):
-            self.report.fail("a parameter can't be assigned", node)
+            self.report.fail("a parameter can't be assigned", node, "use a reg")
         return [place]
 
     def store(self, places: list[Place], value: Expr, state: State, blocking: bool, at: int) -> None:
@@ -235,7 +242,11 @@ class Executor:
                 self.report.fail(f"{printable(net.name)} is a wire and can't be assigned in a process", at,
                                  f"declare {printable(net.name)} as reg")  # fmt: skip
             if net.direction == "input":
-                self.report.fail(f"{printable(net.name)} is an input and can't be assigned", at)
+                self.report.fail(
+                    f"{printable(net.name)} is an input and can't be assigned",
+                    at,
+                    "make it an output, or assign another variable",
+                )
             if state.blocking.setdefault(net, blocking) != blocking and not net.local:
                 self.report.fail(
                     f"{printable(net.name)} is assigned with both = and <=", at,
@@ -281,7 +292,7 @@ class Executor:
         for arm in node.caselist:
             if arm.cond is None:
                 if default is not None:
-                    self.report.fail("a second default", arm)
+                    self.report.fail("a second default", arm, "keep one of them")
                 default = arm.statement
                 continue
             tests = []
@@ -302,7 +313,7 @@ class Executor:
         if default is not None and rest is not e.FALSE:
             yield self.execute(default, scope, last)
         for test, inner in reversed(ran):
-            merged = State(blocking=state.blocking, at=state.at)
+            merged = State(blocking=state.blocking, at=state.at, reads=state.reads)
             merged.merge(test, inner, last, self.report)
             last = inner if test is e.TRUE else merged
         state.values, state.pending = last.values, last.pending
@@ -343,7 +354,7 @@ class Executor:
         if node.start is not None:
             yield self.execute(node.start, scope, state)
         if node.condition is None:
-            self.report.fail("a for loop without a condition never ends", node)
+            self.report.fail("a for loop without a condition never ends", node, "give it a condition")
         yield self._loop(node, node.condition, node.body, node.step, scope, state)
 
     def _while(self, node: Any, scope: Scope, state: State) -> Task[None]:
@@ -365,12 +376,12 @@ class Executor:
             yield self.execute(body, scope, state)
             if step is not None:
                 yield self.execute(step, scope, state)
-        self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node)
+        self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node, "give it fewer rounds")
 
     def _repeat(self, node: tree.Repeat, scope: Scope, state: State) -> Task[None]:
         times: int = yield Sizer(Environment(self, scope, state)).number(node.times, "the count of a repeat")
         if times > MAX_ROUNDS:
-            self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node)
+            self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node, "give it fewer rounds")
         self.unrolling += 1
         for _ in range(times):
             yield self.execute(node.body, scope, state)
@@ -392,7 +403,9 @@ class Executor:
         env = Environment(self, scope, state)
         routine = env.find(name, routine=True)
         if not isinstance(routine, Routine) or routine.result is not None:
-            self.report.fail(f"{printable(name.name)} is no task", node)
+            self.report.fail(
+                f"{printable(name.name)} is no task", node, "declare the task, or correct the name"
+            )
         yield self.call(routine, tuple(arguments), env, state, node)
 
     def call(
@@ -401,11 +414,15 @@ class Executor:
         """Run a routine on the state: arguments in, body, outputs back; its result, or nothing of note."""
         if len(arguments) != len(routine.arguments):
             shown = printable(routine.name)
-            self.report.fail(f"{shown} takes {len(routine.arguments)} arguments", node)
+            self.report.fail(f"{shown} takes {len(routine.arguments)} arguments", node, "give it as many")
         if routine.active and not routine.automatic:
             self.report.fail(f"{printable(routine.name)} calls itself", node, "declare it automatic")
         if routine.active > MAX_CALL_DEPTH:
-            self.report.fail(f"{printable(routine.name)} calls itself without end", node)
+            self.report.fail(
+                f"{printable(routine.name)} calls itself without end",
+                node,
+                "give its recursion an end that constants reach",
+            )
         given: list[Expr | None] = []
         for formal, actual in zip(routine.arguments, arguments, strict=True):
             word: Expr | None = None

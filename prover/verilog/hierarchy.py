@@ -126,7 +126,9 @@ class Hierarchy:
         unknown = [name for name in outer if name not in used]
         if unknown and scope.prefix:
             self.report.fail(
-                f"{printable(module.name)} has no parameter {printable(unknown[0])}", module.lineno
+                f"{printable(module.name)} has no parameter {printable(unknown[0])}",
+                module.lineno,
+                "correct the name of the parameter",
             )
         self._pending.append((scope, items, defparams, depth))
         return ports, names
@@ -141,7 +143,11 @@ class Hierarchy:
                 shape = self.declarer.shape(type_, scope)
                 direction = shape.direction or direction
             if direction is None or type_ is None:
-                self.report.fail(f"port {printable(item.name.name)} has no direction", item.lineno)
+                self.report.fail(
+                    f"port {printable(item.name.name)} has no direction",
+                    item.lineno,
+                    "write input or output before it",
+                )
             words = [w for w in type_.words if w not in ("input", "output", "inout")]
             typed = tree.Type([direction, *words], type_.ranges, type_.enum, type_.named, type_.lineno)
             net = self.declarer.net(self.declarer.shape(typed, scope), item.name, scope)
@@ -165,7 +171,7 @@ class Hierarchy:
                     f"port {name} has no direction", item.lineno, f"declare input {name} or output {name}"
                 )
             if net in ports:
-                self.report.fail(f"port {name} is listed twice", item.lineno)
+                self.report.fail(f"port {name} is listed twice", item.lineno, "list it once")
             ports.append(net)
         return ports
 
@@ -192,7 +198,9 @@ class Hierarchy:
         self.scopes += 1
         if self.scopes > MAX_SCOPES:
             self.report.fail(
-                f"more than {MAX_SCOPES} instances and generate blocks", items[0] if items else 0
+                f"more than {MAX_SCOPES} instances and generate blocks",
+                items[0] if items else 0,
+                "generate less",
             )
         for item in items:
             if isinstance(item, tree.Defparam):
@@ -231,7 +239,7 @@ class Hierarchy:
         if name in scope.names:
             self.report.fail(f"{printable(name)} is declared twice", at, "rename one of them")
         if scope.depth >= MAX_BLOCKS:
-            self.report.fail(f"blocks nest more than {MAX_BLOCKS} deep", at)
+            self.report.fail(f"blocks nest more than {MAX_BLOCKS} deep", at, "nest less")
         inner = scope.child(name, kind, module)
         scope.names[name] = inner
         return inner
@@ -295,7 +303,7 @@ class Hierarchy:
         turn = scope.child(label, "block")
         value = constant(self.declarer.env(scope), item.start, "the start of a generate for")
         if not isinstance(item.step.left, vast.Identifier) or item.step.left.name != item.variable:
-            self.report.fail("a generate for must step its own variable", item.step)
+            self.report.fail("a generate for must step its own variable", item.step, "write i = i + 1")
         opened: list[tuple[Scope, str]] = []
         seen: set[int] = set()
         while True:
@@ -304,7 +312,11 @@ class Hierarchy:
                 break
             if value in seen or self.scopes + len(opened) > MAX_SCOPES:
                 what = f"more than {MAX_SCOPES} instances and generate blocks"
-                self.report.fail("this generate for never ends" if value in seen else what, item.lineno)
+                self.report.fail(
+                    "this generate for never ends" if value in seen else what,
+                    item.lineno,
+                    "its step must move towards its end",
+                )
             seen.add(value)
             name = f"{label}[{value}]"
             inner = self._open(scope, name, item.lineno)
@@ -333,7 +345,11 @@ class Hierarchy:
             for index, count in self._array(instance, scope):
                 terminals = [port.value for port in instance.ports]
                 if any(port.name is not None for port in instance.ports) or None in terminals:
-                    self.report.fail(f"a {item.kind} gate takes its terminals by position", instance.lineno)
+                    self.report.fail(
+                        f"a {item.kind} gate takes its terminals by position",
+                        instance.lineno,
+                        "write only the nets",
+                    )
                 self.primitives.append(
                     Primitive(item.kind, None, scope, terminals, index, count, instance.lineno)
                 )
@@ -348,7 +364,9 @@ class Hierarchy:
         )
         count = abs(left - right) + 1
         if count > MAX_SCOPES:
-            self.report.fail(f"more than {MAX_SCOPES} instances and generate blocks", instance.lineno)
+            self.report.fail(
+                f"more than {MAX_SCOPES} instances and generate blocks", instance.lineno, "generate less"
+            )
         return [(i, count) for i in range(count)]
 
     def _instances(
@@ -361,7 +379,9 @@ class Hierarchy:
                 f"module {shown} isn't defined", item.lineno, f"name the file that holds {shown}"
             )
         if depth >= MAX_DEPTH:
-            self.report.fail(f"instances nest more than {MAX_DEPTH} deep", item.lineno)
+            self.report.fail(
+                f"instances nest more than {MAX_DEPTH} deep", item.lineno, "does a module contain itself?"
+            )
         for instance in item.instances:
             if isinstance(module, tree.Primitive):
                 if item.delay is not None or item.parameters:
@@ -373,7 +393,7 @@ class Hierarchy:
                     )
                 continue
             if not instance.name:
-                self.report.fail("an instance without a name", instance.lineno)
+                self.report.fail("an instance without a name", instance.lineno, "name it")
             given = self._overrides(item, module, scope)
             for index, count in self._array(instance, scope):
                 name = instance.name
@@ -427,13 +447,15 @@ class Hierarchy:
             return {}
         by_name = {source.name is not None for source in sources}
         if len(by_name) > 1:
-            self.report.fail("parameters by name and by position mixed", item.lineno)
+            self.report.fail("parameters by name and by position mixed", item.lineno, "use one of both ways")
         for i, source in enumerate(sources):
             name = source.name
             if name is None:
                 if i >= len(names):
                     self.report.fail(
-                        f"{printable(module.name)} has {len(names)} parameters", source.lineno or item.lineno
+                        f"{printable(module.name)} has {len(names)} parameters",
+                        source.lineno or item.lineno,
+                        "give at most as many",
                     )
                 name = names[i]
             elif name not in names:
@@ -441,7 +463,7 @@ class Hierarchy:
                 what = f"{printable(module.name)} has no parameter {printable(name)}"
                 self.report.fail(what, source.lineno, f"it has: {known}")
             if name in given:
-                self.report.fail(f"parameter {printable(name)} is given twice", source.lineno)
+                self.report.fail(f"parameter {printable(name)} is given twice", source.lineno, "give it once")
             if source.value is not None:
                 given[name] = run(
                     Sizer(self.declarer.env(scope)).constant(source.value, f"parameter {printable(name)}")
@@ -456,11 +478,13 @@ class Hierarchy:
         shown = printable(module.name)
         by_name = [p for p in instance.ports if p.name is not None]
         if by_name and len(by_name) != len(instance.ports):
-            self.report.fail("ports by name and by position mixed", instance.lineno)
+            self.report.fail("ports by name and by position mixed", instance.lineno, "use one of both ways")
         if not by_name:
             if len(instance.ports) > len(ports):
                 self.report.fail(
-                    f"{shown} has {len(ports)} ports, not {len(instance.ports)}", instance.lineno
+                    f"{shown} has {len(ports)} ports, not {len(instance.ports)}",
+                    instance.lineno,
+                    "connect as many, or connect by name",
                 )
             return [
                 (port, given.value, given.lineno or instance.lineno)
@@ -477,7 +501,9 @@ class Hierarchy:
                 listed = ", ".join(map(printable, known))
                 self.report.fail(f"{shown} has no port {printable(name)}", given.lineno, f"it has: {listed}")
             if name in seen:
-                self.report.fail(f"port {printable(name)} is connected twice", given.lineno)
+                self.report.fail(
+                    f"port {printable(name)} is connected twice", given.lineno, "connect it once"
+                )
             seen.add(name)
             value = vast.Identifier(name, lineno=given.lineno) if given.shorthand else given.value
             if value is not None:

@@ -40,7 +40,7 @@ class Report:
     choices: int = 0
     depth: int = 0
 
-    def fail(self, message: str, at: int | Any, hint: str = "") -> NoReturn:
+    def fail(self, message: str, at: int | Any, hint: str) -> NoReturn:
         """Refuse the input at a node or an offset."""
         raise UserError(message, self.where(at), hint)
 
@@ -171,9 +171,13 @@ class Lazy:
         """The constant or routine; UserError where it needs itself."""
         if self.value is None:
             if self.busy:
-                report.fail(f"{printable(name)} is defined by itself", self.offset)
+                report.fail(f"{printable(name)} is defined by itself", self.offset, "break the circle")
             if report.depth >= MAX_NESTED:
-                report.fail(f"{printable(name)} hangs on too many others", self.offset)
+                report.fail(
+                    f"{printable(name)} hangs on too many others",
+                    self.offset,
+                    "define each parameter by earlier ones",
+                )
             self.busy = True
             report.depth += 1
             try:

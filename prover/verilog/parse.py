@@ -162,7 +162,9 @@ def _parse(tokens: list[Any]) -> tree.Module | tree.Primitive:
 
 def _explain(source: Source, chunk: Chunk, token: Any) -> UserError:
     if token is None:
-        return UserError("the text ends too early", source.where(chunk.tokens[-1].lineno))
+        return UserError(
+            "the text ends too early", source.where(chunk.tokens[-1].lineno), "is an end missing?"
+        )
     where, shown = source.where(token.lineno), printable(str(token.value))
     if token.type == "RESERVED":
         return UserError(f"{shown} isn't supported", where, "write the divider without it")

@@ -87,7 +87,7 @@ class Processes:
         events: list[tuple[str, Any, int]] | None = None
         if isinstance(statement, tree.EventControl):
             if node.kind in ("always_comb", "always_latch"):
-                self.report.fail(f"{node.kind} takes no sensitivity list", node.lineno)
+                self.report.fail(f"{node.kind} takes no sensitivity list", node.lineno, "leave the list out")
             events, statement = statement.events, statement.statement
         elif node.kind in ("always", "always_ff"):
             what = "a delay" if isinstance(statement, tree.DelayControl) else "no event"
@@ -130,7 +130,7 @@ class Processes:
             if signal.width != 1:
                 self.report.fail(f"an edge of {signal.width} bits", at, "name one bit")
             if signal.is_const:
-                self.report.fail("this edge never comes: its signal is constant", at)
+                self.report.fail("this edge never comes: its signal is constant", at, "name a net that moves")
             if signal.op == "bvnot":
                 signal, level = signal.args[0], 1 - level
             if _Event(signal, level, at)[:2] not in [f[:2] for f in found]:
@@ -147,10 +147,12 @@ class Processes:
         levels: dict[Expr, list[_Event]] = {}
         for event in found:
             levels.setdefault(event.base, []).append(event)
-        clock = self._clock(levels, inside, results)
+        clock = self._clock(levels, inside, {net.value for net in state.reads})
         controls = [group[0] for base, group in levels.items() if base is not clock]
         if len(controls) > MAX_CONTROLS:
-            self.report.fail(f"more than {MAX_CONTROLS} asynchronous controls", controls[0].at)
+            self.report.fail(
+                f"more than {MAX_CONTROLS} asynchronous controls", controls[0].at, "use fewer sets and clears"
+            )
         both = len(levels[clock]) == 2
         if both:
             self.report.note("both edges of one clock: this needs dual-edge flip-flops", levels[clock][1].at)
@@ -167,19 +169,24 @@ class Processes:
                 )
         return out
 
-    def _clock(
-        self, levels: dict[Expr, list[_Event]], inside: set[Expr], results: dict[Net, _Result]
-    ) -> Expr:
+    def _clock(self, levels: dict[Expr, list[_Event]], inside: set[Expr], read: set[Expr]) -> Expr:
         """The signal whose edge samples: the one that the block doesn't look at."""
         dual = [base for base, group in levels.items() if len(group) == 2]
         if len(dual) > 1:
-            self.report.fail("both edges of two signals: no flip-flop has two clocks", levels[dual[1]][1].at)
+            self.report.fail(
+                "both edges of two signals: no flip-flop has two clocks",
+                levels[dual[1]][1].at,
+                "keep one clock",
+            )
         if dual:
             for base, group in levels.items():
                 if base is not dual[0] and base not in inside:
                     self._two_clocks(group[0], levels[dual[0]][0])
             return dual[0]
         unused = [base for base in levels if base not in inside]
+        if len(unused) > 1:
+            # A test whose branches come to the same has left no trace in the result.
+            unused = [base for base in unused if base not in read] or unused
         if len(unused) == 1:
             return unused[0]
         if len(unused) > 1:
@@ -370,7 +377,7 @@ class Processes:
         if written.is_const:
             return [Driver(net, touched & written.value, at, word, procedural=True, keeps_itself=keeps)]
         if net.width > MAX_LATCH:
-            self.report.fail(f"a latch of {net.width} bits", at)
+            self.report.fail(f"a latch of {net.width} bits", at, "use a flip-flop")
         memo: dict[tuple[Expr, int, int], Expr] = {}
         groups: dict[Expr, int] = {}
         for high, low in runs(touched):

@@ -124,14 +124,14 @@ class Sizer:
             return bare
         value: Value = yield self.alone(node)
         if not value.word.is_const:
-            self.report.fail(f"{what} must be a known constant", node)
+            self.report.fail(f"{what} must be a known constant", node, "use literals and parameters")
         return Constant(value.word.value, 0, 0, Type(value.word.width, value.signed))
 
     def number(self, node: Any, what: str) -> Task[int]:
         """The node as a whole number."""
         found: Constant = yield self.constant(node, what)
         if found.x | found.z:
-            self.report.fail(f"{what} can't be x or z", node)
+            self.report.fail(f"{what} can't be x or z", node, "use digits")
         return found.number
 
     def pattern(self, node: Any) -> Constant | None:
@@ -147,7 +147,9 @@ class Sizer:
         try:
             found = literal(node.value)
         except ValueError as error:
-            self.report.fail(f"{printable(node.value[:40])}: {error}", node)
+            self.report.fail(
+                f"{printable(node.value[:40])}: {error}", node, "write SIZE'BASE DIGITS, as in 4'd9"
+            )
         size, tick, _ = node.value.partition("'")
         if tick and size.strip() and not found.x | found.z:
             full = literal("'" + node.value.partition("'")[2]).bits
@@ -162,8 +164,12 @@ class Sizer:
         if isinstance(node, vast.FloatConst):
             self.report.fail("real numbers aren't supported", node, "write an integer")
         if isinstance(node, vast.StringConst):
-            self.report.fail("a string has no place in an expression here", node)
-        self.report.fail(f"{type(node).__name__} isn't supported in an expression", node)
+            self.report.fail(
+                "a string has no place in an expression here", node, "the README lists what is read"
+            )
+        self.report.fail(
+            f"{type(node).__name__} isn't supported in an expression", node, "the README lists what is read"
+        )
 
     # -- names and their parts -----------------------------------------------------------------------------
 
@@ -179,7 +185,9 @@ class Sizer:
         chain.reverse()
         found = self.env.find(base)
         if isinstance(found, Routine):
-            self.report.fail(f"{printable(found.name)} is a routine, not a value", base)
+            self.report.fail(
+                f"{printable(found.name)} is a routine, not a value", base, "call it with arguments"
+            )
         name = printable(base.name)
         word: int | Expr | None = None
         if isinstance(found, Net) and found.words:
@@ -195,7 +203,7 @@ class Sizer:
         width, signed = type_.width, type_.signed
         if chain:
             if len(chain) > 1:
-                self.report.fail(f"{name} has no further part to select", chain[1])
+                self.report.fail(f"{name} has no further part to select", chain[1], "select once")
             low, width = yield self._select(chain[0], msb, lsb, type_.width, name)
             signed = False
         made = Place(found, word, low, width, signed)
@@ -207,7 +215,11 @@ class Sizer:
         value: Value = yield self.alone(node)
         low: int | Expr = self._moved(value, msb, lsb)
         if isinstance(low, int) and not 0 <= low < count:
-            self.report.fail(f"index {self._number(value)} lies outside {name}[{msb}:{lsb}]", node)
+            self.report.fail(
+                f"index {self._number(value)} lies outside {name}[{msb}:{lsb}]",
+                node,
+                "stay inside the declared range",
+            )
         return low
 
     @staticmethod
@@ -233,7 +245,9 @@ class Sizer:
         if isinstance(node, tree.IndexedSelect):
             width: int = yield self.number(node.width, "the width of a part select")
             if not 1 <= width <= count:
-                self.report.fail(f"a part of {width} bits of {name}, which has {count}", node)
+                self.report.fail(
+                    f"a part of {width} bits of {name}, which has {count}", node, "select no more than it has"
+                )
             value: Value = yield self.alone(node.base)
             # The base names the part's lowest bit where the part grows the way the declaration does.
             low = self._moved(value, msb, lsb, 0 if node.up == (msb >= lsb) else 1 - width)
@@ -241,11 +255,17 @@ class Sizer:
             left: int = yield self.number(node.msb, "the bound of a part select")
             right: int = yield self.number(node.lsb, "the bound of a part select")
             if (left < right) == (msb > lsb) and left != right:
-                self.report.fail(f"{name}[{left}:{right}] runs against its declaration [{msb}:{lsb}]", node)
+                self.report.fail(
+                    f"{name}[{left}:{right}] runs against its declaration [{msb}:{lsb}]",
+                    node,
+                    "turn the bounds round",
+                )
             low = right - lsb if msb >= lsb else lsb - right
             width = abs(left - right) + 1
         if isinstance(low, int) and not 0 <= low <= count - width:
-            self.report.fail(f"this part lies outside {name}[{msb}:{lsb}]", node)
+            self.report.fail(
+                f"this part lies outside {name}[{msb}:{lsb}]", node, "stay inside the declared range"
+            )
         return low, width
 
     def _type_place(self, node: Any) -> Task[Type]:
@@ -311,7 +331,7 @@ class Sizer:
         times: int = yield self.number(node.times, "a replication count")
         own: Type = yield self.type_of(node.value)
         if not 1 <= times <= MAX_WIDTH:
-            self.report.fail(f"a replication of {times} times", node)
+            self.report.fail(f"a replication of {times} times", node, "give a count from 1 on")
         return Type(times * own.width, False)
 
     def _type_call(self, node: Any) -> Task[Type]:
@@ -323,7 +343,11 @@ class Sizer:
     def _function(self, node: Any) -> Routine:
         found = self.env.find(node.name, routine=True)
         if not isinstance(found, Routine) or found.result is None:
-            self.report.fail(f"{printable(node.name.name)} is no function", node)
+            self.report.fail(
+                f"{printable(node.name.name)} is no function",
+                node,
+                "declare the function, or correct the name",
+            )
         return found
 
     def _type_system(self, node: Any) -> Task[Type]:
@@ -331,7 +355,9 @@ class Sizer:
         if name in ("clog2", "bits"):
             return Type(32, True)
         if name not in ("signed", "unsigned") or len(node.args) != 1 or node.args[0] is None:
-            self.report.fail(f"${printable(name)} isn't supported in an expression", node)
+            self.report.fail(
+                f"${printable(name)} isn't supported in an expression", node, "the README lists what is read"
+            )
         own: Type = yield self.type_of(node.args[0])
         return Type(own.width, name == "signed")
 
@@ -342,11 +368,13 @@ class Sizer:
         if isinstance(node.type, str):
             named = _CAST_TYPES.get(node.type) or self.env.named_type(node.type)
             if named is None:
-                self.report.fail(f"type {printable(node.type)} isn't declared", node)
+                self.report.fail(
+                    f"type {printable(node.type)} isn't declared", node, "declare it with typedef"
+                )
             return named
         width: int = yield self.number(node.type, "the width of a cast")
         if not 1 <= width <= MAX_WIDTH:
-            self.report.fail(f"a cast to {width} bits", node)
+            self.report.fail(f"a cast to {width} bits", node, "give a width from 1 on")
         return Type(width, own.signed)
 
     # -- words ---------------------------------------------------------------------------------------------
@@ -500,7 +528,7 @@ class Sizer:
             return e.const(own.width, to.width)
         if node.syscall == "clog2":
             if len(node.args) != 1 or node.args[0] is None:
-                self.report.fail("$clog2 takes one argument", node)
+                self.report.fail("$clog2 takes one argument", node, "write $clog2(value)")
             number: int = yield self.number(node.args[0], "the argument of $clog2")
             # Clause 17.11.1: the argument counts as unsigned.
             found: Type = yield self.type_of(node.args[0])

@@ -210,14 +210,18 @@ class _Preprocessor:
         self.out.append(text)
         self.length += len(text)
         if self.length > MAX_TEXT:
-            raise UserError(f"more than {MAX_TEXT} characters after directives", file.where(offset))
+            raise UserError(
+                f"more than {MAX_TEXT} characters after directives",
+                file.where(offset),
+                "is this one divider?",
+            )
 
     def _file(self, path: Path, name: str, where: Where | None) -> None:
         real = path.resolve()
         if real in self.opened:
             raise UserError(f"{printable(name)} includes itself", where, "guard it with `ifndef")
         if len(self.opened) >= MAX_DEPTH:
-            raise UserError("include files nest too deeply", where)
+            raise UserError("include files nest too deeply", where, "include less deeply")
         file = _load(path, name, where)
         if name not in self.read:
             self.read.append(name)
@@ -260,9 +264,9 @@ class _Preprocessor:
                     )
                 self._emit(lexeme, file, start)
         if branches:
-            raise UserError("this conditional has no `endif", branches[-1].where)
+            raise UserError("this conditional has no `endif", branches[-1].where, "close it with `endif")
         if off is not None:
-            raise UserError("translate_off without translate_on", off)
+            raise UserError("translate_off without translate_on", off, "close it with a translate_on comment")
 
     def _tick(
         self, file: _File, folder: Path, lexeme: str, start: int, position: int, branches: list[_Branch]
@@ -302,7 +306,7 @@ class _Preprocessor:
         else:
             found = _NAME.match(file.text, position)
         if not found:
-            raise UserError(f"`{name} needs an argument", where)
+            raise UserError(f"`{name} needs an argument", where, "complete the directive")
         if name == "undef":
             self.macros.pop(found.group(1), None)
         elif name == "default_nettype":
@@ -314,7 +318,7 @@ class _Preprocessor:
         if name in ("ifdef", "ifndef", "elsif"):
             found = _NAME.match(file.text, position)
             if not found:
-                raise UserError(f"`{name} needs a macro name", where)
+                raise UserError(f"`{name} needs a macro name", where, "name the macro")
             position = found.end()
             holds = (found.group(1) in self.macros) != (name == "ifndef")
         else:
@@ -323,13 +327,13 @@ class _Preprocessor:
             branches.append(_Branch(holds, holds, False, where))
             return position
         if not branches:
-            raise UserError(f"`{name} without `ifdef", where)
+            raise UserError(f"`{name} without `ifdef", where, "remove it, or open the conditional")
         branch = branches[-1]
         if name == "endif":
             branches.pop()
             return position
         if branch.finished:
-            raise UserError(f"`{name} after `else", where)
+            raise UserError(f"`{name} after `else", where, "an `ifdef has one `else, and it comes last")
         branch.finished = name == "else"
         branch.active = holds and not branch.taken
         branch.taken = branch.taken or holds
@@ -361,10 +365,10 @@ class _Preprocessor:
         where = file.where(start)
         found = _NAME.match(file.text, position)
         if not found:
-            raise UserError("`define needs a name", where)
+            raise UserError("`define needs a name", where, "write `define NAME text")
         name, position = found.group(1), found.end()
         if name in _DIRECTIVES:
-            raise UserError(f"`{name} is a directive and can't be defined", where)
+            raise UserError(f"`{name} is a directive and can't be defined", where, "choose another name")
         body, end = self._logical_line(file, position)
         parameters: list[tuple[str, str | None]] | None = None
         if body.startswith("("):
@@ -373,7 +377,9 @@ class _Preprocessor:
             for item in listed if listed != [""] else []:
                 word, _, default = item.partition("=")
                 if not re.fullmatch(r"[A-Za-z_][\w$]*", word.strip(), re.ASCII):
-                    raise UserError(f"`{name}: {printable(item)!r} is no parameter name", where)
+                    raise UserError(
+                        f"`{name}: {printable(item)!r} is no parameter name", where, "list plain names"
+                    )
                 parameters.append((word.strip(), default.strip() if "=" in item else None))
             body = body[rest:]
         self.macros[name] = _Macro(body.strip(), parameters)
@@ -421,27 +427,33 @@ class _Preprocessor:
                 f"`{shown} is neither a directive nor a macro", use, f"define it: --define {shown}=TEXT"
             )
         if name in within:
-            raise UserError(f"macro {printable(name)} expands to itself", use)
+            raise UserError(f"macro {printable(name)} expands to itself", use, "break the circle")
         if len(within) >= MAX_DEPTH:
-            raise UserError("macros nest too deeply", use)
+            raise UserError("macros nest too deeply", use, "nest macros less deeply")
         self.expansions += 1
         body = macro.text
         if macro.parameters is not None:
             opening = re.compile(r"\s*\(").match(text, position)
             if not opening:
-                raise UserError(f"macro {printable(name)} needs arguments", use)
+                raise UserError(
+                    f"macro {printable(name)} needs arguments", use, "give it as many as its definition has"
+                )
             given, position = _arguments(text, opening.end() - 1, use)
             body = self._fill(name, macro, [self._rescan(g, use, within) for g in given], use)
         replaced = self._rescan(body, use, (*within, name))
         self.expanded += len(replaced)
         if self.expanded > MAX_EXPANDED or self.expansions > MAX_EXPANSIONS:
-            raise UserError("macros expand without measure", use)
+            raise UserError("macros expand without measure", use, "use fewer macros in each other")
         return replaced, position
 
     def _fill(self, name: str, macro: _Macro, given: list[str], use: Where) -> str:
         parameters = macro.parameters or []
         if len(given) > len(parameters) and given != [""]:
-            raise UserError(f"macro {printable(name)} takes {len(parameters)} arguments", use)
+            raise UserError(
+                f"macro {printable(name)} takes {len(parameters)} arguments",
+                use,
+                "give it as many as its definition has",
+            )
         values: dict[str, str] = {}
         for i, (parameter, default) in enumerate(parameters):
             if i < len(given) and (given[i] or default is None):
@@ -449,10 +461,14 @@ class _Preprocessor:
             elif default is not None:
                 values[parameter] = default
             else:
-                raise UserError(f"macro {printable(name)} takes {len(parameters)} arguments", use)
+                raise UserError(
+                    f"macro {printable(name)} takes {len(parameters)} arguments",
+                    use,
+                    "give it as many as its definition has",
+                )
         size = sum(len(values.get(m.group(), "")) for m in _WORD.finditer(macro.text))
         if size > MAX_EXPANDED:
-            raise UserError("macros expand without measure", use)
+            raise UserError("macros expand without measure", use, "use fewer macros in each other")
         return _WORD.sub(lambda m: values.get(m.group(), m.group()), macro.text).replace("``", "")
 
     def _rescan(self, text: str, use: Where, within: tuple[str, ...]) -> str:
@@ -492,4 +508,4 @@ def _arguments(text: str, opening: int, where: Where) -> tuple[list[str], int]:
         elif lexeme == "," and depth == 1:
             pieces.append(text[start : found.start()].strip())
             start = found.end()
-    raise UserError("the list of macro arguments never ends", where)
+    raise UserError("the list of macro arguments never ends", where, "close the bracket")

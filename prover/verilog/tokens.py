@@ -146,7 +146,9 @@ def tokenize(source: Source, notes: list[tuple[str, int]]) -> list[Any]:
         if not found:
             where = source.where(position)
             shown = printable(text[position])
-            raise UserError(f"character {shown!r} has no place in Verilog", where)
+            raise UserError(
+                f"character {shown!r} has no place in Verilog", where, "remove it, or put it in a comment"
+            )
         kind, value, start = found.lastgroup, found.group(), position
         position = found.end()
         if kind == "space":
@@ -159,7 +161,7 @@ def tokenize(source: Source, notes: list[tuple[str, int]]) -> list[Any]:
         elif kind == "word" and value == "specify":
             end = re.compile(r"\bendspecify\b").search(text, position)
             if not end:
-                raise UserError("specify without endspecify", source.where(start))
+                raise UserError("specify without endspecify", source.where(start), "close it with endspecify")
             notes.append(("specify block passed over: it holds delays only", start))
             position = end.end()
         elif kind == "word" and value in ("timeunit", "timeprecision"):
@@ -167,7 +169,7 @@ def tokenize(source: Source, notes: list[tuple[str, int]]) -> list[Any]:
         elif kind == "word" and value == "table":
             end = re.compile(r"\bendtable\b").search(text, position)
             if not end:
-                raise UserError("table without endtable", source.where(start))
+                raise UserError("table without endtable", source.where(start), "close it with endtable")
             out.append(_token("TABLETEXT", text[position : end.start()], position))
             position = end.end()
         else:
@@ -222,7 +224,9 @@ def chunks(source: Source, tokens: list[Any]) -> list[Chunk]:
                 end += 1
             if end >= len(tokens):
                 raise UserError(
-                    f"syntax error: {first.value} without end{first.value}", source.where(first.lineno)
+                    f"syntax error: {first.value} without end{first.value}",
+                    source.where(first.lineno),
+                    "is an end missing before it?",
                 )
             body = tokens[position : end + 1]
             position = _skip_label(tokens, end + 1)
@@ -241,7 +245,7 @@ def _skip_label(tokens: list[Any], position: int) -> int:
 
 def _chunk(source: Source, body: list[Any], shared: list[Any]) -> Chunk:
     if len(body) < 2 or body[1].type != "ID":
-        raise UserError("a module without a name", source.where(body[0].lineno))
+        raise UserError("a module without a name", source.where(body[0].lineno), "write module NAME")
     kinds = [t.type for t in body[2:5]]
     portless = kinds[:1] == ["SEMICOLON"] or kinds[:3] == ["LPAREN", "RPAREN", "SEMICOLON"]
     header = next((i for i, t in enumerate(body) if t.type == "SEMICOLON"), 0)

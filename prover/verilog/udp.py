@@ -53,15 +53,19 @@ def rows(report: Report, primitive: tree.Primitive, sequential: bool) -> list[Ro
             continue
         fields = [part.strip().lower() for part in line.split(":")]
         if len(fields) != (3 if sequential else 2):
-            report.fail("a table row with the wrong number of fields", at)
+            report.fail("a table row with the wrong number of fields", at, "separate the fields with colons")
         symbols = _symbols(report, fields[0], at)
         if len(symbols) != len(primitive.ports) - 1:
-            report.fail(f"a table row for {len(symbols)} inputs, not {len(primitive.ports) - 1}", at)
+            report.fail(
+                f"a table row for {len(symbols)} inputs, not {len(primitive.ports) - 1}",
+                at,
+                "give one symbol for each input",
+            )
         edges = [i for i, s in enumerate(symbols) if isinstance(s, tuple)]
         result = fields[-1]
         state = _LEVELS.get(fields[1], "?") if sequential else "01"
         if len(edges) > (1 if sequential else 0) or state == "?" or result not in ("0", "1", "x", "-"):
-            report.fail("this table row makes no sense", at)
+            report.fail("this table row makes no sense", at, "give levels, at most one edge, and a result")
         possible = all(s not in ("", ("", "1"), ("", "0")) for s in symbols) and state
         if possible:
             out.append(Row(symbols, edges[0] if edges else None, state, result))
@@ -75,14 +79,14 @@ def _symbols(report: Report, text: str, at: int) -> list[Any]:
         if rest[0] == "(" and rest[3:4] == ")":
             before, after = (_LEVELS.get(c) for c in rest[1:3])
             if before is None or after is None:
-                report.fail(f"{rest[:4]!r} is no edge", at)
+                report.fail(f"{rest[:4]!r} is no edge", at, "write (01), (10) or a letter")
             out.append((before, after) if before and after else "")
             rest = rest[4:]
         elif rest[0] in _EDGES or rest[0] in _LEVELS:
             out.append(_EDGES[rest[0]] if rest[0] in _EDGES else _LEVELS[rest[0]])
             rest = rest[1:]
         else:
-            report.fail(f"{rest[0]!r} has no place in a table", at)
+            report.fail(f"{rest[0]!r} has no place in a table", at, "use 0 1 x ? b r f p n * and -")
     return out
 
 
@@ -111,9 +115,9 @@ def udp_driver(elaboration: Elaboration, primitive: Primitive) -> None:
     table = primitive.table
     assert table is not None
     if len(primitive.terminals) != len(table.ports) or None in primitive.terminals:
-        report.fail(f"{table.name} has {len(table.ports)} terminals", primitive.at)
+        report.fail(f"{table.name} has {len(table.ports)} terminals", primitive.at, "connect all of them")
     if len(table.ports) > MAX_INPUTS + 1:
-        report.fail(f"a primitive of more than {MAX_INPUTS} inputs", table.lineno)
+        report.fail(f"a primitive of more than {MAX_INPUTS} inputs", table.lineno, "use a module")
     output = table.ports[0].name.name
     words = [
         word
@@ -149,7 +153,11 @@ def _sequential(
     assert isinstance(net, Net)
     assert isinstance(place.low, int)
     if net.kind == "variable" or place.word is not None:
-        report.fail(f"{net.name} is a reg and can't be driven from outside a process", primitive.at)
+        report.fail(
+            f"{net.name} is a reg and can't be driven from outside a process",
+            primitive.at,
+            "declare it as wire",
+        )
     low = place.low
     state = e.extract(net.value, low, low)
 

@@ -80,7 +80,7 @@ def divider(seed: int) -> Divider:
     w = _Writer(r, reset, r.random() < 0.5)
     first = r.choice([_counter, _counter, _counter, _ripple, _clears_itself, _clears_itself, _shift])
     first(w)
-    others = [_counter, _ripple, _resample, _resample, _gated, _shift, _latch, _logic, _clears_itself]
+    others = [_counter, _ripple, _resample, _resample, _gated, _shift, _latch, _logic, _clears_itself, _cleared, _turned, _capture]
     for _ in range(r.randrange(1, 4)):
         if w.room() > 0:
             r.choice(others)(w)
@@ -255,6 +255,9 @@ def _clears_itself(w: _Writer) -> None:
     # The partial decode of the ones: what people wire.
     ones = r.randrange(2 if stages > 2 else 3, 1 << stages)
     terms = [name for i, name in enumerate(names) if ones >> i & 1]
+    if r.random() < 0.3:
+        # Or the count in full.
+        terms = [name if ones >> i & 1 else f"~{name}" for i, name in enumerate(names)]
     if len(terms) == 1:
         terms = names[-2:]
     if r.random() < 0.6:
@@ -273,6 +276,70 @@ def _clears_itself(w: _Writer) -> None:
     return None
 
 
+def _cleared(w: _Writer) -> None:
+    """A count that a bit of an earlier register, or a decode of one, sets or clears asynchronously."""
+    r = w.r
+    nets = [n for n in w.nets if not n.blocking]
+    if not nets:
+        return _resample(w)
+    n = r.choice(nets)
+    clear = w.name("clear")
+    if r.random() < 0.5 and n.width > 1:
+        w.say(f"wire {clear} = {n.name} {r.choice(['==', '!='])} {_constant(r, n.width, r.randrange(1 << n.width))};")
+    else:
+        w.say(f"wire {clear} = {r.choice(['', '~'])}{n.bit(r)};")
+    edge = r.choice(["posedge", "negedge"])
+    width = min(w.room(), r.choice([1, 2, 2]))
+    name = w.register("count", width, None)
+    high = r.random() < 0.5
+    w.say(f"always @({edge} clk or {'posedge' if high else 'negedge'} {clear})")
+    w.say(f"  if ({'' if high else '!'}{clear}) {name} <= {r.randrange(1 << width)};")
+    w.say(f"  else {name} <= {name} + 1'b1;")
+    return None
+
+
+def _capture(w: _Writer) -> None:
+    """A flip-flop on a derived clock that takes a bit of some register; perhaps set and cleared besides."""
+    r = w.r
+    nets = [n for n in w.nets if not n.blocking]
+    if not nets:
+        return _resample(w)
+    clock, data = r.choice(nets).bit(r), r.choice(nets).bit(r)
+    extra = r.choice(nets).bit(r) if r.random() < 0.3 else None
+    name = w.register("taken", 1, None)
+    edge = r.choice(["posedge", "negedge"])
+    ck = _named_clock(w, clock)
+    if extra is None:
+        _clocked(w, ck, edge, [(name, 0)], [f"{name} <= {data};"])
+        return None
+    off = w.name("off")
+    on = w.name("on")
+    w.say(f"wire {off} = {extra} & clk;")
+    w.say(f"wire {on} = {extra} & ~clk;")
+    w.say(f"always @({edge} {ck} or posedge {off} or posedge {on})")
+    w.say(f"  if ({off}) {name} <= 1'b0;")
+    w.say(f"  else if ({on}) {name} <= 1'b1;")
+    w.say(f"  else {name} <= {data};")
+    return None
+
+
+def _turned(w: _Writer) -> None:
+    """A toggle on the clock turned over by a register: by the toggle itself, so that it takes every edge, or by
+    another that moves with the clock."""
+    r = w.r
+    clock = w.name("turned")
+    nets = [n for n in w.nets if not n.blocking and n.edge in ("posedge", "negedge")]
+    itself = not nets or r.random() < 0.5
+    name = w.register("turn", 1, None)
+    by = name if itself else r.choice(nets).bit(r)
+    if r.random() < 0.5:
+        w.say(f"wire {clock};")
+        w.say(f"{r.choice(['xor', 'xnor'])} gate_{clock} ({clock}, clk, {by});")
+    else:
+        w.say(f"wire {clock} = clk {r.choice(['^', '~^'])} {by};")
+    _clocked(w, clock, r.choice(["posedge", "negedge"]), [(name, 0)], [f"{name} <= ~{name};"])
+
+
 def _resample(w: _Writer) -> None:
     """A flip-flop that takes a bit on either edge of the clock."""
     r = w.r
@@ -289,7 +356,7 @@ def _gated(w: _Writer) -> None:
     """A toggle or a small count on a gated clock; its enable moves on the edge that leaves the gate closed."""
     r = w.r
     gate_or = r.random() < 0.4
-    idle_edge = "posedge" if gate_or else "negedge"
+    idle_edge = "posedge" if gate_or != (r.random() < 0.15) else "negedge"
     enables = [n for n in w.nets if n.edge == idle_edge and not n.blocking]
     if not enables:
         condition = _condition(w, idle_edge)

@@ -1,0 +1,14 @@
+// The same ring, fed with a one only when its first 63 stages are empty: at most 63 clocks until one alone is left.
+// check: --ratio 64 --high 2
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// settling: proved
+module ring_64_onehot_fixed (input clk, input rst, output slow);
+  reg [63:0] ring;
+  always @(posedge clk)
+    if (rst) ring <= 64'd1;
+    else ring <= {ring[62:0], ~|ring[62:0]};
+  assign slow = ring[0];
+endmodule
