@@ -26,11 +26,12 @@ from prover.verilog.words import cut
 MAX_STEPS = 20_000
 MAX_ROUNDS = 8_192
 
-_SILENT = words(
+SILENT = words(
     """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff
     strobe fdisplay fwrite fclose dumpfile dumpvars dumpon dumpoff dumpall dumpflush dumplimit
     timeformat printtimescale finish stop error warning info fatal"""
 )
+"""System tasks that only serve simulation; every other one is refused."""
 
 
 @dataclass(slots=True, eq=False)
@@ -455,7 +456,7 @@ class Executor:
         return outcome[routine.result] if routine.result else e.FALSE
 
     def _system(self, node: Any, scope: Scope, state: State) -> Task[None]:
-        if node.syscall not in _SILENT:
+        if node.syscall not in SILENT:
             self.report.fail(f"${printable(node.syscall)} isn't supported", node, "assign constants instead")
         self.report.note(f"${node.syscall} passed over: it only serves simulation", node)
         return

@@ -23,7 +23,7 @@ from prover.errors import UserError
 from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import run
-from prover.verilog.execute import Environment, Executor, State
+from prover.verilog.execute import SILENT, Environment, Executor, State
 from prover.verilog.names import Net, Report, Scope
 from prover.verilog.sizing import Sizer, Value
 from prover.verilog.source import printable
@@ -445,7 +445,10 @@ def _assigns(statement: tree.Node) -> bool:
             stack += [node.true_statement, node.false_statement]
         elif isinstance(node, (tree.Repeat, tree.For)):
             stack.append(node.body)
-        elif node is not None and not isinstance(node, (tree.Null, vast.SystemCall)):
+        elif isinstance(node, vast.SystemCall):
+            if node.syscall not in SILENT:
+                return True
+        elif node is not None and not isinstance(node, tree.Null):
             return True
     return False
 
