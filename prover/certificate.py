@@ -9,7 +9,7 @@ rank along each step from any other (a simulation relation onto the ideal divide
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence, Set
+from collections.abc import Iterable, Iterator, Mapping, Sequence, Set
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -18,7 +18,7 @@ from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
-from prover.rhythm import Orbit
+from prover.rhythm import LONGEST_ROUND, Goal, Orbit
 from prover.system import State, System, settled_when
 
 if TYPE_CHECKING:
@@ -26,6 +26,9 @@ if TYPE_CHECKING:
 
 COMPUTED_SINGLY = 64
 """Single steps up to which each is evaluated by itself; more are evaluated together on arrays."""
+
+STATED_TOGETHER = 64
+"""Single steps that are stated in one obligation."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -126,12 +129,32 @@ def _wrong_steps_together(system: System, singles: Sequence[Step]) -> list[str]:
 
 def orbit_obligations(system: System, orbit: Orbit) -> Iterator[Obligation]:
     """One obligation for all the steps that share their repeats: none of them is other than claimed."""
+    yield from repeat_obligations(system, orbit_steps(orbit))
+
+
+def repeat_obligations(system: System, steps: Iterable[Step]) -> Iterator[Obligation]:
+    """The same for any steps; those outside every repeat are passed over."""
     groups: dict[tuple[tuple[int, State], ...], list[Step]] = {}
-    for step in orbit_steps(orbit):
+    for step in steps:
         if step.axes:
             groups.setdefault(step.axes, []).append(step)
     for number, (axes, members) in enumerate(groups.items()):
         yield Obligation(f"repeat {number}", _steps_goal(system, axes, members))
+
+
+def single_obligations(system: System, singles: Sequence[Step], name: str) -> Iterator[Obligation]:
+    """Obligations, a group of steps each, that no step outside any repeat is other than claimed."""
+    state = [e.var(variable, width) for variable, width in system.variables]
+    for begin in range(0, len(singles), STATED_TOGETHER):
+        wrong = e.FALSE
+        for step in singles[begin : begin + STATED_TOGETHER]:
+            here = e.conj(e.eq(v, e.const(x, v.width)) for v, x in zip(state, step.source, strict=True))
+            there = e.conj(
+                e.eq(after, e.const(x, after.width)) for after, x in zip(system.step, step.target, strict=True)
+            )
+            fits = e.bvand(there, system.output if step.level else e.bvnot(system.output))
+            wrong = e.bvor(wrong, e.bvand(here, e.bvnot(fits)))
+        yield Obligation(f"{name}, from step {begin}", wrong)
 
 
 def _steps_goal(system: System, axes: Sequence[tuple[int, State]], members: Sequence[Step]) -> Expr:
@@ -367,50 +390,59 @@ def assumption(system: System, before: Stage | None) -> Expr:
 
 def stage_faults(system: System, stages: Sequence[Stage], bound: int, effort: Effort) -> list[str]:
     """What is wrong with the claim that every power-up state is good within the bound, stage after stage."""
+    faults = stage_form_faults(system, stages, bound)
+    if faults:
+        return faults
+    effort.say("checking a cover")
+    for stage, ours, assumed in claimed_stages(system, stages):
+        refuted: set[Expr] = set()
+        for run in stage.claim.orbits:
+            faults += orbit_faults(ours, run, effort, refuted)
+        if not faults:
+            obligations = cover_obligations(ours, assumed, stage.claim)
+            faults += [each.name for each in obligations if not discharge(each, effort)]
+    return faults
+
+
+def stage_form_faults(system: System, stages: Sequence[Stage], bound: int) -> list[str]:
+    """What can be seen to be wrong with the same claim without a solver: its form, and the waves of its orbits."""
     if not stages or stages[-1].system.variables != system.variables:
         return ["the last stage is not the whole machine"]
     faults: list[str] = []
     before: Stage | None = None
-    for stage in stages:
+    for stage, ours, _ in claimed_stages(system, stages):
         names = set(stage.system.names)
-        ours = system if stage is stages[-1] else part(system, names)
         outside = {v.name for v in e.variables(ours.step) if not v.name.startswith("?")} - names
         if outside or (before is not None and not set(before.system.names) <= names):
             faults.append("a stage that depends on registers outside it")
         if stage is not stages[-1] and stage.claim.period:
             faults.append("a stage before the last that claims a wave")
-        faults += cover_faults(ours, assumption(ours, before), stage.claim, effort)
+        for run, recovery in zip(stage.claim.orbits, stage.claim.recoveries, strict=True):
+            if not run.closed or recovery > stage.claim.bound or not good_from(run, recovery, stage.claim):
+                faults.append(f"an orbit that is not good after {recovery} half-cycles")
         before = stage
     if sum(stage.claim.bound for stage in stages) > bound:
         faults.append("stages that take longer than the bound together")
     return faults
 
 
-def cover_faults(system: System, assumed: Expr, claim: CoverClaim, effort: Effort) -> list[str]:
-    """What is wrong with a cover; empty if nothing is."""
-    effort.say("checking a cover")
-    faults: list[str] = []
-    refuted: set[Expr] = set()
-    for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
-        faults += orbit_faults(system, run, effort, refuted)
-        if not run.closed or recovery > claim.bound or not _good_from(run, recovery, claim):
-            faults.append(f"an orbit that is not good after {recovery} half-cycles")
-    if faults:
-        return faults
-    for number, (run, spread) in enumerate(zip(claim.orbits, claim.spreads, strict=True)):
-        if spread and not discharge(spread_obligation(system, run, spread, number), effort):
-            faults.append(f"runs beside orbit {number}")
-    for obligation in cover_obligations(system, assumed, claim):
-        if not discharge(obligation, effort):
-            faults.append(obligation.name)
-    return faults
+def claimed_stages(system: System, stages: Sequence[Stage]) -> Iterator[tuple[Stage, System, Expr]]:
+    """Each stage, the machine it speaks of as derived here, and what may be assumed of its states."""
+    before: Stage | None = None
+    for stage in stages:
+        ours = system if stage is stages[-1] else part(system, set(stage.system.names))
+        yield stage, ours, assumption(ours, before)
+        before = stage
 
 
-def _good_from(run: Orbit, recovery: int, claim: CoverClaim) -> bool:
-    """Whether from half-cycle `recovery` on the output is high `high` of every `period` half-cycles, for ever."""
+def good_from(run: Orbit, recovery: int, claim: CoverClaim | Goal) -> bool:
+    """Whether from half-cycle `recovery` on the output is high `high` of every `period` half-cycles, for ever.
+
+    False as well where the output changes too often for that to be looked through."""
     if claim.period == 0:
         return recovery >= run.lead_half_cycles
-    if recovery > run.lead_half_cycles:
+    changes = path.changes(run.lead, LONGEST_ROUND) + path.changes(run.loop, LONGEST_ROUND)
+    if recovery > run.lead_half_cycles or changes > LONGEST_ROUND:
         return False
     rounds = [*path.pieces(run.lead), *path.pieces(run.loop), *path.pieces(run.loop)]
     at = 0
@@ -430,7 +462,11 @@ def _good_from(run: Orbit, recovery: int, claim: CoverClaim) -> bool:
 
 
 def cover_obligations(system: System, assumed: Expr, claim: CoverClaim) -> Iterator[Obligation]:
-    """One obligation for each level of the clock: no state under the assumption escapes the orbits."""
+    """No run beside an orbit is other than it; and, for each level of the clock, no state under the assumption escapes
+    the orbits."""
+    for number, (run, spread) in enumerate(zip(claim.orbits, claim.spreads, strict=True)):
+        if spread:
+            yield spread_obligation(system, run, spread, number)
     for level in (0, 1):
         fixed = {system.clock: e.const(level, 1)}
         (premise,) = e.substitute([assumed], fixed)
@@ -440,12 +476,13 @@ def cover_obligations(system: System, assumed: Expr, claim: CoverClaim) -> Itera
 
 def _covered(system: System, state: list[Expr], claim: CoverClaim) -> Expr:
     levels: list[Expr] = []
+    gone = 0
 
     def onward() -> None:
-        nonlocal state
-        values = dict(zip(system.names, state, strict=True))
-        *state, level = e.substitute([*system.step, system.output], values)
+        nonlocal state, gone
+        *state, level = onwards(system, state, gone)
         levels.append(level)
+        gone += 1
 
     reached: list[Expr] = []
     if claim.unrolled is None:
@@ -465,6 +502,14 @@ def _covered(system: System, state: list[Expr], claim: CoverClaim) -> Expr:
             reached.append(_behind_loops(system, state, levels, claim))
         onward()
     return e.disj(reached)
+
+
+def onwards(system: System, state: Sequence[Expr], number: int) -> list[Expr]:
+    """The state one half-cycle on and then the output of this one. Choices are new in every half-cycle, which the
+    number tells apart: what x stands for now says nothing of what it stands for later."""
+    values = dict(zip(system.names, state, strict=True))
+    values |= {name: e.var(f"{name}/{number}", width) for name, width in system.choices}
+    return e.substitute([*system.step, system.output], values)
 
 
 Axes = tuple[tuple[int, State], ...]
@@ -565,8 +610,8 @@ def _is_at(system: System, state: Sequence[Expr], beat: State, axes: Axes) -> Ex
 def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligation:
     """From any state, `count` half-cycles of `system` (reset held) end in one of the wanted states."""
     state: list[Expr] = [e.var(name, width) for name, width in system.variables]
-    for _ in range(count):
-        state = e.substitute(list(system.step), dict(zip(system.names, state, strict=True)))
+    for gone in range(count):
+        state = onwards(system, state, gone)[:-1]
     hits = [
         e.conj(e.eq(a, e.const(v, a.width)) for a, v in zip(state, target, strict=True)) for target in wanted
     ]

@@ -763,26 +763,42 @@ def symbol(name: str) -> str:
 def smtlib(goal: Expr, title: str = "") -> str:
     """An SMT-LIB 2.6 QF_BV script that is satisfiable iff some assignment makes the one-bit goal 1."""
     lines = [f"; {title}"] if title else []
-    lines.append("(set-logic QF_BV)")
-    order = topological([goal])
-    names: dict[Expr, str] = {}
+    defined, names = _defined([goal])
+    lines += ["(set-logic QF_BV)", *defined, f"(assert (= {names[goal]} #b1))", "(check-sat)"]
+    return "\n".join(lines) + "\n"
+
+
+def smtlib_definitions(named: Mapping[str, Expr]) -> str:
+    """SMT-LIB 2.6 text that declares the variables and defines each of the named expressions over them."""
+    lines, names = _defined(list(named.values()), taken=named)
+    for name, root in named.items():
+        lines.append(f"(define-fun {symbol(name)} () (_ BitVec {root.width}) {names[root]})")
+    return "\n".join(lines) + "\n"
+
+
+def _defined(roots: Sequence[Expr], taken: Iterable[str] = ()) -> tuple[list[str], dict[Expr, str]]:
+    """Declarations of the variables and definitions of the nodes below the roots, and what each is called."""
+    order = topological(roots)
+    names = {node: symbol(node.name) for node in order if node.op == "var"}
+    used = [*names.values(), *map(symbol, taken)]
+    if len(set(used)) != len(used):
+        raise InternalError("two names that are one SMT-LIB symbol")
+    # A quoted symbol and the same one without quotes are one symbol, so a register may be called t0.
+    prefix = "t"
+    while any(name.startswith(f"|{prefix}") and name[len(prefix) + 1 : -1].isdigit() for name in used):
+        prefix += "_"
+    lines = [f"(declare-const {name} (_ BitVec {node.width}))" for node, name in names.items()]
     count = 0
-    for node in order:
-        if node.op == "var":
-            names[node] = symbol(node.name)
-            lines.append(f"(declare-const {names[node]} (_ BitVec {node.width}))")
     for node in order:
         if node.op == "var":
             continue
         if node.op == "const":
             names[node] = f"(_ bv{node.value} {node.width})"
             continue
-        names[node] = f"t{count}"
+        names[node] = f"{prefix}{count}"
         count += 1
         lines.append(f"(define-fun {names[node]} () (_ BitVec {node.width}) {_smt_node(node, names)})")
-    lines.append(f"(assert (= {names[goal]} #b1))")
-    lines.append("(check-sat)")
-    return "\n".join(lines) + "\n"
+    return lines, names
 
 
 def _smt_node(node: Expr, names: Mapping[Expr, str]) -> str:

@@ -67,6 +67,7 @@ class Settling:
     by_form    the bound follows from the form of the expressions, without a solver
     goals      what must not be satisfiable for the depth and the absence of further races, to be checked again
     open       why the depth or the races are not known, "" when they are
+    answers    the answers to all questions asked on the way, in order; from them it can be found again
     """
 
     depth: int | None
@@ -76,14 +77,22 @@ class Settling:
     races: tuple[Race, ...]
     open: str = ""
     goals: tuple[Expr, ...] = ()
+    answers: tuple[Model | None, ...] = ()
 
 
 def settle(
-    design: Design, clock: str, inputs: Inputs, output: Expr, effort: Effort, edge_wins: bool = False
+    design: Design,
+    clock: str,
+    inputs: Inputs,
+    output: Expr,
+    effort: Effort,
+    edge_wins: bool = False,
+    ask: Ask | None = None,
 ) -> tuple[System, Settling]:
     """The system with the number of micro-steps that it needs, and what was found on the way.
 
-    When something never settles, or the effort runs out, the system is built as far as was tried.
+    When something never settles, or the effort runs out, the system is built as far as was tried. `ask` answers
+    the questions in place of the solver.
     """
     effort.say("bounding the micro-steps of a step")
     before, now = start(design, clock, inputs)
@@ -95,23 +104,26 @@ def settle(
     by_form = False
     limit = len(design.registers) + 2
     goals: list[Expr] = []
+    answers: list[Model | None] = []
 
     def none(goal: Expr) -> Model | None:
-        """The solver's answer; where it is that there is none, the question is kept."""
-        model = find(goal, effort)
-        if model is None and not goal.is_const:
-            goals.append(goal)
+        """The answer; where it is that there is none, the question is kept."""
+        model = ask(goal) if ask else find(goal, effort)
+        if not goal.is_const:
+            answers.append(model)
+            if model is None:
+                goals.append(goal)
         return model
 
     try:
         rest_chain, at_rest, _ = _bound(design, before, before, e.TRUE, none, edge_wins)
         if at_rest is None:
-            unsettled = _witness(design, clock, rest_chain, before, before, e.TRUE, effort)
+            unsettled = _witness(design, clock, rest_chain, before, before, e.TRUE, none)
         else:
             chain, depth, by_form = _bound(design, before, now, assumed, none, edge_wins)
             limit = len(chain)
             if depth is None:
-                unsettled = _witness(design, clock, chain, before, now, assumed, effort)
+                unsettled = _witness(design, clock, chain, before, now, assumed, none)
             else:
                 limit = max(depth, 1)
     except OutOfEffort as out:
@@ -123,7 +135,8 @@ def settle(
             races = tuple(find_races(system, none))
         except OutOfEffort as out:
             why = str(out)
-    return system, Settling(depth, at_rest, by_form, unsettled, races, why, tuple(goals))
+    found = Settling(depth, at_rest, by_form, unsettled, races, why, tuple(goals), tuple(answers))
+    return system, found
 
 
 def _bound(
@@ -154,11 +167,11 @@ def _witness(
     before: Moment,
     now: Moment,
     assumed: Expr,
-    effort: Effort,
+    ask: Ask,
 ) -> Unsettled:
     """A state whose micro-steps repeat for ever, replayed on values."""
     moves = e.bvand(assumed, e.bvnot(same(design.registers, chain[-1], chain[-2])))
-    model = find(moves, effort)
+    model = ask(moves)
     names = [*(r.name for r in design.registers), clock]
     state = tuple((model or {}).get(name, 0) for name in names)
     values = {name: e.const(v, before[name].width) for name, v in zip(names, state, strict=True)}

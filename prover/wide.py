@@ -308,6 +308,7 @@ class _Cover:
         self.widths = [w for _, w in system.variables]
         self.lines: list[Line] = []
         self.loops: set[frozenset[Item]] = set()
+        self.widening = False
         self.known: orbit.Places = {}
         # By identity: a line's hash would walk its whole path. The line is kept, so that its id stays its own.
         self.placed: dict[int, tuple[Line, list[tuple[int, State, Axes]]]] = {}
@@ -316,7 +317,8 @@ class _Cover:
         """Take a start state's line into the cover, and the line that widens it; the slower of the two."""
         run = self._traced(start)
         line = self._line(run)
-        early = self._earliest(run)
+        passes = any(isinstance(item, Repeat) for item in run.lead)
+        early = self._earliest(run) if self.widening or passes else run
         if early is run or line.recovery is None:
             self.lines.append(line)
             return line
@@ -327,12 +329,17 @@ class _Cover:
         slower = wider.recovery is None or wider.recovery > line.recovery
         return wider if slower else line
 
+    def widen(self) -> None:
+        """From now on let lines stand for as many states as they can."""
+        self.widening = True
+        self.lines = [self._line(line.orbit) for line in self.lines]
+
     def _line(self, run: Orbit) -> Line:
         recovery: int | None = run.lead_half_cycles
         if self.goal is not None:
             recovery = recovery_on(run, self.goal.period, self.goal.high)
-        if recovery is None:
-            return Line(run, None)
+        if recovery is None or not self.widening:
+            return Line(run, recovery)
         low, spread = self._spread(run)
         return Line(low, recovery, spread)
 
@@ -793,6 +800,7 @@ def _narrowed(made: _Cover, high: int) -> Cover | None:
 
 def _by_lines(made: _Cover) -> Cover:
     """Lines added until every state gets on one within a few half-cycles."""
+    made.widen()
     while True:
         made.effort.say(f"looking for a state outside {len(made.lines)} paths")
         model = find(made.outside(MERGE), made.effort)

@@ -137,7 +137,7 @@ def _condition(w: _Writer, edge: str | None) -> str:
     n = r.choice(nets)
     kinds = [n.bit(r), f"~{n.bit(r)}", f"!{n.name}", f"|{n.name}", f"^{n.name}", f"&{n.name}"]
     value = r.randrange(1 << n.width)
-    kinds += [f"{n.name} {op} {_constant(r, n.width, value)}" for op in ("==", "!=", "<", ">=", ">")]
+    kinds += [f"{n.name} {op} {_constant(r, n.width, value)}" for op in ("==", "!=", "<=", ">=")]
     if n.signed:
         kinds += [f"{n.name} < 0", f"{n.name} >= -1", f"{n.name} > {n.width}'sd1"]
     one = r.choice(kinds)
@@ -304,11 +304,15 @@ def _capture(w: _Writer) -> None:
     nets = [n for n in w.nets if not n.blocking]
     if not nets:
         return _resample(w)
-    clock, data = r.choice(nets).bit(r), r.choice(nets).bit(r)
-    extra = r.choice(nets).bit(r) if r.random() < 0.3 else None
+    clock = r.choice(nets)
+    others = [n for n in nets if n is not clock]
+    if not others:
+        return _resample(w)
+    data = r.choice(others).bit(r)
+    extra = r.choice(others).bit(r) if r.random() < 0.3 else None
     name = w.register("taken", 1, None)
     edge = r.choice(["posedge", "negedge"])
-    ck = _named_clock(w, clock)
+    ck = _named_clock(w, clock.bit(r))
     if extra is None:
         _clocked(w, ck, edge, [(name, 0)], [f"{name} <= {data};"])
         return None
