@@ -27,6 +27,9 @@ if TYPE_CHECKING:
 COMPUTED_SINGLY = 64
 """Single steps up to which each is evaluated by itself; more are evaluated together on arrays."""
 
+TRIED = 10
+"""Bits of variables up to which every assignment is tried."""
+
 STATED_TOGETHER = 64
 """Single steps that are stated in one obligation."""
 
@@ -44,12 +47,16 @@ class Obligation:
 
 
 def discharge(obligation: Obligation, effort: Effort) -> bool:
-    """Whether the solver, given nothing but the script's text, refutes it."""
+    """Whether no assignment makes the goal true: by trying all of them on arrays while they are few, else by the
+    solver, given nothing but the script's text."""
     if obligation.goal.is_const:
         return obligation.goal.value == 0
+    effort.check()
+    used = e.variables([obligation.goal])
+    if sum(v.width for v in used) <= TRIED:
+        return not _all_assignments([obligation.goal], used)[0].any()
     import z3
 
-    effort.check()
     solver = z3.SolverFor("QF_BV")
     solver.set("timeout", max(1, int(effort.left * 1000)))
     solver.from_string(obligation.script())
@@ -57,6 +64,18 @@ def discharge(obligation: Obligation, effort: Effort) -> bool:
     if answer == z3.unknown:
         raise OutOfEffort(f"the solver gave up on the obligation {obligation.name}")
     return bool(answer == z3.unsat)
+
+
+def _all_assignments(roots: Sequence[Expr], used: Sequence[Expr]) -> list[np.ndarray]:
+    """The roots' values for every assignment to the variables, the first of them changing fastest."""
+    import numpy as np
+
+    numbers = np.arange(1 << sum(v.width for v in used), dtype=np.uint64)
+    values, at = {}, 0
+    for v in used:
+        values[v.name] = (numbers >> np.uint64(at)) & np.uint64((1 << v.width) - 1)
+        at += v.width
+    return e.arrays(roots, values)
 
 
 # -- orbits ------------------------------------------------------------------------------------------------

@@ -1,8 +1,12 @@
-"""One question to the solver: values that make a one-bit expression true, or the certainty that there are none."""
+"""One question: values that make a one-bit expression true, or the certainty that there are none.
+
+Small questions are answered by trying everything, the others by an SMT solver for bit vectors."""
 
 from __future__ import annotations
 
+import itertools
 import random
+from collections.abc import Sequence
 from typing import Any
 
 from prover import expr as e
@@ -12,6 +16,9 @@ from prover.expr import Expr
 
 Model = dict[str, int]
 
+TRIED = 10
+"""Bits of variables up to which every assignment is tried: quicker than a solver's start."""
+
 
 def find(goal: Expr, effort: Effort) -> Model | None:
     """Values of the goal's variables for which it is 1, or None if it can't be.
@@ -20,9 +27,12 @@ def find(goal: Expr, effort: Effort) -> Model | None:
     """
     if goal.is_const:
         return {} if goal.value else None
+    effort.check()
+    used = e.variables([goal])
+    if sum(v.width for v in used) <= TRIED:
+        return _tried(goal, used)
     import z3
 
-    effort.check()
     (term,) = e.z3_terms([goal])
     solver = z3.SolverFor("QF_BV")
     solver.set("timeout", max(1, int(effort.left * 1000)))
@@ -40,6 +50,14 @@ def find(goal: Expr, effort: Effort) -> Model | None:
     if e.evaluate([goal], values) != [1]:
         raise InternalError("the solver's model does not satisfy the question")
     return values
+
+
+def _tried(goal: Expr, used: Sequence[Expr]) -> Model | None:
+    run = e.compile_step([goal], [v.name for v in used])
+    for values in itertools.product(*(range(1 << v.width) for v in used)):
+        if run(*values)[0]:
+            return {v.name: value for v, value in zip(used, values, strict=True)}
+    return None
 
 
 def constant(value: Expr) -> int | None:

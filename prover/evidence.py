@@ -1,0 +1,352 @@
+"""Evidence: what the verdicts on a divider rest on, as plain data that goes into a certificate and comes out again.
+
+Nothing in it is believed. `recheck` derives from it, and from the sources, obligations that any solver can refute,
+and the verdicts. Reading is strict: whatever is not of the form that `as_object` writes is refused.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any, TypeVar
+
+from prover.path import Beat, Item, Path, Repeat
+from prover.solve import Model
+from prover.system import State
+from prover.tables import Ranking, Rounds
+
+DEEPEST = 40
+"""Repeats within one another that are read."""
+
+LONGEST = 1 << 20
+"""Half-cycles to unroll, or to hold reset, that are read."""
+
+Object = dict[str, Any]
+Read = TypeVar("Read")
+
+
+class Malformed(ValueError):
+    """Evidence that is not of the right form; the message says where and what."""
+
+
+@dataclass(frozen=True, slots=True)
+class Track:
+    """A lead-in and the loop that it enters, as in an Orbit, without the widths; either may be empty."""
+
+    lead: Path
+    loop: Path
+
+
+@dataclass(frozen=True, slots=True)
+class Lasso:
+    """A power-up state's run. `start` is the state of the whole divider, registers that were left out included."""
+
+    track: Track
+    start: State
+
+
+@dataclass(frozen=True, slots=True)
+class Hold:
+    """Reset held for so many half-cycles leaves one of the states, from wherever it began; all of them really occur.
+
+    settling  the answers from which the micro-steps under reset are bounded"""
+
+    half_cycles: int
+    states: tuple[State, ...]
+    settling: tuple[Model | None, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Covered:
+    """One orbit of a stage: its recovery in half-cycles, and the count and vector of its spread (see CoverClaim)."""
+
+    track: Track
+    recovery: int
+    spread: tuple[int, State] | None
+
+
+@dataclass(frozen=True, slots=True)
+class Layer:
+    """A stage of a cover: its registers, and the numbers of `certificate.CoverClaim`."""
+
+    registers: tuple[str, ...]
+    orbits: tuple[Covered, ...]
+    unrolled: int | None
+    merge: int
+    bound: int
+
+
+@dataclass(frozen=True, slots=True)
+class Evidence:
+    """Everything that the verdicts rest on.
+
+    settling    answers to the questions about micro-steps and races, in the order in which `settle` asks them: None
+                where there is no such state, else values for which there is
+    cone        whether registers that the output does not depend on are left out
+    word        registers that are read as one word, lowest first; empty if there are none
+    reset       the states that reset leaves; None where the claim begins elsewhere, or where they are not certain
+    starts      the runs of the start states, in order
+    everywhere  about all power-up states: the stages of a cover, a ranking, or a list of loops
+    lassos      power-up states that refute something, or that need the longest
+    """
+
+    settling: tuple[Model | None, ...]
+    cone: bool
+    word: tuple[str, ...]
+    reset: Hold | None
+    starts: tuple[Track, ...]
+    everywhere: tuple[Layer, ...] | Ranking | Rounds | None
+    lassos: tuple[Lasso, ...]
+
+
+# -- writing -----------------------------------------------------------------------------------------------
+
+
+def as_object(evidence: Evidence) -> Object:
+    """The evidence as dictionaries and lists; a path that is used several times is written once, in `paths`."""
+    numbers: dict[Path, int] = {}
+
+    def track(of: Track) -> Object:
+        return {"lead": number(of.lead), "loop": number(of.loop)}
+
+    def number(path: Path) -> int | None:
+        return numbers.setdefault(path, len(numbers)) if path else None
+
+    out: Object = {
+        "cone": evidence.cone,
+        "word": list(evidence.word),
+        "settling": list(evidence.settling),
+        "reset": None,
+        "starts": [track(of) for of in evidence.starts],
+        "everywhere": _everywhere(evidence.everywhere, track),
+        "lassos": [{**track(lasso.track), "start": list(lasso.start)} for lasso in evidence.lassos],
+    }
+    if evidence.reset is not None:
+        out["reset"] = {
+            "half_cycles": evidence.reset.half_cycles,
+            "states": [list(state) for state in evidence.reset.states],
+            "settling": list(evidence.reset.settling),
+        }
+    out["paths"] = [[_item(item) for item in path] for path in numbers]
+    return out
+
+
+def _everywhere(
+    of: tuple[Layer, ...] | Ranking | Rounds | None, track: Callable[[Track], Object]
+) -> Object | None:
+    if of is None:
+        return None
+    if isinstance(of, Ranking):
+        return {"kind": "ranking", "bound": of.bound, "phase": list(of.phase), "rank": list(of.rank)}
+    if isinstance(of, Rounds):
+        levels = ["".join(map(str, shown)) for shown in of.levels]
+        members = [list(states) for states in of.members]
+        return {"kind": "loops", "members": members, "levels": levels, "distance": list(of.distance)}
+    return {"kind": "cover", "stages": [_layer(layer, track) for layer in of]}
+
+
+def _layer(layer: Layer, track: Callable[[Track], Object]) -> Object:
+    orbits = [
+        {
+            **track(each.track),
+            "recovery": each.recovery,
+            "spread": None if each.spread is None else [each.spread[0], list(each.spread[1])],
+        }
+        for each in layer.orbits
+    ]
+    return {
+        "registers": list(layer.registers),
+        "unrolled": layer.unrolled,
+        "merge": layer.merge,
+        "bound": layer.bound,
+        "orbits": orbits,
+    }
+
+
+def _item(item: Item) -> Object:
+    if isinstance(item, Beat):
+        return {"state": list(item.state), "level": item.level}
+    return {"times": item.times, "stride": list(item.stride), "body": [_item(inner) for inner in item.body]}
+
+
+# -- reading -----------------------------------------------------------------------------------------------
+
+
+def read(value: Any) -> Evidence:
+    """The evidence in an object. Raises Malformed."""
+    of = _fields(value, "evidence", "cone word settling reset starts everywhere lassos paths")
+    paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(_list(of["paths"], "paths"))]
+
+    def track(x: Any, where: str) -> Track:
+        return Track(path(x["lead"], f"{where}/lead"), path(x["loop"], f"{where}/loop"))
+
+    def path(x: Any, where: str) -> Path:
+        return () if x is None else paths[_number(x, where, 0, len(paths) - 1)]
+
+    def start(x: Any, where: str) -> Track:
+        return track(_fields(x, where, "lead loop"), where)
+
+    def lasso(x: Any, where: str) -> Lasso:
+        of = _fields(x, where, "lead loop start")
+        return Lasso(track(of, where), _state(of["start"], f"{where}/start"))
+
+    if not isinstance(of["cone"], bool):
+        raise Malformed("cone: neither true nor false")
+    return Evidence(
+        settling=_each(of["settling"], "settling", _answer),
+        cone=of["cone"],
+        word=_each(of["word"], "word", _text),
+        reset=None if of["reset"] is None else _hold(of["reset"]),
+        starts=_each(of["starts"], "starts", start),
+        everywhere=_read_everywhere(of["everywhere"], track),
+        lassos=_each(of["lassos"], "lassos", lasso),
+    )
+
+
+def _hold(value: Any) -> Hold:
+    of = _fields(value, "reset", "half_cycles states settling")
+    return Hold(
+        _number(of["half_cycles"], "reset/half_cycles", 0, LONGEST),
+        _each(of["states"], "reset/states", _state),
+        _each(of["settling"], "reset/settling", _answer),
+    )
+
+
+def _read_everywhere(
+    value: Any, track: Callable[[Any, str], Track]
+) -> tuple[Layer, ...] | Ranking | Rounds | None:
+    if value is None:
+        return None
+    kind = value.get("kind") if isinstance(value, dict) else None
+    if kind == "cover":
+        of = _fields(value, "everywhere", "kind stages")
+        return _each(of["stages"], "stages", lambda x, where: _read_layer(x, where, track))
+    if kind == "ranking":
+        of = _fields(value, "everywhere", "kind bound phase rank")
+        phase, rank = _numbers(of["phase"], "phase"), _numbers(of["rank"], "rank")
+        return Ranking(phase, rank, _number(of["bound"], "bound", 0))
+    if kind == "loops":
+        of = _fields(value, "everywhere", "kind members levels distance")
+        levels = _each(of["levels"], "levels", _levels)
+        members = _each(of["members"], "members", _numbers)
+        if len(members) != len(levels):
+            raise Malformed("levels: not as many as loops")
+        return Rounds(members, levels, _numbers(of["distance"], "distance"))
+    raise Malformed("everywhere: of no known kind")
+
+
+def _read_layer(value: Any, where: str, track: Callable[[Any, str], Track]) -> Layer:
+    of = _fields(value, where, "registers unrolled merge bound orbits")
+
+    def covered(x: Any, where: str) -> Covered:
+        of = _fields(x, where, "lead loop recovery spread")
+        spread = None
+        if of["spread"] is not None:
+            pair = _list(of["spread"], f"{where}/spread")
+            if len(pair) != 2:
+                raise Malformed(f"{where}/spread: not a count and a vector")
+            spread = (_number(pair[0], f"{where}/spread", 1), _state(pair[1], f"{where}/spread"))
+        return Covered(track(of, where), _number(of["recovery"], f"{where}/recovery", 0), spread)
+
+    unrolled = of["unrolled"]
+    return Layer(
+        registers=_each(of["registers"], f"{where}/registers", _text),
+        orbits=_each(of["orbits"], f"{where}/orbits", covered),
+        unrolled=None if unrolled is None else _number(unrolled, f"{where}/unrolled", 0, LONGEST),
+        merge=_number(of["merge"], f"{where}/merge", 0, LONGEST),
+        bound=_number(of["bound"], f"{where}/bound", 0),
+    )
+
+
+def _path(value: Any, where: str, depth: int) -> Path:
+    if depth > DEEPEST:
+        raise Malformed(f"{where}: more than {DEEPEST} repeats within one another")
+    items: list[Item] = []
+    for i, x in enumerate(_list(value, where)):
+        here = f"{where}/{i}"
+        if isinstance(x, dict) and "times" in x:
+            of = _fields(x, here, "times stride body")
+            body = _path(of["body"], f"{here}/body", depth + 1)
+            items.append(
+                Repeat(_number(of["times"], f"{here}/times", 1), _state(of["stride"], f"{here}/stride"), body)
+            )
+        else:
+            of = _fields(x, here, "state level")
+            items.append(
+                Beat(_state(of["state"], f"{here}/state"), _number(of["level"], f"{here}/level", 0, 1))
+            )
+    if not items:
+        raise Malformed(f"{where}: nothing")
+    return tuple(items)
+
+
+def _fields(value: Any, where: str, names: str) -> Mapping[str, Any]:
+    if not isinstance(value, dict) or set(value) != set(names.split()):
+        raise Malformed(f"{where}: not an object of {names.replace(' ', ', ')}")
+    return value
+
+
+def _list(value: Any, where: str) -> list[Any]:
+    if not isinstance(value, list):
+        raise Malformed(f"{where}: not a list")
+    return value
+
+
+def _each(value: Any, where: str, read: Callable[[Any, str], Read]) -> tuple[Read, ...]:
+    return tuple(read(x, f"{where}/{i}") for i, x in enumerate(_list(value, where)))
+
+
+def _number(value: Any, where: str, least: int, most: int | None = None) -> int:
+    if not isinstance(value, int) or isinstance(value, bool):
+        raise Malformed(f"{where}: not a whole number")
+    if value < least or (most is not None and value > most):
+        raise Malformed(f"{where}: {value} is out of range")
+    return value
+
+
+def _numbers(value: Any, where: str) -> tuple[int, ...]:
+    return _each(value, where, lambda x, here: _number(x, here, -1))
+
+
+def _state(value: Any, where: str) -> State:
+    return _each(value, where, lambda x, here: _number(x, here, 0))
+
+
+def _text(value: Any, where: str) -> str:
+    if not isinstance(value, str):
+        raise Malformed(f"{where}: not a text")
+    return value
+
+
+def _levels(value: Any, where: str) -> tuple[int, ...]:
+    text = _text(value, where)
+    if not set(text) <= {"0", "1"}:
+        raise Malformed(f"{where}: not levels")
+    return tuple(map(int, text))
+
+
+def _answer(value: Any, where: str) -> Model | None:
+    if value is None:
+        return None
+    if not isinstance(value, dict):
+        raise Malformed(f"{where}: neither null nor values")
+    return {name: _number(x, f"{where}/{name}", 0) for name, x in value.items()}
+
+
+def layers_of(stages: Sequence[Any]) -> tuple[Layer, ...]:
+    """The stages of a cover as evidence."""
+    return tuple(
+        Layer(
+            registers=tuple(stage.system.names),
+            orbits=tuple(
+                Covered(Track(run.lead, run.loop), recovery, spread)
+                for run, recovery, spread in zip(
+                    stage.claim.orbits, stage.claim.recoveries, stage.claim.spreads, strict=True
+                )
+            ),
+            unrolled=stage.claim.unrolled,
+            merge=stage.claim.merge,
+            bound=stage.claim.bound,
+        )
+        for stage in stages
+    )
