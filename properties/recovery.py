@@ -56,14 +56,11 @@ def _lost(orbit: Orbit) -> str:
 def _too_late(
     rhythm: Rhythm, spec: Spec, claim: str, text: str, facts: dict[str, Fact], exact: bool
 ) -> Finding:
-    from prover.analyse import follow
-    from prover.effort import Effort
-
     slowest = rhythm.recovery.slowest if rhythm.recovery else None
     worst = rhythm.recovery.worst if rhythm.recovery else None
     if not exact or slowest is None or worst is None:
         return Finding(NAME, "open", claim, text, rhythm.methods.get("power-up", ""), facts=facts)
-    orbit = follow(rhythm.system, slowest, Effort(30))
+    orbit = rhythm.orbit_from(slowest)
     broken = Counterexample(orbit, 0, worst, f"{text}, more than {spec.within}", "the slowest power-up state")
     replayed = "counterexample replayed on the machine"
     return Finding(NAME, "refuted", claim, broken.text, replayed, facts=facts, counterexample=broken)

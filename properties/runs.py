@@ -78,14 +78,11 @@ def _covered(rhythm: Rhythm) -> str:
 def _on_loops(
     rhythm: Rhythm, name: str, claim: str, wanted: int, measure: Measure, noun: str, facts: dict[str, Fact]
 ) -> Finding:
-    from prover.analyse import follow
-    from prover.effort import Effort
-
     for loop in rhythm.loops:
         # Twice round the wave shows every span of it whole.
         spans = list(measure([*loop.wave.runs, *loop.wave.runs, *loop.wave.runs]))
         if loop.stuck or any(span.length != wanted for span in spans):
-            orbit = follow(rhythm.system, loop.example, Effort(30))
+            orbit = rhythm.orbit_from(loop.example)
             broken = _broken(orbit, wanted, measure, noun, "power-up state on a loop")
             if broken:
                 method = "counterexample replayed on the machine"

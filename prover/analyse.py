@@ -270,10 +270,20 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     faults = certificate.stage_faults(system, found.claims, found.worst, effort)
     if faults:
         raise InternalError(f"a cover's certificate fails: {'; '.join(faults[:3])}")
-    worst = Recovery(found.worst, found.slowest is not None, found.slowest)
+    exact = found.slowest is not None
+    if goal and exact and found.slowest is not None and found.worst > 0:
+        run = follow(system, found.slowest, effort)
+        if certificate.good_from(run, found.worst - 1, goal) or not run.closed:
+            raise InternalError("a start state that does not need as long as it was found to")
+    worst = Recovery(found.worst, exact, found.slowest)
     # Every state gets on one of the lines, so their loops are all there are.
     return replace(
-        rhythm, complete=True, recovery=worst if goal else None, stuck=stuck, never_stuck=stuck is None
+        rhythm,
+        complete=True,
+        recovery=worst if goal else None,
+        stuck=stuck,
+        never_stuck=stuck is None,
+        stages=found.claims,
     )
 
 

@@ -18,7 +18,7 @@ from prover.tables import Ranking, Rounds
 DEEPEST = 40
 """Repeats within one another that are read."""
 
-LONGEST = 1 << 20
+LONGEST = 4096
 """Half-cycles to unroll, or to hold reset, that are read."""
 
 Object = dict[str, Any]

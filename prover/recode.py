@@ -26,7 +26,7 @@ def words(system: System, effort: Effort) -> System:
     chain = _chain(system)
     if len(chain) < SHORTEST:
         return system
-    recoded = _joined(system, chain)
+    recoded = joined(system, chain)
     return recoded if _counts(recoded, _word_name(chain), effort) else system
 
 
@@ -62,7 +62,8 @@ def _moves_itself(system: System, name: str) -> bool:
     return name in {v.name for v in e.variables([step])}
 
 
-def _joined(system: System, chain: Sequence[str]) -> System:
+def joined(system: System, chain: Sequence[str]) -> System:
+    """The system with those registers of one bit, lowest first, read as one word."""
     name = _word_name(chain)
     word = e.var(name, len(chain))
     bits = {bit: e.extract(word, i, i) for i, bit in enumerate(chain)}

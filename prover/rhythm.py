@@ -9,14 +9,17 @@ Rhythm    all of it together
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 from prover import path
 from prover.path import Path, Run
 from prover.settling import Settling
 from prover.system import State, System
+
+if TYPE_CHECKING:
+    from prover.certificate import Stage
 
 LONGEST_ROUND = 200_000
 """Runs in a wave's round beyond which the round is not written out."""
@@ -195,6 +198,8 @@ class Rhythm:
     stuck      the orbit of a state on which the output freezes
     never_stuck  whether it is known that there is none
     methods    by question ("orbit", "power-up"): how it was answered
+    stages     where wide states are covered: what the cover claims, stage by stage
+    shown      orbits of some power-up states, such as examples of loops, for findings to be shown by
     races_won  the wave from reset if the edge won each race against a clear; None where there is no race
     """
 
@@ -213,3 +218,14 @@ class Rhythm:
     unforced: tuple[str, ...] = ()
     methods: dict[str, str] = field(default_factory=dict)
     races_won: tuple[str, ...] = ()
+    stages: tuple[Stage, ...] = ()
+    shown: Mapping[State, Orbit] = field(default_factory=dict)
+
+    def orbit_from(self, state: State) -> Orbit:
+        """The orbit of a state: one that is shown, or followed now."""
+        if state in self.shown:
+            return self.shown[state]
+        from prover.analyse import follow
+        from prover.effort import Effort
+
+        return follow(self.system, state, Effort(30))

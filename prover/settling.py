@@ -88,18 +88,19 @@ def settle(
     effort: Effort,
     edge_wins: bool = False,
     ask: Ask | None = None,
+    races: bool = True,
 ) -> tuple[System, Settling]:
     """The system with the number of micro-steps that it needs, and what was found on the way.
 
     When something never settles, or the effort runs out, the system is built as far as was tried. `ask` answers
-    the questions in place of the solver.
+    the questions in place of the solver. Without `races` none are looked for.
     """
     effort.say("bounding the micro-steps of a step")
     before, now = start(design, clock, inputs)
     assumed = settled_when(design.registers, before)
     depth = at_rest = None
     unsettled = None
-    races: tuple[Race, ...] = ()
+    hanging: tuple[Race, ...] = ()
     why = ""
     by_form = False
     limit = len(design.registers) + 2
@@ -129,13 +130,13 @@ def settle(
     except OutOfEffort as out:
         why = str(out)
     system = build(design, clock, inputs, output, limit, edge_wins)
-    if depth is not None and not edge_wins:
+    if depth is not None and races and not edge_wins:
         try:
             effort.say("looking for outcomes that hang on the order of events")
-            races = tuple(find_races(system, none))
+            hanging = tuple(find_races(system, none))
         except OutOfEffort as out:
             why = str(out)
-    found = Settling(depth, at_rest, by_form, unsettled, races, why, tuple(goals), tuple(answers))
+    found = Settling(depth, at_rest, by_form, unsettled, hanging, why, tuple(goals), tuple(answers))
     return system, found
 
 

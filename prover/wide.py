@@ -56,6 +56,9 @@ REFINED = 12
 COUNTER = 4
 """Bits of registers that depend on one another from which they make a stage of their own."""
 
+MOST_SINGLE = 400
+"""Items of lead-ins up to which every place on them is asked about."""
+
 WRITTEN = 60
 """Items of a lead-in up to which runs beside it are looked for."""
 
@@ -132,10 +135,11 @@ def _two_rounds(run: Orbit) -> Iterator[path.Run]:
 
 
 def first_rise(run: Orbit) -> int:
-    """A half-cycle at which the output rises, counted from the start and no earlier than the loop's entry."""
+    """A half-cycle at which the loop's wave rises, counted from the start. At the loop's entry the output may rise
+    only because the lead-in was low, so that is no such half-cycle."""
     at, lead = 0, run.lead_half_cycles
     for index, (level, size) in enumerate(path.merged([*path.pieces(run.lead), *_two_rounds(run)])):
-        if level == 1 and index > 0 and at >= lead:
+        if level == 1 and index > 0 and at > lead:
             return at
         at += size
     raise InternalError("a loop without a rise")
@@ -441,13 +445,14 @@ class _Cover:
         """Places on the lines where a state is good, or at least that far from a line's start. Where only good ones
         are wanted, single ones far from the loop are left out: they are many, and decide nothing."""
         places: dict[tuple[State, Axes], None] = {}
+        few = sum(len(line.orbit.lead) for line in self.lines) <= MOST_SINGLE
         for line in self._distinct():
             lead = line.orbit.lead_half_cycles
             for at, beat, axes in self._places(line):
                 if line.spread and at < lead:
                     axes = (*axes, line.spread)
                 good = line.recovery is not None and at >= line.recovery
-                if least is None and not axes and at < lead - EARLY:
+                if least is None and not few and not axes and at < lead - EARLY:
                     good = False
                 if good or (least is not None and at >= least):
                     places[beat, axes] = None
@@ -569,7 +574,7 @@ class _Cover:
     def _cut(self, line: Line) -> Line:
         """The line without the single half-cycles before it is near its loop or on a repeat."""
         lead = list(line.orbit.lead)
-        if line.spread:
+        if line.spread or sum(len(other.orbit.lead) for other in self.lines) <= MOST_SINGLE:
             return line
         while lead and isinstance(lead[0], Beat) and path.length(lead) > EARLY:
             del lead[0]

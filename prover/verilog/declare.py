@@ -348,7 +348,8 @@ class Declarer:
         inner = scope.child(node.name, "routine")
         result = None
         words = node.result.words if node.result else []
-        if not node.task:
+        task = node.task or "void" in words
+        if not task:
             shape = self.shape(node.result, scope)
             result = self.net(Shape(shape.type, shape.msb, shape.lsb, "variable", None, False),
                               tree.Named(node.name, [], None, node.lineno), inner)  # fmt: skip
@@ -368,7 +369,7 @@ class Declarer:
                         arguments.append(self._argument(item.type, name, inner, node))
                     else:
                         self.declare(tree.Declaration(item.type, [name], None, item.lineno), inner)
-        if not node.task and any(a.direction in ("output", "inout") for a in arguments):
+        if not task and any(a.direction in ("output", "inout") for a in arguments):
             self.report.fail(f"function {printable(node.name)} has outputs", node.lineno, "write a task")
         body = [item for item in node.items if not isinstance(item, declared)]
         return Routine(node.name, inner, result, arguments, body, "automatic" in words, node.lineno)

@@ -8,6 +8,7 @@ of its bits is written at all.
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import Any, NoReturn, Protocol
 
@@ -39,7 +40,7 @@ class State:
     """Words so far: `values` after blocking assignments, `pending` those of non-blocking ones.
 
     `written` has a word per variable whose bits say under which condition each bit was assigned, and
-    `touched` the bits assigned on any path. The rest is shared by all copies: where a variable was first
+    `touched` the bits assigned on any path. `returned` is one bit: a return has ended the routine. The rest is shared by all copies: where a variable was first
     assigned, and how, and what has been read at all.
     """
 
@@ -50,6 +51,7 @@ class State:
     blocking: dict[Net, bool] = field(default_factory=dict)
     at: dict[Net, int] = field(default_factory=dict)
     reads: set[Net] = field(default_factory=set)
+    returned: Expr = e.FALSE
 
     def copy(self) -> State:
         return State(
@@ -60,6 +62,7 @@ class State:
             self.blocking,
             self.at,
             self.reads,
+            self.returned,
         )
 
     def result(self, net: Net) -> Expr:
@@ -89,6 +92,7 @@ class State:
         self.values = joined(then.values, other.values, absent)
         self.pending = joined(then.pending, other.pending, absent)
         self.written = joined(then.written, other.written, lambda net: e.const(0, net.width))
+        self.returned = e.ite(condition, then.returned, other.returned)
         self.touched = {
             net: then.touched.get(net, 0) | other.touched.get(net, 0)
             for net in {**other.touched, **then.touched}
@@ -182,6 +186,7 @@ class Executor:
     declares: Declares | None = None
     unrolling: int = 0
     steps: int = 0
+    running: list[Routine] = field(default_factory=list)
 
     def run(self, statement: Any, scope: Scope, state: State | None = None) -> State:
         """The state after the statement."""
@@ -203,6 +208,25 @@ class Executor:
                 f"{type(node).__name__} isn't supported as a statement", node, "the README lists what is read"
             )
         yield rule(self, node, scope, state)
+
+    def _sequence(self, statements: Sequence[Any], scope: Scope, state: State) -> Task[None]:
+        """Statements in a row, up to a return."""
+        for i, statement in enumerate(statements):
+            if state.returned is not e.FALSE:
+                yield self._unless_returned(self._sequence, statements[i:], scope, state)
+                return
+            yield self.execute(statement, scope, state)
+
+    def _unless_returned(
+        self, rest: Callable[[Any, Scope, State], Task[None]], what: Any, scope: Scope, state: State
+    ) -> Task[None]:
+        """Go on where no return has ended the routine yet."""
+        if state.returned is e.TRUE:
+            return
+        left, going = state.copy(), state.copy()
+        going.returned = e.FALSE
+        yield rest(what, scope, going)
+        state.merge(left.returned, left, going, self.report)
 
     # -- assignments ---------------------------------------------------------------------------------------
 
@@ -318,7 +342,7 @@ class Executor:
             merged.merge(test, inner, last, self.report)
             last = inner if test is e.TRUE else merged
         state.values, state.pending = last.values, last.pending
-        state.written, state.touched = last.written, last.touched
+        state.written, state.touched, state.returned = last.written, last.touched, last.returned
 
     def _case_type(self, node: Any, sizer: Sizer) -> Task[Type]:
         """All labels and the subject take the widest's width, and are signed if all are (clause 9.5)."""
@@ -375,6 +399,16 @@ class Executor:
                 self.unrolling -= 1
                 return
             yield self.execute(body, scope, state)
+            if state.returned is not e.FALSE:
+
+                def further(_: Any, scope: Scope, state: State) -> Task[None]:
+                    if step is not None:
+                        yield self.execute(step, scope, state)
+                    yield self._loop(node, condition, body, step, scope, state)
+
+                yield self._unless_returned(further, None, scope, state)
+                self.unrolling -= 1
+                return
             if step is not None:
                 yield self.execute(step, scope, state)
         self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node, "give it fewer rounds")
@@ -384,8 +418,7 @@ class Executor:
         if times > MAX_ROUNDS:
             self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node, "give it fewer rounds")
         self.unrolling += 1
-        for _ in range(times):
-            yield self.execute(node.body, scope, state)
+        yield self._sequence([node.body] * times, scope, state)
         self.unrolling -= 1
 
     # -- blocks and calls ----------------------------------------------------------------------------------
@@ -395,9 +428,8 @@ class Executor:
         if items or node.scope is not None:
             assert self.declares is not None
             scope = self.declares.block(scope, node, items)
-        for statement in node.statements:
-            if not isinstance(statement, (tree.Declaration, tree.Parameters)):
-                yield self.execute(statement, scope, state)
+        statements = [s for s in node.statements if not isinstance(s, (tree.Declaration, tree.Parameters))]
+        yield self._sequence(statements, scope, state)
 
     def _task(self, node: Any, scope: Scope, state: State) -> Task[None]:
         name, arguments = (node.name, node.args) if isinstance(node, vast.FunctionCall) else (node.name, ())
@@ -439,8 +471,10 @@ class Executor:
                 state.values[formal] = word
         routine.active += 1
         self.unrolling += 1
-        for statement in routine.body:
-            yield self.execute(statement, routine.scope, state)
+        self.running.append(routine)
+        yield self._sequence(routine.body, routine.scope, state)
+        state.returned = e.FALSE
+        self.running.pop()
         self.unrolling -= 1
         routine.active -= 1
         outcome = {net: state.values.get(net) or self.report.choice(net.width) for net in own}
@@ -474,8 +508,15 @@ class Executor:
             "an event inside a process isn't supported", node, "use one always block for each edge"
         )
 
-    def _return(self, node: tree.Return, scope: Scope, state: State) -> NoReturn:
-        self.report.fail("return isn't supported", node, "assign the function's name")
+    def _return(self, node: tree.Return, scope: Scope, state: State) -> Task[None]:
+        result = self.running[-1].result if self.running else None
+        if not self.running or (node.value is None) != (result is None):
+            what = "a return that doesn't fit: a function gives a value, a task none"
+            self.report.fail(what, node, "write return VALUE inside a function")
+        if result is not None:
+            value: Expr = yield Sizer(Environment(self, scope, state)).assigned(node.value, result.width)
+            self.store([Place(result, None, 0, result.width, False)], value, state, True, node.lineno)
+        state.returned = e.TRUE
 
     def _refused(self, node: tree.Refused, scope: Scope, state: State) -> NoReturn:
         self.report.fail(f"{node.what} isn't supported", node, "describe registers with always @(posedge …)")

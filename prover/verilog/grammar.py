@@ -221,6 +221,7 @@ class Grammar(VerilogParser):  # type: ignore[misc]
         | VAR
         | AUTOMATIC
         | STATIC
+        | VOID
         | GENVAR
         | TYPENAME"""
         p[0] = (p[1], p.slice[1].type == "TYPENAME")

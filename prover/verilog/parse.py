@@ -19,10 +19,18 @@ from ply import yacc
 from prover.errors import UserError
 from prover.verilog import tree
 from prover.verilog.grammar import INHERITED, Grammar
+from prover.verilog.names import words
 from prover.verilog.source import Source, printable
 from prover.verilog.tokens import Chunk, chunks, plain, tidy, tokenize
 
 TABLES = Path(__file__).with_name("tables.json")
+
+BEYOND = words(
+    """alias assert assume bind break checker class clocking const constraint continue cover do endinterface
+    endpackage export expect extern final foreach import inside interface let modport new package program
+    property pure randcase rand ref sequence string struct super tagged this union virtual wildcard with within"""
+)
+"""Words that SystemVerilog reserves and that may be names here: where one can't stand, that is why."""
 
 _cache: dict[str, Any] = {}
 
@@ -174,6 +182,10 @@ def _explain(source: Source, chunk: Chunk, token: Any) -> UserError:
     }
     at = chunk.tokens.index(token) if token in chunk.tokens else 0
     before = chunk.tokens[at - 1] if at else None
+    if token.type == "ID" and shown in BEYOND:
+        return UserError(f"{shown} isn't supported", where, "write it in Verilog, without this SystemVerilog")
+    if token.type == "TICK":
+        return UserError("an assignment pattern isn't supported", where, "write '0, or {a, b} with sizes")
     hint = hints.get(token.type, "")
     if not hint and before is not None:
         hint = f"this can't follow {printable(str(before.value))!r}"

@@ -128,8 +128,8 @@ def read_part(report: Report, place: Place, whole: Expr) -> Expr:
                 word = e.ite(e.eq(place.word, e.const(k, place.word.width)), here, word)
     if isinstance(place.low, int):
         return cut(word, place.low + place.width - 1, place.low)
-    if place.width == 1 and _fits(place.low, word.width):
-        return _shifted(word, place.low, 1)
+    if _fits(place.low, word.width - place.width + 1):
+        return _shifted(word, place.low, place.width)
     # The word with choices on both sides, so that a part that sticks out reads its inner bits exactly.
     more = place.width
     padded = e.concat_all([report.choice(more), word, report.choice(more)])

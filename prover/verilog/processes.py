@@ -85,6 +85,7 @@ class Processes:
         """The drivers that an always block makes."""
         statement = node.statement
         events: list[tuple[str, Any, int]] | None = None
+        statement = _event_first(statement)
         if isinstance(statement, tree.EventControl):
             if node.kind in ("always_comb", "always_latch"):
                 self.report.fail(f"{node.kind} takes no sensitivity list", node.lineno, "leave the list out")
@@ -432,6 +433,17 @@ class Processes:
         return mask, value
 
 
+def _event_first(statement: tree.Node) -> tree.Node:
+    """`begin @(edge); body end` waits first and then runs, which is `@(edge) begin body end`."""
+    if isinstance(statement, vast.Block) and statement.statements:
+        first = statement.statements[0]
+        if isinstance(first, tree.EventControl):
+            rest = (first.statement, *statement.statements[1:])
+            body = vast.Block(rest, statement.scope, lineno=statement.lineno)
+            return tree.EventControl(first.events, body, first.lineno)
+    return statement
+
+
 def _assigns(statement: tree.Node) -> bool:
     """May the statement assign anything? A call or a statement that is refused counts as if it did."""
     stack = [statement]
@@ -479,6 +491,18 @@ def depends_on_itself(net: Net, word: Expr, written: Expr) -> bool:
         kept = e.const(mask, net.width)
         if condition is e.FALSE:
             continue
-        if e.bvand(assume(low, condition), kept) is not e.bvand(assume(high, condition), kept):
+        one, other = (e.bvand(assume(word, condition), kept) for word in (low, high))
+        if one is not other and satisfiable(e.bvand(condition, e.bvnot(e.eq(one, other)))):
             return True
     return False
+
+
+def satisfiable(goal: Expr) -> bool:
+    """Can the bit be 1? Where the solver gives up it counts as if it could."""
+    from prover.effort import Effort, OutOfEffort
+    from prover.solve import find
+
+    try:
+        return find(goal, Effort(2)) is not None
+    except OutOfEffort:
+        return True

@@ -8,6 +8,7 @@ fresh variable that may have any value.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable
 from typing import Any, NamedTuple, NoReturn, Protocol
 
@@ -138,6 +139,8 @@ class Sizer:
         """The constant that a literal or a parameter's name stands for, with its x and z digits."""
         if isinstance(node, vast.IntConst):
             return self._literal(node)
+        if isinstance(node, vast.StringConst):
+            return self._string(node)
         if isinstance(node, vast.Identifier):
             found = self.env.find(node)
             return found if isinstance(found, Constant) else None
@@ -160,13 +163,18 @@ class Sizer:
                 )
         return found
 
+    def _string(self, node: Any) -> Constant:
+        """A string is a number of eight bits a character, the first uppermost (clause 3.6)."""
+        try:
+            characters = _characters(node.value)
+        except ValueError as error:
+            self.report.fail(f"this string: {error}", node, "write plain characters")
+        bits = int.from_bytes(characters, "big")
+        return Constant(bits, 0, 0, Type(8 * max(1, len(characters)), False))
+
     def _refuse(self, node: Any) -> NoReturn:
         if isinstance(node, vast.FloatConst):
             self.report.fail("real numbers aren't supported", node, "write an integer")
-        if isinstance(node, vast.StringConst):
-            self.report.fail(
-                "a string has no place in an expression here", node, "the README lists what is read"
-            )
         self.report.fail(
             f"{type(node).__name__} isn't supported in an expression", node, "the README lists what is read"
         )
@@ -288,6 +296,10 @@ class Sizer:
         return self._literal(node).type
         yield
 
+    def _type_string(self, node: Any) -> Task[Type]:
+        return self._string(node).type
+        yield
+
     def _type_fill(self, node: Any) -> Task[Type]:
         return Type(1, False)
         yield
@@ -384,6 +396,10 @@ class Sizer:
         if found.z:
             self.report.note("z counts as any value", node)
         return constant_word(self.report, found, to)
+        yield
+
+    def _build_string(self, node: Any, to: Type) -> Task[Expr]:
+        return constant_word(self.report, self._string(node), to)
         yield
 
     def _build_fill(self, node: Any, to: Type) -> Task[Expr]:
@@ -543,6 +559,26 @@ class Sizer:
         return e.resize(e.resize(value.word, own.width, value.signed), to.width, to.signed)
 
 
+_ESCAPES = {"n": 10, "t": 9, "\\": 92, '"': 34}
+
+
+def _characters(text: str) -> bytes:
+    """The characters of a string as written between its quotes. Raises ValueError for one of no byte."""
+    out = bytearray()
+    for found in re.finditer(r"\\([0-7]{1,3}|.)|.", text, re.DOTALL):
+        escape = found[1]
+        if escape is None:
+            code = ord(found[0])
+        else:
+            code = int(escape, 8) if escape[0] in "01234567" else _ESCAPES.get(escape, ord(escape))
+        if code > 255:
+            raise ValueError(f"a character of code {code}")
+        out.append(code)
+    if len(out) * 8 > MAX_WIDTH:
+        raise ValueError(f"more than {MAX_WIDTH // 8} characters")
+    return bytes(out)
+
+
 def _bounds(found: Net | Constant) -> tuple[int, int]:
     if isinstance(found, Net):
         return found.msb, found.lsb
@@ -614,6 +650,7 @@ _S = Sizer
 _RULES: list[tuple[tuple[Any, ...], Any, Any]] = [
     ((vast.Identifier, vast.Pointer, vast.Partselect, tree.IndexedSelect), _S._type_place, _S._build_place),
     ((vast.IntConst,), _S._type_literal, _S._build_literal),
+    ((vast.StringConst,), _S._type_string, _S._build_string),
     ((tree.Fill,), _S._type_fill, _S._build_fill),
     (tuple(_WIDE), _S._type_wide, _S._build_wide),
     ((vast.Divide, vast.Mod), _S._type_wide, _S._build_division),

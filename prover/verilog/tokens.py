@@ -89,7 +89,7 @@ class Lexer(VerilogLexer):  # type: ignore[misc]
     tokens = tuple(
         sorted(
             {word.upper() for word in VERILOG_WORDS | SYSTEM_WORDS} - {g.upper() for g in GATES}
-            - {w.upper() for w in _NETS} - {"OR", "MACROMODULE", "TABLE", "UNIQUE0", "PACKED", "VOID", "EDGE"}
+            - {w.upper() for w in _NETS} - {"OR", "MACROMODULE", "TABLE", "UNIQUE0", "PACKED", "EDGE"}
             | set(OPERATORS.values())
             | {"SENS_OR", "GATE", "NETTYPE", "TYPENAME", "ID", "NUMBER", "BASED", "FILL", "FLOATNUMBER"}
             | {"STRING_LITERAL", "SYSTEM", "TABLETEXT", "RESERVED"}
@@ -129,7 +129,7 @@ def _word(value: str) -> str:
     if value == "unique0":
         return "UNIQUE"
     if value in VERILOG_WORDS or value in SYSTEM_WORDS:
-        return value.upper() if value not in ("packed", "void", "edge") else "RESERVED"
+        return value.upper() if value not in ("packed", "edge") else "RESERVED"
     return "RESERVED" if value in REFUSED_WORDS else "ID"
 
 
@@ -233,7 +233,9 @@ def chunks(source: Source, tokens: list[Any]) -> list[Chunk]:
             out.append(_chunk(source, body, shared))
         else:
             raise UserError(
-                f"{printable(first.value)!r} stands outside a module", source.where(first.lineno), ""
+                f"{printable(first.value)!r} stands outside a module",
+                source.where(first.lineno),
+                "leave only modules, primitives, parameters and typedefs there",
             )
     return out
 

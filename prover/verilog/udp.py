@@ -18,7 +18,7 @@ from prover.verilog import tree
 from prover.verilog.deep import run
 from prover.verilog.names import Net, Report
 from prover.verilog.parts import Place
-from prover.verilog.processes import Driver
+from prover.verilog.processes import Driver, satisfiable
 from prover.verilog.sizing import Sizer
 from prover.verilog.words import replace
 
@@ -109,6 +109,17 @@ def _value(report: Report, row: Row, state: Expr | None) -> Expr:
     return e.const(int(row.result), 1) if row.result in "01" else report.choice(1)
 
 
+def _decided(report: Report, rows: list[tuple[Expr, Expr]]) -> Expr:
+    """The value of the first row that matches; any value where none does, if that can be at all."""
+    if rows and not satisfiable(e.bvnot(e.disj(match for match, _ in rows))):
+        rows, value = rows[:-1], rows[-1][1]
+    else:
+        value = report.choice(1)
+    for match, result in reversed(rows):
+        value = e.ite(match, result, value)
+    return value
+
+
 def udp_driver(elaboration: Elaboration, primitive: Primitive) -> None:
     """Add the driver of one instance of a user-defined primitive."""
     report: Report = elaboration.report
@@ -130,9 +141,7 @@ def udp_driver(elaboration: Elaboration, primitive: Primitive) -> None:
     places, inputs = elaboration.terminals(primitive, 1)
     read = rows(report, table, sequential)
     if not sequential:
-        value = report.choice(1)
-        for row in reversed(read):
-            value = e.ite(_matches(row, inputs, None), _value(report, row, None), value)
+        value = _decided(report, [(_matches(r, inputs, None), _value(report, r, None)) for r in read])
         elaboration.drive(places[0], value, primitive.at)
         return
     _sequential(elaboration, primitive, table, places[0], inputs, read)
@@ -173,10 +182,14 @@ def _sequential(
     edges = []
     for i, word in enumerate(inputs):
         for after in "01":
-            data = report.choice(1)
-            for row in reversed(read):
-                if row.edge == i and after in row.inputs[i][1] and "10"[int(after)] in row.inputs[i][0]:
-                    data = e.ite(_matches(row, inputs, state, i), _value(report, row, state), data)
+            moved = [
+                row
+                for row in read
+                if row.edge == i and after in row.inputs[i][1] and "10"[int(after)] in row.inputs[i][0]
+            ]
+            data = _decided(
+                report, [(_matches(row, inputs, state, i), _value(report, row, state)) for row in moved]
+            )
             # While a level row matches it decides, whatever edge came (clause 8.6): its force wins.
             for row in levels:
                 data = e.ite(_matches(row, inputs, state), state, data)

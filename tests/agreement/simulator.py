@@ -72,6 +72,7 @@ class Bench:
     replacements: Sequence[tuple[str, str]] = ()  # text to replace in the sources, each found at least once
     defines: Mapping[str, str] = field(default_factory=dict)
     includes: Sequence[Path] = ()
+    language: str = "2005"  # what the simulator's option -g takes
 
 
 def every_state(registers: Sequence[Register]) -> Iterator[Start]:
@@ -225,7 +226,7 @@ def _simulate(bench: Bench, text: str, words: Sequence[int], timeout_seconds: fl
     found = dict.fromkeys(bench.replacements, False)
     contents = []
     for source in bench.sources:
-        content = source.read_text()
+        content = source.read_text(encoding="utf-8", errors="surrogateescape")
         for old, new in bench.replacements:
             found[(old, new)] |= old in content
             content = content.replace(old, new)
@@ -240,9 +241,9 @@ def _simulate(bench: Bench, text: str, words: Sequence[int], timeout_seconds: fl
     with tempfile.TemporaryDirectory() as name:
         place = Path(name)
         (place / "bench.v").write_text(text)
-        (place / "divider.v").write_text(divider + "\n")
+        (place / "divider.v").write_text(divider + "\n", encoding="utf-8", errors="surrogateescape")
         (place / "starts.hex").write_text("\n".join(f"{word:x}" for word in words) + "\n")
-        compiler = ["iverilog", "-g2005", "-s", "agreement_bench", "-o", "bench.vvp", *options]
+        compiler = ["iverilog", f"-g{bench.language}", "-s", "agreement_bench", "-o", "bench.vvp", *options]
         _call([*compiler, "bench.v", "divider.v"], place, timeout_seconds)
         return _call(["vvp", "-n", "bench.vvp"], place, timeout_seconds)
 

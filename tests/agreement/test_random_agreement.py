@@ -20,9 +20,9 @@ from prover.spec import Spec
 
 HALF_CYCLES = 60
 BATCH = 12
-BATCHES = 30
-LEAST_COMPARED = 9
-"""Dividers of a batch on whose every state System and simulator are bound to agree: 270 of 360 at least."""
+BATCHES = 36
+LEAST_COMPARED = 8
+"""Dividers of a batch on whose every state System and simulator are bound to agree: 288 of 432 at least."""
 
 
 @pytest.mark.parametrize("batch", range(BATCHES))

@@ -1,0 +1,173 @@
+"""From a report to the evidence for a certificate: what the engines found, in the form that others can check.
+
+Most of it is there already. What a small machine's state graph found is written as a table; a larger graph would
+be too long for one, so paths that cover its states are looked for instead, as for a wide machine. Where neither can
+be had the evidence says nothing, and the certificate leaves open what the report may have proved.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+
+from prover import certificate, graph, reset, tables
+from prover import expr as e
+from prover.analyse import follow
+from prover.effort import Effort, OutOfEffort
+from prover.evidence import Evidence, Hold, Lasso, Layer, Track, layers_of
+from prover.expr import Expr
+from prover.findings import Report
+from prover.ports import Ports
+from prover.rebuild import placed
+from prover.rhythm import Goal, Orbit, Rhythm
+from prover.settling import settle
+from prover.solve import Model, find
+from prover.system import State, System
+from prover.tables import Ranking, Rounds
+
+
+def collect(report: Report, effort: Effort) -> Evidence:
+    """The evidence for the report's verdicts, as far as it can be written."""
+    ports, spec, rhythm = report.ports, report.spec, report.rhythm
+    answers = rhythm.settling.answers
+    if rhythm.settling.depth is None:
+        return Evidence(answers, False, (), None, (), None, ())
+    whole, _ = settle(
+        ports.design, ports.clock, ports.running, ports.output_value, effort, ask=_repeated(answers)
+    )
+    machine = rhythm.system
+    word = machine.words[0][1] if machine.words else ()
+    left_out = len(machine.describe((0,) * len(machine.variables))) < len(whole.variables)
+    hold = _hold(ports, effort) if rhythm.scope == "reset" else None
+    followed = rhythm.scope != "reset" or hold is not None
+    everywhere = _everywhere(rhythm, Goal(spec.period, spec.high_half_cycles), effort)
+    return Evidence(
+        settling=answers,
+        cone=left_out,
+        word=word,
+        reset=hold,
+        starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
+        everywhere=everywhere,
+        lassos=_lassos(report, whole, effort),
+    )
+
+
+def _repeated(answers: Sequence[Model | None]) -> Callable[[Expr], Model | None]:
+    """The answers once more, without asking the solver."""
+    rest = iter(answers)
+
+    def answer(goal: Expr) -> Model | None:
+        if goal.is_const:
+            return {} if goal.value else None
+        try:
+            return next(rest)
+        except StopIteration:
+            raise OutOfEffort("not answered") from None
+
+    return answer
+
+
+def _track(orbit: Orbit) -> Track:
+    return Track(orbit.lead, orbit.loop)
+
+
+def _hold(ports: Ports, effort: Effort) -> Hold | None:
+    """The states that reset leaves, if it can be shown that there are no others."""
+    held = reset.hold(ports.design, ports.clock, ports.resetting, effort)
+    system, settling = settle(
+        ports.design, ports.clock, ports.resetting, ports.output_value, effort, races=False
+    )
+    if not held.states or settling.depth is None:
+        return None
+    # Registers that reset doesn't force may take longer until they go round.
+    for half_cycles in (held.half_cycles + 2, 2 * held.half_cycles + 8):
+        goal = certificate.reset_goal(system, half_cycles, held.states)
+        if certificate.discharge(goal, effort):
+            return Hold(half_cycles, held.states, settling.answers)
+    return None
+
+
+def _everywhere(
+    rhythm: Rhythm, goal: Goal, effort: Effort
+) -> tuple[Layer, ...] | Ranking | Rounds | None:
+    system, recovery = rhythm.system, rhythm.recovery
+    recovers = recovery is not None and recovery.worst is not None
+    if rhythm.stages and recovers:
+        return layers_of(rhythm.stages)
+    if not graph.fits(system) or not (recovers or rhythm.complete):
+        return None
+    if system.bits <= tables.MOST_BITS:
+        return _table(system, goal, effort)
+    return _covered(rhythm, goal, effort) if recovers and not system.choices else None
+
+
+def _table(system: System, goal: Goal, effort: Effort) -> Ranking | Rounds | None:
+    states = graph.build(system, effort)
+    if system.choices:
+        ranks = graph.ranks_with_choices(states, goal.period, goal.high, effort)
+        if ranks is None or (states.start & (ranks.rank < 0)).any():
+            return None
+    else:
+        found = graph.basins(states, effort, goal.period, goal.high)
+        ranks = graph.ranks(states, found, goal.period, goal.high)
+        if (states.start & (ranks.rank < 0)).any():
+            return _rounds(states, found)
+    bound = int(ranks.rank[states.start].max())
+    return Ranking(tuple(ranks.phase.tolist()), tuple(ranks.rank.tolist()), bound)
+
+
+def _rounds(states: graph.Graph, found: graph.Basins) -> Rounds:
+    import numpy as np
+
+    listed = np.zeros(len(states.output), dtype=bool)
+    listed[[number for numbers in found.members for number in numbers]] = True
+    # What no power-up state leads to may run into loops that are not listed: nothing is claimed of it.
+    known = listed[found.entry]
+    distance = np.where(known, found.distance, -1)
+    levels = tuple(tuple(states.output[numbers].tolist()) for numbers in found.members)
+    return Rounds(tuple(tuple(numbers) for numbers in found.members), levels, tuple(distance.tolist()))
+
+
+def _covered(rhythm: Rhythm, goal: Goal, effort: Effort) -> tuple[Layer, ...] | None:
+    from prover import wide
+
+    effort.say("covering all states for the certificate")
+    system = rhythm.system
+    seeds = [orbit.start for orbit in rhythm.orbits]
+    found = wide.cover_in_stages(system, goal, seeds, effort)
+    if found is None or not found.claims:
+        found = wide.cover(system, goal, system.settled, seeds, effort)
+    return layers_of(found.claims) if found.claims and found.worst is not None else None
+
+
+def _lassos(report: Report, whole: System, effort: Effort) -> tuple[Lasso, ...]:
+    """The runs from power-up states that refute something, and the slowest one."""
+    rhythm = report.rhythm
+    runs: list[Orbit] = []
+    recovery = rhythm.recovery
+    if recovery is not None and recovery.lost is not None:
+        runs.append(recovery.lost)
+    if rhythm.stuck is not None:
+        runs.append(rhythm.stuck)
+    if recovery is not None and recovery.worst is not None and recovery.slowest is not None:
+        runs.append(follow(rhythm.system, recovery.slowest, effort))
+    if rhythm.scope == "any":
+        runs += [f.counterexample.orbit for f in report.findings if f.counterexample is not None]
+    out: dict[Lasso, None] = {}
+    for run in runs:
+        start = _whole(run.start, whole, rhythm.system, effort)
+        if start is not None:
+            out[Lasso(_track(run), start)] = None
+    return tuple(out)
+
+
+def _whole(state: State, whole: System, machine: System, effort: Effort) -> State | None:
+    """A power-up state of the whole divider that is this one in the machine; None if there is none."""
+    values = machine.describe(state)
+    here = [e.eq(e.var(n, w), e.const(values[n], w)) for n, w in whole.variables if n in values]
+    model = find(e.conj([whole.settled, *here]), effort)
+    if model is None:
+        return None
+    found = tuple(values.get(name, model.get(name, 0)) for name in whole.names)
+    return found if placed(found, whole, machine) == state else None
+
+

@@ -1,0 +1,424 @@
+"""Evidence to verdicts, without any engine: the rhythm that it shows, and the obligations that this hangs on.
+
+The machine is derived anew from the ports. What the evidence says of it either follows by computing with its
+numbers, or becomes an obligation that no assignment may fulfil; anything else is `Rejected`. Writing a certificate
+and checking one both come this way, so the two can be compared word for word.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+
+from prover import certificate, path, recode, reset, tables
+from prover import expr as e
+from prover.certificate import CoverClaim, Obligation, Stage
+from prover.effort import Effort, OutOfEffort
+from prover.errors import InternalError
+from prover.evidence import Evidence, Hold, Lasso, Layer, Track
+from prover.expr import Expr
+from prover.path import Beat, Item, Step
+from prover.ports import Ports
+from prover.rhythm import LONGEST_ROUND, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start
+from prover.settling import Settling, settle
+from prover.solve import Model
+from prover.spec import Spec
+from prover.system import State, System, cone, project
+from prover.tables import Ranking, Rounds
+
+HOLD_PER_REGISTER = 8
+"""Half-cycles of reset, for each register, that are unrolled; searching for them ends earlier."""
+
+
+class Rejected(Exception):
+    """The evidence does not show what it is to show; the message says what is wrong."""
+
+
+@dataclass(frozen=True, slots=True)
+class Rebuilt:
+    """What evidence comes to, provided that no obligation can be fulfilled.
+
+    whole    the divider as a machine, `rhythm.system` the part of it that the evidence speaks of"""
+
+    whole: System
+    rhythm: Rhythm
+    obligations: tuple[Obligation, ...]
+
+
+def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Rebuilt:
+    """The rhythm that the evidence shows of the divider, and its obligations. Raises Rejected, and UserError for a
+    scope that the divider doesn't have."""
+    owed = _Obligations()
+    ask = _Replay(evidence.settling, "micro-steps", owed)
+    whole, settling = settle(
+        ports.design, ports.clock, ports.running, ports.output_value, effort, ask=ask.answer
+    )
+    ask.finish()
+    scope, starts, why = _starts(ports, spec, whole, settling, evidence.reset, owed, effort)
+    if settling.depth is None:
+        if evidence != Evidence(evidence.settling, False, (), None, (), None, ()):
+            raise Rejected("evidence about a divider of which nothing is known")
+        return Rebuilt(whole, _nothing_known(whole, settling, scope), owed.listed())
+    machine = machine_of(whole, evidence)
+    starts = tuple(replace(s, state=placed(s.state, whole, machine)) for s in starts)
+    rhythm = _followed(Rhythm(
+        system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
+        recovery=None, stuck=None, never_stuck=False, open=why,
+    ), evidence.starts, owed)  # fmt: skip
+    goal = Goal(spec.period, spec.high_half_cycles)
+    lassos = [_lasso(whole, machine, lasso, owed) for lasso in evidence.lassos]
+    rhythm = _everywhere(rhythm, evidence, goal, lassos, owed)
+    return Rebuilt(whole, rhythm, owed.listed())
+
+
+class _Obligations:
+    """Obligations so far, each goal once. What is false by its form is none."""
+
+    def __init__(self) -> None:
+        self._goals: dict[Expr, str] = {}
+        self._steps: dict[tuple[System, Step], None] = {}
+
+    def add(self, obligations: Iterable[Obligation]) -> None:
+        for each in obligations:
+            if each.goal.is_const and each.goal.value:
+                raise Rejected(f"{each.name}: does not hold")
+            if not each.goal.is_const:
+                self._goals.setdefault(each.goal, each.name)
+
+    def listed(self) -> tuple[Obligation, ...]:
+        return tuple(Obligation(name, goal) for goal, name in self._goals.items())
+
+
+class _Replay:
+    """Answers questions as the evidence does. That there is no such state is owed; values for one are put in."""
+
+    def __init__(self, answers: Sequence[Model | None], name: str, owed: _Obligations) -> None:
+        self.answers = answers
+        self.name = name
+        self.owed = owed
+        self.asked = 0
+
+    def answer(self, goal: Expr) -> Model | None:
+        if goal.is_const:
+            return {} if goal.value else None
+        if self.asked == len(self.answers):
+            raise OutOfEffort(f"the evidence leaves a question about {self.name} open")
+        model = self.answers[self.asked]
+        name = f"{self.name}, question {self.asked}"
+        self.asked += 1
+        if model is None:
+            self.owed.add([Obligation(name, goal)])
+            return None
+        used = {v.name: v.width for v in e.variables([goal])}
+        if list(model) != list(used) or any(model[name] >> width for name, width in used.items()):
+            raise Rejected(f"{name}: not values of {', '.join(used)}")
+        if e.evaluate([goal], model) != [1]:
+            raise Rejected(f"{name}: the values do not fulfil it")
+        here = e.conj(e.eq(e.var(v, used[v]), e.const(x, used[v])) for v, x in model.items())
+        self.owed.add([Obligation(f"{name}, answered", e.bvand(here, e.bvnot(goal)))])
+        return model
+
+    def finish(self) -> None:
+        if self.asked != len(self.answers):
+            raise Rejected(f"{self.name}: {len(self.answers)} answers to {self.asked} questions")
+
+
+def _nothing_known(whole: System, settling: Settling, scope: Scope) -> Rhythm:
+    why = settling.open or "the micro-steps do not settle"
+    recovery = Recovery(None, False, open=why)
+    return Rhythm(whole, settling, scope, (), (), (), False, recovery, None, False, open=why)
+
+
+# -- the machine that the evidence speaks of ---------------------------------------------------------------
+
+
+def machine_of(whole: System, evidence: Evidence) -> System:
+    """The machine without the registers that are left out, and with those that are read as a word joined."""
+    inner = cone(whole) if evidence.cone else whole
+    if evidence.cone and inner is whole:
+        raise Rejected("registers are said to be left out that the output depends on")
+    if not evidence.word:
+        return inner
+    single = {name for name, width in inner.variables if width == 1 and name != inner.clock}
+    if len(set(evidence.word)) != len(evidence.word) or not set(evidence.word) <= single:
+        raise Rejected("word: not registers of one bit, each once")
+    return recode.joined(inner, evidence.word)
+
+
+def placed(state: State, whole: System, machine: System) -> State:
+    """A state of the whole divider as one of the machine."""
+    if not machine.words:
+        return project(whole, state, machine)
+    bits = {bit for _, names in machine.words for bit in names}
+    kept = [name for name in whole.names if name in bits or name in machine.names]
+    inner = replace(whole, variables=tuple(pair for pair in whole.variables if pair[0] in kept))
+    return recode.moved(project(whole, state, inner), inner, machine)
+
+
+def orbit_of(track: Track, system: System, where: str) -> Orbit:
+    """A track as an orbit of the system. Raises Rejected where its states are none of the system's."""
+    widths = tuple(width for _, width in system.variables)
+    for items in (track.lead, track.loop):
+        _check_items(items, widths, where)
+    if not track.lead and not track.loop:
+        raise Rejected(f"{where}: no states")
+    made = Orbit(track.lead, track.loop, widths, "" if track.loop else "not followed to its loop")
+    if max(path.changes(items, LONGEST_ROUND) for items in (track.lead, track.loop)) > LONGEST_ROUND:
+        raise Rejected(f"{where}: its output changes too often to be looked through")
+    return made
+
+
+def _check_items(items: Sequence[Item], widths: Sequence[int], where: str) -> None:
+    todo = list(items)
+    most = 1 << sum(widths)
+    while todo:
+        item = todo.pop()
+        values = item.state if isinstance(item, Beat) else item.stride
+        if len(values) != len(widths) or any(v >> w for v, w in zip(values, widths, strict=True)):
+            raise Rejected(f"{where}: {values} is no state of the machine")
+        if not isinstance(item, Beat):
+            if item.times > most:
+                raise Rejected(f"{where}: a repeat of more rounds than there are states")
+            todo.extend(item.body)
+
+
+# -- start states ------------------------------------------------------------------------------------------
+
+
+def _starts(
+    ports: Ports,
+    spec: Spec,
+    whole: System,
+    settling: Settling,
+    hold: Hold | None,
+    owed: _Obligations,
+    effort: Effort,
+) -> tuple[Scope, tuple[Start, ...], str]:
+    """Where the claim begins, the start states there, and why there are none."""
+    if settling.depth is None:
+        return spec.start or ("reset" if ports.reset else "any"), (), ""
+    limit = max(settling.depth, 2 * len(ports.design.registers) + 8)
+    if spec.start != "any" and ports.reset is not None and spec.start in (None, "reset"):
+        if hold is None:
+            return "reset", (), "the states that reset leaves are not certain"
+        return "reset", _released(ports, whole, hold, limit, owed, effort), ""
+    if hold is not None:
+        raise Rejected("reset: held, though the claim does not begin there")
+    found = reset.initial(whole, limit) if spec.start != "any" else ""
+    return ("any", (), "") if isinstance(found, str) else ("initial", found, "")
+
+
+def _released(
+    ports: Ports, whole: System, hold: Hold, limit: int, owed: _Obligations, effort: Effort
+) -> tuple[Start, ...]:
+    """The start states after reset, owing that it leaves these states from everywhere and really leaves each."""
+    ask = _Replay(hold.settling, "micro-steps under reset", owed)
+    system, settling = settle(
+        ports.design, ports.clock, ports.resetting, ports.output_value, effort, ask=ask.answer, races=False
+    )
+    ask.finish()
+    if settling.depth is None:
+        raise Rejected("reset: held, though the machine does not settle then")
+    if hold.half_cycles > HOLD_PER_REGISTER * (len(system.variables) + 4):
+        raise Rejected(f"reset: {hold.half_cycles} half-cycles are more than it needs")
+    for state in hold.states:
+        _check_items([Beat(state, 0)], [w for _, w in system.variables], "reset")
+    zeros = [0] * len(system.choices)
+    stepped = [system.run(*state, *zeros) for state in hold.states]
+    # States that the machine under reset merely permutes go on occurring, however long it is held.
+    if sorted(state[:-1] for state in stepped) != sorted(hold.states) or not hold.states:
+        raise Rejected("reset: the states do not follow one another while it is held")
+    steps = [Step(a, tuple(b[:-1]), b[-1], ()) for a, b in zip(hold.states, stepped, strict=True)]
+    owed.add([certificate.reset_goal(system, hold.half_cycles, hold.states)])
+    owed.add(certificate.single_obligations(system, steps, "reset held"))
+    held = reset.Held(hold.half_cycles, hold.states, ())
+    try:
+        starts = reset.released(whole, held, ports.resetting, limit)
+        if starts != reset.released(whole, held, ports.resetting, limit + 1):
+            raise Rejected("reset: its release does not settle")
+    except InternalError:
+        raise Rejected("reset: its release hangs on a value that x stands for") from None
+    return starts
+
+
+def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: _Obligations) -> Rhythm:
+    """The rhythm with the start states' orbits, owing their steps."""
+    if len(tracks) != len(rhythm.starts):
+        raise Rejected(f"starts: {len(tracks)} runs of {len(rhythm.starts)} start states")
+    orbits = []
+    for number, (track, start) in enumerate(zip(tracks, rhythm.starts, strict=True)):
+        orbit = orbit_of(track, rhythm.system, f"starts/{number}")
+        if orbit.start != start.state:
+            raise Rejected(f"starts/{number}: begins elsewhere than the start state")
+        orbits.append(orbit)
+    owe_orbits(rhythm.system, orbits, "starts", owed)
+    return replace(rhythm, orbits=tuple(orbits))
+
+
+def owe_orbits(system: System, orbits: Sequence[Orbit], name: str, owed: _Obligations) -> None:
+    """Owe every step of the orbits, single ones together."""
+    singles: dict[Step, None] = {}
+    for orbit in orbits:
+        singles |= dict.fromkeys(step for step in certificate.orbit_steps(orbit) if not step.axes)
+    owed.add(certificate.single_obligations(system, list(singles), name))
+    for number, orbit in enumerate(orbits):
+        for each in certificate.orbit_obligations(system, orbit):
+            owed.add([Obligation(f"{name}/{number}, {each.name}", each.goal)])
+
+
+# -- all power-up states -----------------------------------------------------------------------------------
+
+
+def _lasso(whole: System, machine: System, lasso: Lasso, owed: _Obligations) -> Orbit:
+    """A lasso as an orbit, owing that it is one and that its start is a power-up state."""
+    _check_items([Beat(lasso.start, 0)], [w for _, w in whole.variables], "lassos")
+    orbit = orbit_of(lasso.track, machine, "lassos")
+    if orbit.start != placed(lasso.start, whole, machine):
+        raise Rejected("lassos: begins elsewhere than its start")
+    here = e.conj(
+        e.eq(e.var(name, width), e.const(value, width))
+        for (name, width), value in zip(whole.variables, lasso.start, strict=True)
+    )
+    owed.add([Obligation("a power-up state", e.bvand(here, e.bvnot(whole.settled)))])
+    owe_orbits(machine, [orbit], "lassos", owed)
+    return orbit
+
+
+def _everywhere(
+    rhythm: Rhythm, evidence: Evidence, goal: Goal, lassos: Sequence[Orbit], owed: _Obligations
+) -> Rhythm:
+    """The rhythm completed with what is known of all power-up states."""
+    known = evidence.everywhere
+    bound: int | None = None
+    listed: list[Orbit] = []
+    if isinstance(known, Rounds):
+        listed = _rounds(rhythm.system, known, owed)
+    elif isinstance(known, Ranking):
+        bound = _ranking(rhythm.system, known, goal, owed)
+    elif known is not None:
+        bound, listed = _cover(rhythm.system, known, goal, owed)
+    complete = known is not None
+    lost = next((run for run in lassos if _is_lost(run, goal)), None)
+    stuck = next((run for run in lassos if _is_stuck(run)), None)
+    if (lost and bound is not None) or (stuck and complete and bound is not None):
+        raise Rejected("a state is lost, though every state recovers")
+    loops, shown = _loops([*listed, *(() if complete else (*rhythm.orbits, *lassos))], goal)
+    why = "the certificate has no evidence about all power-up states"
+    recovery = Recovery(None, False, open=why)
+    if lost:
+        recovery = Recovery(None, False, lost=lost)
+    elif bound is not None:
+        slowest = next((run for run in lassos if _needs(run, bound, goal)), None)
+        recovery = Recovery(bound, slowest is not None, slowest.start if slowest else None)
+        if slowest:
+            shown[slowest.start] = slowest
+    return replace(
+        rhythm,
+        loops=loops,
+        complete=complete,
+        recovery=recovery,
+        stuck=stuck,
+        never_stuck=complete and not any(loop.stuck for loop in loops),
+        open=rhythm.open or ("" if complete else why),
+        shown=shown,
+    )
+
+
+def _is_lost(run: Orbit, goal: Goal) -> bool:
+    wave = run.wave()
+    return wave is not None and not wave.divides_by(goal.period, goal.high)
+
+
+def _is_stuck(run: Orbit) -> bool:
+    wave = run.wave()
+    return wave is not None and wave.stuck
+
+
+def _needs(run: Orbit, bound: int, goal: Goal) -> bool:
+    """Whether the run is good after so many half-cycles and no earlier."""
+    if not run.closed or not certificate.good_from(run, bound, goal):
+        return False
+    return bound == 0 or not certificate.good_from(run, bound - 1, goal)
+
+
+def _loops(runs: Iterable[Orbit], goal: Goal) -> tuple[tuple[Loop, ...], dict[State, Orbit]]:
+    """The loops of the runs, each once, and for an example state on each its orbit."""
+    loops: dict[tuple[int, State], Loop] = {}
+    shown: dict[State, Orbit] = {}
+    for run in runs:
+        wave = run.wave()
+        if wave is None:
+            continue
+        example = path.first_state(run.loop)
+        least = min(beat.state for beat in path.beats(run.loop))
+        if (run.loop_half_cycles, least) not in loops:
+            good = wave.divides_by(goal.period, goal.high)
+            loops[run.loop_half_cycles, least] = Loop(example, run.loop_half_cycles, wave, good)
+            shown[example] = Orbit((), run.loop, run.widths)
+    return tuple(loops.values()), shown
+
+
+def _rounds(system: System, known: Rounds, owed: _Obligations) -> list[Orbit]:
+    if system.bits > tables.MOST_BITS:
+        raise Rejected("a table of too many states")
+    _none([*tables.rounds_form_faults(system, known)])
+    owed.add(tables.rounds_obligations(system, known))
+    return known.orbits(system)
+
+
+def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> int:
+    if system.bits > tables.MOST_BITS:
+        raise Rejected("a table of too many states")
+    _none([*tables.ranking_form_faults(system, known, goal.period)])
+    owed.add(tables.ranking_obligations(system, known, goal.period, goal.high))
+    return known.bound
+
+
+def _cover(
+    system: System, layers: Sequence[Layer], goal: Goal, owed: _Obligations
+) -> tuple[int, list[Orbit]]:
+    """The bound that the cover shows, and the last stage's orbits."""
+    stages = [_stage(system, layer, layer is layers[-1], goal) for layer in layers]
+    bound = sum(stage.claim.bound for stage in stages)
+    _none(certificate.stage_form_faults(system, stages, bound))
+    for number, (stage, ours, assumed) in enumerate(certificate.claimed_stages(system, stages)):
+        claim = stage.claim
+        owe_orbits(ours, claim.orbits, f"stage {number}", owed)
+        after = "at once" if claim.unrolled is None else f"after {claim.unrolled} half-cycles"
+        good = ", ".join(map(str, claim.recoveries))
+        told = f"{after}, joining within {claim.merge}, good within {claim.bound}; its orbits after {good}"
+        for each in certificate.cover_obligations(ours, assumed, claim):
+            owed.add([Obligation(f"stage {number}, {each.name}: {told}", each.goal)])
+    return bound, list(stages[-1].claim.orbits)
+
+
+def _stage(system: System, layer: Layer, last: bool, goal: Goal) -> Stage:
+    names = set(layer.registers)
+    if not names <= set(system.names) or system.clock not in names:
+        raise Rejected("a stage of registers that there are not")
+    ours = system if last else certificate.part(system, names)
+    if tuple(ours.names) != layer.registers:
+        raise Rejected("a stage whose registers are not in the machine's order")
+    orbits = tuple(orbit_of(each.track, ours, "a stage's orbit") for each in layer.orbits)
+    for each in layer.orbits:
+        if each.spread is not None:
+            count, stride = each.spread
+            _check_items([Beat(stride, 0)], [w for _, w in ours.variables], "spread")
+            if not each.track.lead or not each.track.loop or count > 1 << ours.bits:
+                raise Rejected("a spread of nothing, or of more than there is")
+    claim = CoverClaim(
+        orbits=orbits,
+        recoveries=tuple(each.recovery for each in layer.orbits),
+        spreads=tuple(each.spread for each in layer.orbits),
+        unrolled=layer.unrolled,
+        merge=layer.merge,
+        bound=layer.bound,
+        period=goal.period if last else 0,
+        high=goal.high if last else 0,
+    )
+    return Stage(ours, claim)
+
+
+def _none(faults: Sequence[str]) -> None:
+    if faults:
+        raise Rejected(f"everywhere: {faults[0]}")

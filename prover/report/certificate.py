@@ -1,0 +1,202 @@
+"""The certificate, schema "subharmonic/certificate-1": a report's verdicts with all that they rest on.
+
+It holds nothing but what follows from the sources, the options and the evidence, so that `recheck` can make it again
+and compare. Nothing in it tells of the run that made it: the same input gives the same bytes.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import os
+from dataclasses import dataclass
+from json import dumps
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from prover import evidence, rebuild
+from prover import expr as e
+from prover.errors import InternalError
+from prover.evidence import Evidence
+from prover.findings import Finding, Report, overall
+from prover.ports import Ports
+from prover.rebuild import Rebuilt
+from prover.spec import Spec
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from prover.effort import Effort
+
+SCHEMA = "subharmonic/certificate-1"
+
+Object = dict[str, Any]
+
+
+@dataclass(frozen=True, slots=True)
+class Subject:
+    """What a certificate is about.
+
+    files, include  the options as written, paths relative to where they are looked for and with slashes
+    digests         every file that was read, in order, and the SHA-256 of its bytes"""
+
+    spec: Spec
+    files: tuple[str, ...]
+    include: tuple[str, ...]
+    digests: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Certificate:
+    """A certificate as text, and the verdicts of the report that it does not bear out, by property."""
+
+    text: str
+    left_open: tuple[str, ...]
+
+
+def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Certificate:
+    """The certificate of a report on these files. Raises OutOfEffort, and InternalError where the evidence says
+    something else than the report."""
+    from properties import judge_all
+    from prover.collect import collect
+
+    found = collect(report, effort)
+    try:
+        made = rebuild.rebuild(report.ports, report.spec, found, effort)
+    except rebuild.Rejected as fault:
+        raise InternalError(f"the evidence for a certificate fails: {fault}") from fault
+    findings = judge_all(made.rhythm, report.spec)
+    left_open = []
+    for ours, theirs in zip(findings, report.findings, strict=True):
+        if ours.verdict != theirs.verdict:
+            if ours.verdict != "open":
+                raise InternalError(f"the evidence shows {ours.name} {ours.verdict}, the report {theirs.verdict}")
+            left_open.append(ours.name)
+    subject = subject_of(report, files)
+    return Certificate(render(document(subject, report.ports, found, made, findings)), tuple(left_open))
+
+
+def subject_of(report: Report, files: Sequence[str | Path]) -> Subject:
+    """What the report is about, with paths relative to the working folder."""
+    read = report.ports.design.files
+    return Subject(
+        report.spec,
+        tuple(_relative(file) for file in files),
+        tuple(_relative(folder) for folder in report.spec.include),
+        tuple((_relative(file), digest(Path(file))) for file in read),
+    )
+
+
+def _relative(path: str | Path) -> str:
+    text = os.path.relpath(path) if os.path.isabs(path) else os.path.normpath(path)
+    return text.replace(os.sep, "/")
+
+
+def digest(path: Path) -> str:
+    """The SHA-256 of a file's bytes, in hexadecimal."""
+    return hashlib.sha256(path.read_bytes()).hexdigest()
+
+
+# -- the document ------------------------------------------------------------------------------------------
+
+
+def document(
+    subject: Subject, ports: Ports, found: Evidence, made: Rebuilt, findings: Sequence[Finding]
+) -> Object:
+    """The certificate as plain dictionaries and lists."""
+    said = {"claim": claim(subject.spec), "options": options(subject)}
+    files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
+    bound = hashlib.sha256(dumps([said, files]).encode()).hexdigest()
+    return {
+        "schema": SCHEMA,
+        "verdict": overall(findings),
+        **said,
+        "sources": {"files": files, "sha256": bound},
+        "machine": _machine(ports, made),
+        "properties": [_property(finding) for finding in findings],
+        "evidence": evidence.as_object(found),
+        "obligations": [{"name": each.name, "script": each.script()} for each in made.obligations],
+    }
+
+
+def claim(spec: Spec) -> Object:
+    """What is claimed; times are half-cycles."""
+    return {
+        "ratio": spec.ratio_text,
+        "period_half_cycles": spec.period,
+        "high_half_cycles": spec.high_half_cycles,
+        "within": spec.within,
+        "start": spec.start,
+        "waivers": dict(spec.waivers),
+    }
+
+
+def options(subject: Subject) -> Object:
+    """The options by which the sources are read and their ports recognised."""
+    spec = subject.spec
+    return {
+        "files": list(subject.files),
+        "include": list(subject.include),
+        "defines": dict(spec.defines),
+        "module": spec.module,
+        "parameters": dict(spec.parameters),
+        "clock": spec.clock,
+        "reset": spec.reset,
+        "output": spec.output,
+        "holds": dict(spec.holds),
+    }
+
+
+def _machine(ports: Ports, made: Rebuilt) -> Object:
+    """The transition relation that the evidence speaks of, as SMT-LIB definitions over its variables."""
+    system = made.rhythm.system
+    reset = ports.reset
+    named = {f"next {name}": step for name, step in zip(system.names, system.step, strict=True)}
+    named |= {"output now": system.output, "at rest": system.settled}
+    return {
+        "top": ports.design.top,
+        "clock": ports.clock,
+        "reset": {"port": reset.port, "active": reset.active, "kind": reset.kind} if reset else None,
+        "output": ports.output,
+        "holds": dict(ports.holds),
+        "registers": {register.name: register.width for register in ports.design.registers},
+        "words": {name: list(bits) for name, bits in system.words},
+        "variables": dict(system.variables),
+        "micro_steps": made.rhythm.settling.depth,
+        "scope": made.rhythm.scope,
+        "starts": [{"state": list(s.state), "cause": s.cause} for s in made.rhythm.starts],
+        "definitions": e.smtlib_definitions(named),
+    }
+
+
+def _property(finding: Finding) -> Object:
+    proved = finding.verdict == "proved"
+    return {
+        "name": finding.name,
+        "verdict": finding.verdict,
+        "claim": finding.claim,
+        "bound": finding.bound,
+        "says": None if proved else finding.says,
+        "timing_obligations": [each.text for each in finding.obligations],
+        "waived": finding.waived,
+    }
+
+
+# -- text --------------------------------------------------------------------------------------------------
+
+
+def render(made: Object) -> str:
+    """The document as JSON text: a line for each entry, or for each element of the long lists."""
+    entries = []
+    for key, value in made.items():
+        if key == "evidence":
+            inner = ",\n".join(f"{dumps(name)}: {_listed(part)}" for name, part in value.items())
+            entries.append(f"{dumps(key)}: {{\n{inner}\n}}")
+        else:
+            entries.append(f"{dumps(key)}: {_listed(value)}")
+    return "{\n" + ",\n".join(entries) + "\n}\n"
+
+
+def _listed(value: object) -> str:
+    if isinstance(value, list) and value and all(isinstance(part, dict) for part in value):
+        return "[\n" + ",\n".join(dumps(part) for part in value) + "\n]"
+    return dumps(value)
