@@ -10,7 +10,7 @@ import random
 from collections.abc import Sequence
 from dataclasses import replace
 
-from prover import certificate, graph, orbit, path, recode, reset
+from prover import certificate, graph, linear, orbit, path, recode, reset
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
@@ -21,6 +21,13 @@ from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
 from prover.system import State, System, cone, project
+
+
+COVERED_FIRST = 16
+"""Bits of a state up to which the graph is quicker than to look for a cover."""
+
+SMALL = 13
+"""Bits of a state, the clock's level among them, up to which the graph is built without looking for more."""
 
 
 def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
@@ -59,14 +66,18 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
 
 
-def _machine(
-    system: System, starts: tuple[Start, ...], effort: Effort
-) -> tuple[System, tuple[Start, ...]]:
+def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple[System, tuple[Start, ...]]:
     """What the engines work on, with the start states in it: the whole system while its graph is small enough,
     else what the output depends on, ripple chains read as words."""
-    if graph.fits(system):
+    if system.bits <= SMALL:
         return system, starts
     inner = cone(system)
+    counted = linear.logs(inner, effort)
+    if counted is not None:
+        placed = (linear.moved(project(system, s.state, inner), inner, counted) for s in starts)
+        return counted, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
+    if graph.fits(system):
+        return system, starts
     machine = inner if graph.fits(inner) else recode.words(inner, effort)
     placed = (recode.moved(project(system, s.state, inner), inner, machine) for s in starts)
     return machine, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
@@ -204,8 +215,7 @@ def _goal(spec: Spec, rhythm: Rhythm) -> Goal | None:
 
 def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | None, effort: Effort) -> Rhythm:
     """The rhythm completed with every power-up state, by the first engine that can take the machine."""
-    engine = _by_graph if graph.fits(rhythm.system) else _by_cover
-    found = engine(rhythm, goal, effort)
+    found = _by_either(rhythm, goal, effort)
     lost = found.recovery.lost if found.recovery else None
     for run in (lost, found.stuck):
         if run is not None and not _is_power_up(whole, rhythm.system, run.start, effort):
@@ -214,6 +224,16 @@ def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | None, effort: Eff
                 found, recovery=Recovery(None, False, open=why), stuck=None, never_stuck=False, open=why
             )
     return found
+
+
+def _by_either(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+    """Small machines by their graph; middling ones by a cover if that is soon found, and by their graph if not."""
+    if rhythm.system.bits <= COVERED_FIRST and graph.fits(rhythm.system):
+        return _by_graph(rhythm, goal, effort)
+    if not graph.fits(rhythm.system) or rhythm.system.logs is not None:
+        return _by_cover(rhythm, goal, effort)
+    found = _by_cover(rhythm, goal, Effort(effort.left / 4))
+    return found if found.complete else _by_graph(rhythm, goal, effort)
 
 
 def _is_power_up(whole: System, machine: System, state: State, effort: Effort) -> bool:

@@ -481,8 +481,8 @@ def good_from(run: Orbit, recovery: int, claim: CoverClaim | Goal) -> bool:
 
 
 def cover_obligations(system: System, assumed: Expr, claim: CoverClaim) -> Iterator[Obligation]:
-    """No run beside an orbit is other than it; and, for each level of the clock, no state under the assumption escapes
-    the orbits."""
+    """No run beside an orbit is other than it; and, for each level of the clock, no state under the assumption
+    escapes the orbits."""
     for number, (run, spread) in enumerate(zip(claim.orbits, claim.spreads, strict=True)):
         if spread:
             yield spread_obligation(system, run, spread, number)

@@ -17,6 +17,7 @@ from importlib.util import find_spec
 from prover import expr as e
 from prover.errors import InternalError, UserError
 from prover.expr import Expr
+from prover.rup import needed_steps
 
 SOLVER = "cadical195"
 
@@ -60,11 +61,11 @@ class Clauses:
 
 @dataclass(frozen=True, slots=True)
 class Proof:
-    """A refutation that was checked: how many variables, clauses and learnt clauses it took."""
+    """A refutation that was checked: how many variables and clauses there were, and the steps that it took."""
 
     variables: int
     clauses: int
-    lemmas: int
+    steps: int
 
 
 def needs() -> None:
@@ -79,7 +80,6 @@ def needs() -> None:
 def refute(goal: Expr) -> Proof | None:
     """The checked refutation of a goal, or None if something fulfils it. Raises Unsupported, and InternalError where
     the solver's proof does not pass."""
-    import drup
     from pysat.solvers import Solver
 
     made = clauses_of(goal)
@@ -88,11 +88,33 @@ def refute(goal: Expr) -> Proof | None:
             return None
         # Deletions only spare a checker work; without them every lemma still follows.
         lines = [line.split() for line in solver.get_proof() if not line.startswith("d")]
-    lemmas = [list(map(int, line[:-1])) for line in lines if line and line[-1] == "0"]
-    outcome = drup.check_proof(made.clauses, lemmas).outcome
-    if outcome is not drup.Outcome.VALID:
+    lemmas = [tuple(map(int, line[:-1])) for line in lines if line and line[-1] == "0"]
+    steps = check([tuple(clause) for clause in made.clauses], lemmas)
+    if steps is None:
         raise InternalError("CaDiCaL's proof does not pass its check")
-    return Proof(made.variables, len(made.clauses), len(lemmas))
+    return Proof(made.variables, len(made.clauses), steps)
+
+
+def check(clauses: Sequence[tuple[int, ...]], lemmas: Sequence[tuple[int, ...]]) -> int | None:
+    """The number of steps of a refutation that the verified checker accepts one by one; None if it is none.
+
+    It is asked of each lemma whether its premises and its negation lead to the empty clause by propagation. That
+    the premises of each are clauses given, or lemmas accepted before, is seen to here."""
+    import drup
+
+    steps = needed_steps(clauses, lemmas)
+    if not steps or steps[-1].lemma:
+        return None
+    known: dict[int, tuple[int, ...]] = dict(enumerate(clauses))
+    for step in steps:
+        if any(premise not in known for premise in step.premises):
+            return None
+        premises = [list(known[premise]) for premise in step.premises]
+        negated = [[-literal] for literal in step.lemma]
+        if drup.check_proof(premises + negated, [[]]).outcome is not drup.Outcome.VALID:
+            return None
+        known[step.number] = step.lemma
+    return len(steps)
 
 
 def clauses_of(goal: Expr) -> Clauses:
@@ -258,10 +280,7 @@ class _Circuit:
         width = len(a)
         for place, bit in enumerate(by):
             step = min(1 << place, width)
-            if up:
-                moved = [filling] * step + a[: width - step]
-            else:
-                moved = a[step:] + [filling] * step
+            moved = [filling] * step + a[: width - step] if up else a[step:] + [filling] * step
             a = [self.choose(bit, x, y) for x, y in zip(moved, a, strict=True)]
         return a
 

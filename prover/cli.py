@@ -181,6 +181,14 @@ TRACES = (
         help="Write the refuted property's wave; more of them to PATH with -PROPERTY, or all into a folder.",
     ),
 )
+CERTIFYING = (
+    click.option(
+        "--certificate",
+        "certificate_path",
+        metavar="PATH",
+        help="Write what the verdicts rest on, for `recheck` and others.",
+    ),
+)
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
 
 
@@ -197,8 +205,14 @@ def main() -> None:
 
 
 @main.command(short_help="Prove or refute that a divider divides by N.")
-@_options(*CLAIMING, *READING, *FIGURES, *TRACES)
-def check(files: tuple[str, ...], json_path: str | None, vcd_path: str | None, **options: Any) -> Status:
+@_options(*CLAIMING, *READING, *FIGURES, *TRACES, *CERTIFYING)
+def check(
+    files: tuple[str, ...],
+    json_path: str | None,
+    vcd_path: str | None,
+    certificate_path: str | None,
+    **options: Any,
+) -> Status:
     """Prove or refute the sign-off properties of one divider: ratio, high time, never stuck, recovery,
     settling.
 
@@ -207,7 +221,7 @@ def check(files: tuple[str, ...], json_path: str | None, vcd_path: str | None, *
     Exit status: 0 proved, 1 refuted, 2 unusable input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    return _run(files, options, json_path, vcd_path)
+    return _run(files, options, json_path, vcd_path, certificate_path)
 
 
 @main.command(short_help="Tell what a divider divides by.")
@@ -220,7 +234,36 @@ def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> St
     Exit status: 0 measured, 1 never settles, 2 bad input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    return _run(files, options, json_path, None)
+    return _run(files, options, json_path, None, None)
+
+
+@main.command(short_help="Check a certificate again, with other solvers if you like.")
+@click.argument("certificate")
+@click.option(
+    "--solver",
+    type=click.Choice(["z3", "bitwuzla", "cvc5", "all"]),
+    default="z3",
+    help="Who refutes the obligations; all: every one that is installed [z3].",
+)
+@click.option("--sources", metavar="DIR", help="Folder that the sources' paths start from.")
+@click.option("--clausal", "by_clauses", is_flag=True, help="Refute them by clauses, with a checked proof.")
+@click.option("--effort", metavar="SECONDS", help="Time to try, then give up [600].")
+def recheck(certificate: str, solver: str, sources: str | None, by_clauses: bool, effort: str | None) -> Status:
+    """Check a certificate that `check --certificate` wrote: the sources are read anew, all that it claims is derived
+    again and compared, and its obligations are refuted again. No search engine takes part.
+
+    \b
+    Example: subharmonic recheck ping.json --solver all
+    Exit status: 0 accepted, 1 rejected, 2 bad input, 3 given up, 70 our fault.
+    """
+    from prover.recheck import recheck
+    from prover.report import outcome as told
+
+    given = {} if effort is None else {"seconds": _seconds(effort)}
+    with Progress(sys.stderr) as progress:
+        outcome = recheck(certificate, solver, sources, by_clauses, tell=progress.tell, **given)
+    _print(told.render(outcome) + "\n")
+    return Status.REFUTED if outcome.differences else Status.OPEN if outcome.gave_up else Status.PROVED
 
 
 def _spec(options: dict[str, Any]) -> Spec:
@@ -295,23 +338,30 @@ def _seconds(text: str) -> float:
 
 
 def _run(
-    files: Sequence[str], options: dict[str, Any], json_path: str | None, vcd_path: str | None
+    files: Sequence[str],
+    options: dict[str, Any],
+    json_path: str | None,
+    vcd_path: str | None,
+    certificate_path: str | None,
 ) -> Status:
     spec = _spec(options)
-    check_targets([path for path in (json_path, _target(vcd_path)) if path], files)
+    check_targets([path for path in (json_path, _target(vcd_path), certificate_path) if path], files)
     with Progress(sys.stderr) as progress:
         from prover.api import check, measure
 
         ask = measure if spec.ratio is None else check
         report = ask(files, spec, progress.tell)
         waves = _vcd(report, vcd_path)
-        results = [*_json(report, json_path), *waves]
+        certified, remarks = _certificate(report, certificate_path, files, progress.tell)
+        results = [*_json(report, json_path), *waves, *certified]
         check_targets([result.path for result in results], report.ports.design.files)
         piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
         text = "".join(piped) or _told(report, [wave.path for wave in waves])
         write_files([result for result in results if result.path != STANDARD_OUTPUT])
-    if STANDARD_OUTPUT not in (json_path, vcd_path) or piped:
+    if STANDARD_OUTPUT not in (json_path, vcd_path, certificate_path) or piped:
         _print(text)
+    for remark in remarks:
+        _complain(remark)
     return status_of(report)
 
 
@@ -321,6 +371,21 @@ def _json(report: Report, path: str | None) -> list[Result]:
     from prover.report import json
 
     return [Result(path, json.render(report))]
+
+
+def _certificate(
+    report: Report, path: str | None, files: Sequence[str], tell: Callable[[str], None]
+) -> tuple[list[Result], list[str]]:
+    """The certificate and what to say of it: it may bear out less than the report says."""
+    if path is None:
+        return [], []
+    from prover.effort import Effort
+    from prover.report.certificate import certify
+
+    made = certify(report, files, Effort(report.spec.effort, tell))
+    left = ", ".join(made.left_open)
+    remark = f"note: the certificate leaves {left} open: what that rests on is too large to be written"
+    return [Result(path, made.text)], [remark] if left else []
 
 
 def _is_folder(path: str) -> bool:

@@ -14,7 +14,7 @@ state, and one that runs through more items than the effort allows is left open.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from itertools import pairwise
 
 from prover import expr as e
@@ -77,7 +77,7 @@ class _Search:
         self.seen: dict[State, int] = {}
         self.jumps: dict[Shape, list[int]] = {}
         self.loop_from = 0
-        self.refused: set[State] = set()
+        self.short: dict[State, int] = {}
 
     def follow(self, state: State) -> None:
         run, choices = self.system.run, [0] * len(self.system.choices)
@@ -103,11 +103,11 @@ class _Search:
             previous = stride
             cycle = Repeat(1, stride, (Beat(state, first), Beat(middle, second)))
             self.seen[state] = len(self.items)
-            if repeats >= PATIENCE and any(stride) and stride not in self.refused:
+            if any(stride) and repeats >= PATIENCE << min(self.short.get(stride, 0), 8):
                 jump = self._extended(cycle)
                 if jump.times < 4:
-                    # Not worth a question again: this stride holds for no more than a few cycles.
-                    self.refused.add(stride)
+                    # Perhaps this stride never holds for long: be more patient with it from now on.
+                    self.short[stride] = self.short.get(stride, 0) + 1
                 if jump.times > 1:
                     repeats, previous = 0, None
                     state = self._append_jump(jump)

@@ -14,11 +14,15 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 from prover import expr as e
 from prover.design import Design, Register
 from prover.errors import InternalError
 from prover.expr import Expr
+
+if TYPE_CHECKING:
+    from prover.linear import Logs
 
 State = tuple[int, ...]
 """Values of all registers in the design's order, then the clock's level."""
@@ -138,6 +142,7 @@ class System:
     settled     one bit over the variables: a power-up state
     chain       the moments of one step; chain[0] is just after the clock's edge, chain[-1] is `step`
     words       variables that stand for several registers side by side (see recode), with these, lowest first
+    logs        what the first variable counts, in a linear shift register (see linear)
     """
 
     design: Design
@@ -149,6 +154,7 @@ class System:
     settled: Expr
     chain: tuple[Moment, ...]
     words: tuple[tuple[str, tuple[str, ...]], ...] = ()
+    logs: Logs | None = None
 
     @property
     def depth(self) -> int:
@@ -189,6 +195,8 @@ class System:
 
     def describe(self, state: State) -> dict[str, int]:
         """Register and clock values by name, in a state of this system."""
+        if self.logs is not None:
+            return {**self.logs.values(state[0]), self.clock: state[-1]}
         bits = dict(self.words)
         out: dict[str, int] = {}
         for name, value in zip(self.names, state, strict=True):

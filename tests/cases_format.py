@@ -45,7 +45,7 @@ class StatedWave:
 @dataclass
 class Group:
     """One run of `check` on a case, and what it has to say. `error` are words of the message of a refusal, `line` the
-    line that it points at."""
+    line that it points at; `notes` are lines of the file with words of the remark that accompanies the verdict."""
 
     options: list[str]
     verdicts: frozenset[str] = frozenset()
@@ -57,6 +57,7 @@ class Group:
     from_initial: StatedWave | None = None
     error: list[str] = field(default_factory=list)
     line: int | None = None
+    notes: list[tuple[int, str]] = field(default_factory=list)
 
 
 @dataclass(frozen=True)
@@ -125,6 +126,9 @@ def _state(group: Group, key: str, value: str) -> None:
         group.error = value.split()
     elif key == "line":
         group.line = int(value)
+    elif key == "note":
+        line, _, words = value.partition(": ")
+        group.notes.append((int(line), words))
     else:
         raise KeyError(key)
 

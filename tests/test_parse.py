@@ -105,6 +105,13 @@ def _root() -> str:
          "while (i < 2) begin i = i + 1; p = p * 2; end end assign y = p;", 1, 0, 16),
         ("logic [7:0] p; always_comb begin p = '0; p[0] = 1'b1; p += a; p <<= 1; p++; end assign y = p;", 2, 0, 7),
         ("assign y = '1;", 0, 0, 255),
+        ('assign y = "A" + "\\n";', 0, 0, 65 + 10),
+        ('localparam S = "HALF"; generate if (S == "HALF") assign y = a; endgenerate', 7, 0, 7),
+        ("function automatic int f(input [7:0] p); for (int i = 0; i < 8; i++) if (p[i]) return i; return 8; "
+         "endfunction assign y = f(a);", 0b101000, 0, 3),
+        ("logic [7:0] p; function void t(input [7:0] q); if (q == 3) return; p = q; endfunction "
+         "always_comb begin p = 9; t(a); end assign y = p;", 3, 0, 9),
+        ("reg [7:0] p; always begin @(a or b); p = a; p = p + b; end assign y = p;", 3, 4, 7),
         ("assign y = 4'(a) + 8'(b);", 0xF5, 3, 8),
         ("typedef enum logic [1:0] {A, B = 2, C} t; t s; assign s = C; assign y = {s, B};", 0, 0, 0b1110),
         ("localparam int N = 3; localparam logic [1:0] M = 7; assign y = N * 4 + M;", 0, 0, 15),
@@ -162,7 +169,6 @@ def test_initial_values_in_declarations(tmp_path: Path) -> None:
         ("reg x; always begin x = 1; end", "no event at its head"),
         ("real r;", "real isn't supported"),
         ("assign y = 1.5;", "real numbers"),
-        ('assign y = "text";', "string"),
         ("assign y = a &&& b;", "&&&"),
         ("assign y = 4'd3 'd4;", "syntax error"),
         ("assign y = 2'b12;", "digit '2'"),

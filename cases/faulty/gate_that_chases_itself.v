@@ -3,6 +3,7 @@
 // check: --ratio 4
 // verdict: refuted
 // settling: refuted
+// note: 13: combinational loop: chase -> chase
 module gate_that_chases_itself (input clk, input rst, output slow);
   reg [1:0] count;
   wire chase;

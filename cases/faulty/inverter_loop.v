@@ -2,6 +2,7 @@
 // check: --ratio 2
 // verdict: refuted
 // settling: refuted
+// note: 10: combinational loop: spin -> spin
 module inverter_loop (input clk, output tick);
   reg half;
   wire spin;

@@ -1,6 +1,6 @@
 // One net driven by a gate and by a stage.
 // check: --ratio 4
-// error: tick
+// error: tick driven twice here
 // line: 13
 module stage (input ck, output reg q);
   always @(posedge ck) q <= ~q;

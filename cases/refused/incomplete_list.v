@@ -1,6 +1,6 @@
 // A combinational block that is not told of one of its inputs.
 // check: --ratio 4
-// error: invert
+// error: invert sensitivity list simulator gates
 // line: 9
 module incomplete_list (input clk, output reg tick);
   reg [1:0] count;

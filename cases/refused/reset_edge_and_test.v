@@ -1,6 +1,6 @@
 // The reset falls by the list and is tested high: simulator and gates part ways.
 // check: --ratio 4
-// error: rst negedge
+// error: negedge rst simulator sample data gates reset posedge
 // line: 7
 module reset_edge_and_test (input clk, input rst, output tick);
   reg [1:0] count;

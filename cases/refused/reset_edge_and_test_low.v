@@ -1,6 +1,6 @@
 // The reset rises by the list and is tested low.
 // check: --ratio 4
-// error: rst_n posedge
+// error: posedge rst_n simulator sample data gates reset negedge
 // line: 7
 module reset_edge_and_test_low (input clk, input rst_n, output tick);
   reg [1:0] count;

@@ -1,6 +1,6 @@
 // One register assigned in two always blocks.
 // check: --ratio 4
-// error: count
+// error: count assigned two always blocks here
 // line: 8
 module two_always (input clk, output tick);
   reg [1:0] count;

@@ -1,6 +1,6 @@
 // One net driven by two assignments.
 // check: --ratio 4
-// error: tick
+// error: tick driven twice here
 // line: 9
 module two_assigns (input clk, output tick);
   reg [1:0] count;

@@ -105,17 +105,22 @@ def document(
     """The certificate as plain dictionaries and lists."""
     said = {"claim": claim(subject.spec), "options": options(subject)}
     files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
-    bound = hashlib.sha256(dumps([said, files]).encode()).hexdigest()
     return {
         "schema": SCHEMA,
         "verdict": overall(findings),
         **said,
-        "sources": {"files": files, "sha256": bound},
+        "sources": {"files": files, "sha256": bound_to(subject)},
         "machine": _machine(ports, made),
         "properties": [_property(finding) for finding in findings],
         "evidence": evidence.as_object(found),
         "obligations": [{"name": each.name, "script": each.script()} for each in made.obligations],
     }
+
+
+def bound_to(subject: Subject) -> str:
+    """The SHA-256 that binds the claim, the options and the files' digests to one another, in hexadecimal."""
+    said = [claim(subject.spec), options(subject), subject.digests]
+    return hashlib.sha256(dumps(said).encode()).hexdigest()
 
 
 def claim(spec: Spec) -> Object:

@@ -69,7 +69,7 @@ class Library:
             found = self.get(named)
             if not isinstance(found, tree.Module):
                 what = f"module {printable(named)} isn't defined"
-                raise UserError(what, self._anywhere(), f"there are: {listed}" if listed else "")
+                raise UserError(what, self._anywhere(), f"there are: {listed}" if listed else "is this Verilog?")
             return found
         modules = {n: self.get(n) for n, chunk in self.chunks.items() if not chunk.portless}
         inside = {

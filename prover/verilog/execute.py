@@ -22,7 +22,7 @@ from prover.verilog.names import MAX_CALL_DEPTH, Constant, Lazy, Net, Report, Ro
 from prover.verilog.parts import Place, write_part, written_mask
 from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
-from prover.verilog.words import cut
+from prover.verilog.words import assume, cut
 
 MAX_STEPS = 20_000
 MAX_ROUNDS = 8_192
@@ -40,7 +40,8 @@ class State:
     """Words so far: `values` after blocking assignments, `pending` those of non-blocking ones.
 
     `written` has a word per variable whose bits say under which condition each bit was assigned, and
-    `touched` the bits assigned on any path. `returned` is one bit: a return has ended the routine. The rest is shared by all copies: where a variable was first
+    `touched` the bits assigned on any path. `returned` is one bit: a return has ended the routine, and there
+    `outcome` is its value. The rest is shared by all copies: where a variable was first
     assigned, and how, and what has been read at all.
     """
 
@@ -52,6 +53,7 @@ class State:
     at: dict[Net, int] = field(default_factory=dict)
     reads: set[Net] = field(default_factory=set)
     returned: Expr = e.FALSE
+    outcome: Expr | None = None
 
     def copy(self) -> State:
         return State(
@@ -63,6 +65,7 @@ class State:
             self.at,
             self.reads,
             self.returned,
+            self.outcome,
         )
 
     def result(self, net: Net) -> Expr:
@@ -93,6 +96,9 @@ class State:
         self.pending = joined(then.pending, other.pending, absent)
         self.written = joined(then.written, other.written, lambda net: e.const(0, net.width))
         self.returned = e.ite(condition, then.returned, other.returned)
+        self.outcome = other.outcome if then.outcome is None else then.outcome
+        if then.outcome is not None and other.outcome is not None:
+            self.outcome = e.ite(condition, then.outcome, other.outcome)
         self.touched = {
             net: then.touched.get(net, 0) | other.touched.get(net, 0)
             for net in {**other.touched, **then.touched}
@@ -224,9 +230,13 @@ class Executor:
         if state.returned is e.TRUE:
             return
         left, going = state.copy(), state.copy()
-        going.returned = e.FALSE
+        ended = state.returned
+        left.returned, going.returned = e.TRUE, e.FALSE
+        # What one side has not set yet is any value there, and must not linger where it can't come through.
+        for side, holds in ((left, ended), (going, e.bvnot(ended))):
+            side.values |= {net: assume(word, holds) for net, word in side.values.items() if net.local}
         yield rest(what, scope, going)
-        state.merge(left.returned, left, going, self.report)
+        state.merge(ended, left, going, self.report)
 
     # -- assignments ---------------------------------------------------------------------------------------
 
@@ -342,7 +352,8 @@ class Executor:
             merged.merge(test, inner, last, self.report)
             last = inner if test is e.TRUE else merged
         state.values, state.pending = last.values, last.pending
-        state.written, state.touched, state.returned = last.written, last.touched, last.returned
+        state.written, state.touched = last.written, last.touched
+        state.returned, state.outcome = last.returned, last.outcome
 
     def _case_type(self, node: Any, sizer: Sizer) -> Task[Type]:
         """All labels and the subject take the widest's width, and are signed if all are (clause 9.5)."""
@@ -472,8 +483,13 @@ class Executor:
         routine.active += 1
         self.unrolling += 1
         self.running.append(routine)
+        before, state.outcome = state.outcome, None
         yield self._sequence(routine.body, routine.scope, state)
-        state.returned = e.FALSE
+        if routine.result and state.outcome is not None:
+            unreturned = state.values.get(routine.result)
+            otherwise = self.report.choice(routine.result.width) if unreturned is None else unreturned
+            state.values[routine.result] = e.ite(state.returned, state.outcome, otherwise)
+        state.returned, state.outcome = e.FALSE, before
         self.running.pop()
         self.unrolling -= 1
         routine.active -= 1
@@ -515,7 +531,7 @@ class Executor:
             self.report.fail(what, node, "write return VALUE inside a function")
         if result is not None:
             value: Expr = yield Sizer(Environment(self, scope, state)).assigned(node.value, result.width)
-            self.store([Place(result, None, 0, result.width, False)], value, state, True, node.lineno)
+            state.outcome = value
         state.returned = e.TRUE
 
     def _refused(self, node: tree.Refused, scope: Scope, state: State) -> NoReturn:

@@ -429,7 +429,7 @@ VERILOG = [
     Accepted("bufif1", f"module d (input clk, en, output tick);\n{COUNT} bufif1 (tick, n[1], en);\nendmodule\n",
              holds=(("en", 1),), note="floating", line=2),
     Accepted("$signed and $unsigned", module("reg [2:0] n; always @(posedge clk)\n"
-             "if ($signed(n) >= 2) n <= 3'b110; else n <= n + 1; assign tick = $signed(n) < 0;"), "4"),
+             "if ($signed(n) >= 2) n <= 3'b110; else n <= n + 1; assign tick = $signed(n) < 0;"), "5", 4),
     Accepted("an arithmetic shift", module("reg signed [3:0] n; always @(posedge clk) if (n == 0 || n == -1) n <= -8;\n"
              "else n <= n >>> 1; assign tick = n == -8;"), "4", 2),
     Accepted("specify blocks", module(f"{COUNT} assign tick = n[1];\nspecify (clk => tick) = (1, 2); endspecify"),
@@ -469,6 +469,11 @@ VERILOG = [
     Accepted("strings as parameters", module("parameter MODE = \"HALF\"; reg [1:0] n; always @(posedge clk) n <= n + 1;\n"
              "generate if (MODE == \"HALF\") assign tick = n[0]; else assign tick = n[1]; endgenerate"), "2"),
     Accepted("an event at the head of always", module("reg n; always begin @(posedge clk); n <= ~n; end assign tick = n;"), "2"),
+    Accepted("case of 1", module("reg [2:0] s; always @(posedge clk) case (1'b1) s[0]: s <= 3'b010; s[1]: s <= 3'b100;\n"
+             "default: s <= 3'b001; endcase assign tick = s[1];"), "3", 2),
+    Accepted("a bit of a parameter", "module d #(parameter N = 5) (input clk, output tick);\nreg [2:0] p, q;\n"
+             "always @(posedge clk) p <= p >= N - 1 ? 0 : p + 1; always @(negedge clk) q <= p;\n"
+             "assign tick = N == 1 ? clk : N[0] ? p > N >> 1 | q > N >> 1 : p < N >> 1;\nendmodule\n", "5"),
     Accepted("macromodule", "macromodule d (input clk, output reg tick);\nalways @(posedge clk) tick <= ~tick;\n"
              "endmodule\n", "2"),
     Accepted("escaped names", module("reg n; wire \\n+1 = ~n; always @(posedge clk) n <= \\n+1 ; assign tick = \\n ;"),
@@ -583,8 +588,8 @@ REFUSED = [
     Refused("a real", f"{RESET}real r;\nendmodule\n", "real", 2),
     Refused("a real constant that is used", module("parameter F = 2.5;\nassign tick = F > 2;"), "real", 2),
     Refused("an initial value that isn't constant", f"{RESET}initial\ntick = x;\nendmodule\n", "initial constant", 3),
-    Refused("wired logic with two drivers", module("wor tick; assign tick = clk;\nassign tick = 0;", "input clk, tick"),
-            "tick", 2),
+    Refused("wired logic with two drivers", module("assign tick = clk;\nassign tick = 0;", "input clk, output wor tick"),
+            "tick driven twice", 3),
     Refused("tran", module("tran (tick, clk);"), "tran", 2),
     Refused("pullup", module("pullup (tick);"), "pullup", 2),
     Refused("strengths", module("assign (strong1, weak0) tick = clk;"), "strong1", 2),

@@ -56,7 +56,9 @@ class _Writer:
     def say(self, line: str) -> None:
         self.lines.append("  " + line)
 
-    def register(self, stem: str, width: int, edge: str | None, signed: bool = False, blocking: bool = False) -> str:
+    def register(
+        self, stem: str, width: int, edge: str | None, signed: bool = False, blocking: bool = False
+    ) -> str:
         name = self.name(stem)
         range_ = "" if width == 1 and self.r.random() < 0.9 else f"[{width - 1}:0] "
         if range_ == "" and signed:
@@ -80,20 +82,37 @@ def divider(seed: int) -> Divider:
     w = _Writer(r, reset, r.random() < 0.5)
     first = r.choice([_counter, _counter, _counter, _ripple, _clears_itself, _clears_itself, _shift])
     first(w)
-    others = [_counter, _ripple, _resample, _resample, _gated, _shift, _latch, _logic, _clears_itself, _cleared, _turned, _capture]
+    others = [
+        _counter,
+        _ripple,
+        _resample,
+        _resample,
+        _gated,
+        _shift,
+        _latch,
+        _logic,
+        _clears_itself,
+        _cleared,
+        _turned,
+        _capture,
+    ]
     for _ in range(r.randrange(1, 4)):
         if w.room() > 0:
             r.choice(others)(w)
     output = _output(w)
     ports = ["input clk", *([f"input {reset[0]}"] if reset else []), "output tick"]
-    body = "\n".join([f"module divider ({', '.join(ports)});", *w.lines, f"  assign tick = {output};", "endmodule", ""])
+    body = "\n".join(
+        [f"module divider ({', '.join(ports)});", *w.lines, f"  assign tick = {output};", "endmodule", ""]
+    )
     return Divider("\n".join([*w.modules, body]), 1 - reset[1] if reset else None, tuple(w.delayed))
 
 
 # -- units -------------------------------------------------------------------------------------------------
 
 
-def _clocked(w: _Writer, clock: str, edge: str, cleared: list[tuple[str, int]], body: list[str], op: str = "<=") -> None:
+def _clocked(
+    w: _Writer, clock: str, edge: str, cleared: list[tuple[str, int]], body: list[str], op: str = "<="
+) -> None:
     """A clocked block; `cleared` are registers with their reset values, if there is a reset and it takes part."""
     r = w.r
     reset = w.reset if r.random() < 0.8 else None
@@ -190,12 +209,18 @@ def _counter(w: _Writer) -> None:
         for value in range(1 << width):
             if value < last or r.random() < 0.3:
                 following = value + 1 if value < last else r.randrange(1 << width)
-                body.append(f"  {_constant(r, width, value) if not signed else f'{width}{chr(39)}b{value:b}'}: {c} {op} {following};")
+                label = f"{width}'b{value:b}" if signed else _constant(r, width, value)
+                body.append(f"  {label}: {c} {op} {following};")
         body += [f"  default: begin {c} {op} 0; {toggle} end", "endcase"]
     else:
         limit_text = f"{width}'b{limit:0{width}b}"
         dots = limit_text if width == 1 else limit_text[:-1] + r.choice(["?", limit_text[-1]])
-        body = [f"casez ({{{c}}})", f"  {dots}: begin {c} {op} {first}; {toggle} end", f"  default: {c} {op} {c} {step} {one};", "endcase"]
+        body = [
+            f"casez ({{{c}}})",
+            f"  {dots}: begin {c} {op} {first}; {toggle} end",
+            f"  default: {c} {op} {c} {step} {one};",
+            "endcase",
+        ]
     if enable:
         body = [f"if ({enable}) begin", *body, "end"]
     cleared = [(c, r.randrange(1 << width)), *([(out, r.randrange(2))] if out else [])]
@@ -286,7 +311,9 @@ def _cleared(w: _Writer) -> None:
     n = r.choice(nets)
     clear = w.name("clear")
     if r.random() < 0.5 and n.width > 1:
-        w.say(f"wire {clear} = {n.name} {r.choice(['==', '!='])} {_constant(r, n.width, r.randrange(1 << n.width))};")
+        w.say(
+            f"wire {clear} = {n.name} {r.choice(['==', '!='])} {_constant(r, n.width, r.randrange(1 << n.width))};"
+        )
     else:
         w.say(f"wire {clear} = {r.choice(['', '~'])}{n.bit(r)};")
     edge = r.choice(["posedge", "negedge"])
@@ -377,11 +404,17 @@ def _gated(w: _Writer) -> None:
         w.say(f"wire {clock} = clk {'|' if gate_or else '&'} {enable};")
     else:
         w.say(f"wire {clock};")
-        w.say(f"{'or' if gate_or else 'and'} gate_{clock} ({clock}, clk, {enable});" if form == 1 else f"assign {clock} = {enable} {'|' if gate_or else '&'} clk;")
+        w.say(
+            f"{'or' if gate_or else 'and'} gate_{clock} ({clock}, clk, {enable});"
+            if form == 1
+            else f"assign {clock} = {enable} {'|' if gate_or else '&'} clk;"
+        )
     width = min(w.room(), r.choice([1, 1, 2]))
     name = w.register("gated", width, None)
     edge = r.choice(["posedge", "negedge"])
-    _clocked(w, clock, edge, [(name, 0)], [f"{name} <= {name} + 1'b1;" if width > 1 else f"{name} <= ~{name};"])
+    _clocked(
+        w, clock, edge, [(name, 0)], [f"{name} <= {name} + 1'b1;" if width > 1 else f"{name} <= ~{name};"]
+    )
 
 
 def _shift(w: _Writer) -> None:
@@ -395,7 +428,9 @@ def _shift(w: _Writer) -> None:
         feed = f"~{name}"
         body = [f"{name} <= {feed};"]
     else:
-        feed = r.choice([f"~{name}[{width - 1}]", f"{name}[{width - 1}] ^ {name}[0]", f"~|{name}[{width - 2}:0]"])
+        feed = r.choice(
+            [f"~{name}[{width - 1}]", f"{name}[{width - 1}] ^ {name}[0]", f"~|{name}[{width - 2}:0]"]
+        )
         if more:
             feed = f"({feed}) ^ ({more})"
         form = r.randrange(3)
@@ -434,8 +469,23 @@ def _logic(w: _Writer) -> None:
     nets = _readable(w, edge)
     name = w.register("word", width, edge, r.random() < 0.3 and width > 1)
     other = r.choice(nets).name if nets else name
-    terms = [name, f"~{name}", f"{name} + {other}", f"{name} ^ {other}", f"{other} - {name}", f"{other} << 1", f"{{{name}, {other}}} >> 1"]
-    terms += [f"{name} * 3", f"-{name}", f"{name} >>> 1", f"({name} + {other}) >> 1", f"$signed({other}) + 1", str(r.randrange(1 << width))]
+    terms = [
+        name,
+        f"~{name}",
+        f"{name} + {other}",
+        f"{name} ^ {other}",
+        f"{other} - {name}",
+        f"{other} << 1",
+        f"{{{name}, {other}}} >> 1",
+    ]
+    terms += [
+        f"{name} * 3",
+        f"-{name}",
+        f"{name} >>> 1",
+        f"({name} + {other}) >> 1",
+        f"$signed({other}) + 1",
+        str(r.randrange(1 << width)),
+    ]
     a, b, c = r.choice(terms), r.choice(terms), r.choice(terms)
     if r.random() < 0.5:
         wire = w.name("next")

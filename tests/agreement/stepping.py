@@ -11,10 +11,10 @@ from agreement.simulator import Bench, Sample, Start
 
 from prover import expr as e
 from prover.design import Design
+from prover.effort import Effort
 from prover.ports import Ports
 from prover.settling import Settling, settle
 from prover.system import State, System
-from prover.effort import Effort
 
 Map = dict[State, State]
 

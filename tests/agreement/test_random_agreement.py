@@ -62,5 +62,7 @@ def agrees(seed: int, made: Divider, folder: Path) -> bool:
     assert states, about
     told, _, _ = differences(system, bench, states, HALF_CYCLES)
     if told and not excused:
-        pytest.fail("\n".join([*told[:3], f"{len(told)} of {len(states)} states differ", about]), pytrace=False)
+        pytest.fail(
+            "\n".join([*told[:3], f"{len(told)} of {len(states)} states differ", about]), pytrace=False
+        )
     return not excused
