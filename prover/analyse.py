@@ -73,7 +73,10 @@ def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple
         return system, starts
     inner = cone(system)
     counted = linear.logs(inner, effort)
-    if counted is not None:
+    if counted is not None and counted.logs is not None:
+        faults = certificate.linear_faults(inner, counted.logs, effort)
+        if faults:
+            raise InternalError(f"a matrix fails its check: {'; '.join(faults)}")
         placed = (linear.moved(project(system, s.state, inner), inner, counted) for s in starts)
         return counted, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
     if graph.fits(system):
@@ -155,9 +158,13 @@ def _starts(
         return "any", (), None
     if ports.reset is not None and spec.start in (None, "reset"):
         held = reset.hold(ports.design, ports.clock, ports.resetting, effort)
-        if held.states:
-            _check_reset(ports, held, effort)
-        return "reset", reset.released(system, held, ports.resetting, limit), held
+        problem = _check_reset(ports, held, effort) if held.states else ""
+        starts = reset.released(system, held, ports.resetting, limit)
+        if isinstance(starts, str):
+            problem, starts = problem or starts, ()
+        if problem:
+            return "reset", (), replace(held, states=(), problem=problem)
+        return "reset", starts, held
     found = reset.initial(system, limit)
     if isinstance(found, str):
         if spec.start == "initial":
@@ -166,14 +173,19 @@ def _starts(
     return "initial", found, None
 
 
-def _check_reset(ports: Ports, held: reset.Held, effort: Effort) -> None:
+def _check_reset(ports: Ports, held: reset.Held, effort: Effort) -> str:
+    """What is wrong with the states found under reset, "" if nothing is."""
     design = ports.design
     system, settling = settle(design, ports.clock, ports.resetting, ports.output_value, effort)
-    if settling.depth is None or system.choices:
-        return
+    if settling.depth is None:
+        # Where the micro-steps were cut short, what the registers hold is not known.
+        return settling.open or "the registers do not settle while reset is held"
+    if system.choices:
+        return ""
     claim = certificate.reset_goal(system, held.half_cycles + 2, held.states)
     if not held.unforced and not certificate.discharge(claim, effort):
         raise InternalError("reset does not lead where it was found to lead")
+    return ""
 
 
 def _races_won(ports: Ports, settling: Settling, starts: Sequence[Start], effort: Effort) -> tuple[str, ...]:

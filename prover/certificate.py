@@ -24,6 +24,8 @@ from prover.system import State, System, settled_when
 if TYPE_CHECKING:
     import numpy as np
 
+    from prover.linear import Logs
+
 COMPUTED_SINGLY = 64
 """Single steps up to which each is evaluated by itself; more are evaluated together on arrays."""
 
@@ -169,7 +171,8 @@ def single_obligations(system: System, singles: Sequence[Step], name: str) -> It
         for step in singles[begin : begin + STATED_TOGETHER]:
             here = e.conj(e.eq(v, e.const(x, v.width)) for v, x in zip(state, step.source, strict=True))
             there = e.conj(
-                e.eq(after, e.const(x, after.width)) for after, x in zip(system.step, step.target, strict=True)
+                e.eq(after, e.const(x, after.width))
+                for after, x in zip(system.step, step.target, strict=True)
             )
             fits = e.bvand(there, system.output if step.level else e.bvnot(system.output))
             wrong = e.bvor(wrong, e.bvand(here, e.bvnot(fits)))
@@ -224,7 +227,7 @@ def lead_steps(
         moves = [(index, stride)]
         for i, (times, along) in enumerate(step.axes):
             size = times.bit_length() + 1
-            inner = e.var(f"!along{i}", size)
+            inner = e.var(f"!along{i}.{size}", size)
             within = e.bvand(within, e.bvult(inner, e.const(times, size)))
             moves.append((inner, along))
         enters = step.target == entry and step.source == last.state and not step.axes
@@ -635,3 +638,98 @@ def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligatio
         e.conj(e.eq(a, e.const(v, a.width)) for a, v in zip(state, target, strict=True)) for target in wanted
     ]
     return Obligation("the states that reset leaves", e.conj(e.bvnot(hit) for hit in hits))
+
+
+# -- linear registers --------------------------------------------------------------------------------------
+
+
+def linear_faults(system: System, logs: Logs, effort: Effort) -> list[str]:
+    """What is wrong with reading a system's registers as the powers of a matrix; empty if nothing is.
+
+    Checked with rows where the search has columns: that one edge moves nothing and the other goes by x -> M·x + c,
+    that the fixed state is one, that M's order is 2^n - 1, and that the output tells one state from all others.
+    """
+    effort.say("checking a linear register")
+    registers = system.variables[:-1]
+    n = sum(width for _, width in registers)
+    if logs.registers != tuple(registers) or len(logs.columns) != n:
+        return ["a matrix of another size than the registers"]
+    bits = [e.extract(e.var(name, width), i, i) for name, width in registers for i in range(width)]
+    rows = [sum((column >> r & 1) << c for c, column in enumerate(logs.columns)) for r in range(n)]
+    offset = [(_dot(row, logs.fixed) ^ logs.fixed >> r) & 1 for r, row in enumerate(rows)]
+    faults: list[str] = []
+    held, moved = [], []
+    for level in (0, 1):
+        after = e.substitute(list(system.step[:-1]), {system.clock: e.const(level, 1)})
+        stepped = [e.extract(x, i, i) for x in after for i in range(x.width)]
+        held.append(e.disj(e.bvxor(a, b) for a, b in zip(stepped, bits, strict=True)))
+        moved.append(
+            e.disj(e.bvxor(a, _row(row, c, bits)) for a, row, c in zip(stepped, rows, offset, strict=True))
+        )
+    if not any(
+        discharge(Obligation("held", held[level]), effort)
+        and discharge(Obligation("matrix", moved[1 - level]), effort)
+        for level in (0, 1)
+    ):
+        faults.append("a step that is not the matrix")
+    if not _full_order(rows):
+        faults.append("a matrix of another order than 2^n - 1")
+    at_start = e.conj(b if logs.start >> i & 1 else e.bvnot(b) for i, b in enumerate(bits))
+    shown = e.bvxor(system.output, at_start)
+    if logs.start == logs.fixed or not any(
+        discharge(Obligation("decode", goal), effort) for goal in (shown, e.bvnot(shown))
+    ):
+        faults.append("an output that does not tell the decoded state from all others")
+    if system.settled is not e.TRUE or system.choices:
+        faults.append("registers that are held or hang on x")
+    return faults
+
+
+def _dot(row: int, x: int) -> int:
+    return (row & x).bit_count() & 1
+
+
+def _row(row: int, constant: int, bits: Sequence[Expr]) -> Expr:
+    total = e.const(constant, 1)
+    for i, bit in enumerate(bits):
+        if row >> i & 1:
+            total = e.bvxor(total, bit)
+    return total
+
+
+def _full_order(rows: Sequence[int]) -> bool:
+    n = len(rows)
+    one = [1 << i for i in range(n)]
+
+    def times(a: Sequence[int], b: Sequence[int]) -> list[int]:
+        out = []
+        for row in a:
+            total = 0
+            for i in range(n):
+                if row >> i & 1:
+                    total ^= b[i]
+            out.append(total)
+        return out
+
+    def to_the(exponent: int) -> list[int]:
+        out = one
+        for digit in bin(exponent)[2:]:
+            out = times(out, out)
+            if digit == "1":
+                out = times(out, rows)
+        return out
+
+    whole = rest = (1 << n) - 1
+    if to_the(whole) != one:
+        return False
+    p = 3
+    while rest > 1:
+        # Past the root of what is left, that is a prime itself.
+        p = p if p * p <= rest else rest
+        if rest % p == 0:
+            if to_the(whole // p) == one:
+                return False
+            while rest % p == 0:
+                rest //= p
+        p += 2
+    return True

@@ -26,9 +26,10 @@ TRUSTED = (
     "the derivation of the obligations and of the verdicts (rebuild, certificate, tables, reset, properties)",
     "the making of clauses (clausal) and the simplification of expressions (expr)",
     "the package drup: its verified checker as compiled, and its binding to Python",
+    "z3 as far as ports were recognised with its help: the certificate states which they are",
     "Python",
 )
-"""What remains trusted when the clausal road accepts; neither z3 nor CaDiCaL is among it."""
+"""What remains trusted when the clausal road accepts; no solver's word that something is refuted is among it."""
 
 Literal = int
 """A variable's number, negative for its complement. Variable 1 is true."""
@@ -73,7 +74,8 @@ def needs() -> None:
     for module, package in (("pysat", "python-sat"), ("drup", "drup")):
         if find_spec(module) is None:
             raise UserError(
-                f"--clausal needs the package {package}", hint="install it with pip install 'subharmonic[proof]'"
+                f"--clausal needs the package {package}",
+                hint="install it with pip install 'subharmonic[proof]'",
             )
 
 
@@ -192,7 +194,12 @@ class _Circuit:
         key = ("choose", when, then, other)
         if key not in self.made:
             out = self.made[key] = self.fresh()
-            self.clauses += [[-when, -then, out], [-when, then, -out], [when, -other, out], [when, other, -out]]
+            self.clauses += [
+                [-when, -then, out],
+                [-when, then, -out],
+                [when, -other, out],
+                [when, other, -out],
+            ]
             # Not needed, but the solver finds more by itself with them.
             self.clauses += [[-then, -other, out], [then, other, -out]]
         return self.made[key]

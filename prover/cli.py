@@ -25,6 +25,7 @@ from prover.spec import Spec, read_duty_range, read_frequency, read_number, read
 
 if TYPE_CHECKING:
     from prover.findings import Report
+    from prover.several import Outcome
 
 PATIENCE = 1.0
 """Seconds a run may last before it shows what it is doing."""
@@ -45,6 +46,10 @@ class Status(IntEnum):
     OPEN = 3
     FAULT = 70
     INTERRUPTED = 130
+
+
+SEVERITY = [Status.PROVED, Status.OPEN, Status.REFUTED, Status.USAGE, Status.FAULT]
+"""The statuses of several dividers, the worst last: what the run exits with."""
 
 
 def status_of(report: Report) -> Status:
@@ -248,7 +253,9 @@ def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> St
 @click.option("--sources", metavar="DIR", help="Folder that the sources' paths start from.")
 @click.option("--clausal", "by_clauses", is_flag=True, help="Refute them by clauses, with a checked proof.")
 @click.option("--effort", metavar="SECONDS", help="Time to try, then give up [600].")
-def recheck(certificate: str, solver: str, sources: str | None, by_clauses: bool, effort: str | None) -> Status:
+def recheck(
+    certificate: str, solver: str, sources: str | None, by_clauses: bool, effort: str | None
+) -> Status:
     """Check a certificate that `check --certificate` wrote: the sources are read anew, all that it claims is derived
     again and compared, and its obligations are refuted again. No search engine takes part.
 
@@ -346,6 +353,9 @@ def _run(
 ) -> Status:
     spec = _spec(options)
     check_targets([path for path in (json_path, _target(vcd_path), certificate_path) if path], files)
+    dividers = _groups(files, spec)
+    if dividers is not None:
+        return _run_several(dividers, spec, json_path, vcd_path, certificate_path)
     with Progress(sys.stderr) as progress:
         from prover.api import check, measure
 
@@ -363,6 +373,61 @@ def _run(
     for remark in remarks:
         _complain(remark)
     return status_of(report)
+
+
+def _groups(files: Sequence[str], spec: Spec) -> list[tuple[str, ...]] | None:
+    """The files of each divider, if there are several. A single file needs no look, and no import."""
+    if len(files) < 2 and not os.path.isdir(files[0]):
+        return None
+    from prover.several import groups
+
+    return groups(files, spec)
+
+
+def _run_several(
+    dividers: Sequence[tuple[str, ...]],
+    spec: Spec,
+    json_path: str | None,
+    vcd_path: str | None,
+    certificate_path: str | None,
+) -> Status:
+    """A verdict for each divider, a line for each at the end, and the worst status."""
+    if vcd_path is not None and not _is_folder(vcd_path):
+        raise UserError(f"--vcd {vcd_path}: there are several dividers", hint="name a folder")
+    if certificate_path is not None:
+        raise UserError("--certificate: there are several dividers", hint="check one at a time")
+    with Progress(sys.stderr) as progress:
+        from prover.api import check, measure
+        from prover.report import several as told
+        from prover.several import labels, outcomes
+
+        ask = measure if spec.ratio is None else check
+        found = list(outcomes(dividers, spec, lambda files, spec: ask(files, spec, progress.tell)))
+        results: list[Result] = []
+        texts: list[str] = []
+        for outcome, label in zip(found, labels(found), strict=True):
+            waves = _vcd(outcome.report, vcd_path, f"{label}-") if outcome.report else []
+            results += waves
+            if outcome.report is not None:
+                texts.append(_told(outcome.report, [wave.path for wave in waves]))
+            elif outcome.error is not None:
+                texts.append(harmless(_user_error(outcome.error)) + "\n")
+        text = "\n".join([*texts, told.summary(found) + "\n"])
+        if json_path == STANDARD_OUTPUT:
+            text = told.render_json(found)
+        elif json_path is not None:
+            results.append(Result(json_path, told.render_json(found)))
+        sources = [file for outcome in found for file in outcome.files]
+        check_targets([result.path for result in results], sources)
+        write_files(results)
+    _print(text)
+    return max((_status_of_outcome(outcome) for outcome in found), key=SEVERITY.index)
+
+
+def _status_of_outcome(outcome: Outcome) -> Status:
+    if outcome.report is not None:
+        return status_of(outcome.report)
+    return Status.USAGE if outcome.error else Status.FAULT if outcome.fault else Status.OPEN
 
 
 def _json(report: Report, path: str | None) -> list[Result]:
@@ -399,7 +464,7 @@ def _target(vcd_path: str | None) -> str | None:
     return str(Path(vcd_path) / "ratio.vcd")
 
 
-def _vcd(report: Report, path: str | None) -> list[Result]:
+def _vcd(report: Report, path: str | None, prefix: str = "") -> list[Result]:
     """Where each refuted property's wave goes. On standard output there is room for the first only."""
     if path is None:
         return []
@@ -410,7 +475,7 @@ def _vcd(report: Report, path: str | None) -> list[Result]:
         return [Result(path, dump.text) for dump in dumps[:1]]
     place = Path(path)
     if _is_folder(path):
-        return [Result(str(place / f"{dump.name}.vcd"), dump.text) for dump in dumps]
+        return [Result(str(place / f"{prefix}{dump.name}.vcd"), dump.text) for dump in dumps]
     others = [place.with_name(f"{place.stem}-{dump.name}{place.suffix}") for dump in dumps]
     return [Result(path if i == 0 else str(others[i]), dump.text) for i, dump in enumerate(dumps)]
 

@@ -86,9 +86,7 @@ def _hold(ports: Ports, effort: Effort) -> Hold | None:
     return None
 
 
-def _everywhere(
-    rhythm: Rhythm, goal: Goal, effort: Effort
-) -> tuple[Layer, ...] | Ranking | Rounds | None:
+def _everywhere(rhythm: Rhythm, goal: Goal, effort: Effort) -> tuple[Layer, ...] | Ranking | Rounds | None:
     system, recovery = rhythm.system, rhythm.recovery
     recovers = recovery is not None and recovery.worst is not None
     if rhythm.stages and recovers:
@@ -169,5 +167,3 @@ def _whole(state: State, whole: System, machine: System, effort: Effort) -> Stat
         return None
     found = tuple(values.get(name, model.get(name, 0)) for name in whole.names)
     return found if placed(found, whole, machine) == state else None
-
-

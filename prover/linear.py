@@ -72,16 +72,16 @@ class Logs:
             return self.period
         stride = 1 << ((len(self.columns) + 1) // 2)
         seen: dict[int, int] = {}
+        baby, giant = _tables(self.columns), _tables(power(self.columns, stride))
         y = target
         for i in range(stride):
             seen.setdefault(y, i)
-            y = apply(self.columns, y)
-        giant = power(self.columns, stride)
+            y = _looked_up(baby, y)
         y = self.start ^ self.fixed
         for j in range(self.period // stride + 2):
             if y in seen and j * stride >= seen[y]:
                 return (j * stride - seen[y]) % self.period
-            y = apply(giant, y)
+            y = _looked_up(giant, y)
         raise ValueError("not a state of this register")
 
 
@@ -213,6 +213,20 @@ def apply(columns: Sequence[int], y: int) -> int:
         low = y & -y
         out ^= columns[low.bit_length() - 1]
         y ^= low
+    return out
+
+
+def _tables(columns: Sequence[int]) -> list[list[int]]:
+    """For each byte of y, what its values contribute to M·y."""
+    parts = [columns[i : i + 8] for i in range(0, len(columns), 8)]
+    return [[apply(part, byte) for byte in range(1 << len(part))] for part in parts]
+
+
+def _looked_up(tables: Sequence[Sequence[int]], y: int) -> int:
+    out = 0
+    for table in tables:
+        out ^= table[y & 255]
+        y >>= 8
     return out
 
 

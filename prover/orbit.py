@@ -265,7 +265,7 @@ def broken_round(system: System, block: Repeat, count: Expr, then: State) -> Exp
         bounds = e.TRUE
         for i, (times, stride) in enumerate(claim.axes):
             size = times.bit_length() + 1
-            inner = e.var(f"!inner{i}", size)
+            inner = e.var(f"!inner{i}.{size}", size)
             bounds = e.bvand(bounds, e.bvult(inner, e.const(times, size)))
             indices.append((inner, stride))
         here, there = _along(system, claim.source, indices), _along(system, claim.target, indices)

@@ -130,8 +130,12 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
     except UserError as fault:
         raise Rejected(f"the options don't fit the sources: {fault.message}") from None
     if written.render(derived) != text:
-        different = [each for each, _ in zip(differences(stated, derived), range(MOST_DIFFERENCES), strict=False)]
-        raise Rejected("\n".join(different) or "the text is not in the form in which certificates are written")
+        different = [
+            each for each, _ in zip(differences(stated, derived), range(MOST_DIFFERENCES), strict=False)
+        ]
+        raise Rejected(
+            "\n".join(different) or "the text is not in the form in which certificates are written"
+        )
     scripts = tuple((each["name"], each["script"]) for each in stated["obligations"])
     return Derived(ports.design.top, findings, made, scripts)
 
@@ -181,7 +185,9 @@ def _subject(stated: dict[str, Any]) -> Subject:
             tuple((file["path"], file["sha256"]) for file in files),
         )
         _check_kinds(subject)
-        different = list(differences([claim, options], [written.claim(spec), written.options(subject)], "claim"))
+        different = list(
+            differences([claim, options], [written.claim(spec), written.options(subject)], "claim")
+        )
     except UserError as fault:
         raise Rejected(f"claim: {fault.message}") from None
     except (AttributeError, KeyError, TypeError, ValueError, ZeroDivisionError):
@@ -218,7 +224,8 @@ def _base(subject: Subject, bases: Sequence[Path]) -> Path:
         tried = " or ".join(str(base) for base in bases)
         missing = next(n for n, _ in subject.digests if not (bases[-1] / n).is_file())
         raise UserError(
-            f"{missing}: no such file in {tried}", hint="say with --sources where the sources' paths start from"
+            f"{missing}: no such file in {tried}",
+            hint="say with --sources where the sources' paths start from",
         )
     changed: list[str] = []
     for base in there:

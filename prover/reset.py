@@ -120,19 +120,30 @@ def _round(
     return ()
 
 
-def released(system: System, held: Held, active: Inputs, limit: int) -> tuple[Start, ...]:
-    """The states just after release, at either level of the clock, while reset was held long enough."""
-    design, clock = system.design, system.clock
+def released(system: System, held: Held, active: Inputs, limit: int) -> tuple[Start, ...] | str:
+    """The states just after release, at either level of the clock, while reset was held long enough; a text if
+    some state does not settle after its release."""
     starts: dict[State, Start] = {}
     for state in held.states:
         values = zip(system.variables, state, strict=True)
         moment = {name: e.const(value, width) for (name, width), value in values}
-        moment |= active.moment(design.inputs)
-        after = change_inputs(design, clock, moment, system.inputs, limit)
-        freed = tuple(e.evaluate([after[name] for name in system.names], {}))
+        moment |= active.moment(system.design.inputs)
+        freed = _at_rest(system, moment, limit)
+        if freed is None:
+            return "the registers do not settle when reset is released"
         level = "high" if freed[-1] else "low"
         starts.setdefault(freed, Start(freed, f"reset released while the clock is {level}"))
     return tuple(starts.values())
+
+
+def _at_rest(system: System, moment: Moment, limit: int) -> State | None:
+    """The state once the inputs have changed to the system's and all has settled; None where more than `limit`
+    micro-steps do not suffice."""
+    ends = []
+    for count in (limit, limit + 1):
+        after = change_inputs(system.design, system.clock, moment, system.inputs, count)
+        ends.append(tuple(e.evaluate([after[name] for name in system.names], {})))
+    return ends[0] if ends[0] == ends[1] else None
 
 
 def initial(system: System, limit: int) -> tuple[Start, ...] | str:
@@ -154,8 +165,9 @@ def initial(system: System, limit: int) -> tuple[Start, ...] | str:
         }
         moment |= system.inputs.moment(design.inputs) | {clock: e.const(level, 1)}
         for filled in _fillings(moment):
-            after = change_inputs(design, clock, filled, system.inputs, limit)
-            state = tuple(e.evaluate([after[name] for name in system.names], {}))
+            state = _at_rest(system, filled, limit)
+            if state is None:
+                return "the initial values do not settle"
             word = "high" if level else "low"
             starts.setdefault(state, Start(state, f"initial values, the clock {word} at power-up"))
     return tuple(starts.values())

@@ -15,7 +15,7 @@ from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from prover import expr as e
-from prover.design import Design, Register
+from prover.design import Design, Force, Register
 from prover.effort import Effort, OutOfEffort
 from prover.errors import Where
 from prover.expr import Expr
@@ -182,6 +182,9 @@ def _witness(
     run: list[State] = []
     while len(run) < LONGEST:
         pair = (_values(names, was), _values(names, new))
+        if pair[0] == pair[1] and run:
+            # It comes to rest after all: longer chains than were unrolled, which is no proof of anything.
+            raise OutOfEffort(f"a step that takes more than {len(chain) - 1} micro-steps")
         if pair in seen:
             return Unsettled(state, before is now, tuple(run[seen[pair] :]))
         seen[pair] = len(run)
@@ -263,29 +266,74 @@ def _hold_race(system: System, moments: Sequence[Moment], register: Register, as
                     "the clock path has to be longer than the data path by the hold time"
                 )
                 return Race("hold", register.name, register.where, _state_of(system, model), text)
+    return _latch_race(system, moments, register, ask)
+
+
+def _latch_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
+    """A latch that closes in the micro-step in which its data changes."""
+    if register.kind != "latch":
+        return None
+    for then, now in pairwise(moments):
+        for force in register.forces:
+            was_open, old = e.substitute([force.when, force.value], then)
+            still, new = e.substitute([force.when, force.value], now)
+            goal = e.conj([was_open, e.bvnot(still), e.bvnot(e.eq(old, new)), system.settled])
+            model = ask(goal)
+            if model is not None:
+                text = (
+                    f"the latch {register.name} closes as its data changes: the enable's path has to be shorter than "
+                    "the data's by the hold time"
+                )
+                return Race("hold", register.name, register.where, _state_of(system, model), text)
     return None
+
+
+@dataclass(frozen=True, slots=True)
+class _Net:
+    """A net that a register reacts to: a clock, or the enable of a forced value."""
+
+    value: Expr
+    role: str
+    where: Where
+    force: Force | None
+
+
+def _nets(system: System, register: Register) -> Iterator[tuple[_Net, list[Expr]]]:
+    """The nets of a register that several bits of the state make, with the registers that these are."""
+    nets = [_Net(edge.clock, "clock", register.where, None) for edge in register.edges]
+    role = "enable" if register.kind == "latch" else "clear"
+    if register.kind != "loop":
+        nets += [_Net(force.when, role, force.where, force) for force in register.forces]
+    for net in nets:
+        inputs = [v for v in e.variables([net.value]) if v.name in system.names]
+        if sum(v.width for v in inputs) > 1:
+            yield net, inputs
+
+
+def _matters(net: _Net, register: Register, moments: Sequence[Moment]) -> Expr:
+    """One bit: seen or not seen makes a difference, because the register is not all the time what it is forced to."""
+    if net.force is None:
+        return e.TRUE
+    forced = [e.substitute([net.force.value], moment)[0] for moment in moments]
+    pairs = zip(forced, moments, strict=True)
+    return e.disj(e.bvnot(e.eq(value, moment[register.name])) for value, moment in pairs)
 
 
 def _pulse(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
     """A clock or clear net that may pulse while several of its inputs change in one micro-step."""
-    nets = [(edge.clock, True, register.where) for edge in register.edges]
-    nets += [(force.when, False, force.where) for force in register.forces if register.kind == "flip-flop"]
-    for net, is_clock, where in nets:
-        inputs = [v for v in e.variables([net]) if v.name in system.names]
-        if len(inputs) < 2 and all(v.width == 1 for v in inputs):
-            continue
-        for then, now in pairwise(moments):
-            model = ask(e.bvand(_hazard(net, inputs, then, now, is_clock), system.settled))
+    for net, inputs in _nets(system, register):
+        for i, (then, now) in enumerate(pairwise(moments)):
+            hazard = _hazard(net.value, inputs, then, now, net.force is None)
+            model = ask(e.conj([hazard, _matters(net, register, moments[i:]), system.settled]))
             if model is None:
                 continue
             values = _padded(model, then, now)
             moving = [v.name for v in inputs if len(set(e.evaluate([then[v.name], now[v.name]], values))) > 1]
-            role = "clock" if is_clock else "clear"
             text = (
-                f"the {role} of {register.name} may pulse while {', '.join(moving)} change together: "
+                f"the {net.role} of {register.name} may pulse while {', '.join(moving)} change together: "
                 "the outcome hangs on which arrives first"
             )
-            return Race("pulse", register.name, where, _state_of(system, model), text)
+            return Race("pulse", register.name, net.where, _state_of(system, model), text)
     return None
 
 
@@ -295,39 +343,34 @@ def _transient(system: System, moments: Sequence[Moment], register: Register, as
     A counter that clears itself ends its own clear, and a flip-flop that turns its own clock over ends its own edge;
     those are meant. So the chain is followed on from where the net becomes active without what it then does: a net
     that is inactive once all has settled would have been so whether or not anything had seen it."""
-    nets = [(edge.clock, True, register.where) for edge in register.edges]
-    nets += [(force.when, False, force.where) for force in register.forces if register.kind == "flip-flop"]
-    for net, is_clock, where in nets:
-        inputs = [v for v in e.variables([net]) if v.name in system.names]
-        if len(inputs) < 2 and all(v.width == 1 for v in inputs):
-            continue
-        for then, now in pairwise(moments[:-1]):
-            low, high = e.substitute([net], then)[0], e.substitute([net], now)[0]
+    for net, _ in _nets(system, register):
+        for i, (then, now) in enumerate(pairwise(moments[:-1])):
+            (low,), (high,) = e.substitute([net.value], then), e.substitute([net.value], now)
             rises = e.bvand(e.bvnot(low), high)
             if rises is e.FALSE:
                 continue
-            (last,) = e.substitute([net], _unseen(system.design, then, now, net))
-            model = ask(e.conj([rises, e.bvnot(last), system.settled]))
+            (last,) = e.substitute([net.value], _unseen(system.design, then, now, net.value))
+            goal = e.conj([rises, e.bvnot(last), _matters(net, register, moments[i:]), system.settled])
+            model = ask(goal)
             if model is not None:
-                role = "clock" if is_clock else "clear"
                 text = (
-                    f"the {role} of {register.name} is active for a moment on the way: whether that is seen hangs on "
-                    "how fast its net is"
+                    f"the {net.role} of {register.name} is active for a moment on the way: whether that is seen "
+                    "hangs on how fast its net is"
                 )
-                return Race("pulse", register.name, where, _state_of(system, model), text)
+                return Race("pulse", register.name, net.where, _state_of(system, model), text)
     return None
 
 
 def _unseen(design: Design, then: Moment, now: Moment, net: Expr) -> Moment:
-    """Where the micro-steps lead from the two moments if nothing reacts to the net as a clock, nor to a set or
-    clear of a flip-flop that was not active before."""
+    """Where the micro-steps lead from the two moments if nothing reacts to the net as a clock, nor to a set, a clear
+    or a latch's enable that was not active before."""
     was: dict[str, Expr] = {}
     registers = []
     for register in design.registers:
         edges = tuple(edge for edge in register.edges if edge.clock is not net)
         forces = []
         for force in register.forces:
-            if register.kind == "flip-flop":
+            if register.kind != "loop":
                 label = f"!was{len(was)}"
                 (was[label],) = e.substitute([force.when], then)
                 force = replace(force, when=e.bvand(force.when, e.var(label, 1)))

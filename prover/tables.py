@@ -51,13 +51,17 @@ class Rounds:
 
     def waves(self) -> list[Wave]:
         """The wave of each loop."""
-        return [Wave.of_round((bit, len(list(run))) for bit, run in groupby(levels)) for levels in self.levels]
+        return [
+            Wave.of_round((bit, len(list(run))) for bit, run in groupby(levels)) for levels in self.levels
+        ]
 
     def orbits(self, system: System) -> list[Orbit]:
         """Each loop as the orbit of its first state."""
         widths = tuple(width for _, width in system.variables)
         return [
-            Orbit((), tuple(Beat(state_of(system, n), v) for n, v in zip(numbers, levels, strict=True)), widths)
+            Orbit(
+                (), tuple(Beat(state_of(system, n), v) for n, v in zip(numbers, levels, strict=True)), widths
+            )
             for numbers, levels in zip(self.members, self.levels, strict=True)
         ]
 
@@ -130,7 +134,9 @@ def rounds_form_faults(system: System, table: Rounds) -> list[str]:
     if len(set(listed)) != len(listed) or {n for n, d in enumerate(table.distance) if d == 0} != set(listed):
         return ["a state at distance 0 that is on no loop, or the other way round"]
     sizes = [(len(states), len(levels)) for states, levels in zip(table.members, table.levels, strict=True)]
-    if any(a != b or not a for a, b in sizes) or any(bit not in (0, 1) for bits in table.levels for bit in bits):
+    if any(a != b or not a for a, b in sizes) or any(
+        bit not in (0, 1) for bits in table.levels for bit in bits
+    ):
         return ["a loop without a level for each of its states"]
     return []
 

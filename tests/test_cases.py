@@ -41,7 +41,9 @@ def test_a_case_is_judged_as_it_states(case: Case, group: Group) -> None:
     found = {each["name"]: each for each in report["properties"]}
     assert tuple(found) == PROPERTIES
     for line, words in group.notes:
-        assert any(f"{case.path}:{line}: " in note and words in note for note in report["notes"]), report["notes"]
+        assert any(f"{case.path}:{line}: " in note and words in note for note in report["notes"]), report[
+            "notes"
+        ]
     if found["settling"]["verdict"] == "refuted":
         # Of a machine that never settles nothing else is known, and nothing else may be said.
         assert {found[name]["verdict"] for name in PROPERTIES[:-1]} == {"open"}

@@ -197,9 +197,7 @@ def test_levels(tmp_path: Path, body: str, expected: str) -> None:
 
 
 def test_latches_of_some_bits(tmp_path: Path) -> None:
-    body = (
-        "always @* begin q = 0; q[0] = d; end always @* begin p[1] = d; if (d) p[0] = clk; end"
-    )
+    body = "always @* begin q = 0; q[0] = d; end always @* begin p[1] = d; if (d) p[0] = clk; end"
     found = machine(tmp_path, body, "input clk, d, output reg [1:0] q, p")
     assert found == "latch p[0] 1\n  force d to clk"
     notes = read(tmp_path, f"module m(input clk, d, output reg [1:0] q, p); {body} endmodule").notes

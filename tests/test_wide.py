@@ -100,7 +100,9 @@ def test_components_come_before_those_that_need_them() -> None:
 
 def test_membership_in_a_repeat_is_exact() -> None:
     # Every state of a counter that steps by 6: 10, 16, …, seven of them, and no other.
-    design = small.design([small.flop("n", 8, small.CLOCK, e.bvadd(e.var("n", 8), e.const(6, 8)))], e.var("clk", 1))
+    design = small.design(
+        [small.flop("n", 8, small.CLOCK, e.bvadd(e.var("n", 8), e.const(6, 8)))], e.var("clk", 1)
+    )
     system = analysed(design, 1).system
     formula = wide.on_beat(system, [e.var("n", 8), e.const(0, 1)], (10, 0), ((7, (6, 0)),))
     assert formula is not None

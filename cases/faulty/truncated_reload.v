@@ -14,7 +14,7 @@
 // ratio: proved
 // high-time: proved
 // no-stuck: proved
-// recovery: proved, worst 22, exact
+// recovery: proved, worst 24, exact
 // settling: proved
 // loops: 1
 // false loops: 0

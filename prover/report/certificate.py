@@ -69,7 +69,9 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
     for ours, theirs in zip(findings, report.findings, strict=True):
         if ours.verdict != theirs.verdict:
             if ours.verdict != "open":
-                raise InternalError(f"the evidence shows {ours.name} {ours.verdict}, the report {theirs.verdict}")
+                raise InternalError(
+                    f"the evidence shows {ours.name} {ours.verdict}, the report {theirs.verdict}"
+                )
             left_open.append(ours.name)
     subject = subject_of(report, files)
     return Certificate(render(document(subject, report.ports, found, made, findings)), tuple(left_open))

@@ -69,11 +69,13 @@ class Library:
             found = self.get(named)
             if not isinstance(found, tree.Module):
                 what = f"module {printable(named)} isn't defined"
-                raise UserError(what, self._anywhere(), f"there are: {listed}" if listed else "is this Verilog?")
+                raise UserError(
+                    what, self._anywhere(), f"there are: {listed}" if listed else "is this Verilog?"
+                )
             return found
         modules = {n: self.get(n) for n, chunk in self.chunks.items() if not chunk.portless}
         inside = {
-            user for module in modules.values() if isinstance(module, tree.Module) for user in _users(module)
+            user for module in modules.values() if isinstance(module, tree.Module) for user in users(module)
         }
         tops = [m for n, m in modules.items() if isinstance(m, tree.Module) and n not in inside]
         for chunk in self.chunks.values():
@@ -95,7 +97,7 @@ class Library:
         return self.source.where(0)
 
 
-def _users(module: tree.Module) -> set[str]:
+def users(module: tree.Module) -> set[str]:
     """Names of the modules that the module may contain, in any branch of its generate constructs."""
     found: set[str] = set()
     stack: list[Any] = list(module.items)

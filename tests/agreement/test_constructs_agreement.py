@@ -75,7 +75,10 @@ def compare(report: Report, found: brute.BruteResult[tuple[int, ...]]) -> None:
     verdicts = {finding.name: finding.verdict for finding in report.findings}
     assert verdicts["no-stuck"] == ("refuted" if found.stuck else "proved")
     assert verdicts["recovery"] == ("refuted" if found.lost_states else "proved")
-    assert verdicts["ratio"] == ("refuted" if found.false_loops else "proved") or verdicts["high-time"] == "refuted"
+    assert (
+        verdicts["ratio"] == ("refuted" if found.false_loops else "proved")
+        or verdicts["high-time"] == "refuted"
+    )
 
 
 @pytest.mark.parametrize("row", REFUSED, ids=[row.name for row in REFUSED])
