@@ -644,45 +644,65 @@ def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligatio
 
 
 def linear_faults(system: System, logs: Logs, effort: Effort) -> list[str]:
-    """What is wrong with reading a system's registers as the powers of a matrix; empty if nothing is.
-
-    Checked with rows where the search has columns: that one edge moves nothing and the other goes by x -> M·x + c,
-    that the fixed state is one, that M's order is 2^n - 1, and that the output tells one state from all others.
-    """
+    """What is wrong with reading a system's registers as the powers of a matrix; empty if nothing is."""
     effort.say("checking a linear register")
+    faults = linear_form_faults(system, logs)
+    for number, name in enumerate(
+        ("a step that is not the matrix", "an output that tells no state from the others")
+    ):
+        pairs = (
+            [list(linear_obligations(system, logs, way, way))[number] for way in (0, 1)] if not faults else []
+        )
+        if not any(all(discharge(each, effort) for each in pair) for pair in pairs):
+            faults.append(name)
+    return faults
+
+
+def linear_form_faults(system: System, logs: Logs) -> list[str]:
+    """What can be seen to be wrong with that without a solver."""
     registers = system.variables[:-1]
     n = sum(width for _, width in registers)
     if logs.registers != tuple(registers) or len(logs.columns) != n:
         return ["a matrix of another size than the registers"]
-    bits = [e.extract(e.var(name, width), i, i) for name, width in registers for i in range(width)]
-    rows = [sum((column >> r & 1) << c for c, column in enumerate(logs.columns)) for r in range(n)]
-    offset = [(_dot(row, logs.fixed) ^ logs.fixed >> r) & 1 for r, row in enumerate(rows)]
+    if any(word >> n for word in (*logs.columns, logs.fixed, logs.start)):
+        return ["a word of another size than the registers"]
     faults: list[str] = []
-    held, moved = [], []
-    for level in (0, 1):
-        after = e.substitute(list(system.step[:-1]), {system.clock: e.const(level, 1)})
-        stepped = [e.extract(x, i, i) for x in after for i in range(x.width)]
-        held.append(e.disj(e.bvxor(a, b) for a, b in zip(stepped, bits, strict=True)))
-        moved.append(
-            e.disj(e.bvxor(a, _row(row, c, bits)) for a, row, c in zip(stepped, rows, offset, strict=True))
-        )
-    if not any(
-        discharge(Obligation("held", held[level]), effort)
-        and discharge(Obligation("matrix", moved[1 - level]), effort)
-        for level in (0, 1)
-    ):
-        faults.append("a step that is not the matrix")
-    if not _full_order(rows):
+    if not _full_order(_rows(logs)):
         faults.append("a matrix of another order than 2^n - 1")
-    at_start = e.conj(b if logs.start >> i & 1 else e.bvnot(b) for i, b in enumerate(bits))
-    shown = e.bvxor(system.output, at_start)
-    if logs.start == logs.fixed or not any(
-        discharge(Obligation("decode", goal), effort) for goal in (shown, e.bvnot(shown))
-    ):
-        faults.append("an output that does not tell the decoded state from all others")
+    if logs.start == logs.fixed:
+        faults.append("a decoded state that is the fixed one")
     if system.settled is not e.TRUE or system.choices:
         faults.append("registers that are held or hang on x")
     return faults
+
+
+def linear_obligations(
+    system: System, logs: Logs, moving: int, level: int
+) -> Iterator[tuple[Obligation, ...]]:
+    """What has to hold of it: the edge from a clock at `moving` goes by x -> M·x + c and the other one moves nothing;
+    the output is `level` in the state that is decoded and nowhere else.
+
+    Stated with rows where the search has columns. That c is M·a + a makes a the fixed state."""
+    bits = [e.extract(e.var(name, width), i, i) for name, width in logs.registers for i in range(width)]
+    rows = _rows(logs)
+    offset = [(_dot(row, logs.fixed) ^ logs.fixed >> r) & 1 for r, row in enumerate(rows)]
+
+    def stepped(clock: int) -> list[Expr]:
+        after = e.substitute(list(system.step[:-1]), {system.clock: e.const(clock, 1)})
+        return [e.extract(x, i, i) for x in after for i in range(x.width)]
+
+    held = e.disj(e.bvxor(a, b) for a, b in zip(stepped(1 - moving), bits, strict=True))
+    wanted = (_row(row, c, bits) for row, c in zip(rows, offset, strict=True))
+    moved = e.disj(e.bvxor(a, b) for a, b in zip(stepped(moving), wanted, strict=True))
+    yield Obligation("one edge moves no register", held), Obligation("the other goes by the matrix", moved)
+    at_start = e.conj(b if logs.start >> i & 1 else e.bvnot(b) for i, b in enumerate(bits))
+    shown = e.bvxor(system.output, at_start)
+    yield (Obligation("the output tells the decoded state", shown if level else e.bvnot(shown)),)
+
+
+def _rows(logs: Logs) -> list[int]:
+    n = len(logs.columns)
+    return [sum((column >> r & 1) << c for c, column in enumerate(logs.columns)) for r in range(n)]
 
 
 def _dot(row: int, x: int) -> int:

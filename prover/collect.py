@@ -8,12 +8,14 @@ be had the evidence says nothing, and the certificate leaves open what the repor
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from itertools import product
 
-from prover import certificate, graph, reset, tables
+from prover import certificate, graph, linear, reset, tables
 from prover import expr as e
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
-from prover.evidence import Evidence, Hold, Lasso, Layer, Track, layers_of
+from prover.errors import InternalError
+from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_of
 from prover.expr import Expr
 from prover.findings import Report
 from prover.ports import Ports
@@ -21,7 +23,7 @@ from prover.rebuild import placed
 from prover.rhythm import Goal, Orbit, Rhythm
 from prover.settling import settle
 from prover.solve import Model, find
-from prover.system import State, System
+from prover.system import State, System, cone
 from prover.tables import Ranking, Rounds
 
 
@@ -30,20 +32,21 @@ def collect(report: Report, effort: Effort) -> Evidence:
     ports, spec, rhythm = report.ports, report.spec, report.rhythm
     answers = rhythm.settling.answers
     if rhythm.settling.depth is None:
-        return Evidence(answers, False, (), None, (), None, ())
+        return Evidence(answers, False, (), None, None, (), None, ())
     whole, _ = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=_repeated(answers)
     )
     machine = rhythm.system
     word = machine.words[0][1] if machine.words else ()
     left_out = len(machine.describe((0,) * len(machine.variables))) < len(whole.variables)
-    hold = _hold(ports, effort) if rhythm.scope == "reset" else None
+    hold = _hold(ports, effort) if rhythm.scope == "reset" and rhythm.starts else None
     followed = rhythm.scope != "reset" or hold is not None
     everywhere = _everywhere(rhythm, Goal(spec.period, spec.high_half_cycles), effort)
     return Evidence(
         settling=answers,
         cone=left_out,
         word=word,
+        matrix=_matrix(machine, cone(whole) if left_out else whole),
         reset=hold,
         starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
         everywhere=everywhere,
@@ -64,6 +67,18 @@ def _repeated(answers: Sequence[Model | None]) -> Callable[[Expr], Model | None]
             raise OutOfEffort("not answered") from None
 
     return answer
+
+
+def _matrix(machine: System, inner: System) -> Matrix | None:
+    """What the machine counts, if it is a linear register; which edge and which level show in what it is made of."""
+    logs = machine.logs
+    if logs is None:
+        return None
+    for moving, level in product((0, 1), (0, 1)):
+        made = linear.counter(inner, logs, moving, level)
+        if (made.step, made.output) == (machine.step, machine.output):
+            return Matrix(logs.columns, logs.fixed, logs.start, moving, level)
+    raise InternalError("a count of steps that is none")
 
 
 def _track(orbit: Orbit) -> Track:

@@ -66,6 +66,17 @@ class Covered:
 
 
 @dataclass(frozen=True, slots=True)
+class Matrix:
+    """The registers read as the powers of a matrix over GF(2): see `linear.Logs` and `linear.counter`."""
+
+    columns: tuple[int, ...]
+    fixed: int
+    start: int
+    moving: int
+    level: int
+
+
+@dataclass(frozen=True, slots=True)
 class Layer:
     """A stage of a cover: its registers, and the numbers of `certificate.CoverClaim`."""
 
@@ -84,6 +95,7 @@ class Evidence:
                 where there is no such state, else values for which there is
     cone        whether registers that the output does not depend on are left out
     word        registers that are read as one word, lowest first; empty if there are none
+    matrix      how all registers are read as one count of steps; None where they are not
     reset       the states that reset leaves; None where the claim begins elsewhere, or where they are not certain
     starts      the runs of the start states, in order
     everywhere  about all power-up states: the stages of a cover, a ranking, or a list of loops
@@ -93,6 +105,7 @@ class Evidence:
     settling: tuple[Model | None, ...]
     cone: bool
     word: tuple[str, ...]
+    matrix: Matrix | None
     reset: Hold | None
     starts: tuple[Track, ...]
     everywhere: tuple[Layer, ...] | Ranking | Rounds | None
@@ -115,6 +128,7 @@ def as_object(evidence: Evidence) -> Object:
     out: Object = {
         "cone": evidence.cone,
         "word": list(evidence.word),
+        "matrix": None if evidence.matrix is None else _matrix(evidence.matrix),
         "settling": list(evidence.settling),
         "reset": None,
         "starts": [track(of) for of in evidence.starts],
@@ -129,6 +143,16 @@ def as_object(evidence: Evidence) -> Object:
         }
     out["paths"] = [[_item(item) for item in path] for path in numbers]
     return out
+
+
+def _matrix(of: Matrix) -> Object:
+    return {
+        "columns": list(of.columns),
+        "fixed": of.fixed,
+        "start": of.start,
+        "moving": of.moving,
+        "level": of.level,
+    }
 
 
 def _everywhere(
@@ -174,7 +198,7 @@ def _item(item: Item) -> Object:
 
 def read(value: Any) -> Evidence:
     """The evidence in an object. Raises Malformed."""
-    of = _fields(value, "evidence", "cone word settling reset starts everywhere lassos paths")
+    of = _fields(value, "evidence", "cone word matrix settling reset starts everywhere lassos paths")
     paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(_list(of["paths"], "paths"))]
 
     def track(x: Any, where: str) -> Track:
@@ -196,6 +220,7 @@ def read(value: Any) -> Evidence:
         settling=_each(of["settling"], "settling", _answer),
         cone=of["cone"],
         word=_each(of["word"], "word", _text),
+        matrix=None if of["matrix"] is None else _read_matrix(of["matrix"]),
         reset=None if of["reset"] is None else _hold(of["reset"]),
         starts=_each(of["starts"], "starts", start),
         everywhere=_read_everywhere(of["everywhere"], track),
@@ -209,6 +234,17 @@ def _hold(value: Any) -> Hold:
         _number(of["half_cycles"], "reset/half_cycles", 0, LONGEST),
         _each(of["states"], "reset/states", _state),
         _each(of["settling"], "reset/settling", _answer),
+    )
+
+
+def _read_matrix(value: Any) -> Matrix:
+    of = _fields(value, "matrix", "columns fixed start moving level")
+    return Matrix(
+        _each(of["columns"], "matrix/columns", lambda x, where: _number(x, where, 0)),
+        _number(of["fixed"], "matrix/fixed", 0),
+        _number(of["start"], "matrix/start", 0),
+        _number(of["moving"], "matrix/moving", 0, 1),
+        _number(of["level"], "matrix/level", 0, 1),
     )
 
 

@@ -111,7 +111,7 @@ def logs(system: System, effort: Effort) -> System | None:
     if decoded is None or decoded[0] == fixed:
         return None
     found = Logs(tuple(registers), columns, fixed, decoded[0])
-    return _counter(system, found, moving, decoded[1])
+    return counter(system, found, moving, decoded[1])
 
 
 def _may_be_linear(system: System) -> bool:
@@ -180,7 +180,8 @@ def _decoded(
     return None
 
 
-def _counter(system: System, found: Logs, moving: int, level: int) -> System:
+def counter(system: System, found: Logs, moving: int, level: int) -> System:
+    """The system in the coordinates: it counts at the edge from a clock at `moving`, and shows `level` at 0."""
     n = len(found.columns)
     k, clock = e.var(NAME, n), e.var(system.clock, 1)
     locked = e.eq(k, e.const(found.period, n))

@@ -37,12 +37,15 @@ Places = dict[State, tuple[Path, int]]
 """States on loops found before: the loop, and the index of the item that begins with the state."""
 
 
-def trace(system: System, start: State, effort: Effort, known: Places | None = None) -> Orbit:
-    """The orbit of `start`, as far as the effort allows; it is not closed if that did not suffice.
+def trace(
+    system: System, start: State, effort: Effort, known: Places | None = None, most: int | None = None
+) -> Orbit:
+    """The orbit of `start`, as far as the effort allows and in at most so many items; it is not closed if that did
+    not suffice.
 
     A loop that is `known` is not traced again. The path is the search's word only: `certificate` checks it.
     """
-    search = _Search(system, effort, known or {})
+    search = _Search(system, effort, known or {}, most)
     try:
         search.follow(start)
     except OutOfEffort as out:
@@ -67,7 +70,8 @@ class _Search:
     `seen` gives for the state at an item's start the item's index; `jumps` for the shape of a repeat the
     indices where it stands."""
 
-    def __init__(self, system: System, effort: Effort, known: Places) -> None:
+    def __init__(self, system: System, effort: Effort, known: Places, most: int | None) -> None:
+        self.most = most
         self.system = system
         self.known = known
         self.joins: Path = ()
@@ -92,6 +96,8 @@ class _Search:
             count += 1
             if count % 1024 == 0:
                 self.effort.say(f"following an orbit, cycle {count}")
+                if self.most is not None and len(self.items) > self.most:
+                    raise OutOfEffort(f"an orbit of more than {self.most} items")
             *middle_list, first = run(*state, *choices)
             middle = tuple(middle_list)
             *after_list, second = run(*middle, *choices)
@@ -108,6 +114,7 @@ class _Search:
                 if jump.times < 4:
                     # Perhaps this stride never holds for long: be more patient with it from now on.
                     self.short[stride] = self.short.get(stride, 0) + 1
+                    repeats = 0
                 if jump.times > 1:
                     repeats, previous = 0, None
                     state = self._append_jump(jump)

@@ -10,12 +10,12 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
-from prover import certificate, path, recode, reset, tables
+from prover import certificate, linear, path, recode, reset, tables
 from prover import expr as e
 from prover.certificate import CoverClaim, Obligation, Stage
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
-from prover.evidence import Evidence, Hold, Lasso, Layer, Track
+from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
 from prover.ports import Ports
@@ -56,10 +56,10 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     ask.finish()
     scope, starts, why = _starts(ports, spec, whole, settling, evidence.reset, owed, effort)
     if settling.depth is None:
-        if evidence != Evidence(evidence.settling, False, (), None, (), None, ()):
+        if evidence != Evidence(evidence.settling, False, (), None, None, (), None, ()):
             raise Rejected("evidence about a divider of which nothing is known")
         return Rebuilt(whole, _nothing_known(whole, settling, scope), owed.listed())
-    machine = machine_of(whole, evidence)
+    machine = machine_of(whole, evidence, owed)
     starts = tuple(replace(s, state=placed(s.state, whole, machine)) for s in starts)
     rhythm = _followed(Rhythm(
         system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
@@ -132,11 +132,15 @@ def _nothing_known(whole: System, settling: Settling, scope: Scope) -> Rhythm:
 # -- the machine that the evidence speaks of ---------------------------------------------------------------
 
 
-def machine_of(whole: System, evidence: Evidence) -> System:
+def machine_of(whole: System, evidence: Evidence, owed: _Obligations) -> System:
     """The machine without the registers that are left out, and with those that are read as a word joined."""
     inner = cone(whole) if evidence.cone else whole
     if evidence.cone and inner is whole:
         raise Rejected("registers are said to be left out that the output depends on")
+    if evidence.matrix is not None:
+        if evidence.word:
+            raise Rejected("word: besides a matrix")
+        return _counted(inner, evidence.matrix, owed)
     if not evidence.word:
         return inner
     single = {name for name, width in inner.variables if width == 1 and name != inner.clock}
@@ -145,14 +149,30 @@ def machine_of(whole: System, evidence: Evidence) -> System:
     return recode.joined(inner, evidence.word)
 
 
+def _counted(inner: System, matrix: Matrix, owed: _Obligations) -> System:
+    """The machine as a count of the matrix's powers, owing that this is what its step and its output come to."""
+    logs = linear.Logs(inner.variables[:-1], matrix.columns, matrix.fixed, matrix.start)
+    if len(matrix.columns) > linear.WIDEST:
+        raise Rejected("matrix: too wide")
+    faults = certificate.linear_form_faults(inner, logs)
+    if faults:
+        raise Rejected(f"matrix: {faults[0]}")
+    for obligations in certificate.linear_obligations(inner, logs, matrix.moving, matrix.level):
+        owed.add(obligations)
+    return linear.counter(inner, logs, matrix.moving, matrix.level)
+
+
 def placed(state: State, whole: System, machine: System) -> State:
     """A state of the whole divider as one of the machine."""
-    if not machine.words:
+    if machine.logs is None and not machine.words:
         return project(whole, state, machine)
-    bits = {bit for _, names in machine.words for bit in names}
-    kept = [name for name in whole.names if name in bits or name in machine.names]
-    inner = replace(whole, variables=tuple(pair for pair in whole.variables if pair[0] in kept))
-    return recode.moved(project(whole, state, inner), inner, machine)
+    read = {bit for _, names in machine.words for bit in names}
+    if machine.logs is not None:
+        read |= {name for name, _ in machine.logs.registers}
+    kept = tuple(pair for pair in whole.variables if pair[0] in read or pair[0] in machine.names)
+    inner = replace(whole, variables=kept)
+    moved = linear.moved if machine.logs is not None else recode.moved
+    return moved(project(whole, state, inner), inner, machine)
 
 
 def orbit_of(track: Track, system: System, where: str) -> Orbit:
@@ -234,10 +254,10 @@ def _released(
     held = reset.Held(hold.half_cycles, hold.states, ())
     try:
         starts = reset.released(whole, held, ports.resetting, limit)
-        if starts != reset.released(whole, held, ports.resetting, limit + 1):
-            raise Rejected("reset: its release does not settle")
     except InternalError:
         raise Rejected("reset: its release hangs on a value that x stands for") from None
+    if isinstance(starts, str):
+        raise Rejected(f"reset: {starts}")
     return starts
 
 

@@ -19,7 +19,7 @@ from prover.path import Beat
 from prover.rhythm import Orbit, Wave
 from prover.system import State, System
 
-MOST_BITS = 13
+MOST_BITS = 14
 """Bits of a state, the clock's level among them, up to which its evidence is written as a table."""
 
 

@@ -56,6 +56,9 @@ REFINED = 12
 COUNTER = 4
 """Bits of registers that depend on one another from which they make a stage of their own."""
 
+MOST_ITEMS = 8000
+"""Items of an orbit beyond which it is no part of a cover: that would be no shorter than its states."""
+
 MOST_SINGLE = 400
 """Items of lead-ins up to which every place on them is asked about."""
 
@@ -277,7 +280,7 @@ def _fits_before(before: Sequence[Item], block: Repeat, widths: Sequence[int]) -
 
 def _drawn_in(out: list[Item], widths: Sequence[int]) -> list[Item] | None:
     """The items with what follows a repeat drawn into it, if it is one more round of it."""
-    for back in range(1, len(out)):
+    for back in range(1, min(len(out), orbit.BLOCK)):
         block = out[-1 - back]
         if not isinstance(block, Repeat):
             continue
@@ -381,7 +384,7 @@ class _Cover:
         return e.disj(broken)
 
     def _traced(self, start: State) -> Orbit:
-        run = orbit.trace(self.system, start, self.effort, self.known)
+        run = orbit.trace(self.system, start, self.effort, self.known, MOST_ITEMS)
         if not run.closed:
             raise OutOfEffort(run.why)
         if self.system.choices and certificate.orbit_faults(self.system, run, self.effort):
@@ -668,7 +671,7 @@ def _start_that_needs(
     start = tuple(values[name] for name in system.names)
     if goal is None or not _holds(system, system.settled, start):
         return None
-    run = orbit.trace(system, start, effort)
+    run = orbit.trace(system, start, effort, most=MOST_ITEMS)
     if not run.closed or certificate.orbit_faults(system, run, effort):
         return None
     return start if recovery_on(run, goal.period, goal.high) == total else None

@@ -48,7 +48,7 @@ def test_files_with_one_top_are_one_divider(tmp_path: Path) -> None:
 @pytest.mark.parametrize("broken", ["lib", "top"])
 def test_one_divider_of_which_a_file_is_unreadable_is_an_error(tmp_path: Path, broken: str) -> None:
     texts = {"lib": STAGE, "top": STICKS}
-    texts[broken] = texts[broken].replace("assign ", "asign ")
+    texts[broken] += ")\n"
     result = run("check", *written(tmp_path, **texts), "--ratio", "5")
     assert (result.exit_code, result.stdout) == (2, "")
     assert f"{broken}.v:" in result.stderr

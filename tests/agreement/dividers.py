@@ -444,17 +444,24 @@ def _shift(w: _Writer) -> None:
 
 
 def _latch(w: _Writer) -> None:
-    """A latch that is open while the clock is at one level; its data moves on the edge that closes it."""
+    """A latch that is open while the clock is at one level, its data moving on the edge that closes it; or one that a
+    bit of some register opens."""
     r = w.r
     high = r.random() < 0.5
     closing = "negedge" if high else "posedge"
-    sources = [n for n in w.nets if n.edge == closing]
+    derived = r.random() < 0.4
+    sources = [n for n in w.nets if not n.blocking] if derived else [n for n in w.nets if n.edge == closing]
     if not sources:
         return _resample(w)
-    bit = r.choice(sources).bit(r)
+    data = r.choice(sources)
+    openers = [n for n in sources if n is not data]
+    if derived and not openers:
+        return _resample(w)
+    bit = data.bit(r)
+    enable = r.choice(openers).bit(r) if derived else "clk"
     name = w.register("held", 1, "latch")
-    sensitive = r.choice(["*", f"clk or {bit}"])
-    w.say(f"always @({sensitive}) if ({'clk' if high else '!clk'}) {name} {r.choice(['=', '<='])} {bit};")
+    sensitive = r.choice(["*", f"{enable} or {bit}"])
+    w.say(f"always @({sensitive}) if ({'' if high else '!'}{enable}) {name} {r.choice(['=', '<='])} {bit};")
     w.nets[-1].blocking = True
     w.nets[-1].edge = None
     return None
