@@ -22,7 +22,6 @@ from prover.solve import find
 from prover.spec import Spec
 from prover.system import State, System, cone, project
 
-
 COVERED_FIRST = 16
 """Bits of a state up to which the graph is quicker than to look for a cover."""
 

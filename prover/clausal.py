@@ -91,7 +91,8 @@ def refute(goal: Expr) -> Proof | None:
         # Deletions only spare a checker work; without them every lemma still follows.
         lines = [line.split() for line in solver.get_proof() if not line.startswith("d")]
     lemmas = [tuple(map(int, line[:-1])) for line in lines if line and line[-1] == "0"]
-    steps = check([tuple(clause) for clause in made.clauses], lemmas)
+    # What propagation alone refutes needs no lemma, and the solver may not write the empty one.
+    steps = check([tuple(clause) for clause in made.clauses], [*lemmas, ()])
     if steps is None:
         raise InternalError("CaDiCaL's proof does not pass its check")
     return Proof(made.variables, len(made.clauses), steps)

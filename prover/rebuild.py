@@ -72,21 +72,19 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
 
 
 class _Obligations:
-    """Obligations so far, each goal once. What is false by its form is none."""
+    """Obligations so far, each goal once; what is false by its form is kept for what its name tells."""
 
     def __init__(self) -> None:
-        self._goals: dict[Expr, str] = {}
-        self._steps: dict[tuple[System, Step], None] = {}
+        self._made: dict[Expr | str, Obligation] = {}
 
     def add(self, obligations: Iterable[Obligation]) -> None:
         for each in obligations:
             if each.goal.is_const and each.goal.value:
                 raise Rejected(f"{each.name}: does not hold")
-            if not each.goal.is_const:
-                self._goals.setdefault(each.goal, each.name)
+            self._made.setdefault(each.name if each.goal.is_const else each.goal, each)
 
     def listed(self) -> tuple[Obligation, ...]:
-        return tuple(Obligation(name, goal) for goal, name in self._goals.items())
+        return tuple(self._made.values())
 
 
 class _Replay:
@@ -299,7 +297,8 @@ def _lasso(whole: System, machine: System, lasso: Lasso, owed: _Obligations) -> 
         e.eq(e.var(name, width), e.const(value, width))
         for (name, width), value in zip(whole.variables, lasso.start, strict=True)
     )
-    owed.add([Obligation("a power-up state", e.bvand(here, e.bvnot(whole.settled)))])
+    told = f"a power-up state, {orbit.lead_half_cycles} half-cycles from a loop of {orbit.loop_half_cycles}"
+    owed.add([Obligation(told, e.bvand(here, e.bvnot(whole.settled)))])
     owe_orbits(machine, [orbit], "lassos", owed)
     return orbit
 
@@ -405,7 +404,8 @@ def _cover(
         claim = stage.claim
         owe_orbits(ours, claim.orbits, f"stage {number}", owed)
         after = "at once" if claim.unrolled is None else f"after {claim.unrolled} half-cycles"
-        good = ", ".join(map(str, claim.recoveries))
+        pairs = zip(claim.orbits, claim.recoveries, strict=True)
+        good = ", ".join(f"{k} of {run.lead_half_cycles}+{run.loop_half_cycles}" for run, k in pairs)
         told = f"{after}, joining within {claim.merge}, good within {claim.bound}; its orbits after {good}"
         for each in certificate.cover_obligations(ours, assumed, claim):
             owed.add([Obligation(f"stage {number}, {each.name}: {told}", each.goal)])

@@ -83,7 +83,6 @@ def recheck(
     if by_clauses:
         clausal.needs()
     effort = Effort(seconds, tell)
-    effort.say("reading the certificate")
     text = _text_of(Path(path))
     bases = [Path(sources)] if sources is not None else [Path(path).parent, Path()]
     try:
@@ -114,6 +113,7 @@ def _text_of(path: Path) -> str:
 def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
     """Everything that the certificate claims, derived again. Raises Rejected where that comes to something else, and
     UserError where there are no sources."""
+    effort.say("reading the certificate")
     stated = _object(text)
     subject = _subject(stated)
     base = _base(subject, bases)

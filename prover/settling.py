@@ -270,19 +270,21 @@ def _hold_race(system: System, moments: Sequence[Moment], register: Register, as
 
 
 def _latch_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
-    """A latch that closes in the micro-step in which its data changes."""
+    """A latch that closes as its data changes, or after data that the same input edge has already changed."""
     if register.kind != "latch":
         return None
-    for then, now in pairwise(moments):
+    for place, (then, now) in enumerate(pairwise(moments)):
+        launch = moments[1] if place > 0 else then
         for force in register.forces:
             was_open, old = e.substitute([force.when, force.value], then)
             still, new = e.substitute([force.when, force.value], now)
-            goal = e.conj([was_open, e.bvnot(still), e.bvnot(e.eq(old, new)), system.settled])
-            model = ask(goal)
+            (launched,) = e.substitute([force.value], launch)
+            moves = e.bvnot(e.bvand(e.eq(old, new), e.eq(old, launched)))
+            model = ask(e.conj([was_open, e.bvnot(still), moves, system.settled]))
             if model is not None:
                 text = (
-                    f"the latch {register.name} closes as its data changes: the enable's path has to be shorter than "
-                    "the data's by the hold time"
+                    f"the latch {register.name} closes with the input edge that changes its data: which comes first, "
+                    "the closing or the change, has to be as the micro-steps have it, by the hold time"
                 )
                 return Race("hold", register.name, register.where, _state_of(system, model), text)
     return None

@@ -17,7 +17,7 @@ from prover.ports import recognise
 from prover.rhythm import Rhythm
 from prover.settling import settle
 from prover.spec import Spec
-from prover.system import System
+from prover.system import State, System
 
 # Maximal-length taps as the published tables of two makers give them (references 1.3).
 TAPS = {
@@ -71,7 +71,7 @@ def test_states_and_numbers_go_into_one_another() -> None:
     counted = linear.logs(system, Effort(60))
     assert counted is not None
     assert counted.logs is not None
-    state = (5, 0)
+    state: State = (5, 0)
     for number in range(2000):
         # Two edges are one step of the register; the number goes up by one.
         assert counted.logs.values(number)["q"] == state[0]

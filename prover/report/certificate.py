@@ -26,6 +26,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from prover.effort import Effort
+    from prover.rhythm import Orbit, Start
 
 SCHEMA = "subharmonic/certificate-1"
 
@@ -170,8 +171,17 @@ def _machine(ports: Ports, made: Rebuilt) -> Object:
         "variables": dict(system.variables),
         "micro_steps": made.rhythm.settling.depth,
         "scope": made.rhythm.scope,
-        "starts": [{"state": list(s.state), "cause": s.cause} for s in made.rhythm.starts],
+        "starts": [_start(*pair) for pair in zip(made.rhythm.starts, made.rhythm.orbits, strict=True)],
         "definitions": e.smtlib_definitions(named),
+    }
+
+
+def _start(start: Start, orbit: Orbit) -> Object:
+    return {
+        "state": list(start.state),
+        "cause": start.cause,
+        "lead_half_cycles": orbit.lead_half_cycles,
+        "loop_half_cycles": orbit.loop_half_cycles,
     }
 
 

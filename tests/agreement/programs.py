@@ -174,6 +174,8 @@ def _expression(m: _Maker) -> None:
 def _loop(m: _Maker) -> None:
     """A vector worked out by a loop over a value in between."""
     w, r = m.w, m.w.r
+    if w.room() < 2:
+        return _expression(m)
     edge = r.choice(["posedge", "negedge"])
     width = min(w.room(), r.choice([2, 3, 4]))
     value = _value(m, edge, min(m.depth, 2))
@@ -198,6 +200,7 @@ def _loop(m: _Maker) -> None:
     )
     body = [f"{mid} = {name} + {value};", loop, f"{name} <= {mid};"]
     dividers._clocked(w, "clk", edge, [(name, 0)], body)
+    return None
 
 
 def _task(m: _Maker) -> None:
@@ -298,7 +301,7 @@ def _instances(m: _Maker) -> None:
     w.nets.append(_Net(net, width, False, "negedge" if "~" in ports else "posedge"))
     if r.random() < 0.5:
         picked = w.name("picked")
-        w.say(f"wire {picked}; pick ({picked}, {net}[0], {r.choice(w.nets).bit(r)}, clk);")
+        w.say(f"wire {picked}; pick ({picked}, {net}[0], {r.choice(w.nets).bit(r)}, {r.choice(w.nets).bit(r)});")
         w.nets.append(_Net(picked, 1, False, None))
 
 

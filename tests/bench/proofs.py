@@ -16,6 +16,7 @@ import tempfile
 import time
 from collections.abc import Callable
 from fractions import Fraction
+from functools import partial
 from pathlib import Path
 
 sys.path[:0] = [str(Path(__file__).parents[2]), str(Path(__file__).parents[1])]
@@ -94,10 +95,10 @@ def ratios(folder: Path, limit: float) -> None:
         ports = recognise(read([file]), Spec())
         system, _ = settle(ports.design, ports.clock, ports.running, ports.output_value, Effort(60))
         cells = [
-            timed(lambda file=file, n=n: ours(file, n), limit),
-            timed(lambda s=system, n=n: unrolled(s, n, limit), limit),
-            timed(lambda s=system, n=n: horn(s, n, limit), limit),
-            timed(lambda p=ports, f=file, n=n: simulated(p, f, n, limit), limit),
+            timed(partial(ours, file, n), limit),
+            timed(partial(unrolled, system, n, limit), limit),
+            timed(partial(horn, system, n, limit), limit),
+            timed(partial(simulated, ports, file, n, limit), limit),
         ]
         print(f"{n:>14}{cells[0]:>14}{cells[1]:>12}{cells[2]:>12}{cells[3]:>12}", flush=True)
 
