@@ -91,7 +91,9 @@ def _on_loops(
                 )
     method = rhythm.methods.get("power-up", "")
     if rhythm.complete:
-        text = f"every {noun} is {wanted} half-cycles on each of {len(rhythm.loops)} loops"
+        count = len(rhythm.loops)
+        where = f"each of {count} loops" if count != 1 else "the only loop"
+        text = f"every {noun} is {wanted} half-cycles on {where}"
         return Finding(name, "proved", claim, text, method, facts=facts)
     return Finding(name, "open", claim, rhythm.open or "not all loops are known", method, facts=facts)
 

@@ -34,5 +34,5 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding:
     text = f"settles within {found.depth} micro-step{'s' * (found.depth != 1)}"
     if obligations:
         text += f", under {len(obligations)} timing obligation{'s' * (len(obligations) != 1)}"
-    bound = f"{found.depth} micro-steps"
+    bound = f"{found.depth} micro-step{'s' * (found.depth != 1)}"
     return Finding(NAME, "proved", claim, text, method, bound, facts, obligations)

@@ -299,6 +299,10 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
         recovery = Recovery(None, False, open=why) if goal is not None else None
         return replace(rhythm, recovery=recovery, stuck=stuck, open=rhythm.open or why)
     faults = certificate.stage_faults(system, found.claims, found.worst, effort)
+    if faults and system.choices:
+        # The search takes x for one value on the way; the check does not.
+        why = "the paths that cover all states hang on a value that x stands for"
+        return replace(rhythm, recovery=Recovery(None, False, open=why), open=rhythm.open or why)
     if faults:
         raise InternalError(f"a cover's certificate fails: {'; '.join(faults[:3])}")
     exact = found.slowest is not None

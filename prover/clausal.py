@@ -274,14 +274,31 @@ class _Circuit:
         return out
 
     def _product(self, a: Bits, b: Bits) -> Bits:
-        """Shift and add, over the bits of the factor that has more of them known."""
-        if sum(abs(bit) == TRUE for bit in a) > sum(abs(bit) == TRUE for bit in b):
+        """Shift and add, or for a constant add and subtract: by its digits 1, 0 and −1, no two of them neighbours
+        (the non-adjacent form: Reitwiesner 1960), which makes -1 one subtraction."""
+        if all(abs(bit) == TRUE for bit in a):
             a, b = b, a
+        if all(abs(bit) == TRUE for bit in b):
+            return self._scaled(a, sum((bit == TRUE) << i for i, bit in enumerate(b)))
         total: Bits = [-TRUE] * len(a)
         for place, bit in enumerate(b):
             if bit != -TRUE:
                 row = [-TRUE] * place + [self.conj(bit, x) for x in a[: len(a) - place]]
                 total = self._sum(total, row, -TRUE)
+        return total
+
+    def _scaled(self, a: Bits, factor: int) -> Bits:
+        width = len(a)
+        total: Bits = [-TRUE] * width
+        left = factor - (1 << width) if factor >> (width - 1) else factor
+        for place in range(width):
+            digit = 2 - left % 4 if left % 2 else 0
+            left = (left - digit) // 2
+            row = [-TRUE] * place + a[: width - place]
+            if digit == 1:
+                total = self._sum(total, row, -TRUE)
+            elif digit == -1:
+                total = self._sum(total, [-bit for bit in row], TRUE)
         return total
 
     def _shifted(self, a: Bits, by: Bits, filling: Literal, up: bool) -> Bits:

@@ -168,7 +168,7 @@ def _same_width(*args: Expr) -> int:
 def _fold(op: str, width: int, args: tuple[Expr, ...], params: tuple[Param, ...] = ()) -> Expr:
     node = _node(op, width, args, params)
     if all(a.is_const for a in args):
-        return const(evaluate([node], {})[0], width)
+        return const(_evaluate_node(node, [a.value for a in args], {}), width)
     return node
 
 

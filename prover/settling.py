@@ -248,18 +248,19 @@ def _release_race(system: System, moments: Sequence[Moment], register: Register,
 
 
 def _hold_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:
-    """A derived clock that samples data which the same input edge has already changed."""
-    launch = moments[1]
-    for then, now in pairwise(moments[1:]):
+    """A derived clock that samples data which the same input edge has already changed, if only for a moment."""
+    for place, (then, now) in enumerate(pairwise(moments)):
+        if place == 0:
+            continue
         for edge in register.edges:
             (low,) = e.substitute([edge.clock], then)
             high, data = e.substitute([edge.clock, edge.data], now)
             forced = e.disj(e.substitute([f.when for f in register.forces], now))
             # What the register itself holds is no data launched by another register.
-            own = {**launch, register.name: now[register.name]}
-            (old,) = e.substitute([edge.data], own)
+            since = [{**moment, register.name: now[register.name]} for moment in moments[1 : place + 1]]
+            moves = e.disj(e.bvnot(e.eq(data, e.substitute([edge.data], past)[0])) for past in since)
             fires = e.conj([e.bvnot(low), high, e.bvnot(forced), system.settled])
-            model = ask(e.bvand(fires, e.bvnot(e.eq(data, old))))
+            model = ask(e.bvand(fires, moves))
             if model is not None:
                 text = (
                     f"{register.name} samples data launched by the same input edge that makes its derived clock: "
@@ -274,12 +275,11 @@ def _latch_race(system: System, moments: Sequence[Moment], register: Register, a
     if register.kind != "latch":
         return None
     for place, (then, now) in enumerate(pairwise(moments)):
-        launch = moments[1] if place > 0 else then
         for force in register.forces:
             was_open, old = e.substitute([force.when, force.value], then)
-            still, new = e.substitute([force.when, force.value], now)
-            (launched,) = e.substitute([force.value], launch)
-            moves = e.bvnot(e.bvand(e.eq(old, new), e.eq(old, launched)))
+            (still,) = e.substitute([force.when], now)
+            since = [now, *moments[1 : place + 1]]
+            moves = e.disj(e.bvnot(e.eq(old, e.substitute([force.value], past)[0])) for past in since)
             model = ask(e.conj([was_open, e.bvnot(still), moves, system.settled]))
             if model is not None:
                 text = (

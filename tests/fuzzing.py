@@ -26,9 +26,11 @@ def fuzzed(seed: int, texts: list[bytes]) -> bytes:
 
 def _flip(r: random.Random, text: bytes, _: list[bytes]) -> bytes:
     out = bytearray(text)
-    for _ in range(r.randrange(1, 4)):
+    for _count in range(r.randrange(1, 4)):
         if out:
-            out[r.randrange(len(out))] = r.randrange(256) if r.random() < 0.3 else r.choice(b"01;()[]{}<=~&|'`\\\" \n#@?:")
+            out[r.randrange(len(out))] = (
+                r.randrange(256) if r.random() < 0.3 else r.choice(b"01;()[]{}<=~&|'`\\\" \n#@?:")
+            )
     return bytes(out)
 
 

@@ -11,6 +11,7 @@ import small
 import z3
 
 from prover import certificate, graph, orbit, path
+from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
 from prover.path import Beat, Item, Repeat
@@ -112,3 +113,21 @@ def test_altered_phases_and_ranks_are_rejected() -> None:
             continue
         assert certificate.rank_faults(system, phase, rank, 10, 5, Effort(60))
     assert certificate.rank_faults(system, table.phase, table.rank, 10, 4, Effort(60))
+
+
+def test_what_x_stands_for_may_change_from_one_half_cycle_to_the_next() -> None:
+    """From 0, x = 1 leads by 1 and x = 0 by 2 to the home state 3, where it stays. But x = 1 and then x = 0 leads from
+    0 by 1 back to 0: there is no time by which every state is home."""
+    state, x = e.var("state", 2), e.var("?x", 1)
+    steps = [(1, 2), (3, 0), (0, 3), (3, 3)]
+    data = e.const(3, 2)
+    for at, (high, low) in enumerate(steps[:3]):
+        taken = e.ite(x, e.const(high, 2), e.const(low, 2))
+        data = e.ite(e.eq(state, e.const(at, 2)), taken, data)
+    system = system_of(small.design([small.flop("state", 2, small.CLOCK, data)], e.extract(state, 0, 0)))
+    assert system.choices
+    home = [(3, 0), (3, 1)]
+    for half_cycles in (1, 5, 9):
+        assert not certificate.discharge(certificate.reset_goal(system, half_cycles, home), Effort(60))
+    everywhere = [(value, level) for value in range(4) for level in (0, 1)]
+    assert certificate.discharge(certificate.reset_goal(system, 5, everywhere), Effort(60))

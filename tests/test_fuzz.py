@@ -35,7 +35,18 @@ def survives(seed: int, folder: Path) -> int:
     """Check one fuzzed source; its exit status."""
     path = folder / "fuzzed.v"
     path.write_bytes(fuzzed(seed, TEXTS))
-    arguments = ["check", "fuzzed.v", "--ratio", "4", "--effort", str(EFFORT), "--json", "out.json", "--vcd", "out.vcd"]
+    arguments = [
+        "check",
+        "fuzzed.v",
+        "--ratio",
+        "4",
+        "--effort",
+        str(EFFORT),
+        "--json",
+        "out.json",
+        "--vcd",
+        "out.vcd",
+    ]
     began = time.monotonic()
     result = CliRunner().invoke(cli.main, arguments)
     took = time.monotonic() - began

@@ -12,8 +12,8 @@ from texts import BY_3, RING, SPINS, STICKS_AT_7
 
 from prover import cli
 from prover.errors import InternalError
-from prover.spec import Spec
 from prover.several import groups
+from prover.spec import Spec
 
 STAGE = STICKS_AT_7[: STICKS_AT_7.index("module sticks")]
 STICKS = STICKS_AT_7[len(STAGE) :]

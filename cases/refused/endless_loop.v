@@ -1,6 +1,6 @@
 // A loop whose step does not move.
 // check: --ratio 4
-// error: loop runs more than
+// error: loop never ends
 // line: 10
 module endless_loop (input clk, output tick);
   reg [3:0] ring;

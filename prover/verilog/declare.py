@@ -13,7 +13,18 @@ from prover.errors import UserError
 from prover.verilog import tree
 from prover.verilog.deep import run
 from prover.verilog.execute import Environment, Executor
-from prover.verilog.names import MAX_WIDTH, Constant, Lazy, Net, Report, Routine, Scope, Type
+from prover.verilog.names import (
+    MAX_MEMORY,
+    MAX_WIDTH,
+    MAX_WORDS,
+    Constant,
+    Lazy,
+    Net,
+    Report,
+    Routine,
+    Scope,
+    Type,
+)
 from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
 
@@ -231,8 +242,8 @@ class Declarer:
             local=scope.local,
             complete=shape.complete,
         )
-        if made.width > MAX_WIDTH:
-            self.report.fail(f"a memory of {made.width} bits", name.lineno, f"at most {MAX_WIDTH} are read")
+        if made.width > MAX_MEMORY:
+            self.report.fail(f"a memory of {made.width} bits", name.lineno, f"at most {MAX_MEMORY} are read")
         self._add(scope, name.name, made, name.lineno)
         self.nets.append(made)
         return made
@@ -247,12 +258,12 @@ class Declarer:
         if right is None:
             if first < 1:
                 self.report.fail("a memory without words", name.lineno, "give it at least one word")
-            return 0, first - 1
-        last = constant(self.env(scope), right, "the bound of a memory")
-        if abs(first - last) >= MAX_WIDTH:
-            self.report.fail(
-                f"a memory of {abs(first - last) + 1} words", name.lineno, "at most 65536 bits are read"
-            )
+            first, last = 0, first - 1
+        else:
+            last = constant(self.env(scope), right, "the bound of a memory")
+        if abs(first - last) >= MAX_WORDS:
+            words = abs(first - last) + 1
+            self.report.fail(f"a memory of {words} words", name.lineno, f"at most {MAX_WORDS} are read")
         return first, last
 
     def _complete(self, net: Net, shape: Shape, name: tree.Named) -> Net:

@@ -24,7 +24,7 @@ from prover.verilog.words import Replacer, Search, cut, joined, reads, runs
 UNDRIVEN = "?undriven "
 # Wider vectors aren't looked at bit by bit for circles, and more circles than this are no divider.
 MAX_SPLIT = 256
-MAX_LOOPS = 200
+MAX_LOOPS = 64
 
 
 @dataclass(slots=True, eq=False)

@@ -24,8 +24,8 @@ from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
 from prover.verilog.words import assume, cut
 
-MAX_STEPS = 20_000
-MAX_ROUNDS = 8_192
+MAX_STEPS = 12_000
+MAX_ROUNDS = 4_096
 
 SILENT = words(
     """display displayb displayh displayo write writeb writeh writeo monitor monitoron monitoroff
@@ -409,6 +409,7 @@ class Executor:
             if not test.value:
                 self.unrolling -= 1
                 return
+            before = dict(state.values)
             yield self.execute(body, scope, state)
             if state.returned is not e.FALSE:
 
@@ -422,6 +423,8 @@ class Executor:
                 return
             if step is not None:
                 yield self.execute(step, scope, state)
+            if state.values == before:
+                self.report.fail("this loop never ends", node, "its step must move towards its end")
         self.report.fail(f"this loop runs more than {MAX_ROUNDS} times", node, "give it fewer rounds")
 
     def _repeat(self, node: tree.Repeat, scope: Scope, state: State) -> Task[None]:

@@ -13,7 +13,9 @@ from prover.verilog import tree
 from prover.verilog.source import Source, printable
 
 # A wider word or more state than this is a mistake or an attack, and no divider.
-MAX_WIDTH = 65_536
+MAX_WIDTH = 8_192
+MAX_MEMORY = 65_536
+MAX_WORDS = 4_096
 MAX_CALL_DEPTH = 200
 MAX_NESTED = 30
 MAX_NOTES = 1_000

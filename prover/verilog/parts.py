@@ -15,6 +15,8 @@ from prover.expr import Expr
 from prover.verilog.names import MAX_WIDTH, Constant, Net, Report, Type
 from prover.verilog.words import cut, joined
 
+# More than the widest word takes, and fewer than Python refuses to read.
+MAX_DIGITS = 4_000
 _RADIX = {"b": 1, "o": 3, "h": 4}
 
 
@@ -38,6 +40,8 @@ def literal(text: str) -> Constant:
     """The constant that a number stands for (clause 3.5.1). Raises ValueError with the reason if none."""
     text = re.sub(r"\s|_", "", text).lower()
     size, tick, rest = text.partition("'")
+    if len(size) > MAX_DIGITS:
+        raise ValueError(f"a number of more than {MAX_DIGITS} digits")
     if not tick:
         number = int(size)
         # Without a size a number has at least 32 bits; a larger one has as many as it needs.
@@ -61,8 +65,8 @@ def _decimal(digits: str) -> tuple[int, int, int]:
         return 0, *((1, 0) if digits == "x" else (0, 1))
     if not digits.isdecimal():
         raise ValueError(f"{digits!r} is no decimal number")
-    if len(digits) > 20_000:
-        raise ValueError("a number of more than 20 000 digits")
+    if len(digits) > MAX_DIGITS:
+        raise ValueError(f"a number of more than {MAX_DIGITS} digits")
     return int(digits), 0, 0
 
 
@@ -144,15 +148,17 @@ def write_part(place: Place, whole: Expr, value: Expr) -> Expr:
     if not net.words:
         return _put(whole, place.low, place.width, value)
     size = net.type.width
+    if isinstance(place.word, int):
+        low = place.word * size
+        if isinstance(place.low, int):
+            return _put(whole, low + place.low, place.width, value)
+        word = cut(whole, low + size - 1, low)
+        return _put(whole, low, size, _put(word, place.low, place.width, value))
     words = [cut(whole, k * size + size - 1, k * size) for k in range(net.count)]
     for k, word in enumerate(words):
-        if isinstance(place.word, int):
-            if k == place.word:
-                words[k] = _put(word, place.low, place.width, value)
-        else:
-            assert place.word is not None
-            here = e.eq(place.word, e.const(k, place.word.width))
-            words[k] = e.ite(here, _put(word, place.low, place.width, value), word)
+        assert place.word is not None
+        here = e.eq(place.word, e.const(k, place.word.width))
+        words[k] = e.ite(here, _put(word, place.low, place.width, value), word)
     return joined(words[::-1])
 
 

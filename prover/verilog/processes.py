@@ -31,6 +31,8 @@ from prover.verilog.words import assume, cut, masked, reads, replace, runs
 
 MAX_CONTROLS = 6
 MAX_LATCH = 4_096
+# Wider words that are written in part count as hanging on themselves.
+MAX_JUDGED = 256
 
 
 @dataclass(slots=True, frozen=True)
@@ -486,15 +488,21 @@ def depends_on_itself(net: Net, word: Expr, written: Expr) -> bool:
     if written_low.is_const:
         kept = e.const(written_low.value, net.width)
         return e.bvand(low, kept) is not e.bvand(high, kept)
-    for condition in {cut(written_low, i, i) for i in range(min(net.width, MAX_LATCH))}:
-        mask = sum(1 << i for i in range(net.width) if cut(written_low, i, i) is condition)
-        kept = e.const(mask, net.width)
+    if net.width > MAX_JUDGED:
+        return True
+    bits: dict[Expr, int] = {}
+    for i in range(net.width):
+        condition = cut(written_low, i, i)
+        bits[condition] = bits.get(condition, 0) | 1 << i
+    doubtful = []
+    for condition, mask in bits.items():
         if condition is e.FALSE:
             continue
+        kept = e.const(mask, net.width)
         one, other = (e.bvand(assume(word, condition), kept) for word in (low, high))
-        if one is not other and satisfiable(e.bvand(condition, e.bvnot(e.eq(one, other)))):
-            return True
-    return False
+        if one is not other:
+            doubtful.append(e.bvand(condition, e.bvnot(e.eq(one, other))))
+    return bool(doubtful) and satisfiable(e.disj(doubtful))
 
 
 def satisfiable(goal: Expr) -> bool:

@@ -966,7 +966,7 @@ REFUSED = [
     Refused(
         "an endless loop",
         clocked("posedge clk", "begin : b integer i; for (i = 0; i < 2; i = i)\ntick <= ~tick; end"),
-        "loop runs more",
+        "loop never ends",
         3,
     ),
     Refused(

@@ -181,7 +181,7 @@ def _counter(w: _Writer) -> None:
     op = "=" if blocking else "<="
     last = r.randrange(1, 1 << width)
     if signed:
-        last = r.randrange(0, 1 << (width - 1))
+        last = r.randrange(1, 1 << (width - 1))
     step, first = ("+", 0) if r.random() < 0.75 else ("-", last)
     limit = last if step == "+" else 0
     compare = f"{c} {r.choice(['==', '>='] if step == '+' else ['==', '=='])} {_constant(r, width, limit)}"

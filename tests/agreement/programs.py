@@ -27,6 +27,14 @@ class Program:
     units: tuple[str, ...]
     replacements: tuple[tuple[str, str], ...]
 
+    @property
+    def simulated(self) -> str:
+        """The text for the simulator."""
+        text = self.text
+        for old, new in self.replacements:
+            text = text.replace(old, new)
+        return text
+
 
 @dataclass(frozen=True)
 class Plan:
@@ -139,7 +147,10 @@ def _declare_function(m: _Maker) -> None:
     start = r.choice(["a + b", "a - b", "{a, b}", "a ^ (b >>> 1)"])
     step = r.choice([f"{name} = {name} + i", f"if (a[i]) {name} = {name} ^ (b << i)", f"{name} = -{name}"])
     loop = r.choice(
-        [f"for (i = 0; i < 3; i = i + 1) {step};", f"begin i = 2; while (i > 0) begin i = i - 1; {step}; end end"]
+        [
+            f"for (i = 0; i < 3; i = i + 1) {step};",
+            f"begin i = 2; while (i > 0) begin i = i - 1; {step}; end end",
+        ]
     )
     m.w.say(f"function {sign}[{r.choice([1, 3, 5])}:0] {name};")
     m.w.say(f"  input {r.choice(['', 'signed '])}[3:0] a; input {sign}[2:0] b; integer i;")
@@ -241,7 +252,9 @@ def _memory(m: _Maker) -> None:
     m.replacements.append((f"reg {name} [0:1];", f"reg [1:0] {name};"))
     w.bits += 2
     index = by.bit(r)
-    w.say(f"always @({edge} clk) {name}[{index}] <= {r.choice(['~', ''])}{name}[{r.choice(['0', '1', index])}];")
+    w.say(
+        f"always @({edge} clk) {name}[{index}] <= {r.choice(['~', ''])}{name}[{r.choice(['0', '1', index])}];"
+    )
     read = w.name("read")
     w.say(f"wire {read} = {name}[{by.bit(r)}];")
     w.nets.append(_Net(read, 1, False, None))
@@ -301,7 +314,9 @@ def _instances(m: _Maker) -> None:
     w.nets.append(_Net(net, width, False, "negedge" if "~" in ports else "posedge"))
     if r.random() < 0.5:
         picked = w.name("picked")
-        w.say(f"wire {picked}; pick ({picked}, {net}[0], {r.choice(w.nets).bit(r)}, {r.choice(w.nets).bit(r)});")
+        w.say(
+            f"wire {picked}; pick ({picked}, {net}[0], {r.choice(w.nets).bit(r)}, {r.choice(w.nets).bit(r)});"
+        )
         w.nets.append(_Net(picked, 1, False, None))
 
 

@@ -2,7 +2,8 @@
 
 Registers and output have to be System's at the end of each of 200 half-cycles, and the verdict's figures those that
 plain enumeration finds on the simulator's own map. Self-clearing loops have one unit of delay at the gates that the
-case names, because every simulator orders in its own way what it does at one moment.
+case names, because every simulator orders in its own way what it does at one moment. Where the verdict is that the
+outcome hangs on the order of simultaneous events, no one order is the right one, and nothing is compared.
 """
 
 from __future__ import annotations
@@ -52,7 +53,10 @@ def small(settles: bool) -> list[Any]:
     out = []
     for case in cases():
         for group in case.groups:
-            if group.error or (group.properties["settling"].verdicts == {"proved"}) != settles:
+            hangs_on_order = len(group.properties) > 1 and group.properties["settling"].verdicts == {
+                "refuted"
+            }
+            if group.error or hangs_on_order or (len(group.properties) > 1) != settles:
                 continue
             if register_bits(case, group) <= MOST_BITS:
                 out.append(pytest.param(case, group, id=f"{case.name}: {shlex.join(group.options)}"))
