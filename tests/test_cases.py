@@ -123,3 +123,26 @@ def test_every_folder_has_the_cases_it_is_for() -> None:
             assert "refuted" not in group.verdicts
     for case in cases("faulty"):
         assert "refuted" in case.groups[0].verdicts
+
+
+# A burst of seven counts for every edge: it settles, and takes more micro-steps than are looked at.
+BURST = """\
+module burst (input clk, output tick);
+  reg [2:0] count, target;
+  wire osc, more;
+  assign more = count != target;
+  assign osc = more & ~osc;
+  always @(posedge clk) target <= target + 3'd7;
+  always @(posedge osc) count <= count + 3'd1;
+  assign tick = count[2];
+endmodule
+"""
+
+
+def test_a_chain_that_is_too_long_to_bound_is_left_open(tmp_path: Path) -> None:
+    source = tmp_path / "burst.v"
+    source.write_text(BURST, encoding="utf-8")
+    result = CliRunner().invoke(cli.main, ["check", str(source), "--ratio", "2"], catch_exceptions=False)
+    assert result.exit_code == STATUS["open"]
+    assert "REFUTED" not in result.stdout
+    assert "PROVED" not in result.stdout

@@ -6,7 +6,7 @@
 // high-time: proved
 // no-stuck: proved
 // recovery: proved, worst 6, exact
-// settling: refuted
+// settling: refuted, obligation
 // loops: 1
 // false loops: 0
 module latch_behind_a_decode (input clk, output valve);
