@@ -67,7 +67,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     ), evidence.starts, owed)  # fmt: skip
     goal = Goal(spec.period, spec.high_half_cycles)
     lassos = [_lasso(whole, machine, lasso, owed) for lasso in evidence.lassos]
-    rhythm = _everywhere(rhythm, evidence, goal, lassos, owed)
+    rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
     return Rebuilt(whole, rhythm, owed.listed())
 
 
@@ -304,14 +304,24 @@ def _lasso(whole: System, machine: System, lasso: Lasso, owed: _Obligations) -> 
 
 
 def _everywhere(
-    rhythm: Rhythm, evidence: Evidence, goal: Goal, lassos: Sequence[Orbit], owed: _Obligations
+    rhythm: Rhythm,
+    evidence: Evidence,
+    goal: Goal,
+    lassos: Sequence[Orbit],
+    is_whole: bool,
+    owed: _Obligations,
 ) -> Rhythm:
-    """The rhythm completed with what is known of all power-up states."""
+    """The rhythm completed with what is known of all power-up states.
+
+    A list of loops may be longer than what power-up states run into. It proves what holds on all of them, but what a
+    loop refutes hangs on its states being power-up states."""
     known = evidence.everywhere
     bound: int | None = None
     listed: list[Orbit] = []
     if isinstance(known, Rounds):
         listed = _rounds(rhythm.system, known, owed)
+        if is_whole:
+            owed.add([tables.rounds_at_rest(rhythm.system, known)])
     elif isinstance(known, Ranking):
         bound = _ranking(rhythm.system, known, goal, owed)
     elif known is not None:
@@ -322,6 +332,12 @@ def _everywhere(
     if (lost and bound is not None) or (stuck and complete and bound is not None):
         raise Rejected("a state is lost, though every state recovers")
     loops, shown = _loops([*listed, *(() if complete else (*rhythm.orbits, *lassos))], goal)
+    if isinstance(known, Rounds) and not is_whole:
+        backed = {
+            loop.example for loop in loops if loop.good or any(_goes_round(run, loop) for run in lassos)
+        }
+        complete = len(backed) == len(loops)
+        loops = tuple(loop for loop in loops if loop.example in backed)
     why = "the certificate has no evidence about all power-up states"
     recovery = Recovery(None, False, open=why)
     if lost:
@@ -346,6 +362,10 @@ def _everywhere(
 def _is_lost(run: Orbit, goal: Goal) -> bool:
     wave = run.wave()
     return wave is not None and not wave.divides_by(goal.period, goal.high)
+
+
+def _goes_round(run: Orbit, loop: Loop) -> bool:
+    return run.closed and any(beat.state == loop.example for beat in path.beats(run.loop))
 
 
 def _is_stuck(run: Orbit) -> bool:

@@ -164,5 +164,11 @@ def rounds_obligations(system: System, table: Rounds) -> Iterator[Obligation]:
     yield Obligation("any other state's successor is nearer to a loop", nearer)
 
 
+def rounds_at_rest(system: System, table: Rounds) -> Obligation:
+    """Every state on a loop is a power-up state."""
+    on_loop = lookup(system, [int(value == 0) for value in table.distance], 1)
+    return Obligation("a state on a loop is at rest", e.bvand(on_loop, e.bvnot(system.settled)))
+
+
 def _after(system: System, values: Sequence[Expr]) -> list[Expr]:
     return e.substitute(values, dict(zip(system.names, system.step, strict=True)))

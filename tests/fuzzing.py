@@ -24,7 +24,7 @@ def fuzzed(seed: int, texts: list[bytes]) -> bytes:
     return text
 
 
-def _flip(r: random.Random, text: bytes, _: list[bytes]) -> bytes:
+def _flip(r: random.Random, text: bytes, texts: list[bytes]) -> bytes:
     out = bytearray(text)
     for _count in range(r.randrange(1, 4)):
         if out:

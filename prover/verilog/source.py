@@ -17,8 +17,8 @@ from pathlib import Path
 from prover.errors import UserError, Where
 
 # A merge gate reads what strangers send: each of these ends in an error, never in a hang.
-MAX_FILE_BYTES = 16_000_000
-MAX_TEXT = 16_000_000
+MAX_FILE_BYTES = 8_000_000
+MAX_TEXT = 8_000_000
 MAX_EXPANSIONS = 100_000
 MAX_EXPANDED = 4_000_000
 MAX_DEPTH = 60
