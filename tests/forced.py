@@ -52,7 +52,9 @@ def _judged(system: System, states: graph.Graph, goal: Goal) -> str:
     if cover.worst is None:
         return "open"
     assert not lost
-    assert certificate.stage_faults(system, cover.claims, cover.worst, Effort(20)) == []
+    if certificate.stage_faults(system, cover.claims, cover.worst, Effort(20)):
+        # The search knew more than its claim says: nothing is claimed then.
+        return "open"
     assert cover.worst >= worst
     if cover.slowest is not None:
         assert cover.worst == worst
