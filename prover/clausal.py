@@ -108,15 +108,15 @@ def check(clauses: Sequence[tuple[int, ...]], lemmas: Sequence[tuple[int, ...]])
     steps = needed_steps(clauses, lemmas)
     if not steps or steps[-1].lemma:
         return None
-    known: dict[int, tuple[int, ...]] = dict(enumerate(clauses))
+    known = set(clauses)
     for step in steps:
-        if any(premise not in known for premise in step.premises):
+        if not known.issuperset(step.premises):
             return None
-        premises = [list(known[premise]) for premise in step.premises]
         negated = [[-literal] for literal in step.lemma]
-        if drup.check_proof(premises + negated, [[]]).outcome is not drup.Outcome.VALID:
+        outcome = drup.check_proof([*map(list, step.premises), *negated], [[]]).outcome
+        if outcome is not drup.Outcome.VALID:
             return None
-        known[step.number] = step.lemma
+        known.add(step.lemma)
     return len(steps)
 
 

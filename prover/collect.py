@@ -9,8 +9,9 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from itertools import product
+from typing import TypeVar
 
-from prover import certificate, graph, linear, reset, tables
+from prover import certificate, graph, linear, path, reset, tables
 from prover import expr as e
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
@@ -26,6 +27,8 @@ from prover.solve import Model, find
 from prover.system import State, System, cone
 from prover.tables import Ranking, Rounds
 
+Found = TypeVar("Found")
+
 
 def collect(report: Report, effort: Effort) -> Evidence:
     """The evidence for the report's verdicts, as far as it can be written."""
@@ -39,9 +42,10 @@ def collect(report: Report, effort: Effort) -> Evidence:
     machine = rhythm.system
     word = machine.words[0][1] if machine.words else ()
     left_out = len(machine.describe((0,) * len(machine.variables))) < len(whole.variables)
-    hold = _hold(ports, effort) if rhythm.scope == "reset" and rhythm.starts else None
+    resets = rhythm.scope == "reset" and bool(rhythm.starts)
+    hold = _within(lambda: _hold(ports, effort)) if resets else None
     followed = rhythm.scope != "reset" or hold is not None
-    everywhere = _everywhere(rhythm, Goal(spec.period, spec.high_half_cycles), effort)
+    goal = Goal(spec.period, spec.high_half_cycles)
     return Evidence(
         settling=answers,
         cone=left_out,
@@ -49,9 +53,17 @@ def collect(report: Report, effort: Effort) -> Evidence:
         matrix=_matrix(machine, cone(whole) if left_out else whole),
         reset=hold,
         starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
-        everywhere=everywhere,
-        lassos=_lassos(report, whole, effort),
+        everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
+        lassos=_within(lambda: _lassos(report, whole, effort)) or (),
     )
+
+
+def _within(work: Callable[[], Found]) -> Found | None:
+    """What comes of some work within the effort; what does not is left out of the evidence."""
+    try:
+        return work()
+    except OutOfEffort:
+        return None
 
 
 def _repeated(answers: Sequence[Model | None]) -> Callable[[Expr], Model | None]:
@@ -82,7 +94,9 @@ def _matrix(machine: System, inner: System) -> Matrix | None:
 
 
 def _track(orbit: Orbit) -> Track:
-    return Track(orbit.lead, orbit.loop)
+    """The orbit, shorter where an engine followed it beat by beat."""
+    lead, loop = (path.folded(items, orbit.widths) for items in (orbit.lead, orbit.loop))
+    return Track(lead, loop)
 
 
 def _hold(ports: Ports, effort: Effort) -> Hold | None:
@@ -110,7 +124,21 @@ def _everywhere(rhythm: Rhythm, goal: Goal, effort: Effort) -> tuple[Layer, ...]
         return None
     if system.bits <= tables.MOST_BITS:
         return _table(system, goal, effort)
+    if system.bits <= tables.MOST_BITS_IF_REGULAR:
+        table = _table(system, goal, effort)
+        if table is not None and _is_regular(system, table):
+            return table
     return _covered(rhythm, goal, effort) if recovers and not system.choices else None
+
+
+def _is_regular(system: System, table: Ranking | Rounds) -> bool:
+    if isinstance(table, Ranking):
+        return tables.is_regular(system, [table.phase, table.rank])
+    following = [-1] * len(table.distance)
+    for states in table.members:
+        for number, then in zip(states, (*states[1:], states[0]), strict=True):
+            following[number] = then
+    return tables.is_regular(system, [table.distance, following])
 
 
 def _table(system: System, goal: Goal, effort: Effort) -> Ranking | Rounds | None:

@@ -69,6 +69,45 @@ def joined(items: Sequence[Item]) -> Path:
     return tuple(out)
 
 
+def folded(path: Sequence[Item], widths: Sequence[int], longest: int = 32) -> Path:
+    """The same path with stretches of beats that recur, each time moved by one vector, as repeats.
+
+    Blocks of up to `longest` beats are tried, and a repeat made of four rounds or more."""
+    out: list[Item] = []
+    at = 0
+    while at < len(path):
+        best: Repeat | None = None
+        for size in range(1, longest + 1):
+            block = _recurring(path, at, size, widths)
+            if block is not None and (best is None or block.length > best.length):
+                best = block
+        out.append(path[at] if best is None else best)
+        at += 1 if best is None else best.length
+    return tuple(out)
+
+
+def _recurring(path: Sequence[Item], at: int, size: int, widths: Sequence[int]) -> Repeat | None:
+    """The repeat of the block of so many beats there, if it recurs often enough."""
+    first, then = path[at], path[at + size] if at + size < len(path) else None
+    if not isinstance(first, Beat) or not isinstance(then, Beat):
+        return None
+    pairs = zip(first.state, then.state, widths, strict=True)
+    stride = tuple((b - a) & ((1 << w) - 1) for a, b, w in pairs)
+    end = at + size
+    while end < len(path):
+        here, before = path[end], path[end - size]
+        if not isinstance(here, Beat) or not isinstance(before, Beat) or here.level != before.level:
+            break
+        if here.state != moved(before.state, stride, 1, widths):
+            break
+        end += 1
+    times = (end - at) // size
+    body = path[at : at + size]
+    if times < 4 or not all(isinstance(item, Beat) for item in body):
+        return None
+    return Repeat(times, stride, tuple(body))
+
+
 def merged(runs: Iterable[Run]) -> Iterator[Run]:
     """Neighbouring runs of one level joined."""
     for level, group in groupby(runs, key=lambda run: run[0]):

@@ -398,7 +398,7 @@ def _loops(runs: Iterable[Orbit], goal: Goal) -> tuple[tuple[Loop, ...], dict[St
 
 
 def _rounds(system: System, known: Rounds, owed: _Obligations) -> list[Orbit]:
-    if system.bits > tables.MOST_BITS:
+    if system.bits > tables.MOST_BITS_IF_REGULAR:
         raise Rejected("a table of too many states")
     _none([*tables.rounds_form_faults(system, known)])
     owed.add(tables.rounds_obligations(system, known))
@@ -406,7 +406,7 @@ def _rounds(system: System, known: Rounds, owed: _Obligations) -> list[Orbit]:
 
 
 def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> int:
-    if system.bits > tables.MOST_BITS:
+    if system.bits > tables.MOST_BITS_IF_REGULAR:
         raise Rejected("a table of too many states")
     _none([*tables.ranking_form_faults(system, known, goal.period)])
     owed.add(tables.ranking_obligations(system, known, goal.period, goal.high))

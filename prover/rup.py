@@ -12,19 +12,22 @@ from dataclasses import dataclass
 
 Clause = tuple[int, ...]
 
+PORTION = 40
+"""Propagations that a step has at most: a checker may take the square of their number."""
+
 
 @dataclass(frozen=True, slots=True)
 class Step:
-    """A lemma and the numbers of the clauses it follows from: those given come first, then lemmas in order."""
+    """A lemma and clauses that it follows from by unit propagation."""
 
-    number: int
     lemma: Clause
-    premises: tuple[int, ...]
+    premises: tuple[Clause, ...]
 
 
 def needed_steps(clauses: Sequence[Clause], lemmas: Sequence[Clause]) -> list[Step] | None:
     """The steps that lead to the empty clause, in order; None if some lemma does not follow by propagation."""
-    database = _Database([*clauses, *lemmas])
+    every = [*clauses, *lemmas]
+    database = _Database(every)
     wanted = [False] * (len(clauses) + len(lemmas))
     empty = next((i for i, lemma in enumerate(lemmas) if not lemma), None)
     if empty is None:
@@ -40,8 +43,62 @@ def needed_steps(clauses: Sequence[Clause], lemmas: Sequence[Clause]) -> list[St
             return None
         for premise in premises:
             wanted[premise] = True
-        steps.append(Step(number, lemma, tuple(premises)))
-    return steps[::-1]
+        steps.append(Step(lemma, tuple(every[premise] for premise in premises)))
+    return [portion for step in reversed(steps) for portion in _portions(step)]
+
+
+def _portions(step: Step) -> list[Step]:
+    """A step in portions: where many propagations lead to the contradiction, a literal that later ones need becomes a
+    lemma of its own, in the place of all that led to it."""
+    if len(step.premises) <= PORTION:
+        return [step]
+    free = {-literal for literal in step.lemma}
+    reasons: dict[int, Clause] = {}
+    portion_of: dict[int, int] = {}
+    last: Clause = ()
+    for at, clause in enumerate(step.premises):
+        open_literals = [x for x in clause if -x not in free and -x not in reasons]
+        if not open_literals:
+            last = clause
+            break
+        reasons[open_literals[0]] = clause
+        portion_of[open_literals[0]] = at // PORTION
+    lemma_of: dict[int, Clause] = {}
+    made: list[Step] = []
+
+    def premises_of(clause: Clause, implied: int | None, portion: int) -> tuple[Clause, ...]:
+        """The clause, what its literals rest on within the portion, and lemmas for what they rest on before it."""
+        out: dict[Clause, None] = {clause: None}
+        todo = [-x for x in clause if x != implied]
+        seen = set(todo)
+        while todo:
+            literal = todo.pop()
+            if literal in free:
+                continue
+            if portion_of[literal] != portion:
+                out[lemma_of[literal]] = None
+                continue
+            out[reasons[literal]] = None
+            more = {-x for x in reasons[literal] if x != literal} - seen
+            seen |= more
+            todo += more
+        return tuple(out)
+
+    end = len(reasons) // PORTION
+    exported = _exported(reasons, portion_of, last, end)
+    for literal, clause in reasons.items():
+        if literal in exported:
+            lemma_of[literal] = (*step.lemma, literal)
+            made.append(Step(lemma_of[literal], premises_of(clause, literal, portion_of[literal])))
+    return [*made, Step(step.lemma, premises_of(last, None, end))]
+
+
+def _exported(reasons: dict[int, Clause], portion_of: dict[int, int], last: Clause, end: int) -> set[int]:
+    """The literals that some later portion needs."""
+    out = {-x for x in last if portion_of.get(-x, end) != end}
+    for literal, clause in reasons.items():
+        out |= {-x for x in clause if x != literal and portion_of.get(-x, end + 1) < portion_of[literal]}
+    return out
 
 
 class _Database:
@@ -112,7 +169,7 @@ class _Database:
         return None
 
     def _blamed(self, number: int, reasons: dict[int, int | None]) -> list[int]:
-        """The clauses that led to the false one, itself included, in order."""
+        """The clauses that led to the false one, in the order of propagation, and then that one."""
         used = {number}
         todo = [-literal for literal in self.clauses[number]]
         seen = set(todo)
@@ -125,4 +182,6 @@ class _Database:
             more = {-other for other in self.clauses[reason] if other != literal} - seen
             seen |= more
             todo += more
-        return sorted(used)
+        # Literals stand in the order in which they were propagated, each with a reason of its own.
+        ordered = [reason for reason in reasons.values() if reason in used and reason != number]
+        return [reason for reason in ordered if reason is not None] + [number]

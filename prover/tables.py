@@ -22,6 +22,10 @@ from prover.system import State, System
 MOST_BITS = 14
 """Bits of a state, the clock's level among them, up to which its evidence is written as a table."""
 
+MOST_BITS_IF_REGULAR = 17
+MOST_NODES = 20_000
+"""Bits up to which it is if the table is so regular that its expression has no more nodes than this."""
+
 
 @dataclass(frozen=True, slots=True)
 class Ranking:
@@ -88,6 +92,13 @@ def _either(bit: Expr, high: Expr | None, low: Expr | None) -> Expr | None:
     if high is None or low is None:
         return low if high is None else high
     return e.ite(bit, high, low)
+
+
+def is_regular(system: System, columns: Sequence[Sequence[int]]) -> bool:
+    """Whether the columns make expressions of few nodes; −1 stands for any value."""
+    size = max(max(column) for column in columns).bit_length() or 1
+    made = [lookup(system, [v if v >= 0 else None for v in column], size) for column in columns]
+    return len(e.topological(made)) <= MOST_NODES
 
 
 def ranking_form_faults(system: System, table: Ranking, period: int) -> list[str]:

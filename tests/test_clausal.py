@@ -6,6 +6,7 @@ from __future__ import annotations
 
 import itertools
 import random
+from collections.abc import Sequence
 
 import pytest
 from machines import random_expression
@@ -78,7 +79,7 @@ def lemmas_of(clauses: list[list[int]]) -> list[tuple[int, ...]]:
     return [tuple(map(int, line[:-1])) for line in lines]
 
 
-def implied(premises: list[tuple[int, ...]], lemma: tuple[int, ...]) -> bool:
+def implied(premises: Sequence[tuple[int, ...]], lemma: tuple[int, ...]) -> bool:
     """Whether every assignment that fulfils the premises fulfils the lemma: all of them are tried."""
     names = sorted({abs(literal) for clause in (*premises, lemma) for literal in clause})
     for values in itertools.product((False, True), repeat=len(names)):
@@ -101,14 +102,44 @@ def test_each_step_follows_from_its_premises_and_the_last_is_empty() -> None:
     assert steps is not None
     assert len(steps) > 10
     assert steps[-1].lemma == ()
-    known = dict(enumerate(clauses))
+    known = set(clauses)
+    tried = 0
     for step in steps:
-        assert max(step.premises) < step.number
-        premises = [known[premise] for premise in step.premises]
-        small = len({abs(literal) for clause in premises for literal in clause}) <= 12
-        assert not small or implied(premises, step.lemma)
-        known[step.number] = step.lemma
+        assert known.issuperset(step.premises)
+        if len({abs(literal) for clause in step.premises for literal in clause}) <= 12:
+            assert implied(step.premises, step.lemma)
+            tried += 1
+        known.add(step.lemma)
+    assert tried > 10
     assert sum(not step.lemma for step in steps) == 1
+
+
+def test_long_steps_are_taken_in_portions() -> None:
+    # A chain of 500 implications that ends in a contradiction, wherever it is entered.
+    clauses = [(1,), *((-i, i + 1) for i in range(1, 500)), (-500, -250, -3)]
+    steps = rup.needed_steps(clauses, [()])
+    assert steps is not None
+    assert len(steps) > 10
+    assert max(len(step.premises) for step in steps) <= 2 * rup.PORTION
+    known = set(clauses)
+    for step in steps:
+        assert known.issuperset(step.premises)
+        assert propagates(step.premises, step.lemma)
+        known.add(step.lemma)
+    assert steps[-1].lemma == ()
+
+
+def propagates(premises: Sequence[tuple[int, ...]], lemma: tuple[int, ...]) -> bool:
+    """Whether the premises and the lemma's negation lead to a contradiction by unit propagation, done plainly."""
+    true = {-literal for literal in lemma}
+    while True:
+        left = [[x for x in clause if -x not in true] for clause in premises if not true & set(clause)]
+        if [] in left or any(-x in true for x in true):
+            return True
+        units = {clause[0] for clause in left if len(clause) == 1}
+        if not units:
+            return False
+        true |= units
 
 
 def test_a_proof_with_a_lemma_that_does_not_follow_is_none() -> None:

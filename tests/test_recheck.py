@@ -324,6 +324,7 @@ def test_what_is_too_large_to_write_is_left_open_and_said(
     moved: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setattr(tables, "MOST_BITS", 2)
+    monkeypatch.setattr(tables, "MOST_BITS_IF_REGULAR", 2)
     shutil.copy(CASES / "faulty" / "by_7_clears_at_6.v", moved / "bad.v")
     result = run("check", "bad.v", "--ratio", "7", "--certificate", "bad.json")
     assert result.exit_code == 1

@@ -7,6 +7,7 @@ and compare. Nothing in it tells of the run that made it: the same input gives t
 from __future__ import annotations
 
 import hashlib
+import math
 import os
 from dataclasses import dataclass
 from json import dumps
@@ -15,6 +16,7 @@ from typing import TYPE_CHECKING, Any
 
 from prover import evidence, rebuild
 from prover import expr as e
+from prover.effort import Effort
 from prover.errors import InternalError
 from prover.evidence import Evidence
 from prover.findings import Finding, Report, overall
@@ -25,7 +27,6 @@ from prover.spec import Spec
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from prover.effort import Effort
     from prover.rhythm import Orbit, Start
 
 SCHEMA = "subharmonic/certificate-1"
@@ -55,14 +56,14 @@ class Certificate:
 
 
 def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Certificate:
-    """The certificate of a report on these files. Raises OutOfEffort, and InternalError where the evidence says
-    something else than the report."""
+    """The certificate of a report on these files; the effort is for evidence that is still to be found. Raises
+    InternalError where the evidence says something else than the report."""
     from properties import judge_all
     from prover.collect import collect
 
     found = collect(report, effort)
     try:
-        made = rebuild.rebuild(report.ports, report.spec, found, effort)
+        made = rebuild.rebuild(report.ports, report.spec, found, Effort(math.inf))
     except rebuild.Rejected as fault:
         raise InternalError(f"the evidence for a certificate fails: {fault}") from fault
     findings = judge_all(made.rhythm, report.spec)

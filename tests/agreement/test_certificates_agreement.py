@@ -49,7 +49,8 @@ def test_a_case_has_a_certificate_that_all_accept_and_no_alteration_passes(
     case: Case, group: Group, tmp_path: Path
 ) -> None:
     path = tmp_path / "certificate.json"
-    arguments = [str(case.path.relative_to(ROOT)), *group.options, "--certificate", str(path), "--json", "-"]
+    arguments = [str(case.path.relative_to(ROOT)), *group.options, "--effort", "300", "--json", "-"]
+    arguments += ["--certificate", str(path)]
     result = CliRunner().invoke(cli.main, ["check", *arguments], catch_exceptions=False)
     report = json.loads(result.stdout)
     document = json.loads(path.read_text(encoding="utf-8"))
