@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from prover.rhythm import Orbit, Rhythm
     from prover.settling import Unsettled
     from prover.spec import Spec
+    from prover.trace import Trace
 
 Verdict = Literal["proved", "refuted", "open"]
 Fact = str | int | bool | None | list[int] | list[str] | dict[str, int]
@@ -53,6 +54,7 @@ class Finding:
     method  how it was decided
     bound   what the verdict is bounded by, "" where it holds without bound
     facts   numbers for machines; names say their unit
+    counterexample, unsettled, trace  what shows a refutation: an orbit, a step without end, a run whose inputs move
     """
 
     name: str
@@ -65,6 +67,7 @@ class Finding:
     obligations: tuple[Obligation, ...] = ()
     counterexample: Counterexample | None = None
     unsettled: Unsettled | None = None
+    trace: Trace | None = None
     waived: str | None = None
 
 
