@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 from collections.abc import Sequence
+from dataclasses import replace
 
 from prover import expr as e
 from prover.design import Design, Edge, Force, Register, Signal
@@ -78,6 +79,22 @@ def random_design(rng: random.Random, bits: int) -> Design:
     output = random_expression(rng, [*registers, clock], 1, 2)
     signals = {"out": Signal("out", output, 0, 0, False, HERE)}
     return Design("random", {"clk": 1}, ("out",), tuple(made), signals, {}, ("random.v",), "0")
+
+
+def resettable(rng: random.Random, design: Design) -> Design:
+    """The design with an input `rst`, which each register obeys at once, with its clock, or not at all."""
+    reset = e.var("rst", 1)
+    made = []
+    for register in design.registers:
+        value = e.const(rng.getrandbits(register.width), register.width)
+        kind = rng.randrange(8)
+        if kind < 4:
+            edges = tuple(replace(edge, data=e.ite(reset, value, edge.data)) for edge in register.edges)
+            register = replace(register, edges=edges)
+        elif kind < 7:
+            register = replace(register, forces=(Force(reset, value, HERE), *register.forces))
+        made.append(register)
+    return replace(design, inputs={**design.inputs, "rst": 1}, registers=tuple(made))
 
 
 def _data(rng: random.Random, held: Expr, registers: Sequence[Expr], width: int) -> Expr:

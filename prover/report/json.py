@@ -12,6 +12,7 @@ from prover.findings import Counterexample, Finding, Obligation, Report
 from prover.rhythm import Loop, Orbit, Rhythm, Start
 from prover.settling import Unsettled
 from prover.system import State
+from prover.trace import Trace
 
 SCHEMA = "subharmonic/report-1"
 
@@ -22,6 +23,9 @@ MOST_LOOPS = 10_000
 """Loops that are written out; `loops_found` is the number of all."""
 
 MOST_MICRO_STEPS = 64
+
+MOST_RESTS = 4096
+"""Rests of a trace that are written out; `rests_cut` gives the number of all where there are more, else null."""
 
 Object = dict[str, Any]
 
@@ -149,6 +153,8 @@ def _property(finding: Finding, rhythm: Rhythm) -> Object:
         "counterexample": _counterexample(finding.counterexample, rhythm),
         "waived": finding.waived,
     }
+    if finding.trace is not None:
+        out["trace"] = _trace(finding.trace)
     if finding.unsettled is not None:
         out["unsettled"] = _unsettled(finding.unsettled, rhythm)
     return out
@@ -171,6 +177,29 @@ def _counterexample(broken: Counterexample | None, rhythm: Rhythm) -> Object | N
         "begins": broken.begins,
         "ends": broken.ends,
         "text": broken.text,
+    }
+
+
+def _trace(trace: Trace) -> Object:
+    """A run whose inputs move: the machine at rest after each edge, and after each move between two edges."""
+    rests = [
+        {
+            "half_cycle": rest.half_cycle,
+            "moved": rest.moved,
+            "inputs": dict(rest.inputs),
+            "registers": dict(rest.registers),
+            "outputs": dict(rest.outputs),
+        }
+        for rest in trace.rests[:MOST_RESTS]
+    ]
+    return {
+        "cause": trace.cause,
+        "begins": trace.begins,
+        "ends": trace.ends,
+        "text": trace.text,
+        "half_cycles": trace.half_cycles,
+        "rests": rests,
+        "rests_cut": len(trace.rests) if len(trace.rests) > MOST_RESTS else None,
     }
 
 

@@ -14,6 +14,7 @@ from fractions import Fraction
 from prover.facts import LIMITS, loop_orbits, number
 from prover.findings import Counterexample, Fact, Finding, Report
 from prover.output import harmless
+from prover.report.trace import drawing
 from prover.report.wave import (
     ASCII,
     UNICODE,
@@ -29,6 +30,7 @@ from prover.report.wave import (
 from prover.rhythm import Loop, Orbit, Rhythm, Wave
 from prover.settling import Unsettled
 from prover.system import State
+from prover.trace import Trace
 
 WIDTH = 100
 """Characters a line: fixed, so that the report does not hang on the window it is shown in."""
@@ -359,21 +361,35 @@ def _facts(report: Report) -> Iterator[str]:
 
 
 def _counterexamples(report: Report, style: Style) -> Iterator[str]:
-    shown: dict[tuple[State, int, int], str] = {}
-    first = True
+    shown: dict[object, str] = {}
     for finding in report.findings:
-        broken = finding.counterexample
-        if broken is not None:
-            if not first:
-                yield ""
-            first = False
-            key = (broken.orbit.start, broken.begins, broken.ends)
-            yield from _wrapped(f"counterexample to {finding.name}: {broken.text}", "")
-            if key in shown:
-                yield f"  the trace drawn for {shown[key]}"
-                continue
-            shown[key] = finding.name
+        broken = finding.trace or finding.counterexample
+        if broken is None:
+            continue
+        if shown:
+            yield ""
+        yield from _wrapped(f"counterexample to {finding.name}: {broken.text}", "")
+        start = broken.orbit.start if isinstance(broken, Counterexample) else id(broken.rests)
+        key = (start, broken.begins, broken.ends)
+        if key in shown:
+            yield f"  the trace drawn for {shown[key]}"
+            continue
+        shown[key] = finding.name
+        if isinstance(broken, Trace):
+            yield from _trace(report, broken, style)
+        else:
             yield from _counterexample(report, broken, style)
+
+
+def _trace(report: Report, trace: Trace, style: Style) -> Iterator[str]:
+    """A run whose inputs move: its start, and the wave with those inputs."""
+    ports = report.ports
+    yield from _wrapped(f"start: {trace.cause}", "  ")
+    yield from _wrapped(_told({**trace.rests[0].inputs, **trace.rests[0].registers}), "    ")
+    made, left = drawing(ports.design, ports.clock, trace, MOST_COLUMNS, MARGIN, LEAST_FOLD, MOST_REGISTERS)
+    yield ""
+    yield from _indented(draw(made, style, WIDTH - 2))
+    yield from _not_drawn(left)
 
 
 def _counterexample(report: Report, broken: Counterexample, style: Style) -> Iterator[str]:
@@ -392,6 +408,10 @@ def _counterexample(report: Report, broken: Counterexample, style: Style) -> Ite
     rows += [_register_row(report, timeline, index) for index in registers]
     yield ""
     yield from _indented(draw(Drawing("half-cycle", 0, 0, tuple(rows), pieces), style, WIDTH - 2))
+    yield from _not_drawn(left)
+
+
+def _not_drawn(left: int) -> Iterator[str]:
     if left:
         yield f"  {left} more register{'s' * (left != 1)} not drawn"
 

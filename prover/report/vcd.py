@@ -4,6 +4,7 @@ The dump covers the lead-in and once round the loop (or to the end of what is br
 every register, the input clock, the output and what is held. Long stretches are elided: their first and last
 half-cycles stand at their true times, and what moves in between is x meanwhile. A comment lists what is
 elided. There is no date: the same input gives the same bytes. The format is that of IEEE 1364-2005 clause 18.
+A trace whose inputs move has two time units a half-cycle: what moves in its middle is seen there.
 """
 
 from __future__ import annotations
@@ -17,6 +18,7 @@ from prover import __version__
 from prover.findings import Counterexample, Finding, Report
 from prover.report.wave import Piece, Timeline
 from prover.settling import Unsettled
+from prover.trace import Trace
 
 END_SHOWN = 16
 """Half-cycles shown at either end of a stretch that is elided."""
@@ -43,14 +45,36 @@ def dumps(report: Report) -> list[Dump]:
 
 def render(report: Report, finding: Finding) -> str | None:
     """The finding's trace as a dump; None if it has none."""
+    if finding.trace is not None:
+        return _moves(report, finding.name, finding.trace)
     if finding.counterexample is not None:
-        return _trace(report, finding.name, finding.counterexample)
+        return _orbit(report, finding.name, finding.counterexample)
     if finding.unsettled is not None:
         return _micro_steps(report, finding.name, finding.unsettled)
     return None
 
 
-def _trace(report: Report, name: str, broken: Counterexample) -> str:
+def _moves(report: Report, name: str, trace: Trace) -> str:
+    """A run whose inputs move, two time units a half-cycle."""
+    design, clock = report.ports.design, report.ports.clock
+    comment = [
+        f"{name}: {trace.text}",
+        f"start: {trace.cause}; two time units are one half-cycle of {clock}, the second after the inputs moved",
+        f"broken from time {2 * trace.begins} to {2 * trace.ends}",
+    ]
+    inputs = [Variable(n, design.inputs[n], "wire") for n in trace.rests[0].inputs]
+    widths = {r.name: r.width for r in design.registers} | {clock: 1}
+    states = [Variable(n, widths[n], "wire" if n == clock else "reg") for n in trace.rests[0].registers]
+    seen = [Variable(n, 1, "wire") for n in trace.rests[0].outputs if n not in widths]
+    file = _File(design.top, [*inputs, *states, *seen], comment)
+    for rest in trace.rests:
+        named = {**rest.outputs, **rest.inputs, **rest.registers}
+        time = 2 * rest.half_cycle + rest.moved
+        file.put(time, [named[v.name] for v in (*inputs, *states, *seen)])
+    return file.close(2 * trace.half_cycles)
+
+
+def _orbit(report: Report, name: str, broken: Counterexample) -> str:
     timeline = Timeline(broken.orbit)
     # One input cycle more, so that the edge that ends what is broken is seen.
     ends = timeline.end(max(timeline.once, broken.ends) + 2)
@@ -62,13 +86,14 @@ def _trace(report: Report, name: str, broken: Counterexample) -> str:
         f"broken from time {broken.begins} to {broken.ends}; loop: {loop}",
         *_elided([piece for piece in pieces if piece.folded]),
     ]
-    file = _File(report, comment)
+    file = _file(report, comment)
+    count = len(report.rhythm.system.variables) + _output_apart(report)
     for piece in pieces:
         if piece.folded:
-            file.put(piece.begins, timeline.steady(piece.begins, piece.ends))
+            file.put(piece.begins, timeline.steady(piece.begins, piece.ends)[:count])
             continue
         for time in range(piece.begins, piece.ends):
-            file.put(time, (*timeline.state(time), timeline.level(time)))
+            file.put(time, (*timeline.state(time), timeline.level(time))[:count])
     return file.close(ends)
 
 
@@ -146,21 +171,53 @@ def _micro_steps(report: Report, name: str, unsettled: Unsettled) -> str:
         f"{name}: {count} micro-steps that repeat for ever {when}",
         "one time unit is one micro-step: no time passes between them",
     ]
-    file = _File(report, comment)
+    file = _file(report, comment)
     system = report.rhythm.system
+    count = len(system.variables) + _output_apart(report)
     shown = [*unsettled.cycle, *unsettled.cycle][:MOST_SHOWN]
     for time, state in enumerate(shown):
-        file.put(time, (*state, system.out(state)))
+        file.put(time, (*state, system.out(state))[:count])
     return file.close(len(shown))
 
 
 # -- the file ----------------------------------------------------------------------------------------------
 
 
-class _File:
-    """A dump being written: one variable for each register, the clock, the output and every held input."""
+def _output_apart(report: Report) -> bool:
+    """Whether the output is no register under its own name, which would be declared twice."""
+    return report.ports.output not in report.rhythm.system.names
 
-    def __init__(self, report: Report, comment: Sequence[str]) -> None:
+
+def _file(report: Report, comment: Sequence[str]) -> _File:
+    """A dump of the registers, the clock, the output where it stands apart, and every input that is held."""
+    system, ports = report.rhythm.system, report.ports
+    kinds = ["reg"] * (len(system.variables) - 1) + ["wire"]
+    moving = [Variable(n, w, kind) for (n, w), kind in zip(system.variables, kinds, strict=True)]
+    if _output_apart(report):
+        moving.append(Variable(ports.output, 1, "wire"))
+    held = [(Variable(n, ports.design.inputs[n], "wire"), value) for n, value in ports.running.values]
+    return _File(ports.design.top, moving, comment, held)
+
+
+@dataclass(frozen=True, slots=True)
+class Variable:
+    """A variable of a dump: its name with its scopes, its width, and the kind that viewers show."""
+
+    name: str
+    width: int
+    kind: str
+
+
+class _File:
+    """A dump being written: variables that `put` gives values, and others that are held at one."""
+
+    def __init__(
+        self,
+        top: str,
+        moving: Sequence[Variable],
+        comment: Sequence[str],
+        held: Sequence[tuple[Variable, int]] = (),
+    ) -> None:
         from vcd import VCDWriter
 
         self._text = io.StringIO()
@@ -172,35 +229,26 @@ class _File:
             version=f"Subharmonic {__version__}",
         )
         self._taken: set[tuple[str, ...]] = set()
-        top = _word(report.ports.design.top)
-        system = report.rhythm.system
-        kinds = ["reg"] * (len(system.variables) - 1) + ["wire"]
-        self._variables = [
-            self._declare(top, name, width, kind)
-            for (name, width), kind in zip(system.variables, kinds, strict=True)
-        ]
-        # A register that is the output under its own name is not declared twice.
-        output = report.ports.output
-        self._variables.append(None if output in system.names else self._declare(top, output, 1, "wire"))
-        for name, value in report.ports.running.values:
-            self._declare(top, name, report.ports.design.inputs[name], "wire", value)
+        self._top = _word(top)
+        self._variables = [self._declare(variable) for variable in moving]
+        for variable, value in held:
+            self._declare(variable, value)
 
-    def _declare(self, top: str, name: str, width: int, kind: str, value: int | None = None) -> Any:
-        *scopes, last = [_word(part) for part in name.split(".")]
-        path = (top, *scopes, last)
+    def _declare(self, variable: Variable, value: int | None = None) -> Any:
+        *scopes, last = [_word(part) for part in variable.name.split(".")]
+        path = (self._top, *scopes, last)
         count = 1
         while path in self._taken:
             count += 1
-            path = (top, *scopes, f"{last}_{count}")
+            path = (self._top, *scopes, f"{last}_{count}")
         self._taken.add(path)
         init = "x" if value is None else value
-        return self._writer.register_var(path[:-1], path[-1], kind, size=width, init=init)
+        return self._writer.register_var(path[:-1], path[-1], variable.kind, size=variable.width, init=init)
 
     def put(self, time: int, values: Sequence[int | None]) -> None:
-        """The values of the state and the output from a time on; None is x."""
+        """The values of the variables from a time on; None is x."""
         for variable, value in zip(self._variables, values, strict=True):
-            if variable is not None:
-                self._writer.change(variable, time, "x" if value is None else value)
+            self._writer.change(variable, time, "x" if value is None else value)
 
     def close(self, time: int) -> str:
         self._writer.close(time)

@@ -3,7 +3,7 @@
     Timeline   an orbit's state and output at any half-cycle, whatever its length
     Piece      half-cycles that are shown, or folded away with their number stated
     plan       the pieces of a range of half-cycles that show the points that matter
-    draw       rows of levels and values under a ruler, in columns of one half-cycle
+    draw       rows of levels and values under a ruler, in columns of one half-cycle or a part of it
 
 An orbit may be billions of half-cycles long: nothing here walks it half-cycle by half-cycle, except over what
 is shown.
@@ -11,7 +11,7 @@ is shown.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from itertools import islice
 
@@ -204,13 +204,14 @@ class Row:
 @dataclass(frozen=True, slots=True)
 class Drawing:
     """Rows over pieces of time. The ruler labels a half-cycle with itself plus `origin`: each piece's first,
-    and every so many from label `phase` on."""
+    and every so many from label `phase` on. Rows and pieces count in columns, of which `per` make a half-cycle."""
 
     ruler: str
     origin: int
     phase: int
     rows: tuple[Row, ...]
     pieces: tuple[Piece, ...]
+    per: int = 1
 
 
 def draw(drawing: Drawing, style: Style, width: int) -> list[str]:
@@ -219,14 +220,14 @@ def draw(drawing: Drawing, style: Style, width: int) -> list[str]:
     margin = max(len(name) for name in names) + 2
     column = _column_width(drawing)
     out: list[str] = []
-    for block in _blocks(drawing.pieces, column, width - margin, style):
+    for block in _blocks(drawing, column, width - margin, style):
         if out:
             out.append("")
         out.append(drawing.ruler.ljust(margin) + _ruler(drawing, block, column, style))
         for row in drawing.rows:
             paint = _levels if row.width == 1 else _values
-            out.append(row.name.ljust(margin) + paint(row, block, column, style))
-            marks = _marks(row.marked, block, column, style) if row.marked is not None else ""
+            out.append(row.name.ljust(margin) + paint(row, block, drawing, column, style))
+            marks = _marks(row.marked, block, drawing, column, style) if row.marked is not None else ""
             if marks.strip():
                 out.append(" " * margin + marks)
     return [line.rstrip() for line in out]
@@ -239,7 +240,7 @@ def fold_text(length: int, style: Style) -> str:
 
 
 def _column_width(drawing: Drawing) -> int:
-    """Characters a half-cycle, so that every value fits before the next one begins."""
+    """Characters a column, so that every value fits before the next one begins."""
     need = 2
     for row in drawing.rows:
         if row.width == 1:
@@ -263,13 +264,14 @@ def _value_runs(row: Row, piece: Piece) -> Iterator[tuple[int, int, int]]:
     yield first, piece.ends, value
 
 
-def _blocks(pieces: Sequence[Piece], column: int, width: int, style: Style) -> Iterator[list[Piece]]:
+def _blocks(drawing: Drawing, column: int, width: int, style: Style) -> Iterator[list[Piece]]:
     """The pieces cut into blocks that fit the width."""
     block: list[Piece] = []
     left = width
-    for piece in pieces:
+    cycle = 2 * drawing.per
+    for piece in drawing.pieces:
         if piece.folded:
-            need = len(fold_text(piece.length, style))
+            need = len(_fold(piece, drawing, style))
             if need > left and block:
                 yield block
                 block, left = [], width
@@ -279,8 +281,8 @@ def _blocks(pieces: Sequence[Piece], column: int, width: int, style: Style) -> I
         at = piece.begins
         while at < piece.ends:
             # Whole input cycles a line, so that lines begin at the same clock level.
-            fits = max(2, left // column // 2 * 2)
-            if left < 2 * column and block:
+            fits = max(cycle, left // column // cycle * cycle)
+            if left < cycle * column and block:
                 yield block
                 block, left = [], width
                 continue
@@ -293,28 +295,33 @@ def _blocks(pieces: Sequence[Piece], column: int, width: int, style: Style) -> I
 
 
 def _ruler(drawing: Drawing, block: list[Piece], column: int, style: Style) -> str:
-    longest = max(len(str(piece.ends + drawing.origin)) for piece in block)
-    every = next(step for step in (4, 8, 16, 32) if step * column >= longest + 1 or step == 32)
+    per = drawing.per
+    longest = max(len(str(piece.ends // per + drawing.origin)) for piece in block)
+    every = next(step for step in (4, 8, 16, 32) if step * column * per >= longest + 1 or step == 32)
     line = ""
     at = 0
     for piece in block:
         if piece.folded:
-            at += len(fold_text(piece.length, style))
+            at += len(_fold(piece, drawing, style))
             continue
-        for half_cycle in range(piece.begins, piece.ends):
-            label = half_cycle + drawing.origin
-            due = half_cycle == piece.begins or (label - drawing.phase) % every == 0
-            if due and len(line) < at + (at == 0):
+        for place in range(piece.begins, piece.ends):
+            label = place // per + drawing.origin
+            due = place == piece.begins or (label - drawing.phase) % every == 0
+            if due and place % per == 0 and len(line) < at + (at == 0):
                 line = line.ljust(at) + str(label)
             at += column
     return line
 
 
-def _levels(row: Row, block: list[Piece], column: int, style: Style) -> str:
+def _fold(piece: Piece, drawing: Drawing, style: Style) -> str:
+    return fold_text(piece.length // drawing.per, style)
+
+
+def _levels(row: Row, block: list[Piece], drawing: Drawing, column: int, style: Style) -> str:
     line = ""
     for piece in block:
         if piece.folded:
-            line += _folded_level(row, piece, style)
+            line += _folded_level(row, piece, _fold(piece, drawing, style), style)
             continue
         for at in range(piece.begins, piece.ends):
             level = row.value(at)
@@ -324,9 +331,8 @@ def _levels(row: Row, block: list[Piece], column: int, style: Style) -> str:
     return line
 
 
-def _folded_level(row: Row, piece: Piece, style: Style) -> str:
+def _folded_level(row: Row, piece: Piece, text: str, style: Style) -> str:
     """The fold's length in the row that counts; in others the level, where it keeps one all through."""
-    text = fold_text(piece.length, style)
     kept = row.steady(piece.begins, piece.ends)
     if row.counts:
         return text
@@ -335,11 +341,11 @@ def _folded_level(row: Row, piece: Piece, style: Style) -> str:
     return (style.high if kept else style.low) * len(text)
 
 
-def _values(row: Row, block: list[Piece], column: int, style: Style) -> str:
+def _values(row: Row, block: list[Piece], drawing: Drawing, column: int, style: Style) -> str:
     line = ""
     for piece in block:
         if piece.folded:
-            text = fold_text(piece.length, style)
+            text = _fold(piece, drawing, style)
             kept = row.steady(piece.begins, piece.ends)
             line += " " * len(text) if kept is not None else style.fold.center(len(text))
             continue
@@ -353,13 +359,13 @@ def _values(row: Row, block: list[Piece], column: int, style: Style) -> str:
     return line
 
 
-def _marks(marked: tuple[int, int], block: list[Piece], column: int, style: Style) -> str:
+def _marks(marked: tuple[int, int], block: list[Piece], drawing: Drawing, column: int, style: Style) -> str:
     begins, ends = marked[0], max(marked[1], marked[0] + 1)
     line = ""
     for piece in block:
         if piece.folded:
             inside = begins < piece.ends and piece.begins < ends
-            line += (style.mark if inside else " ") * len(fold_text(piece.length, style))
+            line += (style.mark if inside else " ") * len(_fold(piece, drawing, style))
             continue
         for at in range(piece.begins, piece.ends):
             line += (style.mark if begins <= at < ends else " ") * column
