@@ -16,6 +16,7 @@ from texts import BY_3, checked
 from prover.expr import var
 from prover.findings import Finding, Report
 from prover.report import json, terminal, vcd
+from prover.report.figures import Extent
 from prover.report.trace import Columns, drawing
 from prover.report.wave import ASCII, draw
 from prover.trace import Rest, Trace, run
@@ -50,14 +51,14 @@ def test_a_release_in_the_middle_of_a_half_cycle_is_drawn_there(tmp_path: Path) 
 def test_a_trace_without_moves_takes_one_column_a_half_cycle() -> None:
     trace = released_at(99, 12)
     assert Columns(trace).per == 1
-    made, left = drawing(toggle(1, 1), "clk", trace, 88, 6, 16, 12)
+    made, left = drawing(toggle(1, 1), "clk", trace, Extent())
     assert [row.name for row in made.rows] == ["clk", "tick", "count"]
     assert left == 0
 
 
 def test_a_long_trace_is_folded_at_half_cycles() -> None:
     trace = replace(released_at(100, 400), begins=110, ends=112)
-    made, _ = drawing(toggle(1, 1), "clk", trace, 88, 6, 16, 12)
+    made, _ = drawing(toggle(1, 1), "clk", trace, Extent())
     assert sum(piece.length for piece in made.pieces) == 800
     assert any(piece.folded for piece in made.pieces)
     assert all(piece.begins % 2 == piece.ends % 2 == 0 for piece in made.pieces)

@@ -8,49 +8,25 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Iterator, Sequence
-from dataclasses import dataclass, replace
-from fractions import Fraction
+from dataclasses import dataclass
 
-from prover.facts import LIMITS, loop_orbits, number
-from prover.findings import Counterexample, Fact, Finding, Report
+from prover.facts import LIMITS, number
+from prover.findings import Counterexample, Finding, Report
 from prover.output import harmless
+from prover.report import figures, words
 from prover.report.trace import drawing
-from prover.report.wave import (
-    ASCII,
-    UNICODE,
-    Drawing,
-    Piece,
-    Row,
-    Style,
-    Timeline,
-    draw,
-    plan,
-    points_of_interest,
-)
-from prover.rhythm import Loop, Orbit, Rhythm, Wave
+from prover.report.wave import ASCII, UNICODE, Style, Timeline, draw
+from prover.rhythm import Loop, Orbit, Rhythm
 from prover.settling import Unsettled
-from prover.system import State
 from prover.trace import Trace
 
 WIDTH = 100
 """Characters a line: fixed, so that the report does not hang on the window it is shown in."""
 
-MOST_COLUMNS = 88
-"""Half-cycles drawn of one wave, folds aside."""
-
-MARGIN = 6
-"""Half-cycles drawn before and after each point that matters."""
-
-LEAST_FOLD = 16
-"""Half-cycles that are worth a fold; fewer are drawn."""
-
-SHORTEST = 16
-"""Half-cycles drawn of a counterexample at least."""
+EXTENT = figures.Extent()
 
 MOST_WAVES = 3
 MOST_LOOPS = 20
-MOST_REGISTERS = 12
-MOST_RUNS = 8
 
 COLOURS = {"PROVED": "32", "MEASURED": "32", "REFUTED": "31", "OPEN": "33", "WAIVED": "33"}
 
@@ -118,22 +94,8 @@ def _header(report: Report) -> Iterator[str]:
 
 
 def _claim(report: Report) -> Iterator[str]:
-    spec = report.spec
-    if spec.ratio is None:
-        return
-    within = f", recovery within {spec.within} half-cycles" if spec.within is not None else ""
-    period, high = spec.period, spec.high_half_cycles
-    text = f"claim  divide by {spec.ratio_text}: period {period} half-cycles, high {high}, "
-    yield from _wrapped(f"{text}{_from(report.rhythm)}{within}", "")
-
-
-def _from(rhythm: Rhythm) -> str:
-    if rhythm.scope == "any":
-        return "from every power-up state"
-    if rhythm.scope == "initial":
-        return "from the declared initial values"
-    held = rhythm.reset_half_cycles
-    return "from reset" + (f" held for {held} half-cycle{'s' * (held != 1)} or longer" if held else "")
+    if report.spec.ratio is not None:
+        yield from _wrapped(f"claim  {words.claim(report)}", "")
 
 
 # -- what was found ----------------------------------------------------------------------------------------
@@ -169,18 +131,10 @@ def _verdict(finding: Finding, widest: int) -> Iterator[str]:
     ):
         fact = finding.facts.get(key)
         if fact:
-            yield from _wrapped(f"{told}: {_told(fact)}", indent)
+            yield from _wrapped(f"{told}: {words.fact(fact)}", indent)
     illegal = finding.facts.get("illegal_states")
     if illegal is not None:
         yield f"{indent}illegal power-up states: {illegal}"
-
-
-def _told(fact: Fact) -> str:
-    if isinstance(fact, dict):
-        return "  ".join(f"{name}={value}" for name, value in fact.items())
-    if isinstance(fact, list):
-        return ", ".join(str(item) for item in fact)
-    return str(fact)
 
 
 def _wrapped(text: str, indent: str) -> Iterator[str]:
@@ -196,98 +150,31 @@ def _wrapped(text: str, indent: str) -> Iterator[str]:
 
 def _measured(report: Report, style: Style) -> Iterator[str]:
     rhythm = report.rhythm
-    told: dict[str, list[str]] = {}
-    drawn: dict[str, Orbit] = {}
-    for start, orbit in zip(rhythm.starts, rhythm.orbits, strict=True):
-        text = _wave_text(orbit)
-        told.setdefault(text, []).append(start.cause)
-        drawn.setdefault(text, orbit)
-    if not rhythm.starts:
-        for orbit in loop_orbits(rhythm, MOST_WAVES):
-            count = sum(loop.wave == orbit.wave() for loop in rhythm.loops)
-            text = _wave_text(orbit)
-            told[text] = [f"{count} of {len(rhythm.loops)} loop{'s' * (len(rhythm.loops) != 1)}"]
-            drawn[text] = orbit
-    for count, (text, causes) in enumerate(told.items()):
+    waves = figures.waves(rhythm, MOST_WAVES)
+    for count, wave in enumerate(waves):
         if count:
             yield ""
-        yield from _wrapped(f"measured  {text}", "")
-        yield from _wrapped("from: " + ", ".join(dict.fromkeys(causes)), "          ")
-        yield from _steady_wave(report, drawn[text], style)
+        yield from _wrapped(f"measured  {wave.text}", "")
+        yield from _wrapped("from: " + ", ".join(wave.causes), "          ")
+        yield from _steady_wave(report, wave.orbit, style)
     unsettled = rhythm.settling.unsettled
     if unsettled is not None:
         yield "measured  nothing: the micro-steps never settle"
         yield from _micro_steps(rhythm, unsettled)
-    elif not told and rhythm.open and not rhythm.complete:
+    elif not waves and rhythm.open and not rhythm.complete:
         yield f"measured  nothing: {rhythm.open}"
 
 
-def _wave_text(orbit: Orbit) -> str:
-    wave = orbit.wave()
-    if wave is None:
-        return f"not known: {orbit.why}" if orbit.why else "a round of too many runs to write out"
-    if wave.stuck:
-        return f"the output stays {wave.runs[0][0]}"
-    period, high = wave.period or 0, wave.high or 0
-    text = f"divides by {_ratio(wave)}: period {period} half-cycles, high {high}"
-    if len(wave.runs) > 2:
-        pulses = len(wave.runs) // 2
-        return f"period {period} half-cycles with {pulses} pulses, high {high}: {_pattern(wave)}"
-    return text
-
-
-def _ratio(wave: Wave) -> str:
-    return number(Fraction(wave.period or 0, 2))
-
-
-def _pattern(wave: Wave) -> str:
-    runs = [f"{'high' if level else 'low'} {length}" for level, length in wave.runs[:MOST_RUNS]]
-    return ", ".join(runs) + (", …" if len(wave.runs) > MOST_RUNS else "")
-
-
 def _steady_wave(report: Report, orbit: Orbit, style: Style) -> Iterator[str]:
-    """The wave from a rise on, under the numbers of the source edges that it falls on."""
-    wave = orbit.wave()
-    if wave is None or wave.period is None:
-        return
-    timeline = Timeline(orbit)
-    rise = next(
-        t for t in timeline.edges(max(1, timeline.lead), timeline.once + wave.period + 1) if timeline.level(t)
-    )
-    rounds = 2 if wave.period <= MOST_COLUMNS // 3 else 1
-    ends = rise + rounds * wave.period + 2
-    points = points_of_interest(timeline, rise, ends, None)
-    pieces = plan(rise, ends, points, MARGIN, MOST_COLUMNS, LEAST_FOLD)
-    clock_high = timeline.state(rise)[-1]
-    rows = (_clock_row(report, timeline), _output_row(report, timeline))
-    drawing = Drawing("edge", (1 if clock_high else 2) - rise, 1, rows, tuple(pieces))
-    yield ""
-    yield from _indented(draw(drawing, style, WIDTH - 2))
+    made = figures.steady(report, orbit, EXTENT)
+    if made is not None:
+        yield ""
+        yield from _indented(draw(made, style, WIDTH - 2))
 
 
 def _indented(lines: Iterable[str]) -> Iterator[str]:
     for line in lines:
         yield "  " + line if line else ""
-
-
-def _clock_row(report: Report, timeline: Timeline) -> Row:
-    return replace(_register_row(report, timeline, len(timeline.orbit.widths) - 1), counts=True)
-
-
-def _output_row(report: Report, timeline: Timeline) -> Row:
-    def steady(begins: int, ends: int) -> int | None:
-        return timeline.steady(begins, ends)[-1:][0] if ends > begins else None
-
-    return Row(report.ports.output, 1, timeline.level, steady)
-
-
-def _register_row(report: Report, timeline: Timeline, index: int) -> Row:
-    name, width = report.rhythm.system.variables[index]
-
-    def steady(begins: int, ends: int) -> int | None:
-        return timeline.steady(begins, ends)[index]
-
-    return Row(name, width, lambda t: timeline.state(t)[index], steady)
 
 
 # -- loops -------------------------------------------------------------------------------------------------
@@ -317,20 +204,10 @@ def _loops(report: Report) -> Iterator[str]:
 
 def _loop_row(report: Report, loop: Loop) -> tuple[str, str, str, str, str]:
     wave = loop.wave
-    word = "stuck" if loop.stuck else "good" if loop.good else ""
-    if not word and _knows_good(report.rhythm):
-        word = "not good"
     period = "-" if wave.period is None else str(wave.period)
     high = f"={wave.runs[0][0]}" if wave.high is None else str(wave.high)
-    return period, high, str(loop.length), word, _state(report, loop.example)
-
-
-def _knows_good(rhythm: Rhythm) -> bool:
-    return any(loop.good for loop in rhythm.loops) or rhythm.recovery is not None
-
-
-def _state(report: Report, state: State) -> str:
-    return _told(dict(report.rhythm.system.describe(state)))
+    kind = words.loop_kind(loop, report.rhythm)
+    return period, high, str(loop.length), kind, words.state(report, loop.example)
 
 
 # -- facts -------------------------------------------------------------------------------------------------
@@ -383,10 +260,9 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
 
 def _trace(report: Report, trace: Trace, style: Style) -> Iterator[str]:
     """A run whose inputs move: its start, and the wave with those inputs."""
-    ports = report.ports
     yield from _wrapped(f"start: {trace.cause}", "  ")
-    yield from _wrapped(_told({**trace.rests[0].inputs, **trace.rests[0].registers}), "    ")
-    made, left = drawing(ports.design, ports.clock, trace, MOST_COLUMNS, MARGIN, LEAST_FOLD, MOST_REGISTERS)
+    yield from _wrapped(words.fact({**trace.rests[0].inputs, **trace.rests[0].registers}), "    ")
+    made, left = drawing(report.ports.design, report.ports.clock, trace, EXTENT)
     yield ""
     yield from _indented(draw(made, style, WIDTH - 2))
     yield from _not_drawn(left)
@@ -396,18 +272,12 @@ def _counterexample(report: Report, broken: Counterexample, style: Style) -> Ite
     orbit = broken.orbit
     timeline = Timeline(orbit)
     yield f"  start: {broken.cause}"
-    yield from _wrapped(_state(report, orbit.start), "    ")
+    yield from _wrapped(words.state(report, orbit.start), "    ")
     if timeline.loop is not None:
         yield f"  a loop of {timeline.loop} half-cycles, entered at half-cycle {timeline.lead}"
-    ends = timeline.end(max(min(timeline.once, broken.ends + 2 * MOST_COLUMNS), broken.ends, SHORTEST) + 2)
-    points = points_of_interest(timeline, 0, ends, (broken.begins, min(broken.ends, ends)))
-    pieces = tuple(plan(0, ends, points, MARGIN, MOST_COLUMNS, LEAST_FOLD))
-    output = replace(_output_row(report, timeline), marked=(broken.begins, broken.ends))
-    rows = [_clock_row(report, timeline), output]
-    registers, left = _registers_that_matter(report, timeline, pieces)
-    rows += [_register_row(report, timeline, index) for index in registers]
+    made, left = figures.broken(report, broken, EXTENT)
     yield ""
-    yield from _indented(draw(Drawing("half-cycle", 0, 0, tuple(rows), pieces), style, WIDTH - 2))
+    yield from _indented(draw(made, style, WIDTH - 2))
     yield from _not_drawn(left)
 
 
@@ -416,27 +286,12 @@ def _not_drawn(left: int) -> Iterator[str]:
         yield f"  {left} more register{'s' * (left != 1)} not drawn"
 
 
-def _registers_that_matter(
-    report: Report, timeline: Timeline, pieces: Sequence[Piece]
-) -> tuple[list[int], int]:
-    """Registers other than the output itself, those that move where it is drawn before those that don't, and
-    the number of those left out."""
-    system = report.rhythm.system
-    count = len(system.variables) - 1
-    shown = [piece for piece in pieces if not piece.folded]
-    states = [timeline.state(t) for piece in shown for t in range(piece.begins, piece.ends)]
-    others = [i for i in range(count) if system.variables[i][0] != report.ports.output]
-    moving = [i for i in others if len({state[i] for state in states}) > 1]
-    chosen = [*moving, *(i for i in others if i not in moving)][:MOST_REGISTERS]
-    return sorted(chosen), len(others) - len(chosen)
-
-
 def _micro_steps(rhythm: Rhythm, unsettled: Unsettled) -> Iterator[str]:
     """The round of micro-steps that never ends, a line each."""
     when = "with no clock edge" if unsettled.power_up else "at the next clock edge"
-    yield from _wrapped(f"from {_told(dict(rhythm.system.describe(unsettled.state)))}, {when}", "  ")
+    yield from _wrapped(f"from {words.fact(dict(rhythm.system.describe(unsettled.state)))}, {when}", "  ")
     for count, state in enumerate(unsettled.cycle[:MOST_LOOPS]):
-        yield from _wrapped(f"micro-step {count}: {_told(dict(rhythm.system.describe(state)))}", "    ")
+        yield from _wrapped(f"micro-step {count}: {words.fact(dict(rhythm.system.describe(state)))}", "    ")
     left = len(unsettled.cycle) - MOST_LOOPS
     yield f"    … {left} more, and again from micro-step 0" if left > 0 else "    and again from micro-step 0"
 

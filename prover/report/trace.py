@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator, Sequence
 
 from prover.design import Design
+from prover.report.figures import MOST_REGISTERS, Extent
 from prover.report.wave import Drawing, Piece, Row, plan
 from prover.trace import Rest, Trace
 
@@ -45,14 +46,11 @@ class Columns:
                 yield column // self.per
 
 
-def drawing(
-    design: Design, clock: str, trace: Trace, most: int, margin: int, least_fold: int, most_registers: int
-) -> tuple[Drawing, int]:
+def drawing(design: Design, clock: str, trace: Trace, extent: Extent) -> tuple[Drawing, int]:
     """The trace under a ruler of half-cycles, and how many registers are left out of it.
 
     Rows: the clock, the inputs that move, the outputs (what is broken underlined), registers that move where it is
-    drawn before those that do not. At most `most` columns are drawn, `margin` half-cycles about each point that
-    matters; `least_fold` half-cycles are worth a fold."""
+    drawn before those that do not."""
     columns = Columns(trace)
     first = trace.rests[0]
     inputs = [n for n in first.inputs if any(rest.inputs[n] != first.inputs[n] for rest in trace.rests)]
@@ -61,7 +59,7 @@ def drawing(
         points += columns.changes(_of_inputs(name))
     for name in first.outputs:
         points += columns.changes(_of_outputs(name))
-    shown = plan(0, trace.half_cycles, points, margin, most // columns.per, least_fold)
+    shown = plan(0, trace.half_cycles, points, extent.margin, extent.most // columns.per, extent.least_fold)
     pieces = [Piece(p.begins * columns.per, p.ends * columns.per, p.folded) for p in shown]
     marked = (trace.begins * columns.per, trace.ends * columns.per)
     widths = {register.name: register.width for register in design.registers}
@@ -69,7 +67,7 @@ def drawing(
     rows += [columns.row(n, design.inputs[n], _of_inputs(n)) for n in inputs]
     rows += [_replaced(columns.row(n, 1, _of_outputs(n)), marked=marked) for n in first.outputs]
     others = [name for name in widths if name not in first.outputs]
-    chosen = _that_matter(columns, others, pieces)[:most_registers]
+    chosen = _that_matter(columns, others, pieces)[:MOST_REGISTERS]
     rows += [columns.row(n, widths[n], _of_registers(n)) for n in others if n in chosen]
     made = Drawing("half-cycle", 0, 0, tuple(rows), tuple(pieces), columns.per)
     return made, len(others) - len(chosen)

@@ -1,0 +1,83 @@
+"""The words that reports for people share: the same thing is told alike on a terminal and on a page."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+from prover.facts import number
+from prover.findings import Fact, Report
+from prover.rhythm import Loop, Orbit, Rhythm, Wave
+from prover.system import State
+
+MOST_RUNS = 8
+"""Runs of a wave that are spelt out."""
+
+
+def plural(count: int, noun: str) -> str:
+    """The noun with its number: 1 loop, 2 loops."""
+    return f"{count} {noun}{'s' * (count != 1)}"
+
+
+def origin(rhythm: Rhythm) -> str:
+    """Where the ratio is claimed from."""
+    if rhythm.scope == "any":
+        return "from every power-up state"
+    if rhythm.scope == "initial":
+        return "from the declared initial values"
+    held = rhythm.reset_half_cycles
+    return "from reset" + (f" held for {plural(held, 'half-cycle')} or longer" if held else "")
+
+
+def claim(report: Report) -> str:
+    """What is claimed of the wave, in one sentence; "" for a measurement."""
+    spec = report.spec
+    if spec.ratio is None:
+        return ""
+    within = f", recovery within {spec.within} half-cycles" if spec.within is not None else ""
+    wave = f"period {spec.period} half-cycles, high {spec.high_half_cycles}"
+    return f"divide by {spec.ratio_text}: {wave}, {origin(report.rhythm)}{within}"
+
+
+def fact(value: Fact) -> str:
+    """A fact as text: names with their values, or a list."""
+    if isinstance(value, dict):
+        return "  ".join(f"{name}={number}" for name, number in value.items())
+    if isinstance(value, list):
+        return ", ".join(str(item) for item in value)
+    return str(value)
+
+
+def state(report: Report, values: State) -> str:
+    """A state of the report's machine: register and clock values by name."""
+    return fact(dict(report.rhythm.system.describe(values)))
+
+
+def of_orbit(orbit: Orbit) -> str:
+    """The wave that an orbit runs into, or why it isn't known."""
+    wave = orbit.wave()
+    if wave is None:
+        return f"not known: {orbit.why}" if orbit.why else "a round of too many runs to write out"
+    return of_wave(wave)
+
+
+def of_wave(wave: Wave) -> str:
+    """A wave's ratio, period and high time in half-cycles, or its pattern where it has several pulses."""
+    if wave.stuck:
+        return f"the output stays {wave.runs[0][0]}"
+    told = f"period {wave.period} half-cycles"
+    if len(wave.runs) > 2:
+        return f"{told} with {len(wave.runs) // 2} pulses, high {wave.high}: {_pattern(wave)}"
+    return f"divides by {number(Fraction(wave.period or 0, 2))}: {told}, high {wave.high}"
+
+
+def _pattern(wave: Wave) -> str:
+    runs = [f"{'high' if level else 'low'} {length}" for level, length in wave.runs[:MOST_RUNS]]
+    return ", ".join(runs) + (", …" if len(wave.runs) > MOST_RUNS else "")
+
+
+def loop_kind(loop: Loop, rhythm: Rhythm) -> str:
+    """What a loop is, in a word: stuck, good, not good; "" where nothing says what good is."""
+    if loop.stuck or loop.good:
+        return "stuck" if loop.stuck else "good"
+    known = any(each.good for each in rhythm.loops) or rhythm.recovery is not None
+    return "not good" if known else ""
