@@ -11,6 +11,8 @@ import os
 import sys
 import threading
 from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime
 from enum import IntEnum
 from pathlib import Path
 from types import TracebackType
@@ -185,6 +187,8 @@ TRACES = (
         metavar="PATH",
         help="Write the refuted property's wave; more of them to PATH with -PROPERTY, or all into a folder.",
     ),
+    click.option("--junit", "junit_path", metavar="PATH", help="Write the verdicts as JUnit XML."),
+    click.option("--sarif", "sarif_path", metavar="PATH", help="Write the verdicts as SARIF 2.1.0."),
 )
 CERTIFYING = (
     click.option(
@@ -215,6 +219,8 @@ def check(
     files: tuple[str, ...],
     json_path: str | None,
     vcd_path: str | None,
+    junit_path: str | None,
+    sarif_path: str | None,
     certificate_path: str | None,
     **options: Any,
 ) -> Status:
@@ -226,7 +232,8 @@ def check(
     Exit status: 0 proved, 1 refuted, 2 unusable input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    return _run(files, options, json_path, vcd_path, certificate_path)
+    targets = Targets(json_path, vcd_path, junit_path, sarif_path, certificate_path)
+    return _run(files, options, targets)
 
 
 @main.command(short_help="Tell what a divider divides by.")
@@ -239,7 +246,7 @@ def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> St
     Exit status: 0 measured, 1 never settles, 2 bad input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    return _run(files, options, json_path, None, None)
+    return _run(files, options, Targets(json_path))
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
@@ -344,35 +351,55 @@ def _seconds(text: str) -> float:
 # -- running -----------------------------------------------------------------------------------------------
 
 
-def _run(
-    files: Sequence[str],
-    options: dict[str, Any],
-    json_path: str | None,
-    vcd_path: str | None,
-    certificate_path: str | None,
-) -> Status:
+@dataclass(frozen=True, slots=True)
+class Targets:
+    """Where results go: a path each, `-` for standard output, None for what isn't asked for."""
+
+    json: str | None = None
+    vcd: str | None = None
+    junit: str | None = None
+    sarif: str | None = None
+    certificate: str | None = None
+
+    def paths(self) -> list[str]:
+        """All of them, a file in place of the folder that waves go to."""
+        named = (self.json, _target(self.vcd), self.junit, self.sarif, self.certificate)
+        return [path for path in named if path]
+
+
+def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Status:
     spec = _spec(options)
-    check_targets([path for path in (json_path, _target(vcd_path), certificate_path) if path], files)
+    check_targets(targets.paths(), files)
     dividers = _groups(files, spec)
     if dividers is not None:
-        return _run_several(dividers, spec, json_path, vcd_path, certificate_path)
+        return _run_several(dividers, spec, targets)
     with Progress(sys.stderr) as progress:
-        from prover.api import check, measure
-
-        ask = measure if spec.ratio is None else check
-        report = ask(files, spec, progress.tell)
-        waves = _vcd(report, vcd_path)
-        certified, remarks = _certificate(report, certificate_path, files, progress.tell)
-        results = [*_json(report, json_path), *waves, *certified]
+        report = _judged(files, spec, targets, progress.tell)
+        waves = _vcd(report, targets.vcd)
+        certified, remarks = _certificate(report, targets.certificate, files, progress.tell)
+        results = [*_json(report, targets.json), *waves, *_exchanged(files, report, targets), *certified]
         check_targets([result.path for result in results], report.ports.design.files)
         piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
         text = "".join(piped) or _told(report, [wave.path for wave in waves])
         write_files([result for result in results if result.path != STANDARD_OUTPUT])
-    if STANDARD_OUTPUT not in (json_path, vcd_path, certificate_path) or piped:
+    if STANDARD_OUTPUT not in targets.paths() or piped:
         _print(text)
     for remark in remarks:
         _complain(remark)
     return status_of(report)
+
+
+def _judged(files: Sequence[str], spec: Spec, targets: Targets, tell: Callable[[str], None]) -> Report:
+    """The report. Where there is none, results that can say why are written before the failure takes its way."""
+    from prover.api import check, measure
+
+    try:
+        return (measure if spec.ratio is None else check)(files, spec, tell)
+    except Exception as fault:
+        results = _exchanged(files, fault, targets)
+        write_files([result for result in results if result.path != STANDARD_OUTPUT])
+        _print("".join(result.text for result in results if result.path == STANDARD_OUTPUT))
+        raise
 
 
 def _groups(files: Sequence[str], spec: Spec) -> list[tuple[str, ...]] | None:
@@ -384,17 +411,11 @@ def _groups(files: Sequence[str], spec: Spec) -> list[tuple[str, ...]] | None:
     return groups(files, spec)
 
 
-def _run_several(
-    dividers: Sequence[tuple[str, ...]],
-    spec: Spec,
-    json_path: str | None,
-    vcd_path: str | None,
-    certificate_path: str | None,
-) -> Status:
+def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, targets: Targets) -> Status:
     """A verdict for each divider, a line for each at the end, and the worst status."""
-    if vcd_path is not None and not _is_folder(vcd_path):
-        raise UserError(f"--vcd {vcd_path}: there are several dividers", hint="name a folder")
-    if certificate_path is not None:
+    if targets.vcd is not None and not _is_folder(targets.vcd):
+        raise UserError(f"--vcd {targets.vcd}: there are several dividers", hint="name a folder")
+    if targets.certificate is not None:
         raise UserError("--certificate: there are several dividers", hint="check one at a time")
     with Progress(sys.stderr) as progress:
         from prover.api import check, measure
@@ -406,22 +427,46 @@ def _run_several(
         results: list[Result] = []
         texts: list[str] = []
         for outcome, label in zip(found, labels(found), strict=True):
-            waves = _vcd(outcome.report, vcd_path, f"{label}-") if outcome.report else []
+            waves = _vcd(outcome.report, targets.vcd, f"{label}-") if outcome.report else []
             results += waves
             if outcome.report is not None:
                 texts.append(_told(outcome.report, [wave.path for wave in waves]))
             elif outcome.error is not None:
                 texts.append(harmless(_user_error(outcome.error)) + "\n")
-        text = "\n".join([*texts, told.summary(found) + "\n"])
-        if json_path == STANDARD_OUTPUT:
-            text = told.render_json(found)
-        elif json_path is not None:
-            results.append(Result(json_path, told.render_json(found)))
+        results += _of_all(found, targets)
+        if targets.json is not None:
+            results.append(Result(targets.json, told.render_json(found)))
+        piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
+        text = piped or "\n".join([*texts, told.summary(found) + "\n"])
         sources = [file for outcome in found for file in outcome.files]
         check_targets([result.path for result in results], sources)
-        write_files(results)
+        write_files([result for result in results if result.path != STANDARD_OUTPUT])
     _print(text)
     return max((_status_of_outcome(outcome) for outcome in found), key=SEVERITY.index)
+
+
+def _exchanged(files: Sequence[str], came: Report | Exception, targets: Targets) -> list[Result]:
+    """What goes into formats that other programs collect, on one divider: its report, or what kept it from one."""
+    if targets.junit is None and targets.sarif is None:
+        return []
+    from prover.several import Outcome, failed
+
+    one = tuple(files)
+    return _of_all([failed(one, came) if isinstance(came, Exception) else Outcome(one, came)], targets)
+
+
+def _of_all(found: Sequence[Outcome], targets: Targets) -> list[Result]:
+    """The same on all dividers of a run."""
+    results: list[Result] = []
+    if targets.junit is not None:
+        from prover.report import junit
+
+        results.append(Result(targets.junit, junit.render(found, datetime.now(UTC))))
+    if targets.sarif is not None:
+        from prover.report import sarif
+
+        results.append(Result(targets.sarif, sarif.render(found)))
+    return results
 
 
 def _status_of_outcome(outcome: Outcome) -> Status:

@@ -127,14 +127,19 @@ def outcomes(
     for files in dividers:
         try:
             yield Outcome(files, ask(files, spec))
-        except UserError as error:
-            yield Outcome(files, error=error)
-        except OutOfEffort as error:
-            yield Outcome(files, open=str(error))
         except Exception as fault:
-            if os.environ.get("SUBHARMONIC_TRACEBACK"):
+            if not isinstance(fault, (UserError, OutOfEffort)) and os.environ.get("SUBHARMONIC_TRACEBACK"):
                 raise
-            yield Outcome(files, fault=f"{type(fault).__name__}: {harmless(str(fault))}")
+            yield failed(files, fault)
+
+
+def failed(files: tuple[str, ...], fault: Exception) -> Outcome:
+    """The outcome of a divider that has no report for that reason."""
+    if isinstance(fault, UserError):
+        return Outcome(files, error=fault)
+    if isinstance(fault, OutOfEffort):
+        return Outcome(files, open=str(fault))
+    return Outcome(files, fault=f"{type(fault).__name__}: {harmless(str(fault))}")
 
 
 def labels(found: Sequence[Outcome]) -> list[str]:
