@@ -15,6 +15,12 @@ ORDER = (ratio, high_time, no_stuck, recovery, settling)
 NAMES = tuple(module.NAME for module in ORDER)
 
 
+def claim(name: str, spec: Spec) -> str:
+    """What a property claims, with formulas as they are written; "" where it says none."""
+    module = next(module for module in ORDER if module.NAME == name)
+    return str(module.claim(spec)) if hasattr(module, "claim") else ""
+
+
 def judge_all(rhythm: Rhythm, spec: Spec) -> tuple[Finding, ...]:
     """Every property's finding, with the user's waivers on those that are not proved."""
     return with_waivers([module.judge(rhythm, spec) for module in ORDER], spec)

@@ -10,10 +10,18 @@ from prover.spec import Spec
 NAME = "high-time"
 
 
+def claim(spec: Spec) -> str:
+    """The claim in words, with a number or a formula."""
+    if spec.high_formula is not None:
+        return f"every high run is exactly {spec.high_formula.text} half-cycles"
+    if spec.high is None and spec.ratio_formula is not None:
+        return "every high run is exactly half a period"
+    return f"every high run is exactly {spec.high_half_cycles} half-cycles of {spec.period}"
+
+
 def judge(rhythm: Rhythm, spec: Spec) -> Finding:
     """Claimed in the same scope as the ratio; a run that is already high at the start is no whole run."""
     high = spec.high_half_cycles
-    claim = f"every high run is exactly {high} half-cycles of {spec.period}"
     highs = {wave.high for wave in (orbit.wave() for orbit in rhythm.orbits) if wave is not None}
     facts: dict[str, Fact] = {"measured_high_half_cycles": sorted(h for h in highs if h is not None)}
-    return judge_runs(rhythm, NAME, claim, high, high_runs, "high run", facts)
+    return judge_runs(rhythm, NAME, claim(spec), high, high_runs, "high run", facts)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from pathlib import Path
 
 from prover import analyse, facts
@@ -40,18 +41,21 @@ def check(files: Files, spec: Spec, tell: Tell | None = None) -> Report:
 
     `tell` is called with a line of progress now and then. Raises UserError for unusable input or options.
     """
-    if spec.ratio is None:
+    if not spec.claims:
         raise UserError("no ratio to check", hint="give --ratio N, or ask `measure`")
     return _report(files, spec, tell)
 
 
 def measure(files: Files, spec: Spec | None = None, tell: Tell | None = None) -> Report:
     """What the divider in the files does: its rhythm, with no claim and no findings."""
-    return _report(files, spec or Spec(), tell)
+    spec = spec or Spec()
+    if spec.each or spec.where:
+        raise UserError("values to claim something for, and no claim", hint="give --ratio to `check`")
+    return _report(files, spec, tell)
 
 
 def _report(files: Files, spec: Spec, tell: Tell | None) -> Report:
-    from properties import NAMES, judge_all
+    from properties import NAMES
 
     began = time.monotonic()
     unknown = [name for name in spec.waivers if name not in NAMES]
@@ -62,16 +66,28 @@ def _report(files: Files, spec: Spec, tell: Tell | None) -> Report:
     effort = Effort(spec.effort, tell)
     effort.say("reading the sources")
     design = read(files, spec)
+    if spec.each or spec.where or spec.ratio_formula is not None or spec.high_formula is not None:
+        from prover import each
+
+        report = each.report(design, spec, effort, _judged)
+    else:
+        report = _judged(design, spec, effort)
+    return replace(report, seconds=time.monotonic() - began)
+
+
+def _judged(design: Design, spec: Spec, effort: Effort) -> Report:
+    """The report on one claim in numbers; how long it took is left to the caller."""
+    from properties import judge_all
+
     ports = recognise(design, spec)
     rhythm = analyse.rhythm_of(ports, spec, effort)
-    findings = judge_all(rhythm, spec) if spec.ratio is not None else ()
     return Report(
         ports=ports,
         spec=spec,
         rhythm=rhythm,
-        findings=findings,
+        findings=judge_all(rhythm, spec) if spec.claims else (),
         facts=facts.collect(rhythm, spec),
         assumptions=facts.assumptions(ports, rhythm),
         notes=tuple(f"{note.where}: {note.message}" for note in design.notes),
-        seconds=time.monotonic() - began,
+        seconds=0.0,
     )

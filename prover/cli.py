@@ -23,7 +23,17 @@ import click
 from prover import __version__
 from prover.errors import UserError, Where
 from prover.output import STANDARD_OUTPUT, Result, check_targets, harmless, write_files
-from prover.spec import Spec, read_duty_range, read_frequency, read_number, read_pair, read_ratio
+from prover.spec import (
+    PLAIN_NUMBER,
+    PLAIN_RATIO,
+    Spec,
+    read_duty_range,
+    read_each,
+    read_frequency,
+    read_number,
+    read_pair,
+    read_ratio,
+)
 
 if TYPE_CHECKING:
     from prover.findings import Report
@@ -169,8 +179,14 @@ READING = (
     ),
 )
 CLAIMING = (
-    click.option("--ratio", required=True, metavar="N", help="Input cycles per output period, such as 2.5."),
+    click.option(
+        "--ratio", required=True, metavar="N", help="Input cycles per output period: 2.5, or '2*(div+1)'."
+    ),
     click.option("--high", metavar="H", help="High time in half-cycles [N, which is 50 %]."),
+    click.option(
+        "--each", multiple=True, metavar="PORT[=VALUES]", help="Claim it for each value: div=1..15."
+    ),
+    click.option("--where", multiple=True, metavar="CONDITION", help="Of these values only those: 'B >= A'."),
     click.option("--within", metavar="K", help="Limit on the recovery, in half-cycles."),
     click.option("--waive", "waivers", multiple=True, metavar="PROPERTY=REASON", help="Excuse a property."),
 )
@@ -282,11 +298,10 @@ def recheck(
 
 def _spec(options: dict[str, Any]) -> Spec:
     """The options of the command line as a claim. Raises UserError for those that mean nothing."""
-    ratio, fin, duty = (options.get(name) for name in ("ratio", "fin", "source_duty"))
-    effort = options.get("effort")
+    fin, duty, effort = (options.get(name) for name in ("fin", "source_duty", "effort"))
+    limits: dict[str, Any] = {"effort": _seconds(effort)} if effort is not None else {}
     return Spec(
-        ratio=read_ratio(ratio) if ratio is not None else None,
-        high=_number(options, "high"),
+        **_claimed(options),
         module=options["module"],
         clock=options["clock"],
         reset=options["reset"],
@@ -300,8 +315,31 @@ def _spec(options: dict[str, Any]) -> Spec:
         waivers=_waivers(options.get("waivers", ())),
         fin=read_frequency(fin) if fin is not None else None,
         source_duty=read_duty_range(duty) if duty is not None else None,
-        **({"effort": _seconds(effort)} if effort is not None else {}),
+        **limits,
     )
+
+
+def _claimed(options: dict[str, Any]) -> dict[str, Any]:
+    """The ratio and the high time, each a number or a formula, and the values that they are claimed for."""
+    from prover import formula
+
+    claimed: dict[str, Any] = {"each": {}}
+    ratio, high = options.get("ratio"), options.get("high")
+    if ratio is not None and PLAIN_RATIO.fullmatch(ratio):
+        claimed["ratio"] = read_ratio(ratio)
+    elif ratio is not None:
+        claimed["ratio_formula"] = formula.read(ratio, "--ratio")
+    if high is not None and PLAIN_NUMBER.fullmatch(high):
+        claimed["high"] = _number(options, "high")
+    elif high is not None:
+        claimed["high_formula"] = formula.read(high, "--high")
+    for text in options.get("each", ()):
+        name, ranges = read_each(text)
+        if name in claimed["each"]:
+            raise UserError(f"--each {name} is given twice", hint="give it once")
+        claimed["each"][name] = ranges
+    claimed["where"] = tuple(formula.read(text, "--where") for text in options.get("where", ()))
+    return claimed
 
 
 def _number(options: dict[str, Any], name: str) -> int | None:
@@ -370,6 +408,8 @@ class Targets:
 def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Status:
     spec = _spec(options)
     check_targets(targets.paths(), files)
+    if targets.certificate is not None and spec.each:
+        raise UserError("--certificate with --each", hint="check one value at a time, with --hold")
     dividers = _groups(files, spec)
     if dividers is not None:
         return _run_several(dividers, spec, targets)
@@ -422,7 +462,7 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, targets: Targe
         from prover.report import several as told
         from prover.several import labels, outcomes
 
-        ask = measure if spec.ratio is None else check
+        ask = check if spec.claims else measure
         found = list(outcomes(dividers, spec, lambda files, spec: ask(files, spec, progress.tell)))
         results: list[Result] = []
         texts: list[str] = []

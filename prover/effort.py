@@ -25,6 +25,10 @@ class Effort:
             self._tell(doing)
         self.check()
 
+    def share(self, seconds: float) -> Effort:
+        """An effort of so many seconds, or of all that is left if that is less, with the same line of progress."""
+        return Effort(min(seconds, self.left), self._tell)
+
     def check(self) -> None:
         """Raise OutOfEffort past the deadline."""
         if self.left <= 0:

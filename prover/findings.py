@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Literal
 from prover.errors import Where
 
 if TYPE_CHECKING:
+    from prover.each import Each
     from prover.ports import Ports
     from prover.rhythm import Orbit, Rhythm
     from prover.settling import Unsettled
@@ -54,6 +55,8 @@ class Finding:
     method  how it was decided
     bound   what the verdict is bounded by, "" where it holds without bound
     facts   numbers for machines; names say their unit
+    witness  where the counterexample is a run of another machine than the report's (another value of an input of
+            --each): the report on that one
     counterexample, unsettled, trace  what shows a refutation: an orbit, a step without end, a run whose inputs move
     """
 
@@ -69,6 +72,7 @@ class Finding:
     unsettled: Unsettled | None = None
     trace: Trace | None = None
     waived: str | None = None
+    witness: Report | None = field(default=None, repr=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,6 +83,7 @@ class Report:
     assumptions  the model that the verdicts hold under, a sentence each
     notes        remarks on the sources that accompany the verdict
     seconds      how long it took
+    each         for a claim on each value of some inputs: what it covers. Rhythm and facts are then about one value
     """
 
     ports: Ports
@@ -89,6 +94,7 @@ class Report:
     assumptions: tuple[str, ...]
     notes: tuple[str, ...]
     seconds: float
+    each: Each | None = None
 
     @property
     def verdict(self) -> Verdict:

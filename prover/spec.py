@@ -9,8 +9,18 @@ from fractions import Fraction
 from typing import Literal
 
 from prover.errors import UserError
+from prover.formula import Formula
 
 StartScope = Literal["reset", "initial", "any"]
+
+Ranges = tuple[tuple[int, int], ...]
+"""Values of an input: ranges with both ends in them, none of them overlapping, the lowest first."""
+
+PLAIN_RATIO = re.compile(r"\s*[-+]?[0-9_.]{1,100}(/[0-9_]{1,100})?\s*")
+PLAIN_NUMBER = re.compile(r"\s*[-+]?[0-9][\w']*\s*")
+"""Numbers as such; any other ratio or high time is a formula."""
+
+EACH_HINT = "such as --each div, --each div=1..15 or --each sel=0,2,8..15"
 
 UNITS = {"": 1, "k": 10**3, "M": 10**6, "G": 10**9}
 
@@ -21,6 +31,9 @@ class Spec:
 
     ratio         N, in input cycles per output period; None to measure instead of claiming
     high          H, half-cycles per period in which the output is 1; None means N
+    ratio_formula, high_formula  the same as formulas, which take the place of the numbers until these are computed
+    each          inputs for each of whose values the claim is made; None: all values of the port
+    where         conditions on these values: the claim is made where none of them is 0
     module        top module; None if the sources leave one choice
     clock, reset, output  ports by name; reset may end in `=0` or `=1`, its active level. None: by use
     parameters, holds, defines  name to value or text
@@ -35,6 +48,10 @@ class Spec:
 
     ratio: Fraction | None = None
     high: int | None = None
+    ratio_formula: Formula | None = None
+    high_formula: Formula | None = None
+    each: Mapping[str, Ranges | None] = field(default_factory=dict)
+    where: tuple[Formula, ...] = ()
     module: str | None = None
     clock: str | None = None
     reset: str | None = None
@@ -52,7 +69,7 @@ class Spec:
 
     def __post_init__(self) -> None:
         if self.ratio is None:
-            if self.high is not None:
+            if not self.claims and (self.high is not None or self.high_formula is not None):
                 raise UserError("a high time without a ratio", hint="give --ratio as well")
             return
         if self.ratio <= 0 or (2 * self.ratio).denominator != 1:
@@ -75,6 +92,11 @@ class Spec:
                 f"high time {self.high_half_cycles}: not within a period of {self.period} half-cycles",
                 hint=f"give --high between 1 and {self.period - 1}",
             )
+
+    @property
+    def claims(self) -> bool:
+        """Whether a ratio is claimed, as a number or as a formula that is still to be computed."""
+        return self.ratio is not None or self.ratio_formula is not None
 
     @property
     def period(self) -> int:
@@ -104,11 +126,34 @@ def read_ratio(text: str) -> Fraction:
     """A ratio as written on the command line: 3, 2.5, 5/2, 50_000_001."""
     try:
         # No exponents: 1e999999999 would fill the memory before it is found to be nonsense.
-        if not re.fullmatch(r"[-+]?[0-9_.]{1,100}(/[0-9_]{1,100})?", text.strip()):
+        if not PLAIN_RATIO.fullmatch(text):
             raise ValueError
         return Fraction(text.replace("_", "").strip())
     except (ValueError, ZeroDivisionError):
         raise UserError(f"ratio '{text}' is not a number", hint="such as 3, 2.5 or 5/2") from None
+
+
+def read_each(text: str) -> tuple[str, Ranges | None]:
+    """An input and the values that it takes: div, div=1..15, sel=0,2,8..15."""
+    name, equals, values = text.partition("=")
+    if not name.strip() or (equals and not values.strip()):
+        raise UserError(f"--each '{text}' names no input and no values", hint=EACH_HINT)
+    if not equals:
+        return name.strip(), None
+    ranges: list[tuple[int, int]] = []
+    for part in values.split(","):
+        low, dots, high = part.partition("..")
+        ends = (read_number(low, f"--each {text}:"), read_number(high if dots else low, f"--each {text}:"))
+        if not 0 <= ends[0] <= ends[1]:
+            raise UserError(f"--each {text}: '{part}' holds no values", hint=EACH_HINT)
+        ranges.append(ends)
+    joined: list[tuple[int, int]] = []
+    for low_end, high_end in sorted(ranges):
+        if joined and low_end <= joined[-1][1] + 1:
+            joined[-1] = (joined[-1][0], max(joined[-1][1], high_end))
+        else:
+            joined.append((low_end, high_end))
+    return name.strip(), tuple(joined)
 
 
 def read_number(text: str, option: str) -> int:

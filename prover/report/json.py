@@ -6,6 +6,7 @@ from __future__ import annotations
 from json import dumps
 from typing import Any
 
+from prover.each import Each, ValueRow
 from prover.errors import Where
 from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Obligation, Report
@@ -43,12 +44,13 @@ def as_object(report: Report) -> Object:
         "design": _design(report),
         "spec": _spec(report),
         "measured": _measured(report.rhythm),
-        "properties": [_property(finding, report.rhythm) for finding in report.findings],
+        "properties": [_property(f, (f.witness or report).rhythm) for f in report.findings],
         "facts": dict(report.facts),
         "assumptions": list(report.assumptions),
         "notes": list(report.notes),
         "limits": LIMITS,
         "seconds": round(report.seconds, 3),
+        **({} if report.each is None else {"each": _each(report.each)}),
     }
 
 
@@ -77,10 +79,34 @@ def _spec(report: Report) -> Object:
     spec = report.spec
     claimed = spec.ratio is not None
     return {
-        "ratio": spec.ratio_text if claimed else None,
-        "period_half_cycles": spec.period if claimed else None,
-        "high_half_cycles": spec.high_half_cycles if claimed else None,
+        "ratio": (report.each.ratio if report.each else spec.ratio_text) if claimed else None,
+        "period_half_cycles": spec.period if claimed and not report.each else None,
+        "high_half_cycles": spec.high_half_cycles if claimed and not report.each else None,
         "within": spec.within,
+    }
+
+
+def _each(each: Each) -> Object:
+    """What the values of the inputs came to; `high` is null where it is half the period."""
+    return {
+        "inputs": {name: [list(ends) for ends in ranges] for name, ranges in each.inputs},
+        "where": list(each.where),
+        "high": each.high or None,
+        "values": each.count,
+        "judged": each.tried,
+        "shown": dict(each.shown),
+        "rows": [_row(row) for row in each.rows],
+    }
+
+
+def _row(row: ValueRow) -> Object:
+    return {
+        "values": {name: list(ends) for name, ends in row.values},
+        "verdict": row.verdict,
+        "refuted": list(row.refuted),
+        "open": list(row.open),
+        "period_half_cycles": list(row.periods),
+        "worst_recovery_half_cycles": row.worst,
     }
 
 

@@ -10,6 +10,7 @@ import re
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
+from prover.each import values_text
 from prover.facts import LIMITS, number
 from prover.findings import Counterexample, Finding, Report
 from prover.output import harmless
@@ -26,6 +27,7 @@ WIDTH = 100
 EXTENT = figures.Extent()
 
 MOST_WAVES = 3
+MOST_ROWS = 20
 MOST_LOOPS = 20
 
 COLOURS = {"PROVED": "32", "MEASURED": "32", "REFUTED": "31", "OPEN": "33", "WAIVED": "33"}
@@ -49,6 +51,7 @@ def render(report: Report, look: Look = Look(), traces: Sequence[str] = ()) -> s
         _header(report),
         _claim(report),
         _verdicts(report),
+        _values(report),
         _measured(report, style),
         _loops(report),
         _facts(report),
@@ -89,8 +92,10 @@ def _header(report: Report) -> Iterator[str]:
     yield "  " + ", ".join(parts)
     if design.parameters:
         yield "  parameters " + ", ".join(f"{name}={value}" for name, value in design.parameters.items())
-    if ports.holds:
-        yield "  held " + ", ".join(f"{name}={value}" for name, value in ports.holds.items())
+    each = report.each.shown if report.each else {}
+    holds = {name: value for name, value in ports.holds.items() if name not in each}
+    if holds:
+        yield "  held " + ", ".join(f"{name}={value}" for name, value in holds.items())
 
 
 def _claim(report: Report) -> Iterator[str]:
@@ -135,6 +140,23 @@ def _verdict(finding: Finding, widest: int) -> Iterator[str]:
     illegal = finding.facts.get("illegal_states")
     if illegal is not None:
         yield f"{indent}illegal power-up states: {illegal}"
+
+
+def _values(report: Report) -> Iterator[str]:
+    """What came of each value of the inputs, and which of them all that follows is about."""
+    each = report.each
+    if each is None:
+        return
+    rows = sorted(each.rows, key=lambda row: ("refuted", "open", "proved").index(row.verdict))
+    told = [(row.verdict.upper(), *words.values(row)) for row in rows[:MOST_ROWS]]
+    widths = [max(len(line[i]) for line in told) for i in range(3)]
+    for verdict, values, periods, rest in told:
+        text = f"{verdict:{widths[0]}}  {values:{widths[1]}}  {periods:{widths[2]}}  {rest}"
+        yield from _wrapped(text.rstrip(), "")
+    if len(rows) > MOST_ROWS:
+        yield f"… and {len(rows) - MOST_ROWS} more ranges of values"
+    yield ""
+    yield f"at {values_text(each.shown)}"
 
 
 def _wrapped(text: str, indent: str) -> Iterator[str]:
@@ -245,17 +267,19 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
             continue
         if shown:
             yield ""
-        yield from _wrapped(f"counterexample to {finding.name}: {broken.text}", "")
+        at = finding.facts.get("at") if finding.witness else None
+        where = f", at {values_text(at)}" if isinstance(at, dict) else ""
+        yield from _wrapped(f"counterexample to {finding.name}{where}: {broken.text}", "")
         start = broken.orbit.start if isinstance(broken, Counterexample) else id(broken.rests)
-        key = (start, broken.begins, broken.ends)
+        key = (id(finding.witness), start, broken.begins, broken.ends)
         if key in shown:
             yield f"  the trace drawn for {shown[key]}"
             continue
         shown[key] = finding.name
         if isinstance(broken, Trace):
-            yield from _trace(report, broken, style)
+            yield from _trace(finding.witness or report, broken, style)
         else:
-            yield from _counterexample(report, broken, style)
+            yield from _counterexample(finding.witness or report, broken, style)
 
 
 def _trace(report: Report, trace: Trace, style: Style) -> Iterator[str]:

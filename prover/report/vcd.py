@@ -45,6 +45,7 @@ def dumps(report: Report) -> list[Dump]:
 
 def render(report: Report, finding: Finding) -> str | None:
     """The finding's trace as a dump; None if it has none."""
+    report = finding.witness or report
     if finding.trace is not None:
         return _moves(report, finding.name, finding.trace)
     if finding.counterexample is not None:

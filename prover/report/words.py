@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from fractions import Fraction
 
+from prover.each import ValueRow, row_text
 from prover.facts import number
 from prover.findings import Fact, Report
 from prover.rhythm import Loop, Orbit, Rhythm, Wave
@@ -34,8 +35,23 @@ def claim(report: Report) -> str:
     if spec.ratio is None:
         return ""
     within = f", recovery within {spec.within} half-cycles" if spec.within is not None else ""
+    if report.each is not None:
+        each = report.each
+        high = f"high {each.high} half-cycles" if each.high else "high for half the period"
+        told = f"divide by {each.ratio}, {high}, {origin(report.rhythm)}{within}"
+        return f"{told}, for each of {each.domain}"
     wave = f"period {spec.period} half-cycles, high {spec.high_half_cycles}"
     return f"divide by {spec.ratio_text}: {wave}, {origin(report.rhythm)}{within}"
+
+
+def values(row: ValueRow) -> tuple[str, str, str]:
+    """A row of values: the values, the ratios that are claimed of them, and what is wrong or the worst recovery."""
+    first, last = (number(Fraction(period, 2)) for period in row.periods)
+    judged = ((row.refuted, "refuted"), (row.open, "open"))
+    told = [f"{', '.join(names)} {word}" for names, word in judged if names]
+    if not told and row.worst is not None:
+        told.append(f"worst recovery {plural(row.worst, 'half-cycle')}")
+    return row_text(row), f"ratio {first}" + (f" to {last}" if first != last else ""), "; ".join(told)
 
 
 def fact(value: Fact) -> str:
