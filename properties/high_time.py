@@ -14,8 +14,8 @@ def claim(spec: Spec) -> str:
     """The claim in words, with a number or a formula."""
     if spec.high_formula is not None:
         return f"every high run is exactly {spec.high_formula.text} half-cycles"
-    if spec.high is None and spec.ratio_formula is not None:
-        return "every high run is exactly half a period"
+    if spec.ratio_formula is not None:
+        return f"every high run is exactly {spec.high or 'half a period'}" + " half-cycles" * bool(spec.high)
     return f"every high run is exactly {spec.high_half_cycles} half-cycles of {spec.period}"
 
 

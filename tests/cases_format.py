@@ -45,7 +45,7 @@ class StatedWave:
 @dataclass
 class Group:
     """One run of `check` on a case, and what it has to say. `error` are words of the message of a refusal, `line` the
-    line that it points at; `notes` are lines of the file with words of the remark that accompanies the verdict."""
+    line that it points at; `at` is the value of the inputs of --each that is reported; `notes` are lines of the file with words of the remark that accompanies the verdict."""
 
     options: list[str]
     verdicts: frozenset[str] = frozenset()
@@ -55,6 +55,7 @@ class Group:
     stuck: bool = False
     from_reset: StatedWave | None = None
     from_initial: StatedWave | None = None
+    at: str = ""
     error: list[str] = field(default_factory=list)
     line: int | None = None
     notes: list[tuple[int, str]] = field(default_factory=list)
@@ -122,6 +123,8 @@ def _state(group: Group, key: str, value: str) -> None:
         group.from_reset = _wave(value)
     elif key == "from initial":
         group.from_initial = _wave(value)
+    elif key == "at" and value:
+        group.at = value
     elif key == "error" and value:
         group.error = value.split()
     elif key == "line":

@@ -40,6 +40,8 @@ def test_a_case_is_judged_as_it_states(case: Case, group: Group) -> None:
     assert result.exit_code == STATUS[report["verdict"]]
     found = {each["name"]: each for each in report["properties"]}
     assert tuple(found) == PROPERTIES
+    shown = report["each"]["shown"] if report["each"] else {}
+    assert ", ".join(f"{name}={value}" for name, value in shown.items()) == group.at
     for line, words in group.notes:
         assert any(f"{case.path}:{line}: " in note and words in note for note in report["notes"]), report[
             "notes"

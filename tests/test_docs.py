@@ -15,10 +15,10 @@ from click.testing import CliRunner, Result
 
 import prover
 from properties import NAMES
-from prover import Spec, cli
+from prover import Spec, cli, formula
 from prover.errors import UserError
 from prover.report.json import SCHEMA
-from prover.spec import read_duty_range, read_frequency, read_ratio
+from prover.spec import PLAIN_RATIO, read_duty_range, read_each, read_frequency, read_ratio
 
 ROOT = Path(__file__).parents[1]
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -65,7 +65,13 @@ def test_the_values_of_options_are_understood() -> None:
     for row in table(README, "option"):
         for text in quoted(row[2]):
             if row[0].startswith("`--ratio"):
-                assert read_ratio(text) > 0
+                assert (
+                    read_ratio(text) > 0 if PLAIN_RATIO.fullmatch(text) else formula.read(text, row[0]).names
+                )
+            elif row[0].startswith(("`--each", "`--where")):
+                assert (
+                    read_each(text)[1] if row[0].startswith("`--each") else formula.read(text, row[0]).names
+                )
             elif row[0].startswith("`--fin"):
                 assert read_frequency(text) > 0
             elif row[0].startswith("`--source-duty"):

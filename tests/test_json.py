@@ -11,6 +11,7 @@ import pytest
 from jsonschema import validate
 from texts import BY_3, RING, SECOND, SHIFT, SPINS, STICKS_AT_7, checked, measured
 
+from prover import Spec, check, formula
 from prover.report.json import render
 
 NUMBER = {"type": ["integer", "null"]}
@@ -30,6 +31,33 @@ def closed(properties: dict[str, Any], *further: str) -> dict[str, Any]:
         "additionalProperties": False,
     }
 
+
+SPAN = {"type": "array", "prefixItems": [{"type": "integer"}] * 2, "minItems": 2, "items": False}
+NAMES_LISTED = {"type": "array", "items": TEXT}
+EACH = closed(
+    {
+        "inputs": {"type": "object", "additionalProperties": {"type": "array", "items": SPAN}},
+        "where": NAMES_LISTED,
+        "high": {"type": ["string", "null"]},
+        "values": {"type": ["integer", "null"]},
+        "judged": {"type": "integer"},
+        "shown": {"type": "object", "additionalProperties": {"type": "integer"}},
+        "rows": {
+            "type": "array",
+            "minItems": 1,
+            "items": closed(
+                {
+                    "values": {"type": "object", "additionalProperties": SPAN},
+                    "verdict": {"enum": ["proved", "refuted", "open"]},
+                    "refuted": NAMES_LISTED,
+                    "open": NAMES_LISTED,
+                    "period_half_cycles": SPAN,
+                    "worst_recovery_half_cycles": {"type": ["integer", "null"]},
+                }
+            ),
+        },
+    }
+)
 
 # The contract: every key of it, its type, and what may stand beside it.
 CONTRACT = closed(
@@ -122,6 +150,7 @@ CONTRACT = closed(
                 "unsettled",
             ),
         },
+        "each": {"anyOf": [{"type": "null"}, EACH]},
         "assumptions": {"type": "array", "items": TEXT, "minItems": 1},
         "seconds": {"type": "number"},
     },
@@ -199,6 +228,22 @@ def test_a_stuck_counterexample_names_its_state(tmp_path: Path) -> None:
     assert stuck["counterexample"]["start"]["stage0.count"] == 7
     recovery = next(p for p in report["properties"] if p["name"] == "recovery")
     assert (recovery["verdict"], recovery["waived"]) == ("refuted", "reset at power-up")
+
+
+def test_a_report_on_each_value_keeps_the_contract() -> None:
+    path = Path(__file__).parents[1] / "cases" / "gauge" / "radio_swallow.v"
+    ratio, high = formula.read("4*b+a", "--ratio"), formula.read("10 if a > 0 else 8", "--high")
+    where = (formula.read("a < 4 and b < 4", "--where"),)
+    spec = Spec(ratio_formula=ratio, high_formula=high, each={"b": ((2, 15),), "a": None}, where=where)
+    report = json.loads(render(check([path], spec)))
+    validate(report, CONTRACT)
+    assert report["spec"]["ratio"] == "4*b+a"
+    told = report["each"]
+    assert told["inputs"] == {"b": [[2, 15]], "a": [[0, 7]]}
+    assert (told["values"], told["judged"], told["shown"]) == (8, 8, {"b": 2, "a": 3})
+    # By 11 is 2·4 + 3, with a greater than b: the only one that fails.
+    failing = [row for row in told["rows"] if row["verdict"] == "refuted"]
+    assert [row["values"] for row in failing] == [{"b": [2, 2], "a": [3, 3]}]
 
 
 def test_the_same_input_gives_the_same_report_but_for_the_seconds(tmp_path: Path) -> None:

@@ -38,6 +38,17 @@
 // settling: proved
 // loops: 1
 // false loops: 0
+// check: --each divisor --hold enable=1 --ratio 2*max(divisor,1)
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 12, exact
+// settling: proved
+// at: divisor=0
+// from reset: period 4, high 2
+// loops: 1
+// false loops: 0
 module modem_by_held (input clk, input rst_n, input enable, input [2:0] divisor, output reg modem);
   reg [2:0] left;
   always @(posedge clk or negedge rst_n)

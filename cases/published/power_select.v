@@ -29,6 +29,17 @@
 // from reset: period 65536, high 32768
 // loops: 1
 // false loops: 0
+// check: --each k=2..4 --ratio 2**k
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 0, exact
+// settling: proved
+// at: k=2
+// from reset: period 8, high 4
+// loops: 1
+// false loops: 0
 module power_select (input clk, input clear_n, input [3:0] k, output out);
   reg [14:0] count;
   wire [3:0] stage = k - 4'd1;

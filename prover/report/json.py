@@ -45,12 +45,12 @@ def as_object(report: Report) -> Object:
         "spec": _spec(report),
         "measured": _measured(report.rhythm),
         "properties": [_property(f, (f.witness or report).rhythm) for f in report.findings],
+        "each": None if report.each is None else _each(report.each),
         "facts": dict(report.facts),
         "assumptions": list(report.assumptions),
         "notes": list(report.notes),
         "limits": LIMITS,
         "seconds": round(report.seconds, 3),
-        **({} if report.each is None else {"each": _each(report.each)}),
     }
 
 

@@ -19,7 +19,7 @@ from agreement.simulator import Bench, Reset, SimulatorError, Start
 from agreement.stepping import differences, power_up_states, simulated_registers
 from cases_format import Case, Group, cases
 
-from prover import cli
+from prover import cli, each
 from prover.api import check, read
 from prover.errors import UserError
 from prover.findings import Report
@@ -88,7 +88,22 @@ def test_most_cases_are_small_enough() -> None:
 
 @pytest.mark.parametrize(("case", "group"), SETTLING)
 def test_the_simulator_steps_and_recovers_as_the_verdict_says(case: Case, group: Group) -> None:
-    spec = spec_of(group)
+    for spec in in_numbers(case, spec_of(group)):
+        compare(case, spec)
+
+
+def in_numbers(case: Case, spec: Spec) -> list[Spec]:
+    """The claim itself; of a claim for each value of some inputs, those at the first, a middle and the last one."""
+    if not spec.each:
+        return [spec]
+    design = read([case.path], spec)
+    domain = each.Domain.of(design, spec)
+    values = list(domain.values())
+    chosen = [values[0], values[len(values) // 3], values[-1]]
+    return [each.claimed_at(spec, {**domain.fixed, **value}, value) for value in chosen]
+
+
+def compare(case: Case, spec: Spec) -> None:
     report = check([case.path], spec)
     system = report.rhythm.system
     assert not system.choices
