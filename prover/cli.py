@@ -434,7 +434,7 @@ def _judged(files: Sequence[str], spec: Spec, targets: Targets, tell: Callable[[
     from prover.api import check, measure
 
     try:
-        return (measure if spec.ratio is None else check)(files, spec, tell)
+        return (check if spec.claims else measure)(files, spec, tell)
     except Exception as fault:
         results = _exchanged(files, fault, targets)
         write_files([result for result in results if result.path != STANDARD_OUTPUT])

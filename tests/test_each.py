@@ -186,6 +186,16 @@ def test_a_counterexample_is_of_the_machine_at_its_own_value(tmp_path: Path) -> 
     assert high["counterexample"]["ends"] - high["counterexample"]["begins"] == 6
     wave = (tmp_path / "waves" / "high-time.vcd").read_text()
     assert "b10 " in wave
+    # The other reports follow the finding to its own machine, too.
+    others = ["--junit", str(tmp_path / "j.xml"), "--sarif", str(tmp_path / "s.json")]
+    assert run("check", path, *options, *others).exit_code == 1
+    assert "broken from half-cycle" in (tmp_path / "j.xml").read_text()
+    (flows,) = [
+        r["codeFlows"]
+        for r in json.loads((tmp_path / "s.json").read_text())["runs"][0]["results"]
+        if r["ruleId"] == "high-time"
+    ]
+    assert flows
     assert "counterexample to high-time, at div=2" in run("check", path, *options).stdout
 
 

@@ -124,6 +124,7 @@ def _of_finding(report: Report, finding: Finding) -> Element | None:
 
 def _lines(report: Report, finding: Finding) -> Iterator[str]:
     """A finding in words, a line for each thing to be said of it."""
+    report = finding.witness or report
     yield f"{finding.verdict}: {finding.says}"
     yield f"claimed: {finding.claim}"
     if finding.bound:

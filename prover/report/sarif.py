@@ -226,7 +226,8 @@ class _Results:
 
     def all(self) -> Iterator[Object]:
         for finding in self.report.findings:
-            yield self._of_finding(finding)
+            shown = _Results(self.log, finding.witness) if finding.witness else self
+            yield shown._of_finding(finding)
             for obligation in finding.obligations:
                 location = self.log.location(obligation.where, obligation.register)
                 yield self.log.result(finding.name, "review", f"obligation: {obligation.text}", location)
@@ -269,7 +270,7 @@ class _Results:
         if finding.unsettled is not None:
             moved = _moving([self.report.rhythm.system.describe(s) for s in finding.unsettled.cycle])
             return self._register(moved) or self._output()
-        pulse = next((r for r in self.report.rhythm.settling.races if r.text == finding.says), None)
+        pulse = next((r for r in self.report.rhythm.settling.races if r.text in finding.says), None)
         if pulse is not None:
             return pulse.where
         if finding.counterexample is not None:
