@@ -359,7 +359,8 @@ class CoverClaim:
     unrolled 0: every state is on one of the orbits within `merge` half-cycles, at a place no nearer to the
              orbit's start than the half-cycles that took (or where it is good). Otherwise: after so many
              half-cycles every state is at a good place of some orbit, or comes to one within `merge` half-cycles
-             with the output on the way as the phase of that place wants it.
+             with the output on the way as the phase of that place wants it. Of more than FEW half-cycles only the
+             last is looked at.
     spreads  for each orbit a count and a vector if its lead-in stands for that many, side by side, each moved by
              the vector from the one before, and all entering the loop at the same place; else None
     period, high  what good means, in half-cycles; period 0: on a loop, whatever its wave
@@ -518,7 +519,9 @@ def _covered(system: System, state: list[Expr], claim: CoverClaim) -> Expr:
         onward()
     levels.clear()
     for count in range(claim.merge + 1):
-        if count == 0:
+        if count < claim.merge > FEW:
+            pass
+        elif count == 0:
             reached.append(_on_orbits(system, state, claim, None))
         elif claim.period:
             reached.append(_behind_loops(system, state, levels, claim))
@@ -535,6 +538,9 @@ def onwards(system: System, state: Sequence[Expr], number: int) -> list[Expr]:
 
 
 Axes = tuple[tuple[int, State], ...]
+
+FEW = 4
+"""Half-cycles ahead at each of which a state is looked for on a loop."""
 
 
 def _written(

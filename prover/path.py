@@ -142,6 +142,29 @@ def moved(state: State, stride: State, times: int, widths: Sequence[int]) -> Sta
     return tuple((v + times * d) & ((1 << w) - 1) for v, d, w in zip(state, stride, widths, strict=True))
 
 
+def shifted(item: Item, stride: State, times: int, widths: Sequence[int]) -> Item:
+    """The item with times · stride added to all its states."""
+    if isinstance(item, Beat):
+        return Beat(moved(item.state, stride, times, widths), item.level)
+    return Repeat(item.times, item.stride, tuple(shifted(i, stride, times, widths) for i in item.body))
+
+
+def split(path: Sequence[Item], at: int, widths: Sequence[int]) -> tuple[Path, Path]:
+    """The path cut in two, `at` half-cycles after its start."""
+    for number, item in enumerate(path):
+        if at < item.length:
+            if at == 0 or isinstance(item, Beat):
+                return tuple(path[:number]), tuple(path[number:])
+            rounds, rest = divmod(at, item.length // item.times)
+            head, tail = split([shifted(i, item.stride, rounds, widths) for i in item.body], rest, widths)
+            after = [shifted(i, item.stride, rounds + 1, widths) for i in item.body]
+            first = [Repeat(rounds, item.stride, item.body)] if rounds else []
+            last = [Repeat(left, item.stride, tuple(after))] if (left := item.times - rounds - 1) else []
+            return joined([*path[:number], *first, *head]), joined([*tail, *last, *path[number + 1 :]])
+        at -= item.length
+    return tuple(path), ()
+
+
 @dataclass(frozen=True, slots=True)
 class Place:
     """Where in a path a half-cycle lies.

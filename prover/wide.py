@@ -188,6 +188,24 @@ def on_beat(
     return e.conj(parts)
 
 
+def is_on_beat(state: State, beat: State, axes: Axes, widths: Sequence[int]) -> bool:
+    """Whether the state is the beat's for some indices of the repeats around it. False where that can't be said."""
+    expected = list(beat)
+    for number, (times, stride) in enumerate(axes):
+        others = [s for i, (_, s) in enumerate(axes) if i != number]
+        witness = _witness(stride, others, widths)
+        if witness is None:
+            return False
+        step, width = stride[witness], widths[witness]
+        shift = (step & -step).bit_length() - 1
+        difference = (state[witness] - beat[witness]) % (1 << width)
+        index = (difference >> shift) * pow(step >> shift, -1, 1 << width) % (1 << (width - shift))
+        if index >= times:
+            return False
+        expected = [x + index * d for x, d in zip(expected, stride, strict=True)]
+    return all((x - v) % (1 << w) == 0 for x, v, w in zip(expected, state, widths, strict=True))
+
+
 def _witness(stride: State, others: Sequence[State], widths: Sequence[int]) -> int | None:
     """The register from which a repeat's index can be read: moved by this repeat alone, by an odd step if any is."""
     found = [i for i, d in enumerate(stride) if d and not any(o[i] for o in others)]
@@ -237,9 +255,9 @@ def peeled(items: Sequence[Item], widths: Sequence[int], rounds: int) -> Path:
         body = peeled(item.body, widths, rounds)
         first = min(1 if inner else rounds, item.times)
         for i in range(first):
-            out.extend(_shifted(part, item.stride, i, widths) for part in body)
+            out.extend(path.shifted(part, item.stride, i, widths) for part in body)
         if item.times > first:
-            rest = tuple(_shifted(part, item.stride, first, widths) for part in body)
+            rest = tuple(path.shifted(part, item.stride, first, widths) for part in body)
             out.append(Repeat(item.times - first, item.stride, rest))
     return tuple(out)
 
@@ -258,7 +276,7 @@ def shortened(items: Sequence[Item], widths: Sequence[int], keep: int) -> Path:
             before = out[-1 - size : -1]
             if len(before) < size or not _fits_before(before, block, widths):
                 break
-            earlier = tuple(_shifted(i, block.stride, -1, widths) for i in block.body)
+            earlier = tuple(path.shifted(i, block.stride, -1, widths) for i in block.body)
             out[-1 - size :] = [Repeat(block.times + 1, block.stride, earlier)]
         while len(out) >= 2:
             joined = _drawn_in(out, widths)
@@ -268,14 +286,10 @@ def shortened(items: Sequence[Item], widths: Sequence[int], keep: int) -> Path:
     return tuple(out)
 
 
-def _shifted(item: Item, stride: State, times: int, widths: Sequence[int]) -> Item:
-    if isinstance(item, Beat):
-        return Beat(path.moved(item.state, stride, times, widths), item.level)
-    return Repeat(item.times, item.stride, tuple(_shifted(i, stride, times, widths) for i in item.body))
-
-
 def _fits_before(before: Sequence[Item], block: Repeat, widths: Sequence[int]) -> bool:
-    return all(a == _shifted(b, block.stride, -1, widths) for a, b in zip(before, block.body, strict=True))
+    return all(
+        a == path.shifted(b, block.stride, -1, widths) for a, b in zip(before, block.body, strict=True)
+    )
 
 
 def _drawn_in(out: list[Item], widths: Sequence[int]) -> list[Item] | None:
@@ -286,7 +300,7 @@ def _drawn_in(out: list[Item], widths: Sequence[int]) -> list[Item] | None:
             continue
         if len(block.body) != back:
             return None
-        wanted = tuple(_shifted(i, block.stride, block.times, widths) for i in block.body)
+        wanted = tuple(path.shifted(i, block.stride, block.times, widths) for i in block.body)
         if tuple(out[-back:]) != wanted:
             return None
         return [*out[: -1 - back], Repeat(block.times + 1, block.stride, block.body)]
@@ -317,6 +331,9 @@ class _Cover:
         self.loops: set[frozenset[Item]] = set()
         self.widening = False
         self.known: orbit.Places = {}
+        # The lines that sufficed when no state was last found late, and what was asked then.
+        self.sufficient: tuple[Line, ...] = ()
+        self.merge = EARLY
         # By identity: a line's hash would walk its whole path. The line is kept, so that its id stays its own.
         self.placed: dict[int, tuple[Line, list[tuple[int, State, Axes]]]] = {}
 
@@ -370,7 +387,7 @@ class _Cover:
                 down = tuple(
                     (1 << w) - counts[0] if i == place and counts[0] else 0 for i, w in enumerate(self.widths)
                 )
-                lead = tuple(_shifted(item, down, 1, self.widths) for item in run.lead)
+                lead = tuple(path.shifted(item, down, 1, self.widths) for item in run.lead)
                 up = tuple(int(i == place) for i in range(len(self.widths)))
                 many = min(sum(counts) + 1, 1 << width)
                 return replace(run, lead=lead), (many, up)
@@ -393,7 +410,26 @@ class _Cover:
             run = replace(run, loop=shortened(run.loop, self.widths, 0))
             self.loops.add(frozenset(run.loop))
             self.known = orbit.onward(run.loop) | self.known
-        return run
+        return self._entered(run)
+
+    def _entered(self, run: Orbit) -> Orbit:
+        """The run with the least lead-in: a jump may carry it past the place where it enters its loop."""
+        places = list(placed_beats(run.loop))
+        if len(places) > MOST_SINGLE or not any(isinstance(item, Repeat) for item in run.lead):
+            return run
+        low, high = 0, run.lead_half_cycles
+        while low < high:
+            middle = (low + high) // 2
+            if self._is_on(run.state(middle), ((beat, axes) for _, beat, axes in places)):
+                high = middle
+            else:
+                low = middle + 1
+        if high == run.lead_half_cycles:
+            return run
+        # From there on the lead-in is the loop's own states, and ends where the loop is written to begin.
+        round_ = run.loop_half_cycles
+        before, after = path.split(run.loop, -(run.lead_half_cycles - high) % round_, self.widths)
+        return Orbit(path.split(run.lead, high, self.widths)[0], (*after, *before), run.widths)
 
     def _earliest(self, run: Orbit) -> Orbit:
         """The run drawn out backwards: along its repeats' strides, and by single steps, while that leads on."""
@@ -461,8 +497,9 @@ class _Cover:
                     places[beat, axes] = None
         return places
 
-    def late_after(self, bound: int, early: bool) -> State | None:
-        """A state that after `bound` half-cycles is not known to be good; `early` knows more of them, at a price."""
+    def late_after(self, bound: int, merge: int) -> State | None:
+        """A state that after `bound` half-cycles is not known to be good, nor known to have been so by where it is at
+        most (from EARLY on: exactly) `merge` half-cycles later."""
         self.effort.say(f"following all states for {bound} half-cycles")
         clock = self.system.clock
         for level in (0, 1):
@@ -470,10 +507,11 @@ class _Cover:
             (assumed,) = e.substitute([self.assumed], fixed)
             state = [fixed.get(n, e.var(n, w)) for n, w in self.system.variables]
             state, _ = self._ahead(state, bound)
-            model = find(e.bvand(assumed, e.bvnot(self._known_good(state, early))), self.effort)
+            model = find(e.bvand(assumed, e.bvnot(self._known_good(state, merge))), self.effort)
             if model is not None:
                 model[clock] = level
                 return tuple(model.get(name, 0) for name in self.system.names)
+        self.sufficient, self.merge = tuple(self.lines), merge
         return None
 
     def _ahead(self, state: list[Expr], count: int) -> tuple[list[Expr], list[Expr]]:
@@ -485,23 +523,28 @@ class _Cover:
             levels.append(level)
         return state, levels
 
-    def _known_good(self, state: list[Expr], early: bool) -> Expr:
-        """True of a state on a line where that is good, or (early) that comes there within a few half-cycles while
-        the output is as the phase of that place wants it."""
-        parts = [self.member(state, None)]
-        if self.goal is not None and early:
-            for count in range(1, EARLY + 1):
-                later, levels = self._ahead(state, count)
-                parts.append(self._good_behind(later, levels))
+    def _known_good(self, state: list[Expr], merge: int) -> Expr:
+        """True of a state on a line where that is good, or that comes there within `merge` half-cycles (at their end,
+        where they are more than EARLY) while the output is as the phase of that place wants it."""
+        parts = [self.member(state, None)] if merge <= EARLY else []
+        levels: list[Expr] = []
+        for count in range(1, merge + 1 if self.goal is not None else 1):
+            state, more = self._ahead(state, 1)
+            levels += more
+            if merge <= EARLY or count == merge:
+                parts.append(self._good_behind(state, levels))
         return e.disj(parts)
 
     def _good_behind(self, state: Sequence[Expr], levels: Sequence[Expr]) -> Expr:
-        """True of a state on a good place, where the levels before it are what the wave has there."""
+        """True of a state on a good place of a loop, where the levels before it are what the wave has there."""
         places: dict[tuple[State, Axes, tuple[int, ...]], None] = {}
         for line in self._distinct():
-            for beat, axes, before in self._phased(line):
+            lead, rise = line.orbit.lead_half_cycles, first_rise(line.orbit)
+            loop = peeled(line.orbit.loop, self.widths, EARLY // 2)
+            for at, beat, axes, last in placed_spans(loop, lead):
+                before = self._levels_before(at - rise, last - rise, axes, len(levels))
                 if before is not None:
-                    places[beat, axes, before[-len(levels) :]] = None
+                    places[beat, axes, before] = None
         parts = []
         for beat, axes, wanted in places:
             formula = on_beat(self.system, state, beat, axes)
@@ -510,36 +553,25 @@ class _Cover:
                 parts.append(e.conj([*fits, formula]))
         return e.disj(parts)
 
-    def _phased(self, line: Line) -> list[tuple[State, Axes, tuple[int, ...] | None]]:
-        """Places on the line's loop, with the levels of the wave in the EARLY half-cycles before each."""
-        assert self.goal is not None
-        rise = first_rise(line.orbit)
-        out = []
-        loop = peeled(line.orbit.loop, self.widths, EARLY // 2)
-        for at, beat, axes, last in placed_spans(loop, line.orbit.lead_half_cycles):
-            out.append((beat, axes, self._levels_before(at - rise, last - rise, axes)))
-        return out
-
-    def _levels_before(self, first: int, last: int, axes: Axes) -> tuple[int, ...] | None:
-        """The wave's levels before phases `first` to `last`, if they are the same for all of these."""
+    def _levels_before(self, first: int, last: int, axes: Axes, count: int) -> tuple[int, ...] | None:
+        """The wave's `count` levels before phases `first` to `last`, if they are the same for all of these."""
         assert self.goal is not None
         period, high = self.goal.period, self.goal.high
-        begins = first - EARLY
+        begins = first - count
         same_run = (begins % period < high) == (last % period < high) and (last - begins) < period
         whole = same_run and (begins % period) + (last - begins) < (
             high if begins % period < high else period
         )
         if axes and not whole:
             return None
-        return tuple(int((begins + i) % period < high) for i in range(EARLY))
+        return tuple(int((begins + i) % period < high) for i in range(count))
 
     def has(self, state: State) -> bool:
         """Whether the state is on a line."""
-        constants = [e.const(v, w) for v, (_, w) in zip(state, self.system.variables, strict=True)]
-        for beat, axes in self._where(0):
-            if beat == state or (axes and on_beat(self.system, constants, beat, axes) is e.TRUE):
-                return True
-        return False
+        return self._is_on(state, self._where(0))
+
+    def _is_on(self, state: State, places: Iterable[tuple[State, Axes]]) -> bool:
+        return any(beat == state or is_on_beat(state, beat, axes, self.widths) for beat, axes in places)
 
     def lost(self) -> Cover:
         why = "a state that never becomes good"
@@ -569,15 +601,15 @@ class _Cover:
 
     def _needed(self) -> list[Line]:
         """What a claim about unrolled states rests on: each loop once, and the lead-ins that are families."""
-        loops = {frozenset(line.orbit.loop): line.orbit.loop for line in self.lines}
+        loops = {frozenset(line.orbit.loop): line.orbit.loop for line in self.sufficient}
         plain = [Line(Orbit((), loop, self.lines[0].orbit.widths), 0) for loop in loops.values()]
-        near = [self._cut(line) for line in self.lines if line.orbit.lead]
+        near = [self._cut(line) for line in self.sufficient if line.orbit.lead]
         return plain + near
 
     def _cut(self, line: Line) -> Line:
         """The line without the single half-cycles before it is near its loop or on a repeat."""
         lead = list(line.orbit.lead)
-        if line.spread or sum(len(other.orbit.lead) for other in self.lines) <= MOST_SINGLE:
+        if line.spread or sum(len(other.orbit.lead) for other in self.sufficient) <= MOST_SINGLE:
             return line
         while lead and isinstance(lead[0], Beat) and path.length(lead) > EARLY:
             del lead[0]
@@ -656,25 +688,40 @@ def cover_in_stages(
         total += found.worst
         exact = exact and found.slowest is not None
         if found.slowest is not None:
-            slowest = dict(zip(stage.names, found.slowest, strict=True)) | slowest
+            ours = zip(stage.names, found.slowest, strict=True)
+            slowest = {name: value for name, value in ours if found.worst or not last} | slowest
     method = (
         f"{len(parts)} stages of registers, each covered with those before it on their loops: {found.method}"
     )
-    start = _start_that_needs(system, goal, slowest, total, effort) if exact else None
+    start = _start_that_needs(system, goal, slowest, found.lines, total, effort) if exact else None
     return Cover(found.lines, True, total, start, tuple(claims), "", method)
 
 
 def _start_that_needs(
-    system: System, goal: Goal | None, values: dict[str, int], total: int, effort: Effort
+    system: System,
+    goal: Goal | None,
+    values: dict[str, int],
+    lines: Sequence[Line],
+    total: int,
+    effort: Effort,
 ) -> State | None:
-    """The state with those values, if it really needs that long."""
-    start = tuple(values[name] for name in system.names)
-    if goal is None or not _holds(system, system.settled, start):
+    """A state that really needs that long: the stages' slowest values together or, where the last stage is good at
+    once, those of the stages before it with the last one's where the output has just changed."""
+    if goal is None:
         return None
-    run = orbit.trace(system, start, effort, most=MOST_ITEMS)
-    if not run.closed or certificate.orbit_faults(system, run, effort):
-        return None
-    return start if recovery_on(run, goal.period, goal.high) == total else None
+    names = system.names
+    found = [tuple(values[name] for name in names)] if values.keys() >= set(names) else []
+    for line in lines:
+        changes = [first_rise(line.orbit), first_rise(line.orbit) + goal.high]
+        for state in map(line.orbit.state, changes):
+            found.append(tuple(values.get(n, v) for n, v in zip(names, state, strict=True)))
+    for start in dict.fromkeys(found):
+        if not _holds(system, system.settled, start):
+            continue
+        run = orbit.trace(system, start, effort, most=MOST_ITEMS)
+        if run.closed and recovery_on(run, goal.period, goal.high) == total:
+            return None if certificate.orbit_faults(system, run, effort) else start
+    return None
 
 
 def stages(system: System) -> list[set[str]]:
@@ -761,10 +808,9 @@ def _slowest_suffices(made: _Cover, tries: int) -> Cover | None:
             return None
         slowest = max(made.lines, key=lambda line: line.recovery or 0, default=None)
         worst = (slowest.recovery or 0) if slowest else 0
-        late = made.late_after(worst, early=True)
+        late = made.late_after(worst, EARLY)
         if late is None:
-            method = f"after {worst} half-cycles every power-up state is on a known good run (solver)"
-            return made.proved(worst, slowest, worst, EARLY, method)
+            return made.proved(worst, slowest, worst, made.merge, _after(worst))
         # Either a slower state, or one that is good by then and was not known to be.
         made.add(late)
     return None
@@ -774,7 +820,7 @@ def _least_time(made: _Cover) -> int | None:
     """The least time after which every state is at a good place of a line; None if it is too long."""
     low, high, bound = -1, UNROLLED + 1, 2
     while low + 1 < high:
-        late = made.late_after(bound, early=False)
+        late = made.late_after(bound, 0)
         if late is None:
             high = bound
         else:
@@ -787,7 +833,11 @@ def _least_time(made: _Cover) -> int | None:
 
 
 def _narrowed(made: _Cover, high: int) -> Cover | None:
-    """The bound brought down towards what the slowest line needs, where the output before a place counts too."""
+    """The bound brought down to what the slowest line needs.
+
+    By `settled` half-cycles every state is on a loop, where its phase is known, so its output from any time on until
+    then can be held against what that phase wants: what differs shows a state that needs longer than that time."""
+    settled = high
     for _ in range(REFINED):
         slowest = max(made.lines, key=lambda line: line.recovery or 0)
         worst = slowest.recovery or 0
@@ -796,14 +846,17 @@ def _narrowed(made: _Cover, high: int) -> Cover | None:
         if worst >= high:
             break
         middle = (worst + high) // 2
-        late = made.late_after(middle, early=True)
+        late = made.late_after(middle, settled - middle)
         if late is None:
             high = middle
         else:
-            made.add(late)
+            settled = max(settled, min(made.add(late).orbit.lead_half_cycles, UNROLLED))
     exact = slowest.recovery == high
-    method = f"after {high} half-cycles every power-up state is on a known good run (solver)"
-    return made.proved(high, slowest if exact else None, high, EARLY, method)
+    return made.proved(high, slowest if exact else None, high, made.merge, _after(high))
+
+
+def _after(bound: int) -> str:
+    return f"after {bound} half-cycles every power-up state is on a known good run (solver)"
 
 
 def _by_lines(made: _Cover) -> Cover:
@@ -818,14 +871,31 @@ def _by_lines(made: _Cover) -> Cover:
             return made.given_up(f"more than {MOST_PATHS} paths")
         if made.add(tuple(model.get(name, 0) for name in made.system.names)).recovery is None:
             return made.lost()
+    merge = _joined_within(made)
+    if merge is None:
+        return made.lost()
     slowest = max(made.lines, key=lambda line: line.recovery or 0)
+    # A state that joins a path where it is good already may need as long as joining takes.
+    needed = slowest.recovery or 0
     method = (
-        f"every power-up state is on one of {len(made.lines)} traced paths or joins one within {MERGE} "
+        f"every power-up state is on one of {len(made.lines)} traced paths or joins one within {merge} "
         "half-cycles (solver)"
     )
-    # A state that joins a path where it is good already may need as long as joining takes.
-    worst = max(slowest.recovery or 0, MERGE)
-    return made.proved(worst, slowest if worst == slowest.recovery else None, None, MERGE, method)
+    worst = max(needed, merge)
+    return made.proved(worst, slowest if worst == needed else None, None, merge, method)
+
+
+def _joined_within(made: _Cover) -> int | None:
+    """Half-cycles within which every state joins a line: what the slowest line needs if that is less than MERGE, for
+    which a few more lines are added, else the fewest that will do. None if a line is found that is never good."""
+    for _ in range(ASKED_FIRST):
+        needed = max(line.recovery or 0 for line in made.lines)
+        model = find(made.outside(needed), made.effort) if needed < MERGE else None
+        if model is None:
+            return min(needed, MERGE)
+        if made.add(tuple(model.get(name, 0) for name in made.system.names)).recovery is None:
+            return None
+    return next((m for m in range(needed, MERGE) if find(made.outside(m), made.effort) is None), MERGE)
 
 
 def _holds(system: System, assumed: Expr, state: State) -> bool:
