@@ -10,13 +10,14 @@ import random
 from collections.abc import Sequence
 from dataclasses import replace
 
-from prover import certificate, graph, linear, orbit, path, recode, reset
+from prover import certificate, glitch, graph, linear, orbit, path, recode, reset, tables
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
 from prover.expr import Expr
+from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
-from prover.rhythm import Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, Wave
+from prover.rhythm import Goal, Good, Loop, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
@@ -24,6 +25,9 @@ from prover.system import State, System, cone, project
 
 COVERED_FIRST = 16
 """Bits of a state up to which the graph is quicker than to look for a cover."""
+
+MOST_LOOPS_FOLLOWED = 64
+"""Loops of a large graph that are followed state by state to look at their steps."""
 
 SMALL = 13
 """Bits of a state, the clock's level among them, up to which the graph is built without looking for more."""
@@ -60,9 +64,10 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     )
     goal = _goal(spec, rhythm)
     try:
-        return _with_power_up(rhythm, system, goal, effort)
+        rhythm = _with_power_up(rhythm, system, goal, effort)
     except OutOfEffort as out:
-        return replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
+        rhythm = replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
+    return rhythm
 
 
 def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple[System, tuple[Start, ...]]:
@@ -210,6 +215,29 @@ def _told(wave: Wave | None) -> str:
     return f"period {wave.period} half-cycles, high {wave.high}"
 
 
+# -- within a half-cycle -----------------------------------------------------------------------------------
+
+
+def _with_glitches(rhythm: Rhythm, ports: Ports, whole: System, goal: Goal, effort: Effort) -> Rhythm:
+    """The rhythm completed with what happens on the way from one half-cycle to the next."""
+    machine = rhythm.system
+    good = rhythm.good or of_runs(rhythm, (), False, goal)
+
+    def follows(state: State) -> Orbit | None:
+        run = follow(machine, recode.placed(state, whole, machine), effort)
+        return run if good.none or good_since(run, goal) == 0 else None
+
+    try:
+        effort.say("looking for glitches")
+        found = glitch.find(ports, whole, scope_of(machine, good), follows, lambda goal: find(goal, effort))
+        for number, claim in enumerate(found.goals):
+            if not certificate.discharge(certificate.Obligation(f"glitches {number}", claim), effort):
+                raise InternalError("the absence of a glitch fails its check")
+    except OutOfEffort as out:
+        found = glitch.Glitches(open=str(out))
+    return replace(rhythm, glitches=found)
+
+
 # -- from everywhere ---------------------------------------------------------------------------------------
 
 
@@ -283,9 +311,11 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     found = wide.cover_in_stages(system, goal, starts, effort)
     if found is None:
         found = wide.cover(system, goal, system.settled, starts, effort)
-    loops = _loops_of(rhythm, [line.orbit for line in found.lines], goal)
+    lines = [line.orbit for line in found.lines]
+    loops = _loops_of(rhythm, lines, goal)
     methods = {**rhythm.methods, "power-up": found.method}
-    rhythm = replace(rhythm, loops=loops, methods=methods)
+    good = of_runs(rhythm, lines, False, goal) if goal else None
+    rhythm = replace(rhythm, loops=loops, methods=methods, good=good)
     stuck = next((line.orbit for line in found.lines if _frozen(line.orbit)), None)
     lost = next((line.orbit for line in found.lines if line.recovery is None), None)
     for run in (stuck, lost):
@@ -321,6 +351,7 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
         stuck=stuck,
         never_stuck=stuck is None,
         stages=found.claims,
+        good=of_runs(rhythm, lines, True, goal) if goal else None,
     )
 
 
@@ -356,18 +387,36 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
         raise InternalError(f"a list of loops fails its check: {'; '.join(faults)}")
     first_stuck = next((loop for loop in found.loops if loop.stuck), None)
     stuck = follow(system, first_stuck.example, effort) if first_stuck else None
-    recovery = _graph_recovery(system, states, found, goal, effort) if goal else None
-    return replace(
-        rhythm, loops=found.loops, complete=True, recovery=recovery, stuck=stuck, never_stuck=stuck is None
-    )
+    rhythm = replace(rhythm, loops=found.loops, complete=True, stuck=stuck, never_stuck=stuck is None)
+    if goal is None:
+        return rhythm
+    table = graph.ranks(states, found, goal.period, goal.high)
+    recovery = _graph_recovery(system, states, found, table, goal, effort)
+    return replace(rhythm, recovery=recovery, good=_graph_good(rhythm, states, table, goal, effort))
+
+
+def _graph_good(rhythm: Rhythm, states: graph.Graph, table: graph.Ranks, goal: Goal, effort: Effort) -> Good:
+    """The good states as a table while that is short, else as the runs round their loops."""
+    system = rhythm.system
+    if (states.start & (table.phase >= 0)).any() and system.bits <= tables.MOST_BITS_IF_REGULAR:
+        phases = tuple(table.phase.tolist())
+        if system.bits <= tables.MOST_BITS or tables.is_regular(system, [phases]):
+            return Good(phases, (), "every good state")
+    listed = [loop for loop in rhythm.loops if loop.good] or rhythm.loops
+    runs = [follow(system, loop.example, effort) for loop in listed[:MOST_LOOPS_FOLLOWED]]
+    return of_runs(rhythm, runs, rhythm.complete and len(listed) <= MOST_LOOPS_FOLLOWED, goal)
 
 
 def _graph_recovery(
-    system: System, states: graph.Graph, found: graph.Basins, goal: Goal, effort: Effort
+    system: System,
+    states: graph.Graph,
+    found: graph.Basins,
+    table: graph.Ranks,
+    goal: Goal,
+    effort: Effort,
 ) -> Recovery:
     import numpy as np
 
-    table = graph.ranks(states, found, goal.period, goal.high)
     illegal = int((states.start & (table.rank != 0)).sum())
     lost = np.flatnonzero(states.start & (table.rank < 0))
     if len(lost):
@@ -394,6 +443,7 @@ def _by_graph_with_choices(rhythm: Rhythm, states: graph.Graph, goal: Goal | Non
     table = graph.ranks_with_choices(states, goal.period, goal.high, effort)
     if table is None:
         return replace(rhythm, recovery=Recovery(None, False, open="too many states with x to cover"))
+    rhythm = replace(rhythm, good=_graph_good(rhythm, states, table, goal, effort))
     if (states.start & (table.rank < 0)).any():
         why = "a value that x stands for may keep some power-up state from recovering"
         return replace(rhythm, recovery=Recovery(None, False, open=why))

@@ -20,7 +20,7 @@ from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_
 from prover.expr import Expr
 from prover.findings import Report
 from prover.ports import Ports
-from prover.rebuild import placed
+from prover.recode import placed
 from prover.rhythm import Goal, Orbit, Rhythm
 from prover.settling import settle
 from prover.solve import Model, find

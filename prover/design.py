@@ -4,6 +4,9 @@ Names are hierarchical, without the top module's own name: `count`, `stage0.q`. 
 different drivers is split into slices, named `count[0]` or `count[7:4]`, each of them one register or wire.
 Wires are gone: what was a wire is an expression over registers and inputs. A net inside a combinational loop
 becomes a register without a clock, forced all the time to the value that drives it.
+
+Expressions are simplified, which changes no value but may take away what pulses on the way. So gate primitives are
+kept besides as they are written: `gates` has them, and what hangs on them is written over the nets that they drive.
 """
 
 from __future__ import annotations
@@ -13,6 +16,9 @@ from typing import Literal
 
 from prover.errors import InternalError, Where
 from prover.expr import Expr, variables
+
+GateKind = Literal["and", "nand", "or", "nor", "xor", "xnor", "buf", "not"]
+"""Gate primitives with one output value: IEEE 1364-2005 clause 7.2 and 7.3."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,6 +40,18 @@ class Force:
     when: Expr
     value: Expr
     where: Where
+    written: Expr | None = None
+    """The value over the nets that gates drive, where it is another then."""
+
+
+@dataclass(frozen=True, slots=True)
+class Gate:
+    """A gate primitive. `pins` are what its input terminals carry, a bit each, over registers, inputs and the nets of
+    gates."""
+
+    kind: GateKind
+    pins: tuple[Expr, ...]
+    where: Where
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,7 +72,8 @@ class Signal:
     """A declared name as the user sees it: its value is an expression over registers and inputs.
 
     `msb` and `lsb` are the declared bounds (0, 0 for a scalar); bit i of `value` is declared bit lsb + i, or
-    lsb − i where msb < lsb."""
+    lsb − i where msb < lsb. `written` is the value over the nets that gates drive, where it is another then;
+    `driven` is where its driver stands."""
 
     name: str
     value: Expr
@@ -62,6 +81,8 @@ class Signal:
     lsb: int
     signed: bool
     where: Where
+    written: Expr | None = None
+    driven: Where | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,6 +104,7 @@ class Design:
     parameters  the top module's parameters with their final values
     files       every file read, in order
     sha256      digest of the sources after directives
+    gates       gate primitives by the net (one bit) that each drives
     """
 
     top: str
@@ -94,6 +116,7 @@ class Design:
     files: tuple[str, ...]
     sha256: str
     notes: tuple[Note, ...] = field(default=())
+    gates: dict[str, Gate] = field(default_factory=dict)
 
     @property
     def state_bits(self) -> int:
@@ -115,6 +138,10 @@ class Design:
         for used in variables(self.all_expressions()):
             if not used.name.startswith("?") and known.get(used.name) != used.width:
                 raise InternalError(f"unknown name {used.name}")
+        for used in variables(self.written_expressions()):
+            net = 1 if used.name in self.gates else known.get(used.name)
+            if not used.name.startswith("?") and net != used.width:
+                raise InternalError(f"unknown net {used.name}")
 
     def all_expressions(self) -> list[Expr]:
         """Every expression of the design, in a stable order."""
@@ -125,6 +152,13 @@ class Design:
             for force in register.forces:
                 out += [force.when, force.value]
         return out + [signal.value for signal in self.signals.values()]
+
+    def written_expressions(self) -> list[Expr]:
+        """Every expression over the nets of gates, in a stable order."""
+        out = [force.written for register in self.registers for force in register.forces]
+        out += [signal.written for signal in self.signals.values()]
+        pins = [pin for gate in self.gates.values() for pin in gate.pins]
+        return [x for x in out if x is not None] + pins
 
     def __str__(self) -> str:
         lines = [f"design {self.top}"]

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Literal
 from prover.errors import Where
 
 if TYPE_CHECKING:
+    from prover.arrival import Glitch
     from prover.each import Each
     from prover.ports import Ports
     from prover.rhythm import Orbit, Rhythm
@@ -57,7 +58,8 @@ class Finding:
     facts   numbers for machines; names say their unit
     witness  where the counterexample is a run of another machine than the report's (another value of an input of
             --each): the report on that one
-    counterexample, unsettled, trace  what shows a refutation: an orbit, a step without end, a run whose inputs move
+    counterexample, unsettled, trace, glitch  what shows a refutation: an orbit, a step without end, a run whose
+            inputs move, an order of arrival by which the output pulses within a half-cycle
     """
 
     name: str
@@ -71,6 +73,7 @@ class Finding:
     counterexample: Counterexample | None = None
     unsettled: Unsettled | None = None
     trace: Trace | None = None
+    glitch: Glitch | None = None
     waived: str | None = None
     witness: Report | None = field(default=None, repr=False)
 

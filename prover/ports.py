@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 from prover import expr as e
-from prover.design import Design, Edge
+from prover.design import Design, Edge, Signal
 from prover.errors import UserError, Where
 from prover.expr import Expr
 from prover.solve import constant
@@ -32,7 +32,9 @@ class Reset:
 
 @dataclass(frozen=True, slots=True)
 class Ports:
-    """The roles of a design's ports, and the values at which the other inputs are held."""
+    """The roles of a design's ports, and the values at which the other inputs are held.
+
+    `output_written` is the output over the nets that gates drive (see Design), `output_where` where it is driven."""
 
     design: Design
     clock: str
@@ -40,6 +42,8 @@ class Ports:
     output: str
     output_value: Expr
     holds: dict[str, int]
+    output_written: Expr
+    output_where: Where
 
     @property
     def running(self) -> Inputs:
@@ -67,7 +71,8 @@ def recognise(design: Design, spec: Spec) -> Ports:
     clock = _clock(design, spec, holds)
     design = _with_holds(design, holds)
     reset = _reset(design, spec, clock, holds)
-    output, value = _output(design, spec)
+    output, signal, place = _output(design, spec)
+    value, written = _bit(signal.value, place), _bit(signal.written or signal.value, place)
     used = _used_inputs(design, value)
     taken = {clock, *holds} | ({reset.port} if reset else set())
     left = [name for name in design.inputs if name not in taken]
@@ -80,7 +85,7 @@ def recognise(design: Design, spec: Spec) -> Ports:
             )
         # An input that nothing depends on may have any value.
         holds[name] = 0
-    return Ports(design, clock, reset, output, value, holds)
+    return Ports(design, clock, reset, output, value, holds, written, signal.driven or signal.where)
 
 
 def _with_holds(design: Design, holds: Mapping[str, int]) -> Design:
@@ -92,16 +97,28 @@ def _with_holds(design: Design, holds: Mapping[str, int]) -> Design:
     def held(x: Expr) -> Expr:
         return e.substitute([x], values)[0]
 
+    def perhaps(x: Expr | None) -> Expr | None:
+        return None if x is None else held(x)
+
     registers = tuple(
         replace(
             register,
             edges=tuple(Edge(held(edge.clock), held(edge.data)) for edge in register.edges),
-            forces=tuple(replace(f, when=held(f.when), value=held(f.value)) for f in register.forces),
+            forces=tuple(
+                replace(f, when=held(f.when), value=held(f.value), written=perhaps(f.written))
+                for f in register.forces
+            ),
         )
         for register in design.registers
     )
-    signals = {name: replace(signal, value=held(signal.value)) for name, signal in design.signals.items()}
-    return replace(design, registers=registers, signals=signals)
+    signals = {
+        name: replace(signal, value=held(signal.value), written=perhaps(signal.written))
+        for name, signal in design.signals.items()
+    }
+    gates = {
+        net: replace(gate, pins=tuple(held(pin) for pin in gate.pins)) for net, gate in design.gates.items()
+    }
+    return replace(design, registers=registers, signals=signals, gates=gates)
 
 
 def _where(design: Design, name: str) -> Where | None:
@@ -280,12 +297,17 @@ def _synchronous(design: Design, clock: str, holds: Mapping[str, int]) -> dict[s
     return found
 
 
-def _output(design: Design, spec: Spec) -> tuple[str, Expr]:
+def _bit(word: Expr, place: int | None) -> Expr:
+    return word if place is None else e.extract(word, place, place)
+
+
+def _output(design: Design, spec: Spec) -> tuple[str, Signal, int | None]:
+    """The output's name, its signal, and which bit of it is meant where it has several."""
     if spec.output is not None:
-        return spec.output, _named_output(design, spec.output)
+        return spec.output, *_named_output(design, spec.output)
     scalar = [n for n in design.outputs if design.signals[n].value.width == 1]
     if len(scalar) == 1:
-        return scalar[0], design.signals[scalar[0]].value
+        return scalar[0], design.signals[scalar[0]], None
     listed = scalar or [f"{n}[{_bounds(design, n)}]" for n in design.outputs]
     if not listed:
         hint = "name a net with --output NAME"
@@ -302,7 +324,7 @@ def _bounds(design: Design, name: str) -> str:
     return f"{signal.msb}:{signal.lsb}"
 
 
-def _named_output(design: Design, text: str) -> Expr:
+def _named_output(design: Design, text: str) -> tuple[Signal, int | None]:
     name, _, index = text.partition("[")
     signal = design.signals.get(text) or design.signals.get(name)
     if signal is None:
@@ -317,7 +339,7 @@ def _named_output(design: Design, text: str) -> Expr:
                 signal.where,
                 hint=f"name one bit, such as --output '{name}[{signal.lsb}]'",
             )
-        return signal.value
+        return signal, None
     number = re.fullmatch(r"(-?\d+)\]", index)
     place = (
         None
@@ -332,4 +354,4 @@ def _named_output(design: Design, text: str) -> Expr:
             signal.where,
             hint=f"name one of them, such as --output '{name}[{signal.lsb}]'",
         )
-    return e.extract(signal.value, place, place)
+    return signal, place

@@ -23,7 +23,7 @@ from prover.rhythm import LONGEST_ROUND, Goal, Loop, Orbit, Recovery, Rhythm, Sc
 from prover.settling import Settling, settle
 from prover.solve import Model
 from prover.spec import Spec
-from prover.system import State, System, cone, project
+from prover.system import State, System, cone
 from prover.tables import Ranking, Rounds
 
 HOLD_PER_REGISTER = 8
@@ -60,7 +60,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
             raise Rejected("evidence about a divider of which nothing is known")
         return Rebuilt(whole, _nothing_known(whole, settling, scope), owed.listed())
     machine = machine_of(whole, evidence, owed)
-    starts = tuple(replace(s, state=placed(s.state, whole, machine)) for s in starts)
+    starts = tuple(replace(s, state=recode.placed(s.state, whole, machine)) for s in starts)
     rhythm = _followed(Rhythm(
         system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
         recovery=None, stuck=None, never_stuck=False, open=why,
@@ -158,19 +158,6 @@ def _counted(inner: System, matrix: Matrix, owed: _Obligations) -> System:
     for obligations in certificate.linear_obligations(inner, logs, matrix.moving, matrix.level):
         owed.add(obligations)
     return linear.counter(inner, logs, matrix.moving, matrix.level)
-
-
-def placed(state: State, whole: System, machine: System) -> State:
-    """A state of the whole divider as one of the machine."""
-    if machine.logs is None and not machine.words:
-        return project(whole, state, machine)
-    read = {bit for _, names in machine.words for bit in names}
-    if machine.logs is not None:
-        read |= {name for name, _ in machine.logs.registers}
-    kept = tuple(pair for pair in whole.variables if pair[0] in read or pair[0] in machine.names)
-    inner = replace(whole, variables=kept)
-    moved = linear.moved if machine.logs is not None else recode.moved
-    return moved(project(whole, state, inner), inner, machine)
 
 
 def orbit_of(track: Track, system: System, where: str) -> Orbit:
@@ -291,7 +278,7 @@ def _lasso(whole: System, machine: System, lasso: Lasso, owed: _Obligations) -> 
     """A lasso as an orbit, owing that it is one and that its start is a power-up state."""
     _check_items([Beat(lasso.start, 0)], [w for _, w in whole.variables], "lassos")
     orbit = orbit_of(lasso.track, machine, "lassos")
-    if orbit.start != placed(lasso.start, whole, machine):
+    if orbit.start != recode.placed(lasso.start, whole, machine):
         raise Rejected("lassos: begins elsewhere than its start")
     here = e.conj(
         e.eq(e.var(name, width), e.const(value, width))

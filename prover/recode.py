@@ -12,10 +12,11 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 from prover import expr as e
+from prover import linear
 from prover.effort import Effort
 from prover.expr import Expr
 from prover.solve import find
-from prover.system import State, System
+from prover.system import State, System, project
 
 SHORTEST = 6
 """Stages from which a chain is worth reading as a word."""
@@ -38,6 +39,19 @@ def moved(state: State, system: System, recoded: System) -> State:
     for word, bits in recoded.words:
         values[word] = sum(values[bit] << place for place, bit in enumerate(bits))
     return tuple(values[name] for name in recoded.names)
+
+
+def placed(state: State, whole: System, machine: System) -> State:
+    """A state of the whole divider as one of the machine."""
+    if machine.logs is None and not machine.words:
+        return project(whole, state, machine)
+    read = {bit for _, names in machine.words for bit in names}
+    if machine.logs is not None:
+        read |= {name for name, _ in machine.logs.registers}
+    kept = tuple(pair for pair in whole.variables if pair[0] in read or pair[0] in machine.names)
+    inner = replace(whole, variables=kept)
+    coded = linear.moved if machine.logs is not None else moved
+    return coded(project(whole, state, inner), inner, machine)
 
 
 def _chain(system: System) -> list[str]:

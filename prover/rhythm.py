@@ -20,6 +20,7 @@ from prover.system import State, System
 
 if TYPE_CHECKING:
     from prover.certificate import Stage
+    from prover.glitch import Glitches
 
 LONGEST_ROUND = 200_000
 """Runs in a wave's round beyond which the round is not written out."""
@@ -172,6 +173,22 @@ class Recovery:
     open: str = ""
 
 
+@dataclass(frozen=True, slots=True)
+class Good:
+    """The good states, as far as they can be written down; in their place, where there is none, what is claimed of.
+
+    phases  by number of state (first register lowest, the clock highest): φ, −1 for one that is not good; else None
+    runs    orbits, each with the half-cycle from which on it is looked at
+    told    what is written down, in words
+    none    no state is good: the runs are those that the ratio is claimed of
+    """
+
+    phases: tuple[int, ...] | None
+    runs: tuple[tuple[Orbit, int], ...]
+    told: str
+    none: bool = False
+
+
 Scope = Literal["reset", "initial", "any"]
 
 
@@ -200,6 +217,8 @@ class Rhythm:
     methods    by question ("orbit", "power-up"): how it was answered
     stages     where wide states are covered: what the cover claims, stage by stage
     shown      orbits of some power-up states, such as examples of loops, for findings to be shown by
+    good       the good states; None where they are not known
+    glitches   whether the output may pulse within a half-cycle; None where nothing was claimed
     races_won  the wave from reset if the edge won each race against a clear; None where there is no race
     """
 
@@ -220,6 +239,8 @@ class Rhythm:
     races_won: tuple[str, ...] = ()
     stages: tuple[Stage, ...] = ()
     shown: Mapping[State, Orbit] = field(default_factory=dict)
+    good: Good | None = None
+    glitches: Glitches | None = None
 
     def orbit_from(self, state: State) -> Orbit:
         """The orbit of a state: one that is shown, or followed now."""

@@ -3,7 +3,8 @@
 Every net is cut where its driver changes; a slice is one wire or one register. Wires are then replaced by
 what drives them, operands first. Wires in a circle can't be; the slices of a circle are first cut to single
 bits, because most circles are none bit by bit, and of a true one some are kept as `loop` registers that are
-forced to their driver all the time.
+forced to their driver all the time. What hangs on gate primitives is written out a second time, up to the nets that
+they drive: there no gate is simplified away.
 """
 
 from __future__ import annotations
@@ -14,7 +15,7 @@ from dataclasses import dataclass, field, replace
 from typing import Literal
 
 from prover import expr as e
-from prover.design import Edge, Force, Register, Signal
+from prover.design import Edge, Force, Gate, GateKind, Register, Signal
 from prover.expr import Expr
 from prover.verilog.names import Net, Report
 from prover.verilog.processes import Driver
@@ -43,6 +44,11 @@ class Slice:
     def width(self) -> int:
         return self.high - self.low + 1
 
+    @property
+    def gate(self) -> tuple[GateKind, tuple[Expr, ...]] | None:
+        """The gate that drives it, with its input bits."""
+        return self.driver.gate if self.driver is not None else None
+
 
 @dataclass(slots=True)
 class Drivers:
@@ -60,6 +66,8 @@ class Drivers:
     cuts: dict[tuple[Expr, int, int], Expr] = field(default_factory=dict)
     expand: Replacer = field(default_factory=lambda: Replacer({}))
     final: Replacer = field(default_factory=lambda: Replacer({}))
+    written: Replacer = field(default_factory=lambda: Replacer({}))
+    gates: dict[str, Gate] = field(default_factory=dict)
     searches: dict[tuple[Expr, int], Search] = field(default_factory=dict)
 
     def add(self, driver: Driver) -> None:
@@ -95,8 +103,11 @@ class Drivers:
                 break
             split |= more
         loops = {name for circle in circles for name in self._kept(circle)}
-        values = self._write_out(loops)
-        return self._registers(values, loops), self._signals(values)
+        values, self.final = self._write_out(loops)
+        gated = {name for name, part in self.named.items() if part.gate is not None}
+        to_gates, self.written = self._write_out(loops | gated) if gated else (values, self.final)
+        self.gates = {name: self._gate(self.named[name]) for name in self.named if name in gated}
+        return self._registers(values, loops), self._signals(values, to_gates)
 
     # -- who drives what -----------------------------------------------------------------------------------
 
@@ -285,25 +296,39 @@ class Drivers:
         assert driver is not None
         self.report.note("combinational loop: " + " -> ".join(map(printable, path)), driver.at)
 
-    def _write_out(self, loops: set[str]) -> dict[str, Expr]:
-        """For each slice its value over registers and inputs."""
+    def _write_out(self, kept: set[str]) -> tuple[dict[str, Expr], Replacer]:
+        """For each slice its value over registers, inputs and the slices that are kept, and what replaces them."""
         values: dict[str, Expr] = {}
         edges = self._edges()
-        self.final = Replacer({})
+        final = Replacer({})
         for name, part in self.named.items():
-            if part.word is not None and name not in loops:
+            if part.word is not None and name not in kept:
                 continue
             driven = part.driver is not None or part.net in self.inputs or part.initial is not None
             values[name] = e.var(name if driven else UNDRIVEN + name, part.width)
-            self.final.memo[e.var(name, part.width)] = values[name]
+            final.memo[e.var(name, part.width)] = values[name]
         for name in _operands_first(
-            {n: [o for o in os if o not in loops] for n, os in edges.items() if n not in loops}
+            {n: [o for o in os if o not in kept] for n, os in edges.items() if n not in kept}
         ):
             part = self.named[name]
             assert part.word is not None
-            values[name] = self.final(part.word)
-            self.final.memo[e.var(name, part.width)] = values[name]
-        return values
+            values[name] = final(part.word)
+            final.memo[e.var(name, part.width)] = values[name]
+        return values, final
+
+    def _gate(self, part: Slice) -> Gate:
+        """The gate that drives a slice, as written."""
+        assert part.driver is not None
+        assert part.driver.gate is not None
+        kind, bits = part.driver.gate
+        return Gate(
+            kind, tuple(self.written(self.expand(bit)) for bit in bits), self.report.where(part.driver.at)
+        )
+
+    def _as_written(self, word: Expr, value: Expr) -> Expr | None:
+        """A word of slices over the nets of gates; None if that is its value."""
+        made = self.written(word)
+        return None if made is value else made
 
     # -- results -------------------------------------------------------------------------------------------
 
@@ -319,7 +344,8 @@ class Drivers:
                 assert part.word is not None
                 assert part.driver is not None
                 value = self.final(part.word)
-                force = Force(e.TRUE, value, self.report.where(part.driver.at))
+                place = self.report.where(part.driver.at)
+                force = Force(e.TRUE, value, place, self._as_written(part.word, value))
                 out.append(Register(part.name, part.width, "loop", (), (force,), part.initial, where))
             else:
                 out.append(self._stored(part))
@@ -338,9 +364,11 @@ class Drivers:
             else:
                 edges.append(Edge(clock, data))
         for force in driver.forces if driver else ():
-            when, value = (self.final(x) for x in (self.expand(force.when), self._sliced(force.value, part)))
+            sliced = self._sliced(force.value, part)
+            when, value = self.final(self.expand(force.when)), self.final(sliced)
             if when is not e.FALSE:
-                forces.append(replace(force, when=when, value=value))
+                written = self._as_written(sliced, value)
+                forces.append(replace(force, when=when, value=value, written=written))
         where = self.report.where(driver.at if driver else part.net.offset)
         if driver and driver.latch:
             self.report.note(f"{printable(part.name)} is a latch: not every path assigns it", driver.at)
@@ -383,7 +411,7 @@ class Drivers:
                 self.report.fail(f"{printable(name)} is {never}, so that it {reading}", part.net.offset,
                                  f"drive {printable(name)}, or connect it")  # fmt: skip
 
-    def _signals(self, values: dict[str, Expr]) -> dict[str, Signal]:
+    def _signals(self, values: dict[str, Expr], to_gates: dict[str, Expr]) -> dict[str, Signal]:
         out: dict[str, Signal] = {}
         for net in self.nets:
             parts = [values[part.name] for part in reversed(self.slices[net])]
@@ -391,12 +419,25 @@ class Drivers:
                 # Nothing reads it, or it would have been refused: it has no value to show.
                 continue
             word = joined(parts)
+            written = joined([to_gates[part.name] for part in reversed(self.slices[net])])
+            drivers = [part.driver for part in self.slices[net] if part.driver is not None]
+            driven = self.report.where(drivers[0].at) if drivers else None
             where = self.report.where(net.offset)
             size = net.type.width
             for k in range(net.count):
                 name = net.part(k * size + size - 1, k * size)
                 value = cut(word, k * size + size - 1, k * size, self.cuts)
-                out[name] = Signal(name, value, net.msb, net.lsb, net.type.signed, where)
+                as_written = cut(written, k * size + size - 1, k * size, self.cuts)
+                out[name] = Signal(
+                    name,
+                    value,
+                    net.msb,
+                    net.lsb,
+                    net.type.signed,
+                    where,
+                    None if as_written is value else as_written,
+                    driven,
+                )
         return out
 
 

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, cast
 
 from pyverilog.vparser import ast as vast
 
 from prover import expr as e
-from prover.design import Design, Note
+from prover.design import Design, GateKind, Note
 from prover.errors import UserError
 from prover.expr import Expr
 from prover.verilog import tree
@@ -165,6 +165,7 @@ class Elaboration:
             files=self.library.source.files,
             sha256=self.library.source.sha256,
             notes=tuple(self.report.notes.values()),
+            gates=self.drivers.gates,
         )
         design.sanity_check()
         return design
@@ -181,7 +182,13 @@ class Elaboration:
 
     # -- drivers of nets -----------------------------------------------------------------------------------
 
-    def drive(self, places: list[Place], value: Expr, at: int) -> None:
+    def drive(
+        self,
+        places: list[Place],
+        value: Expr,
+        at: int,
+        gate: tuple[GateKind, tuple[Expr, ...]] | None = None,
+    ) -> None:
         """A continuous driver for the places, the uppermost bits for the first."""
         high = value.width
         for place in places:
@@ -202,7 +209,7 @@ class Elaboration:
             if low:
                 word = e.concat(word, e.const(0, low))
             word = e.resize(word, net.width, False)
-            self.drivers.add(Driver(net, ((1 << place.width) - 1) << low, at, word))
+            self.drivers.add(Driver(net, ((1 << place.width) - 1) << low, at, word, gate=gate))
 
     def _continuous(self) -> None:
         for scope, left, right, at in self.hierarchy.assigns:
@@ -268,8 +275,9 @@ class Elaboration:
             self.report.note("a floating output counts as any value", gate.at)
         else:
             value = _joined(kind, bits)
+        as_written = None if tri_state else (cast(GateKind, kind), tuple(bits))
         for place in places:
-            self.drive(place, value, gate.at)
+            self.drive(place, value, gate.at, as_written)
 
     def _processes(self) -> None:
         for scope, node in self.hierarchy.processes:

@@ -18,7 +18,7 @@ from typing import Any, NamedTuple, NoReturn
 from pyverilog.vparser import ast as vast
 
 from prover import expr as e
-from prover.design import Edge, Force
+from prover.design import Edge, Force, GateKind
 from prover.errors import UserError
 from prover.expr import Expr
 from prover.verilog import tree
@@ -41,7 +41,7 @@ class Driver:
 
     A wire has `word`, a register has edges and forces; `latch` tells the latter's kind. `procedural` marks
     what an always block assigns with =: no register where nothing else reads it, and only if something does
-    is `error` raised. `block` numbers the always blocks.
+    is `error` raised. `block` numbers the always blocks. `gate` has a gate's kind and its input bits.
     """
 
     net: Net
@@ -55,6 +55,7 @@ class Driver:
     keeps_itself: bool = False
     error: UserError | None = None
     block: int = 0
+    gate: tuple[GateKind, tuple[Expr, ...]] | None = None
 
 
 class _Result(NamedTuple):
