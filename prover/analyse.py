@@ -21,7 +21,7 @@ from prover.rhythm import Goal, Good, Loop, Orbit, Recovery, Rhythm, Scope, Star
 from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
-from prover.system import State, System, cone, project
+from prover.system import State, System, cone, lies_at, project
 
 COVERED_FIRST = 16
 """Bits of a state up to which the graph is quicker than to look for a cover."""
@@ -85,9 +85,18 @@ def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple
         return counted, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
     if graph.fits(system):
         return system, starts
-    machine = inner if graph.fits(inner) else recode.words(inner, effort)
-    placed = (recode.moved(project(system, s.state, inner), inner, machine) for s in starts)
+    machine = inner if graph.fits(inner) else recode.live(inner)
+    if not graph.fits(machine):
+        machine = recode.words(_decoded(machine, effort), effort)
+    placed = (project(system, s.state, machine) for s in starts)
     return machine, tuple(replace(s, state=state) for s, state in zip(starts, placed, strict=True))
+
+
+def _decoded(system: System, effort: Effort) -> System:
+    """The system with registers in Gray code read as numbers, if that can be shown to be right."""
+    machine, known = recode.gray(system)
+    claims = certificate.gray_obligations(system, machine, known)
+    return machine if all(certificate.discharge(claim, effort) for claim in claims) else system
 
 
 def _checked(settling: Settling, effort: Effort) -> Settling:
@@ -279,10 +288,7 @@ def _is_power_up(whole: System, machine: System, state: State, effort: Effort) -
     """Whether a state of the cone is part of a power-up state of the whole machine."""
     if whole is machine:
         return True
-    widths = dict(whole.variables)
-    values = machine.describe(state)
-    here = [e.eq(e.var(name, widths[name]), e.const(v, widths[name])) for name, v in values.items()]
-    return find(e.conj([whole.settled, *here]), effort) is not None
+    return find(e.bvand(whole.settled, lies_at(machine, state, whole)), effort) is not None
 
 
 def _loops_of(rhythm: Rhythm, more: Sequence[Orbit], goal: Goal | None) -> tuple[Loop, ...]:

@@ -646,6 +646,43 @@ def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligatio
     return Obligation("the states that reset leaves", e.conj(e.bvnot(hit) for hit in hits))
 
 
+# -- Gray codes --------------------------------------------------------------------------------------------
+
+
+def gray_obligations(system: System, numbered: System, known: Mapping[Expr, Expr]) -> Iterator[Obligation]:
+    """What has to hold of a system in which registers in Gray code are read as numbers: `known` expressions are the
+    numbers they are taken for, and each step, put back into Gray code, is the system's own."""
+    before, after = dict(system.variables), dict(numbered.variables)
+    back = {register: _in_gray(e.var(number, after[number])) for number, register in numbered.grays}
+    for at, (x, number) in enumerate(known.items()):
+        (value,) = e.substitute([x], back)
+        yield Obligation(f"the number that a Gray code stands for, {at}", e.bvnot(e.eq(value, number)))
+    codes = {register for _, register in numbered.grays}
+    ours = [*system.step, system.output, system.settled]
+    theirs = [*numbered.step, numbered.output, numbered.settled]
+    names = [
+        *(f"the step of {name}, in binary" for name in before),
+        "the output, in binary",
+        "at rest, in binary",
+    ]
+    stepped = [_in_gray(x) if name in codes else x for name, x in zip([*before, "", ""], theirs, strict=True)]
+    for name, mine, other in zip(names, e.substitute(_put_in(ours, known), back), stepped, strict=True):
+        if mine is not other:
+            yield Obligation(name, e.bvnot(e.eq(mine, other)))
+
+
+def _in_gray(number: Expr) -> Expr:
+    return e.bvxor(number, e.binary("bvlshr", number, e.const(1, number.width)))
+
+
+def _put_in(roots: Sequence[Expr], by_node: Mapping[Expr, Expr]) -> list[Expr]:
+    """The roots with whole nodes replaced."""
+    memo: dict[Expr, Expr] = {}
+    for node in e.topological(roots):
+        memo[node] = by_node[node] if node in by_node else e.rebuild(node, [memo[a] for a in node.args])
+    return [memo[root] for root in roots]
+
+
 # -- linear registers --------------------------------------------------------------------------------------
 
 

@@ -24,7 +24,7 @@ from prover.recode import placed
 from prover.rhythm import Goal, Orbit, Rhythm
 from prover.settling import settle
 from prover.solve import Model, find
-from prover.system import State, System, cone
+from prover.system import State, System, cone, lies_at
 from prover.tables import Ranking, Rounds
 
 Found = TypeVar("Found")
@@ -35,22 +35,25 @@ def collect(report: Report, effort: Effort) -> Evidence:
     ports, spec, rhythm = report.ports, report.spec, report.rhythm
     answers = rhythm.settling.answers
     if rhythm.settling.depth is None:
-        return Evidence(answers, False, (), None, None, (), None, ())
+        return Evidence(answers, False, False, (), (), None, None, (), None, ())
     whole, _ = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=_repeated(answers)
     )
     machine = rhythm.system
     word = machine.words[0][1] if machine.words else ()
-    left_out = len(machine.describe((0,) * len(machine.variables))) < len(whole.variables)
+    kept = len(machine.describe((0,) * len(machine.variables)))
+    inner = cone(whole) if kept < len(whole.variables) or machine.slices else whole
     resets = rhythm.scope == "reset" and bool(rhythm.starts)
     hold = _within(lambda: _hold(ports, effort)) if resets else None
     followed = rhythm.scope != "reset" or hold is not None
     goal = Goal(spec.period, spec.high_half_cycles)
     return Evidence(
         settling=answers,
-        cone=left_out,
+        cone=inner is not whole,
+        parts=kept < len(inner.variables) or bool(machine.slices),
+        gray=tuple(register for _, register in machine.grays),
         word=word,
-        matrix=_matrix(machine, cone(whole) if left_out else whole),
+        matrix=_matrix(machine, inner),
         reset=hold,
         starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
         everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
@@ -204,8 +207,7 @@ def _lassos(report: Report, whole: System, effort: Effort) -> tuple[Lasso, ...]:
 def _whole(state: State, whole: System, machine: System, effort: Effort) -> State | None:
     """A power-up state of the whole divider that is this one in the machine; None if there is none."""
     values = machine.describe(state)
-    here = [e.eq(e.var(n, w), e.const(values[n], w)) for n, w in whole.variables if n in values]
-    model = find(e.conj([whole.settled, *here]), effort)
+    model = find(e.bvand(whole.settled, lies_at(machine, state, whole)), effort)
     if model is None:
         return None
     found = tuple(values.get(name, model.get(name, 0)) for name in whole.names)

@@ -94,6 +94,8 @@ class Evidence:
     settling    answers to the questions about micro-steps and races, in the order in which `settle` asks them: None
                 where there is no such state, else values for which there is
     cone        whether registers that the output does not depend on are left out
+    parts       whether of registers that the output depends on in part only that part is kept
+    gray        registers in Gray code that are read as the number they stand for
     word        registers that are read as one word, lowest first; empty if there are none
     matrix      how all registers are read as one count of steps; None where they are not
     reset       the states that reset leaves; None where the claim begins elsewhere, or where they are not certain
@@ -104,6 +106,8 @@ class Evidence:
 
     settling: tuple[Model | None, ...]
     cone: bool
+    parts: bool
+    gray: tuple[str, ...]
     word: tuple[str, ...]
     matrix: Matrix | None
     reset: Hold | None
@@ -127,6 +131,8 @@ def as_object(evidence: Evidence) -> Object:
 
     out: Object = {
         "cone": evidence.cone,
+        "parts": evidence.parts,
+        "gray": list(evidence.gray),
         "word": list(evidence.word),
         "matrix": None if evidence.matrix is None else _matrix(evidence.matrix),
         "settling": list(evidence.settling),
@@ -198,7 +204,9 @@ def _item(item: Item) -> Object:
 
 def read(value: Any) -> Evidence:
     """The evidence in an object. Raises Malformed."""
-    of = _fields(value, "evidence", "cone word matrix settling reset starts everywhere lassos paths")
+    of = _fields(
+        value, "evidence", "cone parts gray word matrix settling reset starts everywhere lassos paths"
+    )
     paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(_list(of["paths"], "paths"))]
 
     def track(x: Any, where: str) -> Track:
@@ -214,11 +222,14 @@ def read(value: Any) -> Evidence:
         of = _fields(x, where, "lead loop start")
         return Lasso(track(of, where), _state(of["start"], f"{where}/start"))
 
-    if not isinstance(of["cone"], bool):
-        raise Malformed("cone: neither true nor false")
+    for name in ("cone", "parts"):
+        if not isinstance(of[name], bool):
+            raise Malformed(f"{name}: neither true nor false")
     return Evidence(
         settling=_each(of["settling"], "settling", _answer),
         cone=of["cone"],
+        parts=of["parts"],
+        gray=_each(of["gray"], "gray", _text),
         word=_each(of["word"], "word", _text),
         matrix=None if of["matrix"] is None else _read_matrix(of["matrix"]),
         reset=None if of["reset"] is None else _hold(of["reset"]),

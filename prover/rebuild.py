@@ -56,7 +56,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     ask.finish()
     scope, starts, why = _starts(ports, spec, whole, settling, evidence.reset, owed, effort)
     if settling.depth is None:
-        if evidence != Evidence(evidence.settling, False, (), None, None, (), None, ()):
+        if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, ()):
             raise Rejected("evidence about a divider of which nothing is known")
         return Rebuilt(whole, _nothing_known(whole, settling, scope), owed.listed())
     machine = machine_of(whole, evidence, owed)
@@ -136,15 +136,30 @@ def machine_of(whole: System, evidence: Evidence, owed: _Obligations) -> System:
     if evidence.cone and inner is whole:
         raise Rejected("registers are said to be left out that the output depends on")
     if evidence.matrix is not None:
-        if evidence.word:
-            raise Rejected("word: besides a matrix")
+        if evidence.word or evidence.parts or evidence.gray:
+            raise Rejected("registers in other coordinates besides a matrix")
         return _counted(inner, evidence.matrix, owed)
+    kept = recode.live(inner) if evidence.parts else inner
+    if evidence.parts and kept is inner:
+        raise Rejected("parts of registers are said to be left out that the output depends on")
+    numbered = _numbered(kept, evidence.gray, owed)
     if not evidence.word:
-        return inner
-    single = {name for name, width in inner.variables if width == 1 and name != inner.clock}
+        return numbered
+    single = {name for name, width in numbered.variables if width == 1 and name != numbered.clock}
     if len(set(evidence.word)) != len(evidence.word) or not set(evidence.word) <= single:
         raise Rejected("word: not registers of one bit, each once")
-    return recode.joined(inner, evidence.word)
+    return recode.joined(numbered, evidence.word)
+
+
+def _numbered(system: System, registers: Sequence[str], owed: _Obligations) -> System:
+    """The system with registers in Gray code read as numbers, owing that this is what its steps come to."""
+    if not registers:
+        return system
+    numbered, known = recode.gray(system)
+    if [register for _, register in numbered.grays] != list(registers):
+        raise Rejected("gray: not the registers that hold a Gray code")
+    owed.add(certificate.gray_obligations(system, numbered, known))
+    return numbered
 
 
 def _counted(inner: System, matrix: Matrix, owed: _Obligations) -> System:

@@ -143,6 +143,8 @@ class System:
     chain       the moments of one step; chain[0] is just after the clock's edge, chain[-1] is `step`
     words       variables that stand for several registers side by side (see recode), with these, lowest first
     logs        what the first variable counts, in a linear shift register (see linear)
+    slices      variables that are some bits of a register, with that register and the lowest of them (see recode)
+    grays       variables that are the number that a register in Gray code stands for, with that register (see recode)
     """
 
     design: Design
@@ -155,6 +157,8 @@ class System:
     chain: tuple[Moment, ...]
     words: tuple[tuple[str, tuple[str, ...]], ...] = ()
     logs: Logs | None = None
+    slices: tuple[tuple[str, str, int], ...] = ()
+    grays: tuple[tuple[str, str], ...] = ()
 
     @property
     def depth(self) -> int:
@@ -197,10 +201,12 @@ class System:
         """Register and clock values by name, in a state of this system."""
         if self.logs is not None:
             return {**self.logs.values(state[0]), self.clock: state[-1]}
-        bits = dict(self.words)
+        bits, codes = dict(self.words), dict(self.grays)
         out: dict[str, int] = {}
         for name, value in zip(self.names, state, strict=True):
-            if name in bits:
+            if name in codes:
+                out[codes[name]] = value ^ value >> 1
+            elif name in bits:
                 out |= {bit: value >> place & 1 for place, bit in enumerate(bits[name])}
             else:
                 out[name] = value
@@ -276,6 +282,30 @@ def cone(system: System) -> System:
 
 
 def project(system: System, state: State, onto: System) -> State:
-    """A state of the whole system as a state of its cone."""
-    values = system.describe(state)
+    """A state of the whole system as a state of its cone, in the cone's coordinates (but for a matrix's)."""
+    widths = dict(onto.variables)
+    values = dict(zip(system.names, state, strict=True)) | system.describe(state)
+    for name, register, low in onto.slices:
+        values.setdefault(name, values.get(register, 0) >> low & ((1 << widths[name]) - 1))
+    for name, register in onto.grays:
+        code = number = values.get(register, 0)
+        while code := code >> 1:
+            number ^= code
+        values.setdefault(name, number)
+    for name, bits in onto.words:
+        values.setdefault(name, sum(values.get(bit, 0) << place for place, bit in enumerate(bits)))
     return tuple(values[name] for name in onto.names)
+
+
+def lies_at(machine: System, state: State, whole: System) -> Expr:
+    """One bit over the whole system's variables: its registers are as a state of its cone has them."""
+    widths = dict(whole.variables)
+    parts = {name: (register, low) for name, register, low in machine.slices}
+    here = []
+    for name, value in machine.describe(state).items():
+        register, low = parts.get(name, (name, 0))
+        word = e.var(register, widths[register])
+        if name in parts:
+            word = e.extract(word, low + dict(machine.variables).get(name, 1) - 1, low)
+        here.append(e.eq(word, e.const(value, word.width)))
+    return e.conj(here)

@@ -168,6 +168,8 @@ def _machine(ports: Ports, made: Rebuilt) -> Object:
         "output": ports.output,
         "holds": dict(ports.holds),
         "registers": {register.name: register.width for register in ports.design.registers},
+        "parts": {name: [register, low] for name, register, low in system.slices},
+        "gray": dict(system.grays),
         "words": {name: list(bits) for name, bits in system.words},
         "variables": dict(system.variables),
         "micro_steps": made.rhythm.settling.depth,
