@@ -395,8 +395,9 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     stuck = follow(system, first_stuck.example, effort) if first_stuck else None
     rhythm = replace(rhythm, loops=found.loops, complete=True, stuck=stuck, never_stuck=stuck is None)
     if goal is None:
-        return rhythm
+        return replace(rhythm, census=graph.census(states, found, None))
     table = graph.ranks(states, found, goal.period, goal.high)
+    rhythm = replace(rhythm, census=graph.census(states, found, table))
     recovery = _graph_recovery(system, states, found, table, goal, effort)
     return replace(rhythm, recovery=recovery, good=_graph_good(rhythm, states, table, goal, effort))
 

@@ -195,6 +195,7 @@ FIGURES = (
     click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
     click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60]."),
     click.option("--json", "json_path", metavar="PATH", help="Write the report as JSON."),
+    click.option("--html", "html_path", metavar="PATH", help="Write the report as one page for a browser."),
 )
 TRACES = (
     click.option(
@@ -234,6 +235,7 @@ def main() -> None:
 def check(
     files: tuple[str, ...],
     json_path: str | None,
+    html_path: str | None,
     vcd_path: str | None,
     junit_path: str | None,
     sarif_path: str | None,
@@ -248,13 +250,13 @@ def check(
     Exit status: 0 proved, 1 refuted, 2 unusable input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    targets = Targets(json_path, vcd_path, junit_path, sarif_path, certificate_path)
+    targets = Targets(json_path, html_path, vcd_path, junit_path, sarif_path, certificate_path)
     return _run(files, options, targets)
 
 
 @main.command(short_help="Tell what a divider divides by.")
 @_options(*READING, *FIGURES)
-def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> Status:
+def measure(files: tuple[str, ...], json_path: str | None, html_path: str | None, **options: Any) -> Status:
     """Tell what a divider does: its period, its high time, and every loop that its registers can run into.
 
     \b
@@ -262,7 +264,7 @@ def measure(files: tuple[str, ...], json_path: str | None, **options: Any) -> St
     Exit status: 0 measured, 1 never settles, 2 bad input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    return _run(files, options, Targets(json_path))
+    return _run(files, options, Targets(json_path, html_path))
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
@@ -394,6 +396,7 @@ class Targets:
     """Where results go: a path each, `-` for standard output, None for what isn't asked for."""
 
     json: str | None = None
+    html: str | None = None
     vcd: str | None = None
     junit: str | None = None
     sarif: str | None = None
@@ -401,7 +404,7 @@ class Targets:
 
     def paths(self) -> list[str]:
         """All of them, a file in place of the folder that waves go to."""
-        named = (self.json, _target(self.vcd), self.junit, self.sarif, self.certificate)
+        named = (self.json, self.html, _target(self.vcd), self.junit, self.sarif, self.certificate)
         return [path for path in named if path]
 
 
@@ -417,7 +420,8 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
         report = _judged(files, spec, targets, progress.tell)
         waves = _vcd(report, targets.vcd)
         certified, remarks = _certificate(report, targets.certificate, files, progress.tell)
-        results = [*_json(report, targets.json), *waves, *_exchanged(files, report, targets), *certified]
+        results = [*_json(report, targets.json), *_html(report, targets.html), *waves]
+        results += [*_exchanged(files, report, targets), *certified]
         check_targets([result.path for result in results], report.ports.design.files)
         piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
         text = "".join(piped) or _told(report, [wave.path for wave in waves])
@@ -476,6 +480,10 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, targets: Targe
         results += _of_all(found, targets)
         if targets.json is not None:
             results.append(Result(targets.json, told.render_json(found)))
+        if targets.html is not None:
+            from prover.report import html
+
+            results.append(Result(targets.html, html.render_several(found)))
         piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
         text = piped or "\n".join([*texts, told.summary(found) + "\n"])
         sources = [file for outcome in found for file in outcome.files]
@@ -521,6 +529,14 @@ def _json(report: Report, path: str | None) -> list[Result]:
     from prover.report import json
 
     return [Result(path, json.render(report))]
+
+
+def _html(report: Report, path: str | None) -> list[Result]:
+    if path is None:
+        return []
+    from prover.report import html
+
+    return [Result(path, html.render(report))]
 
 
 def _certificate(

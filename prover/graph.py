@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING
 
 from prover import expr as e
 from prover.effort import Effort
-from prover.rhythm import Loop, Wave
+from prover.rhythm import Census, Loop, Wave
 from prover.system import State, System
 
 if TYPE_CHECKING:
@@ -216,6 +216,16 @@ def ranks(graph: Graph, found: Basins, period: int, high: int) -> Ranks:
         ahead, jumped = ahead[ahead], jumped * 2
     rank = np.where(phase >= 0, last, -1)
     return Ranks(np.where(rank == 0, phase, -1), rank)
+
+
+def census(graph: Graph, found: Basins, table: Ranks | None) -> Census:
+    """How many power-up states run into each loop, and how many need how long until they are good."""
+    import numpy as np
+
+    reached = found.on_loop[found.entry[graph.start]]
+    leading = np.bincount(reached, minlength=len(found.loops))
+    needed = np.bincount(table.rank[graph.start & (table.rank >= 0)]) if table is not None else np.array([])
+    return Census(tuple(leading.tolist()), tuple((k, int(n)) for k, n in enumerate(needed) if n))
 
 
 # -- with choices ------------------------------------------------------------------------------------------

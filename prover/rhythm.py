@@ -4,6 +4,7 @@ Wave      the output's runs, (level, half-cycles), a lead-in and a round that re
 Orbit     one start state's run: a path into a loop, and the loop
 Loop      a cycle of states that the machine settles into
 Recovery  how long until a state is good, over all power-up states
+Census    how many power-up states run where, and how many need how long
 Rhythm    all of it together
 """
 
@@ -189,6 +190,19 @@ class Good:
     none: bool = False
 
 
+@dataclass(frozen=True, slots=True)
+class Census:
+    """How many power-up states there are of each sort, of a machine whose graph was built.
+
+    leading   for each loop of the rhythm, the power-up states that run into it, those on it among them
+    recovery  pairs of half-cycles and the number of power-up states that need exactly so many until they are good;
+              states that never become good are in none of them. Empty where nothing says what good means
+    """
+
+    leading: tuple[int, ...]
+    recovery: tuple[tuple[int, int], ...]
+
+
 Scope = Literal["reset", "initial", "any"]
 
 
@@ -238,6 +252,7 @@ class Rhythm:
     methods: dict[str, str] = field(default_factory=dict)
     races_won: tuple[str, ...] = ()
     stages: tuple[Stage, ...] = ()
+    census: Census | None = None
     shown: Mapping[State, Orbit] = field(default_factory=dict)
     good: Good | None = None
     glitches: Glitches | None = None

@@ -365,7 +365,7 @@ def test_the_layout_names_every_file_and_no_other() -> None:
     found = {
         str(path.relative_to(ROOT))
         for folder in ("prover", "properties")
-        for suffix in ("*.py", "*.json")
+        for suffix in ("*.py", "*.json", "*.css")
         for path in (ROOT / folder).rglob(suffix)
     }
     assert sorted(named) == sorted(found)

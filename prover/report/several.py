@@ -49,7 +49,7 @@ def word(outcome: Outcome) -> str:
 
 def summary(found: Sequence[Outcome]) -> str:
     """A line for each divider and one for all, for people."""
-    rows = [(word(o), o.name, _says(o)) for o in found]
+    rows = [(word(o), o.name, _with_top(o)) for o in found]
     widest = max(len(harmless(name)) for _, name, _ in rows)
     lines = [f"{len(found)} divider{'s' * (len(found) != 1)}"]
     lines += [f"{verdict:8}  {harmless(name):{widest}}  {says}".rstrip() for verdict, name, says in rows]
@@ -57,18 +57,22 @@ def summary(found: Sequence[Outcome]) -> str:
     return harmless("\n".join([*lines, ", ".join(f"{count} {what}" for what, count in counted.items())]))
 
 
-def _says(outcome: Outcome) -> str:
-    """The divider's top and what is wrong with it, or what was measured."""
+def _with_top(outcome: Outcome) -> str:
+    tops = [outcome.report.ports.design.top] if outcome.report else []
+    return ": ".join(part for part in (*tops, says(outcome)) if part)
+
+
+def says(outcome: Outcome) -> str:
+    """What is wrong with the divider, or what was measured."""
     report = outcome.report
     if report is None:
         where = outcome.error.where if outcome.error else None
         text = outcome.error.message if outcome.error else outcome.fault or outcome.open
         return (f"line {where.line}: " if where and where.file == outcome.name else "") + text
-    top = report.ports.design.top
     if report.findings:
         wrong = [f.name for f in report.findings if f.verdict == report.verdict and f.waived is None]
-        return top + (f": {', '.join(wrong)}" if report.verdict != "proved" else "")
-    return f"{top}: {_measured(report)}"
+        return ", ".join(wrong) if report.verdict != "proved" else ""
+    return _measured(report)
 
 
 def _measured(report: Report) -> str:

@@ -16,6 +16,7 @@ from dataclasses import dataclass
 from itertools import islice
 
 from prover.path import Place, length
+from prover.report.words import digits
 from prover.rhythm import Orbit
 from prover.system import State
 
@@ -220,7 +221,7 @@ def draw(drawing: Drawing, style: Style, width: int) -> list[str]:
     margin = max(len(name) for name in names) + 2
     column = _column_width(drawing)
     out: list[str] = []
-    for block in _blocks(drawing, column, width - margin, style):
+    for block in blocks(drawing, column, width - margin, lambda piece: len(_fold(piece, drawing, style))):
         if out:
             out.append("")
         out.append(drawing.ruler.ljust(margin) + _ruler(drawing, block, column, style))
@@ -235,8 +236,7 @@ def draw(drawing: Drawing, style: Style, width: int) -> list[str]:
 
 def fold_text(length: int, style: Style) -> str:
     """How a fold is written: the number of half-cycles with digits in threes."""
-    digits = f"{length:,}".replace(",", " ")
-    return f" {style.fold} {digits} half-cycles {style.fold} "
+    return f" {style.fold} {digits(length)} half-cycles {style.fold} "
 
 
 def _column_width(drawing: Drawing) -> int:
@@ -247,14 +247,15 @@ def _column_width(drawing: Drawing) -> int:
             continue
         for piece in drawing.pieces:
             if not piece.folded:
-                for first, last, value in _value_runs(row, piece):
+                for first, last, value in value_runs(row, piece):
                     # Runs that the piece cuts off need not fit.
                     if piece.begins < first and last < piece.ends:
                         need = max(need, -(-(len(str(value)) + 1) // (last - first)))
     return min(need, 6)
 
 
-def _value_runs(row: Row, piece: Piece) -> Iterator[tuple[int, int, int]]:
+def value_runs(row: Row, piece: Piece) -> Iterator[tuple[int, int, int]]:
+    """The stretches of a piece over which a row keeps its value: begin, end (exclusive) and value."""
     first, value = piece.begins, row.value(piece.begins)
     for at in range(piece.begins + 1, piece.ends):
         now = row.value(at)
@@ -264,14 +265,16 @@ def _value_runs(row: Row, piece: Piece) -> Iterator[tuple[int, int, int]]:
     yield first, piece.ends, value
 
 
-def _blocks(drawing: Drawing, column: int, width: int, style: Style) -> Iterator[list[Piece]]:
-    """The pieces cut into blocks that fit the width."""
+def blocks(
+    drawing: Drawing, column: int, width: int, fold_width: Callable[[Piece], int]
+) -> Iterator[list[Piece]]:
+    """The pieces cut into blocks that fit the width; it, a column's and a fold's are in one unit."""
     block: list[Piece] = []
     left = width
     cycle = 2 * drawing.per
     for piece in drawing.pieces:
         if piece.folded:
-            need = len(_fold(piece, drawing, style))
+            need = fold_width(piece)
             if need > left and block:
                 yield block
                 block, left = [], width
@@ -282,7 +285,9 @@ def _blocks(drawing: Drawing, column: int, width: int, style: Style) -> Iterator
         while at < piece.ends:
             # Whole input cycles a line, so that lines begin at the same clock level.
             fits = max(cycle, left // column // cycle * cycle)
-            if left < cycle * column and block:
+            if (piece.ends - at) * column <= left:
+                fits = piece.ends - at
+            elif left < cycle * column and block:
                 yield block
                 block, left = [], width
                 continue
@@ -349,7 +354,7 @@ def _values(row: Row, block: list[Piece], drawing: Drawing, column: int, style: 
             kept = row.steady(piece.begins, piece.ends)
             line += " " * len(text) if kept is not None else style.fold.center(len(text))
             continue
-        for first, last, value in _value_runs(row, piece):
+        for first, last, value in value_runs(row, piece):
             room = (last - first) * column
             text = str(value)
             at_end = last == piece.ends and piece is block[-1]

@@ -19,6 +19,11 @@ def plural(count: int, noun: str) -> str:
     return f"{count} {noun}{'s' * (count != 1)}"
 
 
+def digits(value: int) -> str:
+    """A number with its digits in threes."""
+    return f"{value:,}".replace(",", " ")
+
+
 def origin(rhythm: Rhythm) -> str:
     """Where the ratio is claimed from."""
     if rhythm.scope == "any":
