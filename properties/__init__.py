@@ -1,7 +1,8 @@
 """The properties, in the order in which reports list them.
 
-A property is a module with a NAME and a function `judge(rhythm, spec) -> Finding`. It only reads the rhythm
-and judges it: to add one, write a file, name it here, and add a case of the same name.
+A property is a module with a NAME and a function `judge(rhythm, spec) -> Finding`, or None for what the spec does
+not claim; a function `claim(spec) -> str` gives its claim where that holds the spec's numbers. It only reads the
+rhythm and judges it: to add one, write a file, name it here, and add a case of the same name.
 """
 
 from __future__ import annotations
@@ -23,4 +24,5 @@ def claim(name: str, spec: Spec) -> str:
 
 def judge_all(rhythm: Rhythm, spec: Spec) -> tuple[Finding, ...]:
     """Every property's finding, with the user's waivers on those that are not proved."""
-    return with_waivers([module.judge(rhythm, spec) for module in ORDER], spec)
+    judged = [module.judge(rhythm, spec) for module in ORDER]
+    return with_waivers([finding for finding in judged if finding is not None], spec)

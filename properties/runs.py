@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
+from typing import Protocol
 
 from prover.findings import Counterexample, Fact, Finding, Verdict
 from prover.path import Run
-from prover.rhythm import Orbit, Rhythm
+from prover.rhythm import Mean, Orbit, Rhythm, Wave
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,18 +45,89 @@ def high_runs(runs: Iterable[Run]) -> Iterator[Span]:
         at += length
 
 
-def judge_runs(
-    rhythm: Rhythm, name: str, claim: str, wanted: int, measure: Measure, noun: str, facts: dict[str, Fact]
-) -> Finding:
-    """Whether every measured span is `wanted` half-cycles long, on the orbits of the rhythm's scope.
+class Rule(Protocol):
+    """What measured spans have to be."""
+
+    @property
+    def noun(self) -> str:
+        """What a span is called."""
+
+    @property
+    def holds(self) -> str:
+        """What is said where every span is as it has to be."""
+
+    def measure(self, runs: Iterable[Run]) -> Iterator[Span]:
+        """The spans of the output's runs."""
+
+    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+        """The first span that is otherwise, and what is wrong with it. The spans are those of a lead-in and some
+        rounds of the wave; None of a wave is a run that did not close."""
+
+
+@dataclass(frozen=True, slots=True)
+class Exactly:
+    """Every span is `wanted` half-cycles long."""
+
+    noun: str
+    measure: Measure
+    wanted: int
+
+    @property
+    def holds(self) -> str:
+        return f"every {self.noun} is {self.wanted} half-cycles"
+
+    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+        for span in spans:
+            if span.length != self.wanted:
+                return span, f"a {self.noun} of {span.length} half-cycles, not {self.wanted}"
+        return None
+
+
+@dataclass(frozen=True, slots=True)
+class OnAverage:
+    """Gaps have the mean, every one of them being one of the two lengths next to it."""
+
+    mean: Mean
+    noun: str = "rise-to-rise gap"
+
+    @property
+    def holds(self) -> str:
+        ratio = self.mean.ratio
+        return f"every {self.noun} is next to {ratio} input cycles, which is the mean of those once round the wave"
+
+    def measure(self, runs: Iterable[Run]) -> Iterator[Span]:
+        return gaps(runs)
+
+    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+        low, high = self.mean.lengths(span.length for span in spans)
+        for span in spans:
+            if span.length not in (low, high):
+                either = f"{low}" if low == high else f"{low} or {high}"
+                return span, f"a {self.noun} of {span.length} half-cycles, not {either}"
+        if wave is None or wave.period is None or not spans:
+            return None
+        count = len(wave.runs) // 2
+        if wave.period == 2 * self.mean.ratio * count:
+            return None
+        # The first stretch that is once round.
+        sums = (sum(span.length for span in spans[i : i + count]) for i in range(len(spans)))
+        begins = next((span.begins for span, n in zip(spans, sums, strict=True) if n == wave.period), 0)
+        many = f"{count} {self.noun}s take" if count != 1 else f"a {self.noun} takes"
+        return Span(
+            begins, wave.period
+        ), f"{many} {wave.period} half-cycles, not {2 * self.mean.ratio * count}"
+
+
+def judge_runs(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[str, Fact]) -> Finding:
+    """Whether every measured span follows the rule, on the orbits of the rhythm's scope.
 
     Without start states the scope is every loop of every power-up state."""
     if rhythm.scope == "any":
-        return _on_loops(rhythm, name, claim, wanted, measure, noun, facts)
+        return _on_loops(rhythm, name, claim, rule, facts)
     found: Verdict = "proved" if rhythm.orbits else "open"
     says = [] if rhythm.orbits else [rhythm.open or "no start state is known"]
     for start, orbit in zip(rhythm.starts, rhythm.orbits, strict=True):
-        broken = _broken(orbit, wanted, measure, noun, start.cause)
+        broken = _broken(orbit, rule, start.cause)
         if broken:
             says = [f"{start.cause}: {broken.text}"]
             method = "counterexample replayed on the machine"
@@ -63,7 +135,7 @@ def judge_runs(
         if not orbit.closed:
             found = "open"
             says.append(orbit.why)
-    text = f"every {noun} is {wanted} half-cycles" if found == "proved" else "; ".join(dict.fromkeys(says))
+    text = rule.holds if found == "proved" else "; ".join(dict.fromkeys(says))
     bound = "" if found == "proved" else f"covered: {_covered(rhythm)}"
     return Finding(name, found, claim, text, rhythm.methods.get("orbit", ""), bound, facts)
 
@@ -75,15 +147,13 @@ def _covered(rhythm: Rhythm) -> str:
     return f"{min(lengths)} half-cycles from each start state"
 
 
-def _on_loops(
-    rhythm: Rhythm, name: str, claim: str, wanted: int, measure: Measure, noun: str, facts: dict[str, Fact]
-) -> Finding:
+def _on_loops(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[str, Fact]) -> Finding:
     for loop in rhythm.loops:
-        # Twice round the wave shows every span of it whole.
-        spans = list(measure([*loop.wave.runs, *loop.wave.runs, *loop.wave.runs]))
-        if loop.stuck or any(span.length != wanted for span in spans):
+        # Thrice round the wave shows every span of it whole.
+        spans = list(rule.measure([*loop.wave.runs, *loop.wave.runs, *loop.wave.runs]))
+        if loop.stuck or rule.broken(spans, loop.wave):
             orbit = rhythm.orbit_from(loop.example)
-            broken = _broken(orbit, wanted, measure, noun, "power-up state on a loop")
+            broken = _broken(orbit, rule, "power-up state on a loop")
             if broken:
                 method = "counterexample replayed on the machine"
                 return Finding(
@@ -93,24 +163,23 @@ def _on_loops(
     if rhythm.complete:
         count = len(rhythm.loops)
         where = f"each of {count} loops" if count != 1 else "the only loop"
-        text = f"every {noun} is {wanted} half-cycles on {where}"
-        return Finding(name, "proved", claim, text, method, facts=facts)
+        return Finding(name, "proved", claim, f"{rule.holds} on {where}", method, facts=facts)
     return Finding(name, "open", claim, rhythm.open or "not all loops are known", method, facts=facts)
 
 
-def _broken(orbit: Orbit, wanted: int, measure: Measure, noun: str, cause: str) -> Counterexample | None:
-    """The first span of another length, or a round in which there is none."""
-    seen = False
-    for span in measure(orbit.runs(rounds=3)):
-        seen = True
-        if span.length != wanted:
-            text = f"a {noun} of {span.length} half-cycles, not {wanted}, from half-cycle {span.begins} on"
-            return Counterexample(orbit, span.begins, span.begins + span.length, text, cause)
+def _broken(orbit: Orbit, rule: Rule, cause: str) -> Counterexample | None:
+    """The first span that breaks the rule, or a round in which there is none."""
     wave = orbit.wave()
+    spans = list(rule.measure(orbit.runs(rounds=3)))
+    broken = rule.broken(spans, wave)
+    if broken is not None:
+        span, says = broken
+        text = f"{says}, from half-cycle {span.begins} on"
+        return Counterexample(orbit, span.begins, span.begins + span.length, text, cause)
     if wave is not None and wave.stuck:
         lead = orbit.lead_half_cycles
         text = f"the output stays {wave.runs[0][0]} from half-cycle {lead} on"
         return Counterexample(orbit, lead, lead + (orbit.loop_half_cycles or 2), text, cause)
-    if orbit.closed and not seen:
-        return Counterexample(orbit, 0, orbit.lead_half_cycles, f"no {noun} at all", cause)
+    if orbit.closed and not spans:
+        return Counterexample(orbit, 0, orbit.lead_half_cycles, f"no {rule.noun} at all", cause)
     return None

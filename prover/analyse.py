@@ -17,7 +17,7 @@ from prover.errors import InternalError, UserError
 from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
-from prover.rhythm import Goal, Good, Loop, Orbit, Recovery, Rhythm, Scope, Start, Wave
+from prover.rhythm import NOWHERE, Goal, Good, Loop, Mean, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
@@ -250,18 +250,22 @@ def _with_glitches(rhythm: Rhythm, ports: Ports, whole: System, goal: Goal, effo
 # -- from everywhere ---------------------------------------------------------------------------------------
 
 
-def _goal(spec: Spec, rhythm: Rhythm) -> Goal | None:
-    """The claim, or when measuring the wave that the first start runs into, if it has one high run a period."""
+def _goal(spec: Spec, rhythm: Rhythm) -> Goal | Mean | None:
+    """The claim, or when measuring the wave that the first start runs into, if it has one high run a period. A mean
+    stays one where no start state runs into a wave that has it."""
+    waves = [orbit.wave() for orbit in rhythm.orbits]
+    if spec.ratio is not None and spec.mean:
+        mean = Mean(spec.ratio, spec.high)
+        return mean.among(waves) or mean
     if spec.ratio is not None:
         return Goal(spec.period, spec.high_half_cycles)
-    waves = [orbit.wave() for orbit in rhythm.orbits]
     wave = waves[0] if waves else None
     if wave is None or wave.stuck or len(wave.runs) != 2:
         return None
-    return Goal(wave.period or 0, wave.high or 0)
+    return Goal.of(wave)
 
 
-def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | None, effort: Effort) -> Rhythm:
+def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | Mean | None, effort: Effort) -> Rhythm:
     """The rhythm completed with every power-up state, by the first engine that can take the machine."""
     found = _by_either(rhythm, goal, effort)
     lost = found.recovery.lost if found.recovery else None
@@ -274,10 +278,18 @@ def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | None, effort: Eff
     return found
 
 
-def _by_either(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
-    """Small machines by their graph; middling ones by a cover if that is soon found, and by their graph if not."""
-    if rhythm.system.bits <= COVERED_FIRST and graph.fits(rhythm.system):
+def _by_either(rhythm: Rhythm, goal: Goal | Mean | None, effort: Effort) -> Rhythm:
+    """Small machines by their graph; middling ones by a cover if that is soon found, and by their graph if not.
+
+    Covers know waves of one pulse only."""
+    several = isinstance(goal, Mean) or (goal is not None and bool(goal.runs))
+    if (several or rhythm.system.bits <= COVERED_FIRST) and graph.fits(rhythm.system):
         return _by_graph(rhythm, goal, effort)
+    if several or isinstance(goal, Mean):
+        why = (
+            f"{rhythm.system.bits - 1} register bits: too many for their graph, and a wave of several pulses"
+        )
+        return replace(rhythm, recovery=Recovery(None, False, open=why), open=rhythm.open or why)
     if not graph.fits(rhythm.system) or rhythm.system.logs is not None:
         return _by_cover(rhythm, goal, effort)
     found = _by_cover(rhythm, goal, Effort(effort.left / 4))
@@ -299,7 +311,7 @@ def _loops_of(rhythm: Rhythm, more: Sequence[Orbit], goal: Goal | None) -> tuple
         if wave is None:
             continue
         example = path.first_state(run.loop)
-        good = goal is not None and wave.divides_by(goal.period, goal.high)
+        good = goal is not None and goal.fits(wave)
         loops.setdefault(
             min(beat.state for beat in path.beats(run.loop)),
             Loop(example, run.loop_half_cycles, wave, good),
@@ -374,7 +386,7 @@ def _corners(system: System) -> list[State]:
     return [zeros, ones, (1, *zeros[1:]), *(tuple(rng.getrandbits(w) for w in widths) for _ in range(2))]
 
 
-def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
+def _by_graph(rhythm: Rhythm, goal: Goal | Mean | None, effort: Effort) -> Rhythm:
     system = rhythm.system
     states = graph.build(system, effort)
     methods = {
@@ -387,7 +399,12 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
         return replace(rhythm, recovery=Recovery(None, False, open=why), open=why)
     if system.choices:
         return _by_graph_with_choices(rhythm, states, goal, effort)
-    found = graph.basins(states, effort, goal.period if goal else None, goal.high if goal else None)
+    found = graph.basins(states, effort, goal if isinstance(goal, Goal) else None)
+    if isinstance(goal, Mean):
+        aim = goal.among(loop.wave for loop in found.loops)
+        if aim is not None:
+            found = graph.basins(states, effort, aim)
+        goal = aim or NOWHERE
     faults = certificate.loop_faults(system, found.members, found.distance, effort)
     if faults:
         raise InternalError(f"a list of loops fails its check: {'; '.join(faults)}")
@@ -396,7 +413,7 @@ def _by_graph(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     rhythm = replace(rhythm, loops=found.loops, complete=True, stuck=stuck, never_stuck=stuck is None)
     if goal is None:
         return replace(rhythm, census=graph.census(states, found, None))
-    table = graph.ranks(states, found, goal.period, goal.high)
+    table = graph.ranks(states, found, goal)
     rhythm = replace(rhythm, census=graph.census(states, found, table))
     recovery = _graph_recovery(system, states, found, table, goal, effort)
     return replace(rhythm, recovery=recovery, good=_graph_good(rhythm, states, table, goal, effort))
@@ -430,7 +447,7 @@ def _graph_recovery(
         # A state on a false loop says most; the shortest lead-in otherwise.
         nearest = lost[np.argmin(found.distance[lost], axis=0)]
         return Recovery(None, False, lost=follow(system, states.state(int(nearest)), effort), illegal=illegal)
-    faults = certificate.rank_faults(system, table.phase, table.rank, goal.period, goal.high, effort)
+    faults = certificate.rank_faults(system, table.phase, table.rank, goal, effort)
     if faults:
         raise InternalError(f"a recovery certificate fails: {'; '.join(faults)}")
     at_power_up = np.where(states.start, table.rank, -1)
@@ -438,8 +455,13 @@ def _graph_recovery(
     return Recovery(int(at_power_up[slowest]), True, states.state(slowest), illegal=illegal)
 
 
-def _by_graph_with_choices(rhythm: Rhythm, states: graph.Graph, goal: Goal | None, effort: Effort) -> Rhythm:
+def _by_graph_with_choices(
+    rhythm: Rhythm, states: graph.Graph, goal: Goal | Mean | None, effort: Effort
+) -> Rhythm:
     system = rhythm.system
+    if isinstance(goal, Mean):
+        why = "no wave with the mean is known, and x makes others"
+        return replace(rhythm, recovery=Recovery(None, False, open=why), open=rhythm.open or why)
     frozen = [graph.held_level_with_choices(states, level) & states.start for level in (0, 1)]
     never = not any(bool(f.any()) for f in frozen)
     why = "" if never else "a value that x stands for may freeze the output"
@@ -447,14 +469,14 @@ def _by_graph_with_choices(rhythm: Rhythm, states: graph.Graph, goal: Goal | Non
     rhythm = replace(rhythm, loops=loops, never_stuck=never, open=rhythm.open or why)
     if goal is None:
         return rhythm
-    table = graph.ranks_with_choices(states, goal.period, goal.high, effort)
+    table = graph.ranks_with_choices(states, goal, effort)
     if table is None:
         return replace(rhythm, recovery=Recovery(None, False, open="too many states with x to cover"))
     rhythm = replace(rhythm, good=_graph_good(rhythm, states, table, goal, effort))
     if (states.start & (table.rank < 0)).any():
         why = "a value that x stands for may keep some power-up state from recovering"
         return replace(rhythm, recovery=Recovery(None, False, open=why))
-    faults = certificate.rank_faults(system, table.phase, table.rank, goal.period, goal.high, effort)
+    faults = certificate.rank_faults(system, table.phase, table.rank, goal, effort)
     if faults:
         raise InternalError(f"a recovery certificate fails: {'; '.join(faults)}")
     worst = int(table.rank[states.start].max())

@@ -17,7 +17,7 @@ from prover import expr as e
 from prover import path
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.path import Beat, Item, Step
+from prover.path import Beat, Item, Run, Step
 from prover.rhythm import LONGEST_ROUND, Goal, Orbit
 from prover.system import State, System, settled_when
 
@@ -260,9 +260,7 @@ def differs(system: System, source: tuple[list[Expr], Expr], target: tuple[list[
 # -- graphs ------------------------------------------------------------------------------------------------
 
 
-def rank_faults(
-    system: System, phase: np.ndarray, rank: np.ndarray, period: int, high: int, effort: Effort
-) -> list[str]:
+def rank_faults(system: System, phase: np.ndarray, rank: np.ndarray, goal: Goal, effort: Effort) -> list[str]:
     """What is wrong with the claim that every settled state recovers within its rank.
 
     `phase` and `rank` have a value for every state number, as `graph` counts them: first register lowest, clock
@@ -273,6 +271,8 @@ def rank_faults(
 
     effort.say("checking phases and ranks")
     count = 1 << system.bits
+    ends = np.cumsum([length for _, length in goal.pulses])
+    level = 1 - np.searchsorted(ends, phase, side="right") % 2
     numbers = np.arange(count, dtype=np.uint64)
     shifts = np.cumsum([0, *(w for _, w in system.variables)])
     values = {
@@ -294,9 +294,9 @@ def rank_faults(
         after = np.zeros(count, dtype=np.int64)
         for part, shift in zip(step, shifts[:-1], strict=True):
             after += part.astype(np.int64) << int(shift)
-        if (good & (out.astype(np.int64) != (phase < high))).any():
+        if (good & (out.astype(np.int64) != level)).any():
             faults.append("a good state whose output does not fit its phase")
-        if (good & (phase[after] != (phase + 1) % period)).any():
+        if (good & (phase[after] != (phase + 1) % goal.period)).any():
             faults.append("a good state whose successor has another phase than the next")
         if (claimed & ~good & ((rank[after] >= rank) | (rank[after] < 0))).any():
             faults.append("a state whose successor has no lower rank")
@@ -475,13 +475,22 @@ def good_from(run: Orbit, recovery: int, claim: CoverClaim | Goal) -> bool:
         at += size
         if at > begins:
             runs.append((level, at - begins))
-    # All but the first and the last run are whole.
-    whole = all(size == (claim.high if level else claim.period - claim.high) for level, size in runs[1:-1])
-    ends = all(
-        size <= (claim.high if level else claim.period - claim.high) for level, size in (runs[0], runs[-1])
-    )
     # Twice round shows the seam of the loop; a round that holds no change at all is not periodic.
-    return len(runs) > 2 and whole and ends and run.loop_half_cycles % claim.period == 0
+    goal = claim if isinstance(claim, Goal) else Goal(claim.period, claim.high)
+    return len(runs) > 2 and run.loop_half_cycles % goal.period == 0 and _is_stretch(runs, goal.pulses)
+
+
+def _is_stretch(runs: Sequence[Run], pulses: Sequence[Run]) -> bool:
+    """Whether the runs are a stretch of the wave with the period `pulses`: whole but for the first and the last."""
+    (first_level, first), *inner, (_, last) = runs
+    for begins in range(len(pulses)):
+        level, most = pulses[begins - 1]
+        if level != first_level or first > most:
+            continue
+        whole = all(run == pulses[(begins + i) % len(pulses)] for i, run in enumerate(inner))
+        if whole and last <= pulses[(begins + len(inner)) % len(pulses)][1]:
+            return True
+    return False
 
 
 def cover_obligations(system: System, assumed: Expr, claim: CoverClaim) -> Iterator[Obligation]:

@@ -182,6 +182,7 @@ CLAIMING = (
     click.option(
         "--ratio", required=True, metavar="N", help="Input cycles per output period: 2.5, or '2*(div+1)'."
     ),
+    click.option("--mean", is_flag=True, help="The ratio, such as 16/3, is that of the mean gap."),
     click.option("--high", metavar="H", help="High time in half-cycles [N, which is 50 %]."),
     click.option(
         "--each", multiple=True, metavar="PORT[=VALUES]", help="Claim it for each value: div=1..15."
@@ -325,7 +326,7 @@ def _claimed(options: dict[str, Any]) -> dict[str, Any]:
     """The ratio and the high time, each a number or a formula, and the values that they are claimed for."""
     from prover import formula
 
-    claimed: dict[str, Any] = {"each": {}}
+    claimed: dict[str, Any] = {"each": {}, "mean": bool(options.get("mean"))}
     ratio, high = options.get("ratio"), options.get("high")
     if ratio is not None and PLAIN_RATIO.fullmatch(ratio):
         claimed["ratio"] = read_ratio(ratio)

@@ -21,7 +21,7 @@ from prover.expr import Expr
 from prover.findings import Report
 from prover.ports import Ports
 from prover.recode import placed
-from prover.rhythm import Goal, Orbit, Rhythm
+from prover.rhythm import Goal, Orbit, Rhythm, goal_of
 from prover.settling import settle
 from prover.solve import Model, find
 from prover.system import State, System, cone, lies_at
@@ -46,7 +46,7 @@ def collect(report: Report, effort: Effort) -> Evidence:
     resets = rhythm.scope == "reset" and bool(rhythm.starts)
     hold = _within(lambda: _hold(ports, effort)) if resets else None
     followed = rhythm.scope != "reset" or hold is not None
-    goal = Goal(spec.period, spec.high_half_cycles)
+    goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
     return Evidence(
         settling=answers,
         cone=inner is not whole,
@@ -147,12 +147,12 @@ def _is_regular(system: System, table: Ranking | Rounds) -> bool:
 def _table(system: System, goal: Goal, effort: Effort) -> Ranking | Rounds | None:
     states = graph.build(system, effort)
     if system.choices:
-        ranks = graph.ranks_with_choices(states, goal.period, goal.high, effort)
+        ranks = graph.ranks_with_choices(states, goal, effort)
         if ranks is None or (states.start & (ranks.rank < 0)).any():
             return None
     else:
-        found = graph.basins(states, effort, goal.period, goal.high)
-        ranks = graph.ranks(states, found, goal.period, goal.high)
+        found = graph.basins(states, effort, goal)
+        ranks = graph.ranks(states, found, goal)
         if (states.start & (ranks.rank < 0)).any():
             return _rounds(states, found)
     bound = int(ranks.rank[states.start].max())

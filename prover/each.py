@@ -11,6 +11,7 @@ import itertools
 import math
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass, replace
+from fractions import Fraction
 
 from prover.design import Design, Register
 from prover.effort import Effort
@@ -36,7 +37,7 @@ class ValueRow:
 
     values   each input with the first and the last of its values; only the last input has several
     refuted, open  properties that are, waived ones among them
-    periods  the least and the greatest period that is claimed, in half-cycles
+    ratios   the least and the greatest ratio that is claimed, in input cycles
     worst    the worst recovery, in half-cycles; None where some state never recovers, or that is not known
     """
 
@@ -44,7 +45,7 @@ class ValueRow:
     verdict: Verdict
     refuted: tuple[str, ...]
     open: tuple[str, ...]
-    periods: tuple[int, int]
+    ratios: tuple[Fraction, Fraction]
     worst: int | None
 
 
@@ -464,7 +465,7 @@ def _row(values: Values, report: Report) -> ValueRow:
         verdict=overall(report.findings),
         refuted=tuple(name for name, verdict in verdicts.items() if verdict == "refuted"),
         open=tuple(name for name, verdict in verdicts.items() if verdict == "open"),
-        periods=(report.spec.period, report.spec.period),
+        ratios=(report.spec.ratio or Fraction(0),) * 2,
         worst=recovery.worst if recovery else None,
     )
 
@@ -477,10 +478,10 @@ def _joined(a: ValueRow, b: ValueRow) -> ValueRow | None:
         return None
     if (a.verdict, a.refuted, a.open) != (b.verdict, b.refuted, b.open):
         return None
-    periods = [*a.periods, *b.periods]
+    ratios = [*a.ratios, *b.ratios]
     return replace(
         a,
         values=(*fixed, (name, (low, high))),
-        periods=(min(periods), max(periods)),
+        ratios=(min(ratios), max(ratios)),
         worst=None if a.worst is None or b.worst is None else max(a.worst, b.worst),
     )

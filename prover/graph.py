@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING
 
 from prover import expr as e
 from prover.effort import Effort
-from prover.rhythm import Census, Loop, Wave
+from prover.rhythm import Census, Goal, Loop, Wave
 from prover.system import State, System
 
 if TYPE_CHECKING:
@@ -118,8 +118,8 @@ class Basins:
     position: np.ndarray
 
 
-def basins(graph: Graph, effort: Effort, period: int | None, high: int | None) -> Basins:
-    """All loops, and where every state enters one. A loop is good if it has that period and high time."""
+def basins(graph: Graph, effort: Effort, goal: Goal | None) -> Basins:
+    """All loops, and where every state enters one. A loop is good if it has the goal's wave."""
     import numpy as np
 
     after = graph.successors[0]
@@ -155,7 +155,7 @@ def basins(graph: Graph, effort: Effort, period: int | None, high: int | None) -
             states.append(at)
             at = step[at]
         wave = Wave.of_round((bit, len(list(run))) for bit, run in groupby(level[s] for s in states))
-        good = period is not None and high is not None and wave.divides_by(period, high)
+        good = goal is not None and goal.fits(wave)
         on_loop[states] = len(loops)
         position[states] = np.arange(len(states))
         loops.append(Loop(graph.state(min(states)), len(states), wave, good))
@@ -183,7 +183,7 @@ def _walk_to(after: np.ndarray, target: np.ndarray, bits: int) -> tuple[np.ndarr
 class Ranks:
     """Good states and how far the others are from them.
 
-    phase   φ of each good state, in half-cycles from its rise, −1 for a state that is not good
+    phase   φ of each good state, in half-cycles from where the wave begins; −1 for a state that is not good
     rank    ρ: half-cycles until good; −1 for a state that never is
     """
 
@@ -191,21 +191,31 @@ class Ranks:
     rank: np.ndarray
 
 
-def ranks(graph: Graph, found: Basins, period: int, high: int) -> Ranks:
+def level_at(goal: Goal, phase: np.ndarray) -> np.ndarray:
+    """The goal's output in each phase: runs alternate, the first one is high."""
+    import numpy as np
+
+    ends = np.cumsum([length for _, length in goal.pulses])
+    return 1 - np.searchsorted(ends, phase, side="right") % 2
+
+
+def ranks(graph: Graph, found: Basins, goal: Goal) -> Ranks:
     """The phase of every good state and the rank of every other, without choices."""
     import numpy as np
 
-    after = graph.successors[0]
+    after, period = graph.successors[0], goal.period
     phase_on_loop = np.full(len(after), -1, dtype=np.int64)
     for loop, states in zip(found.loops, found.members, strict=True):
         if loop.good:
-            levels = graph.output[states]
-            rises = np.flatnonzero((levels == 1) & (np.roll(levels, 1) == 0))
-            phase_on_loop[states] = (np.arange(len(states)) - rises[0]) % period
+            levels = graph.output[states].astype(np.uint8)[:period]
+            # Where the wave begins, once round the loop. Good loops are whole periods long.
+            wanted = np.concatenate([np.full(n, v, dtype=np.uint8) for v, n in goal.pulses])
+            rise = bytes(np.concatenate([levels, levels])).find(bytes(wanted))
+            phase_on_loop[states] = (np.arange(len(states)) - rise) % period
     entered = phase_on_loop[found.entry]
     phase = np.where(entered >= 0, (entered - found.distance) % period, -1)
     # A state is good if its own output and that of all states behind it fit the phase.
-    fits_here = (phase >= 0) & (graph.output == (phase < high))
+    fits_here = (phase >= 0) & (graph.output == level_at(goal, phase))
     bad = ~fits_here
     # Half-cycles until the last misfit is behind: carried backwards along the trees by doubling.
     last = np.where(bad & (phase >= 0), 1, 0).astype(np.int64)
@@ -231,16 +241,15 @@ def census(graph: Graph, found: Basins, table: Ranks | None) -> Census:
 # -- with choices ------------------------------------------------------------------------------------------
 
 
-def ranks_with_choices(graph: Graph, period: int, high: int, effort: Effort) -> Ranks | None:
+def ranks_with_choices(graph: Graph, goal: Goal, effort: Effort) -> Ranks | None:
     """The same where a step depends on choices; None if the table of states and phases would be too large."""
     import numpy as np
 
     count = len(graph.output)
-    if count * period > 1 << 24:
+    if count * goal.period > 1 << 24:
         return None
     effort.say("finding the good states under every choice")
-    phases = np.arange(period)
-    valid = graph.output[:, None] == (phases[None, :] < high)
+    valid = graph.output[:, None] == level_at(goal, np.arange(goal.period))[None, :]
     while True:
         kept = valid.copy()
         for row in graph.successors:

@@ -19,7 +19,7 @@ from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
 from prover.ports import Ports
-from prover.rhythm import LONGEST_ROUND, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start
+from prover.rhythm import LONGEST_ROUND, NOWHERE, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, goal_of
 from prover.settling import Settling, settle
 from prover.solve import Model
 from prover.spec import Spec
@@ -65,8 +65,9 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
         system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
         recovery=None, stuck=None, never_stuck=False, open=why,
     ), evidence.starts, owed)  # fmt: skip
-    goal = Goal(spec.period, spec.high_half_cycles)
     lassos = [_lasso(whole, machine, lasso, owed) for lasso in evidence.lassos]
+    listed = evidence.everywhere.waves() if isinstance(evidence.everywhere, Rounds) else []
+    goal = goal_of(spec, [*(run.wave() for run in rhythm.orbits), *listed, *(run.wave() for run in lassos)])
     rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
     return Rebuilt(whole, rhythm, owed.listed())
 
@@ -363,7 +364,7 @@ def _everywhere(
 
 def _is_lost(run: Orbit, goal: Goal) -> bool:
     wave = run.wave()
-    return wave is not None and not wave.divides_by(goal.period, goal.high)
+    return wave is not None and not goal.fits(wave)
 
 
 def _goes_round(run: Orbit, loop: Loop) -> bool:
@@ -393,7 +394,7 @@ def _loops(runs: Iterable[Orbit], goal: Goal) -> tuple[tuple[Loop, ...], dict[St
         example = path.first_state(run.loop)
         least = min(beat.state for beat in path.beats(run.loop))
         if (run.loop_half_cycles, least) not in loops:
-            good = wave.divides_by(goal.period, goal.high)
+            good = goal.fits(wave)
             loops[run.loop_half_cycles, least] = Loop(example, run.loop_half_cycles, wave, good)
             shown[example] = Orbit((), run.loop, run.widths)
     return tuple(loops.values()), shown
@@ -411,7 +412,7 @@ def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> 
     if system.bits > tables.MOST_BITS_IF_REGULAR:
         raise Rejected("a table of too many states")
     _none([*tables.ranking_form_faults(system, known, goal.period)])
-    owed.add(tables.ranking_obligations(system, known, goal.period, goal.high))
+    owed.add(tables.ranking_obligations(system, known, goal))
     return known.bound
 
 
@@ -419,6 +420,8 @@ def _cover(
     system: System, layers: Sequence[Layer], goal: Goal, owed: _Obligations
 ) -> tuple[int, list[Orbit]]:
     """The bound that the cover shows, and the last stage's orbits."""
+    if goal.runs or goal == NOWHERE:
+        raise Rejected("a cover for a wave of several pulses")
     stages = [_stage(system, layer, layer is layers[-1], goal) for layer in layers]
     bound = sum(stage.claim.bound for stage in stages)
     _none(certificate.stage_form_faults(system, stages, bound))

@@ -165,6 +165,7 @@ def _subject(stated: dict[str, Any]) -> Subject:
         claim, options, files = stated["claim"], stated["options"], stated["sources"]["files"]
         spec = Spec(
             ratio=Fraction(claim["ratio"]),
+            mean=claim["mean"] is True,
             high=claim["high_half_cycles"],
             module=options["module"],
             clock=options["clock"],
@@ -205,8 +206,8 @@ def _check_kinds(subject: Subject) -> None:
     spec = subject.spec
     texts = [spec.module, spec.clock, spec.reset, spec.output]
     names = [*subject.files, *subject.include, *spec.waivers.values(), *spec.defines.values()]
-    numbers = [*spec.parameters.values(), *spec.holds.values(), spec.high]
-    numbers += [] if spec.within is None else [spec.within]
+    numbers = [*spec.parameters.values(), *spec.holds.values()]
+    numbers += [number for number in (spec.high, spec.within) if number is not None]
     if any(text is not None and not isinstance(text, str) for text in texts):
         raise ValueError
     if any(not isinstance(name, str) for name in names) or not subject.files:

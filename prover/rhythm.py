@@ -12,6 +12,8 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
+from fractions import Fraction
+from math import ceil, floor
 from typing import TYPE_CHECKING, Literal
 
 from prover import path
@@ -22,6 +24,7 @@ from prover.system import State, System
 if TYPE_CHECKING:
     from prover.certificate import Stage
     from prover.glitch import Glitches
+    from prover.spec import Spec
 
 LONGEST_ROUND = 200_000
 """Runs in a wave's round beyond which the round is not written out."""
@@ -64,16 +67,30 @@ class Wave:
         """Half-cycles per period in which the output is 1; None if it never changes."""
         return None if self.stuck else sum(length for level, length in self.runs if level)
 
-    def divides_by(self, period: int, high: int) -> bool:
-        """Whether this is one high run of `high` in every `period` half-cycles."""
-        return self.runs == ((1, high), (0, period - high))
-
 
 def _least_rotation(runs: list[Run]) -> list[Run]:
-    """The rotation, by whole high-low pairs, that sorts first: the same loop reads the same from anywhere."""
-    if len(runs) > 2000:
-        return runs
-    return min(runs[i:] + runs[:i] for i in range(0, len(runs), 2))
+    """The rotation, by whole high-low pairs, that sorts first: the same loop reads the same from anywhere.
+
+    Booth's algorithm (1980), linear in the number of runs."""
+    pairs = list(zip(runs[::2], runs[1::2], strict=True))
+    twice = [*pairs, *pairs]
+    back = [-1] * len(twice)
+    best = 0
+    for j in range(1, len(twice)):
+        pair = twice[j]
+        i = back[j - best - 1]
+        while i != -1 and pair != twice[best + i + 1]:
+            if pair < twice[best + i + 1]:
+                best = j - i - 1
+            i = back[i]
+        if pair != twice[best + i + 1]:
+            if pair < twice[best]:
+                best = j
+            back[j - best] = -1
+        else:
+            back[j - best] = i + 1
+    best %= len(pairs)
+    return [run for pair in [*pairs[best:], *pairs[:best]] for run in pair]
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,10 +151,66 @@ class Orbit:
 
 @dataclass(frozen=True, slots=True)
 class Goal:
-    """The wave that is good: half-cycles per period and of high time."""
+    """The wave that is good: one high run of `high` in every `period` half-cycles; where it has several pulses,
+    `runs` is one period of it, as a Wave has them, and `high` is the sum of its high runs."""
 
     period: int
     high: int
+    runs: tuple[Run, ...] = ()
+
+    @staticmethod
+    def of(wave: Wave) -> Goal:
+        """The goal that is this wave, which has to change."""
+        return Goal(wave.period or 0, wave.high or 0, wave.runs if len(wave.runs) > 2 else ())
+
+    @property
+    def pulses(self) -> tuple[Run, ...]:
+        """One period of the wave, from a rise on."""
+        return self.runs or ((1, self.high), (0, self.period - self.high))
+
+    def fits(self, wave: Wave) -> bool:
+        """Whether a loop's wave is this one, at whatever phase."""
+        return wave.runs == self.pulses
+
+
+@dataclass(frozen=True, slots=True)
+class Mean:
+    """A ratio that holds on average: which wave it is has to be seen.
+
+    Every gap from rise to rise is one of the two whole numbers next to the ratio, of input cycles, or of half-cycles
+    where rises fall on both edges of the input clock, and once round the wave the gaps have the ratio as their mean;
+    `high`, if it is given, is the length of every high run in half-cycles."""
+
+    ratio: Fraction
+    high: int | None = None
+
+    def lengths(self, gaps: Iterable[int]) -> tuple[int, int]:
+        """The two lengths in half-cycles that gaps like these may have."""
+        if any(gap % 2 for gap in gaps):
+            return floor(2 * self.ratio), ceil(2 * self.ratio)
+        return 2 * floor(self.ratio), 2 * ceil(self.ratio)
+
+    def fits(self, wave: Wave) -> bool:
+        """Whether a loop's wave is one of these."""
+        if wave.period is None or (self.high is not None and any(n != self.high for v, n in wave.runs if v)):
+            return False
+        gaps = [a + b for (_, a), (_, b) in zip(wave.runs[::2], wave.runs[1::2], strict=True)]
+        return set(gaps) <= set(self.lengths(gaps)) and wave.period == 2 * self.ratio * len(gaps)
+
+    def among(self, waves: Iterable[Wave | None]) -> Goal | None:
+        """The first wave that is one of these, as what is good from then on."""
+        return next((Goal.of(wave) for wave in waves if wave is not None and self.fits(wave)), None)
+
+
+NOWHERE = Goal(1, 1)
+"""What is good where no loop has the mean that is claimed: no wave has a low run of 0, so nothing is."""
+
+
+def goal_of(spec: Spec, waves: Iterable[Wave | None]) -> Goal:
+    """What is good by the claim; for a mean, the first of the waves that has it."""
+    if spec.ratio is None or not spec.mean:
+        return Goal(spec.period, spec.high_half_cycles)
+    return Mean(spec.ratio, spec.high).among(waves) or NOWHERE
 
 
 @dataclass(frozen=True, slots=True)

@@ -6,6 +6,7 @@ import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
+from math import ceil
 from typing import Literal
 
 from prover.errors import UserError
@@ -30,7 +31,8 @@ class Spec:
     """A claim about one divider.
 
     ratio         N, in input cycles per output period; None to measure instead of claiming
-    high          H, half-cycles per period in which the output is 1; None means N
+    mean          whether the ratio is that of the mean gap, every gap being one of the two whole numbers next to it
+    high          H, half-cycles per period in which the output is 1; None means N, and with `mean` no claim
     ratio_formula, high_formula  the same as formulas, which take the place of the numbers until these are computed
     each          inputs for each of whose values the claim is made; None: all values of the port
     where         conditions on these values: the claim is made where none of them is 0
@@ -47,6 +49,7 @@ class Spec:
     """
 
     ratio: Fraction | None = None
+    mean: bool = False
     high: int | None = None
     ratio_formula: Formula | None = None
     high_formula: Formula | None = None
@@ -72,16 +75,25 @@ class Spec:
             if not self.claims and (self.high is not None or self.high_formula is not None):
                 raise UserError("a high time without a ratio", hint="give --ratio as well")
             return
-        if self.ratio <= 0 or (2 * self.ratio).denominator != 1:
+        if self.ratio <= 0 or (not self.mean and (2 * self.ratio).denominator != 1):
+            other = ", or claim it as a mean with --mean" if self.ratio > 0 else ""
             raise UserError(
                 f"ratio {self.ratio_text}: an output period has to be a whole number of half-cycles",
-                hint="give a positive multiple of 0.5, such as 3 or 2.5",
+                hint=f"give a positive multiple of 0.5, such as 3 or 2.5{other}",
             )
         if self.ratio < 1:
             raise UserError(
                 f"ratio {self.ratio_text}: the shortest period that a divider can make is one input cycle",
                 hint="give a ratio of at least 1",
             )
+        if self.mean:
+            most = ceil(2 * self.ratio) - 1
+            if self.high is not None and not 0 < self.high <= most:
+                raise UserError(
+                    f"high time {self.high}: not within a gap of {most} half-cycles or less",
+                    hint=f"give --high between 1 and {most}, or leave it out",
+                )
+            return
         if self.high is None and self.ratio.denominator != 1:
             raise UserError(
                 f"ratio {self.ratio_text}: half of {self.period} half-cycles is no whole number of half-cycles",
@@ -100,9 +112,9 @@ class Spec:
 
     @property
     def period(self) -> int:
-        """2N: half-cycles per output period."""
-        if self.ratio is None:
-            raise ValueError("no ratio")
+        """2N: half-cycles per output period. A ValueError for a mean, which has no one period."""
+        if self.ratio is None or self.mean:
+            raise ValueError("no period")
         return int(2 * self.ratio)
 
     @property

@@ -16,7 +16,7 @@ from prover import expr as e
 from prover.certificate import Obligation
 from prover.expr import Expr
 from prover.path import Beat
-from prover.rhythm import Orbit, Wave
+from prover.rhythm import Goal, Orbit, Wave
 from prover.system import State, System
 
 MOST_BITS = 14
@@ -113,18 +113,19 @@ def ranking_form_faults(system: System, table: Ranking, period: int) -> list[str
     return []
 
 
-def ranking_obligations(system: System, table: Ranking, period: int, high: int) -> Iterator[Obligation]:
+def ranking_obligations(system: System, table: Ranking, goal: Goal) -> Iterator[Obligation]:
     """Good states have the output and the successor that their phase wants; all others come nearer to being good."""
     size = max(max(table.rank) + 1, table.bound + 1).bit_length()
     # Written one higher, so that 0 says that nothing is claimed.
     rank = lookup(system, [value + 1 for value in table.rank], size)
+    period = goal.period
     wide = max(period, 2).bit_length()
     phase = lookup(system, [value if value >= 0 else None for value in table.phase], wide)
     rank_after, phase_after = _after(system, [rank, phase])
     claimed, good = e.nonzero(rank), e.eq(rank, e.const(1, size))
     following = e.bvadd(phase, e.const(1, wide))
     following = e.ite(e.eq(phase, e.const(period - 1, wide)), e.const(0, wide), following)
-    level = e.bvult(phase, e.const(high, wide))
+    level = _level(goal, phase)
     late = e.bvult(e.const(table.bound + 1, size), rank)
     escapes = e.bvand(system.settled, e.bvor(e.bvnot(claimed), late))
     stays = e.bvand(e.eq(rank_after, e.const(1, size)), e.eq(phase_after, following))
@@ -134,6 +135,17 @@ def ranking_obligations(system: System, table: Ranking, period: int, high: int) 
     yield Obligation("a good state's successor has the next phase", e.bvand(good, e.bvnot(stays)))
     nearer = e.conj([claimed, e.bvnot(good), e.bvnot(nears)])
     yield Obligation("any other state's successor has a lower rank", nearer)
+
+
+def _level(goal: Goal, phase: Expr) -> Expr:
+    """The goal's output in a phase."""
+    level, at = e.FALSE, 0
+    for value, length in goal.pulses:
+        within = e.bvult(phase, e.const(at + length, phase.width))
+        if value:
+            level = e.bvor(level, e.bvand(e.bvule(e.const(at, phase.width), phase), within))
+        at += length
+    return level
 
 
 def rounds_form_faults(system: System, table: Rounds) -> list[str]:

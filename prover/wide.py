@@ -110,7 +110,7 @@ def recovery_on(run: Orbit, period: int, high: int) -> int | None:
     wave = run.wave()
     if wave is None or path.changes(run.lead, LONGEST_ROUND) > LONGEST_ROUND:
         raise OutOfEffort("a round of too many changes of the output to be written out")
-    if not wave.divides_by(period, high):
+    if not Goal(period, high).fits(wave):
         return None
     # Walk back from the loop, run by run: the phase there fixes what every earlier half-cycle has to show.
     pieces = list(path.merged([*path.pieces(run.lead), *_two_rounds(run)]))

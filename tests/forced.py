@@ -28,7 +28,7 @@ def compared(seed: int, bits: int) -> str:
     states = graph.build(system, Effort(20))
     if not states.start.any():
         return "unsettled"
-    found = graph.basins(states, Effort(20), None, None)
+    found = graph.basins(states, Effort(20), None)
     waves = [loop.wave for loop in found.loops if len(loop.wave.runs) == 2]
     if not waves:
         return "no goal"
@@ -36,8 +36,8 @@ def compared(seed: int, bits: int) -> str:
 
 
 def _judged(system: System, states: graph.Graph, goal: Goal) -> str:
-    found = graph.basins(states, Effort(20), goal.period, goal.high)
-    table = graph.ranks(states, found, goal.period, goal.high)
+    found = graph.basins(states, Effort(20), goal)
+    table = graph.ranks(states, found, goal)
     lost = bool((states.start & (table.rank < 0)).any())
     worst = int(table.rank[states.start].max())
     cover = wide.cover(system, goal, system.settled, [], Effort(20))

@@ -16,7 +16,7 @@ from prover.design import Design
 from prover.effort import Effort
 from prover.path import Beat, Item, Repeat
 from prover.ports import recognise
-from prover.rhythm import Orbit
+from prover.rhythm import Goal, Orbit
 from prover.settling import settle
 from prover.spec import Spec
 from prover.system import State, System
@@ -99,9 +99,9 @@ def test_every_altered_orbit_is_rejected(name: str) -> None:
 def test_altered_phases_and_ranks_are_rejected() -> None:
     system = system_of(small.odd(3, 5))
     states = graph.build(system, Effort(60))
-    found = graph.basins(states, Effort(60), 10, 5)
-    table = graph.ranks(states, found, 10, 5)
-    assert certificate.rank_faults(system, table.phase, table.rank, 10, 5, Effort(60)) == []
+    found = graph.basins(states, Effort(60), Goal(10, 5))
+    table = graph.ranks(states, found, Goal(10, 5))
+    assert certificate.rank_faults(system, table.phase, table.rank, Goal(10, 5), Effort(60)) == []
     rng = random.Random(4)
     for _ in range(100):
         phase, rank = table.phase.copy(), table.rank.copy()
@@ -111,8 +111,8 @@ def test_altered_phases_and_ranks_are_rejected() -> None:
         target[at] = (phase[at] + rng.randint(1, 9)) % 10 if target is phase else max(rank[at] - 1, -1)
         if np.array_equal(phase, table.phase) and np.array_equal(rank, table.rank):
             continue
-        assert certificate.rank_faults(system, phase, rank, 10, 5, Effort(60))
-    assert certificate.rank_faults(system, table.phase, table.rank, 10, 4, Effort(60))
+        assert certificate.rank_faults(system, phase, rank, Goal(10, 5), Effort(60))
+    assert certificate.rank_faults(system, table.phase, table.rank, Goal(10, 4), Effort(60))
 
 
 def test_what_x_stands_for_may_change_from_one_half_cycle_to_the_next() -> None:

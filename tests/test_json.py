@@ -51,7 +51,7 @@ EACH = closed(
                     "verdict": {"enum": ["proved", "refuted", "open"]},
                     "refuted": NAMES_LISTED,
                     "open": NAMES_LISTED,
-                    "period_half_cycles": SPAN,
+                    "ratios": {"type": "array", "items": TEXT, "minItems": 2, "maxItems": 2},
                     "worst_recovery_half_cycles": {"type": ["integer", "null"]},
                 }
             ),

@@ -16,6 +16,7 @@ from prover import Spec, check, graph, measure
 from prover import expr as e
 from prover.effort import Effort
 from prover.findings import Report
+from prover.rhythm import Goal
 
 PUBLISHED = CASES / "published"
 
@@ -100,7 +101,7 @@ def lost_states_and_worst(report: Report, period: int, high: int) -> tuple[int, 
     """Power-up states that never become good, and the half-cycles that the slowest of the others needs."""
     effort = Effort(60)
     states = graph.build(report.rhythm.system, effort)
-    table = graph.ranks(states, graph.basins(states, effort, period, high), period, high)
+    table = graph.ranks(states, graph.basins(states, effort, Goal(period, high)), Goal(period, high))
     ranks = table.rank[states.start]
     return int((ranks < 0).sum()), int(ranks.max())
 

@@ -39,6 +39,11 @@ SUBJECTS: dict[str, tuple[str, Spec, str]] = {
     "matrix": ("wide/noise_24_xnor.v", Spec(ratio=Fraction(16777215), high=2), "null"),
     "word": ("wide/ripple_24.v", Spec(ratio=Fraction(2**24)), "cover"),
     "lost": ("wide/two_counters_odd.v", Spec(ratio=Fraction(50_000_001)), "null"),
+    "mean": (
+        "published/accumulator_3_of_16.v",
+        Spec(ratio=Fraction(16, 3), mean=True, start="any"),
+        "ranking",
+    ),
     "restless": ("faulty/inverter_loop.v", Spec(ratio=Fraction(2)), "null"),
 }
 _made: dict[str, tuple[Report, Certificate]] = {}

@@ -12,17 +12,6 @@
 // from reset: period 16, high 8
 // loops: 1
 // false loops: 0
-// check: --each b=2..15 --each a --ratio 4*b+a --high '10 if a > 0 else 8'
-// verdict: refuted
-// ratio: refuted
-// high-time: proved
-// no-stuck: proved
-// recovery: refuted
-// settling: proved
-// at: b=2, a=3
-// from reset: period 20, high 10
-// loops: 1
-// false loops: 1
 module radio_swallow (input clk, input rst, input [3:0] b, input [2:0] a, output reg radio);
   reg [2:0] pre;
   reg [3:0] rounds;

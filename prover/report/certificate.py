@@ -131,8 +131,9 @@ def claim(spec: Spec) -> Object:
     """What is claimed; times are half-cycles."""
     return {
         "ratio": spec.ratio_text,
-        "period_half_cycles": spec.period,
-        "high_half_cycles": spec.high_half_cycles,
+        "mean": spec.mean,
+        "period_half_cycles": None if spec.mean else spec.period,
+        "high_half_cycles": spec.high if spec.mean else spec.high_half_cycles,
         "within": spec.within,
         "start": spec.start,
         "waivers": dict(spec.waivers),

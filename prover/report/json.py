@@ -78,10 +78,12 @@ def _design(report: Report) -> Object:
 def _spec(report: Report) -> Object:
     spec = report.spec
     claimed = spec.ratio is not None
+    single = claimed and not report.each
     return {
         "ratio": (report.each.ratio if report.each else spec.ratio_text) if claimed else None,
-        "period_half_cycles": spec.period if claimed and not report.each else None,
-        "high_half_cycles": spec.high_half_cycles if claimed and not report.each else None,
+        "mean": spec.mean,
+        "period_half_cycles": spec.period if single and not spec.mean else None,
+        "high_half_cycles": (spec.high if spec.mean else spec.high_half_cycles) if single else None,
         "within": spec.within,
     }
 
@@ -105,7 +107,7 @@ def _row(row: ValueRow) -> Object:
         "verdict": row.verdict,
         "refuted": list(row.refuted),
         "open": list(row.open),
-        "period_half_cycles": list(row.periods),
+        "ratios": [str(ratio) for ratio in row.ratios],
         "worst_recovery_half_cycles": row.worst,
     }
 

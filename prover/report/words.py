@@ -42,16 +42,22 @@ def claim(report: Report) -> str:
     within = f", recovery within {spec.within} half-cycles" if spec.within is not None else ""
     if report.each is not None:
         each = report.each
-        high = f"high {each.high} half-cycles" if each.high else "high for half the period"
-        told = f"divide by {each.ratio}, {high}, {origin(report.rhythm)}{within}"
+        high = (
+            f", high {each.high} half-cycles" if each.high else ", high for half the period" * (not spec.mean)
+        )
+        mean = " on average" if spec.mean else ""
+        told = f"divide by {each.ratio}{mean}{high}, {origin(report.rhythm)}{within}"
         return f"{told}, for each of {each.domain}"
+    if spec.mean:
+        high = f": high {plural(spec.high, 'half-cycle')}" if spec.high is not None else ""
+        return f"divide by {spec.ratio_text} on average{high}, {origin(report.rhythm)}{within}"
     wave = f"period {spec.period} half-cycles, high {spec.high_half_cycles}"
     return f"divide by {spec.ratio_text}: {wave}, {origin(report.rhythm)}{within}"
 
 
 def values(row: ValueRow) -> tuple[str, str, str]:
     """A row of values: the values, the ratios that are claimed of them, and what is wrong or the worst recovery."""
-    first, last = (number(Fraction(period, 2)) for period in row.periods)
+    first, last = map(number, row.ratios)
     judged = ((row.refuted, "refuted"), (row.open, "open"))
     told = [f"{', '.join(names)} {word}" for names, word in judged if names]
     if not told and row.worst is not None:

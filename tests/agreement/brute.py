@@ -7,6 +7,7 @@ every state to 0 or 1. All times are half-cycles.
 
 from collections.abc import Hashable, Mapping, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 from typing import Generic, TypeVar
 
 State = TypeVar("State", bound=Hashable)
@@ -171,6 +172,50 @@ def analyse(
     Raises KeyError when a successor isn't a state, ValueError when the claim is impossible (0 < high < period fails).
     """
     good = good_phases(step, output, period, high)
+    loops = tuple(
+        BruteLoop(states, tuple(output[state] for state in states), states[0] in good)
+        for states in find_loops(step)
+    )
+    return BruteResult(loops, recovery_times(step, good))
+
+
+def rises(wave: Sequence[int]) -> list[int]:
+    """Places of an endlessly repeated wave at which it rises."""
+    return [i for i in range(len(wave)) if wave[i] == 1 and wave[i - 1] == 0]
+
+
+def rise_gaps(wave: Sequence[int]) -> list[int]:
+    """The gaps between neighbouring rises, once round, in half-cycles."""
+    at = rises(wave)
+    return [(b - a - 1) % len(wave) + 1 for a, b in zip(at, at[1:] + at[:1], strict=True)]
+
+
+def has_mean(wave: Sequence[int], ratio: Fraction) -> bool:
+    """Whether every gap is a whole number of input cycles (or of half-cycles) next to the ratio, and their mean is the
+    ratio in input cycles."""
+    gaps = rise_gaps(wave)
+    if not gaps or Fraction(sum(gaps), 2 * len(gaps)) != ratio:
+        return False
+    unit = 1 if any(gap % 2 for gap in gaps) else 2
+    return all(abs(Fraction(gap - 2 * ratio, unit)) < 1 for gap in gaps)
+
+
+def analyse_wave(
+    step: Mapping[State, State], output: Mapping[State, int], wave: Sequence[int]
+) -> BruteResult[State]:
+    """Loops and recovery where good means this wave, one period of it, at whatever phase.
+
+    A state is good if what it shows is some rotation of the wave for as long as it takes to be sure: until every state
+    and the wave have been gone through."""
+    size = len(step) + len(wave)
+    endless = "".join(map(str, wave)) * (size // len(wave) + 3)
+    good: dict[State, int] = {}
+    for start in step:
+        shown, state = "", start
+        for _ in range(size):
+            shown, state = shown + str(output[state]), step[state]
+        if shown in endless:
+            good[start] = endless.index(shown)
     loops = tuple(
         BruteLoop(states, tuple(output[state] for state in states), states[0] in good)
         for states in find_loops(step)

@@ -28,6 +28,7 @@ from prover import expr as e
 from prover.api import read
 from prover.effort import Effort
 from prover.ports import Ports, recognise
+from prover.rhythm import Goal
 from prover.settling import settle
 from prover.system import System
 
@@ -200,8 +201,8 @@ def recoveries(folder: Path, limit: float) -> None:
                 return False
             states = graph.build(system, Effort(limit))
             period = 4 * (last + 1)
-            found = graph.basins(states, Effort(limit), period, period // 2)
-            graph.ranks(states, found, period, period // 2)
+            found = graph.basins(states, Effort(limit), Goal(period, period // 2))
+            graph.ranks(states, found, Goal(period, period // 2))
             return True
 
         cells = [timed(asked, limit), timed(enumerated, limit)]
