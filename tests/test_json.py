@@ -90,6 +90,7 @@ CONTRACT = closed(
         ),
         "spec": closed(
             {
+                "mean": {"type": "boolean"},
                 "ratio": {"type": ["string", "null"]},
                 "period_half_cycles": NUMBER,
                 "high_half_cycles": NUMBER,
@@ -187,7 +188,8 @@ def test_every_report_keeps_the_contract(tmp_path: Path, text: str, ratio: str) 
 def test_the_figures_of_a_third(tmp_path: Path) -> None:
     report = json.loads(render(checked(tmp_path, BY_3, "3", fin=Fraction(50_000_000))))
     assert report["verdict"] == "proved"
-    assert report["spec"] == {"ratio": "3", "period_half_cycles": 6, "high_half_cycles": 3, "within": None}
+    claim = {"ratio": "3", "mean": False, "period_half_cycles": 6, "high_half_cycles": 3, "within": None}
+    assert report["spec"] == claim
     reset = report["measured"]["from_reset"]
     assert (reset["period_half_cycles"], reset["high_half_cycles"]) == (6, 3)
     assert reset["wave"] == [[1, 3], [0, 3]]
