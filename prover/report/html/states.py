@@ -18,7 +18,7 @@ from prover.effort import Effort
 from prover.findings import Report
 from prover.report import words
 from prover.report.html.markup import Markup, element, joined, number
-from prover.rhythm import Loop, Wave
+from prover.rhythm import Goal, Loop, Wave
 from prover.system import System
 
 MOST_STATES = 128
@@ -118,8 +118,8 @@ def machine(report: Report) -> Machine | None:
     effort = Effort(report.spec.effort)
     built = graph.build(system, effort)
     wave = next((loop.wave for loop in rhythm.loops if loop.good), None)
-    period, high = (wave.period, wave.high) if wave else (None, None)
-    found = graph.basins(built, effort, period, high)
+    goal = Goal.of(wave) if wave else None
+    found = graph.basins(built, effort, goal)
     seen = {number for number, rests in enumerate(built.start.tolist()) if rests}
     after = built.successors[0].tolist()
     todo = list(seen)
@@ -132,8 +132,8 @@ def machine(report: Report) -> Machine | None:
         return None
     states = sorted(seen, key=lambda number: built.state(number))
     ranked: Mapping[int, int] = {}
-    if period is not None and high is not None:
-        rank = graph.ranks(built, found, period, high).rank.tolist()
+    if goal is not None:
+        rank = graph.ranks(built, found, goal).rank.tolist()
         ranked = {state: rank[state] for state in states}
     elif rhythm.recovery is not None:
         ranked = dict.fromkeys(states, -1)
