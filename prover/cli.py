@@ -20,7 +20,7 @@ from typing import TYPE_CHECKING, Any, NoReturn, TextIO
 
 import click
 
-from prover import __version__
+from prover import __version__, completion
 from prover.errors import UserError, Where
 from prover.output import STANDARD_OUTPUT, Result, check_targets, harmless, write_files
 from prover.spec import (
@@ -158,9 +158,15 @@ def _options(*chosen: Decorator) -> Decorator:
     return decorate
 
 
+def _written(name: str, told: str) -> Decorator:
+    """An option that names where a result goes."""
+    variable = f"{name.removeprefix('--')}_path"
+    return click.option(name, variable, metavar="PATH", help=told, shell_complete=completion.files)
+
+
 READING = (
-    click.argument("files", nargs=-1, required=True, metavar="FILE..."),
-    click.option("--module", metavar="NAME", help="Top module."),
+    click.argument("files", nargs=-1, required=True, metavar="FILE...", shell_complete=completion.files),
+    click.option("--module", metavar="NAME", help="Top module.", shell_complete=completion.modules),
     click.option("--clock", metavar="PORT", help="Input clock."),
     click.option("--reset", metavar="PORT[=LEVEL]", help="Reset, and its active level (PORT=0: low)."),
     click.option("--output", metavar="PORT", help="Divided clock: port, net or bit 'PORT[3]'."),
@@ -171,7 +177,13 @@ READING = (
         "--hold", "holds", multiple=True, metavar="PORT=VALUE", help="Value at which an input is held."
     ),
     click.option("--define", "defines", multiple=True, metavar="NAME=TEXT", help="Macro, as by `define."),
-    click.option("--include", multiple=True, metavar="DIR", help="Folder to look in for `include."),
+    click.option(
+        "--include",
+        multiple=True,
+        metavar="DIR",
+        help="Folder to look in for `include.",
+        shell_complete=completion.folders,
+    ),
     click.option(
         "--start",
         type=click.Choice(["reset", "initial", "any"]),
@@ -179,9 +191,7 @@ READING = (
     ),
 )
 CLAIMING = (
-    click.option(
-        "--ratio", required=True, metavar="N", help="Input cycles per output period: 2.5, or '2*(div+1)'."
-    ),
+    click.option("--ratio", required=True, metavar="N", help="Input cycles a period: 2.5, 2*(n+1)."),
     click.option("--mean", is_flag=True, help="The ratio, such as 16/3, is that of the mean gap."),
     click.option("--high", metavar="H", help="High time in half-cycles [N, which is 50 %]."),
     click.option(
@@ -189,33 +199,28 @@ CLAIMING = (
     ),
     click.option("--where", multiple=True, metavar="CONDITION", help="Of these values only those: 'B >= A'."),
     click.option("--within", metavar="K", help="Limit on the recovery, in half-cycles."),
-    click.option("--waive", "waivers", multiple=True, metavar="PROPERTY=REASON", help="Excuse a property."),
+    click.option(
+        "--waive",
+        "waivers",
+        multiple=True,
+        metavar="PROPERTY=REASON",
+        help="Excuse a property.",
+        shell_complete=completion.properties,
+    ),
 )
 FIGURES = (
     click.option("--fin", metavar="FREQ", help="Input frequency, such as 50MHz."),
     click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
     click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60]."),
-    click.option("--json", "json_path", metavar="PATH", help="Write the report as JSON."),
-    click.option("--html", "html_path", metavar="PATH", help="Write the report as one page for a browser."),
+    _written("--json", "Write the report as JSON."),
+    _written("--html", "Write the report as one page for a browser."),
 )
 TRACES = (
-    click.option(
-        "--vcd",
-        "vcd_path",
-        metavar="PATH",
-        help="Write the refuted property's wave; more of them to PATH with -PROPERTY, or all into a folder.",
-    ),
-    click.option("--junit", "junit_path", metavar="PATH", help="Write the verdicts as JUnit XML."),
-    click.option("--sarif", "sarif_path", metavar="PATH", help="Write the verdicts as SARIF 2.1.0."),
+    _written("--vcd", "Write the wave of each property that is refuted."),
+    _written("--junit", "Write the verdicts as JUnit XML."),
+    _written("--sarif", "Write the verdicts as SARIF 2.1.0."),
 )
-CERTIFYING = (
-    click.option(
-        "--certificate",
-        "certificate_path",
-        metavar="PATH",
-        help="Write what the verdicts rest on, for `recheck` and others.",
-    ),
-)
+CERTIFYING = (_written("--certificate", "Write what the verdicts rest on, for `recheck`."),)
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
 
 
@@ -269,14 +274,19 @@ def measure(files: tuple[str, ...], json_path: str | None, html_path: str | None
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
-@click.argument("certificate")
+@click.argument("certificate", shell_complete=completion.files)
 @click.option(
     "--solver",
     type=click.Choice(["z3", "bitwuzla", "cvc5", "all"]),
     default="z3",
     help="Who refutes the obligations; all: every one that is installed [z3].",
 )
-@click.option("--sources", metavar="DIR", help="Folder that the sources' paths start from.")
+@click.option(
+    "--sources",
+    metavar="DIR",
+    help="Folder that the sources' paths start from.",
+    shell_complete=completion.folders,
+)
 @click.option("--clausal", "by_clauses", is_flag=True, help="Refute them by clauses, with a checked proof.")
 @click.option("--effort", metavar="SECONDS", help="Time to try, then give up [600].")
 def recheck(

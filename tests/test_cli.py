@@ -142,7 +142,7 @@ def test_a_fault_of_ours_says_so_without_a_traceback(tmp_path: Path, monkeypatch
 # -- help --------------------------------------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("command", [[], ["check"], ["measure"]])
+@pytest.mark.parametrize("command", [[], *([name] for name in cli.main.commands)])
 def test_help_fits_a_screen_and_shows_an_example(command: list[str]) -> None:
     result = run(*command, "--help")
     assert result.exit_code == 0

@@ -1,0 +1,56 @@
+"""What a shell is offered to complete an argument with: paths, and the modules in the files that are given already.
+
+It runs at every press of a key, so nothing is parsed and nothing heavy imported: the sources are skimmed.
+"""
+
+from __future__ import annotations
+
+import os
+import re
+from collections.abc import Iterator
+from pathlib import Path
+
+import click
+from click.shell_completion import CompletionItem
+
+MOST_READ = 1 << 20
+"""Bytes of a file that are looked at for modules."""
+
+MODULE = re.compile(r"^\s*module\s+(?:automatic\s+|static\s+)?(\\\S+|[A-Za-z_][\w$]*)", re.MULTILINE)
+
+Items = list[CompletionItem]
+
+
+def files(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
+    """Any file or folder: the shell knows best which."""
+    return [CompletionItem(begun, type="file")]
+
+
+def folders(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
+    """Folders only."""
+    return [CompletionItem(begun, type="dir")]
+
+
+def modules(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
+    """The modules that the files before it define."""
+    # An option without its value ends the parsing of a command: what was found until then is left over.
+    given = [*(context.params.get("files") or ()), *context.args]
+    names = dict.fromkeys(name for path in given for name in _modules_in(path))
+    return [CompletionItem(name) for name in names if name.startswith(begun)]
+
+
+def _modules_in(path: str) -> Iterator[str]:
+    try:
+        if os.path.isfile(path):
+            with Path(path).open(encoding="utf-8", errors="replace") as source:
+                yield from MODULE.findall(source.read(MOST_READ))
+    except OSError:
+        # A file that can't be read is told of when the command runs.
+        return
+
+
+def properties(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
+    """The properties, with the sign that a reason follows."""
+    from properties import NAMES
+
+    return [CompletionItem(f"{name}=") for name in NAMES if name.startswith(begun)]
