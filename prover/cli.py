@@ -248,8 +248,7 @@ def check(
     certificate_path: str | None,
     **options: Any,
 ) -> Status:
-    """Prove or refute the sign-off properties of one divider: ratio, high time, never stuck, recovery,
-    settling.
+    """Prove or refute what is claimed of a divider, and that it never locks up.
 
     \b
     Example: subharmonic check divider.v --ratio 2.5 --high 2 --vcd broken.vcd
