@@ -11,7 +11,7 @@ from prover import analyse, facts
 from prover.design import Design
 from prover.effort import Effort
 from prover.errors import UserError
-from prover.findings import Report
+from prover.findings import Report, remarks
 from prover.ports import recognise
 from prover.spec import Spec
 
@@ -88,6 +88,6 @@ def _judged(design: Design, spec: Spec, effort: Effort) -> Report:
         findings=judge_all(rhythm, spec) if spec.claims else (),
         facts=facts.collect(rhythm, spec),
         assumptions=facts.assumptions(ports, rhythm),
-        notes=tuple(f"{note.where}: {note.message}" for note in design.notes),
+        notes=remarks(design),
         seconds=0.0,
     )

@@ -37,6 +37,7 @@ from prover.spec import (
 
 if TYPE_CHECKING:
     from prover.findings import Report
+    from prover.pool import Crew
     from prover.several import Outcome
 
 PATIENCE = 1.0
@@ -47,6 +48,9 @@ REFRESH = 0.1
 
 LONGEST_EFFORT = 10_000_000
 """Seconds that --effort may ask for."""
+
+MOST_WORKERS = 1000
+"""Processes that --workers may ask for."""
 
 
 class Status(IntEnum):
@@ -221,6 +225,10 @@ TRACES = (
     _written("--sarif", "Write the verdicts as SARIF 2.1.0."),
 )
 CERTIFYING = (_written("--certificate", "Write what the verdicts rest on, for `recheck`."),)
+CREWS = (
+    click.option("--workers", metavar="N", help="Dividers at once, in processes [the cores]."),
+    click.option("--cluster", metavar="ADDRESS", help="Judge several on this Dask cluster."),
+)
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
 
 
@@ -237,7 +245,7 @@ def main() -> None:
 
 
 @main.command(short_help="Prove or refute that a divider divides by N.")
-@_options(*CLAIMING, *READING, *FIGURES, *TRACES, *CERTIFYING)
+@_options(*CLAIMING, *READING, *FIGURES, *TRACES, *CERTIFYING, *CREWS)
 def check(
     files: tuple[str, ...],
     json_path: str | None,
@@ -260,7 +268,7 @@ def check(
 
 
 @main.command(short_help="Tell what a divider divides by.")
-@_options(*READING, *FIGURES)
+@_options(*READING, *FIGURES, *CREWS)
 def measure(files: tuple[str, ...], json_path: str | None, html_path: str | None, **options: Any) -> Status:
     """Tell what a divider does: its period, its high time, and every loop that its registers can run into.
 
@@ -425,7 +433,8 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
         raise UserError("--certificate with --each", hint="check one value at a time, with --hold")
     dividers = _groups(files, spec)
     if dividers is not None:
-        return _run_several(dividers, spec, targets)
+        crew = _crew(options["workers"], options["cluster"])
+        return _run_several(dividers, spec, crew, targets)
     with Progress(sys.stderr) as progress:
         report = _judged(files, spec, targets, progress.tell)
         waves = _vcd(report, targets.vcd)
@@ -465,19 +474,36 @@ def _groups(files: Sequence[str], spec: Spec) -> list[tuple[str, ...]] | None:
     return groups(files, spec)
 
 
-def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, targets: Targets) -> Status:
+def _crew(workers: str | None, cluster: str | None) -> Crew:
+    """Who judges several dividers."""
+    if cluster is not None:
+        if workers is not None:
+            raise UserError(
+                "--workers and --cluster", hint="give one of them: a cluster has workers of its own"
+            )
+        from prover.cluster import Cluster, needs
+
+        needs()
+        return Cluster(cluster)
+    from prover.pool import Local, cores
+
+    count = cores() if workers is None else read_number(workers, "--workers")
+    if not 0 < count <= MOST_WORKERS:
+        raise UserError(f"--workers {workers}: not so many", hint=f"give 1 to {MOST_WORKERS}")
+    return Local(count)
+
+
+def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, targets: Targets) -> Status:
     """A verdict for each divider, a line for each at the end, and the worst status."""
     if targets.vcd is not None and not _is_folder(targets.vcd):
         raise UserError(f"--vcd {targets.vcd}: there are several dividers", hint="name a folder")
     if targets.certificate is not None:
         raise UserError("--certificate: there are several dividers", hint="check one at a time")
     with Progress(sys.stderr) as progress:
-        from prover.api import check, measure
         from prover.report import several as told
         from prover.several import labels, outcomes
 
-        ask = check if spec.claims else measure
-        found = list(outcomes(dividers, spec, lambda files, spec: ask(files, spec, progress.tell)))
+        found = outcomes(dividers, spec, crew, progress.tell)
         results: list[Result] = []
         texts: list[str] = []
         for outcome, label in zip(found, labels(found), strict=True):

@@ -105,7 +105,7 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     _check_names(design, spec)
     fixed = _fixed(design, spec)
     if not spec.each:
-        return judge(design, claimed_at(spec, fixed), effort)
+        return judge(design, in_numbers(design, spec), effort)
     domain = Domain.of(design, spec)
     spec = _with_roles(spec, recognise(rigid(design, spec.each), spec))
     found = _Merged(spec, domain)
@@ -119,6 +119,11 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
         if effort.left <= 0:
             break
     return found.report(count)
+
+
+def in_numbers(design: Design, spec: Spec) -> Spec:
+    """The claim with the one value that its formulas have in this design."""
+    return claimed_at(spec, _fixed(design, spec))
 
 
 def claimed_at(spec: Spec, values: Values, held: Values | None = None) -> Spec:

@@ -110,6 +110,13 @@ def _node(op: str, width: int, args: tuple[Expr, ...] = (), params: tuple[Param,
     return made
 
 
+def node(op: str, width: int, args: tuple[Expr, ...], params: tuple[Param, ...]) -> Expr:
+    """An expression as it was built once, with nothing simplified. Raises InternalError for what is none."""
+    if op not in OPERATORS or OPERATORS[op].arity != len(args) or width < 1:
+        raise InternalError(f"no expression: {op} of {len(args)}")
+    return _node(op, width, args, params)
+
+
 def _mask(width: int) -> int:
     return (1 << width) - 1
 

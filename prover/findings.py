@@ -10,6 +10,7 @@ from prover.errors import Where
 
 if TYPE_CHECKING:
     from prover.arrival import Glitch
+    from prover.design import Design
     from prover.each import Each
     from prover.ports import Ports
     from prover.rhythm import Orbit, Rhythm
@@ -102,6 +103,11 @@ class Report:
     @property
     def verdict(self) -> Verdict:
         return overall(self.findings)
+
+
+def remarks(design: Design) -> tuple[str, ...]:
+    """The remarks on a design's sources, with their places, as a report tells them."""
+    return tuple(f"{note.where}: {note.message}" for note in design.notes)
 
 
 def overall(findings: Sequence[Finding]) -> Verdict:

@@ -85,14 +85,58 @@ def recheck(
     effort = Effort(seconds, tell)
     text = _text_of(Path(path))
     bases = [Path(sources)] if sources is not None else [Path(path).parent, Path()]
+    return _outcome(lambda: derive(text, bases, effort), names, by_clauses, effort)
+
+
+def recheck_kept(
+    text: str, files: Sequence[str], spec: Spec, seconds: float, tell: Callable[[str], None] | None = None
+) -> Outcome:
+    """Check the text of a certificate again, for these files in the working folder and this claim. What it says of
+    the files' names and bytes does not count: it is taken as said of these files. Raises UserError where they can't
+    be read."""
+    effort = Effort(seconds, tell)
+    return _outcome(lambda: derive(_readdressed(text, files, spec), [Path()], effort), ("z3",), False, effort)
+
+
+def _readdressed(text: str, files: Sequence[str], spec: Spec) -> str:
+    """The certificate as it would be for these files. Raises Rejected where it is about another claim."""
+    from prover.api import read as read_it
+    from prover.each import in_numbers
+    from prover.verilog.source import read_source
+
+    stated = _object(text)
+    _subject(stated)
+    if spec.ratio_formula is not None or spec.high_formula is not None:
+        spec = in_numbers(read_it(files, spec), spec)
+    read = read_source(files, defines=spec.defines, include=[Path(folder) for folder in spec.include]).files
+    digests = tuple((written.relative(name), written.digest(Path(name))) for name in read)
+    subject = Subject(
+        spec, tuple(map(written.relative, files)), tuple(map(written.relative, spec.include)), digests
+    )
+    options = written.options(subject)
+    named = {name: options[name] for name in ("files", "include")}
+    different = list(
+        differences(
+            [stated["claim"], {**stated["options"], **named}], [written.claim(spec), options], "claim"
+        )
+    )
+    if different:
+        raise Rejected("\n".join(different))
+    return written.render({**stated, "options": options, "sources": written.sources(subject)})
+
+
+def _outcome(
+    derived: Callable[[], Derived], names: Sequence[str], by_clauses: bool, effort: Effort
+) -> Outcome:
+    """What comes of a certificate from which all is derived so."""
     try:
-        derived = derive(text, bases, effort)
+        found = derived()
     except Rejected as fault:
         return Outcome(tuple(str(fault).split("\n")))
     except OutOfEffort as out:
         return Outcome((), (str(out),))
-    outcome = Outcome((), (), derived.findings, derived.top, len(derived.scripts))
-    return _discharged(outcome, derived, () if by_clauses else names, by_clauses, effort)
+    outcome = Outcome((), (), found.findings, found.top, len(found.scripts))
+    return _discharged(outcome, found, () if by_clauses else names, by_clauses, effort)
 
 
 def _text_of(path: Path) -> str:

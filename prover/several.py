@@ -12,11 +12,15 @@ from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
+from prover.content import Content, read_content
 from prover.effort import OutOfEffort
 from prover.errors import UserError
 from prover.findings import Report
 from prover.output import harmless
+from prover.plain import Unreadable
+from prover.pool import Crew
 from prover.spec import Spec
+from prover.task import Answer, Task, packed
 
 SUFFIXES = (".v", ".sv")
 
@@ -121,16 +125,39 @@ def _with_modules(content: _Content, listed: Sequence[_Content]) -> Iterator[str
 
 
 def outcomes(
-    dividers: Sequence[tuple[str, ...]], spec: Spec, ask: Callable[[Sequence[str], Spec], Report]
-) -> Iterator[Outcome]:
-    """Each divider's outcome in turn. One that can't be read, or a fault of ours, doesn't stop the others."""
-    for files in dividers:
-        try:
-            yield Outcome(files, ask(files, spec))
-        except Exception as fault:
-            if not isinstance(fault, (UserError, OutOfEffort)) and os.environ.get("SUBHARMONIC_TRACEBACK"):
-                raise
-            yield failed(files, fault)
+    dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, tell: Callable[[str], None]
+) -> list[Outcome]:
+    """Each divider's outcome, in order. One that can't be read, or a fault of ours, doesn't stop the others."""
+    found: dict[int, Outcome] = {}
+    tasks: dict[int, Task] = {}
+    contents: dict[int, Content] = {}
+    for number, files in enumerate(dividers):
+        tasks[number] = Task(files, spec)
+        if crew.apart:
+            try:
+                contents[number] = read_content(files, spec)
+                tasks[number] = packed(tasks[number], contents[number], ".")
+            except UserError as error:
+                del tasks[number]
+                found[number] = Outcome(files, error=error)
+    numbers = list(tasks)
+    for at, answer in crew.run(list(tasks.values()), tell):
+        number = numbers[at]
+        found[number] = outcome(dividers[number], answer, contents.get(number))
+    return [found[number] for number in range(len(dividers))]
+
+
+def outcome(files: tuple[str, ...], answer: Answer, content: Content | None = None) -> Outcome:
+    """What a task's answer comes to, its places those in the content."""
+    if answer.fault:
+        return Outcome(files, fault=harmless(answer.fault))
+    try:
+        report, error = answer.thawed(content), answer.user_error(content)
+    except Unreadable as fault:
+        return Outcome(files, fault=f"an answer that can't be read: {harmless(str(fault))}")
+    if report is None and error is None:
+        return Outcome(files, open=answer.open or "no answer")
+    return Outcome(files, report, error)
 
 
 def failed(files: tuple[str, ...], fault: Exception) -> Outcome:

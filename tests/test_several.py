@@ -11,13 +11,24 @@ from click.testing import CliRunner, Result
 from texts import BY_3, RING, SPINS, STICKS_AT_7
 
 from prover import cli
-from prover.errors import InternalError
 from prover.several import groups
 from prover.spec import Spec
 
 STAGE = STICKS_AT_7[: STICKS_AT_7.index("module sticks")]
 STICKS = STICKS_AT_7[len(STAGE) :]
 BROKEN = BY_3.replace("if (rst)", "if rst")
+# What a worker's process runs, with something done to it at one of the files.
+FAILING = """
+import os, time
+from prover import api, task
+ask = api.check
+def check(files, *rest):
+    if files[0].endswith({at!r}):
+        {how}
+    return ask(files, *rest)
+api.check = check
+task.main(place)
+"""
 BENCH = "module bench; reg clk = 0; always #5 clk = ~clk; endmodule\n"
 
 
@@ -123,16 +134,7 @@ def test_open_is_better_than_refuted_and_worse_than_proved(tmp_path: Path) -> No
 
 
 def test_a_fault_of_ours_stops_no_other(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    from prover import api
-
-    ask = api.check
-
-    def fail_on_rings(files: list[str], *rest: object) -> object:
-        if files[0].endswith("b.v"):
-            raise InternalError("the search is at odds with its certificate")
-        return ask(files, *rest)  # type: ignore[arg-type]
-
-    monkeypatch.setattr("prover.api.check", fail_on_rings)
+    monkeypatch.setattr("prover.pool.MAIN", FAILING.format(at="b.v", how="raise ValueError(files)"))
     written(tmp_path, a=BY_3, b=RING, c=BY_3)
     result = run("check", str(tmp_path), "--ratio", "3")
     assert result.exit_code == 70

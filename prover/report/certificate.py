@@ -84,13 +84,14 @@ def subject_of(report: Report, files: Sequence[str | Path]) -> Subject:
     read = report.ports.design.files
     return Subject(
         report.spec,
-        tuple(_relative(file) for file in files),
-        tuple(_relative(folder) for folder in report.spec.include),
-        tuple((_relative(file), digest(Path(file))) for file in read),
+        tuple(relative(file) for file in files),
+        tuple(relative(folder) for folder in report.spec.include),
+        tuple((relative(file), digest(Path(file))) for file in read),
     )
 
 
-def _relative(path: str | Path) -> str:
+def relative(path: str | Path) -> str:
+    """The path from the working folder, with slashes."""
     text = os.path.relpath(path) if os.path.isabs(path) else os.path.normpath(path)
     return text.replace(os.sep, "/")
 
@@ -108,17 +109,22 @@ def document(
 ) -> Object:
     """The certificate as plain dictionaries and lists."""
     said = {"claim": claim(subject.spec), "options": options(subject)}
-    files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
     return {
         "schema": SCHEMA,
         "verdict": overall(findings),
         **said,
-        "sources": {"files": files, "sha256": bound_to(subject)},
+        "sources": sources(subject),
         "machine": _machine(ports, made),
         "properties": [_property(finding) for finding in findings],
         "evidence": evidence.as_object(found),
         "obligations": [{"name": each.name, "script": each.script()} for each in made.obligations],
     }
+
+
+def sources(subject: Subject) -> Object:
+    """The files that were read, and what binds them to the claim."""
+    files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
+    return {"files": files, "sha256": bound_to(subject)}
 
 
 def bound_to(subject: Subject) -> str:
