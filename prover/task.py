@@ -176,7 +176,14 @@ def work(task: Task, say: Callable[[Message], None]) -> None:
             return
         report = _asked(task, _teller(say))
         data, anchored = freeze(report, content)
-        say({"report": data, "content": content.digest if content else "", "anchored": anchored, "prover": identity()})
+        say(
+            {
+                "report": data,
+                "content": content.digest if content else "",
+                "anchored": anchored,
+                "prover": identity(),
+            }
+        )
         if task.certify:
             _certify(report, task, say)
     except UserError as error:

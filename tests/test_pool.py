@@ -215,5 +215,5 @@ def test_places_come_back_as_the_files_are_named_here(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize("text", ["", "{}", "[]", '{"sources": {"a": 1}}', '{"sources": null, "spec": []}'])
 def test_what_is_no_task_is_refused(text: str) -> None:
-    with pytest.raises(ValueError):
+    with pytest.raises(ValueError, match=r"no task|Expecting"):
         Task.from_json(text)
