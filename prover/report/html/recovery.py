@@ -66,7 +66,9 @@ def plot(recovery: Pairs, total: int, within: int | None, key: str) -> Markup:
     """The plot; `within` is the limit that the user claims, in half-cycles."""
     shown = bars(recovery)
     size = shown[0][1] - shown[0][0] + 1
-    end = shown[-1][1] + 1 if within is None else max(shown[-1][1], min(within, 2 * shown[-1][1] + 2)) + 1
+    end = shown[-1][1] + 1
+    if within is not None and end <= within <= 2 * end:
+        end = within + 1
     scale = min(WIDTH / end, BROADEST)
     width = end * scale
     decades = len(str(max(count for _, _, count in shown)))

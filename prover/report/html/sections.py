@@ -496,9 +496,9 @@ def _graph(report: Report, small: states.Machine, place: Place) -> Iterator[Mark
     if small.rank:
         told.append("with a dashed frame where it is not good")
     if small.slowest is not None:
-        told.append("with a star where it is the slowest to become good")
+        told.append("marked * where it is the slowest to become good")
     if small.starts:
-        told.append("after a triangle where the ratio is claimed from")
+        told.append("marked ▸ where the ratio is claimed from")
     yield element("p", ", ".join(told) + ". Arrows are edges of the clock.", class_="quiet")
     yield element("div", states.figures(report, small, f"{place.key}loop"), class_="rings")
     left = len(report.rhythm.loops) - states.MOST_DRAWN

@@ -40,6 +40,9 @@ CHARACTER = 6.1
 HEIGHT, GAP, STEP = 18, 10, 18
 """Pixels: a state's height, between neighbours on a ring, and between a state and what it leads to."""
 
+SHALLOW = 2
+"""Boxes one after another up to which trees leave the first state of a loop on top."""
+
 SMALLEST = 40
 """Pixels: the least radius of a ring."""
 
@@ -171,9 +174,9 @@ class Node:
         return max(1, sum(node.span for node in self.inward))
 
     @cached_property
-    def size(self) -> int:
-        """Boxes in all."""
-        return 1 + sum(node.size for node in self.inward)
+    def depth(self) -> int:
+        """Boxes one after another from the farthest that leads into it on, it not counted."""
+        return max((1 + node.depth for node in self.inward), default=0)
 
 
 def ring(found: Machine, index: int) -> list[Node]:
@@ -254,8 +257,10 @@ def plan(found: Machine, index: int) -> Plan:
     share = 2 * pi / total
     placed: list[Placed] = []
     trees: list[Placed] = []
-    # The first box stands on top, and the others follow clockwise.
-    angle = -pi / 2 - share * boxes[0].span / 2
+    # The others follow clockwise. Boxes are wider than high, so the longest way in is shortest from below.
+    deepest = max(boxes, key=lambda node: node.depth)
+    first, angle = (deepest, pi / 2) if deepest.depth > SHALLOW else (boxes[0], -pi / 2)
+    angle -= share * (first.span / 2 + sum(node.span for node in boxes[: boxes.index(first)]))
     for node in boxes:
         middle = angle + share * node.span / 2
         at = radius * cos(middle), radius * sin(middle)
