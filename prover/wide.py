@@ -22,7 +22,7 @@ from __future__ import annotations
 import functools
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
-from itertools import accumulate
+from itertools import accumulate, product
 
 from prover import certificate, orbit, path
 from prover import expr as e
@@ -52,6 +52,9 @@ DRAWN_BACK = 4
 ASKED_FIRST = 5
 REFINED = 12
 """Times that the slowest line's time is asked about, before and after a bound is known."""
+
+FLAGS = 3
+"""Registers of one bit that are tried at all levels together."""
 
 COUNTER = 4
 """Bits of registers that depend on one another from which they make a stage of their own."""
@@ -658,9 +661,53 @@ def cover(system: System, goal: Goal | None, assumed: Expr, seeds: Sequence[Stat
             if _holds(system, assumed, seed) and not made.has(seed) and made.add(seed).recovery is None:
                 return made.lost()
         found = _by_unrolling(made)
-        return found if found is not None else _by_lines(made)
+        if found is not None:
+            return found
+        for seed in _beyond(made):
+            if _holds(system, assumed, seed) and not made.has(seed) and made.add(seed).recovery is None:
+                return made.lost()
+        return _by_lines(made)
     except OutOfEffort as out:
         return made.given_up(str(out))
+
+
+def _beyond(made: _Cover) -> Iterator[State]:
+    """States that are on a loop but for one counter, which is just beyond its end there: it may have the longest way
+    back. Single bits and the clock are taken at either level, just after its rising edge first."""
+    names, widths = made.system.names, made.widths
+    loops = {frozenset(line.orbit.loop): line.orbit.loop for line in made.lines}
+    flags = [
+        i
+        for i, (name, w) in enumerate(zip(names, widths, strict=True))
+        if w == 1 and name != made.system.clock
+    ]
+    levels = (
+        list(product((0, 1), repeat=len(flags)))
+        if len(flags) <= FLAGS
+        else [(0,) * len(flags), (1,) * len(flags)]
+    )
+    for loop in loops.values():
+        start = path.first_state(loop)
+        for place, width in enumerate(widths):
+            if width < COUNTER:
+                continue
+            low, high = _range(loop, place, width)
+            for value, clock, flag in product((high + 1, low - 1), (1, 0), levels):
+                if 0 <= value < 1 << width:
+                    other = {place: value, len(widths) - 1: clock, **dict(zip(flags, flag, strict=True))}
+                    yield tuple(other.get(i, v) for i, v in enumerate(start))
+
+
+def _range(loop: Sequence[Item], place: int, width: int) -> tuple[int, int]:
+    """The least and the greatest value of a register on a loop, as far as no repeat wraps round."""
+    low, high = 1 << width, -1
+    for _, state, axes in placed_beats(loop):
+        least = most = state[place]
+        for times, stride in axes:
+            step = stride[place] - (1 << width if stride[place] >> (width - 1) else 0)
+            least, most = least + min(step, 0) * (times - 1), most + max(step, 0) * (times - 1)
+        low, high = min(low, least), max(high, most)
+    return low, high
 
 
 # -- stages ------------------------------------------------------------------------------------------------
