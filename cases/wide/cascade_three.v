@@ -4,6 +4,7 @@
 // ratio: proved
 // high-time: proved
 // no-stuck: proved
+// recovery: proved
 // settling: proved
 module cascade_three (input clk, input rst, output slow);
   reg [15:0] a, b, c;

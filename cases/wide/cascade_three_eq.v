@@ -1,7 +1,7 @@
 // Three counters to 60 000 in a row that compare by ==, each enabled by the one before, and a toggle: from 60 000 each
-// has to count on to 65 536 before it is back at 0, which is 5 536 of its ticks. All three just beyond their ends, just
-// after a rising edge: 5 536 * (60 000^2 + 60 000 + 1) input cycles, 39 859 864 331 072 half-cycles: a
-// whole run of the output is longer by that much. Worked out by hand.
+// has to count on to 65 536 before it is back at 0, which is 5 536 of its ticks. With all three just beyond their ends,
+// just after a rising edge, that makes 5 536 * (60 000^2 + 60 000 + 1) input cycles, 39 859 864 331 072 half-cycles, by
+// which a whole run of the output is too long. Worked out by hand.
 // check: --ratio 432000000000000
 // verdict: proved
 // ratio: proved

@@ -4,6 +4,7 @@
 // ratio: proved
 // high-time: proved
 // no-stuck: proved
+// recovery: proved, worst 21554432, exact
 // settling: proved
 // from reset: period 24000000, high 12000000
 module level_signed (input clk, input rst, output sign);

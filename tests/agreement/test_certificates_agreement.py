@@ -28,14 +28,7 @@ MOST_BITS = 64
 ALTERATIONS = 8
 """Alterations tried of each certificate; there are some two hundred certificates."""
 
-LONG = (
-    "cascade_16_16",
-    "cascade_three",
-    "cascade_three_eq",
-    "ring_64_onehot_fixed",
-    "ring_64_twisted_fixed",
-    "ripple_24",
-)
+LONG = ("cascade_three", "cascade_three_eq", "ring_64_twisted_fixed")
 """Wide cases that three solvers and the clausal road take minutes for: with SUBHARMONIC_LONG set they are run too."""
 
 ALL = [
