@@ -1,18 +1,19 @@
 """The properties, in the order in which reports list them.
 
 A property is a module with a NAME and a function `judge(rhythm, spec) -> Finding`, or None for what the spec does
-not claim; a function `claim(spec) -> str` gives its claim where that holds the spec's numbers. It only reads the
-rhythm and judges it: to add one, write a file, name it here, and add a case of the same name.
+not claim, and for the reset of a divider that has none; a function `claim(spec) -> str` gives its claim where that
+holds the spec's numbers. It only reads the rhythm and judges it: to add one, write a file, name it here, and add a
+case of the same name.
 """
 
 from __future__ import annotations
 
-from properties import high_time, no_stuck, ratio, recovery, settling
+from properties import high_time, no_stuck, ratio, recovery, reset, settling
 from prover.findings import Finding, with_waivers
 from prover.rhythm import Rhythm
 from prover.spec import Spec
 
-ORDER = (ratio, high_time, no_stuck, recovery, settling)
+ORDER = (ratio, high_time, no_stuck, recovery, settling, reset)
 NAMES = tuple(module.NAME for module in ORDER)
 
 

@@ -7,7 +7,7 @@ a value that x stands for is left open; any other failure is a fault of this pro
 from __future__ import annotations
 
 import random
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
 
 from prover import certificate, glitch, graph, linear, orbit, path, recode, reset, tables
@@ -17,6 +17,8 @@ from prover.errors import InternalError, UserError
 from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
+from prover.recode import placed
+from prover.release import Freed, Release, differs, releases, too_short, unknown
 from prover.rhythm import NOWHERE, Goal, Good, Loop, Mean, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
 from prover.solve import find
@@ -38,10 +40,11 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     design = ports.design
     system, settling = settle(design, ports.clock, ports.running, ports.output_value, effort)
     settling = _checked(settling, effort)
-    scope, starts, held = _starts(ports, spec, system, settling, effort)
+    held, under = _held(ports, spec, settling, effort)
+    scope, starts, held = _starts(ports, spec, system, settling, held)
     if settling.depth is None:
         why = settling.open or "the micro-steps do not settle"
-        return _nothing_known(system, settling, scope, why)
+        return _nothing_known(ports, spec, system, settling, scope, why)
     won = _races_won(ports, settling, starts, effort)
     machine, starts = _machine(system, starts, effort)
     orbits = _orbits(machine, starts, effort)
@@ -64,6 +67,11 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     )
     goal = _goal(spec, rhythm)
     try:
+        if held is not None and spec.ratio is not None:
+            why = held.problem or "the time ran out before reset was released"
+            rhythm = replace(rhythm, release=replace(unknown(ports, why), held=held))
+            if under is not None:
+                rhythm = replace(rhythm, release=_release(rhythm, ports, spec, system, held, under, effort))
         rhythm = _with_power_up(rhythm, system, goal, effort)
     except OutOfEffort as out:
         rhythm = replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
@@ -110,9 +118,14 @@ def _checked(settling: Settling, effort: Effort) -> Settling:
     return settling
 
 
-def _nothing_known(system: System, settling: Settling, scope: Scope, why: str) -> Rhythm:
+def _nothing_known(
+    ports: Ports, spec: Spec, system: System, settling: Settling, scope: Scope, why: str
+) -> Rhythm:
     recovery = Recovery(None, False, open=why)
-    return Rhythm(system, settling, scope, (), (), (), False, recovery, None, False, open=why)
+    release = unknown(ports, why) if ports.reset is not None and spec.ratio is not None else None
+    return Rhythm(
+        system, settling, scope, (), (), (), False, recovery, None, False, open=why, release=release
+    )
 
 
 def _orbits(system: System, starts: Sequence[Start], effort: Effort) -> tuple[Orbit, ...]:
@@ -160,45 +173,122 @@ def _start_only(system: System, start: State, why: str) -> Orbit:
 
 
 def _starts(
-    ports: Ports, spec: Spec, system: System, settling: Settling, effort: Effort
+    ports: Ports, spec: Spec, system: System, settling: Settling, held: reset.Held | None
 ) -> tuple[Scope, tuple[Start, ...], reset.Held | None]:
-    limit = max(settling.depth or 0, 2 * len(ports.design.registers) + 8)
-    if spec.start == "reset" and ports.reset is None:
-        raise UserError("--start reset: no reset was recognised", hint="name it with --reset PORT=LEVEL")
     if settling.depth is None:
-        return spec.start or ("reset" if ports.reset else "any"), (), None
+        return spec.start or ("reset" if ports.reset else "any"), (), held
     if spec.start == "any":
-        return "any", (), None
-    if ports.reset is not None and spec.start in (None, "reset"):
-        held = reset.hold(ports.design, ports.clock, ports.resetting, effort)
-        problem = _check_reset(ports, held, effort) if held.states else ""
+        return "any", (), held
+    limit = _limit(ports, settling)
+    if held is not None and spec.start in (None, "reset"):
         starts = reset.released(system, held, ports.resetting, limit)
-        if isinstance(starts, str):
-            problem, starts = problem or starts, ()
-        if problem:
-            return "reset", (), replace(held, states=(), problem=problem)
+        if held.problem or isinstance(starts, str):
+            return "reset", (), replace(held, states=(), problem=held.problem or str(starts))
         return "reset", starts, held
     found = reset.initial(system, limit)
     if isinstance(found, str):
         if spec.start == "initial":
             raise UserError(f"--start initial: {found}", hint="give initial values, or use --start any")
-        return "any", (), None
-    return "initial", found, None
+        return "any", (), held
+    return "initial", found, held
 
 
-def _check_reset(ports: Ports, held: reset.Held, effort: Effort) -> str:
-    """What is wrong with the states found under reset, "" if nothing is."""
-    design = ports.design
-    system, settling = settle(design, ports.clock, ports.resetting, ports.output_value, effort)
+def _limit(ports: Ports, settling: Settling) -> int:
+    """Micro-steps within which all settles, around a release as well."""
+    return max(settling.depth or 0, 2 * len(ports.design.registers) + 8)
+
+
+def _held(
+    ports: Ports, spec: Spec, settling: Settling, effort: Effort
+) -> tuple[reset.Held | None, System | None]:
+    """What reset leaves and how long that takes, checked, and the system under reset; None for what there is not."""
+    if ports.reset is None:
+        if spec.start == "reset":
+            hint = "name it with --reset PORT=LEVEL"
+            raise UserError("--start reset: no reset was recognised", hint=hint)
+        if spec.reset_cycles is not None:
+            raise UserError("--reset-cycles: no reset was recognised", hint="name it with --reset PORT=LEVEL")
+        return None, None
     if settling.depth is None:
+        return None, None
+    try:
+        return _held_long(ports, effort)
+    except OutOfEffort as out:
+        return unknown(ports, str(out)).held, None
+
+
+def _held_long(ports: Ports, effort: Effort) -> tuple[reset.Held, System]:
+    design = ports.design
+    under, settled = settle(design, ports.clock, ports.resetting, ports.output_value, effort, races=False)
+    held = reset.hold(design, ports.clock, ports.resetting, effort)
+    if held.states and settled.depth is None:
         # Where the micro-steps were cut short, what the registers hold is not known.
-        return settling.open or "the registers do not settle while reset is held"
-    if system.choices:
-        return ""
-    claim = certificate.reset_goal(system, held.half_cycles + 2, held.states)
-    if not held.unforced and not certificate.discharge(claim, effort):
-        raise InternalError("reset does not lead where it was found to lead")
-    return ""
+        why = settled.open or "the registers do not settle while reset is held"
+        return replace(held, states=(), problem=why), under
+    if held.states:
+        held = reset.exactly(under, held, lambda *place: _leaves(under, held, *place).goal, effort)
+    for level, count in enumerate(held.needs if held.states else ()):
+        if not certificate.discharge(_leaves(under, held, level, count), effort):
+            raise InternalError("reset does not lead where it was found to lead")
+    return held, under
+
+
+def _leaves(under: System, held: reset.Held, level: int, count: int) -> certificate.Obligation:
+    return certificate.reset_goal(under, level, count, held.states)
+
+
+def _release(
+    rhythm: Rhythm,
+    ports: Ports,
+    spec: Spec,
+    whole: System,
+    held: reset.Held,
+    under: System,
+    effort: Effort,
+) -> Release:
+    """Every release of reset, followed as long as there is time."""
+    effort.say("releasing reset")
+    found = releases(ports, whole, held, _limit(ports, rhythm.settling))
+    machine = rhythm.system
+    known: orbit.Places = {}
+    done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
+    for run in rhythm.orbits:
+        known |= orbit.onward(run.loop)
+    refuted: set[Expr] = set()
+    ours = Effort(effort.left / 4)
+
+    def followed(freed: Freed) -> Freed:
+        state = placed(freed.state, whole, machine)
+        if state not in done:
+            done[state] = follow(machine, state, ours, known, refuted)
+            known.update(orbit.onward(done[state].loop))
+        return replace(freed, orbit=done[state])
+
+    found = replace(
+        found,
+        on_time=tuple(followed(each) for each in found.on_time),
+        late=tuple(followed(each) for each in found.late),
+    )
+    if spec.reset_cycles is None or not found.on_time:
+        return found
+    for start in _slow_states(held, under, spec.reset_cycles):
+        short = too_short(found, whole, under, start, spec.reset_cycles)
+        if short is None:
+            continue
+        short = followed(short)
+        if differs(found, short):
+            return replace(found, short=short)
+    return found
+
+
+def _slow_states(held: reset.Held, under: System, cycles: int) -> Iterator[State]:
+    """States at rest under reset that so many input cycles may be too short for, the slowest first."""
+    for level in (0, 1):
+        slowest = held.slowest[level]
+        if held.needs[level] > 2 * cycles and slowest is not None:
+            yield slowest
+            for number in range(reset.SAMPLES):
+                yield reset.any_at_rest(under, level, number)
 
 
 def _races_won(ports: Ports, settling: Settling, starts: Sequence[Start], effort: Effort) -> tuple[str, ...]:

@@ -644,15 +644,19 @@ def _is_at(system: System, state: Sequence[Expr], beat: State, axes: Axes) -> Ex
     return e.conj([within, *(e.eq(a, b) for a, b in zip(state, shift, strict=True))])
 
 
-def reset_goal(system: System, count: int, wanted: Sequence[State]) -> Obligation:
-    """From any state, `count` half-cycles of `system` (reset held) end in one of the wanted states."""
-    state: list[Expr] = [e.var(name, width) for name, width in system.variables]
+def reset_goal(system: System, level: int, count: int, wanted: Sequence[State]) -> Obligation:
+    """From any state at rest with the clock at that level, `count` half-cycles of `system` (reset held) end in one of
+    the wanted states."""
+    state: list[Expr] = [e.var(name, width) for name, width in system.variables[:-1]]
+    state.append(e.const(level, 1))
+    (at_rest,) = e.substitute([system.settled], dict(zip(system.names, state, strict=True)))
     for gone in range(count):
         state = onwards(system, state, gone)[:-1]
     hits = [
         e.conj(e.eq(a, e.const(v, a.width)) for a, v in zip(state, target, strict=True)) for target in wanted
     ]
-    return Obligation("the states that reset leaves", e.conj(e.bvnot(hit) for hit in hits))
+    name = f"the states that {count} half-cycles of reset leave, begun with the clock {'high' if level else 'low'}"
+    return Obligation(name, e.conj([at_rest, *(e.bvnot(hit) for hit in hits)]))
 
 
 # -- Gray codes --------------------------------------------------------------------------------------------

@@ -203,6 +203,7 @@ CLAIMING = (
     ),
     click.option("--where", multiple=True, metavar="CONDITION", help="Of these values only those: 'B >= A'."),
     click.option("--within", metavar="K", help="Limit on the recovery, in half-cycles."),
+    click.option("--reset-cycles", metavar="K", help="Input cycles for which reset is held."),
     click.option(
         "--waive",
         "waivers",
@@ -332,6 +333,7 @@ def _spec(options: dict[str, Any]) -> Spec:
         include=options["include"],
         start=options["start"],
         within=_number(options, "within"),
+        reset_cycles=_number(options, "reset_cycles", "input cycles"),
         waivers=_waivers(options.get("waivers", ())),
         fin=read_frequency(fin) if fin is not None else None,
         source_duty=read_duty_range(duty) if duty is not None else None,
@@ -362,13 +364,14 @@ def _claimed(options: dict[str, Any]) -> dict[str, Any]:
     return claimed
 
 
-def _number(options: dict[str, Any], name: str) -> int | None:
+def _number(options: dict[str, Any], name: str, unit: str = "half-cycles") -> int | None:
     text = options.get(name)
     if text is None:
         return None
-    value = read_number(text, f"--{name}")
+    option = f"--{name.replace('_', '-')}"
+    value = read_number(text, option)
     if value < 0:
-        raise UserError(f"--{name} {text}: less than nothing", hint="give a number of half-cycles")
+        raise UserError(f"{option} {text}: less than nothing", hint=f"give a number of {unit}")
     return value
 
 

@@ -11,15 +11,14 @@ from collections.abc import Callable, Sequence
 from itertools import product
 from typing import TypeVar
 
-from prover import certificate, graph, linear, path, reset, tables
 from prover import expr as e
+from prover import graph, linear, path, tables
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_of
 from prover.expr import Expr
 from prover.findings import Report
-from prover.ports import Ports
 from prover.recode import placed
 from prover.rhythm import Goal, Orbit, Rhythm, goal_of
 from prover.settling import settle
@@ -43,8 +42,7 @@ def collect(report: Report, effort: Effort) -> Evidence:
     word = machine.words[0][1] if machine.words else ()
     kept = len(machine.describe((0,) * len(machine.variables)))
     inner = cone(whole) if kept < len(whole.variables) or machine.slices else whole
-    resets = rhythm.scope == "reset" and bool(rhythm.starts)
-    hold = _within(lambda: _hold(ports, effort)) if resets else None
+    hold = _within(lambda: _hold(rhythm, effort))
     followed = rhythm.scope != "reset" or hold is not None
     goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
     return Evidence(
@@ -102,20 +100,24 @@ def _track(orbit: Orbit) -> Track:
     return Track(lead, loop)
 
 
-def _hold(ports: Ports, effort: Effort) -> Hold | None:
-    """The states that reset leaves, if it can be shown that there are no others."""
-    held = reset.hold(ports.design, ports.clock, ports.resetting, effort)
-    system, settling = settle(
-        ports.design, ports.clock, ports.resetting, ports.output_value, effort, races=False
-    )
-    if not held.states or settling.depth is None:
+def _hold(rhythm: Rhythm, effort: Effort) -> Hold | None:
+    """The states that reset leaves and the runs after its releases, where they are certain."""
+    release = rhythm.release
+    if release is None or not release.held.states:
         return None
-    # Registers that reset doesn't force may take longer until they go round.
-    for half_cycles in (held.half_cycles + 2, 2 * held.half_cycles + 8):
-        goal = certificate.reset_goal(system, half_cycles, held.states)
-        if certificate.discharge(goal, effort):
-            return Hold(half_cycles, held.states, settling.answers)
-    return None
+    ports = release.ports
+    _, settling = settle(ports.design, ports.clock, ports.resetting, ports.output_value, effort, races=False)
+    starts = {start.state for start in rhythm.starts}
+    runs = [each.orbit for each in release.runs if each.orbit and each.orbit.start not in starts]
+    held, short = release.held, release.short
+    return Hold(
+        held.needs,
+        held.slowest,
+        held.states,
+        settling.answers,
+        None if short is None else short.start,
+        tuple(_track(run) for run in {run.start: run for run in runs}.values()),
+    )
 
 
 def _everywhere(rhythm: Rhythm, goal: Goal, effort: Effort) -> tuple[Layer, ...] | Ranking | Rounds | None:

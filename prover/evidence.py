@@ -47,13 +47,22 @@ class Lasso:
 
 @dataclass(frozen=True, slots=True)
 class Hold:
-    """Reset held for so many half-cycles leaves one of the states, from wherever it began; all of them really occur.
+    """Reset held.
 
-    settling  the answers from which the micro-steps under reset are bounded"""
+    needs     half-cycles of reset, begun with the clock low and with it high, after which the machine is in one of
+              the states, from wherever it began
+    slowest   by that level a state at rest for which one half-cycle less does not do; None where none is known
+    states    the states; all of them really occur
+    settling  the answers from which the micro-steps under reset are bounded
+    short     a state at rest after which reset as long as the user holds it does not do; None where it does
+    runs      the runs after releases that begin in other states than those of `starts`, in order"""
 
-    half_cycles: int
+    needs: tuple[int, int]
+    slowest: tuple[State | None, State | None]
     states: tuple[State, ...]
     settling: tuple[Model | None, ...]
+    short: State | None
+    runs: tuple[Track, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,7 +107,7 @@ class Evidence:
     gray        registers in Gray code that are read as the number they stand for
     word        registers that are read as one word, lowest first; empty if there are none
     matrix      how all registers are read as one count of steps; None where they are not
-    reset       the states that reset leaves; None where the claim begins elsewhere, or where they are not certain
+    reset       the states that reset leaves, and its release; None where there is none, or where they are not certain
     starts      the runs of the start states, in order
     everywhere  about all power-up states: the stages of a cover, a ranking, or a list of loops
     lassos      power-up states that refute something, or that need the longest
@@ -142,13 +151,20 @@ def as_object(evidence: Evidence) -> Object:
         "lassos": [{**track(lasso.track), "start": list(lasso.start)} for lasso in evidence.lassos],
     }
     if evidence.reset is not None:
-        out["reset"] = {
-            "half_cycles": evidence.reset.half_cycles,
-            "states": [list(state) for state in evidence.reset.states],
-            "settling": list(evidence.reset.settling),
-        }
+        out["reset"] = _hold(evidence.reset, track)
     out["paths"] = [[_item(item) for item in path] for path in numbers]
     return out
+
+
+def _hold(of: Hold, track: Callable[[Track], Object]) -> Object:
+    return {
+        "needs": list(of.needs),
+        "slowest": [None if state is None else list(state) for state in of.slowest],
+        "states": [list(state) for state in of.states],
+        "settling": list(of.settling),
+        "short": None if of.short is None else list(of.short),
+        "runs": [track(run) for run in of.runs],
+    }
 
 
 def _matrix(of: Matrix) -> Object:
@@ -232,19 +248,26 @@ def read(value: Any) -> Evidence:
         gray=_each(of["gray"], "gray", _text),
         word=_each(of["word"], "word", _text),
         matrix=None if of["matrix"] is None else _read_matrix(of["matrix"]),
-        reset=None if of["reset"] is None else _hold(of["reset"]),
+        reset=None if of["reset"] is None else _read_hold(of["reset"], start),
         starts=_each(of["starts"], "starts", start),
         everywhere=_read_everywhere(of["everywhere"], track),
         lassos=_each(of["lassos"], "lassos", lasso),
     )
 
 
-def _hold(value: Any) -> Hold:
-    of = _fields(value, "reset", "half_cycles states settling")
+def _read_hold(value: Any, run: Callable[[Any, str], Track]) -> Hold:
+    of = _fields(value, "reset", "needs slowest states settling short runs")
+    needs = _each(of["needs"], "reset/needs", lambda x, where: _number(x, where, 0, LONGEST))
+    slowest = _each(of["slowest"], "reset/slowest", _state_or_none)
+    if len(needs) != 2 or len(slowest) != 2:
+        raise Malformed("reset: not for two levels of the clock")
     return Hold(
-        _number(of["half_cycles"], "reset/half_cycles", 0, LONGEST),
+        (needs[0], needs[1]),
+        (slowest[0], slowest[1]),
         _each(of["states"], "reset/states", _state),
         _each(of["settling"], "reset/settling", _answer),
+        _state_or_none(of["short"], "reset/short"),
+        _each(of["runs"], "reset/runs", run),
     )
 
 
@@ -357,6 +380,10 @@ def _numbers(value: Any, where: str) -> tuple[int, ...]:
 
 def _state(value: Any, where: str) -> State:
     return _each(value, where, lambda x, here: _number(x, here, 0))
+
+
+def _state_or_none(value: Any, where: str) -> State | None:
+    return None if value is None else _state(value, where)
 
 
 def _text(value: Any, where: str) -> str:

@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from fractions import Fraction
 
+from prover.depth import depths
 from prover.findings import Fact
 from prover.ports import Ports
+from prover.release import UNITS, pulses
 from prover.rhythm import Orbit, Rhythm, Wave
 from prover.spec import Spec
 from prover.system import State
@@ -16,6 +18,9 @@ def collect(rhythm: Rhythm, spec: Spec) -> dict[str, Fact]:
     facts: dict[str, Fact] = {}
     for orbit in rhythm.orbits[:1] or _agreed(rhythm):
         facts |= wave_facts(orbit, spec)
+    for level, length in shortest(rhythm).items():
+        facts[f"shortest_{'high' if level else 'low'}_half_cycles"] = length
+    facts["clock_depth"] = dict(depths(rhythm.system))
     worst = rhythm.recovery.worst if rhythm.recovery else None
     if worst is not None:
         facts["worst_recovery_half_cycles"] = worst
@@ -44,6 +49,34 @@ def _agreed(rhythm: Rhythm) -> tuple[Orbit, ...]:
     return loop_orbits(rhythm, 1) if good or len({loop.wave for loop in rhythm.loops}) == 1 else ()
 
 
+def shortest(rhythm: Rhythm) -> dict[int, int]:
+    """By level, the whole half-cycles of the shortest pulse and gap on the runs from the start states, on those after
+    a release of reset, and on good loops; empty where the output never changes, or a run is too long to look through.
+
+    A pulse that begins with the release, between two edges, counts the half-cycles that it has whole."""
+    found: dict[int, int] = {}
+
+    def take(level: int, length: int) -> None:
+        found[level] = min(length, found.get(level, length))
+
+    released = rhythm.release.on_time if rhythm.release else ()
+    for run in (*rhythm.orbits, *(each.orbit for each in released if each.orbit)):
+        if run.wave() is None:
+            return {}
+    for run in rhythm.orbits:
+        whole = list(run.runs(rounds=3))[1:-1]
+        for level, length in whole:
+            take(level, length)
+    for each in released:
+        for pulse in pulses(each):
+            take(pulse.level, pulse.length // UNITS)
+    for loop in rhythm.loops:
+        if loop.good:
+            for level, length in loop.wave.runs:
+                take(level, length)
+    return found
+
+
 def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:
     """Launching edges and duty of the wave that the orbit runs into; none if it has more than one high run."""
     wave = orbit.wave()
@@ -51,11 +84,14 @@ def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:
         return {}
     period, high = wave.period or 0, wave.high or 0
     rise = _first_rise(orbit)
-    # The half-cycle after a rising source edge has the clock high.
-    on_rising = orbit.state(rise)[-1] == 1
+    both = period % 2 == 1
+    # The half-cycle after a rising source edge has the clock high. Where every other period begins on a falling one,
+    # the list is that of one that begins on a rising one.
+    on_rising = both or orbit.state(rise)[-1] == 1
     first = 1 if on_rising else 2
     facts: dict[str, Fact] = {"source_edges": [first, first + high, first + period]}
-    both = period % 2 == 1
+    if both:
+        facts["source_edges_alternate"] = True
     a, b = (high + 1) // 2, high // 2
     if not on_rising:
         a, b = b, a

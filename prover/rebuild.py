@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
-from prover import certificate, linear, path, recode, reset, tables
+from prover import certificate, linear, path, recode, release, reset, tables
 from prover import expr as e
 from prover.certificate import CoverClaim, Obligation, Stage
 from prover.effort import Effort, OutOfEffort
@@ -19,6 +19,7 @@ from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
 from prover.ports import Ports
+from prover.recode import placed
 from prover.rhythm import LONGEST_ROUND, NOWHERE, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, goal_of
 from prover.settling import Settling, settle
 from prover.solve import Model
@@ -26,8 +27,8 @@ from prover.spec import Spec
 from prover.system import State, System, cone
 from prover.tables import Ranking, Rounds
 
-HOLD_PER_REGISTER = 8
-"""Half-cycles of reset, for each register, that are unrolled; searching for them ends earlier."""
+HOLD_PER_BIT = 8
+"""Half-cycles of reset, for each bit of state, that are unrolled; searching for them ends earlier."""
 
 
 class Rejected(Exception):
@@ -54,17 +55,21 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=ask.answer
     )
     ask.finish()
-    scope, starts, why = _starts(ports, spec, whole, settling, evidence.reset, owed, effort)
+    known = None
+    if settling.depth is not None and evidence.reset is not None:
+        known = _held(ports, evidence.reset, owed, effort)
+    scope, starts, why = _starts(ports, spec, whole, settling, known)
     if settling.depth is None:
         if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, ()):
             raise Rejected("evidence about a divider of which nothing is known")
-        return Rebuilt(whole, _nothing_known(whole, settling, scope), owed.listed())
+        return Rebuilt(whole, _nothing_known(ports, whole, settling, scope), owed.listed())
     machine = machine_of(whole, evidence, owed)
     starts = tuple(replace(s, state=recode.placed(s.state, whole, machine)) for s in starts)
     rhythm = _followed(Rhythm(
         system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
         recovery=None, stuck=None, never_stuck=False, open=why,
     ), evidence.starts, owed)  # fmt: skip
+    rhythm = _with_release(rhythm, ports, spec, whole, evidence.reset, known, owed)
     lassos = [_lasso(whole, machine, lasso, owed) for lasso in evidence.lassos]
     listed = evidence.everywhere.waves() if isinstance(evidence.everywhere, Rounds) else []
     goal = goal_of(spec, [*(run.wave() for run in rhythm.orbits), *listed, *(run.wave() for run in lassos)])
@@ -122,10 +127,11 @@ class _Replay:
             raise Rejected(f"{self.name}: {len(self.answers)} answers to {self.asked} questions")
 
 
-def _nothing_known(whole: System, settling: Settling, scope: Scope) -> Rhythm:
+def _nothing_known(ports: Ports, whole: System, settling: Settling, scope: Scope) -> Rhythm:
     why = settling.open or "the micro-steps do not settle"
     recovery = Recovery(None, False, open=why)
-    return Rhythm(whole, settling, scope, (), (), (), False, recovery, None, False, open=why)
+    freed = release.unknown(ports, why) if ports.reset is not None else None
+    return Rhythm(whole, settling, scope, (), (), (), False, recovery, None, False, open=why, release=freed)
 
 
 # -- the machine that the evidence speaks of ---------------------------------------------------------------
@@ -206,53 +212,80 @@ def _check_items(items: Sequence[Item], widths: Sequence[int], where: str) -> No
 # -- start states ------------------------------------------------------------------------------------------
 
 
+Under = tuple[reset.Held, System]
+"""What reset leaves, and the system under reset."""
+
+
+def _limit(ports: Ports, settling: Settling) -> int:
+    return max(settling.depth or 0, 2 * len(ports.design.registers) + 8)
+
+
 def _starts(
-    ports: Ports,
-    spec: Spec,
-    whole: System,
-    settling: Settling,
-    hold: Hold | None,
-    owed: _Obligations,
-    effort: Effort,
+    ports: Ports, spec: Spec, whole: System, settling: Settling, known: Under | None
 ) -> tuple[Scope, tuple[Start, ...], str]:
     """Where the claim begins, the start states there, and why there are none."""
     if settling.depth is None:
         return spec.start or ("reset" if ports.reset else "any"), (), ""
-    limit = max(settling.depth, 2 * len(ports.design.registers) + 8)
+    limit = _limit(ports, settling)
     if spec.start != "any" and ports.reset is not None and spec.start in (None, "reset"):
-        if hold is None:
+        if known is None:
             return "reset", (), "the states that reset leaves are not certain"
-        return "reset", _released(ports, whole, hold, limit, owed, effort), ""
-    if hold is not None:
-        raise Rejected("reset: held, though the claim does not begin there")
+        return "reset", _released(ports, whole, known[0], limit), ""
     found = reset.initial(whole, limit) if spec.start != "any" else ""
     return ("any", (), "") if isinstance(found, str) else ("initial", found, "")
 
 
-def _released(
-    ports: Ports, whole: System, hold: Hold, limit: int, owed: _Obligations, effort: Effort
-) -> tuple[Start, ...]:
-    """The start states after reset, owing that it leaves these states from everywhere and really leaves each."""
+def _held(ports: Ports, hold: Hold, owed: _Obligations, effort: Effort) -> Under:
+    """What reset leaves, owing that it leaves these states from everywhere, that each of them really occurs, and that
+    it needs as long as is said."""
     ask = _Replay(hold.settling, "micro-steps under reset", owed)
     system, settling = settle(
         ports.design, ports.clock, ports.resetting, ports.output_value, effort, ask=ask.answer, races=False
     )
     ask.finish()
-    if settling.depth is None:
-        raise Rejected("reset: held, though the machine does not settle then")
-    if hold.half_cycles > HOLD_PER_REGISTER * (len(system.variables) + 4):
-        raise Rejected(f"reset: {hold.half_cycles} half-cycles are more than it needs")
+    if ports.reset is None or settling.depth is None:
+        raise Rejected("reset: held, though there is none or the machine does not settle then")
+    if max(hold.needs) > HOLD_PER_BIT * (system.bits + 4):
+        raise Rejected(f"reset: {max(hold.needs)} half-cycles are more than it needs")
     for state in hold.states:
         _check_items([Beat(state, 0)], [w for _, w in system.variables], "reset")
-    zeros = [0] * len(system.choices)
-    stepped = [system.run(*state, *zeros) for state in hold.states]
+    steps = [_step(system, state) for state in hold.states]
     # States that the machine under reset merely permutes go on occurring, however long it is held.
-    if sorted(state[:-1] for state in stepped) != sorted(hold.states) or not hold.states:
+    if sorted(step.target for step in steps) != sorted(hold.states) or not hold.states:
         raise Rejected("reset: the states do not follow one another while it is held")
-    steps = [Step(a, tuple(b[:-1]), b[-1], ()) for a, b in zip(hold.states, stepped, strict=True)]
-    owed.add([certificate.reset_goal(system, hold.half_cycles, hold.states)])
     owed.add(certificate.single_obligations(system, steps, "reset held"))
-    held = reset.Held(hold.half_cycles, hold.states, ())
+    for level, count in enumerate(hold.needs):
+        owed.add([certificate.reset_goal(system, level, count, hold.states)])
+        slowest = hold.slowest[level]
+        if slowest is not None:
+            taken = _taken(system, slowest, count - 1, owed)
+            if taken[-1] in hold.states or slowest[-1] != level:
+                raise Rejected("reset: a state that is said to need long does not")
+    unforced = reset.several_values(system.names, hold.states)
+    return reset.Held(hold.states, hold.needs, unforced, hold.slowest), system
+
+
+def _step(system: System, state: State) -> Step:
+    *after, level = system.run(*state, *[0] * len(system.choices))
+    return Step(state, tuple(after), level, ())
+
+
+def _taken(system: System, start: State, count: int, owed: _Obligations) -> list[State]:
+    """The states that so many half-cycles lead through from a state at rest, owing that they do."""
+    _check_items([Beat(start, 0)], [w for _, w in system.variables], "reset")
+    if count < 0 or e.evaluate([system.settled], dict(zip(system.names, start, strict=True))) != [1]:
+        raise Rejected("reset: held from a state that is not at rest, or not at all")
+    steps: list[Step] = []
+    states = [start]
+    for _ in range(count):
+        steps.append(_step(system, states[-1]))
+        states.append(steps[-1].target)
+    owed.add(certificate.single_obligations(system, steps, "reset held from a state"))
+    return states
+
+
+def _released(ports: Ports, whole: System, held: reset.Held, limit: int) -> tuple[Start, ...]:
+    """The start states after reset."""
     try:
         starts = reset.released(whole, held, ports.resetting, limit)
     except InternalError:
@@ -260,6 +293,60 @@ def _released(
     if isinstance(starts, str):
         raise Rejected(f"reset: {starts}")
     return starts
+
+
+def _with_release(
+    rhythm: Rhythm,
+    ports: Ports,
+    spec: Spec,
+    whole: System,
+    hold: Hold | None,
+    known: Under | None,
+    owed: _Obligations,
+) -> Rhythm:
+    """The rhythm with every release of reset, owing the runs after them."""
+    if ports.reset is None:
+        return rhythm
+    if hold is None or known is None:
+        return replace(rhythm, release=release.unknown(ports, "the certificate has no evidence about reset"))
+    held, under = known
+    found = release.releases(ports, whole, held, _limit(ports, rhythm.settling))
+    machine = rhythm.system
+    if hold.short is not None:
+        cycles = spec.reset_cycles
+        if cycles is None or cycles > release.LONGEST_SHORT:
+            raise Rejected("reset: too short, though nothing is said of how long it is held")
+        _taken(under, hold.short, 2 * cycles, owed)
+        short = release.too_short(found, whole, under, hold.short, cycles)
+        if short is None:
+            raise Rejected("reset: not too short for the state that is to show it")
+        found = replace(found, short=short)
+    done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
+    places = [placed(each.state, whole, machine) for each in found.runs]
+    wanted = [state for state in dict.fromkeys(places) if state not in done]
+    if len(hold.runs) > len(wanted):
+        raise Rejected(f"reset: {len(hold.runs)} runs after {len(wanted)} releases")
+    # A release without its run stays open.
+    wanted = wanted[: len(hold.runs)]
+    for number, (state, track) in enumerate(zip(wanted, hold.runs, strict=True)):
+        run = orbit_of(track, machine, f"reset/runs/{number}")
+        if run.start != state:
+            raise Rejected(f"reset/runs/{number}: begins elsewhere than the release")
+        done[state] = run
+    owe_orbits(machine, [done[state] for state in wanted], "release", owed)
+
+    def followed(each: release.Freed) -> release.Freed:
+        return replace(each, orbit=done.get(placed(each.state, whole, machine)))
+
+    found = replace(
+        found,
+        on_time=tuple(followed(each) for each in found.on_time),
+        late=tuple(followed(each) for each in found.late),
+        short=followed(found.short) if found.short is not None else None,
+    )
+    if found.short is not None and not release.differs(found, found.short):
+        raise Rejected("reset: too short, though the output does not show it")
+    return replace(rhythm, release=found)
 
 
 def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: _Obligations) -> Rhythm:

@@ -22,6 +22,7 @@ from prover.evidence import Malformed, read
 from prover.findings import Finding
 from prover.ports import Ports, recognise
 from prover.rebuild import Rebuilt, Rejected, rebuild
+from prover.release import NotShown
 from prover.report import certificate as written
 from prover.report.certificate import SCHEMA, Subject
 from prover.spec import Spec
@@ -169,7 +170,7 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
         made = rebuild(ports, subject.spec, found, effort)
         findings = _judged(made, subject.spec)
         derived = written.document(subject, ports, found, made, findings)
-    except (Malformed, Rejected) as fault:
+    except (Malformed, Rejected, NotShown) as fault:
         raise Rejected(f"the evidence doesn't bear it: {fault}") from None
     except UserError as fault:
         raise Rejected(f"the options don't fit the sources: {fault.message}") from None
@@ -221,6 +222,7 @@ def _subject(stated: dict[str, Any]) -> Subject:
             include=tuple(options["include"]),
             start=claim["start"],
             within=claim["within"],
+            reset_cycles=claim["reset_cycles"],
             waivers=claim["waivers"],
         )
         subject = Subject(
@@ -251,7 +253,7 @@ def _check_kinds(subject: Subject) -> None:
     texts = [spec.module, spec.clock, spec.reset, spec.output]
     names = [*subject.files, *subject.include, *spec.waivers.values(), *spec.defines.values()]
     numbers = [*spec.parameters.values(), *spec.holds.values()]
-    numbers += [number for number in (spec.high, spec.within) if number is not None]
+    numbers += [each for each in (spec.high, spec.within, spec.reset_cycles) if each is not None]
     if any(text is not None and not isinstance(text, str) for text in texts):
         raise ValueError
     if any(not isinstance(name, str) for name in names) or not subject.files:

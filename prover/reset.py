@@ -6,60 +6,143 @@ as reset takes hold they become constants. What does not is enumerated while it 
 
 from __future__ import annotations
 
+import functools
 import itertools
-from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
+import random
+from collections.abc import Callable, Iterator, Sequence, Set
+from dataclasses import dataclass, replace
+from operator import and_, or_
 
 from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
 from prover.expr import Expr
 from prover.rhythm import Start
-from prover.solve import constant
+from prover.solve import constant, find
 from prover.system import Inputs, Moment, State, System, change_inputs, clock_edge
 
 MOST_UNKNOWN_BITS = 10
 """Bits that reset does not force, or that have no initial value, up to which every value is followed."""
+
+SAMPLES = 16
+"""Unknown states that are followed on values, to see whether reset still takes hold of more of them."""
 
 
 @dataclass(frozen=True, slots=True)
 class Held:
     """Reset held long enough.
 
-    half_cycles   how long that is: from then on the registers go through `states`, one a half-cycle, for ever
-    states        the states while reset is held, once round, for each value of the unforced bits
-    unforced      registers that never become known
-    problem       why there is no answer, "" otherwise
+    states    the states while it is held, once round: however long it is held, the machine goes round among them
+    needs     half-cycles of reset, begun with the clock low and with it high, from which on it does
+    unforced  registers that are not the same in all states of one clock level, or that are not known
+    slowest   by the clock's level a state for which one half-cycle less does not do; None where none is known
+    problem   why the states are not known, "" otherwise
     """
 
-    half_cycles: int
     states: tuple[State, ...]
+    needs: tuple[int, int]
     unforced: tuple[str, ...]
+    slowest: tuple[State | None, State | None] = (None, None)
     problem: str = ""
+
+    @property
+    def half_cycles(self) -> int:
+        """How long reset has to be held, whatever the clock's level when it is asserted."""
+        return max(self.needs)
+
+    @property
+    def exact(self) -> bool:
+        """Whether it really has to be held for as long as it `needs`."""
+        return all(k == 0 or state is not None for k, state in zip(self.needs, self.slowest, strict=True))
 
 
 def hold(design: Design, clock: str, active: Inputs, effort: Effort) -> Held:
-    """Hold reset at its active value from every state, until what can become known is known."""
+    """Hold reset at its active value from every state, until what can become known is known. `needs` is enough, and
+    `exactly` tells how much of it is needed."""
     effort.say("holding reset")
     limit = 2 * len(design.registers) + 8
     names = [*(r.name for r in design.registers), clock]
     found: set[State] = set()
-    unforced: list[str] = []
-    longest = 0
+    needs: list[int] = []
     # What the first edge is makes a difference: a register on the other edge may have to wait for it once more.
     for level in (e.FALSE, e.TRUE):
         count, moment = _known_after(design, clock, active, level, limit, effort)
+        needs.append(count)
         unknown = e.variables([moment[name] for name in names])
-        unforced += [name for name in names if e.variables([moment[name]]) and name not in unforced]
-        longest = max(longest, count)
         if sum(v.width for v in unknown) > MOST_UNKNOWN_BITS:
-            return Held(longest, (), tuple(unforced), f"reset never forces {', '.join(unforced)}")
+            left = tuple(name for name in names if e.variables([moment[name]]))
+            why = f"{', '.join(left)} not known after {count} half-cycles of reset"
+            return Held((), (count, count), left, problem=why)
         for filled in _fillings(moment):
             states = _round(design, clock, filled, names, limit, effort)
             if not states:
-                return Held(longest, (), tuple(unforced), "the registers run on while reset is held")
+                why = "the registers run on while reset is held"
+                return Held((), (count, count), (), problem=why)
             found |= set(states)
-    return Held(longest, tuple(sorted(found)), tuple(unforced))
+    states = tuple(sorted(found))
+    return Held(states, (needs[0], needs[1]), several_values(names, states))
+
+
+def several_values(names: Sequence[str], states: Sequence[State]) -> tuple[str, ...]:
+    """Names of components that are not the same in all the states of one clock level."""
+    return tuple(
+        name
+        for place, name in enumerate(names)
+        if any(len({state[place] for state in states if state[-1] == level}) > 1 for level in (0, 1))
+    )
+
+
+def exactly(system: System, held: Held, goal: Callable[[int, int], Expr], effort: Effort) -> Held:
+    """What reset held long enough really needs, in the system under reset. `goal(level, count)` is true of states
+    that, after so many half-cycles begun at that level, are none of those that reset leaves.
+
+    A state that needs long is followed on values, and a state that needs longer is asked for, until there is none."""
+    effort.say("looking for the shortest reset")
+    home = set(held.states)
+    needs, slowest = [], []
+    for level in (0, 1):
+        starts = [any_at_rest(system, level, number) for number in range(SAMPLES // 2)]
+        timed = [(gone, start) for start in starts if (gone := _until(system, start, home)) is not None]
+        count, state = max(timed, default=(0, None), key=lambda pair: pair[0])
+        while (model := find(goal(level, count), effort)) is not None:
+            state = (*(model.get(name, 0) for name in system.names[:-1]), level)
+            gone = _until(system, state, home)
+            if gone is None or gone <= count:
+                why = "what reset leaves hangs on a value that x stands for"
+                return replace(held, states=(), problem=why)
+            count = gone
+        needs.append(count)
+        slowest.append(state if count else None)
+    return replace(held, needs=(needs[0], needs[1]), slowest=(slowest[0], slowest[1]))
+
+
+def any_at_rest(system: System, level: int, number: int) -> State:
+    """Some state at rest under reset: from all ones, all zeros, and then from values at random."""
+    rng = random.Random(number)
+    values = {
+        r.name: (-1, 0)[number] % (1 << r.width) if number < 2 else rng.getrandbits(r.width)
+        for r in system.design.registers
+    }
+    moment = {r.name: e.const(values[r.name], r.width) for r in system.design.registers}
+    moment |= system.inputs.moment(system.design.inputs) | {system.clock: e.const(level, 1)}
+    limit = 2 * len(system.design.registers) + 8
+    return known(change_inputs(system.design, system.clock, moment, system.inputs, limit), system.names)
+
+
+def known(moment: Moment, names: Sequence[str]) -> State:
+    """The values in a moment that is known, choices that x leaves at 0."""
+    values = [moment[name] for name in names]
+    zeros = {v.name: 0 for v in e.variables(values)}
+    return tuple(e.evaluate(values, zeros))
+
+
+def _until(system: System, state: State, home: Set[State]) -> int | None:
+    """Half-cycles until the state is one of those; None if it takes too long."""
+    for count in range(4 * system.bits + 64):
+        if state in home:
+            return count
+        state = system.next(state)
+    return None
 
 
 def _known_after(
@@ -71,17 +154,33 @@ def _known_after(
     moment: Moment = {r.name: e.var(r.name, r.width) for r in design.registers}
     moment |= active.moment(design.inputs) | {clock: level}
     moment = _fresh_choices(change_inputs(design, clock, moment, active, limit), f"{level.value}")
-    longest = 4 * len(design.registers) + 8
-    for count in range(longest):
+    patience = 4 * len(design.registers) + 8
+    fewest, since, count = design.state_bits + 1, 0, 0
+    while count - since < patience:
         for name in names:
-            known = constant(moment[name])
-            if known is not None:
-                moment[name] = e.const(known, moment[name].width)
+            value = constant(moment[name])
+            if value is not None:
+                moment[name] = e.const(value, moment[name].width)
         if not e.variables([moment[name] for name in names]):
             return count, moment
+        moving = _moving_bits([moment[name] for name in names])
+        if moving < fewest:
+            fewest, since = moving, count
         moment = _fresh_choices(clock_edge(design, clock, moment, limit), f"{level.value}.{count}")
+        count += 1
         effort.check()
-    return longest, moment
+    return count, moment
+
+
+def _moving_bits(values: Sequence[Expr]) -> int:
+    """Bits that are not the same in all of some samples: a long shift register becomes known a bit at a time."""
+    rng = random.Random(0)
+    used = e.variables(values)
+    samples = [e.evaluate(values, {v.name: rng.getrandbits(v.width) for v in used}) for _ in range(SAMPLES)]
+    return sum(
+        (functools.reduce(or_, column) ^ functools.reduce(and_, column)).bit_count()
+        for column in zip(*samples, strict=True)
+    )
 
 
 def _fresh_choices(moment: Moment, label: str) -> Moment:

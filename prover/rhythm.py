@@ -24,6 +24,7 @@ from prover.system import State, System
 if TYPE_CHECKING:
     from prover.certificate import Stage
     from prover.glitch import Glitches
+    from prover.release import Release
     from prover.spec import Spec
 
 LONGEST_ROUND = 200_000
@@ -306,6 +307,7 @@ class Rhythm:
     shown      orbits of some power-up states, such as examples of loops, for findings to be shown by
     good       the good states; None where they are not known
     glitches   whether the output may pulse within a half-cycle; None where nothing was claimed
+    release    what reset does; None for a divider without one, and where nothing is claimed
     races_won  the wave from reset if the edge won each race against a clear; None where there is no race
     """
 
@@ -329,6 +331,7 @@ class Rhythm:
     shown: Mapping[State, Orbit] = field(default_factory=dict)
     good: Good | None = None
     glitches: Glitches | None = None
+    release: Release | None = None
 
     def orbit_from(self, state: State) -> Orbit:
         """The orbit of a state: one that is shown, or followed now."""

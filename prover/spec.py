@@ -42,6 +42,7 @@ class Spec:
     include       folders for `include
     start         where the ratio is claimed from; None: reset if there is one, else initial values, else any
     within        limit on the recovery, in half-cycles
+    reset_cycles  input cycles for which reset is held; None: as long as it needs
     waivers       property name to reason
     fin           frequency of the input clock, in Hz
     source_duty   range of the input clock's high fraction, in per cent
@@ -65,12 +66,18 @@ class Spec:
     include: tuple[str, ...] = ()
     start: StartScope | None = None
     within: int | None = None
+    reset_cycles: int | None = None
     waivers: Mapping[str, str] = field(default_factory=dict)
     fin: Fraction | None = None
     source_duty: tuple[Fraction, Fraction] | None = None
     effort: float = 60.0
 
     def __post_init__(self) -> None:
+        if self.reset_cycles is not None and self.reset_cycles < 1:
+            raise UserError(
+                f"--reset-cycles {self.reset_cycles}: no time for which reset is held",
+                hint="give a number of input cycles, 1 or more",
+            )
         if self.ratio is None:
             if not self.claims and (self.high is not None or self.high_formula is not None):
                 raise UserError("a high time without a ratio", hint="give --ratio as well")

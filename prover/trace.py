@@ -57,6 +57,16 @@ class Trace:
         return self.rests[-1].half_cycle + 1
 
 
+def rest_of(
+    design: Design, outputs: Mapping[str, Expr], inputs: Mapping[str, int], registers: Mapping[str, int]
+) -> Rest:
+    """The first rest of a trace, from values of the inputs and of all registers and the clock; choices are 0."""
+    start = Rest(0, False, dict(inputs), dict(registers), {})
+    moment = _moment(design, start)
+    (clock,) = set(registers) - {r.name for r in design.registers}
+    return _rest(design, clock, outputs, 0, False, inputs, moment)
+
+
 def run(
     design: Design,
     clock: str,

@@ -15,7 +15,7 @@ from pathlib import Path
 
 CASES = Path(__file__).parents[1] / "cases"
 FOLDERS = ("gauge", "faulty", "published", "refused")
-PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling")
+PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling", "reset")
 VERDICTS = {"proved", "refuted", "open"}
 
 
@@ -31,6 +31,7 @@ class Stated:
     worst: int | None = None
     exact: bool = False
     obligation: bool = False
+    held: int | None = None
 
 
 @dataclass(frozen=True)
@@ -146,14 +147,15 @@ def _verdicts(value: str) -> frozenset[str]:
 def _property(value: str) -> Stated:
     """Such as `proved, worst 3, exact`; the words after the verdict in any order."""
     verdict, *parts = value.split(", ")
-    worst = None
+    numbers: dict[str, int] = {}
     for part in parts:
-        match = re.fullmatch(r"worst (\d+)", part)
+        match = re.fullmatch(r"(worst|held) (\d+)", part)
         if match:
-            worst = int(match[1])
+            numbers[match[1]] = int(match[2])
         elif part not in ("exact", "obligation"):
             raise ValueError(part)
-    return Stated(_verdicts(verdict), worst, "exact" in parts, "obligation" in parts)
+    worst, held = numbers.get("worst"), numbers.get("held")
+    return Stated(_verdicts(verdict), worst, "exact" in parts, "obligation" in parts, held)
 
 
 def _wave(value: str) -> StatedWave:

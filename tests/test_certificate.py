@@ -128,6 +128,8 @@ def test_what_x_stands_for_may_change_from_one_half_cycle_to_the_next() -> None:
     assert system.choices
     home = [(3, 0), (3, 1)]
     for half_cycles in (1, 5, 9):
-        assert not certificate.discharge(certificate.reset_goal(system, half_cycles, home), Effort(60))
+        for level in (0, 1):
+            goal = certificate.reset_goal(system, level, half_cycles, home)
+            assert not certificate.discharge(goal, Effort(60))
     everywhere = [(value, level) for value in range(4) for level in (0, 1)]
-    assert certificate.discharge(certificate.reset_goal(system, 5, everywhere), Effort(60))
+    assert certificate.discharge(certificate.reset_goal(system, 0, 5, everywhere), Effort(60))

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 10, high 4
 // loops: 1
 // false loops: 1
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // loops: 1
 // false loops: 1
 // check: --ratio 5 --high 4
@@ -26,6 +28,7 @@
 // no-stuck: proved
 // recovery: proved, worst 4, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 10, high 4
 // loops: 1
 // false loops: 0

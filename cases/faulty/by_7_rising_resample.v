@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved, obligation
+// reset: refuted, held 2
 // from reset: period 14, high 8
 // loops: 1
 // false loops: 1
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved, obligation
+// reset: proved, held 2
 // from reset: period 14, high 8
 // loops: 1
 // false loops: 0

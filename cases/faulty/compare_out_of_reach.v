@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: never toggles
 // loops: 2
 // false loops: 2
@@ -19,6 +20,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // loops: 2
 // false loops: 2
 // stuck: yes

@@ -6,6 +6,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: never toggles
 // loops: 8
 // false loops: 8
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 16, high 8
 // loops: 1
 // false loops: 0

@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 24, high 12
 // loops: 3
 // false loops: 2

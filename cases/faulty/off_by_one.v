@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 2
 // from reset: period 44, high 22
 // loops: 1
 // false loops: 1
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 10, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 44, high 22
 // loops: 1
 // false loops: 0

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 12260, high 6130
 // loops: 1
 // false loops: 1

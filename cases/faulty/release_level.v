@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // loops: 3
 // false loops: 1
 // stuck: yes

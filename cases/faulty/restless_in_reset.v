@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: open
 // loops: 2
 // false loops: 1
 // stuck: yes

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0, obligation
 // at: div=0
 // from reset: period 64, high 32
 // loops: 1
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 30, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // at: div=1
 // from reset: period 4, high 2
 // loops: 1

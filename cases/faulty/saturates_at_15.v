@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 40, high 20
 // loops: 3
 // false loops: 2
@@ -18,6 +19,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 40, high 20
 // loops: 3
 // false loops: 2

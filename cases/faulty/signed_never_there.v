@@ -6,6 +6,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: never toggles
 // loops: 2
 // false loops: 2

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 24, high 12
 // loops: 1
 // false loops: 1

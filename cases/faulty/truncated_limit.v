@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 176, high 88
 // loops: 1
 // false loops: 1
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 176, high 88
 // loops: 1
 // false loops: 0

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 20, high 10
 // loops: 4
 // false loops: 3
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // loops: 4
 // false loops: 3
 module twisted_ring_5_reset (input clk, input clr_n, output valve);

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 2
 // from reset: period 18
 // loops: 1
 // false loops: 1

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 5, exact
 // settling: proved, obligation
+// reset: proved, held 2
 // from reset: period 10, high 5
 // loops: 1
 // false loops: 0
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 5, exact
 // settling: proved, obligation
+// reset: proved, held 2
 // loops: 1
 // false loops: 0
 module toggle_stage (input ck, input clear, output reg q);

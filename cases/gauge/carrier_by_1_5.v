@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 3, high 1
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 3, high 2
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module carrier_by_1_5 (input clk, input rst_n, output carrier, output carrier_n);

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 3
 // from reset: period 5, high 2
 // loops: 1
 // false loops: 0

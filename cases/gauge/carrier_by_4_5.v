@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 9, high 4
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // loops: 1
 // false loops: 0
 module carrier_by_4_5 (input clk, input rst, output carrier);

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 8, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 48, high 24
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 8, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module enabled_count #(parameter WIDTH = 2, LAST = 3) (

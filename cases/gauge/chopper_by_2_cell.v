@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module d_flop (input ck, input clear_n, input d, output reg q, output q_n);

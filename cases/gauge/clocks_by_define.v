@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 24, high 12
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 14, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 8, high 4
 // loops: 1
 // false loops: 0

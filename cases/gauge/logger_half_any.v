@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 12, high 6
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 18, high 9
 // loops: 1
 // false loops: 0
@@ -37,6 +40,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 32, high 16
 // loops: 1
 // false loops: 0
@@ -47,6 +51,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 510, high 255
 // loops: 1
 // false loops: 0
@@ -57,6 +62,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 2000002, high 1000001
 module logger_half_any #(parameter N = 6) (input clk, input rst_n, output tick);
   localparam WIDTH = $clog2(N);

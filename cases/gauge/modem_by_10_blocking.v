@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 20, high 10
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // loops: 1
 // false loops: 0
 module modem_by_10_blocking (input clk, input rst, output reg modem);

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 8, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 12, high 6
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 4, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 20, high 10
 // loops: 1
 // false loops: 0
@@ -26,6 +28,7 @@
 // no-stuck: proved
 // recovery: proved, worst 12, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
@@ -36,6 +39,7 @@
 // no-stuck: proved
 // recovery: proved, worst 12, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 // check: --each divisor --hold enable=1 --ratio 2*max(divisor,1)
@@ -45,6 +49,7 @@
 // no-stuck: proved
 // recovery: proved, worst 12, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // at: divisor=0
 // from reset: period 4, high 2
 // loops: 1

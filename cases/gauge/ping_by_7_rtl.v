@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 3
 // from reset: period 14, high 7
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 3
 // from reset: period 14, high 6
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 3
 // loops: 1
 // false loops: 0
 module ping_by_7_rtl (input clk, input srst_n, output ping, output top);

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 8, high 4
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 8, high 4
 // loops: 1
 // false loops: 0

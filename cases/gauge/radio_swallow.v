@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 140, exact
 // settling: proved
+// reset: proved, held 2
 // at: b=2, a=0
 // from reset: period 16, high 8
 // loops: 1

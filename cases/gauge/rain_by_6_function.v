@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 12, high 6
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // loops: 1
 // false loops: 0
 module rain_by_6_function (input clk, input rst, output reg rain);

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 30, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // at: div=0
 // from reset: period 4, high 2
 // loops: 1
@@ -19,6 +20,7 @@
 // no-stuck: proved
 // recovery: proved, worst 504, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // at: div=3
 // from reset: period 16, high 8
 // loops: 1
@@ -30,6 +32,7 @@
 // no-stuck: proved
 // recovery: proved, worst 22, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // at: div=4
 // from reset: period 20, high 10
 // loops: 1

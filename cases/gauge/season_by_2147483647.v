@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 3, exact
 // settling: proved
+// reset: proved, held 3, obligation
 // from reset: period 4294967294, high 2147483647
 module season_by_2147483647 (input clk, input rst, output slow);
   reg [31:0] count;

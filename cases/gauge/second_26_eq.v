@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 84217728, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 100000000, high 50000000
 module second_26_eq (input fast_clk, input reset, output reg second);
   reg [25:0] count;

@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 8539934592, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 100000000, high 50000000
 module second_32_eq #(
   parameter FAST_HZ = 50_000_000,

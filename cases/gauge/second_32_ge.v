@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 4294967296, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 100000000, high 50000000
 module second_32_ge (fast_clk, rst_n, second);
   input fast_clk, rst_n;

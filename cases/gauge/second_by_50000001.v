@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: proved or open, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 100000002, high 50000001
 module second_by_50000001 (input clk, input rst, output slow);
   reg [25:0] count;

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 24, high 12
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // loops: 1
 // false loops: 0
 module signed_by_12 (input clk, input rst, output sign);

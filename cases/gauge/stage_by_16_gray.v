@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 32, high 16
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module stage_by_16_gray (clk, rst, scan);

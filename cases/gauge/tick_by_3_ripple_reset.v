@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved, obligation
+// reset: proved, held 0
 // from reset: period 6, high 3
 // loops: 1
 // false loops: 0
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved, obligation
+// reset: proved, held 0
 // from reset: period 6, high 2
 // loops: 1
 // false loops: 0
@@ -28,6 +30,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved, obligation
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module toggle_stage (input ck, input clear_n, output reg q);

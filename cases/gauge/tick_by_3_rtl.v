@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 6, high 3
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 6, high 2
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module tick_by_3_rtl (input clk, input rst, output tick, output third);

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 32
 // loops: 1
 // false loops: 1
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 32
 // loops: 1
 // false loops: 1

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 4, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 20, high 4
 // loops: 1
 // false loops: 0
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
@@ -28,6 +30,7 @@
 // no-stuck: proved
 // recovery: proved, worst 4, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 module jk_stage (input ck_n, input clear, input preset, input j, input k, output reg q);

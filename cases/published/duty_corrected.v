@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 6, high 2
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 6, high 3
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 10, high 4
 // loops: 1
 // false loops: 0
@@ -37,6 +40,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 10, high 5
 // loops: 1
 // false loops: 0
@@ -47,6 +51,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 14, high 6
 // loops: 1
 // false loops: 0
@@ -57,6 +62,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 14, high 7
 // loops: 1
 // false loops: 0
@@ -67,6 +73,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 18, high 8
 // loops: 1
 // false loops: 0
@@ -77,6 +84,7 @@
 // no-stuck: proved
 // recovery: proved, worst 3, exact
 // settling: proved
+// reset: proved, held 0, obligation
 // from reset: period 18, high 9
 // loops: 1
 // false loops: 0

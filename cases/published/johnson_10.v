@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 16, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 20, high 10
 // loops: 1
 // false loops: 0
@@ -18,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 16, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 20, high 2
 // loops: 1
 // false loops: 0
@@ -28,6 +30,7 @@
 // no-stuck: proved
 // recovery: proved, worst 16, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 // check: --ratio 10 --output carry --within 22
@@ -37,6 +40,7 @@
 // no-stuck: proved
 // recovery: proved, worst 16, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 20, high 10
 // loops: 1
 // false loops: 0

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 16, high 8
 // loops: 1
 // false loops: 0
@@ -17,6 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 16, high 2
 // loops: 1
 // false loops: 0
@@ -27,6 +29,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 0
 // loops: 1
 // false loops: 0
 // check: --ratio 8 --output carry --within 10
@@ -36,6 +39,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 16, high 8
 // loops: 1
 // false loops: 0

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 32, high 2
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 26, high 2
 // loops: 1
 // false loops: 0
@@ -26,6 +28,7 @@
 // no-stuck: proved
 // recovery: proved, worst 12, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 20, high 2
 // loops: 1
 // false loops: 0
@@ -36,6 +39,7 @@
 // no-stuck: proved
 // recovery: proved, worst 20, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 12, high 2
 // loops: 1
 // false loops: 0
@@ -46,6 +50,7 @@
 // no-stuck: proved
 // recovery: proved, worst 28, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
@@ -56,6 +61,7 @@
 // no-stuck: proved
 // recovery: proved, worst 28, exact
 // settling: proved
+// reset: proved, held 2
 // at: p=0
 // from reset: period 32, high 2
 // loops: 1

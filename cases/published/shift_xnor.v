@@ -6,6 +6,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 30, high 2
 // loops: 2
 // false loops: 1
@@ -17,6 +18,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 254, high 2
 // loops: 2
 // false loops: 1

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved
 // settling: proved
+// reset: proved, held 2
 module cascade_three (input clk, input rst, output slow);
   reg [15:0] a, b, c;
   wire a_last = a >= 16'd59_999;

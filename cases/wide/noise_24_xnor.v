@@ -6,6 +6,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 module noise_24_xnor (input clk, input rst_n, output pulse);
   reg [24:1] q;
   always @(posedge clk or negedge rst_n)

@@ -7,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: proved, held 2
 // from reset: period 8589934590, high 2
 module noise_32_lfsr (input clk, input rst, output pulse);
   reg [31:0] q;

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 2060000, high 60000
 module pump_uneven (input clk, input rst, output reg pump);
   reg [23:0] count;

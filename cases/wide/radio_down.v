@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 516870912, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 40000000, high 20000000
 module radio_down (input clk, input rst_n, output reg wake);
   reg [27:0] left;

@@ -6,6 +6,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 2
 module ring_64_onehot (input clk, input rst, output slow);
   reg [63:0] ring;
   always @(posedge clk)

@@ -6,6 +6,7 @@
 // no-stuck: proved or open
 // recovery: refuted
 // settling: proved
+// reset: proved, held 2
 module ring_64_twisted (input clk, input rst, output slow);
   reg [63:0] ring;
   always @(posedge clk)

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 8539934592, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 100000000, high 50000000
 module second_50mhz_eq (input clk, input rst, output reg second);
   reg [31:0] count;

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 100000000, high 50000000
 module second_50mhz_ge (input clk, input rst, output reg second);
   reg [31:0] count;

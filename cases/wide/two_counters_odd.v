@@ -7,6 +7,7 @@
 // no-stuck: proved or open
 // recovery: refuted
 // settling: proved
+// reset: proved, held 0
 // from reset: period 100000002, high 50000001
 module two_counters_odd (input clk, input rst_n, output slow);
   localparam [25:0] LAST = 50_000_000;

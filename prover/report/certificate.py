@@ -141,6 +141,7 @@ def claim(spec: Spec) -> Object:
         "period_half_cycles": None if spec.mean else spec.period,
         "high_half_cycles": spec.high if spec.mean else spec.high_half_cycles,
         "within": spec.within,
+        "reset_cycles": spec.reset_cycles,
         "start": spec.start,
         "waivers": dict(spec.waivers),
     }

@@ -85,6 +85,7 @@ def _spec(report: Report) -> Object:
         "period_half_cycles": spec.period if single and not spec.mean else None,
         "high_half_cycles": (spec.high if spec.mean else spec.high_half_cycles) if single else None,
         "within": spec.within,
+        "reset_cycles": spec.reset_cycles,
     }
 
 

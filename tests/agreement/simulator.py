@@ -50,11 +50,13 @@ class Sample:
 
 @dataclass(frozen=True)
 class Reset:
-    """A reset to give after the start state is set: asserted and released between clock edges."""
+    """A reset to give after the start state is set: asserted and released between clock edges. If it is `watched`, the
+    samples begin under reset, with one after its assertion and one for each half-cycle of it."""
 
     port: str
     active: int
     half_cycles: int
+    watched: bool = False
 
 
 @dataclass(frozen=True)
@@ -105,14 +107,16 @@ def run(
 ) -> list[list[Sample]]:
     """From each start state, the sample of the start itself and then one at the end of each half-cycle.
 
-    With a reset, the reset is given first, and the first sample is the one just after its release; the clock's level
-    there is that of the start, turned over once for each half-cycle of reset.
+    With a reset, the reset is given first, and the first sample is the one just after its release, unless it is
+    watched; the clock's level there is that of the start, turned over once for each half-cycle of reset.
     Raises SimulatorError when the sources don't compile, time runs out, or an x or z is read.
     """
     if not starts:
         return []
     words = [_word(bench.registers, start) for start in starts]
     text = _bench_text(bench, len(starts), half_cycles, reset)
+    if reset is not None and reset.watched:
+        half_cycles += reset.half_cycles + 1
     return _samples(bench, _simulate(bench, text, words, timeout_seconds), half_cycles)
 
 
@@ -203,9 +207,10 @@ def _bench_text(
     else:
         pulse = []
         if reset is not None:
+            watch = show if reset.watched else ";"
             pulse = [
-                f"#{HALF_CYCLE_UNITS} reset = {reset.active}; #{HALF_CYCLE_UNITS}",
-                f"repeat ({reset.half_cycles}) begin clock = ~clock; #{HALF_CYCLE_UNITS}; end",
+                f"#{HALF_CYCLE_UNITS} reset = {reset.active}; #{HALF_CYCLE_UNITS} {watch}",
+                f"repeat ({reset.half_cycles}) begin clock = ~clock; #{HALF_CYCLE_UNITS} {watch} end",
                 f"reset = {1 - reset.active};",
             ]
         body = [
