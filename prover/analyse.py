@@ -17,7 +17,6 @@ from prover.errors import InternalError, UserError
 from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
-from prover.recode import placed
 from prover.release import Freed, Release, differs, releases, too_short, unknown
 from prover.rhythm import NOWHERE, Goal, Good, Loop, Mean, Orbit, Recovery, Rhythm, Scope, Start, Wave
 from prover.settling import Settling, settle
@@ -258,7 +257,7 @@ def _release(
     ours = Effort(effort.left / 4)
 
     def followed(freed: Freed) -> Freed:
-        state = placed(freed.state, whole, machine)
+        state = recode.placed(freed.state, whole, machine)
         if state not in done:
             done[state] = follow(machine, state, ours, known, refuted)
             known.update(orbit.onward(done[state].loop))

@@ -12,14 +12,13 @@ from itertools import product
 from typing import TypeVar
 
 from prover import expr as e
-from prover import graph, linear, path, tables
+from prover import graph, linear, path, recode, tables
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_of
 from prover.expr import Expr
 from prover.findings import Report
-from prover.recode import placed
 from prover.rhythm import Goal, Orbit, Rhythm, goal_of
 from prover.settling import settle
 from prover.solve import Model, find
@@ -213,4 +212,4 @@ def _whole(state: State, whole: System, machine: System, effort: Effort) -> Stat
     if model is None:
         return None
     found = tuple(values.get(name, model.get(name, 0)) for name in whole.names)
-    return found if placed(found, whole, machine) == state else None
+    return found if recode.placed(found, whole, machine) == state else None

@@ -19,7 +19,6 @@ from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track
 from prover.expr import Expr
 from prover.path import Beat, Item, Step
 from prover.ports import Ports
-from prover.recode import placed
 from prover.rhythm import LONGEST_ROUND, NOWHERE, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, goal_of
 from prover.settling import Settling, settle
 from prover.solve import Model
@@ -322,7 +321,7 @@ def _with_release(
             raise Rejected("reset: not too short for the state that is to show it")
         found = replace(found, short=short)
     done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
-    places = [placed(each.state, whole, machine) for each in found.runs]
+    places = [recode.placed(each.state, whole, machine) for each in found.runs]
     wanted = [state for state in dict.fromkeys(places) if state not in done]
     if len(hold.runs) > len(wanted):
         raise Rejected(f"reset: {len(hold.runs)} runs after {len(wanted)} releases")
@@ -336,7 +335,7 @@ def _with_release(
     owe_orbits(machine, [done[state] for state in wanted], "release", owed)
 
     def followed(each: release.Freed) -> release.Freed:
-        return replace(each, orbit=done.get(placed(each.state, whole, machine)))
+        return replace(each, orbit=done.get(recode.placed(each.state, whole, machine)))
 
     found = replace(
         found,

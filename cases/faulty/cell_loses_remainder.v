@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 2
 // from reset: period 12, high 2
 // loops: 1
 // false loops: 1

@@ -7,6 +7,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 2
 // at: b=2, a=3
 // from reset: period 20, high 10
 // loops: 1

@@ -6,6 +6,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 2, obligation
 // from reset: period 10
 // loops: 1
 // false loops: 0
@@ -16,6 +17,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// reset: proved, held 2, obligation
 // from reset: period 10
 // loops: 1
 // false loops: 0

@@ -28,6 +28,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 0
 // from reset: period 32
 // loops: 1
 // false loops: 0
@@ -38,6 +39,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// reset: refuted, held 0
 // from reset: period 32
 // loops: 1
 // false loops: 1

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 33554432, high 16777216
 module gray_24 (input clk, input rst, output strobe);
   reg [23:0] gray, number;

@@ -8,6 +8,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 400000000, high 131564544
 module gray_copy_28 (input clk, input rst, output upper);
   reg [27:0] number, gray;

@@ -34,7 +34,11 @@ Run = tuple[int, int]
 def resets() -> list[Any]:
     """The groups with a reset; options that change nothing about it are tried once."""
     with_reset = [each for each in SETTLING if "reset" in each.values[1].properties]
-    return [each for each in with_reset if not {"--start", "--within", "--waive"} & {*each.values[1].options}]
+    return [
+        each
+        for each in with_reset
+        if not {"--start", "--within", "--waive", "--mean"} & {*each.values[1].options}
+    ]
 
 
 @pytest.mark.parametrize(("case", "group"), resets())
