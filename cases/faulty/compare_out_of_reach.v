@@ -12,7 +12,7 @@
 // loops: 2
 // false loops: 2
 // stuck: yes
-// note: 31: this comparison never holds: 19
+// note: 33: this comparison never holds: 19
 // check: --ratio 40 --start any
 // verdict: refuted
 // ratio: refuted

@@ -11,7 +11,7 @@
 // loops: 2
 // false loops: 2
 // stuck: yes
-// note: 22: this comparison never holds: 9
+// note: 23: this comparison never holds: 9
 module signed_never_there (input clk, input rst_n, output reg slow);
   reg signed [3:0] count;
   always @(posedge clk or negedge rst_n)

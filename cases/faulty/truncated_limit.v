@@ -10,7 +10,7 @@
 // from reset: period 176, high 88
 // loops: 1
 // false loops: 1
-// note: 23: parameter LAST = 299 is cut to 8 bits: 43
+// note: 25: parameter LAST = 299 is cut to 8 bits: 43
 // check: --ratio 88
 // verdict: proved
 // ratio: proved
