@@ -9,6 +9,7 @@
 // no-stuck: proved
 // recovery: proved, worst 39859864331072, exact
 // settling: proved
+// reset: proved, held 2
 // from reset: period 864000000000000, high 432000000000000
 module counter_60000 (input clk, input rst, input enable, output last);
   reg [15:0] count;
