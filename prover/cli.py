@@ -224,6 +224,13 @@ TRACES = (
     _written("--vcd", "Write the wave of each property that is refuted."),
     _written("--junit", "Write the verdicts as JUnit XML."),
     _written("--sarif", "Write the verdicts as SARIF 2.1.0."),
+    click.option(
+        "--testbench",
+        "testbench_folder",
+        metavar="DIR",
+        help="Write a test bench for each of them.",
+        shell_complete=completion.folders,
+    ),
 )
 CERTIFYING = (_written("--certificate", "Write what the verdicts rest on, for `recheck`."),)
 CREWS = (
@@ -254,6 +261,7 @@ def check(
     vcd_path: str | None,
     junit_path: str | None,
     sarif_path: str | None,
+    testbench_folder: str | None,
     certificate_path: str | None,
     **options: Any,
 ) -> Status:
@@ -264,7 +272,9 @@ def check(
     Exit status: 0 proved, 1 refuted, 2 unusable input, 3 open, 70 our fault.
     A PATH of - is standard output, in place of the report for people.
     """
-    targets = Targets(json_path, html_path, vcd_path, junit_path, sarif_path, certificate_path)
+    targets = Targets(
+        json_path, html_path, vcd_path, junit_path, sarif_path, testbench_folder, certificate_path
+    )
     return _run(files, options, targets)
 
 
@@ -421,11 +431,13 @@ class Targets:
     vcd: str | None = None
     junit: str | None = None
     sarif: str | None = None
+    testbench: str | None = None
     certificate: str | None = None
 
     def paths(self) -> list[str]:
-        """All of them, a file in place of the folder that waves go to."""
-        named = (self.json, self.html, _target(self.vcd), self.junit, self.sarif, self.certificate)
+        """All of them, a file in place of a folder that waves or test benches go to."""
+        bench = None if self.testbench is None else os.path.join(self.testbench, "ratio_tb.v")
+        named = (self.json, self.html, _target(self.vcd), self.junit, self.sarif, bench, self.certificate)
         return [path for path in named if path]
 
 
@@ -442,7 +454,8 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
         report = _judged(files, spec, targets, progress.tell)
         waves = _vcd(report, targets.vcd)
         certified, remarks = _certificate(report, targets.certificate, files, progress.tell)
-        results = [*_json(report, targets.json), *_html(report, targets.html), *waves]
+        benches, without = _benches(report, targets.testbench)
+        results = [*_json(report, targets.json), *_html(report, targets.html), *waves, *benches]
         results += [*_exchanged(files, report, targets), *certified]
         check_targets([result.path for result in results], report.ports.design.files)
         piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
@@ -450,7 +463,7 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
         write_files([result for result in results if result.path != STANDARD_OUTPUT])
     if STANDARD_OUTPUT not in targets.paths() or piped:
         _print(text)
-    for remark in remarks:
+    for remark in [*remarks, *without]:
         _complain(remark)
     return status_of(report)
 
@@ -509,10 +522,13 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, ta
         found = outcomes(dividers, spec, crew, progress.tell)
         results: list[Result] = []
         texts: list[str] = []
+        remarks: list[str] = []
         for outcome, label in zip(found, labels(found), strict=True):
-            waves = _vcd(outcome.report, targets.vcd, f"{label}-") if outcome.report else []
-            results += waves
             if outcome.report is not None:
+                waves = _vcd(outcome.report, targets.vcd, f"{label}-")
+                benches, without = _benches(outcome.report, targets.testbench, f"{label}-")
+                results += [*waves, *benches]
+                remarks += [f"{outcome.name}: {remark}" for remark in without]
                 texts.append(_told(outcome.report, [wave.path for wave in waves]))
             elif outcome.error is not None:
                 texts.append(harmless(_user_error(outcome.error)) + "\n")
@@ -529,6 +545,8 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, ta
         check_targets([result.path for result in results], sources)
         write_files([result for result in results if result.path != STANDARD_OUTPUT])
     _print(text)
+    for remark in remarks:
+        _complain(remark)
     return max((_status_of_outcome(outcome) for outcome in found), key=SEVERITY.index)
 
 
@@ -618,6 +636,17 @@ def _vcd(report: Report, path: str | None, prefix: str = "") -> list[Result]:
         return [Result(str(place / f"{prefix}{dump.name}.vcd"), dump.text) for dump in dumps]
     others = [place.with_name(f"{place.stem}-{dump.name}{place.suffix}") for dump in dumps]
     return [Result(path if i == 0 else str(others[i]), dump.text) for i, dump in enumerate(dumps)]
+
+
+def _benches(report: Report, folder: str | None, prefix: str = "") -> tuple[list[Result], list[str]]:
+    """Each refuted property's test bench, and what to say of those that have none."""
+    if folder is None:
+        return [], []
+    from prover.report import testbench
+
+    made, without = testbench.benches(report)
+    results = [Result(os.path.join(folder, f"{prefix}{bench.name}_tb.v"), bench.text) for bench in made]
+    return results, [f"note: {why}" for why in without]
 
 
 def _told(report: Report, traces: Sequence[str]) -> str:

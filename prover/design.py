@@ -7,10 +7,14 @@ becomes a register without a clock, forced all the time to the value that drives
 
 Expressions are simplified, which changes no value but may take away what pulses on the way. So gate primitives are
 kept besides as they are written: `gates` has them, and what hangs on them is written over the nets that they drive.
+
+An escaped identifier keeps its backslash, and where more follows in a name the blank that ends it (IEEE 1364-2005
+clause 3.7.1): `\\a.b` is one identifier, `\\a.b .q` the q in an instance of that name, `\\a.b [3]` a bit.
 """
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass, field
 from typing import Literal
 
@@ -19,6 +23,29 @@ from prover.expr import Expr, variables
 
 GateKind = Literal["and", "nand", "or", "nor", "xor", "xnor", "buf", "not"]
 """Gate primitives with one output value: IEEE 1364-2005 clause 7.2 and 7.3."""
+
+
+_COMPONENT = re.compile(r"(\\\S+|[^.\[\s\\]+)( ?(?:\[[^\]]*\])*)(?:\.|$)")
+
+
+def ended(name: str) -> str:
+    """The name as it has to stand where more follows: with the blank that ends an escaped identifier."""
+    return f"{name} " if "\\" in name.rpartition(" ")[2] else name
+
+
+def element(name: str, index: int | str) -> str:
+    """The name of one element, or one bit, or bits `high:low`."""
+    return f"{ended(name)}[{index}]"
+
+
+def components(name: str) -> list[tuple[str, str]]:
+    """The identifiers that a hierarchical name is made of, each with the indices that follow it (`[3]`), if any."""
+    out: list[tuple[str, str]] = []
+    at = 0
+    while at < len(name) and (found := _COMPONENT.match(name, at)):
+        out.append((found[1], found[2].strip()))
+        at = found.end()
+    return out if at >= len(name) and out else [(name, "")]
 
 
 @dataclass(frozen=True, slots=True)
@@ -56,7 +83,9 @@ class Gate:
 
 @dataclass(frozen=True, slots=True)
 class Register:
-    """Anything that stores. The first active force in the list wins over the others and over every edge."""
+    """Anything that stores. The first active force in the list wins over the others and over every edge.
+
+    `primitive` marks the state of a user-defined primitive, which nothing outside it can set."""
 
     name: str
     width: int
@@ -65,6 +94,7 @@ class Register:
     forces: tuple[Force, ...]
     initial: int | None
     where: Where
+    primitive: bool = False
 
 
 @dataclass(frozen=True, slots=True)

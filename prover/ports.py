@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 from typing import Literal
 
 from prover import expr as e
-from prover.design import Design, Edge, Signal
+from prover.design import Design, Edge, Signal, element
 from prover.errors import UserError, Where
 from prover.expr import Expr
 from prover.solve import constant
@@ -308,7 +308,7 @@ def _output(design: Design, spec: Spec) -> tuple[str, Signal, int | None]:
     scalar = [n for n in design.outputs if design.signals[n].value.width == 1]
     if len(scalar) == 1:
         return scalar[0], design.signals[scalar[0]], None
-    listed = scalar or [f"{n}[{_bounds(design, n)}]" for n in design.outputs]
+    listed = scalar or [element(n, _bounds(design, n)) for n in design.outputs]
     if not listed:
         hint = "name a net with --output NAME"
         raise UserError(f"{design.top} drives no output", _top(design), hint=hint)
@@ -325,19 +325,20 @@ def _bounds(design: Design, name: str) -> str:
 
 
 def _named_output(design: Design, text: str) -> tuple[Signal, int | None]:
-    name, _, index = text.partition("[")
+    name, bracket, index = text.rpartition("[")
+    name = name.rstrip(" ") if bracket else text
     signal = design.signals.get(text) or design.signals.get(name)
     if signal is None:
         raise UserError(
             f"--output {text}: {design.top} has no such port or net",
             hint=f"its outputs are {', '.join(design.outputs) or 'none'}",
         )
-    if text in design.signals or not index:
+    if text in design.signals or not bracket:
         if signal.value.width != 1:
             raise UserError(
                 f"--output {text}: {signal.value.width} bits wide",
                 signal.where,
-                hint=f"name one bit, such as --output '{name}[{signal.lsb}]'",
+                hint=f"name one bit, such as --output '{element(signal.name, signal.lsb)}'",
             )
         return signal, None
     number = re.fullmatch(r"(-?\d+)\]", index)
@@ -352,6 +353,6 @@ def _named_output(design: Design, text: str) -> tuple[Signal, int | None]:
         raise UserError(
             f"--output {text}: the bits are {signal.msb} to {signal.lsb}",
             signal.where,
-            hint=f"name one of them, such as --output '{name}[{signal.lsb}]'",
+            hint=f"name one of them, such as --output '{element(signal.name, signal.lsb)}'",
         )
     return signal, place

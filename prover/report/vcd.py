@@ -15,6 +15,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from prover import __version__
+from prover.design import components
 from prover.findings import Counterexample, Finding, Report
 from prover.report.wave import Piece, Timeline
 from prover.settling import Unsettled
@@ -236,7 +237,7 @@ class _File:
             self._declare(variable, value)
 
     def _declare(self, variable: Variable, value: int | None = None) -> Any:
-        *scopes, last = [_word(part) for part in variable.name.split(".")]
+        *scopes, last = [_word(part + index) for part, index in components(variable.name)]
         path = (self._top, *scopes, last)
         count = 1
         while path in self._taken:

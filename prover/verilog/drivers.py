@@ -373,7 +373,10 @@ class Drivers:
         if driver and driver.latch:
             self.report.note(f"{printable(part.name)} is a latch: not every path assigns it", driver.at)
         kind: Literal["latch", "flip-flop"] = "latch" if driver and driver.latch else "flip-flop"
-        return Register(part.name, part.width, kind, tuple(edges), tuple(forces), part.initial, where)
+        primitive = bool(driver and not driver.block)
+        return Register(
+            part.name, part.width, kind, tuple(edges), tuple(forces), part.initial, where, primitive
+        )
 
     def _check_race(self, part: Slice, clock: Expr, data: Expr) -> None:
         """A clock that is plainly a signal must not be its own register's data (the value would race)."""

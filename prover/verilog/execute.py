@@ -15,6 +15,7 @@ from typing import Any, NoReturn, Protocol
 from pyverilog.vparser import ast as vast
 
 from prover import expr as e
+from prover.design import element
 from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import Task, run
@@ -143,7 +144,7 @@ class Environment:
         for i, label in enumerate(labels):
             name = label.name
             if label.loop is not None:
-                name = f"{name}[{constant(self, label.loop, 'an index in a path')}]"
+                name = element(name, constant(self, label.loop, "an index in a path"))
             inner = self._upward(name) if i == 0 else inner.names.get(name)
             if not isinstance(inner, Scope):
                 shown = printable(name)

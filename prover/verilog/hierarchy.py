@@ -12,6 +12,7 @@ from typing import Any
 
 from pyverilog.vparser import ast as vast
 
+from prover.design import element
 from prover.verilog import tree
 from prover.verilog.declare import Declarer
 from prover.verilog.deep import run
@@ -231,7 +232,9 @@ class Hierarchy:
             if label.loop is None:
                 yield label.name
             else:
-                yield f"{label.name}[{constant(self.declarer.env(scope), label.loop, 'an index in a path')}]"
+                yield element(
+                    label.name, constant(self.declarer.env(scope), label.loop, "an index in a path")
+                )
 
     def _open(
         self, scope: Scope, name: str, at: int, kind: str = "block", module: str | None = None
@@ -318,7 +321,7 @@ class Hierarchy:
                     "its step must move towards its end",
                 )
             seen.add(value)
-            name = f"{label}[{value}]"
+            name = element(label, value)
             inner = self._open(scope, name, item.lineno)
             inner.names[item.variable] = turn.names[item.variable]
             opened.append((inner, name))
@@ -402,7 +405,7 @@ class Hierarchy:
                         constant(self.declarer.env(scope), b, "the range of an instance array")
                         for b in instance.array
                     ]
-                    name = f"{name}[{ends[1] + index if ends[0] >= ends[1] else ends[1] - index}]"
+                    name = element(name, ends[1] + index if ends[0] >= ends[1] else ends[1] - index)
                 self._instance(instance, module, name, given, scope, defparams, depth, index, count)
 
     def _instance(

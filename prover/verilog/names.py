@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 from typing import Any, NamedTuple, NoReturn
 
-from prover.design import Note
+from prover.design import Note, element, ended
 from prover.errors import UserError, Where
 from prover.expr import Expr, var
 from prover.verilog import tree
@@ -111,7 +111,7 @@ class Net:
     def part(self, high: int, low: int) -> str:
         """The name of the bits high..low, counted from 0, as the user would write it."""
         if self.words:
-            base = f"{self.name}[{min(self.words) + low // self.type.width}]"
+            base = element(self.name, min(self.words) + low // self.type.width)
             bits = (high % self.type.width, low % self.type.width)
             whole = bits == (self.type.width - 1, 0)
         else:
@@ -120,7 +120,7 @@ class Net:
             return base
         sign = 1 if self.msb >= self.lsb else -1
         upper, lower = (self.lsb + sign * bit for bit in bits)
-        return f"{base}[{upper}]" if high == low else f"{base}[{upper}:{lower}]"
+        return element(base, upper if high == low else f"{upper}:{lower}")
 
 
 @dataclass(slots=True, frozen=True)
@@ -208,7 +208,7 @@ class Scope:
 
     def child(self, name: str, kind: str, module: str | None = None) -> Scope:
         """A scope inside this one; a module sees no names from outside."""
-        inner = Scope(f"{self.prefix}{name}.", self, kind, module or self.module)
+        inner = Scope(f"{self.prefix}{ended(name)}.", self, kind, module or self.module)
         inner.local = self.local or kind == "routine"
         inner.depth = self.depth + 1
         return inner
