@@ -7,6 +7,7 @@ import os
 import re
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import pytest
 from click.testing import CliRunner, Result
@@ -52,9 +53,13 @@ def test_what_is_proved_has_none(tmp_path: Path) -> None:
 
 def test_the_names_that_benches_have_are_those_that_inputs_are_kept_from(tmp_path: Path) -> None:
     reports = [checked(tmp_path, RING, "3"), checked(tmp_path, SPINS, "2")]
-    reports.append(
-        checked(tmp_path, (CASES / "faulty" / "late_for_its_limit.v").read_text(), "20", within=50)
-    )
+    others: list[tuple[str, str, dict[str, Any]]] = [
+        ("late_for_its_limit", "20", {"within": 50}),
+        ("cell_loses_remainder", "16/3", {"mean": True}),
+    ]
+    for name, ratio, more in others:
+        text = (CASES / "faulty" / f"{name}.v").read_text()
+        reports.append(checked(tmp_path, text, ratio, **more))
     texts = [bench.text for report in reports for bench in testbench.benches(report)[0]]
     assert set.union(*map(declared, texts)) == testbench.RESERVED
     text = RING.replace("clk,", "clk, input t, input t_, input [1:0] out,").replace(

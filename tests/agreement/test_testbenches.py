@@ -170,9 +170,11 @@ def agrees(finding: Finding, told: str) -> bool:
     if finding.name == "no-stuck" or told.startswith("no "):
         level = re.search(r"stays (\d)", finding.says)
         return level is not None and (told.startswith("no ") or f"stays {level[1]} " in told)
-    if finding.name == "recovery" and "not" in told:
+    if finding.name == "recovery" and told.startswith("a run at"):
         # A run that is told apart by its length is one of those that the report lists of the loop.
         value, length = numbers(told)[:2]
+        if "more than" in told:
+            return True
         word = "high" if value == "1" else "low"
         period = re.search(r"period (\d+) half-cycles, high (\d+)", finding.says)
         if period:
