@@ -95,11 +95,9 @@ def test_why_there_is_none_is_told(tmp_path: Path) -> None:
     )
     made, notes = testbench.benches(checked(tmp_path, long, "50_000_000"))
     assert not made
-    assert [note.partition(":")[0] for note in notes] == [
-        "no test bench for high-time",
-        "no test bench for recovery",
-    ]
-    assert all(f"benches end at {MOST_HALF_CYCLES}" in note for note in notes)
+    long_ones = [note for note in notes if f"benches end at {MOST_HALF_CYCLES}" in note]
+    told = [note.partition(":")[0] for note in long_ones]
+    assert told == ["no test bench for high-time", "no test bench for recovery"]
 
 
 def test_texts_that_would_end_a_comment_or_a_string_do_not(tmp_path: Path) -> None:

@@ -75,6 +75,8 @@ def render(report: Report, finding: Finding) -> str:
     if finding.unsettled is not None:
         start = report.rhythm.system.describe(finding.unsettled.state)
         return _Writer(report, finding, start).text(settles(report, finding.unsettled))
+    if finding.trace is not None:
+        raise NoBench("inputs move in its run, which benches do not replay yet")
     if finding.counterexample is None:
         raise NoBench(
             "a simulator without delays shows one order of simultaneous events, and this hangs on another"
