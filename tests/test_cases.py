@@ -15,6 +15,7 @@ from typing import Any
 import pytest
 from cases_format import CASES, FOLDERS, PROPERTIES, Case, Group, Stated, StatedWave, cases
 from click.testing import CliRunner, Result
+from pages import page
 
 from prover import cli
 
@@ -32,12 +33,14 @@ def run(case: Case, *options: str) -> Result:
 
 
 @pytest.mark.parametrize(("case", "group"), named([pair for pair in ALL if not pair[1].error]))
-def test_a_case_is_judged_as_it_states(case: Case, group: Group) -> None:
-    result = run(case, *group.options, "--json", "-")
+def test_a_case_is_judged_as_it_states(case: Case, group: Group, tmp_path: Path) -> None:
+    html = tmp_path / "report.html"
+    result = run(case, *group.options, "--json", "-", "--html", str(html))
     assert result.exit_code in STATUS.values(), result.stderr
     report = json.loads(result.stdout)
     assert report["verdict"] in group.verdicts
     assert result.exit_code == STATUS[report["verdict"]]
+    assert page(html.read_text(encoding="utf-8")).of("overall")[0].text.startswith(report["verdict"])
     found = {each["name"]: each for each in report["properties"]}
     # A mean fixes no high time, so that there may be no claim about it; nor is there one about a reset that is not there.
     unclaimed = {"high-time"} if "--mean" in group.options and "--high" not in group.options else set()

@@ -298,16 +298,16 @@ def test_every_state_is_in_one_box_and_leads_where_it_does(seed: int) -> None:
             box, onto = todo.pop()
             boxes.append(box)
             if onto is not None:
-                chain = len(box.states) > 1 and bool(box.inward)
-                ends = [box.states[0]] if chain else box.states
-                assert {found.after[state] for state in ends} == {onto.states[-1]}
-                steps = itertools.pairwise(box.states) if chain else []
-                assert all(found.after[b] == a for a, b in steps)
+                # Several in one box lead to one another, and each tree of them by one way out.
+                out = [state for state in box.states if found.after[state] not in box.states]
+                assert [found.after[state] for state in out] == [onto.states[-1]] * box.trees
+                if box.inward:
+                    assert all(found.after[b] == a for a, b in itertools.pairwise(box.states))
             todo += [(inner, box) for inner in box.inward]
     assert Counter(state for box in boxes for state in box.states) == Counter(numbers.values())
 
 
-@pytest.mark.parametrize("seed", range(25))
+@pytest.mark.parametrize("seed", range(40))
 def test_no_two_boxes_overlap(seed: int) -> None:
     report = random_report(seed)
     found = states.machine(report)

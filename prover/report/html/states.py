@@ -8,7 +8,7 @@ nothing changes are folded to one box that tells how many states it stands for; 
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import groupby
 from math import cos, hypot, pi, sin
@@ -39,6 +39,9 @@ CHARACTER = 6.1
 
 HEIGHT, GAP, STEP = 18, 10, 18
 """Pixels: a state's height, between neighbours on a ring, and between a state and what it leads to."""
+
+STRAIGHT = 0.35
+"""Radians between a state and what it leads to up to which the way is drawn straight."""
 
 SHALLOW = 2
 """Boxes one after another up to which trees leave the first state of a loop on top."""
@@ -80,6 +83,28 @@ class Machine:
         for state, after in self.after.items():
             if self.distance[state] > 0:
                 found[after].append(state)
+        return found
+
+    @cached_property
+    def shapes(self) -> Mapping[int, int]:
+        """For each state that is on no loop a number, which is that of another if all that leads into both is alike
+        and has the same outputs. A state that is marked is like no other."""
+        numbers: dict[tuple[int, tuple[int, ...], int], int] = {}
+        made: dict[int, int] = {}
+        for state in sorted(self.after, key=lambda state: -self.distance[state]):
+            if self.distance[state] > 0:
+                inner = tuple(sorted(made[before] for before in self.before[state]))
+                marked = state in self.starts or state == self.slowest
+                made[state] = numbers.setdefault(
+                    (self.output[state], inner, state if marked else -1), len(numbers)
+                )
+        return made
+
+    def tree(self, state: int) -> list[int]:
+        """The state and all that leads into it."""
+        found = [state]
+        for each in found:
+            found += self.before[each]
         return found
 
     @cached_property
@@ -163,10 +188,14 @@ def machine(report: Report) -> Machine | None:
 
 @dataclass(frozen=True)
 class Node:
-    """One box of the drawing: a state, or several that are folded, and the boxes that lead into it."""
+    """One box of the drawing: a state, or several that are folded, and the boxes that lead into it.
+
+    `trees` is 1 for a state and for several one after another; else the number of trees alike that it stands for,
+    each of which leads where the box does."""
 
     states: tuple[int, ...]
     inward: tuple[Node, ...] = ()
+    trees: int = 1
 
     @cached_property
     def span(self) -> int:
@@ -177,6 +206,13 @@ class Node:
     def depth(self) -> int:
         """Boxes one after another from the farthest that leads into it on, it not counted."""
         return max((1 + node.depth for node in self.inward), default=0)
+
+    @property
+    def size(self) -> str:
+        """How many states it stands for."""
+        if self.trees == 1 or self.trees == len(self.states):
+            return f"{len(self.states)} states"
+        return f"{self.trees}×{len(self.states) // self.trees} states"
 
 
 def ring(found: Machine, index: int) -> list[Node]:
@@ -207,12 +243,21 @@ def _stretches(found: Machine, states: Sequence[int]) -> Iterator[tuple[int, ...
 
 
 def _tree(found: Machine, state: int) -> Node:
-    """A state with all that leads into it."""
-    before = found.before[state]
-    alone = [s for s in before if not found.before[s] and s != found.slowest and s not in found.starts]
-    folded = tuple(alone) if len(alone) >= LEAST_FOLD else ()
-    inward = [_chain(found, s) for s in before if s not in folded]
-    return Node((state,), (*inward, *([Node(folded)] if folded else ())))
+    """A state with all that leads into it, of many trees alike but the first."""
+    alike: dict[int, list[int]] = {}
+    for before in found.before[state]:
+        alike.setdefault(found.shapes[before], []).append(before)
+    inward: list[Node] = []
+    for tops in alike.values():
+        single = not found.before[tops[0]]
+        if len(tops) - (not single) < LEAST_FOLD:
+            inward += (_chain(found, top) for top in tops)
+            continue
+        if not single:
+            inward.append(_chain(found, tops[0]))
+        rest = tops if single else tops[1:]
+        inward.append(Node(tuple(s for top in rest for s in found.tree(top)), trees=len(rest)))
+    return Node((state,), tuple(inward))
 
 
 def _chain(found: Machine, state: int) -> Node:
@@ -230,31 +275,47 @@ def _chain(found: Machine, state: int) -> Node:
 
 @dataclass(frozen=True)
 class Placed:
-    """A box with its centre, its half width, and the box that it leads to by a straight line (None on the ring)."""
+    """A box with its centre, its half width, how far out it is in steps and at which angle, and the box that it leads
+    to (None on the ring)."""
 
     node: Node
     at: Point
     half: float
+    depth: int
     angle: float
     onto: Placed | None = None
 
 
 @dataclass(frozen=True)
 class Plan:
-    """A ring's radius about (0, 0), its boxes in order, and all boxes of the trees."""
+    """A ring's radius about (0, 0), the step from one box of a tree to the next where it goes to the side, the boxes
+    of the ring in order, and all boxes of the trees."""
 
     radius: float
+    step: float
     ring: Sequence[Placed]
     trees: Sequence[Placed]
+
+    def point(self, depth: float, angle: float) -> Point:
+        """Where a box lies. Boxes are wider than high, so steps to the sides are longer than those up and down."""
+        return (
+            (self.radius + depth * self.step) * cos(angle),
+            (self.radius + depth * (HEIGHT + STEP)) * sin(angle),
+        )
 
 
 def plan(found: Machine, index: int) -> Plan:
     """Where everything of a loop and its trees lies, in pixels."""
     boxes = ring(found, index)
-    half = max(_half(found, node) for node in _all(boxes))
-    total = sum(node.span for node in boxes)
-    radius = max(SMALLEST, 1.5 * half, total * (2 * half + GAP) / (2 * pi))
-    share = 2 * pi / total
+    half = max(_half(found, node) for node, _ in _all(boxes))
+    share = 2 * pi / sum(node.span for node in boxes)
+    # Each box has room for itself in its share of the circle that it lies on.
+    room = (
+        (2 * _half(found, node) + GAP) / (share * node.span) - depth * (HEIGHT + STEP)
+        for node, depth in _all(boxes)
+    )
+    radius = max(SMALLEST, 1.5 * half, *room)
+    made = Plan(radius, 2 * half + STEP, [], [])
     placed: list[Placed] = []
     trees: list[Placed] = []
     # The others follow clockwise. Boxes are wider than high, so the longest way in is shortest from below.
@@ -263,38 +324,32 @@ def plan(found: Machine, index: int) -> Plan:
     angle -= share * (first.span / 2 + sum(node.span for node in boxes[: boxes.index(first)]))
     for node in boxes:
         middle = angle + share * node.span / 2
-        at = radius * cos(middle), radius * sin(middle)
-        placed.append(Placed(node, at, _half(found, node), middle))
-        trees += _outward(found, placed[-1], angle, share, radius, 1, 2 * half + STEP)
+        placed.append(Placed(node, made.point(0, middle), _half(found, node), 0, middle))
+        trees += _outward(found, made, placed[-1], angle, share)
         angle += share * node.span
-    return Plan(radius, placed, trees)
+    return replace(made, ring=placed, trees=trees)
 
 
-def _outward(
-    found: Machine, onto: Placed, angle: float, share: float, radius: float, depth: int, step: float
-) -> Iterator[Placed]:
-    # Boxes are wider than high, so steps to the sides are longer than those up and down.
+def _outward(found: Machine, made: Plan, onto: Placed, angle: float, share: float) -> Iterator[Placed]:
+    depth = onto.depth + 1
     for node in onto.node.inward:
         middle = angle + share * node.span / 2
-        at = (
-            (radius + depth * step) * cos(middle),
-            (radius + depth * (HEIGHT + STEP)) * sin(middle),
-        )
-        here = Placed(node, at, _half(found, node), middle, onto)
+        here = Placed(node, made.point(depth, middle), _half(found, node), depth, middle, onto)
         yield here
-        yield from _outward(found, here, angle, share, radius, depth + 1, step)
+        yield from _outward(found, made, here, angle, share)
         angle += share * node.span
 
 
-def _all(nodes: Sequence[Node]) -> Iterator[Node]:
+def _all(nodes: Sequence[Node], depth: int = 0) -> Iterator[tuple[Node, int]]:
+    """Boxes and those that lead into them, with how far out each is."""
     for node in nodes:
-        yield node
-        yield from _all(node.inward)
+        yield node, depth
+        yield from _all(node.inward, depth + 1)
 
 
 def _label(found: Machine, node: Node) -> str:
     if len(node.states) > 1:
-        return f"{len(node.states)} states"
+        return node.size
     state = node.states[0]
     mark = "▸" if state in found.starts else ""
     return mark + found.labels[state] + ("*" if state == found.slowest else "")
@@ -353,7 +408,7 @@ def _picture(found: Machine, index: int, told: str, key: str) -> Markup:
         element("title", told, id=f"{key}-title"),
         element("desc", _described(found, index), id=f"{key}-desc"),
         _arcs(made, good),
-        (_line(box) for box in made.trees),
+        (_line(made, box) for box in made.trees),
         (_box(found, box) for box in every),
         role="img",
         class_="states",
@@ -400,30 +455,40 @@ def _leaves(box: Placed, radius: float, way: int) -> float:
     """The angle at which one has left a box of the ring, going one way round it or the other."""
     angle = box.angle
     while (
-        abs(radius * cos(angle) - box.at[0]) < box.half + 2
-        and abs(radius * sin(angle) - box.at[1]) < HEIGHT / 2 + 2
-        and abs(angle - box.angle) < pi / 2
+        not _outside(box, (radius * cos(angle), radius * sin(angle)), 2) and abs(angle - box.angle) < pi / 2
     ):
         angle += way / radius
     return angle
 
 
-def _until_outside(box: Placed, towards: Point) -> float:
-    x, y = abs(towards[0]), abs(towards[1])
-    return min(box.half / x if x > 1e-9 else 1e9, HEIGHT / 2 / y if y > 1e-9 else 1e9)
-
-
-def _line(box: Placed) -> Markup:
+def _line(made: Plan, box: Placed) -> Markup:
+    """The way from a box to the one it leads to: straight, or round the ring where that would be cut."""
     if box.onto is None:
         return Markup("")
-    x, y = box.onto.at[0] - box.at[0], box.onto.at[1] - box.at[1]
-    length = hypot(x, y)
-    way = (x / length, y / length)
-    out, into = _until_outside(box, way) + 1, length - _until_outside(box.onto, way) - 6
-    ends = (box.at[0] + way[0] * into, box.at[1] + way[1] * into)
-    begins = f"{number(box.at[0] + way[0] * out)} {number(box.at[1] + way[1] * out)}"
-    line = element("path", d=f"M{begins}L{number(ends[0])} {number(ends[1])}", class_="way")
-    return joined([line, element("path", d=_head(ends, way), class_="head")])
+    turn = box.onto.angle - box.angle
+    length = hypot(box.onto.at[0] - box.at[0], box.onto.at[1] - box.at[1])
+    count = max(2, int(length + made.radius * abs(turn)) // 2)
+    points = [_between(made, box, box.onto, i / count, abs(turn) > STRAIGHT) for i in range(count + 1)]
+    first = next(i for i, at in enumerate(points) if _outside(box, at, 1))
+    last = next(i for i in reversed(range(count + 1)) if _outside(box.onto, points[i], 6))
+    ends, way = points[last], (points[last + 1][0] - points[last][0], points[last + 1][1] - points[last][1])
+    size = hypot(*way)
+    # A curve is drawn by a point every so many pixels.
+    shown = [*points[first:last:12], ends] if abs(turn) > STRAIGHT else [points[first], ends]
+    path = "L".join(f"{number(x)} {number(y)}" for x, y in shown)
+    head = _head(ends, (way[0] / size, way[1] / size))
+    return joined([element("path", d=f"M{path}", class_="way"), element("path", d=head, class_="head")])
+
+
+def _between(made: Plan, box: Placed, onto: Placed, part: float, round_it: bool) -> Point:
+    if round_it:
+        depth = box.depth + part * (onto.depth - box.depth)
+        return made.point(depth, box.angle + part * (onto.angle - box.angle))
+    return box.at[0] + part * (onto.at[0] - box.at[0]), box.at[1] + part * (onto.at[1] - box.at[1])
+
+
+def _outside(box: Placed, at: Point, by: float) -> bool:
+    return abs(at[0] - box.at[0]) > box.half + by or abs(at[1] - box.at[1]) > HEIGHT / 2 + by
 
 
 def _head(at: Point, way: Point) -> str:
