@@ -11,7 +11,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 from prover.each import values_text
-from prover.facts import LIMITS, number
+from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Report
 from prover.output import harmless
 from prover.report import figures, words
@@ -29,7 +29,6 @@ EXTENT = figures.Extent()
 MOST_WAVES = 3
 MOST_ROWS = 20
 MOST_LOOPS = 20
-MOST_NAMED = 8
 
 COLOURS = {"PROVED": "32", "MEASURED": "32", "REFUTED": "31", "OPEN": "33", "WAIVED": "33"}
 
@@ -130,21 +129,8 @@ def _verdict(finding: Finding, widest: int) -> Iterator[str]:
     for obligation in finding.obligations:
         yield from _wrapped(f"obligation: {obligation.text}", indent)
         yield f"{indent}  {obligation.where}: {obligation.where.text.strip()}"
-    for key, told in (
-        ("if_the_edge_won", "if the edge won"),
-        ("if_late", "if late"),
-        ("output_in_reset", "output in reset"),
-        ("first_edges_released_low", "edges after a release while the clock is low"),
-        ("first_edges_released_high", "edges after a release while the clock is high"),
-        ("slowest_state", "slowest"),
-        ("state", "state"),
-    ):
-        fact = finding.facts.get(key)
-        if fact:
-            yield from _wrapped(f"{told}: {words.fact(fact)}", indent)
-    illegal = finding.facts.get("illegal_states")
-    if illegal is not None:
-        yield f"{indent}illegal power-up states: {illegal}"
+    for name, told in words.facts_of(finding):
+        yield from _wrapped(f"{name}: {told}", indent)
 
 
 def _values(report: Report) -> Iterator[str]:
@@ -241,55 +227,8 @@ def _loop_row(report: Report, loop: Loop) -> tuple[str, str, str, str, str]:
 
 
 def _facts(report: Report) -> Iterator[str]:
-    facts = report.facts
-    edges = facts.get("source_edges")
-    if isinstance(edges, list):
-        launched = ", ".join(map(str, edges))
-        text = f"rise, fall and next rise on source edges {launched} (edge 1 rises)"
-        if facts.get("source_edges_alternate"):
-            text += "; every other period begins on the other edge, so its length is constant only at d = 0.5"
-        yield from _wrapped(text, "")
-    if "duty" in facts:
-        text = f"duty {facts['duty']} of a source of duty d: {facts['duty_at_half']} at d = 0.5"
-        if "duty_range" in facts and report.spec.source_duty is not None:
-            low, high = (number(end) for end in report.spec.source_duty)
-            text += f", {facts['duty_range']} for a source of {low} to {high} %"
-        yield from _wrapped(text, "")
-    yield from _shortest(report)
-    yield from _clock_depth(report)
-    worst = facts.get("worst_recovery_half_cycles")
-    if worst is not None:
-        cycles = facts["worst_recovery_input_cycles"]
-        text = f"worst recovery {worst} half-cycles, {cycles} input cycle{'s' * (cycles != '1')}"
-        if "worst_recovery_seconds" in facts:
-            text += f", {facts['worst_recovery_seconds']}"
-        yield text
-
-
-def _shortest(report: Report) -> Iterator[str]:
-    pulses = (report.facts.get(f"shortest_{level}_half_cycles") for level in ("high", "low"))
-    told = [
-        f"{length} half-cycle{'s' * (length != 1)} {level}"
-        for level, length in zip(("high", "low"), pulses, strict=True)
-        if length is not None
-    ]
-    if told:
-        yield f"shortest pulse {', '.join(told)}"
-
-
-def _clock_depth(report: Report) -> Iterator[str]:
-    """The registers by how many others their clock comes through, where there are any that do."""
-    depth = report.facts.get("clock_depth")
-    if not isinstance(depth, dict) or not any(depth.values()):
-        return
-    levels: dict[int, list[str]] = {}
-    for name, level in depth.items():
-        levels.setdefault(level, []).append(name)
-    told = []
-    for level, names in sorted(levels.items()):
-        more = f" and {len(names) - MOST_NAMED} more" if len(names) > MOST_NAMED else ""
-        told.append(f"{level} {', '.join(names[:MOST_NAMED])}{more}")
-    yield from _wrapped(f"registers between {report.ports.clock} and their clock: {'; '.join(told)}", "")
+    for name, told in words.facts(report):
+        yield from _wrapped(f"{name} {told}", "")
 
 
 # -- counterexamples ---------------------------------------------------------------------------------------

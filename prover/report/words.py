@@ -2,16 +2,20 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from fractions import Fraction
 
 from prover.each import ValueRow, row_text
 from prover.facts import number
-from prover.findings import Fact, Report
+from prover.findings import Fact, Finding, Report
 from prover.rhythm import Loop, Orbit, Rhythm, Wave
 from prover.system import State
 
 MOST_RUNS = 8
 """Runs of a wave that are spelt out."""
+
+MOST_NAMED = 8
+"""Registers that are named of those with one depth of their clock."""
 
 
 def plural(count: int, noun: str) -> str:
@@ -72,6 +76,71 @@ def fact(value: Fact) -> str:
     if isinstance(value, list):
         return ", ".join(str(item) for item in value)
     return str(value)
+
+
+FACTS = (
+    ("if_the_edge_won", "if the edge won"),
+    ("if_late", "if late"),
+    ("output_in_reset", "output in reset"),
+    ("first_edges_released_low", "edges after a release while the clock is low"),
+    ("first_edges_released_high", "edges after a release while the clock is high"),
+    ("slowest_state", "slowest"),
+    ("state", "state"),
+    ("illegal_states", "illegal power-up states"),
+)
+"""Facts of findings that people are told, by the names that they read."""
+
+
+def facts_of(finding: Finding) -> Iterator[tuple[str, str]]:
+    """A finding's facts that its words don't say already: a name and what it is."""
+    for key, name in FACTS:
+        value = finding.facts.get(key)
+        if value not in (None, "", [], {}):
+            yield name, fact(value)
+
+
+def facts(report: Report) -> Iterator[tuple[str, str]]:
+    """The facts that a report carries: a name, and what it is with its unit."""
+    found = report.facts
+    edges = found.get("source_edges")
+    if isinstance(edges, list):
+        text = f"on source edges {', '.join(map(str, edges))} (edge 1 rises)"
+        if found.get("source_edges_alternate"):
+            text += "; every other period begins on the other edge, so its length is constant only at d = 0.5"
+        yield "rise, fall and next rise", text
+    if "duty" in found:
+        text = f"{found['duty']} of a source of duty d: {found['duty_at_half']} at d = 0.5"
+        if "duty_range" in found and report.spec.source_duty is not None:
+            low, high = (number(end) for end in report.spec.source_duty)
+            text += f", {found['duty_range']} for a source of {low} to {high} %"
+        yield "duty", text
+    pulses = ((level, found.get(f"shortest_{level}_half_cycles")) for level in ("high", "low"))
+    told = [f"{plural(length, 'half-cycle')} {level}" for level, length in pulses if isinstance(length, int)]
+    if told:
+        yield "shortest pulse", ", ".join(told)
+    yield from _clock_depth(report)
+    worst = found.get("worst_recovery_half_cycles")
+    if worst is not None:
+        cycles = found["worst_recovery_input_cycles"]
+        text = f"{worst} half-cycles, {cycles} input cycle{'s' * (cycles != '1')}"
+        if "worst_recovery_seconds" in found:
+            text += f", {found['worst_recovery_seconds']}"
+        yield "worst recovery", text
+
+
+def _clock_depth(report: Report) -> Iterator[tuple[str, str]]:
+    """The registers by how many others their clock comes through, where there are any that do."""
+    depth = report.facts.get("clock_depth")
+    if not isinstance(depth, dict) or not any(depth.values()):
+        return
+    levels: dict[int, list[str]] = {}
+    for name, level in depth.items():
+        levels.setdefault(level, []).append(name)
+    told = []
+    for level, names in sorted(levels.items()):
+        more = f" and {len(names) - MOST_NAMED} more" if len(names) > MOST_NAMED else ""
+        told.append(f"{level} {', '.join(names[:MOST_NAMED])}{more}")
+    yield f"registers between {report.ports.clock} and their clock:", "; ".join(told)
 
 
 def state(report: Report, values: State) -> str:

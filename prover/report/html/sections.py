@@ -11,7 +11,7 @@ from prover.arrival import Glitch
 from prover.each import values_text
 from prover.errors import Where
 from prover.facts import LIMITS, number
-from prover.findings import Counterexample, Fact, Finding, Obligation, Report
+from prover.findings import Counterexample, Finding, Obligation, Report
 from prover.report import figures, words
 from prover.report.figures import Extent
 from prover.report.html import recovery, states, waves
@@ -33,26 +33,8 @@ MOST_MICRO_STEPS = 64
 MOST_VALUES = 100
 MOST_ARRIVALS = 40
 
-TOLD = {
-    "slowest_state": "slowest state",
-    "illegal_states": "illegal power-up states",
-    "if_the_edge_won": "if the edge won",
-}
-"""Facts of findings by names that read better."""
-
 LONG = frozenset({"for example", "reason for waiving it", "what is wrong, or the worst"})
 """Headings of columns that hold texts."""
-
-SAID = frozenset(
-    {
-        "measured_period_half_cycles",
-        "measured_high_half_cycles",
-        "worst_half_cycles",
-        "exact",
-        "micro_steps",
-    }
-)
-"""Facts of findings that their words say already."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -191,9 +173,7 @@ def _verdict(finding: Finding, place: Place) -> Markup:
         rows.append(("bound", finding.bound))
     if finding.method:
         rows.append(("method", finding.method))
-    for key, value in finding.facts.items():
-        if key not in SAID and value is not None and value != []:
-            rows.append((TOLD.get(key, key.replace("_", " ")), _fact(value)))
+    rows += words.facts_of(finding)
     if finding.obligations:
         link = element(
             "a", words.plural(len(finding.obligations), "obligation"), href=f"#{place.key}obligations"
@@ -203,10 +183,6 @@ def _verdict(finding: Finding, place: Place) -> Markup:
         rows.append(("waived", finding.waived))
     content = element("div", head, element("p", finding.says, class_="says"), _definitions(rows))
     return element("li", element("div", ring_mark(finding.verdict), class_=finding.verdict), content)
-
-
-def _fact(value: Fact) -> Content:
-    return element("code", words.fact(value)) if isinstance(value, dict) else words.fact(value)
 
 
 def _each_value(report: Report, place: Place) -> Iterator[Markup]:
@@ -512,31 +488,7 @@ def _graph(report: Report, small: states.Machine, place: Place) -> Iterator[Mark
 
 
 def _facts(report: Report, place: Place) -> Iterator[Markup]:
-    facts = dict(report.facts)
-    rows: list[tuple[str, Content]] = []
-    edges = facts.pop("source_edges", None)
-    if isinstance(edges, list):
-        rise, fall, then = (words.digits(int(edge)) for edge in edges)
-        rows.append(
-            (
-                "launching edges",
-                f"rise on source edge {rise}, fall on {fall}, next rise on {then}; edge 1 rises",
-            )
-        )
-    duty, at_half, span = (facts.pop(key, None) for key in ("duty", "duty_at_half", "duty_range"))
-    if duty is not None:
-        text = f"{duty} of a source of duty d: {at_half} at d = 0.5"
-        if span is not None and report.spec.source_duty is not None:
-            low, high = (number(end) for end in report.spec.source_duty)
-            text += f", {span} for a source of {low} to {high} %"
-        rows.append(("duty", text))
-    worst, cycles, seconds = (
-        facts.pop(f"worst_recovery_{unit}", None) for unit in ("half_cycles", "input_cycles", "seconds")
-    )
-    if worst is not None:
-        text = f"{worst} half-cycles, {cycles} input cycle{'s' * (cycles != '1')}"
-        rows.append(("worst recovery", text + (f", {seconds}" if seconds is not None else "")))
-    rows += [(key.replace("_", " "), words.fact(value)) for key, value in facts.items() if value is not None]
+    rows = [(name.removesuffix(":"), told) for name, told in words.facts(report)]
     if rows:
         yield _definitions(rows)
 
