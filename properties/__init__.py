@@ -8,12 +8,12 @@ case of the same name.
 
 from __future__ import annotations
 
-from properties import high_time, no_stuck, ratio, recovery, reset, settling
+from properties import glitch_free, high_time, no_stuck, ratio, recovery, reset, settling
 from prover.findings import Finding, with_waivers
 from prover.rhythm import Rhythm
 from prover.spec import Spec
 
-ORDER = (ratio, high_time, no_stuck, recovery, settling, reset)
+ORDER = (ratio, high_time, no_stuck, recovery, settling, glitch_free, reset)
 NAMES = tuple(module.NAME for module in ORDER)
 
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 from prover.arrival import Glitch
 from prover.findings import Fact, Finding, Obligation
 from prover.rhythm import Rhythm
@@ -13,9 +15,12 @@ CLAIM = (
     "changes reach it through gates of any delay"
 )
 SAID = {
-    "function": "whatever gates it is made of",
-    "gates": "with the gates as they are written",
+    "function": "no gates can cure that, for it is what they compute",
+    "gates": "the gates as they are written do that, what they compute does not",
 }
+
+MOST_TOLD = 6
+"""Bits or values that are told in a sentence; the rest is counted."""
 
 
 def judge(rhythm: Rhythm, spec: Spec) -> Finding:
@@ -34,28 +39,39 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding:
     obligations = tuple(Obligation(due.text, due.where, due.register) for due in found.dues)
     text = "no order of simultaneous changes makes the output pulse"
     if found.by_form:
-        text, method = "the output changes with one bit at a time", "by the form of the output"
+        text, method = "the form of the output leaves no room for a second change", "by that form"
     if obligations:
         text += f", under {len(obligations)} timing obligation{'s' * (len(obligations) != 1)}"
     return Finding(NAME, "proved", CLAIM, text, method, found.scope, obligations=obligations)
 
 
 def _told(glitch: Glitch) -> str:
-    edge = "rising" if glitch.rising else "falling"
     arrival = glitch.arrivals[glitch.first]
+    before = {name: value for name, value in glitch.state.items() if name in arrival.seen}
     moved = [f"{a.name} {a.old}→{a.new}" for a in glitch.arrivals[: glitch.first + 1]]
     ends = glitch.arrivals[-1].level
     kept = f"stay {ends}" if ends == glitch.level else f"go from {glitch.level} to {ends} once"
+    between = {name: value for name, value in arrival.seen.items() if before.get(name) != value}
     return (
-        f"a pulse to {arrival.level} at the {edge} edge, where the output should {kept}, {SAID[glitch.kind]}: "
-        f"when {', '.join(moved)} {'has' if len(moved) == 1 else 'have'} arrived before the rest"
+        f"pulses to {arrival.level} at the {glitch.edge} edge from {_values(before)}, where it should {kept}: once "
+        f"{_listed(moved)} {'has' if len(moved) == 1 else 'have'} arrived before the rest, {_values(between)}; "
+        f"{SAID[glitch.kind]}"
     )
+
+
+def _values(values: Mapping[str, int]) -> str:
+    return _listed([f"{name}={value}" for name, value in values.items()])
+
+
+def _listed(parts: list[str]) -> str:
+    more = f" and {len(parts) - MOST_TOLD} more" if len(parts) > MOST_TOLD else ""
+    return ", ".join(parts[:MOST_TOLD]) + more
 
 
 def _facts(glitch: Glitch) -> dict[str, Fact]:
     return {
         "kind": glitch.kind,
-        "edge": "rising" if glitch.rising else "falling",
+        "edge": glitch.edge,
         "state": dict(glitch.state),
         "arrivals": [f"{a.name} {a.old}→{a.new}" for a in glitch.arrivals],
         "levels": [glitch.level, *(a.level for a in glitch.arrivals)],

@@ -18,7 +18,20 @@ from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
 from prover.release import Freed, Release, differs, releases, too_short, unknown
-from prover.rhythm import NOWHERE, Goal, Good, Loop, Mean, Orbit, Recovery, Rhythm, Scope, Start, Wave
+from prover.rhythm import (
+    NOWHERE,
+    Goal,
+    Good,
+    Loop,
+    Mean,
+    Orbit,
+    Recovery,
+    Rhythm,
+    Scope,
+    Start,
+    Wave,
+    goal_of,
+)
 from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
@@ -74,7 +87,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         rhythm = _with_power_up(rhythm, system, goal, effort)
     except OutOfEffort as out:
         rhythm = replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
-    return rhythm
+    return rhythm if spec.ratio is None else _with_glitches(rhythm, ports, spec, system, effort)
 
 
 def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple[System, tuple[Start, ...]]:
@@ -316,9 +329,10 @@ def _told(wave: Wave | None) -> str:
 # -- within a half-cycle -----------------------------------------------------------------------------------
 
 
-def _with_glitches(rhythm: Rhythm, ports: Ports, whole: System, goal: Goal, effort: Effort) -> Rhythm:
+def _with_glitches(rhythm: Rhythm, ports: Ports, spec: Spec, whole: System, effort: Effort) -> Rhythm:
     """The rhythm completed with what happens on the way from one half-cycle to the next."""
     machine = rhythm.system
+    goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
     good = rhythm.good or of_runs(rhythm, (), False, goal)
 
     def follows(state: State) -> Orbit | None:
@@ -327,7 +341,9 @@ def _with_glitches(rhythm: Rhythm, ports: Ports, whole: System, goal: Goal, effo
 
     try:
         effort.say("looking for glitches")
-        found = glitch.find(ports, whole, scope_of(machine, good), follows, lambda goal: find(goal, effort))
+        found = glitch.find(
+            ports, whole, scope_of(whole, machine, good), follows, lambda goal: find(goal, effort)
+        )
         for number, claim in enumerate(found.goals):
             if not certificate.discharge(certificate.Obligation(f"glitches {number}", claim), effort):
                 raise InternalError("the absence of a glitch fails its check")

@@ -73,6 +73,11 @@ class Glitch:
     orbit: Orbit
 
     @property
+    def edge(self) -> str:
+        """The clock's edge in words: rising or falling."""
+        return "rising" if self.rising else "falling"
+
+    @property
     def first(self) -> int:
         """The number of the arrival at which the output first changes."""
         levels = [self.level, *(arrival.level for arrival in self.arrivals)]

@@ -8,17 +8,20 @@ be had the evidence says nothing, and the certificate leaves open what the repor
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from itertools import product
 from typing import TypeVar
 
 from prover import expr as e
-from prover import graph, linear, path, recode, tables
+from prover import glitch, graph, linear, path, recode, tables
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_of
 from prover.expr import Expr
 from prover.findings import Report
+from prover.good import good_since, scope_of
+from prover.rebuild import good_of, orbit_of
 from prover.rhythm import Goal, Orbit, Rhythm, goal_of
 from prover.settling import settle
 from prover.solve import Model, find
@@ -33,7 +36,7 @@ def collect(report: Report, effort: Effort) -> Evidence:
     ports, spec, rhythm = report.ports, report.spec, report.rhythm
     answers = rhythm.settling.answers
     if rhythm.settling.depth is None:
-        return Evidence(answers, False, False, (), (), None, None, (), None, ())
+        return Evidence(answers, False, False, (), (), None, None, (), None, (), ())
     whole, _ = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=_repeated(answers)
     )
@@ -44,7 +47,7 @@ def collect(report: Report, effort: Effort) -> Evidence:
     hold = _within(lambda: _hold(rhythm, effort))
     followed = rhythm.scope != "reset" or hold is not None
     goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
-    return Evidence(
+    found = Evidence(
         settling=answers,
         cone=inner is not whole,
         parts=kept < len(inner.variables) or bool(machine.slices),
@@ -55,7 +58,32 @@ def collect(report: Report, effort: Effort) -> Evidence:
         starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
         everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
         lassos=_within(lambda: _lassos(report, whole, effort)) or (),
+        glitches=(),
     )
+    return _with_glitches(report, whole, found, goal, effort)
+
+
+def _with_glitches(report: Report, whole: System, found: Evidence, goal: Goal, effort: Effort) -> Evidence:
+    """The evidence with answers about glitches, asked of the good states that it has, and the run that shows one."""
+    rhythm = report.rhythm
+    machine = rhythm.system
+    tracks = [orbit_of(each, machine, "starts") for each in found.starts]
+    rhythm = replace(rhythm, orbits=tuple(tracks))
+    good = good_of(rhythm, found.everywhere, goal)
+    shown: list[Lasso] = []
+
+    def follows(state: State) -> Orbit | None:
+        run = follow(machine, recode.placed(state, whole, machine), effort)
+        if not good.none and good_since(run, goal) != 0:
+            return None
+        shown.append(Lasso(_track(run), state))
+        return run
+
+    asked = glitch.find(
+        report.ports, whole, scope_of(whole, machine, good), follows, lambda question: find(question, effort)
+    )
+    lassos = tuple(dict.fromkeys([*found.lassos, *shown]))
+    return replace(found, lassos=lassos, glitches=asked.answers)
 
 
 def _within(work: Callable[[], Found]) -> Found | None:

@@ -111,6 +111,8 @@ class Evidence:
     starts      the runs of the start states, in order
     everywhere  about all power-up states: the stages of a cover, a ranking, or a list of loops
     lassos      power-up states that refute something, or that need the longest
+    glitches    answers to the questions about what happens within a half-cycle, in the order in which `glitch.find`
+                asks them
     """
 
     settling: tuple[Model | None, ...]
@@ -123,6 +125,7 @@ class Evidence:
     starts: tuple[Track, ...]
     everywhere: tuple[Layer, ...] | Ranking | Rounds | None
     lassos: tuple[Lasso, ...]
+    glitches: tuple[Model | None, ...]
 
 
 # -- writing -----------------------------------------------------------------------------------------------
@@ -149,6 +152,7 @@ def as_object(evidence: Evidence) -> Object:
         "starts": [track(of) for of in evidence.starts],
         "everywhere": _everywhere(evidence.everywhere, track),
         "lassos": [{**track(lasso.track), "start": list(lasso.start)} for lasso in evidence.lassos],
+        "glitches": list(evidence.glitches),
     }
     if evidence.reset is not None:
         out["reset"] = _hold(evidence.reset, track)
@@ -221,7 +225,9 @@ def _item(item: Item) -> Object:
 def read(value: Any) -> Evidence:
     """The evidence in an object. Raises Malformed."""
     of = _fields(
-        value, "evidence", "cone parts gray word matrix settling reset starts everywhere lassos paths"
+        value,
+        "evidence",
+        "cone parts gray word matrix settling reset starts everywhere lassos glitches paths",
     )
     paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(_list(of["paths"], "paths"))]
 
@@ -252,6 +258,7 @@ def read(value: Any) -> Evidence:
         starts=_each(of["starts"], "starts", start),
         everywhere=_read_everywhere(of["everywhere"], track),
         lassos=_each(of["lassos"], "lassos", lasso),
+        glitches=_each(of["glitches"], "glitches", _answer),
     )
 
 

@@ -149,6 +149,11 @@ def assumptions(ports: Ports, rhythm: Rhythm) -> tuple[str, ...]:
         "registers and gates have no delay; what happens at once is ordered as the micro-steps say",
         "registers are two-valued; an unknown stands for both values",
     ]
+    if rhythm.glitches is not None:
+        out.append(
+            "within a half-cycle, what a micro-step changes reaches the output in any order through gates of any "
+            "delay, after what caused it"
+        )
     if ports.reset:
         out.append(f"{ports.reset.port} stays at {1 - ports.reset.active} after its release")
     fixed = {n: v for n, v in ports.holds.items() if not ports.reset or n != ports.reset.port}

@@ -15,7 +15,7 @@ from prover import expr as e
 from prover.expr import Expr
 from prover.path import Beat, Item
 from prover.rhythm import Goal, Good, Orbit, Rhythm
-from prover.system import State, System
+from prover.system import State, System, lies_at
 
 Axes = tuple[tuple[int, State], ...]
 
@@ -58,18 +58,18 @@ class Scope:
     why: str = ""
 
 
-def scope_of(machine: System, good: Good | None) -> Scope:
+def scope_of(whole: System, machine: System, good: Good | None) -> Scope:
     """The good states of a machine, or what is looked at in their place, as regions of the whole divider."""
     if good is None:
         return Scope((), "", "the good states are not known")
     if good.phases is not None:
         member = tables.lookup(machine, [int(phase >= 0) for phase in good.phases], 1)
-        return Scope((Region(_over_registers(machine, member)),), good.told)
+        return Scope((Region(e.substitute([member], _over_registers(whole, machine))[0]),), good.told)
     if machine.logs is not None:
         # Every state but the one that stays where it is lies on the one loop.
-        fixed = machine.logs.values(machine.logs.period)
-        away = e.disj(e.bvnot(e.eq(e.var(n, w), e.const(fixed[n], w))) for n, w in machine.logs.registers)
-        return Scope((Region(away),) if good.runs else (), good.told, "" if good.runs else "no run is known")
+        stays = [lies_at(machine, (machine.logs.period, level), whole) for level in (0, 1)]
+        away = Region(e.bvnot(e.disj(stays)))
+        return Scope((away,) if good.runs else (), good.told, "" if good.runs else "no run is known")
     singles: dict[State, None] = {}
     groups: dict[tuple[State, Axes], None] = {}
     for run, begins in good.runs:
@@ -82,8 +82,8 @@ def scope_of(machine: System, good: Good | None) -> Scope:
     if len(singles) > MOST_SINGLE:
         return Scope((), good.told, f"more than {MOST_SINGLE} states outside any repeat")
     listed = list(singles)
-    regions = [_listed(machine, listed[at : at + TOGETHER]) for at in range(0, len(listed), TOGETHER)]
-    regions += [_repeated(machine, state, axes) for state, axes in groups]
+    regions = [_listed(whole, machine, listed[at : at + TOGETHER]) for at in range(0, len(listed), TOGETHER)]
+    regions += [_repeated(whole, machine, state, axes) for state, axes in groups]
     return Scope(tuple(regions), good.told, "" if regions else "no run is known")
 
 
@@ -98,23 +98,66 @@ def _written(items: Sequence[Item], last: int, axes: Axes) -> Iterator[tuple[Sta
         last += item.length
 
 
-def _over_registers(machine: System, word: Expr) -> Expr:
-    """An expression over a machine's variables as one over the whole divider's."""
-    joined = {name: e.concat_all([e.var(bit, 1) for bit in reversed(bits)]) for name, bits in machine.words}
-    return e.substitute([word], joined)[0]
+def _over_registers(whole: System, machine: System) -> dict[str, Expr]:
+    """A machine's variables as expressions over the whole divider's registers."""
+    widths = dict(whole.variables)
+    parts = {name: (register, low) for name, register, low in machine.slices}
+    codes, bits = dict(machine.grays), dict(machine.words)
+
+    def register(name: str, width: int) -> Expr:
+        if name not in parts:
+            return e.var(name, width)
+        of, low = parts[name]
+        return e.extract(e.var(of, widths[of]), low + width - 1, low)
+
+    out: dict[str, Expr] = {}
+    for name, width in machine.variables:
+        if name in bits:
+            out[name] = e.concat_all([register(bit, 1) for bit in reversed(bits[name])])
+        elif name in codes:
+            out[name] = _number(register(codes[name], width))
+        else:
+            out[name] = register(name, width)
+    return out
 
 
-def _listed(machine: System, states: Sequence[State]) -> Region:
-    places = (
-        e.conj(e.eq(e.var(n, w), e.const(v, w)) for (n, w), v in zip(machine.variables, state, strict=True))
-        for state in states
-    )
-    return Region(_over_registers(machine, e.disj(places)))
+def _number(code: Expr) -> Expr:
+    """What a word in Gray code stands for: each bit is the parity of those from it upwards."""
+    shift = 1
+    while shift < code.width:
+        code = e.bvxor(code, e.binary("bvlshr", code, e.const(shift, code.width)))
+        shift *= 2
+    return code
 
 
-def _repeated(machine: System, state: State, axes: Axes) -> Region:
+def _registers(whole: System, machine: System, words: Sequence[Expr]) -> dict[str, Expr]:
+    """The whole divider's registers where the machine's variables have these values, as far as they say."""
+    widths = dict(whole.variables)
+    codes, bits = dict(machine.grays), dict(machine.words)
+    values: dict[str, Expr] = {}
+    for (name, _), word in zip(machine.variables, words, strict=True):
+        if name in bits:
+            values |= {bit: e.extract(word, place, place) for place, bit in enumerate(bits[name])}
+        elif name in codes:
+            values[codes[name]] = e.bvxor(word, e.binary("bvlshr", word, e.const(1, word.width)))
+        else:
+            values[name] = word
+    for name, of, low in machine.slices:
+        part = values.pop(name)
+        word = e.var(of, widths[of])
+        high = low + part.width - 1
+        above = [e.extract(word, word.width - 1, high + 1)] if high + 1 < word.width else []
+        below = [e.extract(word, low - 1, 0)] if low else []
+        values[of] = e.concat_all([*above, part, *below])
+    return values
+
+
+def _listed(whole: System, machine: System, states: Sequence[State]) -> Region:
+    return Region(e.disj(lies_at(machine, state, whole) for state in states))
+
+
+def _repeated(whole: System, machine: System, state: State, axes: Axes) -> Region:
     """A beat in every round of the repeats around it."""
-    bits = dict(machine.words)
     within = e.TRUE
     words = [e.const(value, width) for value, (_, width) in zip(state, machine.variables, strict=True)]
     for i, (times, stride) in enumerate(axes):
@@ -126,13 +169,7 @@ def _repeated(machine: System, state: State, axes: Axes) -> Region:
                 words[j] = e.bvadd(
                     words[j], e.bvmul(e.resize(index, width, False), e.const(stride[j], width))
                 )
-    values: dict[str, Expr] = {}
-    for (name, _), word in zip(machine.variables, words, strict=True):
-        if name in bits:
-            values |= {bit: e.extract(word, place, place) for place, bit in enumerate(bits[name])}
-        else:
-            values[name] = word
-    return Region(within, values)
+    return Region(within, _registers(whole, machine, words))
 
 
 # -- which runs are good -----------------------------------------------------------------------------------

@@ -7,19 +7,32 @@ and checking one both come this way, so the two can be compared word for word.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from prover import certificate, linear, path, recode, release, reset, tables
+from prover import certificate, glitch, linear, path, recode, release, reset, tables
 from prover import expr as e
 from prover.certificate import CoverClaim, Obligation, Stage
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track
 from prover.expr import Expr
+from prover.good import good_since, of_runs, scope_of
 from prover.path import Beat, Item, Step
 from prover.ports import Ports
-from prover.rhythm import LONGEST_ROUND, NOWHERE, Goal, Loop, Orbit, Recovery, Rhythm, Scope, Start, goal_of
+from prover.rhythm import (
+    LONGEST_ROUND,
+    NOWHERE,
+    Goal,
+    Good,
+    Loop,
+    Orbit,
+    Recovery,
+    Rhythm,
+    Scope,
+    Start,
+    goal_of,
+)
 from prover.settling import Settling, settle
 from prover.solve import Model
 from prover.spec import Spec
@@ -59,7 +72,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
         known = _held(ports, evidence.reset, owed, effort)
     scope, starts, why = _starts(ports, spec, whole, settling, known)
     if settling.depth is None:
-        if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, ()):
+        if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, (), ()):
             raise Rejected("evidence about a divider of which nothing is known")
         return Rebuilt(whole, _nothing_known(ports, whole, settling, scope), owed.listed())
     machine = machine_of(whole, evidence, owed)
@@ -73,6 +86,8 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     listed = evidence.everywhere.waves() if isinstance(evidence.everywhere, Rounds) else []
     goal = goal_of(spec, [*(run.wave() for run in rhythm.orbits), *listed, *(run.wave() for run in lassos)])
     rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
+    runs = {lasso.start: run for lasso, run in zip(evidence.lassos, lassos, strict=True)}
+    rhythm = _with_glitches(ports, whole, rhythm, evidence, goal, runs, owed)
     return Rebuilt(whole, rhythm, owed.listed())
 
 
@@ -131,6 +146,45 @@ def _nothing_known(ports: Ports, whole: System, settling: Settling, scope: Scope
     recovery = Recovery(None, False, open=why)
     freed = release.unknown(ports, why) if ports.reset is not None else None
     return Rhythm(whole, settling, scope, (), (), (), False, recovery, None, False, open=why, release=freed)
+
+
+# -- within a half-cycle -----------------------------------------------------------------------------------
+
+
+def good_of(rhythm: Rhythm, known: tuple[Layer, ...] | Ranking | Rounds | None, goal: Goal) -> Good:
+    """The good states as the evidence has them, or what is looked at in their place."""
+    machine = rhythm.system
+    if isinstance(known, Ranking):
+        hanging = " whatever x stands for" if machine.choices else ""
+        return Good(known.phase, (), f"every state that is good{hanging}")
+    loops: list[Orbit] = []
+    if isinstance(known, Rounds):
+        loops = known.orbits(machine)
+    elif known is not None:
+        loops = [orbit_of(each.track, machine, "a stage's orbit") for each in known[-1].orbits]
+    return of_runs(rhythm, loops, known is not None, goal)
+
+
+def _with_glitches(
+    ports: Ports,
+    whole: System,
+    rhythm: Rhythm,
+    evidence: Evidence,
+    goal: Goal,
+    runs: Mapping[State, Orbit],
+    owed: _Obligations,
+) -> Rhythm:
+    """The rhythm with what the answers say of glitches, owing that there are no others."""
+    good = good_of(rhythm, evidence.everywhere, goal)
+    ask = _Replay(evidence.glitches, "glitches", owed)
+
+    def follow(state: State) -> Orbit | None:
+        run = runs.get(state)
+        return run if run is not None and (good.none or good_since(run, goal) == 0) else None
+
+    found = glitch.find(ports, whole, scope_of(whole, rhythm.system, good), follow, ask.answer)
+    ask.finish()
+    return replace(rhythm, good=good, glitches=found)
 
 
 # -- the machine that the evidence speaks of ---------------------------------------------------------------
@@ -499,6 +553,8 @@ def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> 
         raise Rejected("a table of too many states")
     _none([*tables.ranking_form_faults(system, known, goal.period)])
     owed.add(tables.ranking_obligations(system, known, goal))
+    if not system.choices:
+        owed.add([tables.every_good_state(system, known, goal)])
     return known.bound
 
 

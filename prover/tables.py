@@ -148,6 +148,22 @@ def _level(goal: Goal, phase: Expr) -> Expr:
     return level
 
 
+def every_good_state(system: System, table: Ranking, goal: Goal) -> Obligation:
+    """No state is good but those with a rank of zero: the last other one on the way to these has the wrong output.
+
+    (Any other one is not good because its successor is not; without choices.)"""
+    wide = max(goal.period, 2).bit_length()
+    good = lookup(system, [int(value == 0) if value >= 0 else None for value in table.rank], 1)
+    claimed = lookup(system, [int(value >= 0) for value in table.rank], 1)
+    phase = lookup(system, [value if value >= 0 else None for value in table.phase], wide)
+    good_after, phase_after = _after(system, [good, phase])
+    first = e.eq(phase_after, e.const(0, wide))
+    before = e.ite(first, e.const(goal.period - 1, wide), e.bvsub(phase_after, e.const(1, wide)))
+    fits = e.bvnot(e.bvxor(system.output, _level(goal, before)))
+    missed = e.conj([claimed, e.bvnot(good), good_after, fits])
+    return Obligation("no good state is left out", missed)
+
+
 def rounds_form_faults(system: System, table: Rounds) -> list[str]:
     """What is wrong with the list of loops by itself."""
     count = 1 << system.bits

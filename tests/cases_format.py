@@ -15,7 +15,7 @@ from pathlib import Path
 
 CASES = Path(__file__).parents[1] / "cases"
 FOLDERS = ("gauge", "faulty", "published", "refused")
-PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling", "reset")
+PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling", "glitch-free", "reset")
 VERDICTS = {"proved", "refuted", "open"}
 
 
@@ -101,6 +101,12 @@ def read_case(path: Path) -> Case:
     if not groups:
         raise FormatError(f"{path}: no check line")
     for group in groups:
+        if len(group.properties) > 1:
+            # Most outputs are registers; a line of its own has to be given only where it is otherwise.
+            group.properties.setdefault("glitch-free", Stated(frozenset({"proved"})))
+            group.properties = {
+                name: group.properties[name] for name in PROPERTIES if name in group.properties
+            }
         if bool(group.error) == bool(group.verdicts):
             raise FormatError(
                 f"{path}: check {shlex.join(group.options)}: a verdict or an error, one of the two"

@@ -68,7 +68,9 @@ def check_property(found: dict[str, Any], stated: Stated) -> None:
     verdict, facts = found["verdict"], found["facts"]
     assert verdict in stated.verdicts, found
     assert bool(found["obligations"]) == stated.obligation, found
-    if verdict == "refuted" and found["name"] != "settling":
+    if verdict == "refuted" and found["name"] == "glitch-free":
+        assert found["glitch"] is not None
+    elif verdict == "refuted" and found["name"] != "settling":
         assert found["counterexample"] is not None or found["trace"]["rests"]
     if found["name"] == "reset":
         assert facts.get("shortest_reset_half_cycles") == stated.held

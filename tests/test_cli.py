@@ -58,11 +58,19 @@ def test_too_little_effort_is_open(tmp_path: Path) -> None:
 
 
 def test_a_waived_refutation_does_not_count_and_is_told(tmp_path: Path) -> None:
-    waivers = ["--waive", "no-stuck=reset is always applied", "--waive", "recovery=reset is always applied"]
+    reason = "reset is always applied"
+    waivers = [
+        "--waive",
+        f"no-stuck={reason}",
+        "--waive",
+        f"recovery={reason}",
+        "--waive",
+        "glitch-free=an enable",
+    ]
     result = run("check", written(tmp_path, STICKS_AT_7), "--ratio", "5", "--high", "4", *waivers)
     assert result.exit_code == 0
     assert result.output.count("reset is always applied") == 2
-    assert "verdict  PROVED (2 waived)" in result.output
+    assert "verdict  PROVED (3 waived)" in result.output
 
 
 @pytest.mark.parametrize(("text", "status"), [(BY_3, 0), (RING, 0), (SPINS, 1)])
@@ -191,8 +199,8 @@ def test_files_are_written_and_nothing_else(tmp_path: Path) -> None:
     options = ["--json", str(tmp_path / "report.json"), "--vcd", str(tmp_path / "broken.vcd")]
     result = run("check", path, "--ratio", "5", "--high", "4", *options)
     assert result.exit_code == 1
-    # no-stuck and recovery are refuted: the first takes the path, the second is named after its property.
-    expected = ["broken-recovery.vcd", "broken.vcd", "divider.v", "report.json"]
+    # no-stuck, recovery and glitch-free are refuted: the first takes the path, the others are named after theirs.
+    expected = ["broken-glitch-free.vcd", "broken-recovery.vcd", "broken.vcd", "divider.v", "report.json"]
     assert sorted(os.listdir(tmp_path)) == expected
     assert f"trace written to {tmp_path / 'broken.vcd'}" in result.stdout
     assert json.loads((tmp_path / "report.json").read_text())["verdict"] == "refuted"
@@ -202,7 +210,7 @@ def test_a_folder_takes_one_wave_for_each_refuted_property(tmp_path: Path) -> No
     folder = tmp_path / "waves"
     folder.mkdir()
     run("check", written(tmp_path, STICKS_AT_7), "--ratio", "5", "--high", "4", "--vcd", str(folder))
-    assert sorted(os.listdir(folder)) == ["no-stuck.vcd", "recovery.vcd"]
+    assert sorted(os.listdir(folder)) == ["glitch-free.vcd", "no-stuck.vcd", "recovery.vcd"]
 
 
 def test_a_proof_writes_no_wave(tmp_path: Path) -> None:

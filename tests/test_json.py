@@ -152,6 +152,7 @@ CONTRACT = closed(
                 "counterexample",
                 "trace",
                 "unsettled",
+                "glitch",
             ),
         },
         "each": {"anyOf": [{"type": "null"}, EACH]},

@@ -266,7 +266,10 @@ def test_the_gray_count_is_the_published_one() -> None:
 def test_loading_on_the_last_count_divides_by_16_less_the_preset(preset: int) -> None:
     # References, four-bit counters with load [M].
     report = case("preset_modulus", 16 - preset, 2, holds={"p": preset})
-    assert report.verdict == "proved"
+    found = verdicts(report)
+    # The carry is decoded from several bits that change together, but where 14 and 15 take turns.
+    assert found.pop("glitch-free") == ("proved" if preset == 14 else "refuted")
+    assert set(found.values()) == {"proved"}
 
 
 @pytest.mark.parametrize("power", range(2, 15))
@@ -301,7 +304,9 @@ def test_a_maximal_shift_register_has_one_state_outside_its_round(stages: int, c
 @pytest.mark.parametrize("stages", [4, 5, 8, 10])
 def test_a_shift_register_with_the_missing_state_put_in_goes_through_all(stages: int) -> None:
     report = case("shift_full", 2**stages, 2, parameters={"STAGES": stages, "TAPS": mask(stages)})
-    assert report.verdict == "proved"
+    found = verdicts(report)
+    assert found.pop("glitch-free") == "refuted"
+    assert set(found.values()) == {"proved"}
     assert [loop.length for loop in report.rhythm.loops] == [2 * 2**stages]
 
 

@@ -1,5 +1,6 @@
 // The sampling tick by 3 whose delay samples on the rising edge: the tick is a whole cycle longer than its
 // upper stage instead of half a cycle. The ratio stands, the high time is 4 of 6 half-cycles.
+// The OR holds the tick up only if the delay, which the clock sets, comes before the clearing that ripples.
 // unit delay: decode
 // check: --ratio 3
 // verdict: refuted
@@ -8,6 +9,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved, obligation
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 1
 // check: --ratio 3 --high 4
@@ -17,6 +19,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved, obligation
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 0
 module toggle_stage (input ck, input clear_n, output reg q);

@@ -1,5 +1,7 @@
 // The pinger's clock by 7 as a structure whose delay samples on the rising edge: high for 8 of 14 half-
 // cycles instead of 7.
+// Where the delay misses a count (a good state that reset never leads to) it sets as the top stage is cleared,
+// and has to come first.
 // unit delay: decode
 // check: --ratio 7
 // verdict: refuted
@@ -19,6 +21,7 @@
 // no-stuck: proved
 // recovery: proved, worst 2, exact
 // settling: proved, obligation
+// glitch-free: proved, obligation
 // reset: proved, held 2
 // from reset: period 14, high 8
 // loops: 1

@@ -1,5 +1,6 @@
 // A carrier asked for at 2.5 whose second pulse sits on the rising edge as well: gaps of 4 and 6 half-
 // cycles in turn, so the high time is right and the ratio isn't.
+// From 3 to 4 the decode passes by 0 or by 2.
 // check: --ratio 2.5 --high 2
 // verdict: refuted
 // ratio: refuted
@@ -7,6 +8,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: refuted, held 2
 // from reset: period 10
 // loops: 1

@@ -1,5 +1,6 @@
 // A count of 12 in four bits whose illegal counts 13 and 14 send each other round, and whose 15 stays: one
 // false loop that goes on toggling too fast, and one that is stuck.
+// From 7 to 8 the compare passes by counts below 6.
 // check: --ratio 12
 // verdict: refuted
 // ratio: proved
@@ -7,6 +8,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: proved, held 0
 // from reset: period 24, high 12
 // loops: 3

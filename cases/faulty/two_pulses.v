@@ -1,5 +1,6 @@
 // A decode that picks two counts out of nine that aren't neighbours: two pulses a round, of one and of two
 // input cycles.
+// From 3 to 4 the decode passes by 1 and by 0.
 // check: --ratio 9 --high 6
 // verdict: refuted
 // ratio: refuted
@@ -7,6 +8,7 @@
 // no-stuck: proved
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: refuted, held 2
 // from reset: period 18
 // loops: 1

@@ -1,4 +1,5 @@
 // The same tap table with XNOR feedback, reset to zero: all ones is the state that sticks.
+// The decode of zero pulses on the way from 0...010, which moves on to 0...0101.
 // check: --set STAGES=4 --set TAPS=12 --ratio 15 --high 2
 // verdict: refuted
 // ratio: proved
@@ -6,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: proved, held 0
 // from reset: period 30, high 2
 // loops: 2
@@ -18,6 +20,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: proved, held 0
 // from reset: period 254, high 2
 // loops: 2

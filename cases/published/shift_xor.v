@@ -1,6 +1,7 @@
 // Linear feedback shift registers of the published tap table (3 to 10 stages; stage i is bit i - 1, the new
 // bit is the XOR of the taps and enters stage 1): 2^n - 1 states on one loop, and all zeros stuck. The
 // output decodes one state.
+// The decode of ones pulses as a single zero on a tap moves on: the old place rises before the new one falls.
 // check: --set STAGES=3 --set TAPS=6 --ratio 7 --high 2
 // verdict: refuted
 // ratio: proved
@@ -8,6 +9,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 14, high 2
 // loops: 2
 // false loops: 1
@@ -19,6 +21,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 30, high 2
 // loops: 2
 // false loops: 1
@@ -30,6 +33,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 62, high 2
 // loops: 2
 // false loops: 1
@@ -41,6 +45,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 126, high 2
 // loops: 2
 // false loops: 1
@@ -52,6 +57,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 254, high 2
 // loops: 2
 // false loops: 1
@@ -63,6 +69,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 510, high 2
 // loops: 2
 // false loops: 1
@@ -74,6 +81,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 1022, high 2
 // loops: 2
 // false loops: 1
@@ -85,6 +93,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // from initial: period 2046, high 2
 // loops: 2
 // false loops: 1

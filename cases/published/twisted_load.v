@@ -2,6 +2,8 @@
 // in N - 1 clocks at worst, from every state. Output first is the first stage; output flagged is the same
 // inverted while the code is illegal, so that it is right only when the ring is, and its worst recovery is
 // the published number of clocks, two half-cycles each.
+// A step of the ring changes one bit, so no order of changes can make flagged pulse; but that bit takes two ways
+// into the check of the code, and gates made of the subtraction may.
 // check: --set N=3 --ratio 6 --output flagged
 // verdict: proved
 // ratio: proved
@@ -9,6 +11,7 @@
 // no-stuck: proved
 // recovery: proved, worst 4, exact
 // settling: proved
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 0
 // check: --set N=3 --ratio 6 --output first
@@ -27,6 +30,7 @@
 // no-stuck: proved
 // recovery: proved, worst 6, exact
 // settling: proved
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 0
 // check: --set N=4 --ratio 8 --output first
@@ -45,6 +49,7 @@
 // no-stuck: proved
 // recovery: proved, worst 8, exact
 // settling: proved
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 0
 // check: --set N=5 --ratio 10 --output first
@@ -63,6 +68,7 @@
 // no-stuck: proved
 // recovery: proved, worst 10, exact
 // settling: proved
+// glitch-free: proved, obligation
 // loops: 1
 // false loops: 0
 // check: --set N=6 --ratio 12 --output first

@@ -1,4 +1,5 @@
 // The same in 24 bits with xnor feedback (taps 24, 23, 22, 17), single flip-flops: its lock-up state is all ones.
+// The decode of zero pulses as a single one moves on: the old place falls before the new one rises.
 // check: --ratio 16777215 --high 2
 // verdict: refuted
 // ratio: proved
@@ -6,6 +7,7 @@
 // no-stuck: refuted
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: proved, held 0
 module noise_24_xnor (input clk, input rst_n, output pulse);
   reg [24:1] q;

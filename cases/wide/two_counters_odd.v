@@ -1,5 +1,6 @@
 // Two counters on opposite edges, OR-ed to an odd ratio: right from reset, and wrong from any power-up in which they
 // don't agree, for nothing ties one to the other.
+// The compares pulse as well: from 24 999 999 to 25 000 000 by way of greater numbers.
 // check: --ratio 50000001
 // verdict: refuted
 // ratio: proved
@@ -7,6 +8,7 @@
 // no-stuck: proved or open
 // recovery: refuted
 // settling: proved
+// glitch-free: refuted
 // reset: proved, held 0
 // from reset: period 100000002, high 50000001
 module two_counters_odd (input clk, input rst_n, output slow);

@@ -6,6 +6,7 @@ from __future__ import annotations
 from json import dumps
 from typing import Any
 
+from prover.arrival import Glitch
 from prover.each import Each, ValueRow
 from prover.errors import Where
 from prover.facts import LIMITS
@@ -184,6 +185,8 @@ def _property(finding: Finding, rhythm: Rhythm) -> Object:
     }
     if finding.trace is not None:
         out["trace"] = _trace(finding.trace)
+    if finding.glitch is not None:
+        out["glitch"] = _glitch(finding.glitch)
     if finding.unsettled is not None:
         out["unsettled"] = _unsettled(finding.unsettled, rhythm)
     return out
@@ -229,6 +232,30 @@ def _trace(trace: Trace) -> Object:
         "half_cycles": trace.half_cycles,
         "rests": rests,
         "rests_cut": len(trace.rests) if len(trace.rests) > MOST_RESTS else None,
+    }
+
+
+def _glitch(glitch: Glitch) -> Object:
+    """A half-cycle in which the output pulses: what arrives at it, in an order that shows this."""
+    arrivals = [
+        {
+            "name": arrival.name,
+            "micro_step": arrival.micro_step,
+            "old": arrival.old,
+            "new": arrival.new,
+            "output": arrival.level,
+            "values": dict(arrival.seen),
+        }
+        for arrival in glitch.arrivals
+    ]
+    return {
+        "kind": glitch.kind,
+        **_where(glitch.where),
+        "state": dict(glitch.state),
+        "edge": glitch.edge,
+        "output": glitch.level,
+        "arrivals": arrivals,
+        "first": glitch.first,
     }
 
 

@@ -143,6 +143,11 @@ def _lines(report: Report, finding: Finding) -> Iterator[str]:
         yield f"broken from half-cycle {finding.trace.begins} to {finding.trace.ends}"
     if finding.unsettled is not None:
         yield f"start: {words.state(report, finding.unsettled.state)}"
+    if finding.glitch is not None:
+        yield f"from: {words.fact(dict(finding.glitch.state))}, driven at {finding.glitch.where}"
+        for arrival in finding.glitch.arrivals:
+            moved = f"{arrival.name} {arrival.old}→{arrival.new}"
+            yield f"micro-step {arrival.micro_step}: {moved}: {report.ports.output}={arrival.level}"
 
 
 def _told(report: Report) -> Iterator[str]:

@@ -28,6 +28,7 @@ from urllib.parse import quote
 from properties import ORDER
 from prover import __version__
 from prover import expr as e
+from prover.arrival import Glitch
 from prover.design import Register
 from prover.errors import Where
 from prover.facts import LIMITS
@@ -275,6 +276,8 @@ class _Results:
             return pulse.where
         if finding.counterexample is not None:
             return self._register(self._launched(finding.counterexample)) or self._output()
+        if finding.glitch is not None:
+            return finding.glitch.where
         if finding.trace is not None:
             ends = [r.registers for r in finding.trace.rests if abs(r.half_cycle - finding.trace.ends) <= 1]
             return self._register(_moving(ends)) or self._output()
@@ -318,6 +321,9 @@ class _Results:
         if finding.unsettled is not None:
             when = "with no clock edge" if finding.unsettled.power_up else "at the next clock edge"
             return _code_flow("micro-steps without end", when, list(self._micro_steps(finding.unsettled)))
+        if finding.glitch is not None:
+            edge = f"the {finding.glitch.edge} edge of {self.report.ports.clock}"
+            return _code_flow(finding.says, edge, list(self._arrivals(finding.glitch)))
         return None
 
     def _steps(self, broken: Counterexample) -> Iterator[Object]:
@@ -370,6 +376,16 @@ class _Results:
             yield self._moved(f"micro-step {count}", before, values, "essential")
             before = values
         yield self._step("and again from micro-step 0", before or {}, [], "important")
+
+    def _arrivals(self, glitch: Glitch) -> Iterator[Object]:
+        before: Values = {n: v for n, v in glitch.state.items() if n in glitch.arrivals[0].seen}
+        output = self.report.ports.output
+        for count, arrival in enumerate(glitch.arrivals[:MOST_STEPS]):
+            moved = [n for n, v in arrival.seen.items() if before.get(n, v) != v]
+            said = f"{arrival.name} {arrival.old}→{arrival.new} arrives: {output}={arrival.level}"
+            importance = "essential" if count == glitch.first else "important"
+            yield self._step(said, {**arrival.seen, output: arrival.level}, moved, importance)
+            before = dict(arrival.seen)
 
     def _moved(self, when: str, before: Values | None, values: Values, importance: str) -> Object:
         """A step with what changed in it."""

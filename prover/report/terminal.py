@@ -10,6 +10,7 @@ import re
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
+from prover.arrival import Glitch
 from prover.each import values_text
 from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Report
@@ -29,6 +30,9 @@ EXTENT = figures.Extent()
 MOST_WAVES = 3
 MOST_ROWS = 20
 MOST_LOOPS = 20
+MOST_WORDS = 5
+MOST_ARRIVALS = 24
+"""What is told of a glitch: values of words beside the output, and arrivals."""
 
 COLOURS = {"PROVED": "32", "MEASURED": "32", "REFUTED": "31", "OPEN": "33", "WAIVED": "33"}
 
@@ -239,6 +243,11 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
     for finding in report.findings:
         broken = finding.trace or finding.counterexample
         if broken is None:
+            if finding.glitch is not None:
+                if shown:
+                    yield ""
+                yield from _glitch(finding.witness or report, finding.glitch)
+                shown[id(finding)] = finding.name
             continue
         if shown:
             yield ""
@@ -255,6 +264,23 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
             yield from _trace(finding.witness or report, broken, style)
         else:
             yield from _counterexample(finding.witness or report, broken, style)
+
+
+def _glitch(report: Report, glitch: Glitch) -> Iterator[str]:
+    """What arrives at the output within one half-cycle, a line each, in an order that makes it pulse."""
+    edge = f"the {glitch.edge} edge of {report.ports.clock}"
+    yield from _wrapped(f"glitch of {report.ports.output} at {edge}, driven at {glitch.where}", "")
+    yield f"  {glitch.where.text.strip()}"
+    yield from _wrapped(f"from {words.fact(dict(glitch.state))}", "  ")
+    yield ""
+    table = words.glitch_table(report, glitch, MOST_WORDS)
+    widths = [max(len(row[i]) for row in table) for i in range(len(table[0]))]
+    for row in table[: MOST_ARRIVALS + 2]:
+        cells = [cell.ljust(width) for cell, width in zip(row, widths, strict=True)]
+        yield ("  " + "  ".join(cells)).rstrip()
+    left = len(table) - MOST_ARRIVALS - 2
+    if left > 0:
+        yield f"  … {left} more"
 
 
 def _trace(report: Report, trace: Trace, style: Style) -> Iterator[str]:

@@ -4,7 +4,8 @@ The dump covers the lead-in and once round the loop (or to the end of what is br
 every register, the input clock, the output and what is held. Long stretches are elided: their first and last
 half-cycles stand at their true times, and what moves in between is x meanwhile. A comment lists what is
 elided. There is no date: the same input gives the same bytes. The format is that of IEEE 1364-2005 clause 18.
-A trace whose inputs move has two time units a half-cycle: what moves in its middle is seen there.
+A trace whose inputs move has two time units a half-cycle: what moves in its middle is seen there. A glitch has one
+for each thing that arrives at the output within the half-cycle.
 """
 
 from __future__ import annotations
@@ -15,6 +16,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from prover import __version__
+from prover.arrival import Glitch
 from prover.design import components
 from prover.findings import Counterexample, Finding, Report
 from prover.report.wave import Piece, Timeline
@@ -53,6 +55,8 @@ def render(report: Report, finding: Finding) -> str | None:
         return _orbit(report, finding.name, finding.counterexample)
     if finding.unsettled is not None:
         return _micro_steps(report, finding.name, finding.unsettled)
+    if finding.glitch is not None:
+        return _arrivals(report, finding.name, finding.glitch)
     return None
 
 
@@ -180,6 +184,27 @@ def _micro_steps(report: Report, name: str, unsettled: Unsettled) -> str:
     for time, state in enumerate(shown):
         file.put(time, (*state, system.out(state))[:count])
     return file.close(len(shown))
+
+
+def _arrivals(report: Report, name: str, glitch: Glitch) -> str:
+    """What arrives at the output within one half-cycle, one time unit each, after one in which all is at rest."""
+    design = report.ports.design
+    comment = [
+        f"{name}: the output pulses at the {glitch.edge} edge of {report.ports.clock}",
+        "one time unit is one arrival: all of them are within a half-cycle, in an order that shows the pulse",
+        f"broken from time {glitch.first + 1}",
+    ]
+    widths = {r.name: r.width for r in design.registers}
+    seen = [
+        Variable(n, widths.get(n, 1), "reg" if n in widths else "wire")
+        for n in glitch.arrivals[0].seen
+        if n != report.ports.output
+    ]
+    file = _File(design.top, [*seen, Variable(report.ports.output, 1, "wire")], comment)
+    file.put(0, [*(glitch.state.get(v.name) for v in seen), glitch.level])
+    for time, arrival in enumerate(glitch.arrivals, 1):
+        file.put(time, [*(arrival.seen[v.name] for v in seen), arrival.level])
+    return file.close(len(glitch.arrivals) + 1)
 
 
 # -- the file ----------------------------------------------------------------------------------------------

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from fractions import Fraction
+from itertools import pairwise
 
+from prover.arrival import Glitch
 from prover.each import ValueRow, row_text
 from prover.facts import number
 from prover.findings import Fact, Finding, Report
@@ -146,6 +148,25 @@ def _clock_depth(report: Report) -> Iterator[tuple[str, str]]:
 def state(report: Report, values: State) -> str:
     """A state of the report's machine: register and clock values by name."""
     return fact(dict(report.rhythm.system.describe(values)))
+
+
+def glitch_table(report: Report, glitch: Glitch, most: int) -> list[list[str]]:
+    """What arrives at the output, a row each under a row of headings: when, what, the output, and the values of the
+    words that it is made of, at most so many, those first that change."""
+    words: dict[str, None] = {}
+    before = {name: value for name, value in glitch.state.items() if name in glitch.arrivals[0].seen}
+    rows = [before, *(arrival.seen for arrival in glitch.arrivals)]
+    for then, now in pairwise(rows):
+        words |= dict.fromkeys(name for name in now if then.get(name, now[name]) != now[name])
+    words |= dict.fromkeys(rows[-1])
+    shown = [name for name in words if name != report.ports.output][:most]
+    table = [["micro-step", "arrives", report.ports.output, *shown]]
+    table.append(["", "before", str(glitch.level), *(str(before.get(name, "")) for name in shown)])
+    for arrival in glitch.arrivals:
+        moved = f"{arrival.name} {arrival.old}→{arrival.new}"
+        values = (str(arrival.seen[name]) for name in shown)
+        table.append([str(arrival.micro_step), moved, str(arrival.level), *values])
+    return table
 
 
 def of_orbit(orbit: Orbit) -> str:

@@ -16,6 +16,7 @@ from typing import Literal
 
 from prover import expr as e
 from prover.design import Edge, Force, Gate, GateKind, Register, Signal
+from prover.errors import Where
 from prover.expr import Expr
 from prover.verilog.names import Net, Report
 from prover.verilog.processes import Driver
@@ -414,6 +415,18 @@ class Drivers:
                 self.report.fail(f"{printable(name)} is {never}, so that it {reading}", part.net.offset,
                                  f"drive {printable(name)}, or connect it")  # fmt: skip
 
+    def _driven(self, part: Slice) -> Where | None:
+        """Where a slice is driven: by more than the name of another net, if that is driven at all."""
+        seen: set[str] = set()
+        while part.word is not None and part.name not in seen:
+            seen.add(part.name)
+            names = [v.name for v in e.variables([part.word])]
+            further = self.named.get(names[0]) if _is_net(part.word) else None
+            if further is None or further.driver is None:
+                break
+            part = further
+        return self.report.where(part.driver.at) if part.driver is not None else None
+
     def _signals(self, values: dict[str, Expr], to_gates: dict[str, Expr]) -> dict[str, Signal]:
         out: dict[str, Signal] = {}
         for net in self.nets:
@@ -423,8 +436,7 @@ class Drivers:
                 continue
             word = joined(parts)
             written = joined([to_gates[part.name] for part in reversed(self.slices[net])])
-            drivers = [part.driver for part in self.slices[net] if part.driver is not None]
-            driven = self.report.where(drivers[0].at) if drivers else None
+            driven = self._driven(self.slices[net][0])
             where = self.report.where(net.offset)
             size = net.type.width
             for k in range(net.count):
@@ -442,6 +454,10 @@ class Drivers:
                     driven,
                 )
         return out
+
+
+def _is_net(word: Expr) -> bool:
+    return word.op == "var" or (word.op == "extract" and word.args[0].op == "var")
 
 
 def _words(driver: Driver) -> list[Expr]:
