@@ -67,7 +67,7 @@ Follow = Callable[[State], Orbit | None]
 
 def find(ports: Ports, whole: System, scope: Scope, follow: Follow, ask: Ask) -> Glitches:
     """Whether the output may change more than once in a half-cycle, over the steps from the scope's states."""
-    return _Search(ports, Reach(whole, ports.output_value, network_of(ports)), scope, follow, ask).run()
+    return _Search(ports, Reach(whole, whole.output, network_of(ports)), scope, follow, ask).run()
 
 
 class _Search:
