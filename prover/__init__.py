@@ -13,20 +13,36 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from prover.api import check, measure, read
+    from prover.api import check, compare, measure, read
+    from prover.compared import Comparison
     from prover.errors import UserError
     from prover.findings import Finding, Report
+    from prover.pair import Pairing
     from prover.spec import Spec
 
 __version__ = "0.1.0"
-__all__ = ["Finding", "Report", "Spec", "UserError", "check", "measure", "read"]
+__all__ = [
+    "Comparison",
+    "Finding",
+    "Pairing",
+    "Report",
+    "Spec",
+    "UserError",
+    "check",
+    "compare",
+    "measure",
+    "read",
+]
 
 _HOMES = {
+    "Comparison": "prover.compared",
     "Finding": "prover.findings",
+    "Pairing": "prover.pair",
     "Report": "prover.findings",
     "Spec": "prover.spec",
     "UserError": "prover.errors",
     "check": "prover.api",
+    "compare": "prover.api",
     "measure": "prover.api",
     "read": "prover.api",
 }

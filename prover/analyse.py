@@ -49,6 +49,39 @@ SMALL = 13
 
 def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     """Everything the engines find out about the divider within the effort."""
+    rhythm, system, held, under = _begun(ports, spec, effort)
+    if rhythm.settling.depth is None:
+        return rhythm
+    goal = _goal(spec, rhythm)
+    try:
+        if held is not None and spec.ratio is not None:
+            why = held.problem or "the time ran out before reset was released"
+            rhythm = replace(rhythm, release=replace(unknown(ports, why), held=held))
+            if under is not None:
+                rhythm = replace(rhythm, release=_release(rhythm, ports, spec, system, held, under, effort))
+        rhythm = _with_power_up(rhythm, system, goal, effort)
+    except OutOfEffort as out:
+        rhythm = replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
+    return rhythm if spec.ratio is None else _with_glitches(rhythm, ports, spec, system, effort)
+
+
+def from_starts(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
+    """What the engines find out from the start states alone."""
+    return _begun(ports, spec, effort)[0]
+
+
+def from_power_up(ports: Ports, spec: Spec, goal: Goal | None, effort: Effort) -> Rhythm:
+    """What the engines find out about all power-up states, and how long these take until they show a wave."""
+    rhythm, system, _, _ = _begun(ports, spec, effort)
+    if rhythm.settling.depth is None:
+        return rhythm
+    return _with_power_up(rhythm, system, goal, effort)
+
+
+def _begun(
+    ports: Ports, spec: Spec, effort: Effort
+) -> tuple[Rhythm, System, reset.Held | None, System | None]:
+    """The rhythm from the start states; the divider as a machine; what reset leaves, and the machine under it."""
     design = ports.design
     system, settling = settle(design, ports.clock, ports.running, ports.output_value, effort)
     settling = _checked(settling, effort)
@@ -56,7 +89,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     scope, starts, held = _starts(ports, spec, system, settling, held)
     if settling.depth is None:
         why = settling.open or "the micro-steps do not settle"
-        return _nothing_known(ports, spec, system, settling, scope, why)
+        return _nothing_known(ports, spec, system, settling, scope, why), system, held, under
     won = _races_won(ports, settling, starts, effort)
     machine, starts = _machine(system, starts, effort)
     orbits = _orbits(machine, starts, effort)
@@ -77,17 +110,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
         methods={"orbit": "orbit of each start state, traced with jumps; every step checked"},
         races_won=won,
     )
-    goal = _goal(spec, rhythm)
-    try:
-        if held is not None and spec.ratio is not None:
-            why = held.problem or "the time ran out before reset was released"
-            rhythm = replace(rhythm, release=replace(unknown(ports, why), held=held))
-            if under is not None:
-                rhythm = replace(rhythm, release=_release(rhythm, ports, spec, system, held, under, effort))
-        rhythm = _with_power_up(rhythm, system, goal, effort)
-    except OutOfEffort as out:
-        rhythm = replace(rhythm, recovery=Recovery(None, False, open=str(out)), open=rhythm.open or str(out))
-    return rhythm if spec.ratio is None else _with_glitches(rhythm, ports, spec, system, effort)
+    return rhythm, system, held, under
 
 
 def _machine(system: System, starts: tuple[Start, ...], effort: Effort) -> tuple[System, tuple[Start, ...]]:

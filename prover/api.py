@@ -1,4 +1,4 @@
-"""The public interface: read sources, check a claim, measure a divider."""
+"""The public interface: read sources, check a claim, measure a divider, compare two."""
 
 from __future__ import annotations
 
@@ -6,6 +6,7 @@ import time
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from prover import analyse, facts
 from prover.design import Design
@@ -14,6 +15,10 @@ from prover.errors import UserError
 from prover.findings import Report, remarks
 from prover.ports import recognise
 from prover.spec import Spec
+
+if TYPE_CHECKING:
+    from prover.compared import Comparison
+    from prover.pair import Pairing
 
 Files = Sequence[str | Path]
 Tell = Callable[[str], None]
@@ -52,6 +57,22 @@ def measure(files: Files, spec: Spec | None = None, tell: Tell | None = None) ->
     if spec.each or spec.where:
         raise UserError("values to claim something for, and no claim", hint="give --ratio to `check`")
     return _report(files, spec, tell)
+
+
+def compare(old: Files, new: Files, pairing: Pairing | None = None, tell: Tell | None = None) -> Comparison:
+    """Whether two dividers have the same output in every half-cycle, in the sense that `pairing` asks for.
+
+    `tell` is called with a line of progress now and then. Raises UserError for unusable input or options.
+    """
+    from prover import comparison
+    from prover.pair import Pairing, read_pair
+
+    began = time.monotonic()
+    pairing = pairing or Pairing()
+    effort = Effort(pairing.effort, tell)
+    effort.say("reading the sources")
+    found = comparison.compare(read_pair(old, new, pairing), pairing, effort)
+    return replace(found, seconds=time.monotonic() - began)
 
 
 def _report(files: Files, spec: Spec, tell: Tell | None) -> Report:

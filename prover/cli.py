@@ -37,7 +37,9 @@ from prover.spec import (
 
 if TYPE_CHECKING:
     from prover.findings import Report
+    from prover.pair import Pairing
     from prover.pool import Crew
+    from prover.report.terminal import Look
     from prover.several import Outcome
 
 PATIENCE = 1.0
@@ -168,8 +170,7 @@ def _written(name: str, told: str) -> Decorator:
     return click.option(name, variable, metavar="PATH", help=told, shell_complete=completion.files)
 
 
-READING = (
-    click.argument("files", nargs=-1, required=True, metavar="FILE...", shell_complete=completion.files),
+READ_AS: tuple[Decorator, ...] = (
     click.option("--module", metavar="NAME", help="Top module.", shell_complete=completion.modules),
     click.option("--clock", metavar="PORT", help="Input clock."),
     click.option("--reset", metavar="PORT[=LEVEL]", help="Reset, and its active level (PORT=0: low)."),
@@ -188,6 +189,10 @@ READING = (
         help="Folder to look in for `include.",
         shell_complete=completion.folders,
     ),
+)
+READING: tuple[Decorator, ...] = (
+    click.argument("files", nargs=-1, required=True, metavar="FILE...", shell_complete=completion.files),
+    *READ_AS,
     click.option(
         "--start",
         type=click.Choice(["reset", "initial", "any"]),
@@ -213,11 +218,13 @@ CLAIMING = (
         shell_complete=completion.properties,
     ),
 )
-FIGURES = (
+EFFORT: Decorator = click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60].")
+JSON: Decorator = _written("--json", "Write the report as JSON.")
+FIGURES: tuple[Decorator, ...] = (
     click.option("--fin", metavar="FREQ", help="Input frequency, such as 50MHz."),
     click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
-    click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60]."),
-    _written("--json", "Write the report as JSON."),
+    EFFORT,
+    JSON,
     _written("--html", "Write the report as one page for a browser."),
 )
 TRACES = (
@@ -236,6 +243,53 @@ CERTIFYING = (_written("--certificate", "Write what the verdicts rest on, for `r
 CREWS = (
     click.option("--workers", metavar="N", help="Dividers at once, in processes [the cores]."),
     click.option("--cluster", metavar="ADDRESS", help="Judge several on this Dask cluster."),
+)
+
+
+def _sided(side: str) -> tuple[Decorator, ...]:
+    """The options of reading once more, for one of two dividers. They are told of together, not each by itself."""
+    single = {"module": "NAME", "clock": "PORT", "reset": "PORT[=LEVEL]", "output": "PORT"}
+    several = {
+        "set": ("parameters", "PARAM=VALUE"),
+        "hold": ("holds", "PORT=VALUE"),
+        "define": ("defines", "NAME=TEXT"),
+        "include": ("include", "DIR"),
+        "with": ("files", "FILE"),
+    }
+    made = [click.option(f"--{side}-{name}", metavar=shape, hidden=True) for name, shape in single.items()]
+    for name, (key, shape) in several.items():
+        made.append(
+            click.option(f"--{side}-{name}", f"{side}_{key}", multiple=True, metavar=shape, hidden=True)
+        )
+    return tuple(made)
+
+
+PAIRING: tuple[Decorator, ...] = (
+    click.argument("old", metavar="OLD", shell_complete=completion.files),
+    click.argument("new", metavar="NEW", shell_complete=completion.files),
+    click.option(
+        "--with",
+        "files",
+        multiple=True,
+        metavar="FILE",
+        help="Further file of both dividers.",
+        shell_complete=completion.files,
+    ),
+    *READ_AS,
+    click.option("--map", "maps", multiple=True, metavar="PORT=PORT", help="Input of OLD that is NEW's."),
+    click.option(
+        "--moving", multiple=True, metavar="PORT", help="Input that may change between any two edges."
+    ),
+    click.option("--start", type=click.Choice(["reset", "initial"]), help="Where it begins [reset]."),
+    click.option("--lag", metavar="K", help="Half-cycles that NEW is late, or `any` [0]."),
+    click.option(
+        "--after", type=click.Choice(["any"]), help="From all pairs of power-up states, once settled."
+    ),
+    *_sided("old"),
+    *_sided("new"),
+    EFFORT,
+    JSON,
+    _written("--vcd", "Write the waves that differ."),
 )
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
 
@@ -289,6 +343,25 @@ def measure(files: tuple[str, ...], json_path: str | None, html_path: str | None
     A PATH of - is standard output, in place of the report for people.
     """
     return _run(files, options, Targets(json_path, html_path))
+
+
+@main.command(short_help="Prove or refute that two dividers have the same output.")
+@_options(*PAIRING)
+def compare(
+    old: str, new: str, files: tuple[str, ...], json_path: str | None, vcd_path: str | None, **options: Any
+) -> Status:
+    """Prove or refute that two dividers have the same output in every half-cycle, from reset or initial values,
+    whatever the values of the inputs that both share.
+
+    \b
+    Options of reading have forms for one of them: --old-output, --new-set, ...
+    Example: subharmonic compare rtl.v gates.v --moving enable --lag any
+    Exit status: 0 equal, 1 different, 2 bad input, 3 open, 70 our fault.
+    A PATH of - is standard output, in place of the report for people.
+    """
+    of_old = (old, *files, *options.pop("old_files"))
+    of_new = (new, *files, *options.pop("new_files"))
+    return _compare(of_old, of_new, _pairing(options), Targets(json=json_path, vcd=vcd_path))
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
@@ -347,6 +420,40 @@ def _spec(options: dict[str, Any]) -> Spec:
         waivers=_waivers(options.get("waivers", ())),
         fin=read_frequency(fin) if fin is not None else None,
         source_duty=read_duty_range(duty) if duty is not None else None,
+        **limits,
+    )
+
+
+def _pairing(options: dict[str, Any]) -> Pairing:
+    """What is asked of two dividers. Raises UserError for options that mean nothing."""
+    from prover.pair import Pairing
+
+    def side(name: str) -> Spec:
+        given = {
+            key: options[f"{name}_{key}"] or options[key] for key in ("module", "clock", "reset", "output")
+        }
+        own = {key: options[f"{name}_{key}"] for key in ("parameters", "holds", "defines")}
+        defines = _pairs(options["defines"], "--define") | _pairs(own["defines"], f"--{name}-define")
+        parameters = _numbers(options["parameters"], "--set") | _numbers(own["parameters"], f"--{name}-set")
+        return Spec(
+            **given,
+            parameters=parameters,
+            defines=defines,
+            holds=_numbers(own["holds"], f"--{name}-hold"),
+            include=(*options["include"], *options[f"{name}_include"]),
+        )
+
+    lag, effort = options["lag"], options["effort"]
+    limits: dict[str, Any] = {"effort": _seconds(effort)} if effort is not None else {}
+    return Pairing(
+        old=side("old"),
+        new=side("new"),
+        holds=_numbers(options["holds"], "--hold"),
+        maps=_pairs(options["maps"], "--map"),
+        moving=tuple(dict.fromkeys(options["moving"])),
+        start=options["start"],
+        lag=0 if lag is None else None if lag == "any" else read_number(lag, "--lag"),
+        settled=options["after"] is not None,
         **limits,
     )
 
@@ -466,6 +573,34 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
     for remark in [*remarks, *without]:
         _complain(remark)
     return status_of(report)
+
+
+def _compare(old: Sequence[str], new: Sequence[str], pairing: Pairing, targets: Targets) -> Status:
+    check_targets(targets.paths(), [*old, *new])
+    with Progress(sys.stderr) as progress:
+        from prover.api import compare
+        from prover.report import compared as told
+        from prover.report import compared_json
+
+        found = compare(old, new, pairing, progress.tell)
+        waves = told.dump(found) if targets.vcd is not None else None
+        results = [] if waves is None else [Result(_wave_file(targets.vcd or ""), waves)]
+        written = [result.path for result in results]
+        if targets.json is not None:
+            results.append(Result(targets.json, compared_json.render(found)))
+        check_targets(
+            [result.path for result in results], [*found.pair.old.design.files, *found.pair.new.design.files]
+        )
+        piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
+        text = piped or told.render(found, _look(), written) + "\n"
+        write_files([result for result in results if result.path != STANDARD_OUTPUT])
+    if piped or STANDARD_OUTPUT not in targets.paths():
+        _print(text)
+    return {"proved": Status.PROVED, "refuted": Status.REFUTED, "open": Status.OPEN}[found.verdict]
+
+
+def _wave_file(path: str) -> str:
+    return str(Path(path) / "difference.vcd") if _is_folder(path) else path
 
 
 def _judged(files: Sequence[str], spec: Spec, targets: Targets, tell: Callable[[str], None]) -> Report:
@@ -652,7 +787,13 @@ def _benches(report: Report, folder: str | None, prefix: str = "") -> tuple[list
 def _told(report: Report, traces: Sequence[str]) -> str:
     from prover.report import terminal
 
-    return terminal.render(report, terminal.Look(_speaks_unicode(), _has_colour()), traces) + "\n"
+    return terminal.render(report, _look(), traces) + "\n"
+
+
+def _look() -> Look:
+    from prover.report.terminal import Look
+
+    return Look(_speaks_unicode(), _has_colour())
 
 
 def _print(text: str) -> None:

@@ -32,6 +32,12 @@ common case, never need the solver."""
 BLOCK = 128
 """Items up to which a recurring block is looked for."""
 
+PACE = 64
+"""Cycles followed one by one after which it is looked for whether several of them together go on with one stride."""
+
+GAIT = 12
+"""Cycles that are looked at together for that: a fast toggle beside a counter takes two."""
+
 
 Places = dict[State, tuple[Path, int]]
 """States on loops found before: the loop, and the index of the item that begins with the state."""
@@ -82,6 +88,7 @@ class _Search:
         self.jumps: dict[Shape, list[int]] = {}
         self.loop_from = 0
         self.short: dict[State, int] = {}
+        self.stumbles = 0
 
     def follow(self, state: State) -> None:
         run, choices = self.system.run, [0] * len(self.system.choices)
@@ -121,7 +128,54 @@ class _Search:
                     continue
             self.items.append(cycle)
             state = after
+            if count % (PACE << self.stumbles) == 0:
+                together = self._together()
+                if together is not None:
+                    repeats, previous = 0, None
+                    state = self._append_jump(together)
         self.loop_from = self.seen[state]
+
+    def _together(self) -> Repeat | None:
+        """The last few cycles repeated, if these together have gone on with one stride and surely do so for long;
+        they are taken off the items."""
+        for size in range(2, GAIT + 1):
+            block = self._gait(size)
+            if block is None:
+                continue
+            jump = self._extended(block)
+            if jump.times >= 8:
+                self._forget(len(self.items) - size)
+                self.seen[path.first_state((jump,))] = len(self.items)
+                return jump
+            self.stumbles = min(self.stumbles + 1, 8)
+        return None
+
+    def _gait(self, size: int) -> Repeat | None:
+        """The last `size` cycles, if each of the last three times as many is the one so far before it, moved by one
+        vector."""
+        last = self.items[-4 * size :]
+        if len(last) < 4 * size or any(item.times != 1 for item in last):
+            return None
+        stride: State | None = None
+        for before, after in zip(last, last[size:], strict=False):
+            a, b = path.first_state((before,)), path.first_state((after,))
+            moved = tuple((y - x) & ((1 << w) - 1) for x, y, w in zip(a, b, self.widths, strict=True))
+            if (stride is not None and moved != stride) or _levels(before) != _levels(after):
+                return None
+            stride = moved
+        if stride is None or not any(stride):
+            return None
+        return Repeat(1, stride, tuple(path.joined(last[-size:])))
+
+    def _forget(self, begins: int) -> None:
+        """Take items off from one on."""
+        for state, index in list(self.seen.items()):
+            if index >= begins:
+                del self.seen[state]
+        for known in self.jumps.values():
+            while known and known[-1] >= begins:
+                known.pop()
+        del self.items[begins:]
 
     def _extended(self, block: Repeat) -> Repeat:
         """The block repeated as often as it surely holds."""
@@ -143,14 +197,7 @@ class _Search:
             if folded.times < 2:
                 break
             # The last block goes into the repeat; what stood there is forgotten.
-            begins = places[-2] + 1
-            for state, index in list(self.seen.items()):
-                if index >= begins:
-                    del self.seen[state]
-            for known in self.jumps.values():
-                while known and known[-1] >= begins:
-                    known.pop()
-            del self.items[begins:]
+            self._forget(places[-2] + 1)
             self.seen[path.first_state((folded,))] = len(self.items)
             jump = folded
         return path.moved(path.first_state((jump,)), jump.stride, jump.times, self.widths)
@@ -173,6 +220,10 @@ class _Search:
         if strides[0] != strides[1] or not any(strides[0]):
             return None
         return Repeat(1, strides[0], tuple(path.joined(blocks[-1])))
+
+
+def _levels(cycle: Repeat) -> list[int | None]:
+    return [item.steady for item in cycle.body]
 
 
 def _shape(item: Item) -> Shape:

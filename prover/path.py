@@ -204,6 +204,34 @@ def place(path: Sequence[Item], at: int, widths: Sequence[int]) -> Place:
         items = item.body
 
 
+def onward(path: Sequence[Item], at: int, widths: Sequence[int]) -> Path:
+    """What is left of a path `at` half-cycles after its start."""
+    for index, item in enumerate(path):
+        if at >= item.length:
+            at -= item.length
+            continue
+        if at == 0 or isinstance(item, Beat):
+            return tuple(path[index:])
+        rounds, at = divmod(at, item.length // item.times)
+        begun = _shifted(item.body, item.stride, rounds, widths)
+        left: list[Item] = [*onward(begun, at, widths)]
+        if rounds + 1 < item.times:
+            rest = _shifted(item.body, item.stride, rounds + 1, widths)
+            left.append(Repeat(item.times - rounds - 1, item.stride, rest))
+        return (*left, *path[index + 1 :])
+    return ()
+
+
+def _shifted(path: Sequence[Item], stride: State, times: int, widths: Sequence[int]) -> Path:
+    """The path with a multiple of a vector added to every state."""
+    return tuple(
+        Beat(moved(item.state, stride, times, widths), item.level)
+        if isinstance(item, Beat)
+        else Repeat(item.times, item.stride, _shifted(item.body, stride, times, widths))
+        for item in path
+    )
+
+
 def first_state(path: Sequence[Item]) -> State:
     """The state in the path's first half-cycle."""
     item = path[0]

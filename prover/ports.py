@@ -8,7 +8,7 @@ is an error that lists the candidates, and an input that is left over is an erro
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Literal
 
@@ -34,7 +34,8 @@ class Reset:
 class Ports:
     """The roles of a design's ports, and the values at which the other inputs are held.
 
-    `output_written` is the output over the nets that gates drive (see Design), `output_where` where it is driven."""
+    `output_written` is the output over the nets that gates drive (see Design), `output_where` where it is driven.
+    `free` are inputs that the design depends on and that are neither: only `recognise_open` leaves any."""
 
     design: Design
     clock: str
@@ -44,6 +45,7 @@ class Ports:
     holds: dict[str, int]
     output_written: Expr
     output_where: Where
+    free: tuple[str, ...] = ()
 
     @property
     def running(self) -> Inputs:
@@ -67,25 +69,45 @@ def recognise(design: Design, spec: Spec) -> Ports:
 
     Raises UserError where a name is wrong, a choice isn't plain, or an input is left over.
     """
+    ports = recognise_open(design, spec)
+    for name in ports.free:
+        raise UserError(
+            f"input {name} is neither clock, reset nor held",
+            _where(design, name),
+            hint=f"give the value it has while the divider runs, such as --hold {name}=1",
+        )
+    return ports
+
+
+def recognise_open(design: Design, spec: Spec, moving: Collection[str] = ()) -> Ports:
+    """The same, with inputs left over in `free` instead of an error. Those that are `moving` are no reset."""
     holds = _holds(design, spec)
     clock = _clock(design, spec, holds)
     design = _with_holds(design, holds)
-    reset = _reset(design, spec, clock, holds)
+    reset = _reset(design, spec, clock, holds | dict.fromkeys(moving, 0))
     output, signal, place = _output(design, spec)
     value, written = _bit(signal.value, place), _bit(signal.written or signal.value, place)
     used = _used_inputs(design, value)
     taken = {clock, *holds} | ({reset.port} if reset else set())
     left = [name for name in design.inputs if name not in taken]
-    for name in left:
-        if name in used:
-            raise UserError(
-                f"input {name} is neither clock, reset nor held",
-                _where(design, name),
-                hint=f"give the value it has while the divider runs, such as --hold {name}=1",
-            )
-        # An input that nothing depends on may have any value.
-        holds[name] = 0
-    return Ports(design, clock, reset, output, value, holds, written, signal.driven or signal.where)
+    # An input that nothing depends on may have any value.
+    holds |= {name: 0 for name in left if name not in used}
+    free = tuple(name for name in left if name in used)
+    return Ports(design, clock, reset, output, value, holds, written, signal.driven or signal.where, free)
+
+
+def with_holds(ports: Ports, values: Mapping[str, int]) -> Ports:
+    """The ports with free inputs held at these values."""
+    widths = ports.design.inputs
+    constants = {name: e.const(value, widths[name]) for name, value in values.items()}
+    return replace(
+        ports,
+        design=_with_holds(ports.design, values),
+        output_value=e.substitute([ports.output_value], constants)[0],
+        output_written=e.substitute([ports.output_written], constants)[0],
+        holds=ports.holds | dict(values),
+        free=tuple(name for name in ports.free if name not in values),
+    )
 
 
 def _with_holds(design: Design, holds: Mapping[str, int]) -> Design:

@@ -117,11 +117,11 @@ def settle(
         return model
 
     try:
-        rest_chain, at_rest, _ = _bound(design, before, before, e.TRUE, none, edge_wins)
+        rest_chain, at_rest, _ = bound(design, before, before, e.TRUE, none, edge_wins)
         if at_rest is None:
             unsettled = _witness(design, clock, rest_chain, before, before, e.TRUE, none)
         else:
-            chain, depth, by_form = _bound(design, before, now, assumed, none, edge_wins)
+            chain, depth, by_form = bound(design, before, now, assumed, none, edge_wins)
             limit = len(chain)
             if depth is None:
                 unsettled = _witness(design, clock, chain, before, now, assumed, none)
@@ -140,8 +140,8 @@ def settle(
     return system, found
 
 
-def _bound(
-    design: Design, before: Moment, now: Moment, assumed: Expr, ask: Ask, edge_wins: bool
+def bound(
+    design: Design, before: Moment, now: Moment, assumed: Expr, ask: Ask, edge_wins: bool = False
 ) -> tuple[list[Moment], int | None, bool]:
     """The chain, the number of micro-steps that suffice under the assumption (None: some state goes on
     beyond what is worth unrolling), and whether the form of the expressions alone shows it."""

@@ -1,7 +1,7 @@
 """The comment block at the head of a case: what to ask of it, and what has to come out.
 
 Prose first; then lines of the form `// key: value`. A `check` line opens a group: the options of one run of the
-command, and under it what that run has to say. Times are half-cycles. A line that is none of the known kinds is an
+command, and under it what that run has to say; so does a `compare` line, after those. Times are half-cycles. A line that is none of the known kinds is an
 error, so that nothing that a case states goes unread.
 """
 
@@ -62,6 +62,20 @@ class Group:
     notes: list[tuple[int, str]] = field(default_factory=list)
 
 
+@dataclass
+class PairGroup:
+    """One run of `compare`: the file is OLD, `other` is NEW, a path below `cases`. `differs` is the half-cycle of the
+    old output, `settled` the half-cycles after which dividers that powered up apart agree."""
+
+    other: str
+    options: list[str]
+    verdict: str = ""
+    lag: int | None = None
+    differs: int | None = None
+    settled: int | None = None
+    obligation: bool = False
+
+
 @dataclass(frozen=True)
 class Case:
     """A file with its groups. `delayed` are the gates and nets that the event simulator gives one unit of delay."""
@@ -70,6 +84,7 @@ class Case:
     prose: str
     delayed: tuple[str, ...]
     groups: tuple[Group, ...]
+    pairs: tuple[PairGroup, ...] = ()
 
     @property
     def name(self) -> str:
@@ -82,6 +97,7 @@ def read_case(path: Path) -> Case:
     prose: list[str] = []
     delayed: list[str] = []
     groups: list[Group] = []
+    pairs: list[PairGroup] = []
     for number, line in enumerate(path.read_text(encoding="utf-8").splitlines(), 1):
         if not line.startswith("//"):
             break
@@ -92,14 +108,22 @@ def read_case(path: Path) -> Case:
                 delayed += value.split()
             elif key == "check":
                 groups.append(Group(shlex.split(value)))
+            elif key == "compare":
+                other, *options = shlex.split(value)
+                pairs.append(PairGroup(other, options))
+            elif pairs:
+                _state_of_pair(pairs[-1], key, value if colon else "")
             elif groups:
                 _state(groups[-1], key, value if colon else "")
             else:
                 prose.append(text)
         except (ValueError, KeyError) as fault:
             raise FormatError(f"{path}:{number}: {line!r} is not understood") from fault
-    if not groups:
-        raise FormatError(f"{path}: no check line")
+    if not groups and not pairs:
+        raise FormatError(f"{path}: neither a check line nor a compare line")
+    for pair in pairs:
+        if pair.verdict not in VERDICTS or not (CASES / pair.other).is_file():
+            raise FormatError(f"{path}: compare {pair.other}: no verdict, or no such file")
     for group in groups:
         if len(group.properties) > 1:
             # Most outputs are registers; a line of its own has to be given only where it is otherwise.
@@ -111,7 +135,19 @@ def read_case(path: Path) -> Case:
             raise FormatError(
                 f"{path}: check {shlex.join(group.options)}: a verdict or an error, one of the two"
             )
-    return Case(path, " ".join(prose), tuple(delayed), tuple(groups))
+    return Case(path, " ".join(prose), tuple(delayed), tuple(groups), tuple(pairs))
+
+
+def _state_of_pair(pair: PairGroup, key: str, value: str) -> None:
+    """The same for a pair."""
+    if key == "verdict":
+        pair.verdict = value
+    elif key == "obligation":
+        pair.obligation = {"yes": True}[value]
+    elif key in ("lag", "differs", "settled"):
+        setattr(pair, key, int(value))
+    else:
+        raise KeyError(key)
 
 
 def _state(group: Group, key: str, value: str) -> None:

@@ -11,6 +11,7 @@ from prover.each import Each, ValueRow
 from prover.errors import Where
 from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Obligation, Report
+from prover.ports import Ports
 from prover.rhythm import Loop, Orbit, Rhythm, Start
 from prover.settling import Unsettled
 from prover.system import State
@@ -42,7 +43,7 @@ def as_object(report: Report) -> Object:
     return {
         "schema": SCHEMA,
         "verdict": verdict(report),
-        "design": _design(report),
+        "design": of_ports(report.ports),
         "spec": _spec(report),
         "measured": _measured(report.rhythm),
         "properties": [_property(f, (f.witness or report).rhythm) for f in report.findings],
@@ -60,9 +61,9 @@ def verdict(report: Report) -> str | None:
     return report.verdict if report.findings else None
 
 
-def _design(report: Report) -> Object:
-    ports, design = report.ports, report.ports.design
-    reset = ports.reset
+def of_ports(ports: Ports) -> Object:
+    """A divider that was read, with the roles of its ports."""
+    design, reset = ports.design, ports.reset
     return {
         "top": design.top,
         "files": list(design.files),
@@ -179,12 +180,12 @@ def _property(finding: Finding, rhythm: Rhythm) -> Object:
         "method": finding.method,
         "bound": finding.bound,
         "facts": dict(finding.facts),
-        "obligations": [_obligation(obligation) for obligation in finding.obligations],
+        "obligations": [of_obligation(obligation) for obligation in finding.obligations],
         "counterexample": _counterexample(finding.counterexample, rhythm),
         "waived": finding.waived,
     }
     if finding.trace is not None:
-        out["trace"] = _trace(finding.trace)
+        out["trace"] = of_trace(finding.trace)
     if finding.glitch is not None:
         out["glitch"] = _glitch(finding.glitch)
     if finding.unsettled is not None:
@@ -192,7 +193,8 @@ def _property(finding: Finding, rhythm: Rhythm) -> Object:
     return out
 
 
-def _obligation(obligation: Obligation) -> Object:
+def of_obligation(obligation: Obligation) -> Object:
+    """A timing obligation, with its place in the sources."""
     return {"text": obligation.text, "register": obligation.register, **_where(obligation.where)}
 
 
@@ -212,7 +214,7 @@ def _counterexample(broken: Counterexample | None, rhythm: Rhythm) -> Object | N
     }
 
 
-def _trace(trace: Trace) -> Object:
+def of_trace(trace: Trace) -> Object:
     """A run whose inputs move: the machine at rest after each edge, and after each move between two edges."""
     rests = [
         {

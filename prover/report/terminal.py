@@ -66,7 +66,12 @@ def render(report: Report, look: Look = Look(), traces: Sequence[str] = ()) -> s
         body = list(section)
         if body:
             lines += [*body, ""]
-    text = harmless("\n".join(lines[:-1]))
+    return finished(lines[:-1], look)
+
+
+def finished(lines: Iterable[str], look: Look) -> str:
+    """The lines as text for a terminal that looks so."""
+    text = harmless("\n".join(lines))
     if not look.unicode:
         text = text.translate(ASCII_TEXT)
     return _coloured(text) if look.colour else text
@@ -104,7 +109,7 @@ def _header(report: Report) -> Iterator[str]:
 
 def _claim(report: Report) -> Iterator[str]:
     if report.spec.ratio is not None:
-        yield from _wrapped(f"claim  {words.claim(report)}", "")
+        yield from wrapped(f"claim  {words.claim(report)}", "")
 
 
 # -- what was found ----------------------------------------------------------------------------------------
@@ -119,22 +124,22 @@ def _verdicts(report: Report) -> Iterator[str]:
 def _verdict(finding: Finding, widest: int) -> Iterator[str]:
     indent = " " * (10 + widest + 2)
     head = f"{finding.verdict.upper():8}  {finding.name:{widest}}  "
-    for line in _wrapped(finding.says, indent):
+    for line in wrapped(finding.says, indent):
         yield head + line.lstrip() if head else line
         head = ""
     if finding.waived is not None:
         yield f"{indent}WAIVED: {finding.waived}"
     if finding.verdict != "proved":
-        yield from _wrapped(f"claimed: {finding.claim}", indent)
+        yield from wrapped(f"claimed: {finding.claim}", indent)
     if finding.bound and finding.verdict == "open":
         yield f"{indent}{finding.bound}"
     if finding.method:
         yield f"{indent}method: {finding.method}"
     for obligation in finding.obligations:
-        yield from _wrapped(f"obligation: {obligation.text}", indent)
+        yield from wrapped(f"obligation: {obligation.text}", indent)
         yield f"{indent}  {obligation.where}: {obligation.where.text.strip()}"
     for name, told in words.facts_of(finding):
-        yield from _wrapped(f"{name}: {told}", indent)
+        yield from wrapped(f"{name}: {told}", indent)
 
 
 def _values(report: Report) -> Iterator[str]:
@@ -147,14 +152,14 @@ def _values(report: Report) -> Iterator[str]:
     widths = [max(len(line[i]) for line in told) for i in range(3)]
     for verdict, values, periods, rest in told:
         text = f"{verdict:{widths[0]}}  {values:{widths[1]}}  {periods:{widths[2]}}  {rest}"
-        yield from _wrapped(text.rstrip(), "")
+        yield from wrapped(text.rstrip(), "")
     if len(rows) > MOST_ROWS:
         yield f"… and {len(rows) - MOST_ROWS} more ranges of values"
     yield ""
     yield f"at {values_text(each.shown)}"
 
 
-def _wrapped(text: str, indent: str) -> Iterator[str]:
+def wrapped(text: str, indent: str) -> Iterator[str]:
     """The text in lines of the report's width, later lines two further in."""
     line = indent
     for word in text.split(" "):
@@ -171,8 +176,8 @@ def _measured(report: Report, style: Style) -> Iterator[str]:
     for count, wave in enumerate(waves):
         if count:
             yield ""
-        yield from _wrapped(f"measured  {wave.text}", "")
-        yield from _wrapped("from: " + ", ".join(wave.causes), "          ")
+        yield from wrapped(f"measured  {wave.text}", "")
+        yield from wrapped("from: " + ", ".join(wave.causes), "          ")
         yield from _steady_wave(report, wave.orbit, style)
     unsettled = rhythm.settling.unsettled
     if unsettled is not None:
@@ -186,10 +191,11 @@ def _steady_wave(report: Report, orbit: Orbit, style: Style) -> Iterator[str]:
     made = figures.steady(report, orbit, EXTENT)
     if made is not None:
         yield ""
-        yield from _indented(draw(made, style, WIDTH - 2))
+        yield from indented(draw(made, style, WIDTH - 2))
 
 
-def _indented(lines: Iterable[str]) -> Iterator[str]:
+def indented(lines: Iterable[str]) -> Iterator[str]:
+    """The lines of a drawing as they stand in the report."""
     for line in lines:
         yield "  " + line if line else ""
 
@@ -232,7 +238,7 @@ def _loop_row(report: Report, loop: Loop) -> tuple[str, str, str, str, str]:
 
 def _facts(report: Report) -> Iterator[str]:
     for name, told in words.facts(report):
-        yield from _wrapped(f"{name} {told}", "")
+        yield from wrapped(f"{name} {told}", "")
 
 
 # -- counterexamples ---------------------------------------------------------------------------------------
@@ -253,7 +259,7 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
             yield ""
         at = finding.facts.get("at") if finding.witness else None
         where = f", at {values_text(at)}" if isinstance(at, dict) else ""
-        yield from _wrapped(f"counterexample to {finding.name}{where}: {broken.text}", "")
+        yield from wrapped(f"counterexample to {finding.name}{where}: {broken.text}", "")
         start = broken.orbit.start if isinstance(broken, Counterexample) else id(broken.rests)
         key = (id(finding.witness), start, broken.begins, broken.ends)
         if key in shown:
@@ -269,9 +275,9 @@ def _counterexamples(report: Report, style: Style) -> Iterator[str]:
 def _glitch(report: Report, glitch: Glitch) -> Iterator[str]:
     """What arrives at the output within one half-cycle, a line each, in an order that makes it pulse."""
     edge = f"the {glitch.edge} edge of {report.ports.clock}"
-    yield from _wrapped(f"glitch of {report.ports.output} at {edge}, driven at {glitch.where}", "")
+    yield from wrapped(f"glitch of {report.ports.output} at {edge}, driven at {glitch.where}", "")
     yield f"  {glitch.where.text.strip()}"
-    yield from _wrapped(f"from {words.fact(dict(glitch.state))}", "  ")
+    yield from wrapped(f"from {words.fact(dict(glitch.state))}", "  ")
     yield ""
     table = words.glitch_table(report, glitch, MOST_WORDS)
     widths = [max(len(row[i]) for row in table) for i in range(len(table[0]))]
@@ -285,28 +291,29 @@ def _glitch(report: Report, glitch: Glitch) -> Iterator[str]:
 
 def _trace(report: Report, trace: Trace, style: Style) -> Iterator[str]:
     """A run whose inputs move: its start, and the wave with those inputs."""
-    yield from _wrapped(f"start: {trace.cause}", "  ")
-    yield from _wrapped(words.fact({**trace.rests[0].inputs, **trace.rests[0].registers}), "    ")
+    yield from wrapped(f"start: {trace.cause}", "  ")
+    yield from wrapped(words.fact({**trace.rests[0].inputs, **trace.rests[0].registers}), "    ")
     made, left = drawing(report.ports.design, report.ports.clock, trace, EXTENT)
     yield ""
-    yield from _indented(draw(made, style, WIDTH - 2))
-    yield from _not_drawn(left)
+    yield from indented(draw(made, style, WIDTH - 2))
+    yield from not_drawn(left)
 
 
 def _counterexample(report: Report, broken: Counterexample, style: Style) -> Iterator[str]:
     orbit = broken.orbit
     timeline = Timeline(orbit)
     yield f"  start: {broken.cause}"
-    yield from _wrapped(words.state(report, orbit.start), "    ")
+    yield from wrapped(words.state(report, orbit.start), "    ")
     if timeline.loop is not None:
         yield f"  a loop of {timeline.loop} half-cycles, entered at half-cycle {timeline.lead}"
     made, left = figures.broken(report, broken, EXTENT)
     yield ""
-    yield from _indented(draw(made, style, WIDTH - 2))
-    yield from _not_drawn(left)
+    yield from indented(draw(made, style, WIDTH - 2))
+    yield from not_drawn(left)
 
 
-def _not_drawn(left: int) -> Iterator[str]:
+def not_drawn(left: int) -> Iterator[str]:
+    """How many registers a drawing leaves out."""
     if left:
         yield f"  {left} more register{'s' * (left != 1)} not drawn"
 
@@ -314,9 +321,9 @@ def _not_drawn(left: int) -> Iterator[str]:
 def _micro_steps(rhythm: Rhythm, unsettled: Unsettled) -> Iterator[str]:
     """The round of micro-steps that never ends, a line each."""
     when = "with no clock edge" if unsettled.power_up else "at the next clock edge"
-    yield from _wrapped(f"from {words.fact(dict(rhythm.system.describe(unsettled.state)))}, {when}", "  ")
+    yield from wrapped(f"from {words.fact(dict(rhythm.system.describe(unsettled.state)))}, {when}", "  ")
     for count, state in enumerate(unsettled.cycle[:MOST_LOOPS]):
-        yield from _wrapped(f"micro-step {count}: {words.fact(dict(rhythm.system.describe(state)))}", "    ")
+        yield from wrapped(f"micro-step {count}: {words.fact(dict(rhythm.system.describe(state)))}", "    ")
     left = len(unsettled.cycle) - MOST_LOOPS
     yield f"    … {left} more, and again from micro-step 0" if left > 0 else "    and again from micro-step 0"
 
@@ -326,11 +333,11 @@ def _micro_steps(rhythm: Rhythm, unsettled: Unsettled) -> Iterator[str]:
 
 def _small_print(report: Report, traces: Sequence[str]) -> Iterator[str]:
     for note in report.notes:
-        yield from _wrapped(f"note: {note}", "")
+        yield from wrapped(f"note: {note}", "")
     for trace in traces:
         yield f"trace written to {trace}"
-    yield from _wrapped("assumed: " + "; ".join(report.assumptions), "")
-    yield from _wrapped(LIMITS, "")
+    yield from wrapped("assumed: " + "; ".join(report.assumptions), "")
+    yield from wrapped(LIMITS, "")
 
 
 def _last(report: Report) -> Iterator[str]:

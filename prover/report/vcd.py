@@ -17,7 +17,7 @@ from typing import Any
 
 from prover import __version__
 from prover.arrival import Glitch
-from prover.design import components
+from prover.design import Design, components
 from prover.findings import Counterexample, Finding, Report
 from prover.report.wave import Piece, Timeline
 from prover.settling import Unsettled
@@ -50,7 +50,7 @@ def render(report: Report, finding: Finding) -> str | None:
     """The finding's trace as a dump; None if it has none."""
     report = finding.witness or report
     if finding.trace is not None:
-        return _moves(report, finding.name, finding.trace)
+        return moves(report.ports.design, report.ports.clock, finding.name, finding.trace)
     if finding.counterexample is not None:
         return _orbit(report, finding.name, finding.counterexample)
     if finding.unsettled is not None:
@@ -60,9 +60,8 @@ def render(report: Report, finding: Finding) -> str | None:
     return None
 
 
-def _moves(report: Report, name: str, trace: Trace) -> str:
+def moves(design: Design, clock: str, name: str, trace: Trace) -> str:
     """A run whose inputs move, two time units a half-cycle."""
-    design, clock = report.ports.design, report.ports.clock
     comment = [
         f"{name}: {trace.text}",
         f"start: {trace.cause}; two time units are one half-cycle of {clock}, the second after the inputs moved",
@@ -72,7 +71,7 @@ def _moves(report: Report, name: str, trace: Trace) -> str:
     widths = {r.name: r.width for r in design.registers} | {clock: 1}
     states = [Variable(n, widths[n], "wire" if n == clock else "reg") for n in trace.rests[0].registers]
     seen = [Variable(n, 1, "wire") for n in trace.rests[0].outputs if n not in widths]
-    file = _File(design.top, [*inputs, *states, *seen], comment)
+    file = File(design.top, [*inputs, *states, *seen], comment)
     for rest in trace.rests:
         named = {**rest.outputs, **rest.inputs, **rest.registers}
         time = 2 * rest.half_cycle + rest.moved
@@ -90,7 +89,7 @@ def _orbit(report: Report, name: str, broken: Counterexample) -> str:
         f"{name}: {broken.text}",
         f"start: {broken.cause}; one time unit is one half-cycle of {report.ports.clock}",
         f"broken from time {broken.begins} to {broken.ends}; loop: {loop}",
-        *_elided([piece for piece in pieces if piece.folded]),
+        *elided([piece for piece in pieces if piece.folded]),
     ]
     file = _file(report, comment)
     count = len(report.rhythm.system.variables) + _output_apart(report)
@@ -103,7 +102,8 @@ def _orbit(report: Report, name: str, broken: Counterexample) -> str:
     return file.close(ends)
 
 
-def _elided(folded: Sequence[Piece]) -> Iterator[str]:
+def elided(folded: Sequence[Piece]) -> Iterator[str]:
+    """What a dump's comment tells of the ranges that it leaves out."""
     for piece in folded[:MOST_LISTED]:
         yield f"elided: {piece.length} half-cycles, time {piece.begins} to {piece.ends}; what moves is x"
     if len(folded) > MOST_LISTED:
@@ -215,7 +215,7 @@ def _output_apart(report: Report) -> bool:
     return report.ports.output not in report.rhythm.system.names
 
 
-def _file(report: Report, comment: Sequence[str]) -> _File:
+def _file(report: Report, comment: Sequence[str]) -> File:
     """A dump of the registers, the clock, the output where it stands apart, and every input that is held."""
     system, ports = report.rhythm.system, report.ports
     kinds = ["reg"] * (len(system.variables) - 1) + ["wire"]
@@ -223,7 +223,7 @@ def _file(report: Report, comment: Sequence[str]) -> _File:
     if _output_apart(report):
         moving.append(Variable(ports.output, 1, "wire"))
     held = [(Variable(n, ports.design.inputs[n], "wire"), value) for n, value in ports.running.values]
-    return _File(ports.design.top, moving, comment, held)
+    return File(ports.design.top, moving, comment, held)
 
 
 @dataclass(frozen=True, slots=True)
@@ -235,7 +235,7 @@ class Variable:
     kind: str
 
 
-class _File:
+class File:
     """A dump being written: variables that `put` gives values, and others that are held at one."""
 
     def __init__(

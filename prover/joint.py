@@ -1,0 +1,379 @@
+"""Two dividers side by side as one transition system, and the states that it starts from.
+
+A state is the machine at rest, with the values at which the shared inputs are. A step is an edge of the clock, after
+which the outputs have to agree, and then, where inputs move, their change in the middle of the half-cycle, after
+which they have to agree again. Where one output is to be late, its values wait in a queue that is part of the state.
+
+All of it is derived from the two designs. Questions about the micro-steps are asked of `ask`, so that a certificate
+can answer them without a solver.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+from prover import expr as e
+from prover.design import Design
+from prover.effort import Effort, OutOfEffort
+from prover.expr import Expr
+from prover.pair import Pair, side_by_side
+from prover.ports import Ports
+from prover.settling import Ask, Settling, bound, settle
+from prover.solve import Model, constant, find
+from prover.system import Inputs, Moment, System, settled_when
+
+LONGEST_LAG = 64
+"""Half-cycles that an output is made to wait in a queue."""
+
+Values = dict[str, Expr]
+
+
+@dataclass(frozen=True, slots=True)
+class Start:
+    """States to start from, as expressions over what is not known of them: registers that nothing forces, and the
+    inputs while reset was held.
+
+    rest       every variable when the comparison begins
+    first      every variable once the inputs have moved for the first time; the same where none moves
+    differs    one bit over the same: the outputs differ at the rest
+    cause      how the states come about
+    """
+
+    rest: tuple[Expr, ...]
+    first: tuple[Expr, ...]
+    differs: Expr
+    cause: str
+
+
+@dataclass(frozen=True)
+class Joint:
+    """Two dividers side by side.
+
+    both       their ports as one design
+    outputs    of the old and of the new one, one bit each
+    system     the step of all registers at an edge, with inputs free
+    settling   what is known of its micro-steps and races
+    limit      micro-steps within which everything settles
+    variables  registers of both, clock, shared inputs, and the queue, with their widths
+    moves      the variables that stand for the inputs after they moved
+    step       every variable one half-cycle later, over variables, moves and choices
+    differs    one bit over the variables: the outputs differ at rest
+    differs_at_edge  the same at the rest after the edge that follows, before inputs move
+    starts     where it starts from
+    answers    the answers to all questions asked on the way
+    goals      what must not be satisfiable for the micro-steps to suffice
+    """
+
+    both: Ports
+    outputs: tuple[Expr, Expr]
+    system: System
+    settling: Settling
+    limit: int
+    variables: tuple[tuple[str, int], ...]
+    moves: tuple[tuple[str, int], ...]
+    step: tuple[Expr, ...]
+    differs: Expr
+    differs_at_edge: Expr
+    starts: tuple[Start, ...]
+    answers: tuple[Model | None, ...]
+    goals: tuple[Expr, ...]
+
+    @cached_property
+    def names(self) -> list[str]:
+        return [name for name, _ in self.variables]
+
+    @property
+    def bits(self) -> int:
+        """Bits of a state."""
+        return sum(width for _, width in self.variables)
+
+    @cached_property
+    def choices(self) -> list[tuple[str, int]]:
+        """The values that x stands for in a step, with their widths."""
+        found = e.variables([*self.step, self.differs, self.differs_at_edge])
+        return [(v.name, v.width) for v in found if v.name.startswith("?")]
+
+
+def build(pair: Pair, lag: int, effort: Effort, ask: Ask | None = None) -> Joint:
+    """Both dividers as one, the new output `lag` half-cycles late. Raises OutOfEffort, with the reason, where the
+    micro-steps don't settle or can't be bounded, or where the lag is too long for a queue."""
+    if abs(lag) > LONGEST_LAG:
+        raise OutOfEffort(
+            f"a lag of more than {LONGEST_LAG} half-cycles is followed only where inputs have few values"
+        )
+    return _Builder(pair, effort, ask).build(lag)
+
+
+def moved(name: str) -> str:
+    """What stands for an input after it has moved. No name of a design has a space in it."""
+    return f"{name} moved"
+
+
+def renamed(values: Sequence[Expr], label: str) -> list[Expr]:
+    """The expressions with choices named anew: x is another value every time."""
+    fresh = {v.name: e.var(f"{v.name}/{label}", v.width) for v in e.variables(values) if v.name[0] == "?"}
+    return e.substitute(values, fresh) if fresh else list(values)
+
+
+class _Builder:
+    """Derives the transition system; keeps the questions and their answers."""
+
+    def __init__(self, pair: Pair, effort: Effort, ask: Ask | None) -> None:
+        self.pair = pair
+        self.effort = effort
+        self.asked = ask
+        self.answers: list[Model | None] = []
+        self.goals: list[Expr] = []
+        self.both = side_by_side(pair)
+        self.design: Design = self.both.design
+        self.clock = self.both.clock
+        self.names = [r.name for r in self.design.registers]
+        self.moving = [each.name for each in pair.inputs if each.moving]
+        self.inputs = {each.name: e.var(each.name, each.width) for each in pair.inputs}
+        self.limit = 1
+
+    def build(self, lag: int) -> Joint:
+        self.effort.say("setting both dividers side by side")
+        known = self.both.running.moment(self.design.inputs)
+        system, settling = self._settled(self.both.running, "", races=True)
+        edge = dict(zip(system.names, system.step, strict=True))
+        move = self._move(known)
+        values = [signal.value for signal in self.design.signals.values()]
+        out_old, out_new = e.substitute(values, known)
+        queue = _Queue(lag, bool(self.moving))
+        after_edge = {**edge, **self.inputs}
+        then = dict(zip(self.names, _applied([move[n] for n in self.names], after_edge, "move"), strict=True))
+        step: Values = {**then, self.clock: edge[self.clock]}
+        step |= {n: e.var(moved(n), x.width) if n in self.moving else x for n, x in self.inputs.items()}
+        at_edge = e.substitute([out_old, out_new], after_edge)
+        step |= queue.step((out_old, out_new), (at_edge[0], at_edge[1]))
+        variables = (
+            *((r.name, r.width) for r in self.design.registers),
+            (self.clock, 1),
+            *((each.name, each.width) for each in self.pair.inputs),
+            *queue.variables,
+        )
+        names = [name for name, _ in variables]
+        starts = []
+        for cause, level, rest in self._starts():
+            rest = {**rest, self.clock: e.const(level, 1), **self.inputs}
+            first = dict(zip(self.names, _applied([move[n] for n in self.names], rest, "move"), strict=True))
+            first = {**rest, **first} | {n: e.var(moved(n), self.inputs[n].width) for n in self.moving}
+            old, new = _applied([out_old, out_new], rest, "start")
+            queued = queue.start(old, new)
+            (differs,) = _applied([queue.differs(out_old, out_new)], {**rest, **queued}, "start")
+            starts.append(
+                Start(
+                    tuple({**rest, **queued}[n] for n in names),
+                    tuple({**first, **queued}[n] for n in names),
+                    differs,
+                    cause,
+                )
+            )
+        return Joint(
+            both=self.both,
+            outputs=(out_old, out_new),
+            system=system,
+            settling=settling,
+            limit=self.limit,
+            variables=variables,
+            moves=tuple((moved(n), self.inputs[n].width) for n in self.moving),
+            step=tuple(step[name] for name in names),
+            differs=queue.differs(out_old, out_new),
+            differs_at_edge=queue.differs_at_edge(at_edge[0], at_edge[1]),
+            starts=tuple(starts),
+            answers=tuple(self.answers),
+            goals=tuple(self.goals),
+        )
+
+    # -- micro-steps -----------------------------------------------------------------------------------------
+
+    def ask(self, goal: Expr) -> Model | None:
+        model = self.asked(goal) if self.asked else find(goal, self.effort)
+        if not goal.is_const:
+            self.answers.append(model)
+            if model is None:
+                self.goals.append(goal)
+        return model
+
+    def _settled(self, inputs: Inputs, when: str, races: bool) -> tuple[System, Settling]:
+        """The step at an edge with some inputs known and the others free."""
+        system, settling = settle(
+            self.design, self.clock, inputs, self.both.output_value, self.effort, ask=self.ask, races=races
+        )
+        if settling.depth is None or settling.at_rest is None:
+            raise OutOfEffort(settling.open or f"the micro-steps do not settle{when}")
+        self.limit = max(self.limit, settling.depth, settling.at_rest)
+        return system, settling
+
+    def _moment(self, known: Moment) -> Moment:
+        registers = {r.name: e.var(r.name, r.width) for r in self.design.registers}
+        return {**registers, self.clock: e.var(self.clock, 1), **self.inputs, **known}
+
+    def _change(self, before: Moment, now: Moment, assumed: Expr, what: str) -> Values:
+        """Every register once all has settled after a change that makes `before` into `now`."""
+        chain, depth, _ = bound(self.design, before, now, assumed, self.ask)
+        if depth is None:
+            raise OutOfEffort(f"the micro-steps do not settle when {what}")
+        self.limit = max(self.limit, depth)
+        return {name: chain[-1][name] for name in self.names}
+
+    def _move(self, known: Moment) -> Values:
+        """Every register after the moving inputs have changed between two edges."""
+        watched = [x for r in self.design.registers for x in (edge.clock for edge in r.edges)]
+        watched += [x for r in self.design.registers for f in r.forces for x in (f.when, f.value)]
+        if not {v.name for v in e.variables(watched)} & set(self.moving):
+            # Nothing that acts between edges looks at them.
+            return {r.name: e.var(r.name, r.width) for r in self.design.registers}
+        before = self._moment(known)
+        now = {**before, **{n: e.var(moved(n), self.inputs[n].width) for n in self.moving}}
+        return self._change(before, now, settled_when(self.design.registers, before), "inputs move")
+
+    def _at_rest(self, known: Moment) -> Values:
+        """Every register once arbitrary values have settled, with no edge."""
+        before = self._moment(known)
+        return self._change(before, before, e.TRUE, "power comes up")
+
+    # -- starts ----------------------------------------------------------------------------------------------
+
+    def _starts(self) -> Iterable[tuple[str, int, Values]]:
+        """How each start comes about, the level of the clock in it, and the registers."""
+        if self.pair.scope == "initial":
+            yield from self._initial()
+            return
+        active = self.both.resetting.moment(self.design.inputs)
+        free = self.both.running.moment(self.design.inputs)
+        held, _ = self._settled(self.both.resetting, " while reset is held", races=False)
+        edge = dict(zip(held.names, held.step, strict=True))
+        rest, move = self._at_rest(active), self._move(active)
+        before = self._moment(active)
+        release = self._change(
+            before,
+            {**before, **free},
+            settled_when(self.design.registers, before),
+            "reset is released",
+        )
+        count = max(self._held(edge, rest, move, level, None)[0] for level in (0, 1))
+        for level in (0, 1):
+            first = level ^ (count & 1)
+            _, values = self._held(edge, rest, move, first, count)
+            registers = _applied([release[n] for n in self.names], values, "release")
+            long = f" held for {count} half-cycles or longer" if count else ""
+            yield (
+                f"reset{long}, released while the clock is {('low', 'high')[level]}",
+                level,
+                dict(zip(self.names, registers, strict=True)),
+            )
+
+    def _held(
+        self, edge: Values, rest: Values, move: Values, level: int, wanted: int | None
+    ) -> tuple[int, Values]:
+        """Reset held for so many half-cycles, begun at that level of the clock; without a number, until what can
+        become known is. The half-cycles, and every register then; inputs that move are new in each half-cycle and
+        have their own names in the last."""
+        limit = 4 * len(self.names) + 8 if wanted is None else wanted
+        values: Values = {r.name: e.var(r.name, r.width) for r in self.design.registers}
+        values[self.clock] = e.const(level, 1)
+        values |= self.inputs if wanted == 0 else self._inputs_in(0)
+        registers = _applied([rest[n] for n in self.names], values, "rest")
+        values |= dict(zip(self.names, registers, strict=True))
+        unknown = {r.name for r in self.design.registers}
+        for count in range(limit):
+            if wanted is None and not self._depends(values, unknown):
+                return count, values
+            stepped = _applied([edge[n] for n in (*self.names, self.clock)], values, f"{count}")
+            values |= dict(zip((*self.names, self.clock), stepped, strict=True))
+            following = self.inputs if count + 1 == wanted else self._inputs_in(count + 1)
+            after = {moved(n): following[n] for n in self.moving}
+            registers = _applied([move[n] for n in self.names], {**values, **after}, f"{count} moved")
+            values |= dict(zip(self.names, registers, strict=True)) | following
+            self.effort.check()
+        return limit, values
+
+    def _inputs_in(self, half_cycle: int) -> Values:
+        """The shared inputs in a half-cycle of reset: those that move are what they like."""
+        return {
+            n: e.var(f"{n} in {half_cycle}", x.width) if n in self.moving else x
+            for n, x in self.inputs.items()
+        }
+
+    def _depends(self, values: Values, unknown: set[str]) -> bool:
+        """Whether some register still hangs on what it was before reset."""
+        for name in self.names:
+            value = values[name]
+            if {v.name for v in e.variables([value])} & unknown and constant(value) is None:
+                return True
+        return False
+
+    def _initial(self) -> Iterable[tuple[str, int, Values]]:
+        known = self.both.running.moment(self.design.inputs)
+        rest = self._at_rest(known)
+        for level in (0, 1):
+            values: Values = {
+                r.name: e.const(r.initial, r.width) if r.initial is not None else e.var(r.name, r.width)
+                for r in self.design.registers
+            }
+            values |= {**self.inputs, self.clock: e.const(level, 1)}
+            registers = _applied([rest[n] for n in self.names], values, "rest")
+            yield (
+                f"initial values, the clock {('low', 'high')[level]} at power-up",
+                level,
+                dict(zip(self.names, registers, strict=True)),
+            )
+
+
+def _applied(values: Sequence[Expr], to: Mapping[str, Expr], label: str) -> list[Expr]:
+    """The expressions with names replaced, and choices named anew."""
+    return e.substitute(renamed(values, label), to)
+
+
+class _Queue:
+    """The values that an output had in the half-cycles before, as bits of the state.
+
+    The one that leads waits: the old output where the new one is late. `known` bits tell how long it has run."""
+
+    def __init__(self, lag: int, moving: bool) -> None:
+        self.late = abs(lag)
+        self.leads = 0 if lag > 0 else 1
+        self.moving = moving
+        self.twice = moving and lag != 0
+        count = range(1, self.late + 1)
+        self.rest = [e.var(f"output {j} before", 1) for j in count]
+        self.edge = (
+            [e.var(f"output at the edge {j} before", 1) for j in range(self.late)] if self.twice else []
+        )
+        self.known = [e.var(f"known {j} before", 1) for j in count]
+
+    @property
+    def variables(self) -> tuple[tuple[str, int], ...]:
+        return tuple((v.name, 1) for v in (*self.rest, *self.edge, *self.known))
+
+    def step(self, rest: tuple[Expr, Expr], edge: tuple[Expr, Expr]) -> Values:
+        shifted = [
+            (self.rest, [rest[self.leads], *self.rest]),
+            (self.edge, [edge[self.leads], *self.edge]),
+            (self.known, [e.TRUE, *self.known]),
+        ]
+        return {v.name: x for bits, values in shifted for v, x in zip(bits, values, strict=False)}
+
+    def start(self, *outputs: Expr) -> Values:
+        values: Values = {v.name: e.FALSE for v in (*self.rest, *self.edge, *self.known)}
+        if self.edge:
+            values[self.edge[0].name] = outputs[self.leads]
+        return values
+
+    def differs(self, *outputs: Expr) -> Expr:
+        if not self.late:
+            return e.bvxor(*outputs)
+        return e.bvand(self.known[-1], e.bvxor(self.rest[-1], outputs[1 - self.leads]))
+
+    def differs_at_edge(self, *outputs: Expr) -> Expr:
+        if not self.moving:
+            # The rest after the edge is the next state's.
+            return e.FALSE
+        if not self.late:
+            return e.bvxor(*outputs)
+        known = self.known[-2] if self.late > 1 else e.TRUE
+        return e.bvand(known, e.bvxor(self.edge[-1], outputs[1 - self.leads]))
