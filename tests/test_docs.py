@@ -18,7 +18,7 @@ from properties import NAMES
 from prover import Spec, cli, formula
 from prover.errors import UserError
 from prover.report.json import SCHEMA
-from prover.spec import PLAIN_RATIO, read_duty_range, read_each, read_frequency, read_ratio
+from prover.spec import PLAIN_RATIO, read_duty_range, read_each, read_frequency, read_number, read_ratio
 
 ROOT = Path(__file__).parents[1]
 README = (ROOT / "README.md").read_text(encoding="utf-8")
@@ -40,8 +40,9 @@ def quoted(text: str) -> list[str]:
     return re.findall(r"`([^`]+)`", text)
 
 
-def options(command: click.Command) -> set[str]:
-    return {name for parameter in command.params for name in parameter.opts if name.startswith("--")}
+def options(command: click.Command, hidden: bool = False) -> set[str]:
+    shown = [p for p in command.params if getattr(p, "hidden", False) == hidden]
+    return {name for parameter in shown for name in parameter.opts if name.startswith("--")}
 
 
 def run(*arguments: str) -> Result:
@@ -58,7 +59,13 @@ def test_the_options_are_those_of_the_commands() -> None:
     assert {name for name, of in rows.items() if of == "check"} == options(cli.check) - both
     assert {name for name, of in rows.items() if of == "recheck"} == options(cli.recheck) - both
     assert options(cli.measure) == both
-    assert set(re.findall(r"(?<![\w-])--[a-z][a-z-]*", README)) == set(rows)
+    of_compare = {re.findall(r"--[a-z-]+", row[0])[0] for row in table(README, "option of `compare`")}
+    assert of_compare <= options(cli.compare)
+    assert options(cli.compare) - of_compare <= set(rows)
+    named = set(re.findall(r"(?<![\w-])--[a-z][a-z-]*", README))
+    assert named - options(cli.compare, hidden=True) == set(rows) | of_compare
+    for name in options(cli.compare, hidden=True):
+        assert "--" + name.split("-", 3)[3] in options(cli.compare)
 
 
 def test_the_values_of_options_are_understood() -> None:
@@ -76,6 +83,8 @@ def test_the_values_of_options_are_understood() -> None:
                 assert read_frequency(text) > 0
             elif row[0].startswith("`--source-duty"):
                 assert read_duty_range(text)
+    (lag,) = [row for row in table(README, "option of `compare`") if row[0].startswith("`--lag")]
+    assert all(isinstance(read_number(text, "--lag"), int) for text in quoted(lag[1]) if text != "any")
 
 
 def test_the_commands_are_those_there_are() -> None:
@@ -378,7 +387,20 @@ def test_the_keys_of_a_case_are_those_in_use() -> None:
         head = re.match(r"(?://.*\n)*", path.read_text(encoding="utf-8"))
         assert head
         used |= set(re.findall(r"^// (unit delay|check)(?=: )", head[0], re.MULTILINE))
-        used |= set(re.findall(r"^// (.+?)(?=: )", head[0].partition("// check: ")[2], re.MULTILINE))
+        checked, compared, _ = head[0].partition("// compare: ")
+        used |= set(re.findall(r"^// (.+?)(?=: )", checked.partition("// check: ")[2], re.MULTILINE))
+        used |= {"compare"} if compared else set()
+    assert used == stated
+
+
+def test_the_keys_of_a_pair_are_those_in_use() -> None:
+    stated = {name for row in table(DEVELOPERS, "key of a pair") for name in quoted(row[0])}
+    used = set()
+    for path in (ROOT / "cases").rglob("*.v"):
+        head = re.match(r"(?://.*\n)*", path.read_text(encoding="utf-8"))
+        assert head
+        compared = head[0].partition("// compare: ")[2]
+        used |= set(re.findall(r"^// (.+?)(?=: )", compared, re.MULTILINE)) - {"compare"}
     assert used == stated
 
 
