@@ -11,7 +11,6 @@ from __future__ import annotations
 import random
 from collections.abc import Iterator
 from dataclasses import replace
-from fractions import Fraction
 from itertools import product
 
 from prover import analyse, compared, equality, lockstep, relations
@@ -22,7 +21,7 @@ from prover.errors import InternalError
 from prover.joint import Joint, Start, build
 from prover.pair import Pair, Pairing
 from prover.ports import Ports
-from prover.rhythm import Rhythm, Wave
+from prover.rhythm import Goal, Rhythm, Wave
 from prover.solve import Model
 from prover.spec import Spec
 from prover.system import State
@@ -103,12 +102,12 @@ def _settled(pair: Pair, pairing: Pairing, effort: Effort) -> Outcome:
 def _loops(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     """All loops, with a state of each; and how long any state takes to show the wave, if they all show one."""
     spec = replace(spec, start="any")
-    rhythm = analyse.rhythm_of(ports, spec, effort)
+    rhythm = analyse.from_power_up(ports, spec, None, effort)
     waves = {loop.wave for loop in rhythm.loops}
     if rhythm.complete and len(waves) == 1 and len(rhythm.loops[0].wave.runs) == 2:
-        wave = rhythm.loops[0].wave
-        claim = replace(spec, ratio=Fraction(wave.period or 0, 2), high=wave.high)
-        rhythm = analyse.rhythm_of(ports, claim, effort)
+        (wave,) = waves
+        goal = Goal(wave.period or 0, wave.high or 0)
+        rhythm = analyse.from_power_up(ports, spec, goal, effort)
     shown = dict(rhythm.shown)
     seen: set[Wave] = set()
     for loop in rhythm.loops:

@@ -200,7 +200,7 @@ def _arrivals(report: Report, name: str, glitch: Glitch) -> str:
         for n in glitch.arrivals[0].seen
         if n != report.ports.output
     ]
-    file = _File(design.top, [*seen, Variable(report.ports.output, 1, "wire")], comment)
+    file = File(design.top, [*seen, Variable(report.ports.output, 1, "wire")], comment)
     file.put(0, [*(glitch.state.get(v.name) for v in seen), glitch.level])
     for time, arrival in enumerate(glitch.arrivals, 1):
         file.put(time, [*(arrival.seen[v.name] for v in seen), arrival.level])
