@@ -62,7 +62,7 @@ _LEXEME = re.compile(
       | (?P<attribute>\(\*(?!\s*\)))
       | (?P<string>"(?:[^"\\\n]|\\.)*")
       | (?P<float>[0-9][0-9_]*(?:\.[0-9][0-9_]*(?:[eE][-+]?[0-9]+)?|[eE][-+]?[0-9]+))
-      | (?P<based>'[sS]?[bBoOdDhH]\s*[0-9a-zA-Z_?]+)
+      | (?P<based>'[sS]?(?:[bBoOhH]\s*[0-9a-zA-Z_?]+|[dD]\s*(?:[0-9a-zA-Z_]+|\?_*)))
       | (?P<fill>'[01xXzZ](?![\w']))
       | (?P<number>[0-9][0-9_]*)
       | (?P<system>\$[\w$]+)

@@ -305,6 +305,12 @@ SURVEY = [
         module("reg [1:0] n; wire [3:0] p = 4'b0011;\nalways @(posedge clk) n <= n + 1; assign tick = p[n];"),
     ),
     Accepted(
+        "a choice right behind a decimal number",
+        module("reg [2:0] n; always @(posedge clk) n <= n >= 3'd5?0:n + 3'd1;\nassign tick = n[2];"),
+        "6",
+        4,
+    ),
+    Accepted(
         "1_000",
         module(
             "reg [3:0] n; always @(posedge clk) if (n >= 4'b1_00_1) n <= 0; else n <= n + 1;\n"
