@@ -155,6 +155,13 @@ def test_moving_inputs_are_drawn_in_the_middle_of_a_half_cycle(tmp_path: Path) -
     assert numbers(picture, "launch") == [1, 5, 9]
 
 
+def test_a_pulse_that_begins_between_two_edges_is_measured_from_there() -> None:
+    # The output is the decoded count, gated by the reset: released in the middle of half-cycle 2, it falls at 7.
+    root = page(render(case("faulty/gated_by_reset.v", "6")))
+    (picture,) = section(root, "counterexamples").of("wave")
+    assert [node.text for node in picture.of("measure")] == ["4.5 half-cycles"]
+
+
 def test_a_stuck_output_is_a_wave_of_its_own(tmp_path: Path) -> None:
     root = page(render(checked(tmp_path, STICKS_AT_7, "5", high=4)))
     (wave,) = [
@@ -164,6 +171,8 @@ def test_a_stuck_output_is_a_wave_of_its_own(tmp_path: Path) -> None:
     ]
     tick = wave.of("line")[1]
     assert set(levels(tick, columns(wave))) == {-1}
+    # There is no length to tell of what never ends.
+    assert [node.text for node in wave.of("measure")] == ["here"]
     assert "low" in wave.all("desc")[0].text
 
 

@@ -282,7 +282,7 @@ def _run(report: Report, broken: Counterexample | Trace, finding: Finding, key: 
         rows.append(("loop", told))
     yield _definitions(rows)
     title = f"Counterexample to {finding.name}"
-    caption = "Numbers count half-cycles from the start; the measured stretch breaks the claim."
+    caption = "Numbers count half-cycles from the start; what stands between the ticks breaks the claim."
     if left:
         caption += f" {words.plural(left, 'more register')} not drawn."
     yield element("figure", waves.figure(_broken_scene(drawing, title, key)), element("figcaption", caption))
@@ -290,16 +290,28 @@ def _run(report: Report, broken: Counterexample | Trace, finding: Finding, key: 
 
 def _broken_scene(drawing: Drawing, title: str, key: str) -> Scene:
     """What is marked, measured. Of several outputs the first that is marked tells what launches its edges."""
-    marked = [(index, row.marked) for index, row in enumerate(drawing.rows) if row.marked is not None]
-    output, stretch = marked[0] if marked else (1, None)
-    dimensions: tuple[Dimension, ...] = ()
-    if stretch is not None:
-        begins, ends = stretch[0], max(stretch[1], stretch[0] + 1)
-        length = Fraction(ends - begins, drawing.per)
-        told = words.digits(int(length)) if length.denominator == 1 else number(length)
-        text = f"{told} half-cycle{'s' * (length != 1)}"
-        dimensions = (Dimension(begins, ends, text, fault=True),)
+    marked = [(index, row) for index, row in enumerate(drawing.rows) if row.marked is not None]
+    output, row = marked[0] if marked else (1, drawing.rows[1])
+    dimensions = (_stretch(drawing, row, *row.marked),) if row.marked is not None else ()
     return Scene(drawing, output, dimensions, title, key)
+
+
+def _stretch(drawing: Drawing, row: Row, begins: int, ends: int) -> Dimension:
+    """The stretch that is broken, with its length where it reaches from edge to edge. Inputs may move in the middle
+    of its first and of its last half-cycle; then an edge that is there bounds it."""
+    per = drawing.per
+    last = max(piece.ends for piece in drawing.pieces)
+
+    def edge(at: int) -> bool:
+        return 0 < at < last and row.value(at - 1) != row.value(at)
+
+    first = next((at for at in range(begins, begins + per) if edge(at)), begins)
+    then = next((at for at in range(ends, ends - per, -1) if edge(at)), max(ends, begins + 1))
+    if not (edge(first) and edge(then) and first < then):
+        return Dimension(begins, max(ends, begins + 1), "here", fault=True)
+    length = Fraction(then - first, per)
+    told = words.digits(int(length)) if length.denominator == 1 else number(length)
+    return Dimension(first, then, f"{told} half-cycle{'s' * (length != 1)}", fault=True)
 
 
 def _values(values: Mapping[str, int]) -> Markup:
