@@ -237,6 +237,24 @@ def test_a_round_that_never_settles_is_a_table(tmp_path: Path) -> None:
     assert all(a != b for a, b in itertools.pairwise(values))
 
 
+def test_a_glitch_is_drawn_and_listed_by_arrivals() -> None:
+    # The output is a decode of a counter at 1, 4 and 5, all bits of which may change at once.
+    root = page(render(case("faulty/two_pulses.v", "9", high=6)))
+    body = section(root, "glitches")
+    (table,) = body.all("table")
+    head, *rows = [[cell.text for cell in row.all("th", "td")] for row in table.all("tr")]
+    assert head == ["arrival", "micro-step", "arrives", "ping", "count"]
+    counts, pings = [int(row[4]) for row in rows], [int(row[3]) for row in rows]
+    assert pings == [int(count in (1, 4, 5)) for count in counts]
+    # One bit after another, and the output more than once.
+    assert all((a ^ b).bit_count() == 1 for a, b in itertools.pairwise(counts))
+    assert sum(a != b for a, b in itertools.pairwise(pings)) > 1
+    (picture,) = body.of("wave")
+    assert levels(picture.of("line")[0], columns(picture)) == pings
+    assert [node.text for node in picture.of("measure")] == ["pulse"]
+    assert numbers(picture, "number") == list(range(len(rows)))
+
+
 def test_a_measurement_claims_nothing(tmp_path: Path) -> None:
     root = page(render(measured(tmp_path, RING)))
     assert "nothing is claimed" in root.all("header")[0].text

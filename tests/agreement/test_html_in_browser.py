@@ -50,6 +50,8 @@ def pages(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
         "folded": case("gauge/second_26_eq.v", "50000001"),
         "unsettled": case("faulty/gate_that_chases_itself.v", "2"),
         "wide": case("wide/noise_24_xnor.v", "16777215", high=16777216),
+        "glitch": case("faulty/two_pulses.v", "9", high=6),
+        "released": case("faulty/gated_by_reset.v", "6"),
         "measured": measure([CASES / "faulty/compare_out_of_reach.v"]),
     }
     texts = {name: html.render(report) for name, report in reports.items()}
@@ -60,7 +62,19 @@ def pages(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
     return {name: folder / f"{name}.html" for name in texts}
 
 
-KINDS = ["proved", "refuted", "huge", "rings", "folded", "unsettled", "wide", "measured", "several"]
+KINDS = [
+    "proved",
+    "refuted",
+    "huge",
+    "rings",
+    "folded",
+    "unsettled",
+    "wide",
+    "glitch",
+    "released",
+    "measured",
+    "several",
+]
 
 
 @pytest.mark.parametrize("kind", KINDS)

@@ -32,6 +32,7 @@ MOST_LOOPS = 40
 MOST_MICRO_STEPS = 64
 MOST_VALUES = 100
 MOST_ARRIVALS = 40
+MOST_WORDS = 8
 
 LONG = frozenset({"for example", "reason for waiving it", "what is wrong, or the worst"})
 """Headings of columns that hold texts."""
@@ -327,27 +328,29 @@ def _glitches(report: Report, place: Place) -> Iterator[Markup]:
 
 
 def _glitch(report: Report, shown: Glitch, key: str) -> Iterator[Markup]:
-    way = "a rising" if shown.rising else "a falling"
     why = (
         "whatever gates it is made of"
         if shown.kind == "function"
         else "through the gates as they are written"
     )
-    output = report.ports.output
-    told = f"{output} changes {words.plural(shown.changes, 'time')} after {way} edge of {report.ports.clock}, {why}."
+    output, clock = report.ports.output, report.ports.clock
+    told = (
+        f"{output} changes {words.plural(shown.changes, 'time')} at the {shown.edge} edge of {clock}, {why}"
+    )
     yield element("p", element("strong", told))
-    yield _definitions([("from", _values(shown.state)), ("output", [*_source(shown.where)])])
+    yield _definitions([("from", _values(shown.state)), ("driven at", _source(shown.where))])
     if len(shown.arrivals) <= MOST_ARRIVALS:
         scene = _arrivals_scene(report, shown, key)
-        note = "From left to right the order of arrival, within one half-cycle; how long each takes is not drawn."
+        note = (
+            "From left to right the order of arrival within one half-cycle; how long each takes is not drawn."
+        )
         yield element("figure", waves.figure(scene), element("figcaption", note))
-    rows: list[list[Content]] = [
-        [str(i + 1), element("code", a.name), str(a.micro_step), f"{a.old} → {a.new}", str(a.level)]
-        for i, a in enumerate(shown.arrivals[:MOST_MICRO_STEPS])
-    ]
-    yield _table(["arrival", "what changes", "micro-step", "from and to", f"{output} then"], rows)
-    if len(shown.arrivals) > MOST_MICRO_STEPS:
-        yield element("p", f"{len(shown.arrivals) - MOST_MICRO_STEPS} more arrivals.")
+    head, *rows = words.glitch_table(report, shown, MOST_WORDS)
+    numbered = [[str(place), *row] for place, row in enumerate(rows[: MOST_MICRO_STEPS + 1])]
+    yield _table(["arrival", *head], numbered, "machine")
+    left = len(shown.arrivals) - MOST_MICRO_STEPS
+    if left > 0:
+        yield element("p", f"{left} more.")
 
 
 def _arrivals_scene(report: Report, shown: Glitch, key: str) -> Scene:

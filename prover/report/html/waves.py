@@ -105,7 +105,9 @@ class _Frame:
         column = _column(drawing)
         shown = sum(piece.length for piece in drawing.pieces if not piece.folded)
         folds = sum(_fold_width(piece, drawing.per) for piece in drawing.pieces if piece.folded)
-        column = max(column, min(WIDER // drawing.per, (WIDEST - folds) // shown))
+        # What is no clock's has few columns, and a measure has to fit into one.
+        wider = WIDER // drawing.per if scene.clocked else BROADEST
+        column = max(column, min(wider, (WIDEST - folds) // shown))
         names = int(max(longest, len(drawing.ruler)) * CHARACTER) + 14
         return _Frame(column, names, tuple(tops), at + 2, launched, drawing.per)
 
@@ -236,9 +238,8 @@ def _ruler(drawing: Drawing, frame: _Frame, places: Places) -> Markup:
 def _every(drawing: Drawing, frame: _Frame, places: Places) -> int:
     longest = max(len(str(piece.ends // drawing.per + drawing.origin)) for _, piece in places)
     room = frame.column * drawing.per
-    return next(
-        step for step in (2, 4, 8, 16, 32, 64) if step * room >= longest * CHARACTER + 8 or step == 64
-    )
+    steps = (1, 2, 4, 8, 16, 32, 64) if room > 2 * WIDER else (2, 4, 8, 16, 32, 64)
+    return next(step for step in steps if step * room >= longest * CHARACTER + 8 or step == 64)
 
 
 def _threads(scene: Scene, frame: _Frame, places: Places) -> Markup:
@@ -396,7 +397,8 @@ def _described(scene: Scene) -> str:
         return f"{drawing.ruler} {at // drawing.per + drawing.origin}"
 
     begins = labelled(drawing.pieces[0].begins)
-    told = [f"{row.name} from {begins} on, in half-cycles: {', '.join(runs[:MOST_TOLD])}{more}."]
+    unit = "half-cycles" if scene.clocked else "arrivals"
+    told = [f"{row.name} from {begins} on, in {unit}: {', '.join(runs[:MOST_TOLD])}{more}."]
     if drawing.ruler == "edge":
         edges = [f"{labelled(at)} ({'rising' if up else 'falling'})" for at, up in scene.launches]
         told.append(f"Launched by {', '.join(edges[:MOST_TOLD])} of the clock." if edges else "")
