@@ -14,13 +14,16 @@ from fractions import Fraction
 from math import ceil, floor
 
 from properties.runs import Span, gaps, high_runs
-from prover.design import Signal, ended
 from prover.errors import InternalError
-from prover.findings import Counterexample, Report
+from prover.findings import Counterexample, Finding, Report
 from prover.path import Run
+from prover.report.dut import Dut, NoBench, Scene, came, names, number, register
 from prover.rhythm import Orbit
 from prover.settling import Unsettled
 from prover.spec import Spec
+
+HALF_CYCLE = 100
+"""Units of time between two edges: far more than gates with a unit of delay each need."""
 
 MOST_HALF_CYCLES = 5_000_000
 """Half-cycles that a bench may run for; a simulator takes seconds for these."""
@@ -31,12 +34,10 @@ MOST_CHANGES = 10_000
 SETTLED_WITHIN = 8
 """Half-cycles after which a divider that settles has shown that it does."""
 
-WIDTH = 64
-"""Bits of the bench's counters, and more for longer times."""
-
-
-class NoBench(Exception):
-    """Why a refutation has no test bench."""
+ABOUT = (
+    "From the start state it runs the divider for HALF_CYCLES half-cycles and checks the claim at the end of each,",
+    "from half-cycle BEGINS on.",
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,6 +62,94 @@ class Check:
     finish: Sequence[str] = ()
     loop: int | None = None
     processes: Sequence[str] = field(default=())
+
+
+def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
+    """The run of a counterexample, or of what never settles, with the check of the claim. Raises NoBench."""
+    if finding.unsettled is not None:
+        when = "with no clock edge" if finding.unsettled.power_up else "before a clock edge"
+        start, cause, check = finding.unsettled.state, when, settles(report, finding.unsettled)
+    elif finding.counterexample is not None and finding.name in CHECKS:
+        start, cause = finding.counterexample.orbit.start, finding.counterexample.cause
+        check = CHECKS[finding.name](report, finding.counterexample)
+    else:
+        raise NoBench("its claim is none that a bench of one divider can check")
+    registers = report.rhythm.system.describe(start)
+    reset = report.ports.reset if report.rhythm.scope == "reset" and report.rhythm.starts else None
+    own = list(check.declarations)
+    if check.loop:
+        own += [f"reg [{dut.bits - 1}:0] kept;", "reg back;"]
+    returned = (
+        '$display("         the registers are back after %0d half-cycles: so it goes on for ever", {});'
+    )
+    return Scene(
+        start=cause,
+        about=ABOUT,
+        level=registers[report.ports.clock],
+        moving={reset.port: 1 - reset.active} if reset else {},
+        parameters={"HALF_CYCLES": check.length, "BEGINS": check.begins},
+        declarations=[register("t"), "reg out, last, running;", *own],
+        code=[
+            *_observation(check, dut),
+            "",
+            "initial begin",
+            "  {running, last, t} = 0;",
+            *(f"  {name} = 0;" for name in names(own) if name != "kept"),
+            *(f"  {line}" for line in (_reset(report, dut) if reset else ())),
+            "  // The start state: forced so that nothing else reacts, then let go.",
+            *(f"  {line}" for line in dut.set(registers)),
+            "  running = 1'b1;",
+            "  for (t = 0; t < HALF_CYCLES; t = t + 1) begin",
+            f"    if (t > 0) {dut.clock} = ~{dut.clock};",
+            f"    #{HALF_CYCLE};",
+            "    observe;",
+            "  end",
+            *(f"  {line}" for line in check.finish),
+            "  running = 1'b0;",
+            "  verdict;",
+            "end",
+            *check.processes,
+        ],
+        passed=("nothing else in %0d half-cycles", "HALF_CYCLES"),
+        failed=["if (back)", f"  {returned.format(number(check.loop))}"] if check.loop else [],
+    )
+
+
+def _observation(check: Check, dut: Dut) -> Iterator[str]:
+    yield "// At the end of a half-cycle, when all is at rest."
+    yield "task observe;"
+    yield "  begin"
+    yield f"    out = {dut.output};"
+    yield "    if (t >= BEGINS && out !== 1'b0 && out !== 1'b1 && !failed) begin"
+    yield from came("an unknown output in half-cycle %0d", "t", "1'b0", 6)
+    yield "    end"
+    if check.first:
+        yield "    if (t == BEGINS) begin"
+        yield from (f"      {line}" for line in check.first)
+        yield "    end"
+    if check.observe:
+        yield "    if (t > BEGINS) begin"
+        yield from (f"      {line}" for line in check.observe)
+        yield "    end"
+    if check.loop:
+        yield f"    if (t == BEGINS) kept = {dut.together};"
+        yield f"    if (t == BEGINS + {number(check.loop)}) back = kept === {dut.together};"
+    yield "    last = out;"
+    yield "  end"
+    yield "endtask"
+
+
+def _reset(report: Report, dut: Dut) -> Iterator[str]:
+    """Reset, for registers that a mended divider may have besides; an even number of half-cycles long."""
+    reset = report.ports.reset
+    if reset is None:
+        return
+    held = (report.rhythm.reset_half_cycles or 0) + 2
+    yield "// Reset, for the sake of registers that the divider did not have when this was written."
+    yield f"#{HALF_CYCLE} {dut.local[reset.port]} = 1'b{reset.active};"
+    yield f"repeat ({held + held % 2}) #{HALF_CYCLE} {dut.clock} = ~{dut.clock};"
+    yield f"#{HALF_CYCLE} {dut.local[reset.port]} = 1'b{1 - reset.active};"
+    yield f"#{HALF_CYCLE};"
 
 
 def _ratio(report: Report, broken: Counterexample) -> Check:
@@ -273,18 +362,31 @@ def _no_stuck(report: Report, broken: Counterexample) -> Check:
 
 def _recovery(report: Report, broken: Counterexample) -> Check:
     """From the limit on, or where there is none once a mended divider has had its time, the wave is the specified
-    one: two neighbouring runs as long as they should be, the one that is cut off in front no longer."""
-    spec, orbit = report.spec, broken.orbit
-    recovery = report.rhythm.recovery
-    late = recovery is not None and recovery.lost is None
+    one."""
+    spec, recovery = report.spec, report.rhythm.recovery
+    if recovery is None or recovery.lost is not None or spec.within is None:
+        return _right_again(report, broken)
     if spec.mean:
-        within = spec.within if late else None
-        return _mean(report, broken, _allowance(orbit, _period(spec)) if within is None else within)
-    if not late and 5 * spec.period > MOST_HALF_CYCLES and orbit.loop_half_cycles < spec.period:
+        return _mean(report, broken, spec.within)
+    return _wave(report, broken.orbit, spec.within, recovers=True)
+
+
+def _right_again(report: Report, broken: Counterexample) -> Check:
+    """However it began, the wave becomes the specified one."""
+    orbit, spec = broken.orbit, report.spec
+    if spec.mean:
+        return _mean(report, broken, _allowance(orbit, _period(spec)))
+    if 5 * spec.period > MOST_HALF_CYCLES and orbit.loop_half_cycles < spec.period:
         return _returning(orbit, spec.period)
-    begins = spec.within if late and spec.within is not None else _allowance(orbit, spec.period)
+    return _wave(report, orbit, _allowance(orbit, spec.period), recovers=False)
+
+
+def _wave(report: Report, orbit: Orbit, begins: int, recovers: bool) -> Check:
+    """From then on the wave is the specified one: runs are as long as they should be, and the one that is cut off in
+    front no longer. `recovers` says that in the end it is so."""
+    spec = report.spec
     # Two waves of periods p and q that agree for p + q half-cycles agree for ever (Fine and Wilf 1965).
-    once = orbit.lead_half_cycles + orbit.loop_half_cycles if late else orbit.loop_half_cycles
+    once = orbit.loop_half_cycles + (orbit.lead_half_cycles if recovers else 0)
     length = _bounded(begins + once + 2 * spec.period + 2)
     level, at, size = _misfit(orbit, begins, length, spec.high_half_cycles, spec.period)
     same = f"last == {level} && began == {number(at)}"
@@ -317,7 +419,7 @@ def _recovery(report: Report, broken: Counterexample) -> Check:
             "end",
         ],
         [],
-        None if late else orbit.loop_half_cycles,
+        None if recovers else orbit.loop_half_cycles,
     )
 
 
@@ -371,8 +473,8 @@ def settles(report: Report, unsettled: Unsettled) -> Check:
     moving = [name for name in rows[0] if len({row[name] for row in rows}) > 1]
     if not moving:
         raise NoBench("nothing that a bench can see moves")
-    paths = [f"dut.{ended(whole(report, name).name)}" for name in moving]
-    watched = list(dict.fromkeys(paths))
+    dut = Dut(report)
+    watched = list(dict.fromkeys(dut.path(name) for name in moving))
     return Check(
         SETTLED_WITHIN,
         0,
@@ -389,6 +491,7 @@ def settles(report: Report, unsettled: Unsettled) -> Check:
             f"    if (changes == {MOST_CHANGES}) begin",
             *came("%0d changes within half-cycle %0d, and no end", "changes, t", "1'b1", 6),
             *(f"      force {path} = 0;" for path in watched),
+            "      running = 1'b0;",
             "      verdict;",
             "    end",
             "  end",
@@ -401,6 +504,7 @@ CHECKS: Mapping[str, Callable[[Report, Counterexample], Check]] = {
     "high-time": _high_time,
     "no-stuck": _no_stuck,
     "recovery": _recovery,
+    "reset": _right_again,
 }
 """How the claim of each property is checked."""
 
@@ -423,30 +527,3 @@ def _bounded(needed: int, length: int | None = None) -> int:
     if needed > MOST_HALF_CYCLES:
         raise NoBench(f"it would have to run for {needed} half-cycles, and benches end at {MOST_HALF_CYCLES}")
     return needed if length is None else length
-
-
-def came(said: str, values: str, as_reported: str, indent: int) -> list[str]:
-    """Statements that tell what came in place of what is claimed."""
-    blanks = " " * indent
-    return [
-        f'{blanks}$display("came:    {said}", {values});',
-        f"{blanks}as_reported = {as_reported};",
-        f"{blanks}failed = 1'b1;",
-    ]
-
-
-def number(value: int) -> str:
-    return f"{max(WIDTH, value.bit_length() + 1)}'d{value}"
-
-
-def register(name: str) -> str:
-    return f"reg [{WIDTH - 1}:0] {name};"
-
-
-def whole(report: Report, name: str) -> Signal:
-    """The declared name that a register is, or is a part of."""
-    signals = report.ports.design.signals
-    found = signals.get(name) or signals.get(name.rpartition("[")[0].rstrip(" "))
-    if found is None:
-        raise NoBench(f"{name} is no name in the sources")
-    return found
