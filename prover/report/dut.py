@@ -15,6 +15,7 @@ from prover import expr as e
 from prover.design import Signal, components, ended
 from prover.findings import Report
 from prover.output import harmless
+from prover.report.terminal import ASCII_TEXT
 
 WIDTH = 64
 """Bits of a bench's counters, and more for longer times."""
@@ -195,7 +196,8 @@ def came(said: str, values: str, as_reported: str, indent: int = 0) -> list[str]
 
 def plain(text: str) -> str:
     """Text that can stand in a comment of one line."""
-    return harmless(text).encode("ascii", "backslashreplace").decode("ascii").replace("\n", "\\n")
+    ascii_only = harmless(text).translate(ASCII_TEXT).encode("ascii", "backslashreplace").decode("ascii")
+    return ascii_only.replace("\n", "\\n")
 
 
 def literal(text: str) -> str:
