@@ -220,12 +220,13 @@ CLAIMING = (
 )
 EFFORT: Decorator = click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60].")
 JSON: Decorator = _written("--json", "Write the report as JSON.")
+HTML: Decorator = _written("--html", "Write the report as one page for a browser.")
 FIGURES: tuple[Decorator, ...] = (
     click.option("--fin", metavar="FREQ", help="Input frequency, such as 50MHz."),
     click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
     EFFORT,
     JSON,
-    _written("--html", "Write the report as one page for a browser."),
+    HTML,
 )
 TRACES = (
     _written("--vcd", "Write the wave of each property that is refuted."),
@@ -289,6 +290,7 @@ PAIRING: tuple[Decorator, ...] = (
     *_sided("new"),
     EFFORT,
     JSON,
+    HTML,
     _written("--vcd", "Write the waves that differ."),
 )
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
@@ -348,7 +350,13 @@ def measure(files: tuple[str, ...], json_path: str | None, html_path: str | None
 @main.command(short_help="Prove or refute that two dividers have the same output.")
 @_options(*PAIRING)
 def compare(
-    old: str, new: str, files: tuple[str, ...], json_path: str | None, vcd_path: str | None, **options: Any
+    old: str,
+    new: str,
+    files: tuple[str, ...],
+    json_path: str | None,
+    html_path: str | None,
+    vcd_path: str | None,
+    **options: Any,
 ) -> Status:
     """Prove or refute that two dividers have the same output in every half-cycle, from reset or initial values,
     whatever the values of the inputs that both share.
@@ -361,7 +369,7 @@ def compare(
     """
     of_old = (old, *files, *options.pop("old_files"))
     of_new = (new, *files, *options.pop("new_files"))
-    return _compare(of_old, of_new, _pairing(options), Targets(json=json_path, vcd=vcd_path))
+    return _compare(of_old, of_new, _pairing(options), Targets(json_path, html_path, vcd_path))
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
@@ -588,6 +596,10 @@ def _compare(old: Sequence[str], new: Sequence[str], pairing: Pairing, targets: 
         written = [result.path for result in results]
         if targets.json is not None:
             results.append(Result(targets.json, compared_json.render(found)))
+        if targets.html is not None:
+            from prover.report import html
+
+            results.append(Result(targets.html, html.render_compared(found)))
         check_targets(
             [result.path for result in results], [*found.pair.old.design.files, *found.pair.new.design.files]
         )

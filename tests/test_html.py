@@ -422,6 +422,44 @@ def test_the_recovery_in_words() -> None:
     )
 
 
+# -- two compared ------------------------------------------------------------------------------------------
+
+
+def test_two_dividers_that_differ_are_drawn_under_one_ruler() -> None:
+    pair = [str(CASES / f"pairs/scan_by_8_{kind}.v") for kind in ("binary", "late")]
+    result = run("compare", *pair, "--html", "-")
+    assert result.exit_code == 1
+    root = page(result.stdout)
+    assert root.all("h1")[0].text == "scan_by_8_binary and scan_by_8_late"
+    assert [side.text.count("scan_by_8_binary.v") for side in root.of("about")] == [1, 0]
+    (picture,) = section(root, "difference").of("wave")
+    clock, old, new = picture.of("line")[:3]
+    places = columns(picture)
+    # The new one is the old one sampled at the falling edge, half a cycle late.
+    assert levels(old, places) == [0] * 7 + [1] * 8 + [0]
+    assert levels(new, places) == [0] * 8 + [1] * 8
+    assert levels(clock, places) == [0, 1] * 8
+    assert [node.text for node in picture.of("measure")] == ["here", "here"]
+    assert "half-cycle 7: the old output is 1, the new one 0" in section(root, "found").text
+
+
+def test_two_dividers_that_are_equal_have_no_difference(tmp_path: Path) -> None:
+    pair = [str(CASES / f"pairs/scan_by_8_{kind}.v") for kind in ("binary", "late")]
+    result = run("compare", *pair, "--lag", "1", "--html", str(tmp_path / "pair.html"))
+    assert result.exit_code == 0
+    root = page((tmp_path / "pair.html").read_text(encoding="utf-8"))
+    assert root.of("overall")[0].text == "proved"
+    parts = [node.attributes["id"] for node in root.of("part")]
+    assert parts == ["found", "assumptions", "limits"]
+
+
+def test_inputs_that_move_are_drawn_with_both_outputs() -> None:
+    pair = [str(CASES / f"pairs/sample_{kind}.v") for kind in ("up", "live")]
+    root = page(run("compare", *pair, "--moving", "divisor", "--html", "-").stdout)
+    names = [node.text for node in section(root, "difference").of("names")[0].all("text")]
+    assert names[:5] == ["half-cycle", "clk", "divisor", "old.sample", "new.sample"]
+
+
 # -- safe and the same -------------------------------------------------------------------------------------
 
 

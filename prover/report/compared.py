@@ -75,7 +75,7 @@ def _different(comparison: Comparison, style: Style) -> Iterator[str]:
     if isinstance(found.shown, Trace):
         rest = found.shown.rests[0]
         yield from wrapped(words.fact({**rest.inputs, **rest.registers}), "    ")
-        joint = _joint(comparison)
+        joint = joint_of(comparison)
         made, left = drawing(joint.both.design, joint.both.clock, found.shown, EXTENT)
     else:
         for line in _states(found.shown):
@@ -86,7 +86,8 @@ def _different(comparison: Comparison, style: Style) -> Iterator[str]:
     yield from not_drawn(left)
 
 
-def _joint(comparison: Comparison) -> Joint:
+def joint_of(comparison: Comparison) -> Joint:
+    """Both side by side, where a run of them so was found."""
     evidence = comparison.outcome.evidence
     if not isinstance(evidence, Together):
         raise InternalError("a run of both side by side, and nothing of them together")
@@ -115,6 +116,6 @@ def dump(comparison: Comparison) -> str | None:
     if found is None:
         return None
     if isinstance(found.shown, Trace):
-        joint = _joint(comparison)
+        joint = joint_of(comparison)
         return moves(joint.both.design, joint.both.clock, "difference", found.shown)
     return apart.dump(comparison, found, found.shown)

@@ -5,11 +5,12 @@ waves     waves on a ruler
 states    state graphs of small machines
 recovery  recovery time against how many states need it
 sections  what a report holds, part by part
-page      the file around it, for one divider or several
+compared  what a report on two dividers holds
+page      the file around it, for one divider, for several and for two compared
 """
 
 from __future__ import annotations
 
-from prover.report.html.page import render, render_several
+from prover.report.html.page import render, render_compared, render_several
 
-__all__ = ["render", "render_several"]
+__all__ = ["render", "render_compared", "render_several"]

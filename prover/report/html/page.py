@@ -10,8 +10,12 @@ from collections.abc import Sequence
 from importlib.resources import files
 
 from prover import __version__
+from prover.compared import Comparison
 from prover.findings import Report
+from prover.pair import SIDES
+from prover.ports import Ports
 from prover.report import several, words
+from prover.report.html import compared
 from prover.report.html.markup import Markup, element, joined
 from prover.report.html.sections import Part, Place, about, parts, ring_mark, section
 from prover.several import Outcome
@@ -31,7 +35,7 @@ def render(report: Report) -> str:
         _maker(),
         element("h1", report.ports.design.top),
         *_opening(report),
-        about(report),
+        about(report.ports, report.each.shown if report.each else ()),
     )
     main = element("main", (section(part, place) for part in made), id="main")
     title = f"{report.ports.design.top}: {_word(report)}"
@@ -70,6 +74,31 @@ def _opening(report: Report) -> list[Markup]:
 def _contents(made: Sequence[Part]) -> Markup:
     links = (element("li", element("a", title, href=f"#{key}")) for key, title, _ in made)
     return element("nav", element("ul", links), aria_label="Sections")
+
+
+# -- two compared ------------------------------------------------------------------------------------------
+
+
+def render_compared(comparison: Comparison) -> str:
+    """Two dividers compared, as a file."""
+    place = Place()
+    made = compared.parts(comparison, place)
+    word = comparison.verdict
+    sides = zip(SIDES, (comparison.pair.old, comparison.pair.new), strict=True)
+    head = element(
+        "header",
+        _maker(),
+        element("h1", compared.title(comparison)),
+        element("p", ring_mark(word), element("b", word), class_=f"overall {word}"),
+        element("p", f"Claim: {comparison.claim}.", class_="claim"),
+        element("div", (_side(side, ports) for side, ports in sides), class_="sides"),
+    )
+    main = element("main", (section(part, place) for part in made), id="main")
+    return _file(f"{compared.title(comparison)}: {word}", joined([head, _contents(made), main]))
+
+
+def _side(side: str, ports: Ports) -> Markup:
+    return element("div", element("p", f"{side}: ", element("b", ports.design.top)), about(ports))
 
 
 # -- several -----------------------------------------------------------------------------------------------
@@ -115,7 +144,8 @@ def _divider(outcome: Outcome, index: int, few: bool) -> Markup:
     body: list[Markup] = [heading]
     if outcome.report is not None:
         made = parts(outcome.report, place)
-        body += [*_opening(outcome.report), about(outcome.report)]
+        report = outcome.report
+        body += [*_opening(report), about(report.ports, report.each.shown if report.each else ())]
         body += [section(part, place) for part in made]
     else:
         told = outcome.error or outcome.fault or outcome.open

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from itertools import pairwise
@@ -12,6 +12,7 @@ from prover.each import values_text
 from prover.errors import Where
 from prover.facts import LIMITS, number
 from prover.findings import Counterexample, Finding, Obligation, Report
+from prover.ports import Ports
 from prover.report import figures, words
 from prover.report.figures import Extent
 from prover.report.html import recovery, states, waves
@@ -97,9 +98,9 @@ def ring_mark(kind: str) -> Markup:
     return element("svg", shapes[name], class_="ringmark", viewBox="0 0 32 32", aria_hidden="true")
 
 
-def about(report: Report) -> Markup:
-    """What was read: files, ports, parameters."""
-    ports, design = report.ports, report.ports.design
+def about(ports: Ports, moving: Collection[str] = ()) -> Markup:
+    """What was read: files, ports, parameters, and inputs that are held, but for those that are told of elsewhere."""
+    design = ports.design
     reset = ports.reset
     rows: list[tuple[str, Content]] = [
         ("files" if len(design.files) > 1 else "file", _listed(design.files)),
@@ -110,12 +111,11 @@ def about(report: Report) -> Markup:
     ]
     if design.parameters:
         rows.append(("parameters", _listed(f"{name}={value}" for name, value in design.parameters.items())))
-    each = report.each.shown if report.each else {}
-    holds = [f"{name}={value}" for name, value in ports.holds.items() if name not in each]
+    holds = [f"{name}={value}" for name, value in ports.holds.items() if name not in moving]
     if holds:
         rows.append(("held", _listed(holds)))
     rows.append(("sources", ["SHA-256 ", element("code", design.sha256)]))
-    return _definitions(rows, "about")
+    return definitions(rows, "about")
 
 
 def _listed(names: Sequence[str] | Iterator[str]) -> list[Markup]:
@@ -130,7 +130,8 @@ def _name(name: str) -> Markup:
     return element("span", name, class_="name")
 
 
-def _definitions(rows: Sequence[tuple[str, Content]], kind: str | None = None) -> Markup:
+def definitions(rows: Sequence[tuple[str, Content]], kind: str | None = None) -> Markup:
+    """Terms and what they are, in pairs."""
     pairs = (joined([element("dt", term), element("dd", content)]) for term, content in rows)
     return element("dl", pairs, class_=kind)
 
@@ -182,7 +183,7 @@ def _verdict(finding: Finding, place: Place) -> Markup:
         rows.append(("rests on", link))
     if finding.waived is not None:
         rows.append(("waived", finding.waived))
-    content = element("div", head, element("p", finding.says, class_="says"), _definitions(rows))
+    content = element("div", head, element("p", finding.says, class_="says"), definitions(rows))
     return element("li", element("div", ring_mark(finding.verdict), class_=finding.verdict), content)
 
 
@@ -236,8 +237,8 @@ def _steady_scene(report: Report, orbit: Orbit, drawing: Drawing, key: str) -> S
     if wave is not None and wave.period is not None:
         if len(wave.runs) == 2:
             high = wave.runs[0][1]
-            dimensions.append(Dimension(begins, begins + high, f"high {words.digits(high)}"))
-        dimensions.append(Dimension(begins, begins + wave.period, f"period {words.digits(wave.period)}"))
+            dimensions.append(Dimension(1, begins, begins + high, f"high {words.digits(high)}"))
+        dimensions.append(Dimension(1, begins, begins + wave.period, f"period {words.digits(wave.period)}"))
     return Scene(drawing, 1, tuple(dimensions), f"{report.ports.output} against {report.ports.clock}", key)
 
 
@@ -276,30 +277,30 @@ def _run(report: Report, broken: Counterexample | Trace, finding: Finding, key: 
     rows: list[tuple[str, Content]] = [
         ("claimed", finding.claim),
         ("start", broken.cause),
-        ("state", _values(start)),
+        ("state", values(start)),
     ]
     if loop is not None and loop.loop:
         told = f"{words.digits(loop.loop)} half-cycles, entered at half-cycle {words.digits(loop.lead)}"
         rows.append(("loop", told))
-    yield _definitions(rows)
+    yield definitions(rows)
     title = f"Counterexample to {finding.name}"
     caption = "Numbers count half-cycles from the start; what stands between the ticks breaks the claim."
     if left:
         caption += f" {words.plural(left, 'more register')} not drawn."
-    yield element("figure", waves.figure(_broken_scene(drawing, title, key)), element("figcaption", caption))
+    yield element("figure", waves.figure(broken_scene(drawing, title, key)), element("figcaption", caption))
 
 
-def _broken_scene(drawing: Drawing, title: str, key: str) -> Scene:
+def broken_scene(drawing: Drawing, title: str, key: str) -> Scene:
     """What is marked, measured. Of several outputs the first that is marked tells what launches its edges."""
-    marked = [(index, row) for index, row in enumerate(drawing.rows) if row.marked is not None]
-    output, row = marked[0] if marked else (1, drawing.rows[1])
-    dimensions = (_stretch(drawing, row, *row.marked),) if row.marked is not None else ()
-    return Scene(drawing, output, dimensions, title, key)
+    marked = [(index, row.marked) for index, row in enumerate(drawing.rows) if row.marked is not None]
+    dimensions = tuple(_stretch(drawing, index, *stretch) for index, stretch in marked)
+    return Scene(drawing, marked[0][0] if marked else 1, dimensions, title, key)
 
 
-def _stretch(drawing: Drawing, row: Row, begins: int, ends: int) -> Dimension:
+def _stretch(drawing: Drawing, index: int, begins: int, ends: int) -> Dimension:
     """The stretch that is broken, with its length where it reaches from edge to edge. Inputs may move in the middle
     of its first and of its last half-cycle; then an edge that is there bounds it."""
+    row = drawing.rows[index]
     per = drawing.per
     last = max(piece.ends for piece in drawing.pieces)
 
@@ -309,14 +310,15 @@ def _stretch(drawing: Drawing, row: Row, begins: int, ends: int) -> Dimension:
     first = next((at for at in range(begins, begins + per) if edge(at)), begins)
     then = next((at for at in range(ends, ends - per, -1) if edge(at)), max(ends, begins + 1))
     if not (edge(first) and edge(then) and first < then):
-        return Dimension(begins, max(ends, begins + 1), "here", fault=True)
+        return Dimension(index, begins, max(ends, begins + 1), "here", fault=True)
     length = Fraction(then - first, per)
     told = words.digits(int(length)) if length.denominator == 1 else number(length)
-    return Dimension(first, then, f"{told} half-cycle{'s' * (length != 1)}", fault=True)
+    return Dimension(index, first, then, f"{told} half-cycle{'s' * (length != 1)}", fault=True)
 
 
-def _values(values: Mapping[str, int]) -> Markup:
-    pairs = [element("code", f"{name}={value}") for name, value in values.items()]
+def values(named: Mapping[str, int]) -> Markup:
+    """Values by name, each in one piece."""
+    pairs = [element("code", f"{name}={value}") for name, value in named.items()]
     return joined(part for pair in pairs for part in (pair, Markup(" ")))
 
 
@@ -338,7 +340,7 @@ def _glitch(report: Report, shown: Glitch, key: str) -> Iterator[Markup]:
         f"{output} changes {words.plural(shown.changes, 'time')} at the {shown.edge} edge of {clock}, {why}"
     )
     yield element("p", element("strong", told))
-    yield _definitions([("from", _values(shown.state)), ("driven at", _source(shown.where))])
+    yield definitions([("from", values(shown.state)), ("driven at", _source(shown.where))])
     if len(shown.arrivals) <= MOST_ARRIVALS:
         scene = _arrivals_scene(report, shown, key)
         note = (
@@ -365,7 +367,7 @@ def _arrivals_scene(report: Report, shown: Glitch, key: str) -> Scene:
             values[at:] = [arrival.new] * (len(levels) - at)
         rows.append(_arrivals_row(name, values))
     changes = [i for i in range(1, len(levels)) if levels[i] != levels[i - 1]]
-    pulse = tuple(Dimension(a, b, "pulse", fault=True) for a, b in pairwise(changes[:2]))
+    pulse = tuple(Dimension(0, a, b, "pulse", fault=True) for a, b in pairwise(changes[:2]))
     # One column more, so that the last level is seen as well as the others.
     drawing = Drawing("arrival", 0, 0, tuple(rows), (Piece(0, len(levels)),))
     return Scene(drawing, 0, pulse, f"A pulse of {report.ports.output}", key, clocked=False)
@@ -397,7 +399,7 @@ def _round(report: Report, unsettled: Unsettled) -> Iterator[Markup]:
     def told(state: State) -> dict[str, int]:
         return system.describe(state)
 
-    yield element("p", "From: ", _values(told(unsettled.state)))
+    yield element("p", "From: ", values(told(unsettled.state)))
     names = list(told(unsettled.state))
     cycle = unsettled.cycle[:MOST_MICRO_STEPS]
     rows = [[str(step), *(str(told(state)[name]) for name in names)] for step, state in enumerate(cycle)]
@@ -505,11 +507,15 @@ def _graph(report: Report, small: states.Machine, place: Place) -> Iterator[Mark
 def _facts(report: Report, place: Place) -> Iterator[Markup]:
     rows = [(name.removesuffix(":"), told) for name, told in words.facts(report)]
     if rows:
-        yield _definitions(rows)
+        yield definitions(rows)
 
 
 def _obligations(report: Report, place: Place) -> Iterator[Markup]:
-    due = [(finding.name, each) for finding in report.findings for each in finding.obligations]
+    yield from obligations([(f.name, each) for f in report.findings for each in f.obligations])
+
+
+def obligations(due: Sequence[tuple[str, Obligation]]) -> Iterator[Markup]:
+    """Timing obligations, each with what it is due to."""
     if due:
         yield element(
             "p", "The proofs rest on these timing inequalities, which timing analysis has to discharge."
@@ -534,12 +540,17 @@ def _waivers(report: Report, place: Place) -> Iterator[Markup]:
 
 
 def _assumptions(report: Report, place: Place) -> Iterator[Markup]:
-    yield element("ul", (element("li", each) for each in report.assumptions))
+    yield from texts(report.assumptions)
 
 
 def _notes(report: Report, place: Place) -> Iterator[Markup]:
-    if report.notes:
-        yield element("ul", (element("li", note) for note in report.notes))
+    yield from texts(report.notes)
+
+
+def texts(told: Sequence[str]) -> Iterator[Markup]:
+    """A list of texts, if there are any."""
+    if told:
+        yield element("ul", (element("li", each) for each in told))
 
 
 def _limits(report: Report, place: Place) -> Iterator[Markup]:

@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from math import ceil
+from typing import Literal
 
 from prover.report.html.markup import Markup, element, joined, number
 from prover.report.wave import Drawing, Piece, Row, blocks, value_runs
@@ -42,6 +43,7 @@ MOST_TOLD = 24
 class Dimension:
     """A stretch of a row that is measured: from `begins` to `ends` (exclusive, in columns), and what it is."""
 
+    row: int
     begins: int
     ends: int
     text: str
@@ -50,7 +52,7 @@ class Dimension:
 
 @dataclass(frozen=True, slots=True)
 class Scene:
-    """What a figure shows: a drawing, the row of the output in it, what is measured there, and a name for it all.
+    """What a figure shows: a drawing, the row of the output in it, what is measured, and a name for it all.
 
     `key` is part of the identifiers in the file, different for each figure. `clocked`: the first row is the clock."""
 
@@ -60,6 +62,10 @@ class Scene:
     title: str
     key: str
     clocked: bool = True
+
+    def on(self, row: int) -> list[Dimension]:
+        """What is measured on a row."""
+        return [dimension for dimension in self.dimensions if dimension.row == row]
 
     @property
     def launches(self) -> list[tuple[int, bool]]:
@@ -100,7 +106,7 @@ class _Frame:
         tops, at = [], RULER
         for index in range(len(drawing.rows)):
             tops.append(at)
-            at += ROW + (DIMENSION * len(scene.dimensions) if index == scene.output else 0)
+            at += ROW + DIMENSION * len(scene.on(index))
         launched = frozenset(at for at, _ in scene.launches)
         column = _column(drawing)
         shown = sum(piece.length for piece in drawing.pieces if not piece.folded)
@@ -145,7 +151,9 @@ def _fold_width(piece: Piece, per: int) -> int:
 
 
 def _strip(scene: Scene, frame: _Frame, pieces: Sequence[Piece], count: int, of: int) -> Markup:
-    width = sum(frame.width(piece) for piece in pieces) + 4 + RIGHT
+    places = list(_placed(frame, pieces))
+    right = sum(frame.width(piece) for piece in pieces) + RIGHT
+    width = 4 + max(right, *(_reach(each, frame, places) for each in scene.dimensions), 0)
     key = f"{scene.key}-{count + 1}"
     title = scene.title + (f", part {count + 1} of {of}" if of > 1 else "")
     told = _described(scene) if count == 0 else "The figure above, continued."
@@ -153,7 +161,7 @@ def _strip(scene: Scene, frame: _Frame, pieces: Sequence[Piece], count: int, of:
         "svg",
         element("title", title, id=f"{key}-title"),
         element("desc", told, id=f"{key}-desc"),
-        _signals(scene, frame, pieces),
+        _signals(scene, frame, places),
         role="img",
         class_="wave",
         width=width,
@@ -177,8 +185,7 @@ def _names(drawing: Drawing, frame: _Frame) -> Markup:
     )
 
 
-def _signals(scene: Scene, frame: _Frame, pieces: Sequence[Piece]) -> Iterator[Markup]:
-    places = list(_placed(frame, pieces))
+def _signals(scene: Scene, frame: _Frame, places: Places) -> Iterator[Markup]:
     yield _ruler(scene.drawing, frame, places)
     yield _threads(scene, frame, places)
     for row, top in zip(scene.drawing.rows, frame.tops, strict=True):
@@ -186,8 +193,9 @@ def _signals(scene: Scene, frame: _Frame, pieces: Sequence[Piece]) -> Iterator[M
     for x, piece in places:
         if piece.folded:
             yield from _tear(x, piece, frame)
-    for line, dimension in enumerate(scene.dimensions):
-        yield from _dimension(dimension, frame.tops[scene.output] + ROW + line * DIMENSION, frame, places)
+    for index, top in enumerate(frame.tops):
+        for line, dimension in enumerate(scene.on(index)):
+            yield from _dimension(dimension, top + ROW + line * DIMENSION, frame, places)
 
 
 def _placed(frame: _Frame, pieces: Sequence[Piece]) -> Iterator[tuple[float, Piece]]:
@@ -339,33 +347,57 @@ def _box(a: float, b: float, high: float, low: float, opens: bool, closes: bool)
 
 def _dimension(shown: Dimension, top: float, frame: _Frame, places: Places) -> Iterator[Markup]:
     """A line between two ticks with its length on it, or beside it where that is longer than the line."""
-    begins = ends = None
-    for x, piece in places:
-        inside = max(shown.begins, piece.begins), min(shown.ends, piece.ends)
-        if inside[0] >= inside[1] and not shown.begins == shown.ends == piece.begins:
-            continue
-        scale = frame.width(piece) / piece.length
-        a, b = (x + (at - piece.begins) * scale for at in inside)
-        begins, ends = a if begins is None else begins, b
-    if begins is None or ends is None:
+    stretch = _inside(shown, frame, places)
+    if stretch is None:
         return
+    begins, ends = stretch
     y = top + 6
     path = f"M{number(begins)} {number(y)}H{number(ends)}"
     for x, tick in ((begins, _holds(places, shown.begins)), (ends, _holds(places, shown.ends - 1))):
         if tick:
             path += f"M{number(x)} {number(y - 5)}v10"
     yield element("path", d=path, class_="dimension fault" if shown.fault else "dimension")
-    room, need = ends - begins, len(shown.text) * CHARACTER + 10
-    right = max(x + frame.width(piece) for x, piece in places)
     kind = "measure fault" if shown.fault else "measure"
-    if need <= room:
+    need, side = _beside(shown, begins, ends, places, frame)
+    if side == "on":
         middle = (begins + ends) / 2
         yield element("rect", x=middle - need / 2, y=y - 7, width=need, height=14, class_="gap")
         yield element("text", shown.text, x=middle, y=y + 4, class_=kind)
-    elif ends + need <= right:
-        yield element("text", shown.text, x=ends + 6, y=y + 4, class_=f"{kind} after")
     else:
-        yield element("text", shown.text, x=begins - 6, y=y + 4, class_=f"{kind} before")
+        x = ends + 6 if side == "after" else begins - 6
+        yield element("text", shown.text, x=x, y=y + 4, class_=f"{kind} {side}")
+
+
+def _inside(shown: Dimension, frame: _Frame, places: Places) -> tuple[float, float] | None:
+    """From where to where a dimension is drawn, in pixels, in the pieces that it is in."""
+    begins = ends = None
+    for x, piece in places:
+        first, last = max(shown.begins, piece.begins), min(shown.ends, piece.ends)
+        if first < last:
+            scale = frame.width(piece) / piece.length
+            begins = x + (first - piece.begins) * scale if begins is None else begins
+            ends = x + (last - piece.begins) * scale
+    return None if begins is None or ends is None else (begins, ends)
+
+
+def _beside(
+    shown: Dimension, begins: float, ends: float, places: Places, frame: _Frame
+) -> tuple[float, Literal["on", "before", "after"]]:
+    """The room that a dimension's text needs, in pixels, and where it is put."""
+    need = len(shown.text) * CHARACTER + 10
+    right = max(x + frame.width(piece) for x, piece in places) + RIGHT
+    if need <= ends - begins:
+        return need, "on"
+    return need, "before" if ends + need > right and begins > need else "after"
+
+
+def _reach(shown: Dimension, frame: _Frame, places: Places) -> float:
+    """How far to the right a dimension and its text go, in pixels."""
+    stretch = _inside(shown, frame, places)
+    if stretch is None:
+        return 0
+    need, side = _beside(shown, *stretch, places, frame)
+    return stretch[1] + (need if side == "after" else 0)
 
 
 def _holds(places: Places, at: int) -> bool:
