@@ -30,8 +30,10 @@ from prover.expr import evaluate
 from prover.facts import LIMITS
 from prover.findings import Report
 from prover.ports import recognise
-from prover.report.html import recovery, render, states
+from prover.report.html import page as html_page
+from prover.report.html import recovery, render, render_several, states
 from prover.report.html.markup import element
+from prover.several import Outcome
 from prover.spec import Spec
 
 CASES = Path(__file__).parents[1] / "cases"
@@ -538,6 +540,18 @@ def test_several_dividers_are_one_file(tmp_path: Path) -> None:
     assert ["open" in part.attributes for part in parts] == [True, True, False]
     assert [len(part.of("verdicts")) for part in parts] == [0, 1, 1]
     assert "line 1" in rows[0][2] or "1" in parts[0].text
+
+
+def test_of_very_many_dividers_the_proved_ones_are_told_in_short(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(html_page, "MOST_WHOLE", 3)
+    proved, refuted = checked(tmp_path, BY_3, "3"), checked(tmp_path, BY_3, "3", high=2)
+    many = [Outcome(("one.v",), proved)] * 3 + [Outcome(("two.v",), refuted)]
+    root, whole = page(render_several(many)), page(render_several(many[1:]))
+    assert [bool(part.of("states")) for part in root.of("divider")] == [False] * 3 + [True]
+    assert all(part.of("states") for part in whole.of("divider"))
+    assert all(part.of("wave") for part in root.of("divider"))
 
 
 def test_standard_output_holds_the_page_alone(tmp_path: Path) -> None:

@@ -23,6 +23,9 @@ from prover.several import Outcome
 MOST_OPEN = 4
 """Dividers with something wrong that are shown at once; of more, the reader opens one after the other."""
 
+MOST_WHOLE = 100
+"""Dividers in one file up to which each is told whole."""
+
 SOUND = ("proved", "measured")
 
 
@@ -49,7 +52,8 @@ def render_several(found: Sequence[Outcome]) -> str:
     counted = ", ".join(f"{n} {word.lower()}" for word, n in Counter(words_of).items())
     head = element("header", _maker(), element("h1", count), element("p", f"{counted}.", class_="claim"))
     few = sum(word.lower() not in SOUND for word in words_of) <= MOST_OPEN
-    dividers = (_divider(outcome, i, few) for i, outcome in enumerate(found))
+    brief = len(found) > MOST_WHOLE
+    dividers = (_divider(outcome, i, few, brief) for i, outcome in enumerate(found))
     main = element("main", _index(found), dividers, id="main")
     return _file(f"{count}: {counted}", joined([head, main]))
 
@@ -136,17 +140,21 @@ def _top(outcome: Outcome) -> str:
     return outcome.report.ports.design.top if outcome.report else os.path.basename(outcome.name)
 
 
-def _divider(outcome: Outcome, index: int, few: bool) -> Markup:
-    """One divider, folded away if it is proved or measured, or one of many that are not."""
+def _divider(outcome: Outcome, index: int, few: bool, brief: bool) -> Markup:
+    """One divider, folded away if it is proved or measured, or one of many that are not. In brief what is proved is
+    told without its states."""
     word = several.word(outcome).lower()
     place = Place(_key(index), 3)
     heading = element("h2", _top(outcome), id=f"{place.key}top")
     body: list[Markup] = [heading]
     if outcome.report is not None:
-        made = parts(outcome.report, place)
+        brief = brief and word in SOUND
+        made = parts(outcome.report, place, left_out=("states",) if brief else ())
         report = outcome.report
         body += [*_opening(report), about(report.ports, report.each.shown if report.each else ())]
         body += [section(part, place) for part in made]
+        if brief:
+            body.append(element("p", "Its states are in a page of fewer dividers.", class_="quiet"))
     else:
         told = outcome.error or outcome.fault or outcome.open
         body += [element("p", line) for line in str(told).split("\n")]

@@ -51,8 +51,8 @@ Part = tuple[str, str, list[Markup]]
 """A section's identifier, its title, and what it holds."""
 
 
-def parts(report: Report, place: Place) -> list[Part]:
-    """The sections of a report in order, those without content left out."""
+def parts(report: Report, place: Place, left_out: Collection[str] = ()) -> list[Part]:
+    """The sections of a report in order, but for those without content and those to be left out."""
     makers: list[tuple[str, str, Callable[[Report, Place], Iterator[Markup]]]] = [
         ("verdicts", "Verdicts", _verdicts),
         ("values", "Values", _each_value),
@@ -68,7 +68,11 @@ def parts(report: Report, place: Place) -> list[Part]:
         ("notes", "Notes", _notes),
         ("limits", "Limits", _limits),
     ]
-    made = [(place.key + key, title, list(maker(report, place))) for key, title, maker in makers]
+    made = [
+        (place.key + key, title, list(maker(report, place)))
+        for key, title, maker in makers
+        if key not in left_out
+    ]
     return [part for part in made if part[2]]
 
 
