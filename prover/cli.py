@@ -36,6 +36,7 @@ from prover.spec import (
 )
 
 if TYPE_CHECKING:
+    from prover.compared import Comparison
     from prover.findings import Report
     from prover.pair import Pairing
     from prover.pool import Crew
@@ -292,6 +293,7 @@ PAIRING: tuple[Decorator, ...] = (
     JSON,
     HTML,
     _written("--vcd", "Write the waves that differ."),
+    *CERTIFYING,
 )
 SETTINGS: dict[str, Any] = {"help_option_names": ["-h", "--help"], "max_content_width": 80}
 
@@ -356,6 +358,7 @@ def compare(
     json_path: str | None,
     html_path: str | None,
     vcd_path: str | None,
+    certificate_path: str | None,
     **options: Any,
 ) -> Status:
     """Prove or refute that two dividers have the same output in every half-cycle, from reset or initial values,
@@ -369,7 +372,8 @@ def compare(
     """
     of_old = (old, *files, *options.pop("old_files"))
     of_new = (new, *files, *options.pop("new_files"))
-    return _compare(of_old, of_new, _pairing(options), Targets(json_path, html_path, vcd_path))
+    targets = Targets(json=json_path, html=html_path, vcd=vcd_path, certificate=certificate_path)
+    return _compare(of_old, of_new, _pairing(options), targets)
 
 
 @main.command(short_help="Check a certificate again, with other solvers if you like.")
@@ -391,7 +395,7 @@ def compare(
 def recheck(
     certificate: str, solver: str, sources: str | None, by_clauses: bool, effort: str | None
 ) -> Status:
-    """Check a certificate that `check --certificate` wrote: the sources are read anew, all that it claims is derived
+    """Check a certificate that `check` or `compare` wrote: the sources are read anew, all that it claims is derived
     again and compared, and its obligations are refuted again. No search engine takes part.
 
     \b
@@ -600,6 +604,8 @@ def _compare(old: Sequence[str], new: Sequence[str], pairing: Pairing, targets: 
             from prover.report import html
 
             results.append(Result(targets.html, html.render_compared(found)))
+        certified, remarks = _pair_certificate(found, targets.certificate, old, new, progress.tell)
+        results += certified
         check_targets(
             [result.path for result in results], [*found.pair.old.design.files, *found.pair.new.design.files]
         )
@@ -608,7 +614,29 @@ def _compare(old: Sequence[str], new: Sequence[str], pairing: Pairing, targets: 
         write_files([result for result in results if result.path != STANDARD_OUTPUT])
     if piped or STANDARD_OUTPUT not in targets.paths():
         _print(text)
+    for remark in remarks:
+        _complain(remark)
     return {"proved": Status.PROVED, "refuted": Status.REFUTED, "open": Status.OPEN}[found.verdict]
+
+
+def _pair_certificate(
+    found: Comparison,
+    path: str | None,
+    old: Sequence[str],
+    new: Sequence[str],
+    tell: Callable[[str], None],
+) -> tuple[list[Result], list[str]]:
+    """The certificate of a comparison, or why there is none."""
+    if path is None:
+        return [], []
+    from prover.effort import Effort
+    from prover.report.pair_certificate import certify
+
+    text = certify(found, old, new, Effort(found.pairing.effort, tell))
+    if text is not None:
+        return [Result(path, text)], []
+    why = "an open verdict" if found.verdict == "open" else "what the verdict rests on can't be written"
+    return [], [f"note: no certificate: {why}"]
 
 
 def _wave_file(path: str) -> str:

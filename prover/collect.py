@@ -31,36 +31,45 @@ from prover.tables import Ranking, Rounds
 Found = TypeVar("Found")
 
 
-def collect(report: Report, effort: Effort) -> Evidence:
-    """The evidence for the report's verdicts, as far as it can be written."""
+def collect(report: Report, effort: Effort, glitches: bool = True) -> Evidence:
+    """The evidence for the report's verdicts, as far as it can be written; without that on glitches if so told."""
     ports, spec, rhythm = report.ports, report.spec, report.rhythm
     answers = rhythm.settling.answers
     if rhythm.settling.depth is None:
         return Evidence(answers, False, False, (), (), None, None, (), None, (), ())
     whole, _ = settle(
-        ports.design, ports.clock, ports.running, ports.output_value, effort, ask=_repeated(answers)
+        ports.design, ports.clock, ports.running, ports.output_value, effort, ask=repeated(answers)
     )
-    machine = rhythm.system
-    word = machine.words[0][1] if machine.words else ()
-    kept = len(machine.describe((0,) * len(machine.variables)))
-    inner = cone(whole) if kept < len(whole.variables) or machine.slices else whole
     hold = _within(lambda: _hold(rhythm, effort))
     followed = rhythm.scope != "reset" or hold is not None
     goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
-    found = Evidence(
+    found = replace(
+        of_machine(rhythm.system, whole, answers),
+        reset=hold,
+        starts=tuple(track(orbit) for orbit in rhythm.orbits) if followed else (),
+        everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
+        lassos=_within(lambda: _lassos(report, whole, effort)) or (),
+    )
+    return _with_glitches(report, whole, found, goal, effort) if glitches else found
+
+
+def of_machine(machine: System, whole: System, answers: tuple[Model | None, ...]) -> Evidence:
+    """Evidence of nothing but the machine that the engines worked on, as derived from the whole divider."""
+    kept = len(machine.describe((0,) * len(machine.variables)))
+    inner = cone(whole) if kept < len(whole.variables) or machine.slices else whole
+    return Evidence(
         settling=answers,
         cone=inner is not whole,
         parts=kept < len(inner.variables) or bool(machine.slices),
         gray=tuple(register for _, register in machine.grays),
-        word=word,
+        word=machine.words[0][1] if machine.words else (),
         matrix=_matrix(machine, inner),
-        reset=hold,
-        starts=tuple(_track(orbit) for orbit in rhythm.orbits) if followed else (),
-        everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
-        lassos=_within(lambda: _lassos(report, whole, effort)) or (),
+        reset=None,
+        starts=(),
+        everywhere=None,
+        lassos=(),
         glitches=(),
     )
-    return _with_glitches(report, whole, found, goal, effort)
 
 
 def _with_glitches(report: Report, whole: System, found: Evidence, goal: Goal, effort: Effort) -> Evidence:
@@ -76,7 +85,7 @@ def _with_glitches(report: Report, whole: System, found: Evidence, goal: Goal, e
         run = follow(machine, recode.placed(state, whole, machine), effort)
         if not good.none and good_since(run, goal) != 0:
             return None
-        shown.append(Lasso(_track(run), state))
+        shown.append(Lasso(track(run), state))
         return run
 
     asked = glitch.find(
@@ -94,7 +103,7 @@ def _within(work: Callable[[], Found]) -> Found | None:
         return None
 
 
-def _repeated(answers: Sequence[Model | None]) -> Callable[[Expr], Model | None]:
+def repeated(answers: Sequence[Model | None]) -> Callable[[Expr], Model | None]:
     """The answers once more, without asking the solver."""
     rest = iter(answers)
 
@@ -121,7 +130,7 @@ def _matrix(machine: System, inner: System) -> Matrix | None:
     raise InternalError("a count of steps that is none")
 
 
-def _track(orbit: Orbit) -> Track:
+def track(orbit: Orbit) -> Track:
     """The orbit, shorter where an engine followed it beat by beat."""
     lead, loop = (path.folded(items, orbit.widths) for items in (orbit.lead, orbit.loop))
     return Track(lead, loop)
@@ -143,7 +152,7 @@ def _hold(rhythm: Rhythm, effort: Effort) -> Hold | None:
         held.states,
         settling.answers,
         None if short is None else short.start,
-        tuple(_track(run) for run in {run.start: run for run in runs}.values()),
+        tuple(track(run) for run in {run.start: run for run in runs}.values()),
     )
 
 
@@ -229,7 +238,7 @@ def _lassos(report: Report, whole: System, effort: Effort) -> tuple[Lasso, ...]:
     for run in runs:
         start = _whole(run.start, whole, rhythm.system, effort)
         if start is not None:
-            out[Lasso(_track(run), start)] = None
+            out[Lasso(track(run), start)] = None
     return tuple(out)
 
 

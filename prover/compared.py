@@ -365,20 +365,41 @@ def of_loops(evidence: Apiece, lag: int | None, effort: Effort) -> Outcome:
     if why:
         return Outcome("open", why, obligations=obligations)
     together = [pair for each in evidence.followed for pair in _together(each)]
-    facts: dict[str, Fact] = {}
-    worst = [rhythm.recovery.worst if rhythm.recovery else None for _, rhythm in rhythms]
-    known = [each for each in worst if each is not None]
-    after = "once both have settled"
-    if len(known) == len(worst):
-        facts["settled_half_cycles"] = max(known)
-        after = f"from half-cycle {max(known)} on" if max(known) else "at once"
+    facts, after = _after([rhythm for _, rhythm in rhythms])
     judged = _rotations(together, after, effort) if lag is None else _with_lag(together, lag, effort)
     if judged.verdict == "proved" and lag is not None:
         judged = replace(judged, says=f"the outputs are equal {after}, whatever the two power-up states")
-    method = "the loops of all power-up states of both, compared with each other"
+    method = "both runs replayed on their machines" if judged.verdict == "refuted" else LOOPS_COMPARED
     if len(evidence.followed) > 1:
         method += f"; each of {len(evidence.followed)} values of the held inputs"
     return replace(judged, method=method, facts=facts, obligations=obligations, evidence=evidence)
+
+
+LOOPS_COMPARED = "the loops of all power-up states of both, compared with each other"
+
+
+def _after(rhythms: Sequence[Rhythm]) -> tuple[dict[str, Fact], str]:
+    """After how many half-cycles all of them show what they come to show, as a fact and in words."""
+    worst = [rhythm.recovery.worst if rhythm.recovery else None for rhythm in rhythms]
+    known = [each for each in worst if each is not None]
+    if len(known) < len(worst):
+        return {}, "once both have settled"
+    return {"settled_half_cycles": max(known)}, f"from half-cycle {max(known)} on" if max(
+        known
+    ) else "at once"
+
+
+def of_wave(rhythms: Sequence[tuple[str, Rhythm]]) -> Outcome:
+    """What it comes to that every power-up state of all these dividers comes to show one and the same wave."""
+    obligations, why = timing([(side, rhythm.settling) for side, rhythm in rhythms])
+    if why:
+        return Outcome("open", why, obligations=obligations)
+    facts, after = _after([rhythm for _, rhythm in rhythms])
+    return Outcome("proved", _rotated(after), LOOPS_COMPARED, facts=facts, obligations=obligations)
+
+
+def _rotated(after: str) -> str:
+    return f"the outputs are equal {after}, but for a lag that the two power-up states decide"
 
 
 def _rotations(pairs: Sequence[_Pair], after: str, effort: Effort) -> Outcome:
@@ -396,8 +417,7 @@ def _rotations(pairs: Sequence[_Pair], after: str, effort: Effort) -> Outcome:
                 f"two loops with different waves, whatever the lag; without one they differ in {shown.text}"
             )
             return Outcome("refuted", text, difference=replace(shown, text=text))
-    says = f"the outputs are equal {after}, but for a lag that the two power-up states decide"
-    return Outcome("proved", says)
+    return Outcome("proved", _rotated(after))
 
 
 # -- side by side ------------------------------------------------------------------------------------------

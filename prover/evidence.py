@@ -224,68 +224,68 @@ def _item(item: Item) -> Object:
 
 def read(value: Any) -> Evidence:
     """The evidence in an object. Raises Malformed."""
-    of = _fields(
+    of = fields_of(
         value,
         "evidence",
         "cone parts gray word matrix settling reset starts everywhere lassos glitches paths",
     )
-    paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(_list(of["paths"], "paths"))]
+    paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(list_of(of["paths"], "paths"))]
 
     def track(x: Any, where: str) -> Track:
         return Track(path(x["lead"], f"{where}/lead"), path(x["loop"], f"{where}/loop"))
 
     def path(x: Any, where: str) -> Path:
-        return () if x is None else paths[_number(x, where, 0, len(paths) - 1)]
+        return () if x is None else paths[number_of(x, where, 0, len(paths) - 1)]
 
     def start(x: Any, where: str) -> Track:
-        return track(_fields(x, where, "lead loop"), where)
+        return track(fields_of(x, where, "lead loop"), where)
 
     def lasso(x: Any, where: str) -> Lasso:
-        of = _fields(x, where, "lead loop start")
-        return Lasso(track(of, where), _state(of["start"], f"{where}/start"))
+        of = fields_of(x, where, "lead loop start")
+        return Lasso(track(of, where), state_of(of["start"], f"{where}/start"))
 
     for name in ("cone", "parts"):
         if not isinstance(of[name], bool):
             raise Malformed(f"{name}: neither true nor false")
     return Evidence(
-        settling=_each(of["settling"], "settling", _answer),
+        settling=each_of(of["settling"], "settling", answer_of),
         cone=of["cone"],
         parts=of["parts"],
-        gray=_each(of["gray"], "gray", _text),
-        word=_each(of["word"], "word", _text),
+        gray=each_of(of["gray"], "gray", text_of),
+        word=each_of(of["word"], "word", text_of),
         matrix=None if of["matrix"] is None else _read_matrix(of["matrix"]),
         reset=None if of["reset"] is None else _read_hold(of["reset"], start),
-        starts=_each(of["starts"], "starts", start),
+        starts=each_of(of["starts"], "starts", start),
         everywhere=_read_everywhere(of["everywhere"], track),
-        lassos=_each(of["lassos"], "lassos", lasso),
-        glitches=_each(of["glitches"], "glitches", _answer),
+        lassos=each_of(of["lassos"], "lassos", lasso),
+        glitches=each_of(of["glitches"], "glitches", answer_of),
     )
 
 
 def _read_hold(value: Any, run: Callable[[Any, str], Track]) -> Hold:
-    of = _fields(value, "reset", "needs slowest states settling short runs")
-    needs = _each(of["needs"], "reset/needs", lambda x, where: _number(x, where, 0, LONGEST))
-    slowest = _each(of["slowest"], "reset/slowest", _state_or_none)
+    of = fields_of(value, "reset", "needs slowest states settling short runs")
+    needs = each_of(of["needs"], "reset/needs", lambda x, where: number_of(x, where, 0, LONGEST))
+    slowest = each_of(of["slowest"], "reset/slowest", _state_or_none)
     if len(needs) != 2 or len(slowest) != 2:
         raise Malformed("reset: not for two levels of the clock")
     return Hold(
         (needs[0], needs[1]),
         (slowest[0], slowest[1]),
-        _each(of["states"], "reset/states", _state),
-        _each(of["settling"], "reset/settling", _answer),
+        each_of(of["states"], "reset/states", state_of),
+        each_of(of["settling"], "reset/settling", answer_of),
         _state_or_none(of["short"], "reset/short"),
-        _each(of["runs"], "reset/runs", run),
+        each_of(of["runs"], "reset/runs", run),
     )
 
 
 def _read_matrix(value: Any) -> Matrix:
-    of = _fields(value, "matrix", "columns fixed start moving level")
+    of = fields_of(value, "matrix", "columns fixed start moving level")
     return Matrix(
-        _each(of["columns"], "matrix/columns", lambda x, where: _number(x, where, 0)),
-        _number(of["fixed"], "matrix/fixed", 0),
-        _number(of["start"], "matrix/start", 0),
-        _number(of["moving"], "matrix/moving", 0, 1),
-        _number(of["level"], "matrix/level", 0, 1),
+        each_of(of["columns"], "matrix/columns", lambda x, where: number_of(x, where, 0)),
+        number_of(of["fixed"], "matrix/fixed", 0),
+        number_of(of["start"], "matrix/start", 0),
+        number_of(of["moving"], "matrix/moving", 0, 1),
+        number_of(of["level"], "matrix/level", 0, 1),
     )
 
 
@@ -296,16 +296,16 @@ def _read_everywhere(
         return None
     kind = value.get("kind") if isinstance(value, dict) else None
     if kind == "cover":
-        of = _fields(value, "everywhere", "kind stages")
-        return _each(of["stages"], "stages", lambda x, where: _read_layer(x, where, track))
+        of = fields_of(value, "everywhere", "kind stages")
+        return each_of(of["stages"], "stages", lambda x, where: _read_layer(x, where, track))
     if kind == "ranking":
-        of = _fields(value, "everywhere", "kind bound phase rank")
+        of = fields_of(value, "everywhere", "kind bound phase rank")
         phase, rank = _numbers(of["phase"], "phase"), _numbers(of["rank"], "rank")
-        return Ranking(phase, rank, _number(of["bound"], "bound", 0))
+        return Ranking(phase, rank, number_of(of["bound"], "bound", 0))
     if kind == "loops":
-        of = _fields(value, "everywhere", "kind members levels distance")
-        levels = _each(of["levels"], "levels", _levels)
-        members = _each(of["members"], "members", _numbers)
+        of = fields_of(value, "everywhere", "kind members levels distance")
+        levels = each_of(of["levels"], "levels", _levels)
+        members = each_of(of["members"], "members", _numbers)
         if len(members) != len(levels):
             raise Malformed("levels: not as many as loops")
         return Rounds(members, levels, _numbers(of["distance"], "distance"))
@@ -313,25 +313,25 @@ def _read_everywhere(
 
 
 def _read_layer(value: Any, where: str, track: Callable[[Any, str], Track]) -> Layer:
-    of = _fields(value, where, "registers unrolled merge bound orbits")
+    of = fields_of(value, where, "registers unrolled merge bound orbits")
 
     def covered(x: Any, where: str) -> Covered:
-        of = _fields(x, where, "lead loop recovery spread")
+        of = fields_of(x, where, "lead loop recovery spread")
         spread = None
         if of["spread"] is not None:
-            pair = _list(of["spread"], f"{where}/spread")
+            pair = list_of(of["spread"], f"{where}/spread")
             if len(pair) != 2:
                 raise Malformed(f"{where}/spread: not a count and a vector")
-            spread = (_number(pair[0], f"{where}/spread", 1), _state(pair[1], f"{where}/spread"))
-        return Covered(track(of, where), _number(of["recovery"], f"{where}/recovery", 0), spread)
+            spread = (number_of(pair[0], f"{where}/spread", 1), state_of(pair[1], f"{where}/spread"))
+        return Covered(track(of, where), number_of(of["recovery"], f"{where}/recovery", 0), spread)
 
     unrolled = of["unrolled"]
     return Layer(
-        registers=_each(of["registers"], f"{where}/registers", _text),
-        orbits=_each(of["orbits"], f"{where}/orbits", covered),
-        unrolled=None if unrolled is None else _number(unrolled, f"{where}/unrolled", 0, LONGEST),
-        merge=_number(of["merge"], f"{where}/merge", 0, LONGEST),
-        bound=_number(of["bound"], f"{where}/bound", 0),
+        registers=each_of(of["registers"], f"{where}/registers", text_of),
+        orbits=each_of(of["orbits"], f"{where}/orbits", covered),
+        unrolled=None if unrolled is None else number_of(unrolled, f"{where}/unrolled", 0, LONGEST),
+        merge=number_of(of["merge"], f"{where}/merge", 0, LONGEST),
+        bound=number_of(of["bound"], f"{where}/bound", 0),
     )
 
 
@@ -339,41 +339,43 @@ def _path(value: Any, where: str, depth: int) -> Path:
     if depth > DEEPEST:
         raise Malformed(f"{where}: more than {DEEPEST} repeats within one another")
     items: list[Item] = []
-    for i, x in enumerate(_list(value, where)):
+    for i, x in enumerate(list_of(value, where)):
         here = f"{where}/{i}"
         if isinstance(x, dict) and "times" in x:
-            of = _fields(x, here, "times stride body")
+            of = fields_of(x, here, "times stride body")
             body = _path(of["body"], f"{here}/body", depth + 1)
             items.append(
-                Repeat(_number(of["times"], f"{here}/times", 1), _state(of["stride"], f"{here}/stride"), body)
+                Repeat(
+                    number_of(of["times"], f"{here}/times", 1), state_of(of["stride"], f"{here}/stride"), body
+                )
             )
         else:
-            of = _fields(x, here, "state level")
+            of = fields_of(x, here, "state level")
             items.append(
-                Beat(_state(of["state"], f"{here}/state"), _number(of["level"], f"{here}/level", 0, 1))
+                Beat(state_of(of["state"], f"{here}/state"), number_of(of["level"], f"{here}/level", 0, 1))
             )
     if not items:
         raise Malformed(f"{where}: nothing")
     return tuple(items)
 
 
-def _fields(value: Any, where: str, names: str) -> Mapping[str, Any]:
+def fields_of(value: Any, where: str, names: str) -> Mapping[str, Any]:
     if not isinstance(value, dict) or set(value) != set(names.split()):
         raise Malformed(f"{where}: not an object of {names.replace(' ', ', ')}")
     return value
 
 
-def _list(value: Any, where: str) -> list[Any]:
+def list_of(value: Any, where: str) -> list[Any]:
     if not isinstance(value, list):
         raise Malformed(f"{where}: not a list")
     return value
 
 
-def _each(value: Any, where: str, read: Callable[[Any, str], Read]) -> tuple[Read, ...]:
-    return tuple(read(x, f"{where}/{i}") for i, x in enumerate(_list(value, where)))
+def each_of(value: Any, where: str, read: Callable[[Any, str], Read]) -> tuple[Read, ...]:
+    return tuple(read(x, f"{where}/{i}") for i, x in enumerate(list_of(value, where)))
 
 
-def _number(value: Any, where: str, least: int, most: int | None = None) -> int:
+def number_of(value: Any, where: str, least: int, most: int | None = None) -> int:
     if not isinstance(value, int) or isinstance(value, bool):
         raise Malformed(f"{where}: not a whole number")
     if value < least or (most is not None and value > most):
@@ -382,36 +384,36 @@ def _number(value: Any, where: str, least: int, most: int | None = None) -> int:
 
 
 def _numbers(value: Any, where: str) -> tuple[int, ...]:
-    return _each(value, where, lambda x, here: _number(x, here, -1))
+    return each_of(value, where, lambda x, here: number_of(x, here, -1))
 
 
-def _state(value: Any, where: str) -> State:
-    return _each(value, where, lambda x, here: _number(x, here, 0))
+def state_of(value: Any, where: str) -> State:
+    return each_of(value, where, lambda x, here: number_of(x, here, 0))
 
 
 def _state_or_none(value: Any, where: str) -> State | None:
-    return None if value is None else _state(value, where)
+    return None if value is None else state_of(value, where)
 
 
-def _text(value: Any, where: str) -> str:
+def text_of(value: Any, where: str) -> str:
     if not isinstance(value, str):
         raise Malformed(f"{where}: not a text")
     return value
 
 
 def _levels(value: Any, where: str) -> tuple[int, ...]:
-    text = _text(value, where)
+    text = text_of(value, where)
     if not set(text) <= {"0", "1"}:
         raise Malformed(f"{where}: not levels")
     return tuple(map(int, text))
 
 
-def _answer(value: Any, where: str) -> Model | None:
+def answer_of(value: Any, where: str) -> Model | None:
     if value is None:
         return None
     if not isinstance(value, dict):
         raise Malformed(f"{where}: neither null nor values")
-    return {name: _number(x, f"{where}/{name}", 0) for name, x in value.items()}
+    return {name: number_of(x, f"{where}/{name}", 0) for name, x in value.items()}
 
 
 def layers_of(stages: Sequence[Any]) -> tuple[Layer, ...]:

@@ -452,6 +452,16 @@ def rebuild(node: Expr, args: Sequence[Expr]) -> Expr:
     return builder(*args, *(int(p) for p in node.params))
 
 
+def made(op: str, args: Sequence[Expr], params: Sequence[int]) -> Expr:
+    """The operator applied to operands, simplified. Raises KeyError, TypeError or InternalError where that is no
+    expression."""
+    if op in _BUILDERS:
+        return _BUILDERS[op](*args, *params)
+    if OPERATORS[op].arity != 2 or params:
+        raise TypeError(op)
+    return binary(op, *args)
+
+
 # -- walks -------------------------------------------------------------------------------------------------
 
 

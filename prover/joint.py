@@ -10,7 +10,8 @@ can answer them without a solver.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+import itertools
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -21,8 +22,8 @@ from prover.expr import Expr
 from prover.pair import Pair, side_by_side
 from prover.ports import Ports
 from prover.settling import Ask, Settling, bound, settle
-from prover.solve import Model, constant, find
-from prover.system import Inputs, Moment, System, settled_when
+from prover.solve import Model, find
+from prover.system import Inputs, Moment, State, System, settled_when
 
 LONGEST_LAG = 64
 """Half-cycles that an output is made to wait in a queue."""
@@ -104,6 +105,20 @@ def build(pair: Pair, lag: int, effort: Effort, ask: Ask | None = None) -> Joint
             f"a lag of more than {LONGEST_LAG} half-cycles is followed only where inputs have few values"
         )
     return _Builder(pair, effort, ask).build(lag)
+
+
+def unknowns(start: Start) -> list[Expr]:
+    """What is not known of a start."""
+    return e.variables([*start.rest, *start.first, start.differs])
+
+
+def starts_of(start: Start) -> Iterator[tuple[Model, State, bool]]:
+    """Every state of a start: what is not known, the first state, and whether the outputs differ before it."""
+    free = unknowns(start)
+    run = e.compile_step([*start.first, start.differs], [v.name for v in free])
+    for values in itertools.product(*(range(1 << v.width) for v in free)):
+        *first, differs = run(*values)
+        yield {v.name: x for v, x in zip(free, values, strict=True)}, tuple(first), bool(differs)
 
 
 def moved(name: str) -> str:
@@ -279,9 +294,8 @@ class _Builder:
         values |= self.inputs if wanted == 0 else self._inputs_in(0)
         registers = _applied([rest[n] for n in self.names], values, "rest")
         values |= dict(zip(self.names, registers, strict=True))
-        unknown = {r.name for r in self.design.registers}
         for count in range(limit):
-            if wanted is None and not self._depends(values, unknown):
+            if wanted is None and not self._hanging(values):
                 return count, values
             stepped = _applied([edge[n] for n in (*self.names, self.clock)], values, f"{count}")
             values |= dict(zip((*self.names, self.clock), stepped, strict=True))
@@ -290,7 +304,9 @@ class _Builder:
             registers = _applied([move[n] for n in self.names], {**values, **after}, f"{count} moved")
             values |= dict(zip(self.names, registers, strict=True)) | following
             self.effort.check()
-        return limit, values
+        hanging = self._hanging(values)
+        zeros = {r.name: e.const(0, r.width) for r in self.design.registers}
+        return limit, {n: x if n in hanging else e.substitute([x], zeros)[0] for n, x in values.items()}
 
     def _inputs_in(self, half_cycle: int) -> Values:
         """The shared inputs in a half-cycle of reset: those that move are what they like."""
@@ -299,13 +315,17 @@ class _Builder:
             for n, x in self.inputs.items()
         }
 
-    def _depends(self, values: Values, unknown: set[str]) -> bool:
-        """Whether some register still hangs on what it was before reset."""
+    def _hanging(self, values: Values) -> set[str]:
+        """The registers that still hang on what some register was before reset."""
+        others = {r.name: e.var(f"{r.name} else", r.width) for r in self.design.registers}
+        found = set()
         for name in self.names:
             value = values[name]
-            if {v.name for v in e.variables([value])} & unknown and constant(value) is None:
-                return True
-        return False
+            if {v.name for v in e.variables([value])} & set(self.names):
+                (other,) = e.substitute([value], others)
+                if self.ask(e.bvnot(e.eq(value, other))) is not None:
+                    found.add(name)
+        return found
 
     def _initial(self) -> Iterable[tuple[str, int, Values]]:
         known = self.both.running.moment(self.design.inputs)

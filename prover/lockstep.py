@@ -19,7 +19,7 @@ from typing import Any
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.joint import Joint, Start
+from prover.joint import Joint, Start, starts_of, unknowns
 from prover.solve import Model
 
 State = tuple[int, ...]
@@ -68,20 +68,6 @@ class Stepper:
     @property
     def free_bits(self) -> int:
         return sum(w for _, w in (*self.joint.moves, *self.joint.choices))
-
-
-def unknowns(start: Start) -> list[Expr]:
-    """What is not known of a start."""
-    return e.variables([*start.rest, *start.first, start.differs])
-
-
-def starts_of(start: Start) -> Iterator[tuple[Model, State, bool]]:
-    """Every state of a start: what is not known, the first state, and whether the outputs differ before it."""
-    free = unknowns(start)
-    run = e.compile_step([*start.first, start.differs], [v.name for v in free])
-    for values in itertools.product(*(range(1 << v.width) for v in free)):
-        *first, differs = run(*values)
-        yield {v.name: x for v, x in zip(free, values, strict=True)}, tuple(first), bool(differs)
 
 
 def listable(joint: Joint) -> bool:

@@ -61,8 +61,8 @@ class Rebuilt:
 def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Rebuilt:
     """The rhythm that the evidence shows of the divider, and its obligations. Raises Rejected, and UserError for a
     scope that the divider doesn't have."""
-    owed = _Obligations()
-    ask = _Replay(evidence.settling, "micro-steps", owed)
+    owed = Owed()
+    ask = Replay(evidence.settling, "micro-steps", owed)
     whole, settling = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=ask.answer
     )
@@ -91,7 +91,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     return Rebuilt(whole, rhythm, owed.listed())
 
 
-class _Obligations:
+class Owed:
     """Obligations so far, each goal once; what is false by its form is kept for what its name tells."""
 
     def __init__(self) -> None:
@@ -107,10 +107,10 @@ class _Obligations:
         return tuple(self._made.values())
 
 
-class _Replay:
+class Replay:
     """Answers questions as the evidence does. That there is no such state is owed; values for one are put in."""
 
-    def __init__(self, answers: Sequence[Model | None], name: str, owed: _Obligations) -> None:
+    def __init__(self, answers: Sequence[Model | None], name: str, owed: Owed) -> None:
         self.answers = answers
         self.name = name
         self.owed = owed
@@ -172,11 +172,11 @@ def _with_glitches(
     evidence: Evidence,
     goal: Goal,
     runs: Mapping[State, Orbit],
-    owed: _Obligations,
+    owed: Owed,
 ) -> Rhythm:
     """The rhythm with what the answers say of glitches, owing that there are no others."""
     good = good_of(rhythm, evidence.everywhere, goal)
-    ask = _Replay(evidence.glitches, "glitches", owed)
+    ask = Replay(evidence.glitches, "glitches", owed)
 
     def follow(state: State) -> Orbit | None:
         run = runs.get(state)
@@ -190,7 +190,7 @@ def _with_glitches(
 # -- the machine that the evidence speaks of ---------------------------------------------------------------
 
 
-def machine_of(whole: System, evidence: Evidence, owed: _Obligations) -> System:
+def machine_of(whole: System, evidence: Evidence, owed: Owed) -> System:
     """The machine without the registers that are left out, and with those that are read as a word joined."""
     inner = cone(whole) if evidence.cone else whole
     if evidence.cone and inner is whole:
@@ -211,7 +211,7 @@ def machine_of(whole: System, evidence: Evidence, owed: _Obligations) -> System:
     return recode.joined(numbered, evidence.word)
 
 
-def _numbered(system: System, registers: Sequence[str], owed: _Obligations) -> System:
+def _numbered(system: System, registers: Sequence[str], owed: Owed) -> System:
     """The system with registers in Gray code read as numbers, owing that this is what its steps come to."""
     if not registers:
         return system
@@ -222,7 +222,7 @@ def _numbered(system: System, registers: Sequence[str], owed: _Obligations) -> S
     return numbered
 
 
-def _counted(inner: System, matrix: Matrix, owed: _Obligations) -> System:
+def _counted(inner: System, matrix: Matrix, owed: Owed) -> System:
     """The machine as a count of the matrix's powers, owing that this is what its step and its output come to."""
     logs = linear.Logs(inner.variables[:-1], matrix.columns, matrix.fixed, matrix.start)
     if len(matrix.columns) > linear.WIDEST:
@@ -235,15 +235,17 @@ def _counted(inner: System, matrix: Matrix, owed: _Obligations) -> System:
     return linear.counter(inner, logs, matrix.moving, matrix.level)
 
 
-def orbit_of(track: Track, system: System, where: str) -> Orbit:
-    """A track as an orbit of the system. Raises Rejected where its states are none of the system's."""
+def orbit_of(track: Track, system: System, where: str, looked_through: bool = True) -> Orbit:
+    """A track as an orbit of the system. Raises Rejected where its states are none of the system's, or its output
+    changes too often to be looked through where it has to be."""
     widths = tuple(width for _, width in system.variables)
     for items in (track.lead, track.loop):
         _check_items(items, widths, where)
     if not track.lead and not track.loop:
         raise Rejected(f"{where}: no states")
     made = Orbit(track.lead, track.loop, widths, "" if track.loop else "not followed to its loop")
-    if max(path.changes(items, LONGEST_ROUND) for items in (track.lead, track.loop)) > LONGEST_ROUND:
+    changes = max(path.changes(items, LONGEST_ROUND) for items in (track.lead, track.loop))
+    if looked_through and changes > LONGEST_ROUND:
         raise Rejected(f"{where}: its output changes too often to be looked through")
     return made
 
@@ -288,10 +290,10 @@ def _starts(
     return ("any", (), "") if isinstance(found, str) else ("initial", found, "")
 
 
-def _held(ports: Ports, hold: Hold, owed: _Obligations, effort: Effort) -> Under:
+def _held(ports: Ports, hold: Hold, owed: Owed, effort: Effort) -> Under:
     """What reset leaves, owing that it leaves these states from everywhere, that each of them really occurs, and that
     it needs as long as is said."""
-    ask = _Replay(hold.settling, "micro-steps under reset", owed)
+    ask = Replay(hold.settling, "micro-steps under reset", owed)
     system, settling = settle(
         ports.design, ports.clock, ports.resetting, ports.output_value, effort, ask=ask.answer, races=False
     )
@@ -323,7 +325,7 @@ def _step(system: System, state: State) -> Step:
     return Step(state, tuple(after), level, ())
 
 
-def _taken(system: System, start: State, count: int, owed: _Obligations) -> list[State]:
+def _taken(system: System, start: State, count: int, owed: Owed) -> list[State]:
     """The states that so many half-cycles lead through from a state at rest, owing that they do."""
     _check_items([Beat(start, 0)], [w for _, w in system.variables], "reset")
     if count < 0 or e.evaluate([system.settled], dict(zip(system.names, start, strict=True))) != [1]:
@@ -355,7 +357,7 @@ def _with_release(
     whole: System,
     hold: Hold | None,
     known: Under | None,
-    owed: _Obligations,
+    owed: Owed,
 ) -> Rhythm:
     """The rhythm with every release of reset, owing the runs after them."""
     if ports.reset is None:
@@ -402,7 +404,7 @@ def _with_release(
     return replace(rhythm, release=found)
 
 
-def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: _Obligations) -> Rhythm:
+def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: Owed) -> Rhythm:
     """The rhythm with the start states' orbits, owing their steps."""
     if len(tracks) != len(rhythm.starts):
         raise Rejected(f"starts: {len(tracks)} runs of {len(rhythm.starts)} start states")
@@ -416,7 +418,7 @@ def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: _Obligations) -> Rh
     return replace(rhythm, orbits=tuple(orbits))
 
 
-def owe_orbits(system: System, orbits: Sequence[Orbit], name: str, owed: _Obligations) -> None:
+def owe_orbits(system: System, orbits: Sequence[Orbit], name: str, owed: Owed) -> None:
     """Owe every step of the orbits, single ones together."""
     singles: dict[Step, None] = {}
     for orbit in orbits:
@@ -430,7 +432,7 @@ def owe_orbits(system: System, orbits: Sequence[Orbit], name: str, owed: _Obliga
 # -- all power-up states -----------------------------------------------------------------------------------
 
 
-def _lasso(whole: System, machine: System, lasso: Lasso, owed: _Obligations) -> Orbit:
+def _lasso(whole: System, machine: System, lasso: Lasso, owed: Owed) -> Orbit:
     """A lasso as an orbit, owing that it is one and that its start is a power-up state."""
     _check_items([Beat(lasso.start, 0)], [w for _, w in whole.variables], "lassos")
     orbit = orbit_of(lasso.track, machine, "lassos")
@@ -452,7 +454,7 @@ def _everywhere(
     goal: Goal,
     lassos: Sequence[Orbit],
     is_whole: bool,
-    owed: _Obligations,
+    owed: Owed,
 ) -> Rhythm:
     """The rhythm completed with what is known of all power-up states.
 
@@ -540,7 +542,7 @@ def _loops(runs: Iterable[Orbit], goal: Goal) -> tuple[tuple[Loop, ...], dict[St
     return tuple(loops.values()), shown
 
 
-def _rounds(system: System, known: Rounds, owed: _Obligations) -> list[Orbit]:
+def _rounds(system: System, known: Rounds, owed: Owed) -> list[Orbit]:
     if system.bits > tables.MOST_BITS_IF_REGULAR:
         raise Rejected("a table of too many states")
     _none([*tables.rounds_form_faults(system, known)])
@@ -548,7 +550,7 @@ def _rounds(system: System, known: Rounds, owed: _Obligations) -> list[Orbit]:
     return known.orbits(system)
 
 
-def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> int:
+def _ranking(system: System, known: Ranking, goal: Goal, owed: Owed) -> int:
     if system.bits > tables.MOST_BITS_IF_REGULAR:
         raise Rejected("a table of too many states")
     _none([*tables.ranking_form_faults(system, known, goal.period)])
@@ -558,9 +560,7 @@ def _ranking(system: System, known: Ranking, goal: Goal, owed: _Obligations) -> 
     return known.bound
 
 
-def _cover(
-    system: System, layers: Sequence[Layer], goal: Goal, owed: _Obligations
-) -> tuple[int, list[Orbit]]:
+def _cover(system: System, layers: Sequence[Layer], goal: Goal, owed: Owed) -> tuple[int, list[Orbit]]:
     """The bound that the cover shows, and the last stage's orbits."""
     if goal.runs or goal == NOWHERE:
         raise Rejected("a cover for a wave of several pulses")

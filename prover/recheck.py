@@ -16,6 +16,8 @@ from pathlib import Path
 from typing import Any
 
 from prover import clausal, solvers
+from prover.certificate import Obligation
+from prover.design import Design
 from prover.effort import Effort, OutOfEffort
 from prover.errors import UserError
 from prover.evidence import Malformed, read
@@ -26,6 +28,13 @@ from prover.release import NotShown
 from prover.report import certificate as written
 from prover.report.certificate import SCHEMA, Subject
 from prover.spec import Spec
+
+COMPARED = "subharmonic/comparison-certificate-1"
+KEYS = {
+    SCHEMA: ("claim", "options", "sources", "evidence", "obligations"),
+    COMPARED: ("asked", "sides", "evidence", "obligations"),
+}
+"""By schema: what has to be there for anything else to be looked at."""
 
 MOST_BYTES = 400_000_000
 MOST_DIFFERENCES = 5
@@ -63,7 +72,7 @@ class Derived:
 
     top: str
     findings: tuple[Finding, ...]
-    made: Rebuilt
+    obligations: tuple[Obligation, ...]
     scripts: tuple[tuple[str, str], ...]
 
 
@@ -160,8 +169,12 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
     UserError where there are no sources."""
     effort.say("reading the certificate")
     stated = _object(text)
+    if stated["schema"] == COMPARED:
+        from prover.pair_recheck import derive as derive_pair
+
+        return derive_pair(stated, text, bases, effort)
     subject = _subject(stated)
-    base = _base(subject, bases)
+    base = base_of(subject, bases)
     effort.say("reading the sources")
     ports = _ports(subject, base)
     effort.say("deriving what the certificate claims")
@@ -182,7 +195,7 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
             "\n".join(different) or "the text is not in the form in which certificates are written"
         )
     scripts = tuple((each["name"], each["script"]) for each in stated["obligations"])
-    return Derived(ports.design.top, findings, made, scripts)
+    return Derived(ports.design.top, findings, made.obligations, scripts)
 
 
 def _object(text: str) -> dict[str, Any]:
@@ -190,9 +203,9 @@ def _object(text: str) -> dict[str, Any]:
         stated = json.loads(text)
     except (ValueError, RecursionError) as fault:
         raise Rejected(f"no JSON: {fault}") from None
-    if not isinstance(stated, dict) or stated.get("schema") != SCHEMA:
-        raise Rejected(f"schema: not {SCHEMA}")
-    for key in ("claim", "options", "sources", "evidence", "obligations"):
+    if not isinstance(stated, dict) or stated.get("schema") not in KEYS:
+        raise Rejected(f"schema: not {' or '.join(KEYS)}")
+    for key in KEYS[stated["schema"]]:
         if key not in stated:
             raise Rejected(f"{key}: missing")
     return stated
@@ -231,7 +244,7 @@ def _subject(stated: dict[str, Any]) -> Subject:
             tuple(options["include"]),
             tuple((file["path"], file["sha256"]) for file in files),
         )
-        _check_kinds(subject)
+        check_kinds(subject)
         different = list(
             differences([claim, options], [written.claim(spec), written.options(subject)], "claim")
         )
@@ -247,7 +260,7 @@ def _subject(stated: dict[str, Any]) -> Subject:
     return subject
 
 
-def _check_kinds(subject: Subject) -> None:
+def check_kinds(subject: Subject) -> None:
     """Raise ValueError where an option is of another kind than it has to be."""
     spec = subject.spec
     texts = [spec.module, spec.clock, spec.reset, spec.output]
@@ -264,7 +277,7 @@ def _check_kinds(subject: Subject) -> None:
         raise ValueError
 
 
-def _base(subject: Subject, bases: Sequence[Path]) -> Path:
+def base_of(subject: Subject, bases: Sequence[Path]) -> Path:
     """The folder that the sources' paths start from: the first in which all are as stated, else in which all are."""
     there = [base for base in bases if all((base / name).is_file() for name, _ in subject.digests)]
     if not there:
@@ -299,12 +312,17 @@ def _ports(subject: Subject, base: Path) -> Ports:
         ports = recognise(design, replace(spec, include=include))
     except UserError as fault:
         raise Rejected(f"the sources can't be read as the certificate says: {fault.message}") from None
+    check_files(design, subject, base)
+    return ports
+
+
+def check_files(design: Design, subject: Subject, base: Path) -> None:
+    """Raise Rejected where other files were read than those that are stated."""
     if len(design.files) != len(subject.digests) or any(
         Path(name).resolve() != (base / stated).resolve()
         for name, (stated, _) in zip(design.files, subject.digests, strict=True)
     ):
         raise Rejected("sources/files: not the files that are read")
-    return ports
 
 
 def differences(stated: object, derived: object, where: str = "") -> Iterator[str]:
@@ -371,7 +389,7 @@ def _by_clauses(outcome: Outcome, derived: Derived, effort: Effort) -> Outcome:
     wrong: list[str] = []
     left: list[str] = []
     count = steps = 0
-    for each in derived.made.obligations:
+    for each in derived.obligations:
         if effort.left <= 0:
             left.append(f"clausal: out of time before {each.name}")
             break
