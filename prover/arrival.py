@@ -14,7 +14,7 @@ from itertools import pairwise
 from typing import TYPE_CHECKING, Literal
 
 from prover import expr as e
-from prover.design import Design
+from prover.design import Design, element
 from prover.errors import InternalError, Where
 from prover.expr import Expr
 from prover.hazard import Swing, clean, gate, still
@@ -341,4 +341,4 @@ def bit_name(design: Design, name: str, bit: int) -> str:
         return f"{part[1]}[{low + bit if int(part[2]) >= low else low - bit}]"
     signal = design.signals.get(name)
     msb, lsb = (signal.msb, signal.lsb) if signal else (register.width - 1, 0)
-    return f"{name}[{lsb + bit if msb >= lsb else lsb - bit}]"
+    return element(name, lsb + bit if msb >= lsb else lsb - bit)

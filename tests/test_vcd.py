@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+import dataclasses
+import io
 import itertools
 from pathlib import Path
 from typing import Any
 
 import pytest
 from texts import BY_3, SECOND, SHIFT, SPINS, STICKS_AT_7, checked
+from vcd.reader import TokenKind, tokenize
 from vcdvcd import VCDVCD
 
 from prover.findings import Finding, Report
@@ -164,3 +167,54 @@ def test_names_that_a_dump_cannot_hold_are_spelt_otherwise(name: str, word: str)
 
 def test_a_comment_cannot_be_ended_from_within() -> None:
     assert vcd._plain("waits $end\nfor µ") == "waits end for \\xb5"
+
+
+# Escaped names, and what a dump makes of them: blanks end words and dollars begin keywords, so neither stays.
+HOSTILE = """\
+module \\$end (input \\clk"]]>-- , output \\#0 );
+  \\a.b \\u.$scope (\\clk"]]>-- , \\#0 );
+endmodule
+module \\a.b (input clk, output out);
+  reg [2:0] \\$var[0] , \\x.y ;
+  reg \\$end , b0;
+  always @(posedge clk) begin
+    \\$var[0] <= \\$var[0] + 3'd1;
+    \\x.y [2] <= \\$var[0] [0];
+    \\x.y [1:0] <= \\$var[0] [2:1];
+    \\$end <= b0;
+    b0 <= \\$var[0] [2];
+  end
+  assign out = \\$var[0] == 3'd2;
+endmodule
+"""
+NAMES = {
+    "\\u.$scope .\\$var[0]": "\\u._scope.\\_var[0]",
+    "\\u.$scope .\\x.y": "\\u._scope.\\x.y",
+    "\\u.$scope .\\$end": "\\u._scope.\\_end",
+    "\\u.$scope .b0": "\\u._scope.b0",
+    '\\clk"]]>--': '\\clk"]]>--',
+}
+
+
+def test_hostile_names_are_read_back_by_every_reader(tmp_path: Path) -> None:
+    report = checked(tmp_path, HOSTILE, "8", high=4, start="any")
+    finding = found(report, "high-time")
+    assert finding.counterexample is not None
+    hostile = "$end $enddefinitions \n #7 1! \x1b[2J"
+    broken = dataclasses.replace(finding.counterexample, text=hostile, cause=hostile)
+    text = vcd.render(report, dataclasses.replace(finding, counterexample=broken))
+    assert text is not None
+    # Two readers: a strict one, token by token, and the one that the other tests use.
+    tokens = list(tokenize(io.BytesIO(text.encode())))
+    found_here = {t.var.reference: t.var.size for t in tokens if t.kind is TokenKind.VAR}
+    assert set(found_here.values()) == {1, 3}
+    assert sum(t.kind is TokenKind.CHANGE_TIME for t in tokens) > 16
+    dump = read_back(tmp_path, text)
+    ends = dump.endtime
+    states = stepped(report, finding, ends)
+    names = [name for name, _ in report.rhythm.system.variables]
+    assert set(names) == set(NAMES)
+    for index, name in enumerate(names):
+        (path,) = [p for p in dump.references_to_ids if p.partition("[2:0]")[0].endswith(f".{NAMES[name]}")]
+        values = [int(v, 2) for v in levels(dump, path, ends)]
+        assert values == [state[index] for state in states], name

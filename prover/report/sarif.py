@@ -275,7 +275,9 @@ class _Results:
         if pulse is not None:
             return pulse.where
         if finding.counterexample is not None:
-            return self._register(self._launched(finding.counterexample)) or self._output()
+            # Where nothing is launched any more, a register that the output is made of has got stuck.
+            launched = self._launched(finding.counterexample) or [r.name for r in self.launching]
+            return self._register(launched) or self._output()
         if finding.glitch is not None:
             return finding.glitch.where
         if finding.trace is not None:
@@ -302,12 +304,14 @@ class _Results:
         return next((register.where for register in order if register.name in among), None)
 
     def _output(self) -> Where:
-        """The register that is the output, or the first of those it is made of; else the output's declaration."""
-        if self.launching:
+        """The register that is the output; for an output made of several, or of none, where it is driven."""
+        if self.report.ports.output_value.op == "var" and self.launching:
             return self.launching[0].where
         name = self.report.ports.output
-        signal = self.design.signals.get(name) or self.design.signals.get(name.partition("[")[0])
-        return signal.where if signal else Where(printable(self.design.files[0], MAX_SHOWN), 1)
+        signal = self.design.signals.get(name) or self.design.signals.get(name.rpartition("[")[0].rstrip(" "))
+        if signal is None:
+            return Where(printable(self.design.files[0], MAX_SHOWN), 1)
+        return signal.driven or (self.launching[0].where if self.launching else signal.where)
 
     # -- runs ------------------------------------------------------------------------------------------------
 
