@@ -199,7 +199,7 @@ CONTRAST = """(() => {
     const own = [...e.childNodes].some(n => n.nodeType == 3 && n.textContent.trim());
     if (!own || !e.checkVisibility() || e.closest('title, desc')) continue;
     const inside = e.closest('svg'), style = getComputedStyle(e);
-    // A dark box of a state graph has its own ground.
+    // A filled box of a state graph has its own ground.
     const box = e.classList.contains('label') ? e.parentElement.querySelector('.state') : null;
     const below = box ? getComputedStyle(box).fill : ground(e);
     const [a, b] = [light(inside ? style.fill : style.color), light(below)];

@@ -487,7 +487,7 @@ def _figures(loop: Loop) -> tuple[str, str]:
 
 def _graph(report: Report, small: states.Machine, place: Place) -> Iterator[Markup]:
     yield heading(place, "Where each state leads", kind="sub")
-    told = ["A box is a state, dark where the output is 1"]
+    told = ["A box is a state, filled where the output is 1"]
     if small.key:
         told.append(f"written {small.key}")
     if small.rank:
