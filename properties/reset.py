@@ -33,8 +33,7 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding | None:
     if release is None:
         return None
     said = claim(spec)
-    runs = [*rhythm.orbits, *(each.orbit for each in release.runs if each.orbit is not None)]
-    goal = goal_of(spec, [run.wave() for run in runs])
+    goal = goal_of(spec, [each.wave for each in release.runs])
     facts = _facts(release)
     late = {freed.flop.register: freed for freed in _that_matter(release, goal) if freed.flop}
     if late:
@@ -50,7 +49,9 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding | None:
     why = _open(release, spec)
     if why:
         return Finding(NAME, "open", said, why, METHOD, facts=facts, obligations=obligations)
-    return Finding(NAME, "proved", said, _says(release, goal), METHOD, facts=facts, obligations=obligations)
+    held = release.held
+    bound = f"{'' if held.exact else 'at most '}{_count(held.half_cycles, 'half-cycle')} of reset"
+    return Finding(NAME, "proved", said, _says(release, goal), METHOD, bound, facts, obligations)
 
 
 def claim(spec: Spec) -> str:
@@ -91,8 +92,7 @@ def _wrong_wave(release: Release, goal: Goal) -> Broken | None:
 
 
 def _is_wrong(freed: Freed, goal: Goal) -> bool:
-    wave = freed.orbit.wave() if freed.orbit else None
-    return wave is not None and not goal.fits(wave)
+    return freed.wave is not None and not goal.fits(freed.wave)
 
 
 def _first_wrong(freed: Freed, goal: Goal) -> tuple[int, int, str]:
@@ -102,8 +102,7 @@ def _first_wrong(freed: Freed, goal: Goal) -> tuple[int, int, str]:
         if pulse.length not in _nominal(pulse.level, goal):
             return edge_after(pulse.begins), edge_after(pulse.begins + pulse.length), _told(pulse, goal)
         last = pulse.begins + pulse.length
-    run = freed.orbit
-    wave = run.wave() if run else None
+    run, wave = freed.orbit, freed.wave
     begins = max(edge_after(last), run.lead_half_cycles if run else 0)
     ends = begins + ((run.loop_half_cycles if run else 0) or 2)
     if wave is None or not wave.stuck:
@@ -145,8 +144,7 @@ def _left_free(release: Release, freed: Freed) -> str:
 
 def _values(release: Release, freed: Freed) -> str:
     """What the registers are that reset does not force."""
-    names = [*(r.name for r in release.ports.design.registers), release.ports.clock]
-    values = dict(zip(names, freed.under, strict=True))
+    values = dict(zip(release.held.names, freed.under, strict=True))
     return ", ".join(f"{name}={values[name]}" for name in release.held.unforced)
 
 
@@ -210,7 +208,7 @@ def _open(release: Release, spec: Spec) -> str:
     if not release.on_time:
         return "no state that reset leaves is known"
     for freed in release.runs:
-        if freed.orbit is None or freed.orbit.wave() is None:
+        if freed.orbit is None or freed.wave is None:
             return f"{freed.cause}: {freed.orbit.why if freed.orbit else 'not followed'}"
     for level in (0, 1):
         here = [freed for freed in release.on_time if freed.clock == level]
@@ -242,10 +240,14 @@ def _if_late(freed: Freed, goal: Goal) -> str:
 
 def _that_matter(release: Release, goal: Goal) -> Iterator[Freed]:
     """The late releases after which some pulse or gap has another length than after the one on time."""
-    usual = {each.clock: tuple(_blemishes(each, goal)) for each in release.on_time}
+
+    def off(freed: Freed) -> list[tuple[int, int]]:
+        return [(pulse.level, pulse.length) for pulse in _blemishes(freed, goal)]
+
+    usual = [(each.clock, off(each)) for each in release.on_time]
     for freed in release.late:
-        off = tuple(_blemishes(freed, goal))
-        if off and off != usual.get(freed.clock):
+        found = off(freed)
+        if found and (freed.clock, found) not in usual:
             yield freed
 
 

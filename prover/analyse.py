@@ -17,7 +17,7 @@ from prover.errors import InternalError, UserError
 from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
-from prover.release import Freed, Release, differs, releases, too_short, unknown
+from prover.release import Freed, Release, differs, releases, some_releases, too_short, unknown
 from prover.rhythm import (
     NOWHERE,
     Goal,
@@ -252,14 +252,15 @@ def _held(
         return unknown(ports, str(out)).held, None
 
 
-def _held_long(ports: Ports, effort: Effort) -> tuple[reset.Held, System]:
+def _held_long(ports: Ports, effort: Effort) -> tuple[reset.Held, System | None]:
+    ports = reset.seen_by(ports)
     design = ports.design
     under, settled = settle(design, ports.clock, ports.resetting, ports.output_value, effort, races=False)
     held = reset.hold(design, ports.clock, ports.resetting, effort)
-    if held.states and settled.depth is None:
+    if settled.depth is None:
         # Where the micro-steps were cut short, what the registers hold is not known.
         why = settled.open or "the registers do not settle while reset is held"
-        return replace(held, states=(), problem=why), under
+        return replace(held, states=(), problem=why), None
     if held.states:
         held = reset.exactly(under, held, lambda *place: _leaves(under, held, *place).goal, effort)
     for level, count in enumerate(held.needs if held.states else ()):
@@ -283,21 +284,29 @@ def _release(
 ) -> Release:
     """Every release of reset, followed as long as there is time."""
     effort.say("releasing reset")
-    found = releases(ports, whole, held, _limit(ports, rhythm.settling))
+    limit = _limit(ports, rhythm.settling)
+    found = releases(ports, under, held, limit)
     machine = rhythm.system
     known: orbit.Places = {}
-    done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
+    done = {start.state: (run, run.wave()) for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
     for run in rhythm.orbits:
         known |= orbit.onward(run.loop)
     refuted: set[Expr] = set()
     ours = Effort(effort.left / 4)
 
+    if not held.states:
+        found = some_releases(ports, under, held, _left_by(under, ours), limit)
+
     def followed(freed: Freed) -> Freed:
-        state = recode.placed(freed.state, whole, machine)
+        everything = reset.filled(whole, held.names, freed.state, limit)
+        if everything is None:
+            return freed
+        state = recode.placed(everything, whole, machine)
         if state not in done:
-            done[state] = follow(machine, state, ours, known, refuted)
-            known.update(orbit.onward(done[state].loop))
-        return replace(freed, orbit=done[state])
+            run = follow(machine, state, ours, known, refuted)
+            done[state] = run, run.wave()
+            known.update(orbit.onward(run.loop))
+        return freed.followed(*done[state])
 
     found = replace(
         found,
@@ -307,13 +316,25 @@ def _release(
     if spec.reset_cycles is None or not found.on_time:
         return found
     for start in _slow_states(held, under, spec.reset_cycles):
-        short = too_short(found, whole, under, start, spec.reset_cycles)
+        short = too_short(found, under, start, spec.reset_cycles)
         if short is None:
             continue
         short = followed(short)
         if differs(found, short):
             return replace(found, short=short)
     return found
+
+
+def _left_by(under: System, effort: Effort) -> list[tuple[State, State]]:
+    """A few states on loops under reset, each with the state an input cycle before it."""
+    found: dict[State, State] = {}
+    for level in (0, 1):
+        for number in range(reset.SAMPLES // 2):
+            run = follow(under, reset.any_at_rest(under, level, number), effort)
+            for place in (0, 1) if run.closed else ():
+                at = run.lead_half_cycles + run.loop_half_cycles + place
+                found.setdefault(run.state(at), run.state(at - 2))
+    return [(start, state) for state, start in found.items()]
 
 
 def _slow_states(held: reset.Held, under: System, cycles: int) -> Iterator[State]:

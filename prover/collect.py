@@ -13,7 +13,7 @@ from itertools import product
 from typing import TypeVar
 
 from prover import expr as e
-from prover import glitch, graph, linear, path, recode, tables
+from prover import glitch, graph, linear, path, recode, reset, tables
 from prover.analyse import follow
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
@@ -141,7 +141,7 @@ def _hold(rhythm: Rhythm, effort: Effort) -> Hold | None:
     release = rhythm.release
     if release is None or not release.held.states:
         return None
-    ports = release.ports
+    ports = reset.seen_by(release.ports)
     _, settling = settle(ports.design, ports.clock, ports.resetting, ports.output_value, effort, races=False)
     starts = {start.state for start in rhythm.starts}
     runs = [each.orbit for each in release.runs if each.orbit and each.orbit.start not in starts]

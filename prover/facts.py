@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Iterator
 from fractions import Fraction
 
 from prover.depth import depths
 from prover.findings import Fact
+from prover.path import Run
 from prover.ports import Ports
 from prover.release import UNITS, pulses
 from prover.rhythm import Orbit, Rhythm, Wave
@@ -60,12 +62,14 @@ def shortest(rhythm: Rhythm) -> dict[int, int]:
         found[level] = min(length, found.get(level, length))
 
     released = rhythm.release.on_time if rhythm.release else ()
-    for run in (*rhythm.orbits, *(each.orbit for each in released if each.orbit)):
-        if run.wave() is None:
-            return {}
-    for run in rhythm.orbits:
-        whole = list(run.runs(rounds=3))[1:-1]
-        for level, length in whole:
+    waves = [run.wave() for run in rhythm.orbits]
+    if None in waves or any(each.wave is None for each in released):
+        return {}
+    for run, wave in zip(rhythm.orbits, waves, strict=True):
+        horizon = run.lead_half_cycles + 2 * (wave.period or 0 if wave else 0)
+        for begins, (level, length) in _whole(run.runs(rounds=3)):
+            if begins > horizon:
+                break
             take(level, length)
     for each in released:
         for pulse in pulses(each):
@@ -75,6 +79,17 @@ def shortest(rhythm: Rhythm) -> dict[int, int]:
             for level, length in loop.wave.runs:
                 take(level, length)
     return found
+
+
+def _whole(runs: Iterable[Run]) -> Iterator[tuple[int, Run]]:
+    """The runs that begin and end with an edge, each with the half-cycle that it begins with."""
+    at = 0
+    pending: tuple[int, Run] | None = None
+    for index, run in enumerate(runs):
+        if pending is not None:
+            yield pending
+        pending = (at, run) if index > 0 else None
+        at += run[1]
 
 
 def wave_facts(orbit: Orbit, spec: Spec) -> dict[str, Fact]:

@@ -293,6 +293,7 @@ def _starts(
 def _held(ports: Ports, hold: Hold, owed: Owed, effort: Effort) -> Under:
     """What reset leaves, owing that it leaves these states from everywhere, that each of them really occurs, and that
     it needs as long as is said."""
+    ports = reset.seen_by(ports)
     ask = Replay(hold.settling, "micro-steps under reset", owed)
     system, settling = settle(
         ports.design, ports.clock, ports.resetting, ports.output_value, effort, ask=ask.answer, races=False
@@ -317,7 +318,7 @@ def _held(ports: Ports, hold: Hold, owed: Owed, effort: Effort) -> Under:
             if taken[-1] in hold.states or slowest[-1] != level:
                 raise Rejected("reset: a state that is said to need long does not")
     unforced = reset.several_values(system.names, hold.states)
-    return reset.Held(hold.states, hold.needs, unforced, hold.slowest), system
+    return reset.Held(tuple(system.names), hold.states, hold.needs, unforced, hold.slowest), system
 
 
 def _step(system: System, state: State) -> Step:
@@ -365,20 +366,21 @@ def _with_release(
     if hold is None or known is None:
         return replace(rhythm, release=release.unknown(ports, "the certificate has no evidence about reset"))
     held, under = known
-    found = release.releases(ports, whole, held, _limit(ports, rhythm.settling))
+    limit = _limit(ports, rhythm.settling)
+    found = release.releases(ports, under, held, limit)
     machine = rhythm.system
     if hold.short is not None:
         cycles = spec.reset_cycles
         if cycles is None or cycles > release.LONGEST_SHORT:
             raise Rejected("reset: too short, though nothing is said of how long it is held")
         _taken(under, hold.short, 2 * cycles, owed)
-        short = release.too_short(found, whole, under, hold.short, cycles)
+        short = release.too_short(found, under, hold.short, cycles)
         if short is None:
             raise Rejected("reset: not too short for the state that is to show it")
         found = replace(found, short=short)
     done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
-    places = [recode.placed(each.state, whole, machine) for each in found.runs]
-    wanted = [state for state in dict.fromkeys(places) if state not in done]
+    places = {each.state: _in_machine(each.state, held.names, whole, machine, limit) for each in found.runs}
+    wanted = [state for state in dict.fromkeys(places.values()) if state not in done]
     if len(hold.runs) > len(wanted):
         raise Rejected(f"reset: {len(hold.runs)} runs after {len(wanted)} releases")
     # A release without its run stays open.
@@ -390,8 +392,11 @@ def _with_release(
         done[state] = run
     owe_orbits(machine, [done[state] for state in wanted], "release", owed)
 
+    waves = {state: run.wave() for state, run in done.items()}
+
     def followed(each: release.Freed) -> release.Freed:
-        return replace(each, orbit=done.get(recode.placed(each.state, whole, machine)))
+        run = done.get(places[each.state])
+        return each.followed(run, waves.get(places[each.state]))
 
     found = replace(
         found,
@@ -402,6 +407,13 @@ def _with_release(
     if found.short is not None and not release.differs(found, found.short):
         raise Rejected("reset: too short, though the output does not show it")
     return replace(rhythm, release=found)
+
+
+def _in_machine(state: State, names: Sequence[str], whole: System, machine: System, limit: int) -> State:
+    everything = reset.filled(whole, names, state, limit)
+    if everything is None:
+        raise Rejected("reset: a release that does not settle")
+    return recode.placed(everything, whole, machine)
 
 
 def _followed(rhythm: Rhythm, tracks: Sequence[Track], owed: Owed) -> Rhythm:

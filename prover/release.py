@@ -26,8 +26,8 @@ from prover.errors import InternalError
 from prover.expr import Expr
 from prover.path import Run
 from prover.ports import Ports
-from prover.reset import Held, known
-from prover.rhythm import LONGEST_ROUND, Orbit
+from prover.reset import Held, known, seen_by
+from prover.rhythm import LONGEST_ROUND, Orbit, Wave
 from prover.system import Inputs, Moment, State, System, unroll
 from prover.trace import Trace, faults, rest_of, run
 
@@ -69,13 +69,16 @@ class Flop:
 class Freed:
     """A release of reset, and the run after it.
 
+    States are those of the registers that the output depends on, and of the clock (see `reset.Held`).
+
     start    the state from which on reset is held, for `held` half-cycles
     under    the state under reset just before the release
     before   the output then
     early    the output from the release on in halves of a half-cycle, as long as a flip-flop is late
-    state    the state of the whole divider when all is released, in the middle of a half-cycle
+    state    the state when all is released, in the middle of a half-cycle
     flop     the flip-flop that is released an edge later, None if all are released together
     orbit    the run from that state on; None until it is followed
+    wave     what it runs into; None where that is not known
     """
 
     start: State
@@ -86,6 +89,11 @@ class Freed:
     state: State
     flop: Flop | None = None
     orbit: Orbit | None = None
+    wave: Wave | None = None
+
+    def followed(self, orbit: Orbit | None, wave: Wave | None) -> Freed:
+        """The same with its run."""
+        return replace(self, orbit=orbit, wave=wave)
 
     @property
     def clock(self) -> int:
@@ -112,6 +120,7 @@ class Pulse:
 class Release:
     """What reset does to a divider.
 
+    ports      the divider's
     limit      micro-steps within which all settles, reset or not
     held       how long reset has to be held, and the states that it leaves
     levels     the output while reset is held, in those states
@@ -147,22 +156,22 @@ class _Unknown(Exception):
 
 def unknown(ports: Ports, why: str) -> Release:
     """Nothing about the release."""
-    return Release(ports, 0, Held((), (0, 0), (), problem=why), open=why)
+    return Release(ports, 0, Held((), (), (0, 0), (), problem=why), open=why)
 
 
-def releases(ports: Ports, system: System, held: Held, limit: int) -> Release:
-    """Every release from the states that reset leaves, none of them followed yet. `system` is the whole divider with
-    reset released."""
+def releases(ports: Ports, under: System, held: Held, limit: int) -> Release:
+    """Every release from the states that reset leaves, none of them followed yet. `under` is the system under reset
+    of the registers that the output depends on."""
     empty = Release(ports, limit, held, open=held.problem)
     if not held.states or ports.reset is None:
         return empty
+    seen = seen_by(ports)
     many = len(held.states) > MOST_STATES
     try:
-        moments = {state: _moment(ports, system, state, ports.resetting) for state in held.states}
-        before = {_state(_edge(ports, at, limit), system.names): state for state, at in moments.items()}
-        on_time = [_freed(ports, system, before[before[s]], 2, s, limit) for s in held.states]
-        shadowed = _Shadowed.of(ports, limit)
-        late = [late for each in on_time for late in shadowed.late(system, each)] if not many else []
+        before = {under.next(state): state for state in held.states}
+        on_time = [_freed(seen, under, before[before[s]], 2, s, limit) for s in held.states]
+        shadowed = _Shadowed.of(seen, limit)
+        late = [late for each in on_time for late in shadowed.late(under, each)] if not many else []
     except _Unknown as why:
         return replace(empty, open=str(why))
     return replace(
@@ -175,7 +184,20 @@ def releases(ports: Ports, system: System, held: Held, limit: int) -> Release:
     )
 
 
-def too_short(release: Release, system: System, under: System, start: State, cycles: int) -> Freed | None:
+def some_releases(
+    ports: Ports, under: System, held: Held, loops: Sequence[tuple[State, State]], limit: int
+) -> Release:
+    """Releases from a few of the states that reset leaves, where not all of these are known. Each is given with the
+    state an input cycle before it on a loop under reset: it occurs however long reset is held."""
+    empty = Release(ports, limit, held, open=held.problem)
+    try:
+        on_time = [_freed(seen_by(ports), under, start, 2, state, limit) for start, state in loops]
+    except _Unknown:
+        return empty
+    return replace(empty, levels=tuple(sorted({each.before for each in on_time})), on_time=tuple(on_time))
+
+
+def too_short(release: Release, under: System, start: State, cycles: int) -> Freed | None:
     """The release after so many input cycles of reset, begun in a state at rest; None where they suffice for that
     state, or what comes of it is not known. `under` is the system under reset."""
     if cycles > LONGEST_SHORT:
@@ -186,17 +208,17 @@ def too_short(release: Release, system: System, under: System, start: State, cyc
     if state in release.held.states:
         return None
     try:
-        return _freed(release.ports, system, start, 2 * cycles, state, release.limit)
+        return _freed(seen_by(release.ports), under, start, 2 * cycles, state, release.limit)
     except _Unknown:
         return None
 
 
-def _freed(ports: Ports, system: System, start: State, held: int, state: State, limit: int) -> Freed:
-    under = _moment(ports, system, state, ports.resetting)
-    now = {**under, **ports.running.moment(ports.design.inputs)}
-    after = _settled(ports.design, under, now, limit)[-1]
-    before = _level(ports.output_value, under)
-    return Freed(start, held, state, before, (), _state(after, system.names))
+def _freed(ports: Ports, under: System, start: State, held: int, state: State, limit: int) -> Freed:
+    moment = _moment(ports, under, state, ports.resetting)
+    now = {**moment, **ports.running.moment(ports.design.inputs)}
+    after = _settled(ports.design, moment, now, limit)[-1]
+    before = _level(ports.output_value, moment)
+    return Freed(start, held, state, before, (), _state(after, under.names))
 
 
 def _moment(ports: Ports, system: System, state: State, inputs: Inputs) -> Moment:
@@ -215,10 +237,6 @@ def _level(output: Expr, moment: Moment) -> int:
     if not value.is_const:
         raise _Unknown("the output hangs on a value that x stands for")
     return value.value
-
-
-def _edge(ports: Ports, moment: Moment, limit: int) -> Moment:
-    return _settled(ports.design, moment, _ticked(moment, ports.clock), limit)[-1]
 
 
 def _ticked(moment: Moment, clock: str) -> Moment:
@@ -338,14 +356,20 @@ def _with(register: Register, name: str, values: Mapping[str, Expr]) -> Register
 # -- what the output does ----------------------------------------------------------------------------------
 
 
-def pulses(freed: Freed, rounds: int = 3) -> Iterator[Pulse]:
-    """The whole pulses and gaps of the output from the release on, over the run's lead-in and so many rounds of its
-    loop. What the output is when the release comes is none of them: it began before."""
+def pulses(freed: Freed) -> Iterator[Pulse]:
+    """The whole pulses and gaps of the output from the release on, over the run's lead-in and what follows until all
+    those of its wave have been seen. What the output is when the release comes is none of them: it began before."""
+    if freed.orbit is None:
+        return
+    period = freed.wave.period or 0 if freed.wave else 0
+    horizon = len(freed.early) + UNITS * (freed.orbit.lead_half_cycles + 2 * period + 1)
     at = 0
     pending: Pulse | None = None
-    for index, (level, length) in enumerate(_levels(freed, rounds)):
+    for index, (level, length) in enumerate(_levels(freed, 3 if freed.wave else 0)):
         if pending is not None:
             yield pending
+        if at > horizon:
+            return
         pending = Pulse(level, at, length) if index > 0 else None
         at += length
 
@@ -367,14 +391,12 @@ def _levels(freed: Freed, rounds: int) -> Iterator[Run]:
 
 def same_output(a: Freed, b: Freed) -> bool | None:
     """Whether the output is the same for ever, just before the releases included; None if that is not known."""
-    pair = (a.orbit, b.orbit)
-    waves = [run.wave() if run else None for run in pair]
-    if pair[0] is None or pair[1] is None or waves[0] is None or waves[1] is None:
+    if a.orbit is None or b.orbit is None or a.wave is None or b.wave is None:
         return None
-    if waves[0] != waves[1]:
+    if a.wave != b.wave:
         return False
-    period = waves[0].period or UNITS
-    alike = max(run.lead_half_cycles for run in pair if run) + 2 * period + 2
+    lead = max(a.orbit.lead_half_cycles, b.orbit.lead_half_cycles)
+    alike = lead + 2 * (a.wave.period or 0) + 2
     both = [islice(_within(each, alike), LONGEST_ROUND + 1) for each in (a, b)]
     count = 0
     for one, other in zip_longest(*both):
@@ -416,8 +438,7 @@ def trace_of(release: Release, freed: Freed, begins: int, ends: int, text: str) 
     if freed.flop is not None or freed.held + ends > LONGEST_TRACE:
         return None
     outputs = {ports.output: ports.output_value}
-    names = [*(r.name for r in ports.design.registers), ports.clock]
-    registers = dict(zip(names, freed.start, strict=True))
+    registers = _registers(release, freed.start)
     first = rest_of(ports.design, outputs, dict(ports.resetting.values), registers)
     more = max(ends + AFTERWARDS, SHORTEST)
     moves = [*(None for _ in range(freed.held)), dict(ports.running.values), *(None for _ in range(more))]
@@ -426,6 +447,19 @@ def trace_of(release: Release, freed: Freed, begins: int, ends: int, text: str) 
     made = Trace(rests, freed.held + begins, freed.held + max(ends, begins + 1), text, cause)
     _check(release, freed, made)
     return made
+
+
+def _registers(release: Release, state: State) -> dict[str, int]:
+    """All registers and the clock in a state at rest under reset; those that the output does not depend on are 0."""
+    ports = release.ports
+    values = dict(zip(release.held.names, state, strict=True))
+    names = [*(r.name for r in ports.design.registers), ports.clock]
+    if len(values) == len(names):
+        return values
+    moment = {r.name: e.const(values.get(r.name, 0), r.width) for r in ports.design.registers}
+    moment |= {ports.clock: e.const(values[ports.clock], 1)} | ports.resetting.moment(ports.design.inputs)
+    after = _settled(ports.design, moment, moment, release.limit)[-1]
+    return dict(zip(names, _state(after, names), strict=True))
 
 
 class NotShown(InternalError):
@@ -438,7 +472,7 @@ def _check(release: Release, freed: Freed, trace: Trace) -> None:
     wrong = faults(ports.design, ports.clock, {ports.output: ports.output_value}, trace, release.limit)
     # One rest for each half-cycle under reset, and the next one is after the release.
     seen = trace.rests[freed.held + 1 :]
-    if tuple(seen[0].registers.values()) != freed.state:
+    if tuple(seen[0].registers[name] for name in release.held.names) != freed.state:
         wrong.append("the release leads elsewhere")
     if freed.orbit is not None:
         levels = (level for level, length in freed.orbit.runs(1) for _ in range(length))

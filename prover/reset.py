@@ -17,6 +17,7 @@ from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
 from prover.expr import Expr
+from prover.ports import Ports
 from prover.rhythm import Start
 from prover.solve import constant, find
 from prover.system import Inputs, Moment, State, System, change_inputs, clock_edge
@@ -32,6 +33,7 @@ SAMPLES = 16
 class Held:
     """Reset held long enough.
 
+    names     what the states are made of: the registers that the output depends on, and the clock
     states    the states while it is held, once round: however long it is held, the machine goes round among them
     needs     half-cycles of reset, begun with the clock low and with it high, from which on it does
     unforced  registers that are not the same in all states of one clock level, or that are not known
@@ -39,6 +41,7 @@ class Held:
     problem   why the states are not known, "" otherwise
     """
 
+    names: tuple[str, ...]
     states: tuple[State, ...]
     needs: tuple[int, int]
     unforced: tuple[str, ...]
@@ -54,6 +57,24 @@ class Held:
     def exact(self) -> bool:
         """Whether it really has to be held for as long as it `needs`."""
         return all(k == 0 or state is not None for k, state in zip(self.needs, self.slowest, strict=True))
+
+
+def seen_by(ports: Ports) -> Ports:
+    """The ports with a design of those registers only on which the output depends, now or later, reset or not."""
+    by_name = {register.name: register for register in ports.design.registers}
+    kept: set[str] = set()
+    todo = [ports.output_value]
+    while todo:
+        for v in e.variables([todo.pop()]):
+            register = by_name.get(v.name)
+            if register is not None and v.name not in kept:
+                kept.add(v.name)
+                todo += [x for edge in register.edges for x in (edge.clock, edge.data)]
+                todo += [x for force in register.forces for x in (force.when, force.value)]
+    if len(kept) == len(by_name):
+        return ports
+    registers = tuple(r for r in ports.design.registers if r.name in kept)
+    return replace(ports, design=replace(ports.design, registers=registers))
 
 
 def hold(design: Design, clock: str, active: Inputs, effort: Effort) -> Held:
@@ -72,15 +93,15 @@ def hold(design: Design, clock: str, active: Inputs, effort: Effort) -> Held:
         if sum(v.width for v in unknown) > MOST_UNKNOWN_BITS:
             left = tuple(name for name in names if e.variables([moment[name]]))
             why = f"{', '.join(left)} not known after {count} half-cycles of reset"
-            return Held((), (count, count), left, problem=why)
+            return Held(tuple(names), (), (count, count), left, problem=why)
         for filled in _fillings(moment):
             states = _round(design, clock, filled, names, limit, effort)
             if not states:
                 why = "the registers run on while reset is held"
-                return Held((), (count, count), (), problem=why)
+                return Held(tuple(names), (), (count, count), (), problem=why)
             found |= set(states)
     states = tuple(sorted(found))
-    return Held(states, (needs[0], needs[1]), several_values(names, states))
+    return Held(tuple(names), states, (needs[0], needs[1]), several_values(names, states))
 
 
 def several_values(names: Sequence[str], states: Sequence[State]) -> tuple[str, ...]:
@@ -224,15 +245,26 @@ def released(system: System, held: Held, active: Inputs, limit: int) -> tuple[St
     some state does not settle after its release."""
     starts: dict[State, Start] = {}
     for state in held.states:
-        values = zip(system.variables, state, strict=True)
-        moment = {name: e.const(value, width) for (name, width), value in values}
-        moment |= active.moment(system.design.inputs)
-        freed = _at_rest(system, moment, limit)
+        freed = _at_rest(system, _with_others(system, held.names, state, active), limit)
         if freed is None:
             return "the registers do not settle when reset is released"
         level = "high" if freed[-1] else "low"
         starts.setdefault(freed, Start(freed, f"reset released while the clock is {level}"))
     return tuple(starts.values())
+
+
+def filled(system: System, names: Sequence[str], state: State, limit: int) -> State | None:
+    """A state of those registers as one of the whole system, at rest; registers on which the output does not depend
+    are 0. None where more than `limit` micro-steps do not suffice."""
+    if tuple(names) == tuple(system.names):
+        return state
+    return _at_rest(system, _with_others(system, names, state, system.inputs), limit)
+
+
+def _with_others(system: System, names: Sequence[str], state: State, inputs: Inputs) -> Moment:
+    values = dict(zip(names, state, strict=True))
+    moment = {name: e.const(values.get(name, 0), width) for name, width in system.variables}
+    return moment | inputs.moment(system.design.inputs)
 
 
 def _at_rest(system: System, moment: Moment, limit: int) -> State | None:

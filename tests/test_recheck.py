@@ -24,6 +24,7 @@ from prover.errors import UserError
 from prover.findings import Report
 from prover.rebuild import Rejected, rebuild
 from prover.recheck import derive, differences, recheck
+from prover.release import Release
 from prover.report.certificate import Certificate, certify, render
 
 ROOT = Path(__file__).parents[1]
@@ -44,6 +45,9 @@ SUBJECTS: dict[str, tuple[str, Spec, str]] = {
         Spec(ratio=Fraction(16, 3), mean=True, start="any"),
         "ranking",
     ),
+    "short": ("faulty/reset_filtered.v", Spec(ratio=Fraction(8), reset="rst=1", reset_cycles=2), "ranking"),
+    "unforced": ("faulty/prescaler_off_reset.v", Spec(ratio=Fraction(6)), "ranking"),
+    "released late": ("faulty/onehot_ring_5_reset.v", Spec(ratio=Fraction(5), high=2), "loops"),
     "restless": ("faulty/inverter_loop.v", Spec(ratio=Fraction(2)), "null"),
 }
 _made: dict[str, tuple[Report, Certificate]] = {}
@@ -176,7 +180,7 @@ def with_one_alteration(document: dict[str, Any], rng: random.Random) -> dict[st
 
 
 def test_alterations_are_rejected() -> None:
-    names = ["reset", "ranks", "loops", "initial", "matrix", "lost", "restless", "cover"]
+    names = ["reset", "ranks", "loops", "initial", "matrix", "lost", "restless", "cover", "short", "unforced"]
     rng = random.Random(7)
     count = 0
     while count < 560:
@@ -217,7 +221,7 @@ def scripts(document: dict[str, Any]) -> list[str]:
     return [each["script"] for each in document["obligations"]]
 
 
-@pytest.mark.parametrize("name", ["ranks", "loops", "reset", "initial"])
+@pytest.mark.parametrize("name", ["ranks", "loops", "reset", "initial", "short", "unforced"])
 def test_altered_evidence_with_all_else_made_to_fit_claims_nothing_false(name: str) -> None:
     """Whoever alters the evidence can write verdicts and obligations that follow from it. Then the obligations must
     fail, or what it claims must still be true: the verdicts of the report, which cases/ states and `test_cases`
@@ -248,7 +252,18 @@ def test_altered_evidence_with_all_else_made_to_fit_claims_nothing_false(name: s
             assert worst is not None
             assert recovery.worst >= worst
             assert not recovery.exact or recovery.worst == worst
+        check_held(again.rhythm.release, report.rhythm.release)
     assert rejected > 30
+
+
+def check_held(claimed: Release | None, true: Release | None) -> None:
+    """No shorter reset is claimed than is needed, and no longer one is claimed to be needed."""
+    if claimed is None or not claimed.held.states:
+        return
+    assert true is not None
+    for level in (0, 1):
+        assert claimed.held.needs[level] >= true.held.needs[level]
+    assert not claimed.held.exact or claimed.held.needs == true.held.needs
 
 
 def test_differences_are_told_of_every_kind() -> None:

@@ -1,4 +1,5 @@
-"""Two thousand random machines: graph against plain enumeration, and the cover engine against the graph.
+"""Two thousand random machines: graph against plain enumeration, and the cover engine against the graph. A thousand
+with a reset, held and released, against enumeration.
 
 Needs no simulator; it stands here because it takes minutes.
 """
@@ -10,6 +11,7 @@ from collections import Counter
 import pytest
 from forced import compared
 from test_engines import agrees_with_enumeration
+from test_reset import agrees_with_enumeration as reset_agrees
 
 BATCH = 100
 
@@ -24,3 +26,11 @@ def test_engines_agree_on_random_machines(batch: int) -> None:
         came[compared(seed, min(bits, 8))] += 1
     assert came["proved"] >= 20
     assert came["open"] <= 4
+
+
+@pytest.mark.parametrize("batch", range(10))
+def test_reset_agrees_on_random_machines(batch: int) -> None:
+    first = 10_000 + batch * BATCH
+    came = Counter(reset_agrees(seed) for seed in range(first, first + BATCH))
+    assert came["proved"] >= 10
+    assert came["refuted"] >= 10

@@ -9,11 +9,12 @@ levels written out one by one.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from itertools import groupby
+from dataclasses import replace
 from typing import Any
 
 import pytest
 from agreement import brute, simulator
+from agreement.releases import Map, Run, faults, joined, off, walk
 from agreement.simulator import Bench, Reset, Start
 from agreement.stepping import differences, power_up_states
 from agreement.test_cases_agreement import SETTLING, bench_of, in_numbers, spec_of
@@ -25,10 +26,7 @@ from prover.findings import Finding, Report
 from prover.ports import Ports
 from prover.spec import Spec
 from prover.system import State
-
-Map = Mapping[State, State]
-Run = tuple[int, int]
-"""A level, and for how many halves of a half-cycle."""
+from prover.trace import Trace
 
 
 def resets() -> list[Any]:
@@ -58,11 +56,21 @@ def compare(case: Case, spec: Spec) -> None:
         assert "do not settle" in finding.says
         return
     bench, states = bench_of(case, report.ports, spec), power_up_states(report.rhythm.system)
+    if finding.trace is not None:
+        compare_trace(report.ports, bench, finding.trace)
+    if report.rhythm.release and report.rhythm.release.held.unforced:
+        compare_unforced(report, finding, bench)
+        return
+    if spec.reset_cycles is not None:
+        compare_too_short(report, finding, bench, states)
+        spec = replace(spec, reset_cycles=None)
+        report = check([case.path], spec)
+        finding = next(each for each in report.findings if each.name == "reset")
     under = compare_holding(report, finding, bench, states)
     told, step, output = differences(report.rhythm.system, bench, states, 1)
     assert not told
     found = brute.analyse(step, output, spec.period, spec.high_half_cycles)
-    on_time = [released(report.ports, bench, state, level) for state, level in under]
+    on_time = released(report.ports, bench, [state for state, _ in under])
     runs = {
         state[-1]: [*joined(level, [], walk(state, step, output, found, spec))]
         for state, (_, level) in zip(on_time, under, strict=True)
@@ -85,6 +93,52 @@ def compare(case: Case, spec: Spec) -> None:
         usual = [off(run, spec) for run in runs.values()]
         owed = any(off(run, spec) and off(run, spec) not in usual for _, run in late)
         assert bool(finding.obligations) == owed
+
+
+def compare_trace(ports: Ports, bench: Bench, trace: Trace) -> None:
+    """A refutation's trace, run in the simulator: registers and output at every rest."""
+    first, reset = trace.rests[0], ports.reset
+    assert reset is not None
+    *values, clock = first.registers.values()
+    (moved,) = [rest.half_cycle for rest in trace.rests if rest.moved]
+    pulse = Reset(reset.port, reset.active, moved, watched=True)
+    (run,) = simulator.run(bench, [Start(tuple(values), clock)], trace.half_cycles - 1 - moved, pulse)
+    seen = [(tuple(rest.registers.values())[:-1], rest.outputs[ports.output]) for rest in trace.rests]
+    assert [(sample.values, sample.output) for sample in run] == seen
+
+
+def compare_unforced(report: Report, finding: Finding, bench: Bench) -> None:
+    """Reset held for 40 half-cycles from either value of each bit that is said not to be forced: it still differs."""
+    reset, release = report.ports.reset, report.rhythm.release
+    assert reset is not None
+    assert release is not None
+    names = [register.name for register in report.ports.design.registers]
+    assert finding.verdict == "refuted"
+    starts = [Start(state[:-1], state[-1]) for state in power_up_states(report.rhythm.system)]
+    runs = simulator.run(bench, starts, 0, Reset(reset.port, reset.active, 40, watched=True))
+    last: dict[int, list[tuple[int, ...]]] = {level: [] for level in (0, 1)}
+    for run, start in zip(runs, starts, strict=True):
+        last[start.clock].append(run[40].values)
+    differ = {
+        name
+        for here in last.values()
+        for name, values in zip(names, zip(*here, strict=True), strict=True)
+        if len(set(values)) > 1
+    }
+    assert set(release.held.unforced) == differ
+
+
+def compare_too_short(report: Report, finding: Finding, bench: Bench, states: Sequence[State]) -> None:
+    """Whether as many input cycles as are held lead all states to one."""
+    reset, cycles = report.ports.reset, report.spec.reset_cycles
+    assert reset is not None
+    assert cycles is not None
+    starts = [Start(state[:-1], state[-1]) for state in states]
+    runs = simulator.run(bench, starts, 0, Reset(reset.port, reset.active, 2 * cycles))
+    ways: dict[int, set[tuple[int, ...]]] = {level: set() for level in (0, 1)}
+    for run, start in zip(runs, starts, strict=True):
+        ways[start.clock].add(run[0].values)
+    assert (finding.verdict == "proved") == all(len(here) == 1 for here in ways.values())
 
 
 def compare_holding(
@@ -114,57 +168,12 @@ def compare_holding(
     return left
 
 
-def released(ports: Ports, bench: Bench, state: State, level: int) -> State:
-    """The state after a release: reset asserted and released again at once, in a state in which it is held."""
+def released(ports: Ports, bench: Bench, states: Sequence[State]) -> list[State]:
+    """The states after a release: reset asserted and released again at once, in states in which it is held."""
     assert ports.reset is not None
     pulse = Reset(ports.reset.port, ports.reset.active, 0)
-    ((sample,),) = simulator.run(bench, [Start(state[:-1], state[-1])], 0, pulse)
-    return (*sample.values, state[-1])
-
-
-def walk(
-    state: State, step: Map, output: Mapping[State, int], found: brute.BruteResult[State], spec: Spec
-) -> list[int]:
-    """The output from a state on, three periods beyond where it is right, or beyond all states."""
-    recovery = found.recovery_half_cycles[state]
-    length = 3 * spec.period + (len(step) if recovery is None else recovery)
-    levels = []
-    for _ in range(length):
-        levels.append(output[state])
-        state = step[state]
-    return levels
-
-
-def joined(before: int, early: Sequence[int], levels: Sequence[int]) -> Iterator[Run]:
-    """Runs in halves of a half-cycle: the one that goes on from before the release, and the others. The first level
-    lasts for half a half-cycle, because the release is in the middle of one."""
-    halves = [*early, levels[0], *(level for level in levels[1:] for _ in range(2))]
-    goes_on = 0
-    while goes_on < len(halves) and halves[goes_on] == before:
-        goes_on += 1
-    yield before, goes_on
-    for level, group in groupby(halves[goes_on:]):
-        yield level, len(list(group))
-
-
-def whole(runs: Sequence[Run]) -> list[Run]:
-    return list(runs[1:-1])
-
-
-def off(runs: Sequence[Run], spec: Spec) -> list[Run]:
-    """The whole pulses and gaps that have another length than they should."""
-    return [run for run in whole(runs) if run[1] != 2 * nominal(run[0], spec)]
-
-
-def nominal(level: int, spec: Spec) -> int:
-    return spec.high_half_cycles if level else spec.period - spec.high_half_cycles
-
-
-def faults(state: State, runs: Sequence[Run], found: brute.BruteResult[State], spec: Spec) -> Iterator[str]:
-    if found.recovery_half_cycles[state] is None:
-        yield f"{state} is never right"
-    elif any(length < 2 * nominal(level, spec) for level, length in whole(runs)):
-        yield f"a short pulse after {state}"
+    runs = simulator.run(bench, [Start(state[:-1], state[-1]) for state in states], 0, pulse)
+    return [(*run[0].values, state[-1]) for run, state in zip(runs, states, strict=True)]
 
 
 def compare_edges(finding: Finding, runs: Mapping[int, Sequence[Run]]) -> None:
