@@ -356,19 +356,21 @@ def _with(register: Register, name: str, values: Mapping[str, Expr]) -> Register
 # -- what the output does ----------------------------------------------------------------------------------
 
 
-def pulses(freed: Freed) -> Iterator[Pulse]:
-    """The whole pulses and gaps of the output from the release on, over the run's lead-in and what follows until all
-    those of its wave have been seen. What the output is when the release comes is none of them: it began before."""
+def pulses(freed: Freed, rounds: int | None = None) -> Iterator[Pulse]:
+    """The whole pulses and gaps of the output from the release on, over the run's lead-in and so many rounds of its
+    loop; without a number, until all pulses of its wave have been seen. What the output is when the release comes is
+    none of them: it began before."""
     if freed.orbit is None:
         return
     period = freed.wave.period or 0 if freed.wave else 0
     horizon = len(freed.early) + UNITS * (freed.orbit.lead_half_cycles + 2 * period + 1)
+    around = rounds if rounds is not None else 3 if freed.wave else 0
     at = 0
     pending: Pulse | None = None
-    for index, (level, length) in enumerate(_levels(freed, 3 if freed.wave else 0)):
+    for index, (level, length) in enumerate(_levels(freed, around)):
         if pending is not None:
             yield pending
-        if at > horizon:
+        if rounds is None and at > horizon:
             return
         pending = Pulse(level, at, length) if index > 0 else None
         at += length
@@ -438,7 +440,7 @@ def trace_of(release: Release, freed: Freed, begins: int, ends: int, text: str) 
     if freed.flop is not None or freed.held + ends > LONGEST_TRACE:
         return None
     outputs = {ports.output: ports.output_value}
-    registers = _registers(release, freed.start)
+    registers = start_registers(release, freed)
     first = rest_of(ports.design, outputs, dict(ports.resetting.values), registers)
     more = max(ends + AFTERWARDS, SHORTEST)
     moves = [*(None for _ in range(freed.held)), dict(ports.running.values), *(None for _ in range(more))]
@@ -449,10 +451,11 @@ def trace_of(release: Release, freed: Freed, begins: int, ends: int, text: str) 
     return made
 
 
-def _registers(release: Release, state: State) -> dict[str, int]:
-    """All registers and the clock in a state at rest under reset; those that the output does not depend on are 0."""
+def start_registers(release: Release, freed: Freed) -> dict[str, int]:
+    """All registers and the clock at the start of a release's trace, at rest under reset; those that the output does
+    not depend on are 0 there."""
     ports = release.ports
-    values = dict(zip(release.held.names, state, strict=True))
+    values = dict(zip(release.held.names, freed.start, strict=True))
     names = [*(r.name for r in ports.design.registers), ports.clock]
     if len(values) == len(names):
         return values

@@ -18,7 +18,7 @@
 // no-stuck: proved
 // recovery: proved, worst 0, exact
 // settling: proved
-// reset: proved, held 3
+// reset: proved, held 2
 // from reset: period 14, high 6
 // loops: 1
 // false loops: 0

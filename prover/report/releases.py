@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 
 from prover.findings import Finding, Report
-from prover.release import UNITS, Freed, Release, pulses, same_output
+from prover.release import UNITS, Freed, Release, pulses, same_output, start_registers
 from prover.report import checks
 from prover.report.checks import HALF_CYCLE, MOST_HALF_CYCLES
 from prover.report.dut import Dut, NoBench, Scene, came, number, register
@@ -54,7 +54,7 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
         raise NoBench(f"it would have to run for {length // UNITS} half-cycles after the release")
     reset = release.ports.reset
     assert reset is not None
-    first = _registers(release, freed)
+    first = start_registers(release, freed)
     return Scene(
         start=f"reset held for {freed.held} half-cycles, and {freed.cause.removeprefix('reset ')}",
         about=[*ABOUT, *([ABOUT_TWICE] if other else [])],
@@ -101,15 +101,10 @@ def _shown(release: Release, finding: Finding) -> Freed:
         if (
             trace is not None
             and freed.held == held
-            and _registers(release, freed) == dict(trace.rests[0].registers)
+            and start_registers(release, freed) == dict(trace.rests[0].registers)
         ):
             return freed
     raise NoBench("it is none of the releases that were followed")
-
-
-def _registers(release: Release, freed: Freed) -> dict[str, int]:
-    names = [*(r.name for r in release.ports.design.registers), release.ports.clock]
-    return dict(zip(names, freed.start, strict=True))
 
 
 def _other(release: Release, freed: Freed) -> Freed:
@@ -155,7 +150,7 @@ def _played(dut: Dut, release: Release, freed: Freed) -> Iterator[str]:
     """One release from the start on."""
     reset = release.ports.reset
     assert reset is not None
-    registers, port = _registers(release, freed), dut.local[reset.port]
+    registers, port = start_registers(release, freed), dut.local[reset.port]
     inputs: Mapping[str, int] = dict(release.ports.resetting.values)
     yield f"{port} = 1'b{reset.active};"
     yield f"{dut.clock} = 1'b{registers[release.ports.clock]};"
