@@ -20,6 +20,7 @@ from prover.expr import Expr
 from prover.hazard import Swing, clean, gate, still
 from prover.reach import Reach
 from prover.system import State
+from prover.verilog.words import reads
 
 if TYPE_CHECKING:
     from prover.rhythm import Orbit
@@ -113,13 +114,13 @@ class Replay:
         return self.output(*(values[v.name] for v in self.reach.inputs))[0]
 
     def moving(self, number: int) -> list[tuple[str, int]]:
-        """The bits of the inputs that change in a micro-step."""
+        """The bits of the inputs that change in a micro-step, of those that the output reads."""
         then, now = self.moments[number : number + 2]
         return [
             (v.name, i)
             for v in self.reach.inputs
             for i in range(v.width)
-            if (then[v.name] ^ now[v.name]) >> i & 1
+            if ((then[v.name] ^ now[v.name]) & self.reach.read.get(v.name, 0)) >> i & 1
         ]
 
     def arrived(self, number: int, order: Sequence[tuple[str, int]]) -> list[Arrival]:
@@ -256,14 +257,15 @@ class _Terminals:
         seen: list[Expr] = []
         for reader, x in enumerate(network.expressions):
             words: dict[str, Expr] = {}
+            read = reads([x])
             for v in e.variables([x]):
                 bits = []
                 for i in range(v.width):
-                    if v.name in nets or (v.name, i) in moving:
+                    if read[v.name] >> i & 1 and (v.name in nets or (v.name, i) in moving):
                         bits.append(e.var(str(len(self.copies)), 1))
                         self.copies.append((reader, v.name, i))
                     else:
-                        bits.append(e.const(self.then[v.name] >> i & 1, 1))
+                        bits.append(e.const(self.then.get(v.name, 0) >> i & 1, 1))
                 words[v.name] = e.concat_all(bits[::-1])
             seen += e.substitute([x], words)
         values: list[Expr] = []

@@ -19,6 +19,7 @@ from prover.expr import Expr
 from prover.hazard import Network, Swing, as_written, by_function, clean
 from prover.ports import Ports
 from prover.system import Moment, System, start
+from prover.verilog.words import reads
 
 
 def network_of(ports: Ports) -> Network:
@@ -59,6 +60,11 @@ class Reach:
     def inputs(self) -> list[Expr]:
         """What the output hangs on at once: registers, the clock, and choices."""
         return list(dict.fromkeys([*self.network.inputs, *e.variables([self.output])]))
+
+    @cached_property
+    def read(self) -> dict[str, int]:
+        """The bits of these words that are read, a mask each."""
+        return reads([*self.network.expressions, self.output])
 
     def _swings(self, words: Sequence[Expr], then: Moment, now: Moment) -> dict[str, Swing]:
         return {v.name: clean(then[v.name], now[v.name]) for v in words if v.name in then}
