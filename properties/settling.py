@@ -13,7 +13,9 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding:
     """Refuted by a step that never ends, or an outcome that hangs on an order no timing inequality can fix."""
     found = rhythm.settling
     claim = "every step settles, and its outcome does not hang on the order of simultaneous events"
-    obligations = tuple(Obligation(r.text, r.where, r.register) for r in found.races if r.kind != "pulse")
+    obligations = tuple(
+        Obligation(r.text, r.where, r.register, r.via) for r in found.races if r.kind != "pulse"
+    )
     facts: dict[str, Fact] = {"micro_steps": found.depth}
     if rhythm.races_won:
         facts["if_the_edge_won"] = list(rhythm.races_won)

@@ -24,11 +24,14 @@ Fact = str | int | bool | None | list[int] | list[str] | dict[str, int]
 
 @dataclass(frozen=True, slots=True)
 class Obligation:
-    """A timing inequality that the proof needs and that only timing analysis can discharge."""
+    """A timing inequality that the proof needs and that only timing analysis can discharge.
+
+    `via` are further places on the path that it is about, each with what is there."""
 
     text: str
     where: Where
     register: str
+    via: tuple[tuple[str, Where], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

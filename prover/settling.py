@@ -33,10 +33,11 @@ LONGEST = 4096
 class Race:
     """An outcome that hangs on the order of events.
 
-    kind       "release" (clear against clock), "hold" (data against a derived clock) or "pulse" (hazard on a
-               clock or clear net)
+    kind       "release" (clear against clock), "clear" (a clear that ends itself), "hold" (data against a derived
+               clock) or "pulse" (hazard on a clock or clear net)
     register   the register whose value depends on it
     state      a settled state whose next step shows it
+    via        the nets on the path, each with where it is driven
     """
 
     kind: str
@@ -44,6 +45,7 @@ class Race:
     where: Where
     state: State
     text: str
+    via: tuple[tuple[str, Where], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -210,6 +212,7 @@ def find_races(system: System, ask: Ask) -> Iterator[Race]:
     """Every register whose value after a step hangs on the order of events, once a register and kind."""
     before, _ = start(system.design, system.clock, system.inputs)
     moments = [before, *system.chain]
+    told: set[Expr] = set()
     for register in system.design.registers:
         searches: tuple[Callable[[System, Sequence[Moment], Register, Ask], Race | None], ...]
         searches = (_release_race, _hold_race, _pulse, _transient)
@@ -217,6 +220,9 @@ def find_races(system: System, ask: Ask) -> Iterator[Race]:
             race = search(system, moments, register, ask)
             if race:
                 yield race
+                if race.kind in ("release", "pulse"):
+                    told |= {force.when for force in register.forces}
+    yield from _self_ending(system, moments, told, ask)
 
 
 def _state_of(system: System, model: Mapping[str, int]) -> State:
@@ -238,13 +244,72 @@ def _release_race(system: System, moments: Sequence[Moment], register: Register,
             goal = e.conj([released, e.bvnot(low), high, changes, system.settled])
             model = ask(goal)
             if model is not None:
+                clear = _Clear.of(system.design, register)
                 text = (
                     f"the clock edge that clearing makes at {register.name} has to arrive while the clear of "
-                    f"{register.name} is still active, and the clear has to last until the slowest register "
-                    "that it clears has cleared"
+                    f"{register.name} is still active; {clear.text}"
                 )
-                return Race("release", register.name, register.where, _state_of(system, model), text)
+                state = _state_of(system, model)
+                return Race("release", register.name, register.where, state, text, clear.via)
     return None
+
+
+def _self_ending(system: System, moments: Sequence[Moment], told: set[Expr], ask: Ask) -> Iterator[Race]:
+    """Clears that are active on the way and end by what they clear, once a net, but where more is told of it."""
+    for register in system.design.registers:
+        for force in register.forces:
+            if register.kind != "flip-flop" or force.when in told or not force.value.is_const:
+                continue
+            told.add(force.when)
+            deciding = {v.name for v in e.variables([force.when])}
+            own = [
+                r.name
+                for r in system.design.registers
+                if r.name in deciding and any(f.when is force.when for f in r.forces)
+            ]
+            ends = e.FALSE
+            for then, now in pairwise(moments[1:]):
+                (was,), (still,) = e.substitute([force.when], then), e.substitute([force.when], now)
+                moved = e.disj(e.bvnot(e.eq(then[name], now[name])) for name in own)
+                ends = e.bvor(ends, e.conj([was, e.bvnot(still), moved]))
+            model = ask(e.bvand(ends, system.settled))
+            if model is not None:
+                clear = _Clear.of(system.design, register)
+                state = _state_of(system, model)
+                yield Race("clear", register.name, force.where, state, clear.text, clear.via)
+
+
+@dataclass(frozen=True, slots=True)
+class _Clear:
+    """A clear that ends by its own effect: what has to hold of it in words, and the nets on its path."""
+
+    text: str
+    via: tuple[tuple[str, Where], ...]
+
+    @staticmethod
+    def of(design: Design, register: Register) -> _Clear:
+        """The clear of a register, of those that other registers decide."""
+        names = {r.name for r in design.registers}
+        decides = (f for f in register.forces if names & {v.name for v in e.variables([f.when])})
+        force = next(decides, register.forces[0])
+        cleared = [r for r in design.registers if any(f.when is force.when for f in r.forces)]
+        deciding = {v.name for v in e.variables([force.when])}
+        decoded = [r.name for r in design.registers if r.name in deciding]
+        nets = (s for s in design.signals.values() if s.value in (force.when, e.bvnot(force.when)))
+        net = next(((s.name, s.driven) for s in nets if s.driven is not None), ("the clear", force.where))
+        whose = (
+            f" that {_listed(decoded)} make{'s' * (len(decoded) == 1)} through {net[0]}" if decoded else ""
+        )
+        text = (
+            f"the clear{whose} ends by its own effect, and has to last until the slowest of "
+            f"{_listed([r.name for r in cleared])} has cleared"
+        )
+        return _Clear(text, (net, *((r.name, r.where) for r in cleared)))
+
+
+def _listed(names: Sequence[str]) -> str:
+    """Names in a sentence."""
+    return names[0] if len(names) == 1 else f"{', '.join(names[:-1])} and {names[-1]}"
 
 
 def _hold_race(system: System, moments: Sequence[Moment], register: Register, ask: Ask) -> Race | None:

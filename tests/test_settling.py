@@ -2,13 +2,19 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
+from pathlib import Path
+
 import pytest
 import small
 
+from prover import check
 from prover import expr as e
 from prover.design import Design, Force, Register
 from prover.effort import Effort
+from prover.findings import Obligation
 from prover.settling import Settling, settle
+from prover.spec import Spec
 from prover.system import Inputs, System
 
 
@@ -125,3 +131,69 @@ def test_data_launched_by_the_edge_that_makes_the_derived_clock_is_an_obligation
     assert [(race.kind, race.register) for race in found.races] == [("hold", "q")]
     # half rises and flag rises by the same edge; q sees flag after the launch.
     assert system.next((0, 0, 0, 0)) == (1, 1, 1, 1)
+
+
+# -- clears that end themselves ------------------------------------------------------------------------------
+
+CASES = Path(__file__).parents[1] / "cases" / "gauge"
+
+
+def obligations(case: str, ratio: int, output: str) -> tuple[Obligation, ...]:
+    report = check([CASES / f"{case}.v"], Spec(ratio=Fraction(ratio), output=output))
+    (finding,) = [f for f in report.findings if f.name == "settling"]
+    assert finding.verdict == "proved"
+    return finding.obligations
+
+
+@pytest.mark.parametrize(
+    ("case", "ratio", "output", "decoded", "cleared"),
+    [
+        # What the NAND of each reads, as its comment says: the counts of 3, 5 and 7.
+        ("tick_by_3_ripple", 3, "tick", (0, 1), 2),
+        ("baud_by_5_ripple", 5, "baud", (0, 2), 3),
+        ("ping_by_7_ripple", 7, "ping", (0, 1, 2), 3),
+    ],
+)
+def test_a_self_clearing_counter_owes_that_its_clear_lasts(
+    case: str, ratio: int, output: str, decoded: tuple[int, ...], cleared: int
+) -> None:
+    found = obligations(case, ratio, output)
+    # Clearing makes every stage but the first see a clock edge.
+    assert [each.register for each in found] == [f"stage{i}.q" for i in range(1, cleared)]
+    stages = [f"stage{i}.q" for i in range(cleared)]
+    lines = (CASES / f"{case}.v").read_text(encoding="utf-8").splitlines()
+    for each in found:
+        assert (
+            f"{', '.join(f'stage{i}.q' for i in decoded[:-1])} and stage{decoded[-1]}.q make through"
+            in each.text
+        )
+        assert f"until the slowest of {', '.join(stages[:-1])} and {stages[-1]} has cleared" in each.text
+        places = dict(each.via)
+        assert [name for name in places if name.startswith("stage")] == stages
+        (decode,) = [where for name, where in places.items() if name == "clear_n"]
+        assert lines[decode.line - 1].strip().startswith("nand")
+        assert "q <= 1'b0" in lines[places["stage1.q"].line - 1]
+
+
+@pytest.mark.parametrize(
+    ("case", "ratio", "output"),
+    [("tick_by_3_rtl", 3, "tick"), ("baud_by_5_rtl", 5, "baud"), ("ping_by_7_rtl", 7, "ping")],
+)
+def test_a_synchronous_counter_owes_nothing(case: str, ratio: int, output: str) -> None:
+    assert obligations(case, ratio, output) == ()
+
+
+def test_a_clear_that_ends_itself_is_told_where_it_makes_no_clock_edge() -> None:
+    # 00, 10, then 11 for a moment: b clears both, and itself with them, on the one clock that they have.
+    a, b = e.var("a", 1), e.var("b", 1)
+    design = small.design(
+        [small.flop("a", 1, small.CLOCK, e.TRUE, b), small.flop("b", 1, small.CLOCK, a, b)], a
+    )
+    system, found = settled(design)
+    assert [(race.kind, race.register) for race in found.races] == [("clear", "a")]
+    assert found.races[0].text == (
+        "the clear that b makes through the clear ends by its own effect, and has to last until the slowest of a and b "
+        "has cleared"
+    )
+    # From 10 the next rising edge clears both.
+    assert system.next((1, 0, 0)) == (0, 0, 1)

@@ -195,7 +195,8 @@ def _property(finding: Finding, rhythm: Rhythm) -> Object:
 
 def of_obligation(obligation: Obligation) -> Object:
     """A timing obligation, with its place in the sources."""
-    return {"text": obligation.text, "register": obligation.register, **_where(obligation.where)}
+    via = [{"name": name, **_where(where)} for name, where in obligation.via]
+    return {"text": obligation.text, "register": obligation.register, **_where(obligation.where), "via": via}
 
 
 def _where(where: Where) -> Object:

@@ -137,7 +137,8 @@ def _verdict(finding: Finding, widest: int) -> Iterator[str]:
         yield f"{indent}method: {finding.method}"
     for obligation in finding.obligations:
         yield from wrapped(f"obligation: {obligation.text}", indent)
-        yield f"{indent}  {obligation.where}: {obligation.where.text.strip()}"
+        for where in dict.fromkeys([obligation.where, *(place for _, place in obligation.via)]):
+            yield f"{indent}  {where}: {where.text.strip()}"
     for name, told in words.facts_of(finding):
         yield from wrapped(f"{name}: {told}", indent)
 
