@@ -30,7 +30,7 @@ def declared(text: str) -> set[str]:
     """The names that a bench declares for itself; those of the inputs come before the instance."""
     own = text.partition(" dut (")[2]
     names = re.findall(r"^  (?:reg|wire|integer)(?: \[\d+:0\])? (.*);$", own, re.MULTILINE)
-    found = {name.partition(" ")[0] for line in names for name in line.split(", ")}
+    found = {name.partition(" ")[0] for line in names for name in line.partition(" = ")[0].split(", ")}
     found |= set(re.findall(r"^  task (\w+);", text, re.MULTILINE))
     return found | set(re.findall(r"parameter \[63:0\] (\w+)", text)) | {"dut"}
 

@@ -76,9 +76,10 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
         raise NoBench("its claim is none that a bench of one divider can check")
     registers = report.rhythm.system.describe(start)
     reset = report.ports.reset if report.rhythm.scope == "reset" and report.rhythm.starts else None
-    own = list(check.declarations)
+    own, wires = list(check.declarations), [dut.shown]
     if check.loop:
         own += [f"reg [{dut.bits - 1}:0] kept;", "reg back;"]
+        wires.append(dut.registers)
     returned = (
         '$display("         the registers are back after %0d half-cycles: so it goes on for ever", {});'
     )
@@ -88,9 +89,9 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
         level=registers[report.ports.clock],
         moving={reset.port: 1 - reset.active} if reset else {},
         parameters={"HALF_CYCLES": check.length, "BEGINS": check.begins},
-        declarations=[register("t"), "reg out, last, running;", *own],
+        declarations=[register("t"), "reg out, last, running;", *own, *wires],
         code=[
-            *_observation(check, dut),
+            *_observation(check),
             "",
             "initial begin",
             "  {running, last, t} = 0;",
@@ -115,11 +116,11 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
     )
 
 
-def _observation(check: Check, dut: Dut) -> Iterator[str]:
+def _observation(check: Check) -> Iterator[str]:
     yield "// At the end of a half-cycle, when all is at rest."
     yield "task observe;"
     yield "  begin"
-    yield f"    out = {dut.output};"
+    yield "    out = shown;"
     yield "    if (t >= BEGINS && out !== 1'b0 && out !== 1'b1 && !failed) begin"
     yield from came("an unknown output in half-cycle %0d", "t", "1'b0", 6)
     yield "    end"
@@ -132,8 +133,8 @@ def _observation(check: Check, dut: Dut) -> Iterator[str]:
         yield from (f"      {line}" for line in check.observe)
         yield "    end"
     if check.loop:
-        yield f"    if (t == BEGINS) kept = {dut.together};"
-        yield f"    if (t == BEGINS + {number(check.loop)}) back = kept === {dut.together};"
+        yield "    if (t == BEGINS) kept = registers;"
+        yield f"    if (t == BEGINS + {number(check.loop)}) back = kept === registers;"
     yield "    last = out;"
     yield "  end"
     yield "endtask"

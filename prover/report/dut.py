@@ -22,7 +22,7 @@ WIDTH = 64
 
 _OWN = """
 HALF_CYCLES BEGINS t out last failed as_reported running rose spans rising first odd moves began wanted whole changes
-kept back seen other run_again settled dut observe verdict ends_badly
+kept back seen other run_again settled shown registers dut observe verdict ends_badly
 """
 RESERVED = frozenset(_OWN.split())
 """Names that a bench has for itself."""
@@ -65,7 +65,8 @@ class Dut:
     """The instance `dut` of the divider that a report is about.
 
     local   what each input port is connected to, by port
-    output  the output, as a hierarchical name
+    shown   the declaration of `shown`, which is the output. Tasks use it, and `registers` below, in place of paths,
+            which not every simulator finds from inside a task where a generate block has no name
     wholes  the declared names that registers are, or are parts of, by their path in the bench
     """
 
@@ -78,7 +79,7 @@ class Dut:
                 )
         self.local = {name: ended(_apart(name, self.design.inputs)) for name in self.design.inputs}
         self.clock = self.local[self.ports.clock]
-        self.output = f"dut.{ended(self.ports.output)}"
+        self.shown = f"wire shown = dut.{ended(self.ports.output)};"
         found = [self.whole(register.name) for register in self.design.registers]
         self.wholes = {f"dut.{ended(signal.name)}": signal for signal in found}
 
@@ -133,9 +134,9 @@ class Dut:
         yield from (f"{path} = {word(*state[path])};" for path in state if path in memories)
 
     @property
-    def together(self) -> str:
-        """All registers as one concatenation."""
-        return "{" + ", ".join(self.wholes) + "}"
+    def registers(self) -> str:
+        """The declaration of `registers`, all of them as one word, the first uppermost."""
+        return f"wire [{self.bits - 1}:0] registers = {{{', '.join(self.wholes)}}};"
 
     @property
     def bits(self) -> int:

@@ -74,7 +74,11 @@ def _pulse(report: Report, race: Race, dut: Dut) -> Scene:
         start="before a clock edge",
         about=ABOUT,
         level=start[report.ports.clock],
-        declarations=[f"reg [{dut.bits - 1}:0] settled;", f"reg [{width - 1}:0] first, other;"],
+        declarations=[
+            f"reg [{dut.bits - 1}:0] settled;",
+            f"reg [{width - 1}:0] first, other;",
+            dut.registers,
+        ],
         code=[
             "initial begin",
             *(f"  {line}" for line in _step(dut, start)),
@@ -190,11 +194,17 @@ def _glitch(report: Report, finding: Finding, dut: Dut) -> Scene:
         start="before a clock edge",
         about=ABOUT,
         level=start[report.ports.clock],
-        declarations=[f"reg [{dut.bits - 1}:0] settled;", "reg out, last;", "integer changes;"],
+        declarations=[
+            f"reg [{dut.bits - 1}:0] settled;",
+            "reg out, last;",
+            "integer changes;",
+            dut.registers,
+            dut.shown,
+        ],
         code=[
             "task observe;",
             "  begin",
-            f"    out = {dut.output};",
+            "    out = shown;",
             "    if (out !== last) changes = changes + 1;",
             "    last = out;",
             "  end",
@@ -226,7 +236,7 @@ def _step(dut: Dut, start: Mapping[str, int]) -> Iterator[str]:
     yield "// The start state: forced so that nothing else reacts, then let go."
     yield from dut.set(start)
     yield f"#{HALF_CYCLE} {dut.clock} = ~{dut.clock};"
-    yield f"#{HALF_CYCLE} settled = {dut.together};"
+    yield f"#{HALF_CYCLE} settled = registers;"
 
 
 def _arrivals(
@@ -249,7 +259,7 @@ def _arrivals(
     if free:
         yield f"release {free};"
     if observed:
-        yield f"last = {dut.output};"
+        yield "last = shown;"
         yield "changes = 0;"
     places = _places(dut)
     done: dict[str, int] = {}

@@ -64,10 +64,11 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
         declarations=[
             *(register(name) for name in ("t", "began", "wanted")),
             "reg out, last, whole, run_again;",
+            dut.shown,
             *([f"reg seen [0:{length + UNITS}];"] if other else []),
         ],
         code=[
-            *_observation(dut, goal, wrong, bool(other)),
+            *_observation(goal, wrong, bool(other)),
             "",
             "initial begin",
             "  run_again = 1'b0;",
@@ -158,7 +159,7 @@ def _played(dut: Dut, release: Release, freed: Freed) -> Iterator[str]:
     yield from dut.set(registers, inputs)
     yield f"repeat ({freed.held}) #{HALF_CYCLE} {dut.clock} = ~{dut.clock};"
     yield f"#{HALF_CYCLE // UNITS};"
-    yield f"last = {dut.output};"
+    yield "last = shown;"
     yield "{began, whole} = 0;"
     yield f"{port} = 1'b{1 - reset.active};"
     yield f"for (t = 0; t < {UNITS} * HALF_CYCLES; t = t + 1) begin"
@@ -168,7 +169,7 @@ def _played(dut: Dut, release: Release, freed: Freed) -> Iterator[str]:
     yield "end"
 
 
-def _observation(dut: Dut, goal: Goal, wrong: tuple[int, int, int] | None, twice: bool) -> Iterator[str]:
+def _observation(goal: Goal, wrong: tuple[int, int, int] | None, twice: bool) -> Iterator[str]:
     level, at, length = wrong or (0, 0, 0)
     lengths = {level: number(UNITS * size) for level, size in goal.pulses}
     same = f"last == {level} && began == {number(at)}" if wrong else "1'b0"
@@ -176,7 +177,7 @@ def _observation(dut: Dut, goal: Goal, wrong: tuple[int, int, int] | None, twice
     yield "// In the middle and at the end of each half-cycle."
     yield "task observe;"
     yield "  begin"
-    yield f"    out = {dut.output};"
+    yield "    out = shown;"
     yield "    if (out !== 1'b0 && out !== 1'b1 && !failed) begin"
     yield from came(f"an unknown output, {halves} after the release", "t", "1'b0", 6)
     yield "    end"

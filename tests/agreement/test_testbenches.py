@@ -391,6 +391,18 @@ module top (input clk, output reg out);
   end
 endmodule
 """,
+    "blocks without names": """\
+module top (input clk, output out);
+  genvar i;
+  if (1) begin wire w = clk; end
+  for (i = 0; i < 2; i = i + 1) begin
+    reg q;
+    if (i == 0) always @(posedge clk) q <= ~q;
+    else begin : after reg again; always @(posedge clk) begin again <= ~again ^ again; q <= q ^ genblk2[0].q; end end
+  end
+  assign out = genblk2[1].q;
+endmodule
+""",
     "an inout as input": """\
 module top (input clk, inout on, output out);
   reg [1:0] n;
