@@ -114,11 +114,28 @@ MENDED: dict[str, list[tuple[str, str]]] = {
     "noise_24_xnor": [("q[17])};", "q[17])} & ~{24{&q}};")],
 }
 
+# The same for glitches alone, where a flip-flop behind the output is no cure, or not one that is easily written.
+BRIDGED = {
+    "carrier_by_1_5_selected": [
+        ("after_rise <= count != 2'd1;", "if (count != 2'd2) after_rise <= ~after_rise;"),
+        ("after_fall <= count != 2'd0;", "if (count != 2'd1) after_fall <= ~after_fall;"),
+        ("clk ? after_rise : after_fall", "after_rise ^ after_fall"),
+    ],
+    "pulses_same_edge": [("always @(posedge clk) enable", "always @(negedge clk) enable")],
+    "sonde_by_8_decoded": [
+        (
+            "and decode (window, q_n[2], q_n[1]);",
+            "reg made; always @(posedge clk) made <= q_n[2] & q_n[1]; assign window = made;",
+        )
+    ],
+}
+
 # Why a refuted property has no bench.
 WITHOUT = {
     "settling": "no order of the changes that last to the end of the step shows it",
     "recovery": "it would have to run for",
     "reset": "of a mean ratio no one pulse is known to be too short",
+    "glitch-free": "changes reach gates at different times in it",
 }
 
 
@@ -271,13 +288,15 @@ def test_a_bench_fails_as_told_and_passes_on_the_divider_mended(
         spec = replace(spec, each={name: ((value, value),) for name, value in at.items()})
     if case.path.parent.name == "faulty":
         assert case.path.stem in MENDED or not others
-        passes(case, spec, glitches, registered(text), options, tmp_path)
+        bridges = BRIDGED.get(case.path.stem)
+        cured = replaced(text, bridges) if bridges else registered(text)
+        passes(case, spec, glitches, cured, options, tmp_path)
     if case.path.stem in MENDED:
-        passes(case, spec, others, mended(case, text), options, tmp_path)
+        passes(case, spec, others, replaced(text, MENDED[case.path.stem]), options, tmp_path)
 
 
-def mended(case: Case, text: str) -> str:
-    for old, new in MENDED[case.path.stem]:
+def replaced(text: str, repairs: list[tuple[str, str]]) -> str:
+    for old, new in repairs:
         assert text.count(old) == 1, old
         text = text.replace(old, new)
     return text
