@@ -10,13 +10,13 @@ import math
 import os
 import sys
 import threading
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from enum import IntEnum
 from pathlib import Path
 from types import TracebackType
-from typing import TYPE_CHECKING, Any, NoReturn, TextIO
+from typing import TYPE_CHECKING, Any, Literal, NoReturn, TextIO
 
 import click
 
@@ -38,6 +38,7 @@ from prover.spec import (
 if TYPE_CHECKING:
     from prover.compared import Comparison
     from prover.findings import Report
+    from prover.gate.runner import Run
     from prover.pair import Pairing
     from prover.pool import Crew
     from prover.report.terminal import Look
@@ -222,6 +223,12 @@ CLAIMING = (
 EFFORT: Decorator = click.option("--effort", metavar="SECONDS", help="Time to try, then leave open [60].")
 JSON: Decorator = _written("--json", "Write the report as JSON.")
 HTML: Decorator = _written("--html", "Write the report as one page for a browser.")
+LEDGER: Decorator = click.option(
+    "--ledger",
+    metavar="PATH",
+    help="Where verdicts are kept [.subharmonic/ledger.sqlite].",
+    shell_complete=completion.files,
+)
 FIGURES: tuple[Decorator, ...] = (
     click.option("--fin", metavar="FREQ", help="Input frequency, such as 50MHz."),
     click.option("--source-duty", metavar="LOW..HIGH", help="Input duty in per cent: 45..55."),
@@ -410,6 +417,106 @@ def recheck(
         outcome = recheck(certificate, solver, sources, by_clauses, tell=progress.tell, **given)
     _print(told.render(outcome) + "\n")
     return Status.REFUTED if outcome.differences else Status.OPEN if outcome.gave_up else Status.PROVED
+
+
+@main.command(short_help="Judge what changed of the dividers in a manifest.")
+@click.argument("manifest", required=False, shell_complete=completion.files)
+@_options(
+    LEDGER,
+    click.option("--afresh", is_flag=True, help="Judge all, whatever is kept."),
+    click.option("--recheck", is_flag=True, help="Check the certificates of what is kept."),
+    JSON,
+    HTML,
+    *TRACES,
+    *CREWS,
+)
+def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
+    """Judge the dividers of a manifest, subharmonic.toml, of which something has changed, and tell all verdicts.
+
+    \b
+    Example: subharmonic gate --junit gate.xml
+    Exit status: 0 proved, 1 refuted or a waiver expired, 2 bad input, 3 open, 70 our fault.
+    """
+    named = {name: options[f"{name}_path"] for name in ("json", "html", "vcd", "junit", "sarif")}
+    targets = Targets(**named, testbench=options["testbench_folder"])
+    _check_folder(targets)
+    crew = _crew(options["workers"], options["cluster"])
+    with Progress(sys.stderr) as progress:
+        from prover import gate as gates
+        from prover.report import gate as told
+
+        listed = gates.read(manifest, _manifest_options(), _spec_of)
+        check_targets(targets.paths(), [str(listed.path)])
+        kept = gates.opened(listed, ledger)
+        run = gates.run_gate(
+            listed, kept, crew, afresh=options["afresh"], recheck=options["recheck"], tell=progress.tell
+        )
+        progress.tell("writing the reports")
+        shown = run.rows if any(targets.paths()) else [row for row in run.rows if row.verdict != "proved"]
+        found = [row.outcome(kept) for row in shown]
+        written = _results_of(found, targets, told.as_object(run))
+        texts = [
+            _text_of(outcome, paths)
+            for outcome, row, paths in zip(found, shown, written.waves, strict=True)
+            if row.verdict != "proved"
+        ]
+        text = "\n".join([*filter(None, texts), told.render(run)])
+        text = _written_up(written.results, text, found)
+    _print(text)
+    for remark in written.remarks:
+        _complain(remark)
+    if run.unkept is not None:
+        _complain(_user_error(run.unkept))
+    return _worst(_statuses(run))
+
+
+@main.command(short_help="Tell a divider's verdicts over time.")
+@click.argument("file", shell_complete=completion.files)
+@LEDGER
+def history(file: str, ledger: str | None) -> Status:
+    """Tell what `gate` has found of the dividers that a file is part of: when, on which content, what had changed.
+
+    \b
+    Example: subharmonic history cases/gauge/ping_by_7_rtl.v
+    Exit status: 0 told, 2 nothing known or bad input, 70 our fault.
+    """
+    from prover import gate as gates
+    from prover.report import gate as told
+
+    _print(told.render_history(gates.events_of(file, ledger)))
+    return Status.PROVED
+
+
+def _manifest_options() -> dict[str, Literal["one", "many", "flag"]]:
+    """The options of `check` that a manifest has, and what is given with them."""
+    apart = ("waivers", "workers", "cluster")
+    return {
+        option.opts[0].removeprefix("--"): "flag" if option.is_flag else "many" if option.multiple else "one"
+        for option in check.params
+        if isinstance(option, click.Option)
+        and option.name not in apart
+        and not str(option.name).endswith(("_path", "_folder"))
+    }
+
+
+def _spec_of(arguments: Sequence[str]) -> Spec:
+    """The claim that arguments of `check` make."""
+    try:
+        # A manifest has files of its own.
+        context = check.make_context("check", ["-", *arguments])
+    except click.ClickException as error:
+        raise UserError(error.format_message()) from None
+    return _spec(context.params)
+
+
+def _statuses(run: Run) -> Iterator[Status]:
+    yield Status.PROVED
+    kinds = {"error": Status.USAGE, "fault": Status.FAULT, "open": Status.OPEN, "refuted": Status.REFUTED}
+    yield from (kinds[row.verdict] for row in run.rows if row.verdict != "proved")
+    if run.expired:
+        yield Status.REFUTED
+    if run.unkept is not None:
+        yield Status.USAGE
 
 
 def _spec(options: dict[str, Any]) -> Spec:
@@ -686,43 +793,80 @@ def _crew(workers: str | None, cluster: str | None) -> Crew:
 
 def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, targets: Targets) -> Status:
     """A verdict for each divider, a line for each at the end, and the worst status."""
-    if targets.vcd is not None and not _is_folder(targets.vcd):
-        raise UserError(f"--vcd {targets.vcd}: there are several dividers", hint="name a folder")
+    _check_folder(targets)
     if targets.certificate is not None:
         raise UserError("--certificate: there are several dividers", hint="check one at a time")
     with Progress(sys.stderr) as progress:
         from prover.report import several as told
-        from prover.several import labels, outcomes
+        from prover.several import outcomes
 
         found = outcomes(dividers, spec, crew, progress.tell)
-        results: list[Result] = []
-        texts: list[str] = []
-        remarks: list[str] = []
-        for outcome, label in zip(found, labels(found), strict=True):
-            if outcome.report is not None:
-                waves = _vcd(outcome.report, targets.vcd, f"{label}-")
-                benches, without = _benches(outcome.report, targets.testbench, f"{label}-")
-                results += [*waves, *benches]
-                remarks += [f"{outcome.name}: {remark}" for remark in without]
-                texts.append(_told(outcome.report, [wave.path for wave in waves]))
-            elif outcome.error is not None:
-                texts.append(harmless(_user_error(outcome.error)) + "\n")
-        results += _of_all(found, targets)
-        if targets.json is not None:
-            results.append(Result(targets.json, told.render_json(found)))
-        if targets.html is not None:
-            from prover.report import html
-
-            results.append(Result(targets.html, html.render_several(found)))
-        piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
-        text = piped or "\n".join([*texts, told.summary(found) + "\n"])
-        sources = [file for outcome in found for file in outcome.files]
-        check_targets([result.path for result in results], sources)
-        write_files([result for result in results if result.path != STANDARD_OUTPUT])
+        written = _results_of(found, targets)
+        texts = [_text_of(*pair) for pair in zip(found, written.waves, strict=True)]
+        text = "\n".join([*filter(None, texts), told.summary(found) + "\n"])
+        text = _written_up(written.results, text, found)
     _print(text)
-    for remark in remarks:
+    for remark in written.remarks:
         _complain(remark)
-    return max((_status_of_outcome(outcome) for outcome in found), key=SEVERITY.index)
+    return _worst(_status_of_outcome(outcome) for outcome in found)
+
+
+def _check_folder(targets: Targets) -> None:
+    if targets.vcd is not None and not _is_folder(targets.vcd):
+        raise UserError(f"--vcd {targets.vcd}: there are several dividers", hint="name a folder")
+
+
+@dataclass(frozen=True, slots=True)
+class Written:
+    """What goes to the targets, on all dividers of a run: the results, the paths of each one's waves, remarks."""
+
+    results: list[Result]
+    waves: list[list[str]]
+    remarks: list[str]
+
+
+def _results_of(found: Sequence[Outcome], targets: Targets, more: dict[str, Any] | None = None) -> Written:
+    """What goes to the targets; `more` goes into the JSON."""
+    from prover.report import several as told
+    from prover.several import labels
+
+    written = Written([], [], [])
+    for outcome, label in zip(found, labels(found), strict=True):
+        waves: list[Result] = []
+        if outcome.report is not None:
+            waves = _vcd(outcome.report, targets.vcd, f"{label}-")
+            benches, without = _benches(outcome.report, targets.testbench, f"{label}-")
+            written.results.extend([*waves, *benches])
+            written.remarks.extend(f"{outcome.title or outcome.name}: {remark}" for remark in without)
+        written.waves.append([wave.path for wave in waves])
+    written.results.extend(_of_all(found, targets))
+    if targets.json is not None:
+        written.results.append(Result(targets.json, told.render_json(found, more)))
+    if targets.html is not None:
+        from prover.report import html
+
+        written.results.append(Result(targets.html, html.render_several(found)))
+    return written
+
+
+def _text_of(outcome: Outcome, waves: Sequence[str]) -> str:
+    """An outcome for people; "" where the table says all."""
+    if outcome.report is not None:
+        return _told(outcome.report, waves)
+    return harmless(_user_error(outcome.error)) + "\n" if outcome.error is not None else ""
+
+
+def _written_up(results: Sequence[Result], text: str, found: Sequence[Outcome]) -> str:
+    """Write the results to their files; what goes to standard output: one of them, or the text for people."""
+    piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
+    sources = [file for outcome in found for file in outcome.files]
+    check_targets([result.path for result in results], sources)
+    write_files([result for result in results if result.path != STANDARD_OUTPUT])
+    return piped or text
+
+
+def _worst(statuses: Iterable[Status]) -> Status:
+    return max(statuses, key=SEVERITY.index)
 
 
 def _exchanged(files: Sequence[str], came: Report | Exception, targets: Targets) -> list[Result]:

@@ -8,6 +8,7 @@ with the files that define the modules it contains.
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -31,13 +32,14 @@ MOST_FILES = 10_000
 @dataclass(frozen=True, slots=True)
 class Outcome:
     """What came of one divider: its report, or why there is none. A `fault` is this program's own, and one that is
-    `open` ran out of effort."""
+    `open` ran out of effort. The `title` is the name that a manifest gives it."""
 
     files: tuple[str, ...]
     report: Report | None = None
     error: UserError | None = None
     fault: str = ""
     open: str = ""
+    title: str = ""
 
     @property
     def name(self) -> str:
@@ -170,11 +172,12 @@ def failed(files: tuple[str, ...], fault: Exception) -> Outcome:
 
 
 def labels(found: Sequence[Outcome]) -> list[str]:
-    """A name for each divider's files of results, all of them different: the stem of its file, and a number."""
+    """A name for each divider's files of results, all of them different: its title or the stem of its file, and a
+    number."""
     seen: dict[str, int] = {}
     out = []
     for outcome in found:
-        stem = Path(outcome.name).stem
+        stem = re.sub(r"[^\w.,=\[\]-]", "_", outcome.title) or Path(outcome.name).stem
         seen[stem] = seen.get(stem, 0) + 1
         out.append(stem if seen[stem] == 1 else f"{stem}-{seen[stem]}")
     return out

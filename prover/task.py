@@ -202,7 +202,7 @@ def work(task: Task, say: Callable[[Message], None]) -> None:
 def _asked(task: Task, tell: Callable[[str], None]) -> Report:
     from prover.api import check, measure
 
-    return (measure if task.spec.ratio is None else check)(task.files, task.spec, tell)
+    return (check if task.spec.claims else measure)(task.files, task.spec, tell)
 
 
 def _teller(say: Callable[[Message], None]) -> Callable[[str], None]:

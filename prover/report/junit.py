@@ -37,7 +37,7 @@ def _suite(root: Element, number: int, outcome: Outcome, when: datetime) -> None
     cases = list(_cases(outcome))
     kinds = [None if said is None else said.tag for _, said in cases]
     seconds = f"{report.seconds if report else 0:.3f}"
-    name = report.ports.design.top if report else outcome.name
+    name = outcome.title or (report.ports.design.top if report else outcome.name)
     suite = _added(
         root,
         "testsuite",

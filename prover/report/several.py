@@ -18,12 +18,13 @@ from prover.several import Outcome
 SCHEMA = "subharmonic/reports-1"
 
 
-def render_json(found: Sequence[Outcome]) -> str:
-    """All outcomes as JSON text, one object, ended by a newline."""
+def render_json(found: Sequence[Outcome], more: Object | None = None) -> str:
+    """All outcomes as JSON text, one object, ended by a newline; `more` are entries that it has besides."""
     told: Object = {
         "schema": SCHEMA,
         "reports": [as_object(outcome.report) for outcome in found if outcome.report is not None],
         "errors": [_error(outcome) for outcome in found if outcome.report is None],
+        **(more or {}),
     }
     return dumps(told, indent=2) + "\n"
 

@@ -136,7 +136,9 @@ def _key(index: int) -> str:
 
 
 def _top(outcome: Outcome) -> str:
-    """The divider's name, or its file's where the file could not be read."""
+    """The divider's name in a manifest or its top's, or its file's where the file could not be read."""
+    if outcome.title:
+        return outcome.title
     return outcome.report.ports.design.top if outcome.report else os.path.basename(outcome.name)
 
 

@@ -1,0 +1,59 @@
+"""The gate: a manifest of dividers and claims, a ledger of what was found, and the run that brings it up to date."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+
+from prover.errors import UserError
+from prover.gate.ledger import Event, Ledger
+from prover.gate.manifest import Manifest, Options, SpecOf, find_manifest, read_manifest
+from prover.gate.runner import Run, run_gate
+
+__all__ = ["Event", "Ledger", "Manifest", "Run", "events_of", "opened", "read", "run_gate"]
+
+FOLDER = ".subharmonic"
+"""Beside the manifest: what belongs to the gate and into no repository."""
+
+
+def read(path: str | None, options: Options, spec_of: SpecOf) -> Manifest:
+    """The manifest at the path, or the one that is in force here."""
+    return read_manifest(Path(path) if path is not None else find_manifest(Path()), options, spec_of)
+
+
+def opened(manifest: Manifest, path: str | None) -> Ledger:
+    """The ledger at the path, or the manifest's own."""
+    return Ledger(Path(path)) if path is not None else _own(manifest.folder)
+
+
+def _own(folder: Path) -> Ledger:
+    """The ledger beside a manifest; its folder is ignored by version control from the beginning."""
+    own = folder / FOLDER
+    ledger = Ledger(own / "ledger.sqlite")
+    ignore = own / ".gitignore"
+    try:
+        if not ignore.exists():
+            ignore.write_text("*\n", encoding="utf-8")
+    except OSError:
+        # A ledger that can be written is what counts.
+        pass
+    return ledger
+
+
+def events_of(file: str, path: str | None) -> list[Event]:
+    """What the ledger has on the dividers that the file is part of. Raises UserError where that is nothing."""
+    folder = find_manifest(Path(file).parent).parent
+    place = Path(path) if path is not None else folder / FOLDER / "ledger.sqlite"
+    if not place.is_file():
+        raise UserError(f"there is no ledger {place}", hint="run the gate first")
+    name = os.path.relpath(Path(file).resolve(), folder.resolve()).replace(os.sep, "/")
+    ledger = Ledger(place, to_read=True)
+    try:
+        found = [event for event in ledger.history() if name in event.files]
+    finally:
+        ledger.close()
+    if not found:
+        raise UserError(
+            f"the ledger {place} has nothing on {name}", hint="run the gate with it in the manifest"
+        )
+    return found

@@ -1,0 +1,199 @@
+"""A gate's run and a divider's history, for people and for machines.
+
+The dividers of one entry that are proved stand in one line; every other one has a line of its own.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterator, Mapping, Sequence
+from itertools import groupby
+from typing import Any
+
+from prover.each import ranges_text
+from prover.gate.ledger import Event
+from prover.gate.runner import Excused, Row, Run
+from prover.output import harmless
+
+Object = dict[str, Any]
+
+SHOWN = 12
+"""Digits of a digest that are shown."""
+
+
+def render(run: Run) -> str:
+    """The table of a run, what is to be told of waivers, and the sum of it, ended by a newline."""
+    lines = list(_table([_line(group) for group in _groups(run.rows)]))
+    lines += [line for each in run.excused for line in _waiver(each)]
+    return harmless("\n".join([*lines, _sum(run)])) + "\n"
+
+
+def _groups(rows: Sequence[Row]) -> Iterator[list[Row]]:
+    """Rows that share a line: neighbours of one entry with ranges that are proved, and of one source."""
+    for (_, folds, *_), group in groupby(
+        rows,
+        key=lambda row: (row.divider.entry, row.divider.parameters and row.verdict == "proved", row.source),
+    ):
+        if folds:
+            yield list(group)
+        else:
+            yield from ([row] for row in group)
+
+
+def _line(rows: list[Row]) -> tuple[str, str, str, str]:
+    """Verdict, name, time and words of a line."""
+    first = rows[0]
+    seconds = [row.kept.seconds for row in rows if row.kept is not None]
+    words = [first.says]
+    if len(rows) > 1:
+        slowest = max(rows, key=lambda row: row.kept.seconds if row.kept else 0.0)
+        words = [f"{_ends(rows)}: {len(rows)} dividers, the slowest {slowest.divider.name}"]
+        words[0] += f" {max(seconds):.2f} s"
+    obligations = sum(each.obligations for row in rows for each in (row.kept.properties if row.kept else ()))
+    if first.verdict == "proved" and obligations:
+        words.append(f"under {obligations} timing obligation{'s' * (obligations > 1)}")
+    words += sorted({f"{name} waived" for row in rows for name in _excused_by(row)})
+    if first.kept is not None and not first.kept.certificate:
+        words.append("no certificate")
+    name = first.divider.name if len(rows) == 1 else first.divider.entry
+    time = f"{sum(seconds):.2f} s" if first.source == "new" and seconds else first.source
+    return first.verdict.upper(), name, "" if first.kept is None else time, "; ".join(filter(None, words))
+
+
+def _excused_by(row: Row) -> Iterator[str]:
+    """The properties for which a waiver of the divider counts."""
+    for each in row.kept.properties if row.kept else ():
+        if each.verdict != "proved" and each.name in row.waived:
+            yield each.name
+
+
+def _ends(rows: Sequence[Row]) -> str:
+    """The values of the ranges: N=2..512."""
+    told = []
+    for name in rows[0].divider.parameters:
+        values = sorted({row.divider.parameters[name] for row in rows})
+        ranges: list[tuple[int, int]] = []
+        for value in values:
+            follows = bool(ranges) and value == ranges[-1][1] + 1
+            ranges[-1:] = [(ranges[-1][0], value)] if follows else [*ranges[-1:], (value, value)]
+        told.append(f"{name}={ranges_text(ranges)}")
+    return ", ".join(told)
+
+
+def _table(rows: Sequence[Sequence[str]]) -> Iterator[str]:
+    """The cells in columns; the last one is as long as it likes."""
+    shown = [[harmless(cell) for cell in row] for row in rows]
+    widths = [max((len(row[column]) for row in shown), default=0) for column in range(len(shown[0]) - 1)]
+    for row in shown:
+        cells = [f"{cell:{width}}" for cell, width in zip(row, widths, strict=False)]
+        yield "  ".join([*cells, row[-1]]).rstrip()
+
+
+def _waiver(each: Excused) -> Iterator[str]:
+    waiver = each.waiver
+    at = f"{waiver.where}: {each.entry}: {waiver.name}"
+    if each.state == "expired":
+        yield f"EXPIRED   {at} was waived until {waiver.until}: {waiver.reason}"
+        yield "          hint: mend the divider, or judge the reason anew and give it another date"
+    elif each.state == "needless":
+        yield f"note      {at} is proved by now: take its waiver out ({waiver.reason})"
+    else:
+        yield f"waived    {at} until {waiver.until}: {waiver.reason}"
+
+
+def _sum(run: Run) -> str:
+    counted = Counter(row.verdict for row in run.rows)
+    sources = Counter(row.source for row in run.rows if row.kept is not None)
+    told = ", ".join(f"{count} {what}" for what, count in counted.items())
+    named = {"new": "judged now", "kept": "kept", "rechecked": "kept and rechecked"}
+    how = ", ".join(f"{count} {named[source]}" for source, count in sources.items())
+    expired = f"; {len(run.expired)} waiver{'s' * (len(run.expired) > 1)} expired" if run.expired else ""
+    return f"{len(run.rows)} divider{'s' * (len(run.rows) != 1)}: {told}{expired}" + (
+        f" ({how}, in {run.seconds:.2f} s)" if how else ""
+    )
+
+
+def as_object(run: Run) -> Object:
+    """What JSON tells of a run beside the reports: `gate`, with a line for each divider in the manifest's order."""
+    return {
+        "gate": {
+            "manifest": str(run.manifest.path),
+            "dividers": [_as_object(row) for row in run.rows],
+            "waivers": [
+                {
+                    "divider": each.entry,
+                    "property": each.waiver.name,
+                    "reason": each.waiver.reason,
+                    "until": each.waiver.until.isoformat(),
+                    "state": each.state,
+                }
+                for each in run.excused
+            ],
+            "seconds": round(run.seconds, 3),
+        }
+    }
+
+
+def _as_object(row: Row) -> Object:
+    return {
+        "name": row.divider.name,
+        "entry": row.divider.entry,
+        "parameters": dict(row.divider.parameters),
+        "files": list(row.files),
+        "verdict": row.verdict,
+        "says": row.says,
+        "source": row.source,
+        "decided": row.kept.decided if row.kept else None,
+        "key": row.key,
+        "certified": bool(row.kept and row.kept.certificate),
+    }
+
+
+# -- history -----------------------------------------------------------------------------------------------
+
+
+def render_history(events: Sequence[Event]) -> str:
+    """Verdicts over time: when, what, of which divider and content, and what had changed since its last verdict;
+    ended by a newline. Dividers of one entry to which the same happened in one run stand in one line."""
+    last: dict[str, Event] = {}
+    rows: list[tuple[Event, str]] = []
+    for event in events:
+        rows.append((event, _changed(last.get(event.divider), event)))
+        last[event.divider] = event
+    lines = []
+    for _, group in groupby(rows, key=lambda row: (row[0].run, row[0].entry, row[0].verdict, row[1])):
+        same = list(group)
+        event, changed = same[0]
+        name = event.divider if len(same) == 1 else f"{event.divider} and {len(same) - 1} more"
+        says = f"; {event.says}" if event.says and event.verdict != "proved" else ""
+        when = event.run.replace("T", " ").removesuffix("+00:00")
+        lines.append((when, event.verdict.upper(), name, event.sources[:SHOWN] or "-", changed + says))
+    return (
+        harmless("\n".join(_table([("UTC", "verdict", "divider", "content", "what changed"), *lines]))) + "\n"
+    )
+
+
+def _changed(before: Event | None, now: Event) -> str:
+    """What had changed, in words."""
+    if before is None:
+        return "first seen"
+    told = []
+    if before.sources != now.sources:
+        told.append("sources")
+    told += _pairs(before.options, now.options)
+    if before.prover != now.prover:
+        told.append(f"prover {before.prover} -> {now.prover}")
+    told += [f"waiver of {name}" for name in _pairs_of(before.waived, now.waived)]
+    if before.files != now.files:
+        told.append("names of files")
+    return ", ".join(told) or "the verdict"
+
+
+def _pairs(before: Mapping[str, str], now: Mapping[str, str]) -> Iterator[str]:
+    for name in _pairs_of(before, now):
+        yield f"{name.replace('_', '-')} {before.get(name, 'none')} -> {now.get(name, 'none')}"
+
+
+def _pairs_of(before: Mapping[str, str], now: Mapping[str, str]) -> list[str]:
+    """The names whose values differ."""
+    return [name for name in {**before, **now} if before.get(name) != now.get(name)]

@@ -1,0 +1,192 @@
+"""The manifest: what its entries come to, and that nothing in it is passed over."""
+
+from __future__ import annotations
+
+from datetime import date
+from fractions import Fraction
+from pathlib import Path
+
+import pytest
+
+from prover import cli
+from prover.errors import UserError
+from prover.gate.manifest import Manifest, find_manifest, read_manifest
+from prover.spec import Spec
+
+
+def read(folder: Path, text: str) -> Manifest:
+    path = folder / "subharmonic.toml"
+    path.write_text(text, encoding="utf-8")
+    return read_manifest(path, cli._manifest_options(), cli._spec_of)
+
+
+FULL = """\
+[defaults]
+effort = 30
+include = "inc"
+fin = "50MHz"
+
+[divider.ping]
+files = ["ping.v", "stage.v"]
+ratio = 2.5
+high = 2
+module = "ping"
+clock = "clk"
+reset = "rst_n=0"
+output = "q[1]"
+set = { WIDTH = 4, LIMIT = "8'h1f" }
+hold = { en = 1 }
+define = { FAST = 1, "NAME" = "text" }
+include = ["inc", "sub/../more"]
+start = "initial"
+within = 20
+source-duty = "45..55"
+effort = 2.5
+
+[divider."by value"]
+files = "sample.v"
+ratio = "2*(div+1)"
+each = ["div=1..15"]
+where = "div != 3"
+
+[divider.mean]
+files = "modem.v"
+ratio = "16/3"
+mean = true
+"""
+
+
+def test_every_option_of_check_has_its_place(tmp_path: Path) -> None:
+    ping, sample, modem = read(tmp_path, FULL).dividers
+    assert ping.files == ("ping.v", "stage.v")
+    assert ping.spec == Spec(
+        ratio=Fraction(5, 2),
+        high=2,
+        module="ping",
+        clock="clk",
+        reset="rst_n=0",
+        output="q[1]",
+        parameters={"WIDTH": 4, "LIMIT": 31},
+        holds={"en": 1},
+        defines={"FAST": "1", "NAME": "text"},
+        include=("inc", "more"),
+        start="initial",
+        within=20,
+        fin=Fraction(50_000_000),
+        source_duty=(Fraction(45), Fraction(55)),
+        effort=2.5,
+    )
+    assert (sample.name, sample.spec.each, sample.spec.effort) == ("by value", {"div": ((1, 15),)}, 30)
+    assert sample.spec.ratio_formula is not None
+    assert sample.spec.ratio_formula.text == "2*(div+1)"
+    assert (modem.spec.ratio, modem.spec.mean) == (Fraction(16, 3), True)
+
+
+def test_ranges_make_one_entry_many(tmp_path: Path) -> None:
+    text = '[divider.tick]\nfiles = "tick.v"\nratio = "N*M"\nset = { N = "2..4", W = 9, M = [1, "3..4"] }\n'
+    found = read(tmp_path, text).dividers
+    assert [divider.name for divider in found] == [
+        *("tick[N=2,M=1]", "tick[N=2,M=3]", "tick[N=2,M=4]", "tick[N=3,M=1]", "tick[N=3,M=3]"),
+        *("tick[N=3,M=4]", "tick[N=4,M=1]", "tick[N=4,M=3]", "tick[N=4,M=4]"),
+    ]
+    assert found[1].spec.parameters == {"W": 9, "N": 2, "M": 3}
+    assert {divider.entry for divider in found} == {"tick"}
+
+
+def test_waivers_have_a_reason_and_a_last_day(tmp_path: Path) -> None:
+    text = """\
+[defaults.waive.recovery]
+reason = "for all"
+until = 2027-01-31
+[divider.a]
+files = "a.v"
+ratio = 3
+waive.recovery = { reason = " ours ", until = 2026-02-28 }
+[divider.b]
+files = "b.v"
+ratio = 3
+"""
+    a, b = read(tmp_path, text).dividers
+    (ours,), (shared,) = a.waivers, b.waivers
+    assert (ours.name, ours.text, ours.where.line) == ("recovery", "ours (until 2026-02-28)", 7)
+    assert (shared.name, shared.text, shared.where.line) == ("recovery", "for all (until 2027-01-31)", 1)
+    assert [ours.expired(date(2026, 2, day)) for day in (27, 28)] == [False, False]
+    assert ours.expired(date(2026, 3, 1))
+    assert a.spec.waivers == {}
+
+
+ENTRY = '[divider.a]\nfiles = "a.v"\nratio = 3\n'
+
+
+@pytest.mark.parametrize(
+    ("text", "line", "message", "hint"),
+    [
+        ("[divider.a\n", 1, "no TOML", "README"),
+        (ENTRY + ENTRY, 4, "no TOML", "README"),
+        ('[divider.a]\nfiles = "a.v', 2, "no TOML", "README"),
+        ("", None, "no divider in it", "[divider.NAME]"),
+        ("[divider]\n", None, "no divider in it", "[divider.NAME]"),
+        (ENTRY + "ratoi = 3\n", 4, "[divider.a] no key is called 'ratoi'", "did you mean ratio?"),
+        (ENTRY + "source_duty = 50\n", 4, "'source_duty'", "did you mean source-duty?"),
+        (ENTRY + "\n\nvcd = 'a.vcd'\n", 6, "'vcd'", "did you mean "),
+        (ENTRY + "workers = 2\n", 4, "'workers'", "did you mean "),
+        ("[dividers.a]\nratio = 3\n", 1, "'dividers'", "did you mean divider?"),
+        ("[defaults]\nfiles = 'a.v'\n" + ENTRY, 2, "[defaults] no key is called 'files'", "did you mean"),
+        ('[divider.a]\nfiles = "a.v"\n', 1, "[divider.a] no ratio", "ratio = 3"),
+        ("[divider.a]\nratio = 3\n", 1, "[divider.a] no files", 'files = "divider.v"'),
+        ("[divider.a]\nratio = 3\nfiles = []\n", 3, "no files", "say which"),
+        ("[divider.a]\nratio = 3\nfiles = [1, true]\n", 3, "true or false, where a text", "quotes"),
+        ('[divider.a]\nfiles = "a.v"\nratio = "three"\nhigh = 1\n[divider.b]\n', 5, "no files", "say which"),
+        ('[divider.a]\nfiles = "a.v"\nratio = 0\n', 3, "ratio 0: ", "positive"),
+        ('[divider.a]\nfiles = "a.v"\nratio = [3, 5]\n', 3, "one value, not a list", "write ratio ="),
+        ('[divider.a]\nfiles = "a.v"\nratio = 2026-01-01\n', 3, "a date", "quotes"),
+        (ENTRY + "high = 6\n", 4, "high time 6", "between 1 and 5"),
+        (ENTRY + 'start = "never"\n', 4, "'never' is not one of", ""),
+        (ENTRY + "start = { a = 1 }\n", 4, "one value, not a table", "write start ="),
+        (ENTRY + 'set = "N=2..5"\n', 4, "'2..5' is not a whole number", "12"),
+        (ENTRY + 'set = { N = "5..2" }\n', 4, "no range of values", "2..512"),
+        (ENTRY + "set = { N = { a = 1 } }\n", 4, "a table, where a text", ""),
+        (ENTRY + 'set.N = "2..x"\n', 4, "no range of values", "2..512"),
+        (ENTRY + 'set = { N = "1..99999" }\n', 1, "more than 20000 dividers", "narrow"),
+        (ENTRY + 'waive = "recovery"\n', 4, "a text, where a table is wanted", ""),
+        (ENTRY + '[divider.a.waive]\nduty = { reason = "x", until = 2027-01-31 }\n', 5, "'duty'", "did you mean "),
+        (ENTRY + "[divider.a.waive.recovery]\nuntil = 2027-01-31\n", 4, "without a reason", "say why"),
+        (ENTRY + '[divider.a.waive.recovery]\nreason = "x"\n', 4, "without its last day", "until ="),
+        (ENTRY + 'waive.ratio = { reason = "x", until = "soon" }\n', 4, "without its last day", "no quotes"),
+        (ENTRY + 'waive.ratio = { reason = "x", till = 2027-01-31 }\n', 4, "'till'", "did you mean until?"),
+        (ENTRY + "mean = 1\n", 4, "mean is true or false", "mean = true"),
+        ('divider = 3\n', 1, "a number, where a table is wanted", ""),
+        ('[divider]\na = "a.v"\n', 2, "a text, where a table is wanted", "[divider.a]"),
+    ],
+)  # fmt: skip
+def test_what_is_not_understood_is_told_with_its_line(
+    tmp_path: Path, text: str, line: int | None, message: str, hint: str
+) -> None:
+    with pytest.raises(UserError) as told:
+        read(tmp_path, text)
+    assert message in told.value.message
+    assert hint in told.value.hint
+    assert (told.value.where.line if told.value.where else None) == line
+    assert "subharmonic.toml" in str(told.value)
+
+
+def test_a_manifest_that_cant_be_read(tmp_path: Path) -> None:
+    for data in (b"\xff\xfe", b"a" * 4_000_001, b"a = " + b"[" * 100_000):
+        (tmp_path / "subharmonic.toml").write_bytes(data)
+        with pytest.raises(UserError, match=r"subharmonic\.toml"):
+            read_manifest(tmp_path / "subharmonic.toml", {}, cli._spec_of)
+    for name in ("missing.toml", "."):
+        with pytest.raises(UserError, match="can't read"):
+            read_manifest(tmp_path / name, {}, cli._spec_of)
+
+
+def test_the_nearest_manifest_is_in_force(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    inner = tmp_path / "a" / "b"
+    inner.mkdir(parents=True)
+    monkeypatch.chdir(inner)
+    with pytest.raises(UserError, match=r"no subharmonic\.toml"):
+        find_manifest(Path())
+    (tmp_path / "subharmonic.toml").write_text(ENTRY)
+    assert find_manifest(Path()) == Path("../../subharmonic.toml")
+    (inner / "subharmonic.toml").write_text(ENTRY)
+    assert find_manifest(Path()) == Path("subharmonic.toml")
