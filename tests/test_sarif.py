@@ -102,6 +102,7 @@ def test_only_what_fails_has_a_level(tmp_path: Path) -> None:
         ("pass", "none"),
         ("open", "none"),
         ("review", "none"),
+        ("notApplicable", "none"),
         ("informational", "none"),
     }
 
@@ -114,6 +115,8 @@ def test_a_result_is_what_the_verdict_is(tmp_path: Path) -> None:
             continue
         meant = {"proved": "pass", "refuted": "fail", "open": "open"}
         assert verdicts(made) == {f.name: meant[f.verdict] for f in outcome.report.findings}, name
+        unclaimed = {r["ruleId"] for r in made["results"] if r["kind"] == "notApplicable"}
+        assert unclaimed == set(NAMES) - set(verdicts(made))
         waived = {r["ruleId"]: r["suppressions"] for r in made["results"] if "suppressions" in r}
         assert {name: each[0]["justification"] for name, each in waived.items()} == {
             f.name: f.waived for f in outcome.report.findings if f.waived is not None

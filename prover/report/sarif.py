@@ -7,6 +7,8 @@ A rule is a property, a result its verdict on one divider:
     open           open; a divider that took more than the effort: all open  none
     pass           proved                                                    none
     review         an obligation that a proof leaves to timing analysis      none
+    notApplicable  a property of which nothing is claimed: no reset, no one  none
+                   high time
     informational  the wave that was measured                                none
 
 A result of another kind than `fail` has the level `none`: the standard wants it so, and its schema does not check it.
@@ -232,6 +234,11 @@ class _Results:
             for obligation in finding.obligations:
                 location = self.log.location(obligation.where, obligation.register)
                 yield self.log.result(finding.name, "review", f"obligation: {obligation.text}", location)
+        judged = {finding.name for finding in self.report.findings}
+        for name in self.log.rules:
+            if name not in judged and name != MEASURED:
+                said = f"{self._who()}: nothing is claimed"
+                yield self.log.result(name, "notApplicable", said, self.log.location(self._output()))
         for wave in figures.waves(self.report.rhythm, MOST_WAVES):
             said = f"{self._who()}: {wave.text}, from: {', '.join(wave.causes)}"
             yield self.log.result(MEASURED, "informational", said, self.log.location(self._output()))
