@@ -17,7 +17,7 @@ from prover.errors import InternalError, UserError
 from prover.expr import Expr
 from prover.good import good_since, of_runs, scope_of
 from prover.ports import Ports
-from prover.release import Freed, Release, differs, releases, some_releases, too_short, unknown
+from prover.release import Freed, Release, after_release, differs, releases, some_releases, too_short, unknown
 from prover.rhythm import (
     NOWHERE,
     Goal,
@@ -298,7 +298,7 @@ def _release(
         found = some_releases(ports, under, held, _left_by(under, ours), limit)
 
     def followed(freed: Freed) -> Freed:
-        everything = reset.filled(whole, held.names, freed.state, limit)
+        everything = after_release(whole, held, freed, ports.resetting, limit)
         if everything is None:
             return freed
         state = recode.placed(everything, whole, machine)

@@ -36,7 +36,7 @@ from prover.rhythm import (
 from prover.settling import Settling, settle
 from prover.solve import Model
 from prover.spec import Spec
-from prover.system import State, System, cone
+from prover.system import Inputs, State, System, cone
 from prover.tables import Ranking, Rounds
 
 HOLD_PER_BIT = 8
@@ -379,7 +379,7 @@ def _with_release(
             raise Rejected("reset: not too short for the state that is to show it")
         found = replace(found, short=short)
     done = {start.state: run for start, run in zip(rhythm.starts, rhythm.orbits, strict=True)}
-    places = {each.state: _in_machine(each.state, held.names, whole, machine, limit) for each in found.runs}
+    places = {each: _in_machine(each, held, ports.resetting, whole, machine, limit) for each in found.runs}
     wanted = [state for state in dict.fromkeys(places.values()) if state not in done]
     if len(hold.runs) > len(wanted):
         raise Rejected(f"reset: {len(hold.runs)} runs after {len(wanted)} releases")
@@ -395,8 +395,7 @@ def _with_release(
     waves = {state: run.wave() for state, run in done.items()}
 
     def followed(each: release.Freed) -> release.Freed:
-        run = done.get(places[each.state])
-        return each.followed(run, waves.get(places[each.state]))
+        return each.followed(done.get(places[each]), waves.get(places[each]))
 
     found = replace(
         found,
@@ -409,8 +408,10 @@ def _with_release(
     return replace(rhythm, release=found)
 
 
-def _in_machine(state: State, names: Sequence[str], whole: System, machine: System, limit: int) -> State:
-    everything = reset.filled(whole, names, state, limit)
+def _in_machine(
+    freed: release.Freed, held: reset.Held, active: Inputs, whole: System, machine: System, limit: int
+) -> State:
+    everything = release.after_release(whole, held, freed, active, limit)
     if everything is None:
         raise Rejected("reset: a release that does not settle")
     return recode.placed(everything, whole, machine)

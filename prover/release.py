@@ -26,7 +26,7 @@ from prover.errors import InternalError
 from prover.expr import Expr
 from prover.path import Run
 from prover.ports import Ports
-from prover.reset import Held, known, seen_by
+from prover.reset import Held, filled, known, released_from, seen_by
 from prover.rhythm import LONGEST_ROUND, Orbit, Wave
 from prover.system import Inputs, Moment, State, System, unroll
 from prover.trace import Trace, faults, rest_of, run
@@ -463,6 +463,13 @@ def start_registers(release: Release, freed: Freed) -> dict[str, int]:
     moment |= {ports.clock: e.const(values[ports.clock], 1)} | ports.resetting.moment(ports.design.inputs)
     after = _settled(ports.design, moment, moment, release.limit)[-1]
     return dict(zip(names, _state(after, names), strict=True))
+
+
+def after_release(system: System, held: Held, freed: Freed, active: Inputs, limit: int) -> State | None:
+    """The state of the whole system from which the run after a release goes on; None if it does not settle."""
+    if freed.flop is None and freed.under in held.states:
+        return released_from(system, held, freed.under, active, limit)
+    return filled(system, held.names, freed.state, limit)
 
 
 class NotShown(InternalError):

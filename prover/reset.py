@@ -25,6 +25,9 @@ from prover.system import Inputs, Moment, State, System, change_inputs, clock_ed
 MOST_UNKNOWN_BITS = 10
 """Bits that reset does not force, or that have no initial value, up to which every value is followed."""
 
+FEW_STATES = 64
+"""States that reset leaves up to which registers beside those that the output depends on are followed under reset."""
+
 SAMPLES = 16
 """Unknown states that are followed on values, to see whether reset still takes hold of more of them."""
 
@@ -245,12 +248,36 @@ def released(system: System, held: Held, active: Inputs, limit: int) -> tuple[St
     some state does not settle after its release."""
     starts: dict[State, Start] = {}
     for state in held.states:
-        freed = _at_rest(system, _with_others(system, held.names, state, active), limit)
+        freed = released_from(system, held, state, active, limit)
         if freed is None:
-            return "the registers do not settle when reset is released"
+            return "the registers do not settle when reset is released, or hang on a value that x stands for"
         level = "high" if freed[-1] else "low"
         starts.setdefault(freed, Start(freed, f"reset released while the clock is {level}"))
     return tuple(starts.values())
+
+
+def released_from(system: System, held: Held, state: State, active: Inputs, limit: int) -> State | None:
+    """The state of the whole system after a release from one that reset leaves; None where more than `limit`
+    micro-steps do not suffice. Registers on which the output does not depend are as reset makes them from 0."""
+    return _at_rest(system, _under_reset(system, held, state, active, limit), limit)
+
+
+def _under_reset(system: System, held: Held, state: State, active: Inputs, limit: int) -> Moment:
+    moment = _with_others(system, held.names, state, active)
+    if tuple(held.names) == tuple(system.names):
+        return moment
+    design, clock = system.design, system.clock
+    moment = change_inputs(design, clock, moment, active, limit)
+    rounds = 4 * len(design.registers) + 8 if len(held.states) <= FEW_STATES else 0
+    for count in range(rounds + len(held.states)):
+        # Once round and longer, until what reset forces is forced.
+        if count >= rounds and known(moment, held.names) == state:
+            break
+        moment = clock_edge(design, clock, moment, limit)
+    # The others may hang on x; what reset leaves does not.
+    values = dict(zip(system.names, known(moment, system.names), strict=True))
+    values |= dict(zip(held.names, state, strict=True))
+    return {**moment, **{name: e.const(values[name], width) for name, width in system.variables}}
 
 
 def filled(system: System, names: Sequence[str], state: State, limit: int) -> State | None:
@@ -269,11 +296,14 @@ def _with_others(system: System, names: Sequence[str], state: State, inputs: Inp
 
 def _at_rest(system: System, moment: Moment, limit: int) -> State | None:
     """The state once the inputs have changed to the system's and all has settled; None where more than `limit`
-    micro-steps do not suffice."""
+    micro-steps do not suffice, or where it hangs on a value that x stands for."""
     ends = []
     for count in (limit, limit + 1):
         after = change_inputs(system.design, system.clock, moment, system.inputs, count)
-        ends.append(tuple(e.evaluate([after[name] for name in system.names], {})))
+        values = [after[name] for name in system.names]
+        if e.variables(values):
+            return None
+        ends.append(tuple(e.evaluate(values, {})))
     return ends[0] if ends[0] == ends[1] else None
 
 
@@ -298,7 +328,7 @@ def initial(system: System, limit: int) -> tuple[Start, ...] | str:
         for filled in _fillings(moment):
             state = _at_rest(system, filled, limit)
             if state is None:
-                return "the initial values do not settle"
+                return "the initial values do not settle, or hang on a value that x stands for"
             word = "high" if level else "low"
             starts.setdefault(state, Start(state, f"initial values, the clock {word} at power-up"))
     return tuple(starts.values())

@@ -112,13 +112,13 @@ def compare_unforced(report: Report, finding: Finding, bench: Bench) -> None:
     reset, release = report.ports.reset, report.rhythm.release
     assert reset is not None
     assert release is not None
-    names = [register.name for register in report.ports.design.registers]
+    names = release.held.names[:-1]
     assert finding.verdict == "refuted"
     starts = [Start(state[:-1], state[-1]) for state in power_up_states(report.rhythm.system)]
     runs = simulator.run(bench, starts, 0, Reset(reset.port, reset.active, 40, watched=True))
     last: dict[int, list[tuple[int, ...]]] = {level: [] for level in (0, 1)}
     for run, start in zip(runs, starts, strict=True):
-        last[start.clock].append(run[40].values)
+        last[start.clock].append(seen(report, run[40].values))
     differ = {
         name
         for here in last.values()
@@ -137,8 +137,16 @@ def compare_too_short(report: Report, finding: Finding, bench: Bench, states: Se
     runs = simulator.run(bench, starts, 0, Reset(reset.port, reset.active, 2 * cycles))
     ways: dict[int, set[tuple[int, ...]]] = {level: set() for level in (0, 1)}
     for run, start in zip(runs, starts, strict=True):
-        ways[start.clock].add(run[0].values)
+        ways[start.clock].add(seen(report, run[0].values))
     assert (finding.verdict == "proved") == all(len(here) == 1 for here in ways.values())
+
+
+def seen(report: Report, values: tuple[int, ...]) -> tuple[int, ...]:
+    """The values of those registers that the output depends on."""
+    release = report.rhythm.release
+    assert release is not None
+    registers = zip(report.ports.design.registers, values, strict=True)
+    return tuple(value for register, value in registers if register.name in release.held.names)
 
 
 def compare_holding(
@@ -157,7 +165,7 @@ def compare_holding(
     left = []
     for level, name in ((0, "low"), (1, "high")):
         here = [run for run, start in zip(runs, starts, strict=True) if start.clock == level]
-        ways = [len({run[at].values for run in here}) for at in range(long + 1)]
+        ways = [len({seen(report, run[at].values) for run in here}) for at in range(long + 1)]
         assert ways[needs[name] :] == [1] * (long + 1 - needs[name])
         assert needs[name] == 0 or ways[needs[name] - 1] > 1
         last = here[0][long]
