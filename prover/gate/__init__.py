@@ -46,7 +46,7 @@ def events_of(file: str, path: str | None) -> list[Event]:
     place = Path(path) if path is not None else folder / FOLDER / "ledger.sqlite"
     if not place.is_file():
         raise UserError(f"there is no ledger {place}", hint="run the gate first")
-    name = os.path.relpath(Path(file).resolve(), folder.resolve()).replace(os.sep, "/")
+    name = os.path.relpath(file, folder).replace(os.sep, "/")
     ledger = Ledger(place, to_read=True)
     try:
         found = [event for event in ledger.history() if name in event.files]

@@ -112,7 +112,8 @@ class Manifest:
 
 def find_manifest(folder: Path) -> Path:
     """The manifest in the folder or in the nearest one above. Raises UserError where there is none."""
-    here = folder.resolve()
+    # As it is named: a link to a folder elsewhere leaves its own folder's manifest in force.
+    here = Path(os.path.abspath(folder))
     for place in (here, *here.parents):
         if (place / NAME).is_file():
             return Path(os.path.relpath(place / NAME))

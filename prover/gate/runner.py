@@ -171,7 +171,7 @@ class _Gate:
 
     def run(self) -> Run:
         began, self.began = time.monotonic(), _now()
-        self.base = os.path.relpath(self.manifest.folder.resolve())
+        self.base = os.path.relpath(self.manifest.folder)
         self.tell("reading the sources")
         rows = [self._row(divider) for divider in self.manifest.dividers]
         asked: list[tuple[Row, Task]] = []

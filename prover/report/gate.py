@@ -46,9 +46,10 @@ def _line(rows: list[Row]) -> tuple[str, str, str, str]:
     seconds = [row.kept.seconds for row in rows if row.kept is not None]
     words = [first.says]
     if len(rows) > 1:
-        slowest = max(rows, key=lambda row: row.kept.seconds if row.kept else 0.0)
-        words = [f"{_ends(rows)}: {len(rows)} dividers, the slowest {slowest.divider.name}"]
-        words[0] += f" {max(seconds):.2f} s"
+        words = [f"{_ends(rows)}: {len(rows)} dividers"]
+        if first.source == "new":
+            slowest = max(rows, key=lambda row: row.kept.seconds if row.kept else 0.0)
+            words[0] += f", the slowest {slowest.divider.name} {max(seconds):.2f} s"
     obligations = sum(each.obligations for row in rows for each in (row.kept.properties if row.kept else ()))
     if first.verdict == "proved" and obligations:
         words.append(f"under {obligations} timing obligation{'s' * (obligations > 1)}")
