@@ -7,6 +7,7 @@ things stand, so a place is kept as the number of its token, an anchor, and look
 from __future__ import annotations
 
 import hashlib
+import re
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from functools import cache, cached_property
@@ -16,7 +17,7 @@ from typing import Any
 from prover import __version__
 from prover.errors import Where
 from prover.spec import Spec
-from prover.verilog.source import Source, read_source
+from prover.verilog.source import MAX_SHOWN, Source, printable, read_source
 from prover.verilog.tokens import tokenize
 
 FOUNDATIONS = ("numpy", "pyverilog", "z3-solver")
@@ -51,6 +52,37 @@ class Content:
     def anchor(self, where: Where) -> int | None:
         """The first token that stands there, None where none does."""
         return self._anchors.get((where.file, where.line, where.column))
+
+    def split(self, text: str) -> list[str | int | None]:
+        """A text that names places as FILE:LINE, cut into what stands between them and the first token of each one's
+        line, None where there is no token; empty for a text that names none."""
+        if not any(name in text for name in self._names):
+            return []
+        parts: list[str | int | None] = []
+        at = 0
+        for found in self._places.finditer(text):
+            parts += [text[at : found.start()], self._lines.get((found[1], int(found[2])))]
+            at = found.end()
+        return [*parts, text[at:]] if parts else []
+
+    @cached_property
+    def _names(self) -> list[str]:
+        """The files' names as places bear them."""
+        return [printable(name, MAX_SHOWN) for name in self.files]
+
+    @cached_property
+    def _places(self) -> re.Pattern[str]:
+        names = "|".join(map(re.escape, sorted(self._names, key=len, reverse=True)))
+        return re.compile(rf"(?<![\w./\\-])({names}):(\d{{1,9}})(?!\d)")
+
+    @cached_property
+    def _lines(self) -> dict[tuple[str, int], int]:
+        """The first token of each line, or what is remarked on where the line has none."""
+        found: dict[tuple[str, int], int] = {}
+        for number in range(len(self.offsets) + len(self.source.notes)):
+            where = self.place(number)
+            found.setdefault((where.file, where.line), number)
+        return found
 
     @cached_property
     def _anchors(self) -> dict[tuple[str, int, int], int]:

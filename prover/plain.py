@@ -3,7 +3,8 @@
 A value is a list of nodes, each a list that starts with the node's kind and refers to earlier nodes by their number;
 the last one is the value. Shared parts stay shared. Only this program's frozen dataclasses are made from it, by their
 fields; nothing in the data is ever run. Expressions are taken as they are, with nothing simplified. Places in the
-sources are given as anchors where there is one, and come back as the places in the sources of that time.
+sources, also those that a text names as FILE:LINE, are given as anchors where there is one, and come back as the
+places in the sources of that time.
 """
 
 from __future__ import annotations
@@ -21,7 +22,6 @@ from prover.content import Content
 from prover.design import Design
 from prover.errors import InternalError, UserError, Where
 from prover.expr import Expr
-from prover.findings import Report, remarks
 from prover.formula import Formula
 
 Data = list[list[Any]]
@@ -58,6 +58,9 @@ def freeze(value: object, content: Content | None = None) -> tuple[Data, bool]:
             anchored &= anchor is not None
             node = ["where", thing.file, thing.line, thing.column, thing.text]
             node = node if anchor is None else ["anchor", anchor]
+        elif isinstance(thing, str) and content is not None and (said := content.split(thing)):
+            anchored &= None not in said
+            node = ["is", thing] if None in said else ["said", *said]
         else:
             node = _node(thing, [numbers[_key(part)] for part in parts])
         numbers[key] = len(nodes)
@@ -167,6 +170,10 @@ def _thawed(node: list[Any], made: list[Any], content: Content | None) -> Any:
         if value is None or isinstance(value, (bool, int, str, float)):
             return value
         raise Unreadable("a value of no kind")
+    if kind == "said":
+        if content is None:
+            raise Unreadable("an anchor without sources")
+        return "".join(part if isinstance(part, str) else str(content.place(part)) for part in rest)
     if kind == "hex":
         return int(rest[0], 16)
     if kind == "fraction":
@@ -194,8 +201,6 @@ def _thawed(node: list[Any], made: list[Any], content: Content | None) -> Any:
         thing = of(**dict(zip(_fields(of), values, strict=True)))
         if isinstance(thing, Design) and content is not None:
             thing = dataclasses.replace(thing, files=content.files, sha256=content.sha256)
-        if isinstance(thing, Report) and content is not None:
-            thing = dataclasses.replace(thing, notes=remarks(thing.ports.design))
         return thing
     parts = [_part(made, number) for number in rest]
     if kind == "dict":

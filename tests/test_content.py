@@ -92,6 +92,19 @@ def test_a_place_is_found_again_where_its_token_has_gone(tmp_path: Path) -> None
     assert after.place(anchor) == Where(str(tmp_path / "moved.v"), 4, 2, " count;")
 
 
+def test_places_that_a_text_names_are_found_in_it(tmp_path: Path) -> None:
+    content_ = content(tmp_path, "// by 3\n" + BY_3, "a.v")
+    name = str(tmp_path / "a.v")
+    head, anchor, middle, other, tail = content_.split(f"late ({name}:3), {name}:10.")
+    assert (head, middle, tail) == ("late (", "), ", ".")
+    assert isinstance(anchor, int)
+    assert isinstance(other, int)
+    assert [content_.place(each).line for each in (anchor, other)] == [3, 10]
+    assert content_.split(f"{name}: 3 and b{name}:3") == []
+    # No token stands on the first line.
+    assert content_.split(f"{name}:1") == ["", None, ""]
+
+
 def test_who_proves_is_named_with_the_version() -> None:
     from prover import __version__
 
