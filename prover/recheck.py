@@ -111,7 +111,7 @@ def recheck_kept(
 def _readdressed(text: str, files: Sequence[str], spec: Spec) -> str:
     """The certificate as it would be for these files. Raises Rejected where it is about another claim."""
     from prover.api import read as read_it
-    from prover.each import in_numbers
+    from prover.domain import in_numbers
     from prover.verilog.source import read_source
 
     stated = _object(text)

@@ -11,7 +11,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 from prover.arrival import Glitch
-from prover.each import values_text
+from prover.domain import values_text
 from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Report
 from prover.output import harmless

@@ -20,8 +20,9 @@ from agreement.simulator import Bench, Reset, SimulatorError, Start
 from agreement.stepping import differences, power_up_states, simulated_registers
 from cases_format import Case, Group, cases
 
-from prover import cli, each
+from prover import cli
 from prover.api import check, read
+from prover.domain import Domain, claimed_at
 from prover.errors import UserError
 from prover.findings import Report
 from prover.ports import Ports
@@ -98,10 +99,10 @@ def in_numbers(case: Case, spec: Spec) -> list[Spec]:
     if not spec.each:
         return [spec]
     design = read([case.path], spec)
-    domain = each.Domain.of(design, spec)
+    domain = Domain.of(design, spec)
     values = list(domain.values())
     chosen = [values[0], values[len(values) // 3], values[-1]]
-    return [each.claimed_at(spec, {**domain.fixed, **value}, value) for value in chosen]
+    return [claimed_at(spec, {**domain.fixed, **value}, value) for value in chosen]
 
 
 def compare(case: Case, spec: Spec) -> None:

@@ -8,7 +8,7 @@ from fractions import Fraction
 from itertools import pairwise
 
 from prover.arrival import Glitch
-from prover.each import values_text
+from prover.domain import values_text
 from prover.errors import Where
 from prover.facts import LIMITS, number
 from prover.findings import Counterexample, Finding, Obligation, Report
