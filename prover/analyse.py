@@ -84,7 +84,7 @@ def _begun(
     """The rhythm from the start states; the divider as a machine; what reset leaves, and the machine under it."""
     design = ports.design
     system, settling = settle(design, ports.clock, ports.running, ports.output_value, effort)
-    settling = _checked(settling, effort)
+    settling = checked(settling, effort)
     held, under = _held(ports, spec, settling, effort)
     scope, starts, held = _starts(ports, spec, system, settling, held)
     if settling.depth is None:
@@ -142,7 +142,7 @@ def _decoded(system: System, effort: Effort) -> System:
     return machine if all(certificate.discharge(claim, effort) for claim in claims) else system
 
 
-def _checked(settling: Settling, effort: Effort) -> Settling:
+def checked(settling: Settling, effort: Effort) -> Settling:
     """The micro-steps' bound and the absence of races, with each of their questions asked again from its text."""
     try:
         for number, goal in enumerate(settling.goals):
@@ -205,6 +205,14 @@ def _start_only(system: System, start: State, why: str) -> Orbit:
 
 
 # -- where from --------------------------------------------------------------------------------------------
+
+
+def starts_of(
+    ports: Ports, spec: Spec, system: System, settling: Settling, effort: Effort
+) -> tuple[Scope, tuple[Start, ...], reset.Held | None]:
+    """Where the claim begins, the start states there, and what reset leaves where there is one."""
+    held, _ = _held(ports, spec, settling, effort)
+    return _starts(ports, spec, system, settling, held)
 
 
 def _starts(
@@ -474,7 +482,7 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
 
     system = rhythm.system
     seeds = [orbit.start for orbit in rhythm.orbits]
-    starts = [*seeds, *_corners(system)]
+    starts = [*seeds, *corners(system)]
     found = wide.cover_in_stages(system, goal, starts, effort)
     if found is None:
         found = wide.cover(system, goal, system.settled, starts, effort)
@@ -527,7 +535,7 @@ def _frozen(run: Orbit) -> bool:
     return wave is not None and wave.stuck
 
 
-def _corners(system: System) -> list[State]:
+def corners(system: System) -> list[State]:
     """Start states that are often lost: all zeros, all ones, a single one, and a few at random."""
     rng = random.Random(0)
     widths = [width for _, width in system.variables]

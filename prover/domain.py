@@ -98,6 +98,19 @@ class Domain:
                 place -= high - low + 1
         return {name: out[name] for name, _ in self.inputs}
 
+    def number(self, values: Values) -> int:
+        """The number of a value: `value` the other way round."""
+        out = 0
+        for name, ranges in self.inputs:
+            before = 0
+            for low, high in ranges:
+                if low <= values[name] <= high:
+                    before += values[name] - low
+                    break
+                before += high - low + 1
+            out = out * sum(high - low + 1 for low, high in ranges) + before
+        return out
+
     def __str__(self) -> str:
         return domain_text(self.inputs, (condition.text for condition in self.where))
 

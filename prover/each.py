@@ -8,9 +8,10 @@ order of the inputs as they are given, the last one changing fastest.
 from __future__ import annotations
 
 import itertools
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 from fractions import Fraction
+from typing import TYPE_CHECKING
 
 from prover.design import Design
 from prover.domain import (
@@ -31,8 +32,14 @@ from prover.findings import Fact, Finding, Obligation, Report, Verdict, overall,
 from prover.ports import Ports, recognise
 from prover.spec import Ranges, Spec
 
+if TYPE_CHECKING:
+    from prover.together import Together
+
 ENUMERATED = 256
 """Values up to which each is judged by itself without looking for a proof of all at once."""
+
+MOST_ENUMERATED = 1 << 14
+"""Values up to which each is judged by itself, while there is effort, where not all can be had at once."""
 
 Judge = Callable[[Design, Spec, Effort], Report]
 
@@ -42,6 +49,7 @@ class ValueRow:
     """Neighbouring values with one outcome.
 
     values   each input with the first and the last of its values; only the last input has several
+    together whether these are all values within the ranges that have no row of their own, proved at once
     refuted, open  properties that are, waived ones among them
     ratios   the least and the greatest ratio that is claimed, in input cycles
     worst    the worst recovery, in half-cycles; None where some state never recovers, or that is not known
@@ -53,6 +61,7 @@ class ValueRow:
     open: tuple[str, ...]
     ratios: tuple[Fraction, Fraction]
     worst: int | None
+    together: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +71,8 @@ class Each:
     inputs  each input with its values; `where` the conditions on them
     ratio, high  the claim as text; high is "" where it is half the period
     count   values for which the claim is made, None where they have not been counted
-    tried   how many of them were judged
+    tried   how many of them were judged by themselves
+    shapes  shapes of paths that were proved for all other values at once; 0 where each was judged by itself
     shown   the value that the report's rhythm, facts and waves are about
     rows    all values that were judged, grouped
     """
@@ -73,6 +83,7 @@ class Each:
     high: str
     count: int | None
     tried: int
+    shapes: int
     shown: dict[str, int]
     rows: tuple[ValueRow, ...]
 
@@ -84,7 +95,8 @@ class Each:
 
 def row_text(row: ValueRow) -> str:
     """A row's values: A=3, B=1..7."""
-    return ", ".join(f"{name}={ranges_text([ends])}" for name, ends in row.values)
+    told = ", ".join(f"{name}={ranges_text([ends])}" for name, ends in row.values)
+    return f"all others of {told}" if row.together else told
 
 
 def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
@@ -99,15 +111,27 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     spec = _with_roles(spec, recognise(rigid(design, spec.each), spec))
     found = _Merged(spec, domain)
     count = domain.count
-    most = min(count or ENUMERATED, ENUMERATED)
-    for number, each in enumerate(itertools.islice(domain.values(), most)):
+    values: Iterator[dict[str, int]] = itertools.islice(domain.values(), ENUMERATED)
+    most, why = min(count or ENUMERATED, ENUMERATED), ""
+    if count is None or count > ENUMERATED:
+        from prover.together import prove
+
+        together = prove(design, spec, domain, effort.share(effort.left * 0.75))
+        if isinstance(together, str):
+            why = together
+        else:
+            found.together = together
+            values, most = iter(together.singly), len(together.singly)
+            if count is not None and count <= MOST_ENUMERATED and any(together.why.values()):
+                values, most = domain.values(), count
+    for number, each in enumerate(values):
         effort.doing = f"judging {values_text(each)}"
         # What a value leaves of its share goes to the others.
         share = effort.left / max(1, (most - number) / 8)
         found.add(each, judge(design, claimed_at(spec, {**fixed, **each}, each), effort.share(share)))
         if effort.left <= 0:
             break
-    return found.report(count)
+    return found.report(count, why)
 
 
 def _with_roles(spec: Spec, ports: Ports) -> Spec:
@@ -167,10 +191,13 @@ class _Merged:
         self.rows: list[ValueRow] = []
         self.reports: dict[Verdict, Report] = {}
         self.tried = 0
+        self.judged: list[Values] = []
+        self.together: Together | None = None
 
     def add(self, values: Values, report: Report) -> None:
         """Take in the report on the next value."""
         self.tried += 1
+        self.judged.append(values)
         self.reports.setdefault(overall(report.findings), report)
         for finding in report.findings:
             self.tallies.setdefault(finding.name, _Tally()).add(_Found(values, finding, report))
@@ -180,10 +207,10 @@ class _Merged:
         else:
             self.rows.append(row)
 
-    def report(self, count: int | None) -> Report:
+    def report(self, count: int | None, why: str) -> Report:
         """All in one: about the value that is refuted first, else that is open first, else the first of all."""
         shown = next(self.reports[v] for v in ("refuted", "open", "proved") if v in self.reports)
-        findings = [self._finding(name, tally, shown, count) for name, tally in self.tallies.items()]
+        findings = [self._finding(name, tally, shown, count, why) for name, tally in self.tallies.items()]
         held = {name: shown.spec.holds[name] for name in self.spec.each}
         each = Each(
             inputs=self.domain.inputs,
@@ -192,8 +219,9 @@ class _Merged:
             high=self.spec.high_formula.text if self.spec.high_formula else str(self.spec.high or ""),
             count=count,
             tried=self.tried,
+            shapes=self.together.shapes if self.together else 0,
             shown=held,
-            rows=tuple(self.rows),
+            rows=(*self.rows, *self._others(count)),
         )
         spec = replace(
             shown.spec,
@@ -206,49 +234,108 @@ class _Merged:
             shown, spec=spec, findings=with_waivers(findings, spec), facts=self._facts(shown), each=each
         )
 
-    def _finding(self, name: str, tally: _Tally, shown: Report, count: int | None) -> Finding:
+    def _finding(self, name: str, tally: _Tally, shown: Report, count: int | None, why: str) -> Finding:
         """The property's finding for all values, with the evidence of the value that decides it."""
         verdict = tally.verdict
+        decides = tally.first[verdict]
         if verdict == "proved" and tally.slowest is not None:
             decides = tally.slowest
-        else:
-            decides = next((f for f in tally.first.values() if f.report is shown), tally.first[verdict])
-        if decides.finding.verdict != verdict:
-            decides = tally.first[verdict]
         finding, many = decides.finding, f"{self.tried} value{'s' * (self.tried != 1)}"
-        missing = count is None or count > self.tried
-        if verdict == "refuted":
-            says = f"at {values_text(decides.values)}: {finding.says}; refuted at {tally.counts['refuted']} of {many}"
-        elif verdict == "open":
-            says = (
-                f"at {values_text(decides.values)}: {finding.says}; open at {tally.counts['open']} of {many}"
-            )
-        else:
+        whole = count is not None and count == self.tried
+        missing = "" if whole else self._missing(name, why)
+        bound = finding.bound
+        method = (
+            f"each value judged by itself; {finding.method}" if finding.method else "each value by itself"
+        )
+        if verdict != "proved":
+            at, of = values_text(decides.values), f"{many} judged singly" if not whole else many
+            says = f"at {at}: {finding.says}; {verdict} at {tally.counts[verdict]} of {of}"
+            if verdict == "refuted" and not whole and not self._is_first(name, decides.values):
+                says += "; whether a smaller value fails is not known"
+            bound = f"judged: {many} of {'many' if count is None else count}"
+        elif whole:
             says = self._proved(decides, many)
-        if verdict == "proved" and missing:
-            verdict, says = "open", f"{says}; the others were not judged"
+        elif missing:
+            verdict = "open"
+            says = f"{self._proved(decides, many)}; the others are open: {missing}"
+            bound = f"judged: {many} of {'many' if count is None else count}"
+        else:
+            says = self._at_once(decides, many)
+            method = "for all values at once, the inputs being variables: every step of each shape (solver)"
+        facts: dict[str, Fact] = {**finding.facts, "at": dict(decides.values), "values_judged": self.tried}
+        if name == "recovery" and verdict == "proved" and self.together is not None and not whole:
+            facts |= self._worst_at_once(_worst(finding))
         return replace(
             finding,
             verdict=verdict,
             claim=self._claim(finding),
             says=says,
-            method=f"each value judged by itself; {finding.method}"
-            if finding.method
-            else "each value by itself",
-            bound=finding.bound
-            if verdict == "proved"
-            else f"judged: {many} of {'many' if count is None else count}",
-            facts={**finding.facts, "at": dict(decides.values), "values_judged": self.tried},
-            obligations=tuple(tally.obligations.values()),
+            method=method,
+            bound=bound,
+            facts=facts,
+            obligations=self._obligations(name, tally, whole),
             waived=None,
             witness=None if decides.report is shown else decides.report,
         )
+
+    def _obligations(self, name: str, tally: _Tally, whole: bool) -> tuple[Obligation, ...]:
+        """The timing obligations of the values that were judged singly, and those of all others."""
+        out = dict(tally.obligations)
+        together = self.together.dues.get(name, ()) if self.together is not None and not whole else ()
+        named = {obligation.register for obligation in out.values()}
+        for obligation in together:
+            if name != "reset" or obligation.register not in named:
+                out.setdefault((obligation.text, obligation.where), obligation)
+        return tuple(out.values())
+
+    def _is_first(self, name: str, values: Values) -> bool:
+        """Whether no smaller value than this one can fail."""
+        known = self.together is not None and name in self.together.first_known
+        return known or next(self.domain.values()) == values
+
+    def _missing(self, name: str, why: str) -> str:
+        """Why a property is not known for the values that were not judged by themselves, "" if it is."""
+        if self.together is None:
+            return why or "there was no time for them"
+        left = [values for values in self.together.singly if values not in self.judged]
+        if left:
+            return f"there was no time for {values_text(left[0])}"
+        return self.together.why.get(name, "this property is judged one value at a time")
 
     def _proved(self, slowest: _Found, many: str) -> str:
         finding = slowest.finding
         if _worst(finding) < 0:
             return f"holds for each of {many}"
         return f"holds for each of {many}: {finding.says}, at {values_text(slowest.values)}"
+
+    def _at_once(self, slowest: _Found, many: str) -> str:
+        """What is said where a proof of all values at once and some values by themselves cover the domain."""
+        assert self.together is not None
+        told = f"holds for every value: {many} judged singly, all others at once"
+        if _worst(slowest.finding) < 0:
+            return told
+        facts = self._worst_at_once(_worst(slowest.finding))
+        word = "exactly" if facts["exact"] else "at most"
+        at = f", at {values_text(slowest.values)}" if facts["exact"] else ""
+        bounds = [bound for bound in self.together.bounds if not bound.isdigit()]
+        within = f" ({' or '.join(bounds)})" if bounds else ""
+        return f"{told}: worst recovery {word} {facts['worst_half_cycles']} half-cycles{at}{within}"
+
+    def _worst_at_once(self, judged: int) -> dict[str, Fact]:
+        """The worst recovery, which a value that was judged by itself may need or not, with all others' bound."""
+        bound = self.together.bound if self.together else None
+        worst = max(judged, bound or 0)
+        return {"worst_half_cycles": worst, "exact": worst == judged}
+
+    def _others(self, count: int | None) -> list[ValueRow]:
+        """A row for the values that were proved at once."""
+        together = self.together
+        if together is None or together.ratios is None or count == self.tried:
+            return []
+        names = [name for name, tally in self.tallies.items() if self._missing(name, "")]
+        ends = tuple((name, (ranges[0][0], ranges[-1][1])) for name, ranges in self.domain.inputs)
+        verdict: Verdict = "open" if names else "proved"
+        return [ValueRow(ends, verdict, (), tuple(names), together.ratios, together.bound, together=True)]
 
     def _claim(self, finding: Finding) -> str:
         """The claim with formulas in place of the numbers of one value."""

@@ -22,6 +22,7 @@ from prover.design import Design
 from prover.expr import Expr
 from prover.forms import ONE, ZERO, Beyond, Poly, at_least, equal, polynomial, total
 from prover.formula import Formula
+from prover.good import Region
 from prover.path import Beat, Repeat
 from prover.rhythm import Orbit
 from prover.system import Moment, State, System, change_inputs
@@ -219,7 +220,12 @@ def course_steps(course: Course) -> list[Step]:
 def course_obligations(
     system: System, premise: Expr, courses: Sequence[Course], name: str
 ) -> Iterator[Obligation]:
-    """No step of the courses is other than claimed, and every pass has a round."""
+    """No step of the courses is other than claimed, and every pass has a round. Raises Unfit for courses that are
+    none of this machine."""
+    for course in courses:
+        _check_form(system, (*course.lead, *course.loop))
+        if not course.loop:
+            raise Unfit("a course without a loop")
     groups: dict[Axes, dict[Step, None]] = {}
     times: dict[Poly, None] = {}
     for course in courses:
@@ -240,6 +246,23 @@ def course_obligations(
         for step in members:
             wrong = e.bvor(wrong, _differs(system, step, moves))
         yield Obligation(f"{name}: steps {number}", e.conj([premise, within, wrong]))
+
+
+def _check_form(system: System, track: Sequence[Part]) -> None:
+    """Raise Unfit for states and strides that are none of the machine's."""
+    todo = list(track)
+    widths = [width for _, width in system.variables]
+    while todo:
+        part = todo.pop()
+        if isinstance(part, Point):
+            fits = len(part.state) == len(widths) and all(v.whole for v in part.state)
+        else:
+            sizes = zip(part.stride, widths, strict=False)
+            fits = len(part.stride) == len(widths) and all(0 <= d < 1 << w for d, w in sizes)
+            fits = fits and part.times.whole and bool(part.body)
+            todo += part.body
+        if not fits:
+            raise Unfit("a state or a stride that is none of the machine's")
 
 
 def _differs(system: System, step: Step, moves: Sequence[tuple[Expr, State]]) -> Expr:
@@ -317,6 +340,23 @@ def start_obligations(
             yield state_obligation(system, premise, made, start, f"start state {number}")
 
 
+def release_obligations(origin: Origin, premise: Expr, starts: Starts) -> Iterator[Obligation]:
+    """The release of reset moves no register, and no output. Raises Unfit where reset leaves more than one state."""
+    if starts.held is None or origin.resetting is None:
+        raise Unfit("a release without a reset")
+    if len(starts.held.states) != 2:
+        raise Unfit("reset leaves several states")
+    system, resetting = origin.system, origin.resetting
+    for number, (state, course) in enumerate(zip(starts.held.states, starts.courses, strict=True)):
+        named = dict(zip(resetting.names, words(resetting, state), strict=True))
+        start = first_point(course.lead or course.loop)
+        now = [named[name] for name in system.names]
+        yield state_obligation(system, premise, now, start.state, f"the release moves nothing, {number}")
+        (before,) = e.substitute([resetting.output], named)
+        shown = e.bvnot(before) if start.level else before
+        yield Obligation(f"the release changes no output, {number}", e.bvand(premise, shown))
+
+
 def state_obligation(
     system: System, premise: Expr, made: Sequence[Expr], wanted: Sequence[Poly], name: str
 ) -> Obligation:
@@ -328,12 +368,13 @@ def state_obligation(
 def reset_obligation(
     resetting: System, premise: Expr, half_cycles: int, held: Sequence[Sequence[Poly]]
 ) -> Obligation:
-    """From any state, so many half-cycles with reset held end in one of these states."""
+    """From any state at rest, so many half-cycles with reset held end in one of these states."""
     state: list[Expr] = [e.var(name, width) for name, width in resetting.variables]
     for gone in range(half_cycles):
         state = onwards(resetting, state, gone)[:-1]
     hits = [e.conj(e.eq(a, b) for a, b in zip(state, words(resetting, each), strict=True)) for each in held]
-    return Obligation("the states that reset leaves", e.conj([premise, *(e.bvnot(hit) for hit in hits)]))
+    missed = (e.bvnot(hit) for hit in hits)
+    return Obligation("the states that reset leaves", e.conj([premise, resetting.settled, *missed]))
 
 
 # -- waves -------------------------------------------------------------------------------------------------
@@ -393,23 +434,27 @@ class Wave:
         return self.high if level else self.period - self.high
 
 
-def gap_obligations(
-    premise: Expr, course: Course, wanted: Poly | None, high: Poly | None
-) -> list[Obligation]:
-    """Every gap from rise to rise is as it is wanted, and every high run; Nones are not asked for. Raises Unfit for a
-    course whose output has no gaps at all."""
+def gap_obligations(premise: Expr, course: Course, wave: Wave) -> tuple[Obligation, Obligation, Obligation]:
+    """Every gap from rise to rise is a period; every high run is as it is claimed to be; no low run after a fall is
+    shorter than in the wave. Raises Unfit for a course whose output has no gaps at all."""
     if not changes(course):
         raise Unfit("an output that stops changing")
     found = runs((*course.lead, *course.loop, *course.loop, *course.loop))
-    wrong: dict[Expr, None] = {}
     rises = [i for i, (level, _) in enumerate(found) if level and i]
-    for begins, ends in pairwise(rises):
-        if wanted is not None:
-            wrong[e.bvnot(equal(total(size for _, size in found[begins:ends]), wanted))] = None
-    for i in rises:
-        if high is not None and i + 1 < len(found):
-            wrong[e.bvnot(equal(found[i][1], high))] = None
-    return [Obligation("gaps and high runs", e.bvand(premise, e.disj(wrong)))]
+    gaps = [total(size for _, size in found[begins:ends]) for begins, ends in pairwise(rises)]
+    highs = [found[i][1] for i in rises if i + 1 < len(found)]
+    lows = [size for level, size in found[1:-1] if not level]
+    wrong = (
+        (e.bvnot(equal(size, wave.period)) for size in gaps),
+        (e.bvnot(equal(size, wave.high)) for size in highs),
+        (e.bvnot(at_least(size, wave.run(0))) for size in lows),
+    )
+    names = ("gaps from rise to rise", "high runs", "low runs after a fall")
+    of_gaps, of_highs, of_lows = (
+        Obligation(name, e.bvand(premise, e.disj(dict.fromkeys(each))))
+        for name, each in zip(names, wrong, strict=True)
+    )
+    return of_gaps, of_highs, of_lows
 
 
 def changes(course: Course) -> bool:
@@ -422,7 +467,7 @@ def changes(course: Course) -> bool:
 
 @dataclass(frozen=True, slots=True)
 class Everywhere:
-    """Every power-up state is good within `bound` half-cycles: a `certificate.CoverClaim` for each value.
+    """Every power-up state is good within the greatest of `bounds`: a `certificate.CoverClaim` for each value.
 
     recoveries  for each course the runs that are behind before it is good (counted from its start, the loop taken
                 twice), and after how many half-cycles it is
@@ -433,7 +478,14 @@ class Everywhere:
     recoveries: tuple[tuple[int, Poly], ...]
     unrolled: int | None
     merge: int
-    bound: Poly
+
+    @property
+    def bounds(self) -> tuple[Poly, ...]:
+        """Half-cycles, in all of which together every state is good."""
+        if self.unrolled is not None:
+            return (Poly.const(self.unrolled),)
+        slow = dict.fromkeys(recovery for _, recovery in self.recoveries)
+        return tuple(dict.fromkeys([*slow, Poly.const(self.merge)])) if self.merge else tuple(slow)
 
 
 def everywhere_obligations(
@@ -442,14 +494,13 @@ def everywhere_obligations(
     """The courses are runs, good when they are said to be, and no power-up state escapes them. Raises Unfit."""
     if len(claim.courses) != len(claim.recoveries):
         raise Unfit("not as many recoveries as courses")
+    if claim.merge < 0 or (claim.unrolled or 0) < 0 or any(behind < 0 for behind, _ in claim.recoveries):
+        raise Unfit("less than nothing")
     whole = [written_out(course) for course in claim.courses]
     yield from course_obligations(system, premise, claim.courses, "everywhere")
     for number, (course, (behind, recovery)) in enumerate(zip(whole, claim.recoveries, strict=True)):
-        wrong = e.disj(_not_good_from(course, behind, recovery, claim.bound, wave))
+        wrong = e.disj(_not_good_from(course, behind, recovery, wave))
         yield Obligation(f"course {number} is good after {recovery}", e.bvand(premise, wrong))
-    if claim.unrolled is not None:
-        late = e.bvnot(at_least(claim.bound, Poly.const(claim.unrolled)))
-        yield Obligation("the bound is not below what is unrolled", e.bvand(premise, late))
     courses = list(zip(whole, (recovery for _, recovery in claim.recoveries), strict=True))
     for level in (0, 1):
         fixed = {system.clock: e.const(level, 1)}
@@ -464,8 +515,8 @@ def written_out(course: Course) -> Course:
     return Course(expanded(course.lead), expanded(course.loop))
 
 
-def _not_good_from(course: Course, behind: int, recovery: Poly, bound: Poly, wave: Wave) -> Iterator[Expr]:
-    """Ways in which the course is not good from there on, or the bound is exceeded."""
+def _not_good_from(course: Course, behind: int, recovery: Poly, wave: Wave) -> Iterator[Expr]:
+    """Ways in which the course is not good from there on."""
     found = runs((*course.lead, *course.loop, *course.loop))
     if behind + 2 >= len(found) or not changes(course):
         raise Unfit("a course with too few changes of its output after its recovery")
@@ -480,7 +531,6 @@ def _not_good_from(course: Course, behind: int, recovery: Poly, bound: Poly, wav
     yield e.bvnot(at_least(wave.run(found[-1][0]), found[-1][1]))
     # Twice round shows the seam of the loop.
     yield e.bvnot(at_least(length(course.lead), recovery))
-    yield e.bvnot(at_least(bound, recovery))
     rises = sum(level for level, _ in _round(course.loop))
     yield e.bvnot(equal(length(course.loop), wave.period * Poly.const(rises)))
 
@@ -513,8 +563,7 @@ def _covered(
     reached: list[Expr] = []
     if claim.unrolled is None:
         for count in range(claim.merge + 1):
-            in_time = at_least(claim.bound, Poly.const(count))
-            reached.append(e.bvand(in_time, _on_courses(system, state, courses, count)))
+            reached.append(_on_courses(system, state, courses, count))
             onward()
         return e.disj(reached)
     for _ in range(claim.unrolled):
@@ -631,6 +680,25 @@ def is_at(system: System, state: Sequence[Expr], point: Sequence[Poly], axes: Ax
     return e.conj([within, *(e.eq(a, b) for a, b in pairs)])
 
 
+def regions(system: System, premise: Expr, courses: Iterable[Course]) -> list[Region]:
+    """The states on the courses' loops, a region for each half-cycle that is written."""
+    found: dict[tuple[tuple[Poly, ...], Axes], None] = {}
+    for course in courses:
+        for point, axes, _ in _placed(course.loop, ZERO):
+            found[point.state, axes] = None
+    out = []
+    for state, axes in found:
+        within = premise
+        moves: list[tuple[Expr, State]] = []
+        for i, (count, stride) in enumerate(axes):
+            index = e.var(f"!round{i}", count.size)
+            within = e.bvand(within, e.bvslt(index, count.word(count.size)))
+            within = e.bvand(within, e.bvnot(e.bvslt(index, e.const(0, count.size))))
+            moves.append((index, stride))
+        out.append(Region(within, dict(zip(system.names, words(system, state, moves), strict=True))))
+    return out
+
+
 # -- the claims of a piece ---------------------------------------------------------------------------------
 
 
@@ -663,6 +731,68 @@ def wave_of(claim: Claim, piece: Piece, premise: Expr) -> tuple[Wave, list[Oblig
         raise Unfit("a period or a high time that is not plainly a whole number of half-cycles")
     bad = [at_least(ONE, period), at_least(ZERO, wave.high), at_least(wave.high, period)]
     return wave, [*owed, Obligation("the claim means something", e.bvand(premise, e.disj(bad)))]
+
+
+@dataclass(frozen=True, slots=True)
+class Starts:
+    """What reset leaves (None: the start states are initial values), and the courses of the start states."""
+
+    held: Held | None
+    courses: tuple[Course, ...]
+
+
+def starts_obligations(origin: Origin, premise: Expr, starts: Starts) -> Iterator[Obligation]:
+    """These are the start states, and these the courses that they run through. Raises Unfit."""
+    firsts = [first_point(course.lead or course.loop).state for course in starts.courses]
+    yield from start_obligations(origin, premise, starts.held, firsts)
+    yield from course_obligations(origin.system, premise, starts.courses, "from the start")
+
+
+@dataclass(frozen=True, slots=True)
+class Proof:
+    """What is claimed of all values at once; an entry for each piece.
+
+    starts      None where nothing is claimed of the start states
+    everywhere  None where nothing is claimed of all power-up states
+    gaps, high  whether the start states' gaps, and their high runs, are claimed to be as the formulas say
+    release     whether it is claimed that the release of reset moves nothing, and no low run after it is too short
+    singly      values that are judged by themselves: the pieces need not hold them
+    """
+
+    starts: tuple[tuple[Piece, Starts], ...] | None
+    everywhere: tuple[tuple[Piece, Everywhere], ...] | None
+    gaps: bool
+    high: bool
+    release: bool
+    singly: tuple[Mapping[str, int], ...]
+
+
+def proof_obligations(
+    origin: Origin, admitted: Expr, widths: Mapping[str, int], claim: Claim, proof: Proof
+) -> Iterator[Obligation]:
+    """Everything that the proof hangs on, for the values that are `admitted`. Raises Unfit."""
+    for number, (piece, starts) in enumerate(proof.starts or ()):
+        premise = e.bvand(admitted, piece.holds())
+        wave, owed = wave_of(claim, piece, premise)
+        owed += starts_obligations(origin, premise, starts)
+        for course in starts.courses:
+            gaps, high, low = gap_obligations(premise, course, wave)
+            owed += [gaps] * proof.gaps + [high] * proof.high + [low] * proof.release
+        if proof.release:
+            owed += release_obligations(origin, premise, starts)
+        yield from (Obligation(f"starts {number}, {each.name}", each.goal) for each in owed)
+    for number, (piece, everywhere) in enumerate(proof.everywhere or ()):
+        premise = e.bvand(admitted, piece.holds())
+        wave, owed = wave_of(claim, piece, premise)
+        owed += everywhere_obligations(origin.system, premise, everywhere, wave)
+        yield from (Obligation(f"everywhere {number}, {each.name}", each.goal) for each in owed)
+    for name, pieces in (("starts", proof.starts), ("everywhere", proof.everywhere)):
+        if pieces is not None:
+            beyond = [e.bvnot(piece.holds()) for piece, _ in pieces]
+            for values in proof.singly:
+                pairs = ((e.var(n, widths[n]), e.const(v, widths[n])) for n, v in values.items())
+                beyond.append(e.bvnot(e.conj(e.eq(a, b) for a, b in pairs)))
+            yield Obligation(f"{name}: every value is looked at", e.conj([admitted, *beyond]))
 
 
 Discharge = Callable[[Obligation], bool]

@@ -333,6 +333,7 @@ class _Cover:
         self.lines: list[Line] = []
         self.loops: set[frozenset[Item]] = set()
         self.widening = False
+        self.unrolled = UNROLLED
         self.known: orbit.Places = {}
         # The lines that sufficed when no state was last found late, and what was asked then.
         self.sufficient: tuple[Line, ...] = ()
@@ -649,13 +650,22 @@ class _Cover:
         return [*placed_beats(lead), *((at + total, s, a) for at, s, a in placed_beats(loop))]
 
 
-def cover(system: System, goal: Goal | None, assumed: Expr, seeds: Sequence[State], effort: Effort) -> Cover:
-    """Lines that every state under the assumption gets on, or as far as the effort goes.
+def cover(
+    system: System,
+    goal: Goal | None,
+    assumed: Expr,
+    seeds: Sequence[State],
+    effort: Effort,
+    unrolled: int = UNROLLED,
+) -> Cover:
+    """Lines that every state under the assumption gets on, or as far as the effort goes. The machine is unrolled from
+    all states for so many half-cycles at most.
 
     Without a goal the time that counts is that until a loop is entered. With one, a line that is not good ends
     the search at once: its start is lost, and that decides every property that asks for all states to be good.
     """
     made = _Cover(system, goal, assumed, effort)
+    made.unrolled = unrolled
     try:
         for seed in seeds:
             if _holds(system, assumed, seed) and not made.has(seed) and made.add(seed).recovery is None:
@@ -844,7 +854,7 @@ def _by_unrolling(made: _Cover) -> Cover | None:
 
 
 def _too_slow(made: _Cover) -> bool:
-    late = any(line.recovery is None or line.recovery > UNROLLED for line in made.lines)
+    late = any(line.recovery is None or line.recovery > made.unrolled for line in made.lines)
     return late or len(made.lines) >= MOST_PATHS
 
 
@@ -865,17 +875,17 @@ def _slowest_suffices(made: _Cover, tries: int) -> Cover | None:
 
 def _least_time(made: _Cover) -> int | None:
     """The least time after which every state is at a good place of a line; None if it is too long."""
-    low, high, bound = -1, UNROLLED + 1, 2
+    low, high, bound = -1, made.unrolled + 1, 2
     while low + 1 < high:
         late = made.late_after(bound, 0)
         if late is None:
             high = bound
         else:
             made.add(late)
-            if _too_slow(made) or bound >= UNROLLED:
+            if _too_slow(made) or bound >= made.unrolled:
                 return None
             low = bound
-        bound = min(2 * bound + 2, UNROLLED) if high > UNROLLED else (low + high) // 2
+        bound = min(2 * bound + 2, made.unrolled) if high > made.unrolled else (low + high) // 2
     return high
 
 
@@ -897,7 +907,7 @@ def _narrowed(made: _Cover, high: int) -> Cover | None:
         if late is None:
             high = middle
         else:
-            settled = max(settled, min(made.add(late).orbit.lead_half_cycles, UNROLLED))
+            settled = max(settled, min(made.add(late).orbit.lead_half_cycles, made.unrolled))
     exact = slowest.recovery == high
     return made.proved(high, slowest if exact else None, high, made.merge, _after(high))
 

@@ -179,7 +179,7 @@ def test_a_counterexample_is_of_the_machine_at_its_own_value(tmp_path: Path) -> 
     report = json.loads(result.stdout)
     assert report["each"]["shown"] == {"div": 0}
     at = {p["name"]: p["facts"].get("at") for p in report["properties"] if p["verdict"] == "refuted"}
-    assert at == {"ratio": {"div": 0}, "high-time": {"div": 2}, "recovery": {"div": 0}}
+    assert at == {"ratio": {"div": 0}, "high-time": {"div": 2}, "recovery": {"div": 0}, "reset": {"div": 0}}
     # High for 6 half-cycles at 2: three cycles from the load to the toggle.
     high = next(p for p in report["properties"] if p["name"] == "high-time")
     assert "a high run of 6 half-cycles, not 5" in high["says"]

@@ -42,6 +42,7 @@ EACH = closed(
         "high": {"type": ["string", "null"]},
         "values": {"type": ["integer", "null"]},
         "judged": {"type": "integer"},
+        "shapes": {"type": "integer"},
         "shown": {"type": "object", "additionalProperties": {"type": "integer"}},
         "rows": {
             "type": "array",
@@ -49,6 +50,7 @@ EACH = closed(
             "items": closed(
                 {
                     "values": {"type": "object", "additionalProperties": SPAN},
+                    "together": {"type": "boolean"},
                     "verdict": {"enum": ["proved", "refuted", "open"]},
                     "refuted": NAMES_LISTED,
                     "open": NAMES_LISTED,

@@ -25,6 +25,16 @@
 // from reset: period 16, high 8
 // loops: 1
 // false loops: 0
+// check: --set W=24 --each div --ratio 2*(div+1)
+// verdict: proved
+// ratio: proved
+// high-time: proved
+// no-stuck: proved
+// recovery: proved, worst 33554430, exact
+// settling: proved
+// reset: proved, held 0, obligation
+// at: div=0
+// from reset: period 4, high 2
 // check: --each div=4,6..8 --ratio 2*(div+W-3)
 // verdict: proved
 // ratio: proved

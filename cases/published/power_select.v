@@ -32,7 +32,7 @@
 // from reset: period 65536, high 32768
 // loops: 1
 // false loops: 0
-// check: --each k=2..4 --ratio 2**k
+// check: --each k=3,9 --ratio 2**k
 // verdict: proved
 // ratio: proved
 // high-time: proved
@@ -40,8 +40,8 @@
 // recovery: proved, worst 0, exact
 // settling: proved
 // reset: proved, held 0
-// at: k=2
-// from reset: period 8, high 4
+// at: k=3
+// from reset: period 16, high 8
 // loops: 1
 // false loops: 0
 module power_select (input clk, input clear_n, input [3:0] k, output out);

@@ -99,6 +99,7 @@ def _each(each: Each) -> Object:
         "high": each.high or None,
         "values": each.count,
         "judged": each.tried,
+        "shapes": each.shapes,
         "shown": dict(each.shown),
         "rows": [_row(row) for row in each.rows],
     }
@@ -107,6 +108,7 @@ def _each(each: Each) -> Object:
 def _row(row: ValueRow) -> Object:
     return {
         "values": {name: list(ends) for name, ends in row.values},
+        "together": row.together,
         "verdict": row.verdict,
         "refuted": list(row.refuted),
         "open": list(row.open),

@@ -1,0 +1,307 @@
+"""What holds for all values of some inputs at once, and the values that are to be judged by themselves."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from fractions import Fraction
+
+from prover import expr as e
+from prover import family, glitch
+from prover import findings as timing
+from prover.certificate import Obligation, discharge
+from prover.design import Design, Register
+from prover.domain import Domain, Values
+from prover.effort import Effort, OutOfEffort
+from prover.errors import InternalError
+from prover.expr import Expr
+from prover.family import Claim, Piece, Proof, Unfit
+from prover.forms import Beyond, Poly, at_least
+from prover.generalise import Found, FromEverywhere, FromStarts, Kind, Lost, Search, cases_at, least
+from prover.good import Scope
+from prover.rigid import Machines
+from prover.solve import find
+from prover.spec import Spec
+
+
+@dataclass(frozen=True, slots=True)
+class Together:
+    """What holds for all values at once, but for those that are to be judged by themselves.
+
+    machines  the divider for all values
+    proof     what holds of it, every obligation discharged
+    why       by property, why it is not known for the values that no one judges by themselves; "" if it is
+    first_known  properties of which the first value that fails, if there is one, is among those judged by themselves
+    dues      timing obligations that hold for all values together, by property
+    singly    values to be judged by themselves: those that no piece holds, and those that decide something
+    ratios    the least and the greatest ratio that is claimed in the pieces, in input cycles
+    bound     the greatest bound on the recovery in the pieces, in half-cycles; `bounds` as they hang on the inputs
+    """
+
+    machines: Machines
+    proof: Proof
+    why: Mapping[str, str]
+    first_known: frozenset[str]
+    dues: Mapping[str, tuple[timing.Obligation, ...]]
+    singly: tuple[dict[str, int], ...]
+    ratios: tuple[Fraction, Fraction] | None
+    bound: int | None
+    bounds: tuple[str, ...]
+
+    @property
+    def shapes(self) -> int:
+        """Pieces in all."""
+        return len(self.proof.starts or ()) + len(self.proof.everywhere or ())
+
+
+def prove(design: Design, spec: Spec, domain: Domain, effort: Effort) -> Together | str:
+    """What holds for all values of the domain at once; a text if that can't even be asked."""
+    if spec.mean:
+        return "a mean is judged for one value of the inputs at a time"
+    try:
+        return _proved(Machines(design, spec, domain, effort), spec, domain)
+    except (Beyond, Unfit, OutOfEffort) as fault:
+        return str(fault)
+
+
+def _proved(machines: Machines, spec: Spec, domain: Domain) -> Together | str:
+    if machines.settling.depth is None:
+        return machines.settling.open or "the micro-steps do not settle for every value"
+    if machines.system.choices:
+        return "values that x stands for are followed for one value of the inputs at a time"
+    claim = Claim(
+        spec.ratio_formula or spec.ratio or Fraction(1), spec.high_formula or spec.high, domain.fixed
+    )
+    return _Proof(machines, claim).made()
+
+
+class _Proof:
+    def __init__(self, machines: Machines, claim: Claim) -> None:
+        self.machines, self.claim = machines, claim
+        self.admitted = machines.admitted()
+        self.singly: dict[tuple[int, ...], dict[str, int]] = {}
+        self.waves: list[tuple[Piece, family.Wave]] = []
+
+    def made(self) -> Together:
+        machines = self.machines
+        first = next(machines.domain.values())
+        self._add(first)
+        scope = machines.at(first)[1]
+        everywhere, why_everywhere = self._searched(FromEverywhere(machines, self.claim))
+        why = dict.fromkeys(("ratio", "high-time", "no-stuck", "recovery"), why_everywhere)
+        known = {name for name, reason in why.items() if not reason}
+        why["settling"] = "; ".join(text for text, _ in machines.pulses)
+        for _, values in machines.pulses:
+            if e.evaluate([self.admitted], values) == [1]:
+                self._add(values)
+        starts = None
+        if scope != "any":
+            starts, why_starts = self._searched(FromStarts(machines))
+            starts, wrong = self._gaps(starts)
+            known = known | set(wrong) if not why_starts else known - set(wrong)
+            why |= {name: why_starts or wrong[name] for name in wrong}
+        if machines.ports.reset is not None:
+            # What comes of a flip-flop that is released late is a power-up state, from which the wave comes right.
+            why["reset"] = why.get("reset", "the claim does not begin at reset") or why_everywhere
+            why["reset"] = why["reset"] or self._too_short(starts)
+        glitches = self._glitches(everywhere, starts) if not why_everywhere else None
+        why["glitch-free"] = why_everywhere if glitches is None else glitches.open
+        bound = self._worst(everywhere) if not why_everywhere else None
+        singly = tuple(sorted(self.singly.values(), key=lambda values: list(values.values())))
+        proof = Proof(
+            starts.pieces if starts and not (why["ratio"] and why["high-time"]) else None,
+            everywhere.pieces if not why_everywhere else None,
+            not why["ratio"],
+            not why["high-time"],
+            why.get("reset", "no reset") == "",
+            singly,
+        )
+        self._check(proof)
+        bounds = tuple(dict.fromkeys(str(b) for _, claim in proof.everywhere or () for b in claim.bounds))
+        dues = self._dues(glitches)
+        return Together(machines, proof, why, frozenset(known), dues, singly, self._ratios(), bound, bounds)
+
+    def _dues(self, glitches: glitch.Glitches | None) -> dict[str, tuple[timing.Obligation, ...]]:
+        """What timing analysis has to show, whatever the value: every register that sees the reset may be late."""
+        ports, races = self.machines.ports, self.machines.settling.races
+        port = ports.reset.port if ports.reset else ""
+        late = [
+            timing.Obligation(
+                f"the release of {port} has to meet recovery and removal at every flip-flop of {register.name} "
+                "before the same clock edge as elsewhere: where one sees it an edge later, the first pulse or gap "
+                "may have another length",
+                register.where,
+                register.name,
+            )
+            for register in ports.design.registers
+            if port and register.kind != "loop" and _sees(register, port)
+        ]
+        return {
+            "settling": tuple(
+                timing.Obligation(r.text, r.where, r.register) for r in races if r.kind != "pulse"
+            ),
+            "reset": tuple(late),
+            "glitch-free": tuple(
+                timing.Obligation(d.text, d.where, d.register) for d in (glitches.dues if glitches else ())
+            ),
+        }
+
+    def _glitches(self, everywhere: Found, starts: Found | None) -> glitch.Glitches:
+        """Whether the output may pulse on a step from a state of a loop, at any value."""
+        machines, regions = self.machines, []
+        machines.effort.say("looking for glitches at every value")
+        for piece, claim in (*everywhere.pieces, *(starts.pieces if starts else ())):
+            regions += family.regions(machines.system, self._premise(piece), claim.courses)
+        seen = Scope(tuple(regions), "every state on a loop, at every value")
+        found = glitch.find(
+            machines.ports,
+            machines.with_inputs,
+            seen,
+            lambda state: None,
+            lambda goal: find(goal, machines.effort),
+        )
+        for number, goal in enumerate(found.goals):
+            if not discharge(Obligation(f"glitches {number}", goal), machines.effort):
+                raise InternalError("the absence of a glitch fails its check")
+        return found
+
+    def _too_short(self, starts: Found | None) -> str:
+        """Whether reset is held for less than it needs."""
+        cycles = self.machines.spec.reset_cycles
+        needs = [claim.held.half_cycles for _, claim in (starts.pieces if starts else ()) if claim.held]
+        late = cycles is not None and any(count > 2 * cycles for count in needs)
+        return f"reset needs {max(needs)} half-cycles, which is more than it is held for" if late else ""
+
+    def _check(self, proof: Proof) -> None:
+        """Ask every obligation afresh."""
+        machines = self.machines
+        machines.effort.say("checking what was found for all values")
+        owed = family.proof_obligations(
+            machines.origin(), self.admitted, dict(machines.inputs), self.claim, proof
+        )
+        faults = family.faults(owed, lambda each: discharge(each, machines.effort))
+        if faults:
+            raise InternalError(f"what was found for all values fails its check: {'; '.join(faults[:3])}")
+
+    def _add(self, values: Values) -> None:
+        self.singly[tuple(values.values())] = dict(values)
+
+    def _searched(self, kind: Kind) -> tuple[Found, str]:
+        """The pieces of a kind, and why they are not all."""
+        try:
+            found = Search(self.machines, kind).run()
+        except Lost as lost:
+            self._add(self._earlier(kind, lost.values))
+            return Found((), ()), str(lost)
+        for values in found.left:
+            self._add(values)
+        return found, found.why
+
+    def _earlier(self, kind: Kind, lost: Values) -> Values:
+        """A value at which a state is lost, found by halving what is before one at which that is known."""
+        domain = self.machines.domain
+        if len(lost) > 1 or domain.where:
+            return lost
+        low, high = -1, domain.number(lost)
+        while high - low > 1:
+            middle = (low + high) // 2
+            try:
+                kind.sample(domain.value(middle))
+                low = middle
+            except Lost:
+                high = middle
+        return domain.value(high)
+
+    def _premise(self, piece: Piece) -> Expr:
+        return e.bvand(self.admitted, piece.holds())
+
+    def _gaps(self, found: Found) -> tuple[Found, dict[str, str]]:
+        """The pieces with the claimed formulas' cases, and by property why the start states' courses are not as
+        claimed. Where they are not, the first value of the piece at which that is so is judged by itself."""
+        wrong, pieces = {"ratio": "", "high-time": "", "reset": ""}, []
+        origin = self.machines.origin()
+        for piece, starts in found.pieces:
+            premise = self._premise(piece)
+            base = least(premise, self.machines.inputs, self.machines.effort)
+            if base is None:
+                continue
+            piece = replace(piece, cases=cases_at(self.claim, piece, base))
+            pieces.append((piece, starts))
+            try:
+                wave, owed = family.wave_of(self.claim, piece, premise)
+                self.waves.append((piece, wave))
+                for each in owed:
+                    self._or_singly(each, wrong, *wrong)
+                for course in starts.courses:
+                    gaps, high, low = family.gap_obligations(premise, course, wave)
+                    self._or_singly(gaps, wrong, "ratio", "reset")
+                    self._or_singly(high, wrong, "high-time", "reset")
+                    self._or_singly(low, wrong, "reset")
+                for each in family.release_obligations(origin, premise, starts) if starts.held else ():
+                    self._or_singly(each, wrong, "reset")
+            except Unfit as fault:
+                wrong = dict.fromkeys(wrong, str(fault))
+                self._add(base)
+        return replace(found, pieces=tuple(pieces)), wrong
+
+    def _or_singly(self, obligation: Obligation, wrong: dict[str, str], *names: str) -> None:
+        """Note the first value at which an obligation fails, and the properties that hang on it."""
+        if not discharge(obligation, self.machines.effort):
+            wrong.update(dict.fromkeys(names, f"{obligation.name}: not as claimed for every value"))
+            values = least(obligation.goal, self.machines.inputs, self.machines.effort)
+            if values is not None:
+                self._add(values)
+
+    def _worst(self, found: Found) -> int | None:
+        """The greatest bound over the pieces; the value that has it is judged by itself, and so is the first that
+        exceeds the limit."""
+        worst: tuple[int, dict[str, int]] | None = None
+        for piece, claim in found.pieces:
+            self.waves.append((piece, family.wave_of(self.claim, piece, self._premise(piece))[0]))
+            for bound in claim.bounds:
+                most = self._greatest(self._premise(piece), bound)
+                if most is None:
+                    continue
+                if worst is None or most[0] > worst[0]:
+                    worst = most
+                within = self.machines.spec.within
+                if within is not None and most[0] > within:
+                    late = e.bvand(self._premise(piece), at_least(bound, Poly.const(within + 1)))
+                    values = least(late, self.machines.inputs, self.machines.effort)
+                    if values is not None:
+                        self._add(values)
+        if worst is not None:
+            self._add(worst[1])
+        return worst[0] if worst else None
+
+    def _greatest(self, premise: Expr, number: Poly) -> tuple[int, dict[str, int]] | None:
+        """The greatest value of a number, and the inputs that have it."""
+        best: tuple[int, dict[str, int]] | None = None
+        step = 1 << number.size
+        while True:
+            wanted = Poly.const(best[0] + step if best else -(1 << number.size))
+            model = find(e.bvand(premise, at_least(number, wanted)), self.machines.effort)
+            if model is not None:
+                values = {name: model.get(name, 0) for name, _ in self.machines.inputs}
+                best = number.number(values), values
+            elif best is None:
+                return None
+            elif step == 1:
+                return best
+            else:
+                step >>= 1
+
+    def _ratios(self) -> tuple[Fraction, Fraction] | None:
+        ends: list[Fraction] = []
+        for piece, wave in self.waves:
+            for number in (wave.period, -wave.period):
+                most = self._greatest(self._premise(piece), number)
+                if most is not None:
+                    ends.append(abs(Fraction(most[0], 2)))
+        return (min(ends), max(ends)) if ends else None
+
+
+def _sees(register: Register, port: str) -> bool:
+    used = [x for edge in register.edges for x in (edge.clock, edge.data)]
+    used += [x for force in register.forces for x in (force.when, force.value)]
+    return any(v.name == port for v in e.variables(used))
