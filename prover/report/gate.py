@@ -10,7 +10,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from itertools import groupby
 from typing import Any
 
-from prover.each import ranges_text
+from prover.domain import ranges_text
 from prover.gate.ledger import Event
 from prover.gate.runner import Excused, Row, Run
 from prover.output import harmless
