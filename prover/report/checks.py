@@ -100,7 +100,7 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
             "  // The start state: forced so that nothing else reacts, then let go.",
             *(f"  {line}" for line in dut.set(registers)),
             "  running = 1'b1;",
-            "  for (t = 0; t < HALF_CYCLES; t = t + 1) begin",
+            f"  for (t = 0; t < HALF_CYCLES{'' if check.loop else ' && !failed'}; t = t + 1) begin",
             f"    if (t > 0) {dut.clock} = ~{dut.clock};",
             f"    #{HALF_CYCLE};",
             "    observe;",

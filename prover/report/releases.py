@@ -162,7 +162,7 @@ def _played(dut: Dut, release: Release, freed: Freed) -> Iterator[str]:
     yield "last = shown;"
     yield "{began, whole} = 0;"
     yield f"{port} = 1'b{1 - reset.active};"
-    yield f"for (t = 0; t < {UNITS} * HALF_CYCLES; t = t + 1) begin"
+    yield f"for (t = 0; t < {UNITS} * HALF_CYCLES && !failed; t = t + 1) begin"
     yield f"  if (t[0]) {dut.clock} = ~{dut.clock};"
     yield f"  #{HALF_CYCLE // UNITS};"
     yield "  observe;"

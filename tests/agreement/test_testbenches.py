@@ -147,7 +147,7 @@ class Ran(NamedTuple):
 
 
 def simulate(
-    folder: Path, bench: Bench, divider: str, options: Sequence[str] = (), language: str = "2005"
+    folder: Path, bench: Bench, divider: str, options: Sequence[str] = (), language: str = "2001"
 ) -> Ran:
     """The bench with that text of the divider, compiled without a warning about the bench, and run."""
     (folder / "bench.v").write_text(bench.text)
