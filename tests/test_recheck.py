@@ -49,6 +49,10 @@ SUBJECTS: dict[str, tuple[str, Spec, str]] = {
     "unforced": ("faulty/prescaler_off_reset.v", Spec(ratio=Fraction(6)), "ranking"),
     "released late": ("faulty/onehot_ring_5_reset.v", Spec(ratio=Fraction(5), high=2), "loops"),
     "restless": ("faulty/inverter_loop.v", Spec(ratio=Fraction(2)), "null"),
+    "pulse": ("faulty/pulses_same_edge.v", Spec(ratio=Fraction(2), high=1), "ranking"),
+    "gates": ("faulty/stage_by_8_unbridged.v", Spec(ratio=Fraction(8), high=4), "ranking"),
+    "regions": ("wide/pump_by_ring_20m.v", Spec(ratio=Fraction(20_000_000)), "cover"),
+    "ordered": ("gauge/heater_by_4_gated.v", Spec(ratio=Fraction(2), high=1, output="pulses"), "ranking"),
 }
 _made: dict[str, tuple[Report, Certificate]] = {}
 
@@ -180,7 +184,20 @@ def with_one_alteration(document: dict[str, Any], rng: random.Random) -> dict[st
 
 
 def test_alterations_are_rejected() -> None:
-    names = ["reset", "ranks", "loops", "initial", "matrix", "lost", "restless", "cover", "short", "unforced"]
+    names = [
+        "reset",
+        "ranks",
+        "loops",
+        "initial",
+        "matrix",
+        "lost",
+        "restless",
+        "cover",
+        "short",
+        "unforced",
+        "pulse",
+        "gates",
+    ]
     rng = random.Random(7)
     count = 0
     while count < 560:
@@ -221,7 +238,9 @@ def scripts(document: dict[str, Any]) -> list[str]:
     return [each["script"] for each in document["obligations"]]
 
 
-@pytest.mark.parametrize("name", ["ranks", "loops", "reset", "initial", "short", "unforced"])
+@pytest.mark.parametrize(
+    "name", ["ranks", "loops", "reset", "initial", "short", "unforced", "ordered", "pulse"]
+)
 def test_altered_evidence_with_all_else_made_to_fit_claims_nothing_false(name: str) -> None:
     """Whoever alters the evidence can write verdicts and obligations that follow from it. Then the obligations must
     fail, or what it claims must still be true: the verdicts of the report, which cases/ states and `test_cases`
@@ -264,6 +283,28 @@ def check_held(claimed: Release | None, true: Release | None) -> None:
     for level in (0, 1):
         assert claimed.held.needs[level] >= true.held.needs[level]
     assert not claimed.held.exact or claimed.held.needs == true.held.needs
+
+
+@pytest.mark.parametrize("name", ["pulse", "gates", "matrix"])
+def test_a_glitch_cannot_be_denied(name: str) -> None:
+    """Answers that there is no pulse, in place of those that show one, have to fail as obligations."""
+    report, certificate = made(name)
+    original = json.loads(certificate.text)["evidence"]
+    shows = [i for i, answer in enumerate(original["glitches"]) if answer is not None]
+    assert shows
+    for denied in shows:
+        other = {
+            **original,
+            "glitches": [None if i == denied else a for i, a in enumerate(original["glitches"])],
+        }
+        for kept in range(denied + 1, len(other["glitches"]) + 1):
+            cut = {**other, "glitches": other["glitches"][:kept]}
+            try:
+                again = rebuild(report.ports, report.spec, evidence.read(cut), Effort(60))
+            except Rejected:
+                continue
+            (finding,) = [f for f in judge_all(again.rhythm, report.spec) if f.name == "glitch-free"]
+            assert finding.verdict != "proved" or not all(discharge(o, Effort(60)) for o in again.obligations)
 
 
 def test_differences_are_told_of_every_kind() -> None:
