@@ -127,8 +127,9 @@ class _Search:
             return ""
         if not self.scope.regions:
             return self.scope.why
-        if self.first(reach.held) is not None:
-            return "what a latch lets through, or a loop of gates keeps, may pulse"
+        passes = self.first(reach.held)
+        if passes is not None:
+            return self._passed(passes)
         pulses = self.first(reach.as_written)
         if pulses is not None:
             found = self._pulse(pulses)
@@ -137,7 +138,17 @@ class _Search:
         late = self.first(e.bvand(reach.late, e.bvnot(reach.as_written)))
         if late is not None:
             self.dues.append(_order_due(self.ports, reach, late))
-        return ""
+        return self.scope.why
+
+    def _passed(self, state: State) -> str:
+        """Why nothing is told of an output that hangs on what a latch lets through, or a loop of gates keeps."""
+        values = dict(zip(self.reach.whole.names, state, strict=True)) | self.model
+        goals = [goal for _, goal in self.reach.holders]
+        for v in e.variables(goals):
+            values.setdefault(v.name, 0)
+        hits = zip(self.reach.holders, e.evaluate(goals, values), strict=True)
+        name = next(name for (name, _), hit in hits if hit)
+        return f"what {name} takes on may pulse while it is open, at {_step(self.reach, state, every=True)}"
 
     def _pulse(self, state: State) -> Glitch | str | None:
         """What becomes of a pulse of the gates as written: a glitch, or something due."""
@@ -198,13 +209,11 @@ def _order_due(ports: Ports, reach: Reach, state: State) -> Due:
     return Due(text, ports.output_where, ports.output)
 
 
-def _step(reach: Reach, state: State) -> str:
-    """The step from a state, in words."""
+def _step(reach: Reach, state: State, every: bool = False) -> str:
+    """The step from a state, in words: the registers that the output is made of, or every one."""
     whole = reach.whole
     edge = "falling" if state[-1] else "rising"
     used = {v.name for v in reach.inputs}
-    values = {
-        name: value for name, value in whole.describe(state).items() if name in used and name != whole.clock
-    }
-    told = ", ".join(f"{name}={value}" for name, value in values.items())
+    values = whole.describe(state).items()
+    told = ", ".join(f"{n}={v}" for n, v in values if n != whole.clock and (every or n in used))
     return f"the {edge} edge of {whole.clock}" + (f" from {told}" if told else "")

@@ -51,7 +51,7 @@ EVERYWHERE = Region(e.TRUE)
 
 @dataclass(frozen=True, slots=True)
 class Scope:
-    """Regions that make up the good states, what they are in words, and why there are none."""
+    """Regions that make up the good states, what they are in words, and why these are not all or none; "" if all."""
 
     regions: tuple[Region, ...]
     told: str
@@ -79,12 +79,11 @@ def scope_of(whole: System, machine: System, good: Good | None) -> Scope:
                     groups[state, axes] = None
                 elif last >= begins:
                     singles[state] = None
-    if len(singles) > MOST_SINGLE:
-        return Scope((), good.told, f"more than {MOST_SINGLE} states outside any repeat")
-    listed = list(singles)
+    listed = list(singles)[:MOST_SINGLE]
+    why = f"more than {MOST_SINGLE} states outside any repeat" if len(singles) > MOST_SINGLE else ""
     regions = [_listed(whole, machine, listed[at : at + TOGETHER]) for at in range(0, len(listed), TOGETHER)]
     regions += [_repeated(whole, machine, state, axes) for state, axes in groups]
-    return Scope(tuple(regions), good.told, "" if regions else "no run is known")
+    return Scope(tuple(regions), good.told, why if regions else "no run is known")
 
 
 def _written(items: Sequence[Item], last: int, axes: Axes) -> Iterator[tuple[State, Axes, int]]:

@@ -120,15 +120,17 @@ class Reach:
         return self.network.as_written(swings).hazard
 
     @cached_property
-    def held(self) -> Expr:
-        """A latch, or whatever else is set to more than a constant, hands on what its data does while it is open."""
+    def holders(self) -> list[tuple[str, Expr]]:
+        """Latches, and whatever else is set to more than a constant, that the output hangs on; for each one bit that
+        is true where its data may pulse while it is open, so that it hands the pulse on."""
         registers = {r.name: r for r in self.whole.design.registers}
         todo = [v.name for v in self.network.inputs if v.name in registers]
         seen = set(todo)
-        parts: list[Expr] = []
+        out: list[tuple[str, Expr]] = []
         fixed = self.whole.inputs.moment(self.whole.design.inputs)
         while todo:
-            for force in registers[todo.pop()].forces:
+            name = todo.pop()
+            for force in registers[name].forces:
                 if force.value.is_const:
                     continue
                 when, value = e.substitute([force.when, force.written or force.value], fixed)
@@ -136,11 +138,16 @@ class Reach:
                 for then, now in pairwise(self.moments):
                     swings = self._swings([*data.inputs, *e.variables([when])], then, now)
                     shut = as_written([when], swings)[0].zero
-                    parts.append(e.bvand(e.bvnot(shut), e.nonzero(data.as_written(swings).hazard)))
+                    passed = e.bvand(e.bvnot(shut), e.nonzero(data.as_written(swings).hazard))
+                    out.append((name, passed))
                 fresh = [v.name for v in data.inputs if v.name in registers and v.name not in seen]
                 seen |= set(fresh)
                 todo += fresh
-        return e.disj(parts)
+        return out
+
+    @cached_property
+    def held(self) -> Expr:
+        return e.disj(goal for _, goal in self.holders)
 
 
 def _bits_more_than_once(values: Sequence[Expr]) -> Expr:

@@ -23,7 +23,7 @@ from properties import glitch_free
 from prover import analyse, check
 from prover import expr as e
 from prover.arrival import Glitch
-from prover.design import Design, Edge, Register, Signal
+from prover.design import Design, Edge, Force, Register, Signal
 from prover.effort import Effort
 from prover.expr import Expr
 from prover.findings import Finding, Report
@@ -337,6 +337,21 @@ def test_a_pulse_is_dumped_listed_and_drawn(tmp_path: Path) -> None:
     assert "glitch of pump at the rising edge of clk" in drawn
     rows = [row.split() for row in drawn.splitlines() if "→" in row and row.startswith("  1 ")]
     assert [row[-1] for row in rows] == ["3", "2", "0", "8"]
+
+
+def test_what_a_latch_lets_through_is_not_taken_for_clean() -> None:
+    # Open while the clock is high, so that it shows all that the decode of 1 to 2 (01, 00 or 11, 10) does on its way.
+    count, held = e.var("count", 2), e.var("held", 1)
+    decode = e.eq(count, e.const(3, 2))
+    latch = Register("held", 1, "latch", (), (Force(small.CLOCK, decode, HERE),), None, HERE)
+    registers = [small.flop("count", 2, small.CLOCK, e.bvadd(count, e.const(1, 2))), latch]
+    claim = Spec(ratio=Fraction(4), high=2, start="any")
+    found = glitch_free.judge(analysed(small.design(registers, held), claim), claim)
+    assert found.verdict == "open"
+    assert "what held takes on may pulse while it is open" in found.says
+    shut = Register("held", 1, "latch", (), (Force(small.FALLING, decode, HERE),), None, HERE)
+    closed = glitch_free.judge(analysed(small.design([registers[0], shut], held), claim), claim)
+    assert (closed.verdict, closed.obligations) == ("proved", ())
 
 
 # -- wide machines -----------------------------------------------------------------------------------------
