@@ -12,14 +12,15 @@ is not held, has to become the same. For a glitch the output may change once.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import replace
-from itertools import permutations
+from dataclasses import dataclass, replace
+from itertools import pairwise, permutations
 
 from prover import expr as e
-from prover.arrival import bit_name
-from prover.design import Design, Register, components
+from prover.arrival import Glitch, bit_name
+from prover.design import Design, Gate, Register, components, ended
 from prover.expr import Expr
 from prover.findings import Finding, Report
+from prover.hazard import gate, still
 from prover.report.checks import HALF_CYCLE
 from prover.report.dut import Dut, NoBench, Scene, came, word
 from prover.settling import Race
@@ -47,12 +48,15 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
     """The orders that refute. Raises NoBench where none is known that can be forced."""
     if finding.glitch is not None:
         return _glitch(report, finding, dut)
-    pulses = [
-        race for race in report.rhythm.settling.races if race.kind == "pulse" and race.text in finding.says
-    ]
-    if not pulses:
-        raise NoBench("it has no run that could be replayed")
-    return _pulse(report, pulses[0], dut)
+    pulses = [race for race in report.rhythm.settling.races if race.kind == "pulse"]
+    why = NoBench("it has no run that could be replayed")
+    # One pulse may be a hazard for several registers; at the one that is named it need not show.
+    for race in sorted(pulses, key=lambda race: race.text not in finding.says):
+        try:
+            return _pulse(report, race, dut)
+        except NoBench as fault:
+            why = fault
+    raise why
 
 
 # -- hazards -----------------------------------------------------------------------------------------------
@@ -67,7 +71,7 @@ def _pulse(report: Report, race: Race, dut: Dut) -> Scene:
     shared = [r.name for r in report.ports.design.registers if dut.path(r.name) == path]
     if len(shared) > 1:
         raise NoBench(f"{register.name} is a part of a vector, of which parts can't be held by themselves")
-    first, second, ends = _two_orders(report, register, start)
+    muted, first, second, ends = _found_orders(report, register, start)
     told = [", ".join(dict.fromkeys(_named(report, move) for move in order)) for order in (first, second)]
     width = register.width
     return Scene(
@@ -81,7 +85,7 @@ def _pulse(report: Report, race: Race, dut: Dut) -> Scene:
         ],
         code=[
             "initial begin",
-            *(f"  {line}" for line in _step(dut, start)),
+            *(f"  {line}" for line in _step(dut, start, muted)),
             *(f"  {line}" for line in _arrivals(report, dut, start, first, free=path)),
             f"  first = {path};",
             *(f"  {line}" for line in _arrivals(report, dut, start, second, free=path)),
@@ -110,12 +114,51 @@ def _named(report: Report, move: Move) -> str:
     return bit_name(report.ports.design, *move)
 
 
-def _two_orders(
+@dataclass(frozen=True, slots=True)
+class _Muted:
+    """A net that is held inactive while the divider's own step is noted, because its pulse would change that."""
+
+    path: str
+    inactive: int
+    design: Design
+
+
+def _nets(report: Report, register: Register) -> Iterator[_Muted]:
+    """The clock, sets and clears of the register that have a name in the sources."""
+    design = report.ports.design
+    for net in [edge.clock for edge in register.edges] + [force.when for force in register.forces]:
+        for signal in design.signals.values():
+            if signal.value in (net, e.bvnot(net)) and signal.value.op != "var":
+                registers = tuple(
+                    replace(
+                        each,
+                        edges=tuple(edge for edge in each.edges if edge.clock is not net),
+                        forces=tuple(force for force in each.forces if force.when is not net),
+                    )
+                    for each in design.registers
+                )
+                quiet = replace(design, registers=registers)
+                yield _Muted(f"dut.{ended(signal.name)}", int(signal.value is not net), quiet)
+
+
+def _found_orders(
     report: Report, register: Register, start: Mapping[str, int]
-) -> tuple[Sequence[Move], Sequence[Move], tuple[int, int]]:
-    """Two orders of the bits that change in a step and reach the register, after which it is not the same, and what
-    it is after each."""
-    ports, design = report.ports, report.ports.design
+) -> tuple[_Muted | None, Sequence[Move], Sequence[Move], tuple[int, int]]:
+    """Two orders after which the register is not the same, of what changes in the divider's own step, or in its step
+    if one of the register's nets is not heeded."""
+    for muted in (None, *_nets(report, register)):
+        found = _two_orders(report, register, start, muted.design if muted else report.ports.design)
+        if found is not None:
+            return muted, *found
+    raise NoBench("no order of the changes that last to the end of a step shows it")
+
+
+def _two_orders(
+    report: Report, register: Register, start: Mapping[str, int], design: Design
+) -> tuple[Sequence[Move], Sequence[Move], tuple[int, int]] | None:
+    """Two orders of the bits that change in a step of the design and reach the register, after which it is not the
+    same, and what it is after each; None if there are none."""
+    ports = report.ports
     moment = _moment(report, start)
     settled = clock_edge(design, ports.clock, moment, report.rhythm.settling.depth or 1)
     after = {name: _value(settled[name]) for name in start}
@@ -131,7 +174,7 @@ def _two_orders(
     ]
     if len(moves) > MOST_MOVES:
         raise NoBench(f"{len(moves)} bits change together, too many to try every order")
-    alone = replace(design, registers=(register,))
+    alone = replace(ports.design, registers=(register,))
     ends: dict[int, Sequence[Move]] = {}
     # What a clock edge launches comes after it, if that is enough to show it.
     edge = [move for move in moves if move[0] == ports.clock]
@@ -141,7 +184,7 @@ def _two_orders(
         if len(ends) == 2:
             (one, first), (two, second) = ends.items()
             return first, second, (one, two)
-    raise NoBench("no order of the changes that last to the end of the step shows it")
+    return None
 
 
 def _moment(report: Report, start: Mapping[str, int]) -> Moment:
@@ -179,17 +222,12 @@ def _glitch(report: Report, finding: Finding, dut: Dut) -> Scene:
     """One order in which the output changes more than once."""
     glitch = finding.glitch
     assert glitch is not None
-    if glitch.kind != "function":
-        raise NoBench("changes reach gates at different times in it, and a bench reaches whole nets only")
-    design = report.ports.design
-    bits = {bit_name(design, r.name, bit): (r.name, bit) for r in design.registers for bit in range(r.width)}
-    bits[report.ports.clock] = (report.ports.clock, 0)
-    names = [arrival.name for arrival in glitch.arrivals]
-    if len(set(names)) < len(names) or not set(names) <= set(bits):
-        raise NoBench(
-            "something changes more than once in it, and what lasts to the end of a step is all that is noted"
-        )
-    start, order = dict(glitch.state), [bits[name] for name in names]
+    start, names = dict(glitch.state), [arrival.name for arrival in glitch.arrivals]
+    arrivals = _by_bits(report, glitch) if glitch.kind == "function" else _by_gates(report, glitch)
+    levels = [glitch.level, *(arrival.level for arrival in arrivals)]
+    changes = sum(a != b for a, b in pairwise(levels))
+    if changes < 2:
+        raise NoBench("what the last gate sees of it can't be brought about from outside")
     return Scene(
         start="before a clock edge",
         about=ABOUT,
@@ -212,12 +250,12 @@ def _glitch(report: Report, finding: Finding, dut: Dut) -> Scene:
             "",
             "initial begin",
             *(f"  {line}" for line in _step(dut, start)),
-            *(f"  {line}" for line in _arrivals(report, dut, start, order, observed=True)),
+            *(f"  {line}" for line in _arrivals(report, dut, start, arrivals, observed=True)),
             "  if (changes > 1) begin",
             *came(
                 f"%0d changes of the output where {_percent(', '.join(names))} arrive in this order",
                 "changes",
-                f"changes == {glitch.changes}",
+                f"changes == {changes}",
                 4,
             ),
             "  end",
@@ -228,22 +266,87 @@ def _glitch(report: Report, finding: Finding, dut: Dut) -> Scene:
     )
 
 
+@dataclass(frozen=True, slots=True)
+class _Arrival:
+    """Something that a bench lets arrive: a bit that changes, or none, values of nets, and the output then."""
+
+    move: Move | None
+    nets: Mapping[str, int]
+    level: int
+
+
+def _bits(report: Report) -> dict[str, Move]:
+    """The bits of registers, and the clock, by the names that arrivals have."""
+    design = report.ports.design
+    bits = {bit_name(design, r.name, bit): (r.name, bit) for r in design.registers for bit in range(r.width)}
+    return bits | {report.ports.clock: (report.ports.clock, 0)}
+
+
+def _by_bits(report: Report, glitch: Glitch) -> list[_Arrival]:
+    bits, names = _bits(report), [arrival.name for arrival in glitch.arrivals]
+    if len(set(names)) < len(names) or not set(names) <= set(bits):
+        raise NoBench("something changes twice in it, and a bench notes what lasts to the end of a step")
+    return [_Arrival(bits[arrival.name], {}, arrival.level) for arrival in glitch.arrivals]
+
+
+def _by_gates(report: Report, glitch: Glitch) -> list[_Arrival]:
+    """The same where a change takes its own time to each gate: what every gate but the last drives is forced, and
+    bits arrive only where that one reads them."""
+    design, bits = report.ports.design, _bits(report)
+    written = _written(report)
+    last = written.name if written.op == "var" and written.name in design.gates else ""
+    reader = f"{design.gates[last].kind} {last}" if last else ""
+    values: dict[str, int] = dict(report.ports.running.values) | dict(glitch.state)
+    out = []
+    for arrival in glitch.arrivals:
+        name, _, at = arrival.name.partition(" at ")
+        nets = {net: value for net, value in arrival.seen.items() if net in design.gates and net != last}
+        move = bits.get(name) if at == reader else None
+        if move is not None:
+            values[move[0]] ^= 1 << move[1]
+        level = _driven(design.gates[last] if last else written, values | nets)
+        out.append(_Arrival(move, nets, level))
+    return out
+
+
+def _written(report: Report) -> Expr:
+    """The output over the nets of gates."""
+    name = report.ports.output
+    signal = report.ports.design.signals.get(name)
+    if signal is None:
+        raise NoBench("the output is a bit of a vector made by gates")
+    return signal.written if signal.written is not None else signal.value
+
+
+def _driven(source: Gate | Expr, values: Mapping[str, int]) -> int:
+    """What a gate or an expression makes of these values."""
+    if not isinstance(source, Gate):
+        return e.evaluate([source], values)[0]
+    pins = [still(e.const(value, 1)) for value in e.evaluate(list(source.pins), values)]
+    return _value(gate(source.kind, pins).first)
+
+
 # -- what both do ------------------------------------------------------------------------------------------
 
 
-def _step(dut: Dut, start: Mapping[str, int]) -> Iterator[str]:
+def _step(dut: Dut, start: Mapping[str, int], muted: _Muted | None = None) -> Iterator[str]:
     """The divider's own step from the start state."""
     yield "// The start state: forced so that nothing else reacts, then let go."
     yield from dut.set(start)
+    if muted is not None:
+        yield "// Inactive for this step: whether its pulse is seen is what is asked."
+        yield f"force {muted.path} = 1'b{muted.inactive};"
     yield f"#{HALF_CYCLE} {dut.clock} = ~{dut.clock};"
     yield f"#{HALF_CYCLE} settled = registers;"
+    if muted is not None:
+        yield f"release {muted.path};"
 
 
 def _arrivals(
     report: Report,
     dut: Dut,
     start: Mapping[str, int],
-    order: Sequence[Move],
+    order: Sequence[Move] | Sequence[_Arrival],
     free: str = "",
     observed: bool = False,
 ) -> Iterator[str]:
@@ -263,17 +366,24 @@ def _arrivals(
         yield "changes = 0;"
     places = _places(dut)
     done: dict[str, int] = {}
-    for name, bit in order:
-        if name == clock:
-            yield f"#{APART} {dut.clock} = ~{dut.clock};"
-        else:
+    nets: dict[str, int] = {}
+    for each in order:
+        arrival = each if isinstance(each, _Arrival) else _Arrival(each, {}, 0)
+        yield f"#{APART};"
+        for net, level in arrival.nets.items():
+            if nets.get(net) != level:
+                yield f"force dut.{ended(net)} = 1'b{level};"
+        nets |= arrival.nets
+        if arrival.move is not None and arrival.move[0] == clock:
+            yield f"{dut.clock} = ~{dut.clock};"
+        elif arrival.move is not None:
+            name, bit = arrival.move
             path = dut.path(name)
             width, value = state[path]
             done[path] = done.get(path, 0) | _mask(dut, path, name, bit)
-            mask = word(width, done[path])
-            low = places[path]
+            mask, low = word(width, done[path]), places[path]
             arrived = f"settled[{low + width - 1}:{low}] & {mask}"
-            yield f"#{APART} force {path} = {arrived} | {word(width, value)} & ~{mask};"
+            yield f"force {path} = {arrived} | {word(width, value)} & ~{mask};"
         if observed:
             yield f"#{APART} observe;"
     yield f"#{HALF_CYCLE};"

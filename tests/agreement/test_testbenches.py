@@ -39,6 +39,7 @@ MENDED: dict[str, list[tuple[str, str]]] = {
     "by_7_clears_at_6": [("q2, q1);", "q2, q1, q0);")],
     "by_7_rising_resample": [("posedge clk) late", "negedge clk) late")],
     "cell_loses_remainder": [("next[4] ? 4'd0 : next[3:0]", "next[3:0]")],
+    "clears_on_the_way": [("(clear, ~q0, ~q1, q2)", "(clear, 1'b0, ~q1, q2)")],
     "clears_and_sets_itself": [
         ("assign clear = run & pulse_bit;", "assign clear = 1'b0;"),
         ("assign set = run & ~pulse_bit;", "assign set = 1'b0;"),
@@ -116,6 +117,12 @@ MENDED: dict[str, list[tuple[str, str]]] = {
 
 # The same for glitches alone, where a flip-flop behind the output is no cure, or not one that is easily written.
 BRIDGED = {
+    "stage_by_8_unbridged": [
+        (
+            "or merge (two, at_6, at_7);",
+            "wire bridge; and over (bridge, gray[2], gray[1]);\n  or merge (two, at_6, at_7, bridge);",
+        )
+    ],
     "carrier_by_1_5_selected": [
         ("after_rise <= count != 2'd1;", "if (count != 2'd2) after_rise <= ~after_rise;"),
         ("after_fall <= count != 2'd0;", "if (count != 2'd1) after_fall <= ~after_fall;"),
@@ -132,10 +139,8 @@ BRIDGED = {
 
 # Why a refuted property has no bench.
 WITHOUT = {
-    "settling": "no order of the changes that last to the end of the step shows it",
     "recovery": "it would have to run for",
     "reset": "of a mean ratio no one pulse is known to be too short",
-    "glitch-free": "changes reach gates at different times in it",
 }
 
 
@@ -255,7 +260,7 @@ def figures_agree(says: str, told: str) -> bool:
     if told.startswith("another output once more"):
         return "the output hangs on it" in says or "too short" in says
     name = told.partition(" becomes ")[0]
-    return f" of {name} " in says and told.count(" becomes ") == 1
+    return told.count(" becomes ") == 1 and (f" of {name} " in says or "for a moment on the way" in says)
 
 
 @pytest.mark.parametrize(("case", "group"), ALL)
