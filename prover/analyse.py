@@ -65,9 +65,18 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
     return rhythm if spec.ratio is None else _with_glitches(rhythm, ports, spec, system, effort)
 
 
-def from_starts(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
-    """What the engines find out from the start states alone."""
-    return _begun(ports, spec, effort)[0]
+def from_starts(ports: Ports, starts: Sequence[Start], effort: Effort) -> Rhythm:
+    """What the engines find out from states of the whole divider alone, with its reset released."""
+    system, settling = settle(ports.design, ports.clock, ports.running, ports.output_value, effort)
+    settling = _checked(settling, effort)
+    if settling.depth is None:
+        why = settling.open or "the micro-steps do not settle"
+        return Rhythm(system, settling, "initial", (), (), (), False, None, None, False, open=why)
+    machine, placed = _machine(system, tuple(starts), effort)
+    # States that differ only in what the output does not depend on are one.
+    placed = tuple({start.state: start for start in placed}.values())
+    orbits = _orbits(machine, placed, effort)
+    return Rhythm(machine, settling, "initial", placed, orbits, (), False, None, None, False)
 
 
 def from_power_up(ports: Ports, spec: Spec, goal: Goal | None, effort: Effort) -> Rhythm:

@@ -11,6 +11,7 @@ from collections.abc import Collection, Iterator, Sequence
 from dataclasses import dataclass, field, replace
 
 from prover import equality, path
+from prover import expr as e
 from prover.effort import Effort
 from prover.equality import Invariant, Shifts
 from prover.errors import InternalError
@@ -85,9 +86,11 @@ class Run:
 
 @dataclass(frozen=True, slots=True)
 class Apiece:
-    """Evidence: each divider on its own, for each value of the inputs that are held."""
+    """Evidence: each divider on its own, for each value of the inputs that are held. `joint` is what the start states
+    were found from; None where there are none."""
 
     followed: tuple[Followed, ...]
+    joint: Joint | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -179,11 +182,13 @@ def assumptions(pair: Pair, outcome: Outcome) -> tuple[str, ...]:
         )
     for side, ports in zip(SIDES, (pair.old, pair.new), strict=True):
         out += [f"{name} of the {side} one is held at {value}" for name, value in ports.holds.items()]
-    if isinstance(outcome.evidence, Apiece):
-        for side, rhythm in zip(SIDES, outcome.evidence.followed[0].rhythms, strict=True):
-            if rhythm.unforced:
-                names = ", ".join(rhythm.unforced)
-                out.append(f"reset never forces {names} of the {side} one: every value is followed")
+    joint = outcome.evidence.joint if outcome.evidence is not None else None
+    if joint is not None and pair.scope == "reset":
+        known = {each.name for each in pair.inputs}
+        unforced = {v.name for start in joint.starts for v in e.variables(start.rest)} - known
+        names = [name for name, _ in joint.own if name in unforced]
+        if names:
+            out.append(f"reset never forces {', '.join(names)}: every value is followed")
     return tuple(out)
 
 

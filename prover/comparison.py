@@ -18,10 +18,10 @@ from prover import expr as e
 from prover.compared import Apiece, Comparison, Followed, Outcome, Run, Together
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
-from prover.joint import Joint, Start, build
+from prover.joint import Joint, build, starts_apart
 from prover.pair import Pair, Pairing
 from prover.ports import Ports
-from prover.rhythm import Goal, Rhythm, Wave
+from prover.rhythm import Goal, Rhythm, Start, Wave
 from prover.solve import Model
 from prover.spec import Spec
 from prover.system import State
@@ -58,7 +58,7 @@ def judge(pair: Pair, pairing: Pairing, effort: Effort) -> Outcome:
         if pairing.settled:
             return _settled(pair, pairing, effort)
         if not any(each.moving for each in pair.inputs) and pair.input_bits <= LISTED:
-            found = compared.of_runs(_each_value(pair, pairing, effort), pairing.lag, effort)
+            found = compared.of_runs(_each_value(pair, effort), pairing.lag, effort)
             # Orbits that are not followed to their ends may have a relation between them all the same.
             if found.verdict != "open" or pairing.lag is None:
                 return found
@@ -67,15 +67,17 @@ def judge(pair: Pair, pairing: Pairing, effort: Effort) -> Outcome:
         return Outcome("open", str(out))
 
 
-def _each_value(pair: Pair, pairing: Pairing, effort: Effort) -> Apiece:
+def _each_value(pair: Pair, effort: Effort) -> Apiece:
     """Both followed from their starts, for every value of the shared inputs."""
+    joint = build(pair, 0, effort, races=False)
     followed = []
     for inputs in _values(pair):
         ports = pair.held_at(inputs)
-        specs = (replace(spec, start=pair.scope) for spec in (pairing.old, pairing.new))
-        old, new = (analyse.from_starts(*both, effort) for both in zip(ports, specs, strict=True))
+        begun = starts_apart(joint, inputs)
+        old = analyse.from_starts(ports[0], [Start(state, cause) for cause, state, _ in begun], effort)
+        new = analyse.from_starts(ports[1], [Start(state, cause) for cause, _, state in begun], effort)
         followed.append(Followed(inputs, ports, (old, new)))
-    return Apiece(tuple(followed))
+    return Apiece(tuple(followed), joint)
 
 
 def _values(pair: Pair) -> Iterator[Model]:
@@ -206,24 +208,20 @@ def _of_states(joint: Joint, lag: int, found: set[State] | lockstep.Divergence, 
 def _different(joint: Joint, lag: int, found: lockstep.Divergence) -> Outcome:
     """A difference, with inputs left where they are wherever that shows it too."""
     run = Run(joint.starts.index(found.start), found.values, found.moves, found.half_cycle)
-    return compared.of_both(Together(joint, _calmed(joint, lag, run)), lag)
+    return compared.of_both(Together(joint, _calmed(joint, run)), lag)
 
 
-def _calmed(joint: Joint, lag: int, run: Run) -> Run:
+def _calmed(joint: Joint, run: Run) -> Run:
+    """The run with inputs left where they are in every half-cycle in which that shows the same."""
     names = [name.removesuffix(" moved") for name, _ in joint.moves]
     start = joint.starts[run.start]
-    at_rest = dict(zip(joint.names, e.evaluate(start.rest, _all(start, run.values)), strict=True))
+    zeros = {v.name: 0 for v in e.variables(start.rest)}
+    at_rest = dict(zip(joint.names, e.evaluate(start.rest, zeros | run.values), strict=True))
+    first = tuple(at_rest[name] for name in names)
+    stepper = lockstep.Stepper(joint)
     moves = list(run.moves)
     for place in range(len(moves)):
-        before = moves[place - 1] if place else tuple(at_rest[name] for name in names)
-        calm = [*moves[:place], before, *moves[place + 1 :]]
-        # What a half-cycle moves to holds until the next one moves.
-        rests = equality.replayed(joint, start, run.values, calm, run.half_cycle)
-        seen = equality.rests_differ(rests, lag)
-        if seen is not None and seen.half_cycle == run.half_cycle:
+        calm = [*moves[:place], moves[place - 1] if place else first, *moves[place + 1 :]]
+        if lockstep.differs_at(stepper, start, run.values, calm, run.half_cycle) == run.half_cycle:
             moves = calm
     return replace(run, moves=tuple(moves))
-
-
-def _all(start: Start, values: Model) -> Model:
-    return {v.name: 0 for v in e.variables(start.rest)} | values

@@ -21,7 +21,7 @@ from prover.certificate import Obligation, discharge
 from prover.effort import Effort
 from prover.errors import InternalError
 from prover.expr import Expr
-from prover.joint import Joint, Start, renamed
+from prover.joint import Held, Joint, Start, renamed
 from prover.path import Item, Repeat, Run
 from prover.rhythm import Orbit
 from prover.solve import Model, constant
@@ -342,12 +342,9 @@ def reach_faults(joint: Joint, states: Collection[State], effort: Effort) -> lis
         if not discharge(Obligation(f"micro-steps, question {number}", goal), effort):
             faults.append(f"micro-steps, question {number}")
     known = set(states)
-    for start in joint.starts:
-        free = e.variables([*start.first, start.differs])
-        columns = _every([(v.name, v.width) for v in free])
-        *first, differs = e.arrays([*start.first, start.differs], columns)
-        if differs.any() or not set(zip(*(x.tolist() for x in first), strict=True)) <= known:
-            faults.append(f"{start.cause}: not among the states")
+    for cause, begun, differs in _begun(joint, effort):
+        if differs or not begun <= known:
+            faults.append(f"{cause}: not among the states")
     listed = sorted(known)
     kind = np.uint64 if all(width <= 64 for _, width in joint.variables) else object
     values = {
@@ -362,9 +359,73 @@ def reach_faults(joint: Joint, states: Collection[State], effort: Effort) -> lis
         *after, rest, edge = e.arrays([*joint.step, joint.differs, joint.differs_at_edge], values)
         if rest.any() or edge.any():
             faults.append("a state in which the outputs differ")
-        if not set(zip(*(x.tolist() for x in after), strict=True)) <= known:
+        if not _rows(after) <= known:
             faults.append("a step out of the states")
     return list(dict.fromkeys(faults))
+
+
+LISTED = 12
+"""Bits that are not known of a start up to which it is computed with every value of them."""
+
+
+def _begun(joint: Joint, effort: Effort) -> Iterator[tuple[str, set[State], bool]]:
+    """How each start comes about, the states it begins in, and whether the outputs differ before."""
+    for start in joint.starts:
+        free = e.variables([*start.first, start.differs])
+        if sum(v.width for v in free) > LISTED and joint.held is not None:
+            yield "reset released", *_after_reset(joint, joint.held, effort)
+            return
+        columns = _every([(v.name, v.width) for v in free])
+        *first, differs = e.arrays([*start.first, start.differs], columns)
+        yield start.cause, _rows(first), bool(differs.any())
+
+
+def _after_reset(joint: Joint, held: Held, effort: Effort) -> tuple[set[State], bool]:
+    """The same by holding reset in every state at once, with every move of the inputs in every half-cycle."""
+    clock = joint.names.index(joint.both.clock)
+    names = [name for name, _ in joint.own]
+    here = dict(_every(joint.own))
+    here |= dict(zip(names, e.arrays(held.rest, here), strict=False))
+    for _ in range(held.half_cycles):
+        effort.check()
+        here |= dict(zip(names, e.arrays(held.edge, here), strict=False)) | {
+            names[clock]: 1 - here[names[clock]].astype("int64")
+        }
+        rows: set[State] = set()
+        for moves in _moves(joint, len(here[names[0]])):
+            after = dict(zip(names, e.arrays(held.move, here | moves), strict=False))
+            inputs = {name.removesuffix(" moved"): value for name, value in moves.items()}
+            rows |= _rows([(here | after | inputs)[name] for name in names])
+        here = _columns(names, sorted(rows))
+    here |= dict(zip(names, e.arrays(held.release, here), strict=False))
+    found: set[State] = set()
+    differs = False
+    for moves in _moves(joint, len(here[names[0]])):
+        *first, before = e.arrays(joint.begin, here | moves)
+        found |= _rows(first)
+        differs |= bool(before.any())
+    return found, differs
+
+
+def _moves(joint: Joint, length: int) -> Iterator[dict[str, np.ndarray]]:
+    """Every move of the inputs, the same in so many rows."""
+    import numpy as np
+
+    for values in product(*(range(1 << width) for _, width in joint.moves)):
+        yield {n: np.full(length, x, dtype=np.uint64) for (n, _), x in zip(joint.moves, values, strict=True)}
+
+
+def _rows(columns: Sequence[np.ndarray]) -> set[State]:
+    return set(zip(*(column.tolist() for column in columns), strict=True))
+
+
+def _columns(names: Sequence[str], rows: Sequence[State]) -> dict[str, np.ndarray]:
+    import numpy as np
+
+    return {
+        name: np.array(column, dtype=np.uint64)
+        for name, column in zip(names, zip(*rows, strict=True), strict=True)
+    }
 
 
 def _every(free: Sequence[tuple[str, int]]) -> Mapping[str, np.ndarray]:

@@ -11,6 +11,7 @@ can answer them without a solver.
 from __future__ import annotations
 
 import itertools
+import random
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -19,7 +20,7 @@ from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.pair import Pair, side_by_side
+from prover.pair import SIDES, Pair, side_by_side
 from prover.ports import Ports
 from prover.settling import Ask, Settling, bound, settle
 from prover.solve import Model, find
@@ -48,6 +49,23 @@ class Start:
     cause: str
 
 
+@dataclass(frozen=True, slots=True)
+class Held:
+    """Reset held for so many half-cycles. Each is every register, over registers, clock and shared inputs.
+
+    rest     once arbitrary values have settled
+    edge     after an edge of the clock
+    move     after inputs have moved, over the moves as well
+    release  after reset was released
+    """
+
+    half_cycles: int
+    rest: tuple[Expr, ...]
+    edge: tuple[Expr, ...]
+    move: tuple[Expr, ...]
+    release: tuple[Expr, ...]
+
+
 @dataclass(frozen=True)
 class Joint:
     """Two dividers side by side.
@@ -63,6 +81,9 @@ class Joint:
     differs    one bit over the variables: the outputs differ at rest
     differs_at_edge  the same at the rest after the edge that follows, before inputs move
     starts     where it starts from
+    begin      every variable once the inputs have moved for the first time, over variables and moves; then whether
+               the outputs differ before that
+    held       reset; None where it does not start there
     answers    the answers to all questions asked on the way
     goals      what must not be satisfiable for the micro-steps to suffice
     """
@@ -78,12 +99,19 @@ class Joint:
     differs: Expr
     differs_at_edge: Expr
     starts: tuple[Start, ...]
+    begin: tuple[Expr, ...]
+    held: Held | None
     answers: tuple[Model | None, ...]
     goals: tuple[Expr, ...]
 
     @cached_property
     def names(self) -> list[str]:
         return [name for name, _ in self.variables]
+
+    @cached_property
+    def own(self) -> tuple[tuple[str, int], ...]:
+        """The variables without those of the queue."""
+        return self.variables[: len(self.both.design.registers) + 1 + len(self.both.free)]
 
     @property
     def bits(self) -> int:
@@ -97,14 +125,15 @@ class Joint:
         return [(v.name, v.width) for v in found if v.name.startswith("?")]
 
 
-def build(pair: Pair, lag: int, effort: Effort, ask: Ask | None = None) -> Joint:
-    """Both dividers as one, the new output `lag` half-cycles late. Raises OutOfEffort, with the reason, where the
-    micro-steps don't settle or can't be bounded, or where the lag is too long for a queue."""
+def build(pair: Pair, lag: int, effort: Effort, ask: Ask | None = None, races: bool = True) -> Joint:
+    """Both dividers as one, the new output `lag` half-cycles late; without `races` none are looked for. Raises
+    OutOfEffort, with the reason, where the micro-steps don't settle or can't be bounded, or where the lag is too long
+    for a queue."""
     if abs(lag) > LONGEST_LAG:
         raise OutOfEffort(
             f"a lag of more than {LONGEST_LAG} half-cycles is followed only where inputs have few values"
         )
-    return _Builder(pair, effort, ask).build(lag)
+    return _Builder(pair, effort, ask).build(lag, races)
 
 
 def unknowns(start: Start) -> list[Expr]:
@@ -112,13 +141,41 @@ def unknowns(start: Start) -> list[Expr]:
     return e.variables([*start.rest, *start.first, start.differs])
 
 
-def starts_of(start: Start) -> Iterator[tuple[Model, State, bool]]:
-    """Every state of a start: what is not known, the first state, and whether the outputs differ before it."""
+def starts_of(start: Start, fixed: Mapping[str, int] | None = None) -> Iterator[tuple[Model, State, bool]]:
+    """Every state of a start: what is not known, the first state, and whether the outputs differ before it.
+
+    `fixed` are values of some of what is not known."""
+    fixed = fixed or {}
     free = unknowns(start)
     run = e.compile_step([*start.first, start.differs], [v.name for v in free])
-    for values in itertools.product(*(range(1 << v.width) for v in free)):
+    ranges = ((fixed[v.name],) if v.name in fixed else range(1 << v.width) for v in free)
+    for values in itertools.product(*ranges):
         *first, differs = run(*values)
         yield {v.name: x for v, x in zip(free, values, strict=True)}, tuple(first), bool(differs)
+
+
+MOST_START_BITS = 12
+"""Bits that are not known of a start up to which every start state is listed."""
+
+
+def starts_apart(joint: Joint, inputs: Model) -> list[tuple[str, State, State]]:
+    """How each start comes about, with the inputs held at values, and the registers and the clock of the old divider
+    and of the new one then. Raises OutOfEffort where there are too many."""
+    out: dict[tuple[str, State, State], None] = {}
+    clock = joint.both.clock
+    for start in joint.starts:
+        unknown = [v for v in unknowns(start) if v.name not in inputs]
+        if sum(v.width for v in unknown) > MOST_START_BITS:
+            names = ", ".join(dict.fromkeys(v.name for v in unknown))
+            raise OutOfEffort(f"too many start states: nothing forces {names}")
+        for _, state, _ in starts_of(start, inputs):
+            values = dict(zip(joint.names, state, strict=True))
+            sides = []
+            for side in SIDES:
+                mine = (values[n] for n, _ in joint.own if n.startswith(f"{side}."))
+                sides.append((*mine, values[clock]))
+            out[start.cause, sides[0], sides[1]] = None
+    return list(out)
 
 
 def moved(name: str) -> str:
@@ -148,11 +205,12 @@ class _Builder:
         self.moving = [each.name for each in pair.inputs if each.moving]
         self.inputs = {each.name: e.var(each.name, each.width) for each in pair.inputs}
         self.limit = 1
+        self.held: Held | None = None
 
-    def build(self, lag: int) -> Joint:
+    def build(self, lag: int, races: bool) -> Joint:
         self.effort.say("setting both dividers side by side")
         known = self.both.running.moment(self.design.inputs)
-        system, settling = self._settled(self.both.running, "", races=True)
+        system, settling = self._settled(self.both.running, "", races)
         edge = dict(zip(system.names, system.step, strict=True))
         move = self._move(known)
         values = [signal.value for signal in self.design.signals.values()]
@@ -171,22 +229,15 @@ class _Builder:
             *queue.variables,
         )
         names = [name for name, _ in variables]
+        first = {**move, self.clock: e.var(self.clock, 1), **queue.start(out_old, out_new)}
+        first |= {n: e.var(moved(n), x.width) if n in self.moving else x for n, x in self.inputs.items()}
+        begin = [*(first[n] for n in names), e.FALSE if lag else e.bvxor(out_old, out_new)]
         starts = []
         for cause, level, rest in self._starts():
-            rest = {**rest, self.clock: e.const(level, 1), **self.inputs}
-            first = dict(zip(self.names, _applied([move[n] for n in self.names], rest, "move"), strict=True))
-            first = {**rest, **first} | {n: e.var(moved(n), self.inputs[n].width) for n in self.moving}
-            old, new = _applied([out_old, out_new], rest, "start")
-            queued = queue.start(old, new)
-            (differs,) = _applied([queue.differs(out_old, out_new)], {**rest, **queued}, "start")
-            starts.append(
-                Start(
-                    tuple({**rest, **queued}[n] for n in names),
-                    tuple({**first, **queued}[n] for n in names),
-                    differs,
-                    cause,
-                )
-            )
+            here = {**rest, self.clock: e.const(level, 1), **self.inputs}
+            *begun, differs = _applied(begin, here, "begin")
+            queued = queue.start(*_applied([out_old, out_new], here, "begin"))
+            starts.append(Start(tuple({**here, **queued}[n] for n in names), tuple(begun), differs, cause))
         return Joint(
             both=self.both,
             outputs=(out_old, out_new),
@@ -199,6 +250,8 @@ class _Builder:
             differs=queue.differs(out_old, out_new),
             differs_at_edge=queue.differs_at_edge(at_edge[0], at_edge[1]),
             starts=tuple(starts),
+            begin=tuple(begin),
+            held=self.held,
             answers=tuple(self.answers),
             goals=tuple(self.goals),
         )
@@ -206,7 +259,7 @@ class _Builder:
     # -- micro-steps -----------------------------------------------------------------------------------------
 
     def ask(self, goal: Expr) -> Model | None:
-        model = self.asked(goal) if self.asked else find(goal, self.effort)
+        model = self.asked(goal) if self.asked else _sampled(goal) or find(goal, self.effort)
         if not goal.is_const:
             self.answers.append(model)
             if model is None:
@@ -270,43 +323,53 @@ class _Builder:
             settled_when(self.design.registers, before),
             "reset is released",
         )
-        count = max(self._held(edge, rest, move, level, None)[0] for level in (0, 1))
+        count, under = self._under(edge, rest, move)
+        phases = ([of[name] for name in self.names] for of in (rest, edge, move, release))
+        self.held = Held(count, *map(tuple, phases))
         for level in (0, 1):
-            first = level ^ (count & 1)
-            _, values = self._held(edge, rest, move, first, count)
+            values = under[level ^ (count & 1)]
             registers = _applied([release[n] for n in self.names], values, "release")
             long = f" held for {count} half-cycles or longer" if count else ""
-            yield (
-                f"reset{long}, released while the clock is {('low', 'high')[level]}",
-                level,
-                dict(zip(self.names, registers, strict=True)),
-            )
+            cause = f"reset{long}, released while the clock is {('low', 'high')[level]}"
+            yield cause, level, dict(zip(self.names, registers, strict=True))
 
-    def _held(
-        self, edge: Values, rest: Values, move: Values, level: int, wanted: int | None
-    ) -> tuple[int, Values]:
-        """Reset held for so many half-cycles, begun at that level of the clock; without a number, until what can
-        become known is. The half-cycles, and every register then; inputs that move are new in each half-cycle and
-        have their own names in the last."""
-        limit = 4 * len(self.names) + 8 if wanted is None else wanted
+    def _under(self, edge: Values, rest: Values, move: Values) -> tuple[int, list[Values]]:
+        """Reset held until what can become known is: the half-cycles, and every register then, begun with the clock
+        low and with it high. Inputs that move are new in each half-cycle and have their own names in the last."""
+        limit = 4 * len(self.names) + 8
+        runs = [self._holding(edge, rest, move, level) for level in (0, 1)]
+        values = [next(run) for run in runs]
+        count = 0
+        hanging = [self._hanging(here) for here in values]
+        while any(hanging) and count < limit:
+            values = [next(run) for run in runs]
+            count += 1
+            # A register that is not forced is asked about less and less often.
+            if count < 6 or count & (count - 1) == 0 or count == limit:
+                hanging = [self._hanging(here) for here in values]
+            self.effort.check()
+        zeros = {r.name: e.const(0, r.width) for r in self.design.registers}
+        last = {f"{n} in {count}": self.inputs[n] for n in self.moving}
+        out = []
+        for here, kept in zip(values, hanging, strict=True):
+            named = {n: e.substitute([x], last if n in kept else zeros | last)[0] for n, x in here.items()}
+            out.append(named)
+        return count, out
+
+    def _holding(self, edge: Values, rest: Values, move: Values, level: int) -> Iterator[Values]:
+        """Every register, the clock and the inputs after more and more half-cycles of reset, begun at that level."""
         values: Values = {r.name: e.var(r.name, r.width) for r in self.design.registers}
-        values[self.clock] = e.const(level, 1)
-        values |= self.inputs if wanted == 0 else self._inputs_in(0)
+        values |= {self.clock: e.const(level, 1), **self._inputs_in(0)}
         registers = _applied([rest[n] for n in self.names], values, "rest")
         values |= dict(zip(self.names, registers, strict=True))
-        for count in range(limit):
-            if wanted is None and not self._hanging(values):
-                return count, values
+        for count in itertools.count():
+            yield dict(values)
             stepped = _applied([edge[n] for n in (*self.names, self.clock)], values, f"{count}")
             values |= dict(zip((*self.names, self.clock), stepped, strict=True))
-            following = self.inputs if count + 1 == wanted else self._inputs_in(count + 1)
+            following = self._inputs_in(count + 1)
             after = {moved(n): following[n] for n in self.moving}
             registers = _applied([move[n] for n in self.names], {**values, **after}, f"{count} moved")
             values |= dict(zip(self.names, registers, strict=True)) | following
-            self.effort.check()
-        hanging = self._hanging(values)
-        zeros = {r.name: e.const(0, r.width) for r in self.design.registers}
-        return limit, {n: x if n in hanging else e.substitute([x], zeros)[0] for n, x in values.items()}
 
     def _inputs_in(self, half_cycle: int) -> Values:
         """The shared inputs in a half-cycle of reset: those that move are what they like."""
@@ -342,6 +405,23 @@ class _Builder:
                 level,
                 dict(zip(self.names, registers, strict=True)),
             )
+
+
+SAMPLES = 8
+"""Assignments that a question is tried on before the solver is."""
+
+
+def _sampled(goal: Expr) -> Model | None:
+    """Values that make a goal true, if they are soon found."""
+    if goal.is_const:
+        return None
+    rng = random.Random(0)
+    used = e.variables([goal])
+    for _ in range(SAMPLES):
+        values = {v.name: rng.getrandbits(v.width) for v in used}
+        if e.evaluate([goal], values) == [1]:
+            return values
+    return None
 
 
 def _applied(values: Sequence[Expr], to: Mapping[str, Expr], label: str) -> list[Expr]:

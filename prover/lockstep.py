@@ -19,13 +19,16 @@ from typing import Any
 from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.joint import Joint, Start, starts_of, unknowns
+from prover.joint import MOST_START_BITS, Held, Joint, Start, starts_of, unknowns
 from prover.solve import Model
 
 State = tuple[int, ...]
 
-MOST_START_BITS = 16
-"""Bits that are not known of a start up to which every start state is listed."""
+MOST_FREE_BITS = 16
+"""Bits of moves and choices up to which a step is taken with every value of them."""
+
+MOST_HELD_BITS = 12
+"""Bits of both dividers and their inputs up to which reset is held in every state of theirs instead."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,27 +73,96 @@ class Stepper:
         return sum(w for _, w in (*self.joint.moves, *self.joint.choices))
 
 
-def listable(joint: Joint) -> bool:
-    """Whether every start state can be listed."""
-    return all(sum(v.width for v in unknowns(start)) <= MOST_START_BITS for start in joint.starts)
+def begun(joint: Joint, effort: Effort) -> Iterator[tuple[Start, Model, State, bool]] | None:
+    """Every state to start from: which start it is of, what is not known of that, the state, and whether the outputs
+    differ before it. None where there are too many to be listed."""
+    if all(sum(v.width for v in unknowns(start)) <= MOST_START_BITS for start in joint.starts):
+        return ((start, *each) for start in joint.starts for each in starts_of(start))
+    used = sum(width for _, width in joint.own)
+    moves = sum(width for _, width in joint.moves)
+    if joint.held is None or used > MOST_HELD_BITS or moves > MOST_HELD_BITS:
+        return None
+    expressions = [*joint.held.rest, *joint.held.edge, *joint.held.move, *joint.held.release, *joint.begin]
+    if any(v.name.startswith("?") for v in e.variables(expressions)):
+        return None
+    return _after_reset(joint, joint.held, effort)
+
+
+def _after_reset(joint: Joint, held: Held, effort: Effort) -> Iterator[tuple[Start, Model, State, bool]]:
+    """The same by holding reset in every state, half-cycle by half-cycle, with the inputs moving as they like."""
+    names = [name for name, _ in joint.own]
+    clock = names.index(joint.both.clock)
+    registers, inputs = names[:clock], names[clock + 1 :]
+    places = [inputs.index(name.removesuffix(" moved")) for name, _ in joint.moves]
+    moved_names = [*names, *(name for name, _ in joint.moves)]
+    rest, edge, release = (e.compile_step(values, names) for values in (held.rest, held.edge, held.release))
+    move, begin = (e.compile_step(values, moved_names) for values in (held.move, joint.begin))
+    every = list(itertools.product(*(range(1 << width) for _, width in joint.moves)))
+
+    def onto(values: State, moves: State) -> State:
+        """The inputs after they have moved."""
+        out = list(values)
+        for place, value in zip(places, moves, strict=True):
+            out[place] = value
+        return tuple(out)
+
+    layers: list[dict[State, State]] = [{}]
+    for state in itertools.product(*(range(1 << width) for _, width in joint.own)):
+        layers[0].setdefault((*rest(*state), *state[clock:]), state)
+    for count in range(held.half_cycles):
+        effort.say(f"holding reset side by side, half-cycle {count}")
+        following: dict[State, State] = {}
+        for state in layers[-1]:
+            after = (*edge(*state), 1 - state[clock])
+            for moves in every:
+                then = (
+                    *move(*after, *state[clock + 1 :], *moves),
+                    after[clock],
+                    *onto(state[clock + 1 :], moves),
+                )
+                following.setdefault(then, state)
+        layers.append(following)
+    for state in layers[-1]:
+        start = joint.starts[state[clock]]
+        values = _history(layers, state, registers, inputs, clock)
+        freed = (*release(*state), *state[clock:])
+        for moves in every:
+            *first, differs = begin(*freed, *moves)
+            moved_to = {name: value for (name, _), value in zip(joint.moves, moves, strict=True)}
+            yield start, values | moved_to, tuple(first), bool(differs)
+
+
+def _history(
+    layers: Sequence[dict[State, State]],
+    state: State,
+    registers: Sequence[str],
+    inputs: Sequence[str],
+    clock: int,
+) -> Model:
+    """What is not known of the start that a state under reset leads to: the registers at first, and the inputs."""
+    values: Model = dict(zip(inputs, state[clock + 1 :], strict=True))
+    for count in range(len(layers) - 1, 0, -1):
+        state = layers[count][state]
+        values |= {f"{n} in {count - 1}": x for n, x in zip(inputs, state[clock + 1 :], strict=True)}
+    return values | dict(zip(registers, layers[0][state], strict=False))
 
 
 def reach(joint: Joint, effort: Effort, most: int) -> set[State] | Divergence | None:
     """All states that both can be in together, or the shortest run on which the outputs differ; None where more than
     so many steps are to be taken."""
     stepper = Stepper(joint)
-    if not listable(joint) or stepper.free_bits > MOST_START_BITS:
+    listed = begun(joint, effort)
+    if listed is None or stepper.free_bits > MOST_FREE_BITS:
         return None
     came: dict[State, tuple[Any, Any]] = {}
     frontier: list[State] = []
-    for start in joint.starts:
-        for values, state, differs in starts_of(start):
-            if differs:
-                return Divergence(start, values, (), 0, True)
-            if state not in came:
-                came[state] = (start, values)
-                frontier.append(state)
-            effort.check()
+    for start, values, state, differs in listed:
+        if differs:
+            return Divergence(start, values, (), 0, True)
+        if state not in came:
+            came[state] = (start, values)
+            frontier.append(state)
+    effort.check()
     run, free = stepper.run, stepper.free
     steps = half_cycle = 0
     at_rest, at_edge = len(joint.variables), len(joint.variables) + 1
@@ -135,16 +207,33 @@ def _divergence(
     return Divergence(start, values, (first, *reversed(moves)), half_cycle, at_edge)
 
 
-def walk(joint: Joint, rng: random.Random, start: State, count: int, stay: float = 0.5) -> Iterator[State]:
-    """States from one on, with inputs that stay where they are half the time and move anywhere otherwise."""
-    stepper = Stepper(joint)
-    yield from walked(joint, stepper, rng, start, count, stay)
+def differs_at(
+    stepper: Stepper, start: Start, values: Model, moves: Sequence[State], last: int
+) -> int | None:
+    """The first half-cycle up to `last` in which a run shows outputs that differ; x stands for 0 in it."""
+    joint = stepper.joint
+    known = {v.name: 0 for v in unknowns(start)} | values
+    known |= {name: x for (name, _), x in zip(joint.moves, moves[0] if moves else (), strict=False)}
+    *state, differs = e.evaluate([*start.first, start.differs], known)
+    if differs:
+        return 0
+    zeros = [0] * len(joint.choices)
+    places = [joint.names.index(name.removesuffix(" moved")) for name, _ in joint.moves]
+    for half_cycle in range(last + 1):
+        # After the last move the inputs stay where they are.
+        move = moves[half_cycle + 1] if half_cycle + 1 < len(moves) else [state[place] for place in places]
+        *state, at_rest, at_edge = stepper.run(*state, *move, *zeros)
+        if at_rest:
+            return half_cycle
+        if at_edge:
+            return half_cycle + 1
+    return None
 
 
 def walked(
     joint: Joint, stepper: Stepper, rng: random.Random, state: State, count: int, stay: float = 0.5
 ) -> Iterator[State]:
-    """The same with a stepper that is there already."""
+    """States from one on, with inputs that stay where they are half the time and move anywhere otherwise."""
     places = [joint.names.index(name.removesuffix(" moved")) for name, _ in joint.moves]
     for _ in range(count):
         yield state

@@ -242,6 +242,14 @@ def _scope(old: Ports, new: Ports, pairing: Pairing) -> Literal["reset", "initia
         return "any"
     lacking = [ports.design.top for ports in (old, new) if ports.reset is None]
     if pairing.start == "initial" or (pairing.start is None and len(lacking) == 2):
+        for ports in (old, new):
+            registers = ports.design.registers
+            if registers and all(register.initial is None for register in registers):
+                raise UserError(
+                    f"{ports.design.top}: no register has an initial value",
+                    registers[0].where,
+                    hint="give initial values, name a reset with --reset PORT=LEVEL, or begin with --after any",
+                )
         return "initial"
     if lacking:
         raise UserError(

@@ -5,23 +5,18 @@ from __future__ import annotations
 from dataclasses import replace
 
 from prover import collect as single
-from prover.analyse import follow
-from prover.compared import Apiece, Comparison, Followed, Together
+from prover.compared import Apiece, Comparison, Together
 from prover.effort import Effort
 from prover.equality import STATED, Invariant
-from prover.evidence import Evidence, Track
+from prover.evidence import Evidence
 from prover.findings import Report
-from prover.joint import build, starts_of
-from prover.pair import SIDES, Pair
 from prover.pair_evidence import Both, PairEvidence, Runs, Settled, Shows, Value
 from prover.pair_rebuild import claim_of
 from prover.ports import Ports
-from prover.recode import placed
 from prover.rhythm import Rhythm
 from prover.settling import settle
 from prover.solve import Model
 from prover.spec import Spec
-from prover.system import State
 
 
 def collect(comparison: Comparison, effort: Effort) -> PairEvidence | None:
@@ -39,8 +34,13 @@ def collect(comparison: Comparison, effort: Effort) -> PairEvidence | None:
         if outcome.verdict != "proved" or pairing.lag is not None:
             return None
         return _settled(shown, comparison, effort)
-    pair = comparison.pair
-    return Runs(tuple(_value(pair, each, effort) for each in shown.followed))
+    if shown.joint is None:
+        return None
+    values = []
+    for each in shown.followed:
+        old, new = (_side(*one, effort) for one in zip(each.ports, each.rhythms, strict=True))
+        values.append(Value(each.inputs, (old, new)))
+    return Runs(shown.joint.answers, tuple(values))
 
 
 def _related(shown: Together, lag: int, effort: Effort) -> Both | None:
@@ -54,38 +54,19 @@ def _related(shown: Together, lag: int, effort: Effort) -> Both | None:
 # -- each on its own ---------------------------------------------------------------------------------------
 
 
-def _value(pair: Pair, followed: Followed, effort: Effort) -> Value:
-    joint = build(Pair(*followed.ports, (), pair.scope), 0, effort)
-    states: tuple[list[State], list[State]] = ([], [])
-    for start in joint.starts:
-        for _, state, _ in starts_of(start):
-            values = dict(zip(joint.names, state, strict=True))
-            for side, ports, found in zip(SIDES, followed.ports, states, strict=True):
-                own = [values[f"{side}.{register.name}"] for register in ports.design.registers]
-                found.append((*own, values[joint.both.clock]))
-    old, new = (_side(*each, effort) for each in zip(followed.ports, followed.rhythms, states, strict=True))
-    return Value(followed.inputs, joint.answers, (old, new))
-
-
-def _side(ports: Ports, rhythm: Rhythm, states: list[State], effort: Effort) -> Evidence:
-    """One divider's machine, and its runs from these states."""
+def _side(ports: Ports, rhythm: Rhythm, effort: Effort) -> Evidence:
+    """One divider's machine, and its runs."""
+    answers = rhythm.settling.answers
     whole, _ = settle(
         ports.design,
         ports.clock,
         ports.running,
         ports.output_value,
         effort,
-        ask=single.repeated(rhythm.settling.answers),
+        ask=single.repeated(answers),
     )
-    machine = rhythm.system
-    known = {orbit.start: orbit for orbit in rhythm.orbits}
-    tracks: dict[State, Track] = {}
-    for state in states:
-        place = placed(state, whole, machine)
-        if place not in tracks:
-            orbit = known.get(place) or follow(machine, place, effort)
-            tracks[place] = single.track(orbit)
-    return replace(single.of_machine(machine, whole, rhythm.settling.answers), starts=tuple(tracks.values()))
+    tracks = tuple(single.track(orbit) for orbit in rhythm.orbits)
+    return replace(single.of_machine(rhythm.system, whole, answers), starts=tracks)
 
 
 # -- once both have settled --------------------------------------------------------------------------------

@@ -43,20 +43,20 @@ Object = dict[str, Any]
 
 @dataclass(frozen=True, slots=True)
 class Value:
-    """Both dividers with their inputs held at some values.
-
-    begins   answers to the questions about the states that both start from, side by side
-    sides    evidence on the old divider and on the new one: of their machines, and their runs from these states"""
+    """Both dividers with their inputs held at some values: evidence on each, of its machine and of its runs from the
+    states that both start from."""
 
     inputs: Model
-    begins: tuple[Model | None, ...]
     sides: tuple[Evidence, Evidence]
 
 
 @dataclass(frozen=True, slots=True)
 class Runs:
-    """The runs from the starts, for each value of the shared inputs."""
+    """The runs from the starts, for each value of the shared inputs.
 
+    answers  to the questions about micro-steps and starts of both side by side, in order"""
+
+    answers: tuple[Model | None, ...]
     values: tuple[Value, ...]
 
 
@@ -98,13 +98,14 @@ PairEvidence = Runs | Settled | Both
 def as_object(found: PairEvidence) -> Object:
     """The evidence as dictionaries and lists."""
     if isinstance(found, Runs):
-        return {"kind": "runs", "values": [_value(value) for value in found.values]}
+        values = [_value(value) for value in found.values]
+        return {"kind": "runs", "answers": list(found.answers), "values": values}
     if isinstance(found, Settled):
-        values = [
+        shows = [
             {"inputs": dict(inputs), "old": _shows(sides[0]), "new": _shows(sides[1])}
             for inputs, sides in found.values
         ]
-        return {"kind": "settled", "values": values}
+        return {"kind": "settled", "values": shows}
     shown = found.shown
     said: Object = {"kind": "relations", "lag": found.lag, "answers": list(found.answers)}
     if isinstance(shown, Invariant):
@@ -124,7 +125,7 @@ def as_object(found: PairEvidence) -> Object:
 
 def _value(value: Value) -> Object:
     old, new = (evidence.as_object(side) for side in value.sides)
-    return {"inputs": dict(value.inputs), "begins": list(value.begins), "old": old, "new": new}
+    return {"inputs": dict(value.inputs), "old": old, "new": new}
 
 
 def _shows(side: Shows) -> Object:
@@ -154,8 +155,9 @@ def read(value: Any) -> PairEvidence:
     """The evidence in an object. Raises Malformed."""
     kind = value.get("kind") if isinstance(value, dict) else None
     if kind == "runs":
-        of = fields_of(value, "evidence", "kind values")
-        return Runs(each_of(of["values"], "values", _read_value))
+        of = fields_of(value, "evidence", "kind answers values")
+        answers = each_of(of["answers"], "answers", answer_of)
+        return Runs(answers, each_of(of["values"], "values", _read_value))
     if kind == "settled":
         of = fields_of(value, "evidence", "kind values")
         return Settled(each_of(of["values"], "values", _read_settled))
@@ -170,12 +172,9 @@ def read(value: Any) -> PairEvidence:
 
 
 def _read_value(value: Any, where: str) -> Value:
-    of = fields_of(value, where, "inputs begins old new")
-    return Value(
-        _model(of["inputs"], f"{where}/inputs"),
-        each_of(of["begins"], f"{where}/begins", answer_of),
-        (evidence.read(of["old"]), evidence.read(of["new"])),
-    )
+    of = fields_of(value, where, "inputs old new")
+    sides = evidence.read(of["old"]), evidence.read(of["new"])
+    return Value(_model(of["inputs"], f"{where}/inputs"), sides)
 
 
 def _read_settled(value: Any, where: str) -> tuple[Model, tuple[Shows, Shows]]:

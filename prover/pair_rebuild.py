@@ -6,7 +6,7 @@ that no assignment may fulfil; anything else is `Rejected`. Writing a certificat
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import product
@@ -20,9 +20,9 @@ from prover.effort import Effort, OutOfEffort
 from prover.equality import Invariant
 from prover.errors import InternalError
 from prover.evidence import Evidence
-from prover.joint import Joint, build, starts_of
+from prover.joint import Joint, build, starts_apart
 from prover.pair import SIDES, Pair, Pairing
-from prover.pair_evidence import Both, PairEvidence, Runs, Settled, Value
+from prover.pair_evidence import Both, PairEvidence, Runs, Settled
 from prover.ports import Ports
 from prover.rebuild import Owed, Rejected, Replay
 from prover.rhythm import Rhythm, Start
@@ -82,33 +82,23 @@ def _check_inputs(pair: Pair, stated: Sequence[Model]) -> None:
 
 def _runs(pair: Pair, found: Runs, owed: Owed, effort: Effort) -> Apiece:
     _check_inputs(pair, [value.inputs for value in found.values])
+    ask = Replay(found.answers, "side by side", owed)
+    joint = build(pair, 0, effort, ask.answer, races=False)
+    ask.finish()
     followed = []
     for number, value in enumerate(found.values):
         ports = pair.held_at(value.inputs)
-        states = list(_starts(Pair(*ports, (), pair.scope), value, number, owed, effort))
-        rhythms = [
-            _followed(one, mine, [each[place] for each in states], f"{number}: {side}", owed, effort)
-            for place, (side, one, mine) in enumerate(zip(SIDES, ports, value.sides, strict=True))
-        ]
-        followed.append(Followed(value.inputs, ports, (rhythms[0], rhythms[1])))
-    return Apiece(tuple(followed))
-
-
-def _starts(
-    closed: Pair, value: Value, number: int, owed: Owed, effort: Effort
-) -> Iterator[tuple[Start, Start]]:
-    """The states that both start from, each as a state of its whole divider."""
-    ask = Replay(value.begins, f"{number}: starts", owed)
-    joint = build(closed, 0, effort, ask.answer)
-    ask.finish()
-    for start in joint.starts:
-        for _, state, _ in starts_of(start):
-            values = dict(zip(joint.names, state, strict=True))
-            both = []
-            for side, ports in zip(SIDES, (closed.old, closed.new), strict=True):
-                own = [values[f"{side}.{register.name}"] for register in ports.design.registers]
-                both.append(Start((*own, values[joint.both.clock]), start.cause))
-            yield both[0], both[1]
+        begun = starts_apart(joint, value.inputs)
+        starts = (
+            [Start(state, cause) for cause, state, _ in begun],
+            [Start(state, cause) for cause, _, state in begun],
+        )
+        old, new = (
+            _followed(one, mine, begins, f"{number}: {side}", owed, effort)
+            for side, one, mine, begins in zip(SIDES, ports, value.sides, starts, strict=True)
+        )
+        followed.append(Followed(value.inputs, ports, (old, new)))
+    return Apiece(tuple(followed), joint)
 
 
 def _followed(
