@@ -68,7 +68,7 @@ def rhythm_of(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
 def from_starts(ports: Ports, starts: Sequence[Start], effort: Effort) -> Rhythm:
     """What the engines find out from states of the whole divider alone, with its reset released."""
     system, settling = settle(ports.design, ports.clock, ports.running, ports.output_value, effort)
-    settling = _checked(settling, effort)
+    settling = checked(settling, effort)
     if settling.depth is None:
         why = settling.open or "the micro-steps do not settle"
         return Rhythm(system, settling, "initial", (), (), (), False, None, None, False, open=why)
