@@ -184,7 +184,8 @@ def work(task: Task, say: Callable[[Message], None]) -> None:
                 "prover": identity(),
             }
         )
-        if task.certify:
+        # A certificate speaks of one value of the inputs.
+        if task.certify and not task.spec.each:
             _certify(report, task, say)
     except UserError as error:
         told = error.message, error.where, error.hint

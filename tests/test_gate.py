@@ -477,6 +477,24 @@ def test_without_a_certificate_recheck_judges_again(folder: Path, monkeypatch: p
     assert gate("--recheck")[1]["third"] == ("proved", "rechecked")
 
 
+def test_a_claim_for_each_value_has_no_certificate_and_is_judged_again(folder: Path) -> None:
+    text = """\
+module steps (input clk, input rst, input [1:0] div, output reg tick);
+  reg [1:0] left;
+  always @(posedge clk or posedge rst)
+    if (rst) {left, tick} <= 3'd0;
+    else if (left == 0) {left, tick} <= {div, ~tick};
+    else left <= left - 2'd1;
+endmodule
+"""
+    write(folder, '[divider.steps]\nfiles = "steps.v"\neach = "div"\nratio = "2*(div+1)"\n', steps=text)
+    assert gate()[1] == {"steps": ("proved", "new")}
+    _, found, told = gate()
+    assert found == {"steps": ("proved", "kept")}
+    assert not told["gate"]["dividers"][0]["certified"]
+    assert gate("--recheck")[1] == {"steps": ("proved", "new")}
+
+
 # -- waivers -----------------------------------------------------------------------------------------------
 
 EXCUSED = (
@@ -600,6 +618,15 @@ def test_history_tells_what_changed(folder: Path) -> None:
     assert contents[1] == contents[2] != contents[0]
     (line,) = run("history", str(folder / "counter.v")).stdout.splitlines()[1:]
     assert "counter[N=2] and 2 more" in line
+
+
+def test_history_from_elsewhere(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    gate()
+    told = run("history", "third.v").stdout
+    (folder / "deeper").mkdir()
+    for place, file in (("deeper", "../third.v"), ("..", "made/third.v")):
+        monkeypatch.chdir(folder / place)
+        assert run("history", file).stdout == told
 
 
 def test_history_of_what_is_not_known(folder: Path) -> None:

@@ -7,6 +7,7 @@ from fractions import Fraction
 from pathlib import Path
 
 import pytest
+from cases_format import CASES, read_case
 
 from prover import cli
 from prover.errors import UserError
@@ -190,3 +191,18 @@ def test_the_nearest_manifest_is_in_force(tmp_path: Path, monkeypatch: pytest.Mo
     assert find_manifest(Path()) == Path("../../subharmonic.toml")
     (inner / "subharmonic.toml").write_text(ENTRY)
     assert find_manifest(Path()) == Path("subharmonic.toml")
+
+
+def test_the_manifest_of_the_cases_claims_what_their_heads_state() -> None:
+    """And of one divider every value of its parameter up to 512."""
+    path = CASES / "subharmonic.toml"
+    swept: dict[str, list[int]] = {}
+    for divider in read_manifest(path, cli._manifest_options(), cli._spec_of).dividers:
+        (file,) = divider.files
+        if divider.parameters:
+            swept.setdefault(divider.name.partition("[")[0], []).append(divider.parameters["N"])
+            continue
+        groups = [group for group in read_case(CASES / file).groups if not group.error]
+        proved = [cli._spec_of(group.options) for group in groups if group.verdicts == {"proved"}]
+        assert divider.spec in proved, divider.name
+    assert swept == {"flow_by_any_n": list(range(2, 513))}

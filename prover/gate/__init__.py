@@ -41,8 +41,12 @@ def _own(folder: Path) -> Ledger:
 
 
 def events_of(file: str, path: str | None) -> list[Event]:
-    """What the ledger has on the dividers that the file is part of. Raises UserError where that is nothing."""
-    folder = find_manifest(Path(file).parent).parent
+    """What the ledger has on the dividers that the file is part of. The manifest in force is the working folder's, or
+    else the file's. Raises UserError where that is nothing."""
+    try:
+        folder = find_manifest(Path()).parent
+    except UserError:
+        folder = find_manifest(Path(file).parent).parent
     place = Path(path) if path is not None else folder / FOLDER / "ledger.sqlite"
     if not place.is_file():
         raise UserError(f"there is no ledger {place}", hint="run the gate first")

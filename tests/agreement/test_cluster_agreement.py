@@ -119,6 +119,48 @@ def test_a_cluster_says_what_one_process_says(cluster: Dask, sources: Path) -> N
     assert outcome(started(sources, "--cluster", cluster.address), sources) == here
 
 
+MANIFEST = """\
+[divider.third]
+files = "sources/third_by_include.v"
+ratio = 3
+[divider.ring]
+files = "sources/ring.v"
+ratio = 4
+high = 2
+[divider.broken]
+files = "sources/broken.v"
+ratio = 3
+[divider.sticks]
+files = "sources/sticks.v"
+ratio = 5
+high = 4
+"""
+
+
+def test_a_gate_finds_and_keeps_on_a_cluster_what_it_does_here(cluster: Dask, sources: Path) -> None:
+    for _ in range(2):
+        cluster.add()
+    (sources.parent / "subharmonic.toml").write_text(MANIFEST)
+
+    def gate(*options: str) -> tuple[int, Any, list[Any]]:
+        command = [sys.executable, "-m", "prover", "gate", "--json", "out.json", *options]
+        done = subprocess.run(command, cwd=sources.parent, env=ENVIRONMENT, capture_output=True, check=False)
+        told = json.loads((sources.parent / "out.json").read_text())
+        for report in told["reports"]:
+            del report["seconds"]
+        rows = told.pop("gate")["dividers"]
+        return done.returncode, told, [(row["name"], row["verdict"], row["source"]) for row in rows]
+
+    here = gate("--workers", "1", "--ledger", "here.sqlite")
+    assert here[0] == 2
+    assert gate("--cluster", cluster.address) == here
+    # What the cluster found is kept, and its certificates hold here, and the other way round.
+    rechecked = gate("--recheck", "--workers", "1")
+    assert rechecked[:2] == here[:2]
+    assert [source for *_, source in rechecked[2]] == ["rechecked", "rechecked", "new", "rechecked"]
+    assert gate("--recheck", "--cluster", cluster.address, "--ledger", "here.sqlite") == rechecked
+
+
 def test_a_worker_killed_in_the_middle_changes_nothing(cluster: Dask, sources: Path) -> None:
     here = outcome(started(sources, "--workers", "1"), sources)
     victim = cluster.add()
