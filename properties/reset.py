@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from fractions import Fraction
 
+from prover.facts import number
 from prover.findings import Counterexample, Fact, Finding, Obligation
 from prover.release import (
     UNITS,
@@ -124,7 +125,7 @@ def _told(pulse: Pulse, goal: Goal) -> str:
 
 
 def _half_cycles(units: int) -> str:
-    return f"{Fraction(units, UNITS)}" if units % UNITS == 0 else f"{units / UNITS:g}"
+    return number(Fraction(units, UNITS))
 
 
 def _short_pulse(release: Release, goal: Goal) -> Broken | None:
@@ -278,7 +279,7 @@ def _facts(release: Release) -> dict[str, Fact]:
     if held.states:
         low, high = held.needs
         facts["shortest_reset_half_cycles"] = held.half_cycles
-        facts["shortest_reset_input_cycles"] = _number(Fraction(held.half_cycles, 2))
+        facts["shortest_reset_input_cycles"] = number(Fraction(held.half_cycles, 2))
         facts["shortest_reset_by_clock_level"] = {"low": low, "high": high}
         facts["shortest_reset_is_exact"] = held.exact
     wheres = {register.name: register.where for register in ports.design.registers}
@@ -308,9 +309,5 @@ def _first_edges_text(freed: Freed) -> str:
     return f"the output first {' and '.join(told)}" if told else "the output never changes"
 
 
-def _count(number: int, noun: str) -> str:
-    return f"{number} {noun}{'s' * (number != 1)}"
-
-
-def _number(value: Fraction) -> str:
-    return str(value.numerator) if value.denominator == 1 else f"{float(value):g}"
+def _count(count: int, noun: str) -> str:
+    return f"{count} {noun}{'s' * (count != 1)}"

@@ -141,7 +141,10 @@ def number(value: Fraction) -> str:
     """A fraction as people read it: 3, 2.5, 1/3."""
     if value.denominator == 1:
         return str(value.numerator)
-    return f"{float(value):g}" if value.denominator in (2, 4, 5, 8, 10) else str(value)
+    if value.denominator not in (2, 4, 5, 8, 10):
+        return str(value)
+    whole, part = divmod(abs(value.numerator) * 1000 // value.denominator, 1000)
+    return f"{'-' * (value < 0)}{whole}.{part:03}".rstrip("0")
 
 
 def seconds(value: Fraction) -> str:

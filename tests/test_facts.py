@@ -22,6 +22,7 @@ from prover.depth import depths
 from prover.design import Design, Edge, Force, Register, Signal
 from prover.effort import Effort
 from prover.errors import Where
+from prover.facts import number
 from prover.findings import Fact
 from prover.settling import settle
 from prover.system import Inputs
@@ -112,6 +113,16 @@ def test_shortest_pulses_are_those_of_the_wave_or_of_the_start(tmp_path: Path) -
     # A quotient of 16/3 by carries: high for 2 half-cycles, and low for 8 or 10.
     facts = facts_of("published/accumulator_3_of_16.v", "16/3", mean=True)
     assert (facts["shortest_high_half_cycles"], facts["shortest_low_half_cycles"]) == (2, 8)
+
+
+def test_numbers_are_written_out_however_large() -> None:
+    written = {
+        Fraction(5, 2): "2.5",
+        Fraction(39_859_864_331_073, 2): "19929932165536.5",
+        Fraction(1, 3): "1/3",
+    }
+    written |= {Fraction(7): "7", Fraction(1, 8): "0.125", Fraction(-3, 10): "-0.3", Fraction(9, 4): "2.25"}
+    assert {value: number(value) for value in written} == written
 
 
 def test_the_depth_of_registers_in_the_clock_chain() -> None:
