@@ -11,6 +11,7 @@ import os
 import sys
 import threading
 from collections.abc import Callable, Iterable, Iterator, Sequence
+from contextlib import closing
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from enum import IntEnum
@@ -441,13 +442,12 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
     targets = Targets(**named, testbench=options["testbench_folder"])
     _check_folder(targets)
     crew = _crew(options["workers"], options["cluster"])
-    with Progress(sys.stderr) as progress:
-        from prover import gate as gates
-        from prover.report import gate as told
+    from prover import gate as gates
+    from prover.report import gate as told
 
-        listed = gates.read(manifest, _manifest_options(), _spec_of)
-        check_targets(targets.paths(), [str(listed.path)])
-        kept = gates.opened(listed, ledger)
+    listed = gates.read(manifest, _manifest_options(), _spec_of)
+    check_targets(targets.paths(), [str(listed.path)])
+    with Progress(sys.stderr) as progress, closing(gates.opened(listed, ledger)) as kept:
         run = gates.run_gate(
             listed, kept, crew, afresh=options["afresh"], recheck=options["recheck"], tell=progress.tell
         )

@@ -287,7 +287,14 @@ def test_afresh_judges_all_again(folder: Path) -> None:
 
 def test_another_program_judges_all_again(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     gate()
+    with monkeypatch.context() as patched:
+        patched.setattr("prover.gate.runner.identity", lambda: "0.0.0+other")
+        status, found, told = gate()
+    # What judged is the program as it is, so nothing is kept for the other one.
+    assert (status, set(found.values())) == (2, {("error", "new")})
+    assert "this program was changed while the gate was running" in told["errors"][0]["message"]
     monkeypatch.setattr("prover.gate.runner.identity", lambda: "0.0.0+other")
+    monkeypatch.setattr("prover.task.identity", lambda: "0.0.0+other")
     assert gate()[1] == NEW
 
 

@@ -273,10 +273,16 @@ class _Gate:
             return
         if not came.report.findings:
             raise InternalError(f"{row.divider.name}: nothing was claimed, and nothing can be kept")
-        if answer.content != content.digest:
-            changed = UserError("a source was changed while the gate was running", hint="run the gate again")
-            row.came = Outcome(row.files, error=changed, title=row.divider.name)
-            return
+        for what, is_same in (
+            ("a source", answer.content == content.digest),
+            ("this program", answer.prover == identity()),
+        ):
+            if not is_same:
+                changed = UserError(
+                    f"{what} was changed while the gate was running", hint="run the gate again"
+                )
+                row.came = Outcome(row.files, error=changed, title=row.divider.name)
+                return
         row.report = json.dumps(answer.report)
         row.kept = Kept(
             key=row.key,
@@ -297,6 +303,8 @@ class _Gate:
             except UserError as error:
                 # The other verdicts are found all the same: they are told, and this is told after them.
                 self.unkept = error
+            except InternalError as fault:
+                row.came = Outcome(row.files, fault=str(fault), title=row.divider.name)
 
     def _rechecked(self, row: Row, answer: Answer) -> None:
         """What came of checking a kept verdict's certificate again."""
