@@ -3,23 +3,37 @@
 A property is a module with a NAME and a function `judge(rhythm, spec) -> Finding`, or None for what the spec does
 not claim, and for the reset of a divider that has none; a function `claim(spec) -> str` gives its claim where that
 holds the spec's numbers. It only reads the rhythm and judges it: to add one, write a file, name it here, and add a
-case of the same name.
+case of the same name. Those of inputs that move are judged where there are such, from
+`Moves` in place of the rhythm.
 """
 
 from __future__ import annotations
 
-from properties import glitch_free, high_time, no_stuck, ratio, recovery, reset, settling
+from properties import (
+    enable,
+    glitch_free,
+    high_time,
+    no_stuck,
+    ratio,
+    ratio_change,
+    recovery,
+    reset,
+    settling,
+)
 from prover.findings import Finding, with_waivers
 from prover.rhythm import Rhythm
 from prover.spec import Spec
 
 ORDER = (ratio, high_time, no_stuck, recovery, settling, glitch_free, reset)
 NAMES = tuple(module.NAME for module in ORDER)
+WHILE_MOVING = (ratio_change, enable)
+EVERY = (*ORDER, *WHILE_MOVING)
+ALL = tuple(module.NAME for module in EVERY)
 
 
 def claim(name: str, spec: Spec) -> str:
     """What a property claims, with formulas as they are written; "" where it says none."""
-    module = ORDER[NAMES.index(name)]
+    module = EVERY[ALL.index(name)]
     return str(module.claim(spec)) if hasattr(module, "claim") else ""
 
 

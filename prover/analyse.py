@@ -524,9 +524,11 @@ def _by_cover(rhythm: Rhythm, goal: Goal | None, effort: Effort) -> Rhythm:
     exact = found.slowest is not None
     if goal and exact and found.slowest is not None and found.worst > 0:
         run = follow(system, found.slowest, effort)
-        if certificate.good_from(run, found.worst - 1, goal) or not run.closed:
+        if run.closed and certificate.good_from(run, found.worst - 1, goal):
             raise InternalError("a start state that does not need as long as it was found to")
-    worst = Recovery(found.worst, exact, found.slowest)
+        # Where the effort does not suffice to follow it, nothing shows that it needs so long.
+        exact = run.closed
+    worst = Recovery(found.worst, exact, found.slowest if exact else None)
     # Every state gets on one of the lines, so their loops are all there are.
     return replace(
         rhythm,

@@ -76,18 +76,22 @@ def compare(old: Files, new: Files, pairing: Pairing | None = None, tell: Tell |
 
 
 def _report(files: Files, spec: Spec, tell: Tell | None) -> Report:
-    from properties import NAMES
+    from properties import ALL
 
     began = time.monotonic()
-    unknown = [name for name in spec.waivers if name not in NAMES]
+    unknown = [name for name in spec.waivers if name not in ALL]
     if unknown:
         raise UserError(
-            f"--waive {unknown[0]}: no such property", hint=f"the properties are {', '.join(NAMES)}"
+            f"--waive {unknown[0]}: no such property", hint=f"the properties are {', '.join(ALL)}"
         )
     effort = Effort(spec.effort, tell)
     effort.say("reading the sources")
     design = read(files, spec)
-    if spec.each or spec.where or spec.ratio_formula is not None or spec.high_formula is not None:
+    if spec.moving:
+        from prover import questions
+
+        report = questions.report(design, spec, effort, _judged)
+    elif spec.each or spec.where or spec.ratio_formula is not None or spec.high_formula is not None:
         from prover import each
 
         report = each.report(design, spec, effort, _judged)

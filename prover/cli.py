@@ -210,6 +210,9 @@ CLAIMING = (
         "--each", multiple=True, metavar="PORT[=VALUES]", help="Claim it for each value: div=1..15."
     ),
     click.option("--where", multiple=True, metavar="CONDITION", help="Of these values only those: 'B >= A'."),
+    click.option(
+        "--moving", multiple=True, metavar="PORT[=VALUES]", help="The input may move between edges."
+    ),
     click.option("--within", metavar="K", help="Limit on the recovery, in half-cycles."),
     click.option("--reset-cycles", metavar="K", help="Input cycles for which reset is held."),
     click.option(
@@ -581,7 +584,7 @@ def _claimed(options: dict[str, Any]) -> dict[str, Any]:
     """The ratio and the high time, each a number or a formula, and the values that they are claimed for."""
     from prover import formula
 
-    claimed: dict[str, Any] = {"each": {}, "mean": bool(options.get("mean"))}
+    claimed: dict[str, Any] = {"each": {}, "moving": {}, "mean": bool(options.get("mean"))}
     ratio, high = options.get("ratio"), options.get("high")
     if ratio is not None and PLAIN_RATIO.fullmatch(ratio):
         claimed["ratio"] = read_ratio(ratio)
@@ -591,11 +594,12 @@ def _claimed(options: dict[str, Any]) -> dict[str, Any]:
         claimed["high"] = _number(options, "high")
     elif high is not None:
         claimed["high_formula"] = formula.read(high, "--high")
-    for text in options.get("each", ()):
-        name, ranges = read_each(text)
-        if name in claimed["each"]:
-            raise UserError(f"--each {name} is given twice", hint="give it once")
-        claimed["each"][name] = ranges
+    for key in ("each", "moving"):
+        for text in options.get(key, ()):
+            name, ranges = read_each(text, f"--{key}")
+            if name in claimed[key]:
+                raise UserError(f"--{key} {name} is given twice", hint="give it once")
+            claimed[key][name] = ranges
     claimed["where"] = tuple(formula.read(text, "--where") for text in options.get("where", ()))
     return claimed
 

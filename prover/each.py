@@ -26,7 +26,7 @@ from prover.domain import (
     rigid,
     values_text,
 )
-from prover.effort import Effort
+from prover.effort import Effort, OutOfEffort
 from prover.errors import Where
 from prover.findings import Fact, Finding, Obligation, Report, Verdict, overall, with_waivers
 from prover.ports import Ports, recognise
@@ -128,7 +128,13 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
         effort.doing = f"judging {values_text(each)}"
         # What a value leaves of its share goes to the others.
         share = effort.left / max(1, (most - number) / 8)
-        found.add(each, judge(design, claimed_at(spec, {**fixed, **each}, each), effort.share(share)))
+        try:
+            found.add(each, judge(design, claimed_at(spec, {**fixed, **each}, each), effort.share(share)))
+        except OutOfEffort:
+            # What was found out about the values before stands.
+            if not found.tried:
+                raise
+            break
         if effort.left <= 0:
             break
     return found.report(count, why)

@@ -90,6 +90,7 @@ class Report:
     assumptions  the model that the verdicts hold under, a sentence each
     notes        remarks on the sources that accompany the verdict
     seconds      how long it took
+    standing     where inputs move: the report with them held, on which all rests that is not about moves
     each         for a claim on each value of some inputs: what it covers. Rhythm and facts are then about one value
     """
 
@@ -102,6 +103,7 @@ class Report:
     notes: tuple[str, ...]
     seconds: float
     each: Each | None = None
+    standing: Report | None = field(default=None, repr=False)
 
     @property
     def verdict(self) -> Verdict:

@@ -162,11 +162,11 @@ def basins(graph: Graph, effort: Effort, goal: Goal | None) -> Basins:
         members.append(states)
         if len(loops) % 4096 == 0:
             effort.check()
-    entry, distance = _walk_to(after, cyclic, graph.system.bits)
+    entry, distance = walk_to(after, cyclic, graph.system.bits)
     return Basins(tuple(loops), tuple(members), entry, distance, on_loop, position)
 
 
-def _walk_to(after: np.ndarray, target: np.ndarray, bits: int) -> tuple[np.ndarray, np.ndarray]:
+def walk_to(after: np.ndarray, target: np.ndarray, bits: int) -> tuple[np.ndarray, np.ndarray]:
     """For each state the first target state on its way (or wherever it is after 2^(bits+1) steps), and how
     many half-cycles that takes."""
     import numpy as np
@@ -216,16 +216,23 @@ def ranks(graph: Graph, found: Basins, goal: Goal) -> Ranks:
     phase = np.where(entered >= 0, (entered - found.distance) % period, -1)
     # A state is good if its own output and that of all states behind it fit the phase.
     fits_here = (phase >= 0) & (graph.output == level_at(goal, phase))
-    bad = ~fits_here
-    # Half-cycles until the last misfit is behind: carried backwards along the trees by doubling.
-    last = np.where(bad & (phase >= 0), 1, 0).astype(np.int64)
+    last = last_misfit(after, ~fits_here & (phase >= 0), graph.system.bits)
+    rank = np.where(phase >= 0, last, -1)
+    return Ranks(np.where(rank == 0, phase, -1), rank)
+
+
+def last_misfit(after: np.ndarray, misfit: np.ndarray, bits: int) -> np.ndarray:
+    """Half-cycles until the last misfit on each state's way is behind, where there is none on a loop: carried
+    backwards along the trees by doubling."""
+    import numpy as np
+
+    last = np.where(misfit, 1, 0).astype(np.int64)
     ahead, jumped = after, 1
-    for _ in range(graph.system.bits + 1):
+    for _ in range(bits + 1):
         beyond = last[ahead]
         last = np.where(beyond > 0, beyond + jumped, last)
         ahead, jumped = ahead[ahead], jumped * 2
-    rank = np.where(phase >= 0, last, -1)
-    return Ranks(np.where(rank == 0, phase, -1), rank)
+    return last
 
 
 def census(graph: Graph, found: Basins, table: Ranks | None) -> Census:

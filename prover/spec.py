@@ -36,6 +36,7 @@ class Spec:
     ratio_formula, high_formula  the same as formulas, which take the place of the numbers until these are computed
     each          inputs for each of whose values the claim is made; None: all values of the port
     where         conditions on these values: the claim is made where none of them is 0
+    moving        inputs that may move between any two edges, and the values that they take; None: all of the port
     module        top module; None if the sources leave one choice
     clock, reset, output  ports by name; reset may end in `=0` or `=1`, its active level. None: by use
     parameters, holds, defines  name to value or text
@@ -56,6 +57,7 @@ class Spec:
     high_formula: Formula | None = None
     each: Mapping[str, Ranges | None] = field(default_factory=dict)
     where: tuple[Formula, ...] = ()
+    moving: Mapping[str, Ranges | None] = field(default_factory=dict)
     module: str | None = None
     clock: str | None = None
     reset: str | None = None
@@ -152,19 +154,23 @@ def read_ratio(text: str) -> Fraction:
         raise UserError(f"ratio '{text}' is not a number", hint="such as 3, 2.5 or 5/2") from None
 
 
-def read_each(text: str) -> tuple[str, Ranges | None]:
+def read_each(text: str, option: str = "--each") -> tuple[str, Ranges | None]:
     """An input and the values that it takes: div, div=1..15, sel=0,2,8..15."""
+    hint = EACH_HINT.replace("--each", option)
     name, equals, values = text.partition("=")
     if not name.strip() or (equals and not values.strip()):
-        raise UserError(f"--each '{text}' names no input and no values", hint=EACH_HINT)
+        raise UserError(f"{option} '{text}' names no input and no values", hint=hint)
     if not equals:
         return name.strip(), None
     ranges: list[tuple[int, int]] = []
     for part in values.split(","):
         low, dots, high = part.partition("..")
-        ends = (read_number(low, f"--each {text}:"), read_number(high if dots else low, f"--each {text}:"))
+        ends = (
+            read_number(low, f"{option} {text}:"),
+            read_number(high if dots else low, f"{option} {text}:"),
+        )
         if not 0 <= ends[0] <= ends[1]:
-            raise UserError(f"--each {text}: '{part}' holds no values", hint=EACH_HINT)
+            raise UserError(f"{option} {text}: '{part}' holds no values", hint=hint)
         ranges.append(ends)
     joined: list[tuple[int, int]] = []
     for low_end, high_end in sorted(ranges):

@@ -16,6 +16,7 @@ from pathlib import Path
 CASES = Path(__file__).parents[1] / "cases"
 FOLDERS = ("gauge", "faulty", "published", "refused")
 PROPERTIES = ("ratio", "high-time", "no-stuck", "recovery", "settling", "glitch-free", "reset")
+WHILE_MOVING = ("ratio-change", "enable")
 VERDICTS = {"proved", "refuted", "open"}
 
 
@@ -43,6 +44,19 @@ class StatedWave:
     high: int | None = None
 
 
+@dataclass(frozen=True)
+class StatedMoves:
+    """What a group states of a property of inputs that move: `back` are the half-cycles after the last move until the
+    ratio holds, `parked` the levels at which the output comes to stay, `run` the half-cycles of the shortest run that
+    refutes."""
+
+    verdicts: frozenset[str]
+    back: int | None = None
+    exact: bool = False
+    parked: tuple[int, ...] = ()
+    run: int | None = None
+
+
 @dataclass
 class Group:
     """One run of `check` on a case, and what it has to say. `error` are words of the message of a refusal, `line` the
@@ -51,6 +65,7 @@ class Group:
     options: list[str]
     verdicts: frozenset[str] = frozenset()
     properties: dict[str, Stated] = field(default_factory=dict)
+    moves: dict[str, StatedMoves] = field(default_factory=dict)
     loops: int | None = None
     false_loops: int | None = None
     stuck: bool = False
@@ -154,6 +169,8 @@ def _state(group: Group, key: str, value: str) -> None:
     """Take one line into its group. Raises ValueError or KeyError for what is not known."""
     if key in PROPERTIES:
         group.properties[key] = _property(value)
+    elif key in WHILE_MOVING:
+        group.moves[key] = _moves(value)
     elif key == "verdict":
         group.verdicts = _verdicts(value)
     elif key == "loops":
@@ -177,6 +194,21 @@ def _state(group: Group, key: str, value: str) -> None:
         group.notes.append((int(line), words))
     else:
         raise KeyError(key)
+
+
+def _moves(value: str) -> StatedMoves:
+    """Such as `proved, back 30, exact`, `proved, back 6, exact, parked 0` or `refuted, run 9`."""
+    verdict, *parts = value.split(", ")
+    exact = "exact" in parts
+    numbers: dict[str, list[int]] = {}
+    for part in parts:
+        if part != "exact":
+            word, number = part.split(" ")
+            numbers.setdefault(word, []).append(int(number))
+    if not set(numbers) <= {"back", "parked", "run"}:
+        raise ValueError(value)
+    (back,), (run,) = numbers.get("back", [None]), numbers.get("run", [None])
+    return StatedMoves(_verdicts(verdict), back, exact, tuple(numbers.get("parked", ())), run)
 
 
 def _verdicts(value: str) -> frozenset[str]:

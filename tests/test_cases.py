@@ -13,7 +13,17 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from cases_format import CASES, FOLDERS, PROPERTIES, Case, Group, Stated, StatedWave, cases
+from cases_format import (
+    CASES,
+    FOLDERS,
+    PROPERTIES,
+    Case,
+    Group,
+    Stated,
+    StatedMoves,
+    StatedWave,
+    cases,
+)
 from click.testing import CliRunner, Result
 from pages import page
 
@@ -46,7 +56,7 @@ def test_a_case_is_judged_as_it_states(case: Case, group: Group, tmp_path: Path)
     unclaimed = {"high-time"} if "--mean" in group.options and "--high" not in group.options else set()
     unclaimed |= {"reset"} if report["design"]["reset"] is None else set()
     judged = tuple(name for name in PROPERTIES if name not in unclaimed)
-    assert tuple(found) == judged
+    assert tuple(found) == (*judged, *group.moves)
     shown = report["each"]["shown"] if report["each"] else {}
     assert ", ".join(f"{name}={value}" for name, value in shown.items()) == group.at
     for line, words in group.notes:
@@ -58,9 +68,11 @@ def test_a_case_is_judged_as_it_states(case: Case, group: Group, tmp_path: Path)
         assert found["settling"]["verdict"] == "refuted"
         assert {found[name]["verdict"] for name in judged if name != "settling"} == {"open"}
         return
-    assert tuple(group.properties) == tuple(found)
+    assert (*group.properties, *group.moves) == tuple(found)
     for name, stated in group.properties.items():
         check_property(found[name], stated)
+    for name, moves in group.moves.items():
+        check_moves(found[name], moves)
     check_measured(report["measured"], found, group)
 
 
@@ -77,6 +89,15 @@ def check_property(found: dict[str, Any], stated: Stated) -> None:
     if verdict != "open" and found["name"] == "recovery":
         assert facts["worst_half_cycles"] == stated.worst
         assert facts["exact"] == stated.exact
+
+
+def check_moves(found: dict[str, Any], stated: StatedMoves) -> None:
+    verdict, facts, trace = found["verdict"], found["facts"], found.get("trace")
+    assert verdict in stated.verdicts, found
+    assert (trace is None) == (verdict != "refuted")
+    assert (trace["rests"][-1]["half_cycle"] + 1 if trace else None) == stated.run
+    assert (facts.get("back_half_cycles"), facts.get("exact", False)) == (stated.back, stated.exact)
+    assert tuple(facts.get("parked", ())) == stated.parked
 
 
 def check_measured(measured: dict[str, Any], found: dict[str, Any], group: Group) -> None:

@@ -100,6 +100,7 @@ CONTRACT = closed(
                 "within": NUMBER,
             },
             "reset_cycles",
+            "moving",
         ),
         "measured": closed(
             {
@@ -190,7 +191,7 @@ def test_the_figures_of_a_third(tmp_path: Path) -> None:
     report = json.loads(render(checked(tmp_path, BY_3, "3", fin=Fraction(50_000_000))))
     assert report["verdict"] == "proved"
     claim = {"ratio": "3", "mean": False, "period_half_cycles": 6, "high_half_cycles": 3}
-    assert report["spec"] == {**claim, "within": None, "reset_cycles": None}
+    assert report["spec"] == {**claim, "within": None, "reset_cycles": None, "moving": None}
     reset = report["measured"]["from_reset"]
     assert (reset["period_half_cycles"], reset["high_half_cycles"]) == (6, 3)
     assert reset["wave"] == [[1, 3], [0, 3]]

@@ -17,7 +17,7 @@ from click.testing import CliRunner, Result
 from small import toggle
 from texts import BY_3, RING, SECOND, SPINS, STICKS_AT_7, checked, written
 
-from properties import NAMES
+from properties import ALL, NAMES
 from prover import Spec, check, cli
 from prover.errors import UserError, Where
 from prover.expr import var
@@ -116,7 +116,7 @@ def test_a_result_is_what_the_verdict_is(tmp_path: Path) -> None:
         meant = {"proved": "pass", "refuted": "fail", "open": "open"}
         assert verdicts(made) == {f.name: meant[f.verdict] for f in outcome.report.findings}, name
         unclaimed = {r["ruleId"] for r in made["results"] if r["kind"] == "notApplicable"}
-        assert unclaimed == set(NAMES) - set(verdicts(made))
+        assert unclaimed == set(ALL) - set(verdicts(made))
         waived = {r["ruleId"]: r["suppressions"] for r in made["results"] if "suppressions" in r}
         assert {name: each[0]["justification"] for name, each in waived.items()} == {
             f.name: f.waived for f in outcome.report.findings if f.waived is not None

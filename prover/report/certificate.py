@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING, Any
 from prover import evidence, rebuild
 from prover import expr as e
 from prover.effort import Effort
-from prover.errors import InternalError
+from prover.errors import InternalError, UserError
 from prover.evidence import Evidence
 from prover.findings import Finding, Report, overall
 from prover.ports import Ports
@@ -61,6 +61,12 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
     from properties import judge_all
     from prover.collect import collect
 
+    standing = report.standing or report
+    if standing.each is not None:
+        raise UserError("--certificate while the ratio moves", hint="check one value at a time, with --hold")
+    # What inputs that move do rests on evidence that is not written.
+    moved = tuple(f.name for f in report.findings[len(standing.findings) :])
+    report = standing
     found = collect(report, effort)
     try:
         made = rebuild.rebuild(report.ports, report.spec, found, Effort(math.inf))
@@ -76,7 +82,7 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
                 )
             left_open.append(ours.name)
     subject = subject_of(report, files)
-    return Certificate(render(document(subject, report.ports, found, made, findings)), tuple(left_open))
+    return Certificate(render(document(subject, report.ports, found, made, findings)), (*left_open, *moved))
 
 
 def subject_of(report: Report, files: Sequence[str | Path]) -> Subject:

@@ -87,6 +87,8 @@ def _spec(report: Report) -> Object:
         "period_half_cycles": spec.period if single and not spec.mean else None,
         "high_half_cycles": (spec.high if spec.mean else spec.high_half_cycles) if single else None,
         "within": spec.within,
+        "moving": {name: ranges and [list(ends) for ends in ranges] for name, ranges in spec.moving.items()}
+        or None,
         "reset_cycles": spec.reset_cycles,
     }
 

@@ -27,7 +27,7 @@ from pathlib import Path
 from typing import Any
 from urllib.parse import quote
 
-from properties import ORDER
+from properties import EVERY, NAMES
 from prover import __version__
 from prover import expr as e
 from prover.arrival import Glitch
@@ -79,7 +79,7 @@ class Log:
 
     def __init__(self, found: Sequence[Outcome]) -> None:
         self.found = found
-        self.rules = [module.NAME for module in ORDER] + [MEASURED]
+        self.rules = [module.NAME for module in EVERY] + [MEASURED]
         self.artifacts: dict[str, Object] = {}
         self.named: dict[str, str] = {}
         """The path of each file by the name that places in it bear."""
@@ -99,7 +99,7 @@ class Log:
                     self._notification("note", note.message, note.where) for note in report.ports.design.notes
                 ]
             elif outcome.open:
-                results += [self._left_open(name, outcome) for name in self.rules if name != MEASURED]
+                results += [self._left_open(name, outcome) for name in NAMES]
             else:
                 notes.append(self._failure(outcome))
         readable = all(outcome.error is None and not outcome.fault for outcome in self.found)
@@ -114,7 +114,7 @@ class Log:
         return {"$schema": SCHEMA, "version": "2.1.0", "runs": [run]}
 
     def _driver(self) -> Object:
-        rules = [_rule(module.NAME, described(module), "error") for module in ORDER]
+        rules = [_rule(module.NAME, described(module), "error") for module in EVERY]
         rules.append(_rule(MEASURED, "the wave that the divider makes; nothing is claimed of it", "none"))
         return {
             "name": "Subharmonic",

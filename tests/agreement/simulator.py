@@ -249,11 +249,12 @@ def _simulate(bench: Bench, text: str, words: Sequence[int], timeout_seconds: fl
         (place / "divider.v").write_text(divider + "\n", encoding="utf-8", errors="surrogateescape")
         (place / "starts.hex").write_text("\n".join(f"{word:x}" for word in words) + "\n")
         compiler = ["iverilog", f"-g{bench.language}", "-s", "agreement_bench", "-o", "bench.vvp", *options]
-        _call([*compiler, "bench.v", "divider.v"], place, timeout_seconds)
-        return _call(["vvp", "-n", "bench.vvp"], place, timeout_seconds)
+        call([*compiler, "bench.v", "divider.v"], place, timeout_seconds)
+        return call(["vvp", "-n", "bench.vvp"], place, timeout_seconds)
 
 
-def _call(command: Sequence[str], place: Path, timeout_seconds: float) -> str:
+def call(command: Sequence[str], place: Path, timeout_seconds: float) -> str:
+    """What a command prints, run in a folder. Raises SimulatorError where it fails or takes too long."""
     try:
         done = subprocess.run(
             command, cwd=place, capture_output=True, text=True, timeout=timeout_seconds, check=False

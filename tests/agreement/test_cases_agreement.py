@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import shlex
 from collections.abc import Mapping
+from dataclasses import replace
 from fractions import Fraction
 from pathlib import Path
 from typing import Any
@@ -20,7 +21,7 @@ from agreement.simulator import Bench, Reset, SimulatorError, Start
 from agreement.stepping import differences, power_up_states, simulated_registers
 from cases_format import Case, Group, cases
 
-from prover import cli
+from prover import cli, questions
 from prover.api import check, read
 from prover.domain import Domain, claimed_at
 from prover.errors import UserError
@@ -95,7 +96,14 @@ def test_the_simulator_steps_and_recovers_as_the_verdict_says(case: Case, group:
 
 
 def in_numbers(case: Case, spec: Spec) -> list[Spec]:
-    """The claim itself; of a claim for each value of some inputs, those at the first, a middle and the last one."""
+    """The claim itself; of a claim for each value of some inputs, those at the first, a middle and the last one.
+    Inputs that move stand still here: an enable at 1, those of the ratio as with --each."""
+    if spec.moving:
+        spec = questions.named_ports(read([case.path], spec), spec)
+    formula = spec.ratio_formula
+    varying = {n: v for n, v in spec.moving.items() if formula is not None and n in formula.names}
+    enables = {name: 1 for name in spec.moving if name not in varying}
+    spec = replace(spec, moving={}, each={**spec.each, **varying}, holds={**spec.holds, **enables})
     if not spec.each:
         return [spec]
     design = read([case.path], spec)

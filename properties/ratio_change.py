@@ -1,0 +1,29 @@
+"""ratio-change: while its inputs move, no pulse is shorter or longer than nominal ones; then the last ratio holds."""
+
+from __future__ import annotations
+
+from prover.findings import Fact, Finding
+from prover.moves import Moves
+from prover.spec import Spec
+
+NAME = "ratio-change"
+
+
+def judge(found: Moves, spec: Spec) -> Finding:
+    """Every pulse of every run lies between the shortest and the longest nominal one of its level, among the values
+    that the inputs have had so far; some half-cycles after the last move the wave is that of the last value."""
+    names = " and ".join(found.question.moving)
+    claim = (
+        f"however {names} moves, no pulse is shorter than the shortest or longer than the longest nominal one of the "
+        "values so far, and the last ratio comes to hold"
+    )
+    facts: dict[str, Fact] = {"inputs": list(found.question.moving)}
+    if found.trace is not None:
+        return Finding(NAME, "refuted", claim, found.trace.text, found.method, facts=facts, trace=found.trace)
+    if not found.proved or found.back is None:
+        return Finding(NAME, "open", claim, found.open, found.method, facts=facts)
+    facts |= {"back_half_cycles": found.back, "exact": found.exact}
+    word = "exactly" if found.exact else "at most"
+    back = f"the new ratio holds {word} {found.back} half-cycles after the last move"
+    says = f"no pulse is too short or too long; {back}"
+    return Finding(NAME, "proved", claim, says, found.method, f"{found.back} half-cycles", facts)

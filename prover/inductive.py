@@ -1,0 +1,113 @@
+"""The largest inductive subset of candidate lines (Houdini: Flanagan and Leino, FME 2001), and what of it is needed.
+
+All candidates are assumed before a step; whatever a counterexample breaks after it is dropped, until there is none.
+The order does not matter: there is one largest subset. If under it nothing is broken, the claim is proved.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from prover import expr as e
+from prover.effort import Effort
+from prover.expr import Expr
+from prover.solve import find
+from prover.watch import Line, Watch
+
+SOON = 2000
+"""Milliseconds for a question whose answer only makes a proof shorter."""
+
+
+def proof(system: Watch, lines: Sequence[Line], effort: Effort) -> tuple[Line, ...] | None:
+    """Lines from which the claim follows, or None where the candidates do not suffice."""
+    effort.say(f"pruning {len(lines)} candidates for invariants")
+    asked = _Steps(system, _at_begins(system, lines, effort), effort)
+    left = asked.largest()
+    if find(e.conj([*asked.before(left), system.allowed, system.broken]), effort) is not None:
+        return None
+    return tuple(asked.lines[i] for i in left)
+
+
+def shortened(system: Watch, lines: Sequence[Line], effort: Effort) -> tuple[Line, ...]:
+    """Of lines from which a claim follows those that it takes, as far as that is found out soon."""
+    asked = _Steps(system, lines, effort)
+    return tuple(lines[i] for i in asked.needed(range(len(lines))))
+
+
+def _at_begins(system: Watch, lines: Sequence[Line], effort: Effort) -> list[Line]:
+    """The lines that hold wherever runs begin."""
+    widths = dict(system.variables)
+    left = list(lines)
+    for values, given in system.begins:
+        there = dict(zip(system.names, values, strict=True))
+        parts = dict(zip(left, e.substitute([line.expr(widths) for line in left], there), strict=True))
+        while True:
+            model = find(e.bvand(given, e.bvnot(e.conj(parts[line] for line in left))), effort)
+            if model is None:
+                break
+            full = {v.name: 0 for v in e.variables([given, *parts.values()])} | model
+            kept = dict(zip(left, e.evaluate([parts[line] for line in left], full), strict=True))
+            left = [line for line in left if kept[line]]
+    return left
+
+
+class _Steps:
+    """Questions about one step from where lines hold."""
+
+    def __init__(self, system: Watch, lines: Sequence[Line], effort: Effort) -> None:
+        self.system, self.effort, self.lines = system, effort, lines
+        widths = dict(system.variables)
+        self.now = [line.expr(widths) for line in lines]
+        self.then = e.substitute(self.now, dict(zip(system.names, system.step, strict=True)))
+        self.inputs = [name for name, _ in (*system.variables, *system.moves, *system.machine.choices)]
+        self.evaluate = e.compile_step(self.then, self.inputs)
+
+    def before(self, left: Sequence[int]) -> list[Expr]:
+        """What is assumed before a step."""
+        return [self.system.within, *(self.now[i] for i in left)]
+
+    def largest(self) -> list[int]:
+        """The largest subset of the lines that every step keeps, by number."""
+        left = list(range(len(self.lines)))
+        kept: list[int] = []
+        # A line at a time: one question about all of them together is far harder than all about one.
+        while len(kept) < len(left):
+            number = next(i for i in left if i not in kept)
+            goal = [*self.before(left), self.system.allowed, e.bvnot(self.then[number])]
+            model = find(e.conj(goal), self.effort)
+            if model is None:
+                kept.append(number)
+                continue
+            holds = self.evaluate(*(model.get(name, 0) for name in self.inputs))
+            left, kept = [i for i in left if holds[i]], []
+        return left
+
+    def needed(self, left: Sequence[int]) -> list[int]:
+        """Of an inductive set those lines that it takes: for nothing to be broken, and for one another to be kept."""
+        kept: set[int] = set()
+        todo = self._core(self.system.broken, left)
+        while todo:
+            kept |= todo
+            more: set[int] = set()
+            for i in todo:
+                more |= self._core(e.bvnot(self.then[i]), left)
+            todo = more - kept
+        return sorted(kept)
+
+    def _core(self, goal: Expr, left: Sequence[int]) -> set[int]:
+        """Lines that suffice for the goal to be impossible."""
+        import z3
+
+        solver: Any = z3.SolverFor("QF_BV")
+        solver.set("timeout", SOON)
+        terms = e.z3_terms(
+            [e.conj([self.system.within, self.system.allowed, goal]), *(self.now[i] for i in left)]
+        )
+        solver.add(terms[0] == 1)
+        marks = {f"!holds {i}": i for i in left}
+        for mark, term in zip(marks, terms[1:], strict=True):
+            solver.add(z3.Implies(z3.Bool(mark), term == 1))
+        if solver.check(*map(z3.Bool, marks)) != z3.unsat:
+            return set(left)
+        return {marks[str(each)] for each in solver.unsat_core()}
