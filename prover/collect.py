@@ -20,7 +20,7 @@ from prover.errors import InternalError
 from prover.evidence import Evidence, Hold, Lasso, Layer, Matrix, Track, layers_of
 from prover.expr import Expr
 from prover.findings import Report
-from prover.good import good_since, scope_of
+from prover.good import scope_of
 from prover.rebuild import good_of, orbit_of
 from prover.rhythm import Goal, Orbit, Rhythm, goal_of
 from prover.settling import settle
@@ -36,7 +36,7 @@ def collect(report: Report, effort: Effort, glitches: bool = True) -> Evidence:
     ports, spec, rhythm = report.ports, report.spec, report.rhythm
     answers = rhythm.settling.answers
     if rhythm.settling.depth is None:
-        return Evidence(answers, False, False, (), (), None, None, (), None, (), ())
+        return Evidence(answers, False, False, (), (), None, None, (), None, (), (), None)
     whole, _ = settle(
         ports.design, ports.clock, ports.running, ports.output_value, effort, ask=repeated(answers)
     )
@@ -69,30 +69,38 @@ def of_machine(machine: System, whole: System, answers: tuple[Model | None, ...]
         everywhere=None,
         lassos=(),
         glitches=(),
+        pulse=None,
     )
 
 
 def _with_glitches(report: Report, whole: System, found: Evidence, goal: Goal, effort: Effort) -> Evidence:
     """The evidence with answers about glitches, asked of the good states that it has, and the run that shows one."""
     rhythm = report.rhythm
-    machine = rhythm.system
+    machine, known = rhythm.system, rhythm.glitches
+    if known is None or known.open:
+        return found
     tracks = [orbit_of(each, machine, "starts") for each in found.starts]
     rhythm = replace(rhythm, orbits=tuple(tracks))
     good = good_of(rhythm, found.everywhere, goal)
-    shown: list[Lasso] = []
+    pulse = first = None
+    if known.found is not None:
+        first = tuple(known.found.state[name] for name in whole.names)
+        pulse = Lasso(track(known.found.orbit), first)
 
     def follows(state: State) -> Orbit | None:
-        run = follow(machine, recode.placed(state, whole, machine), effort)
-        if not good.none and good_since(run, goal) != 0:
-            return None
-        shown.append(Lasso(track(run), state))
-        return run
+        return known.found.orbit if known.found is not None and state == first else None
 
     asked = glitch.find(
-        report.ports, whole, scope_of(whole, machine, good), follows, lambda question: find(question, effort)
+        report.ports,
+        whole,
+        scope_of(whole, machine, good, first),
+        follows,
+        lambda question: find(question, effort),
     )
-    lassos = tuple(dict.fromkeys([*found.lassos, *shown]))
-    return replace(found, lassos=lassos, glitches=asked.answers)
+    if (asked.found is None) != (pulse is None):
+        # The time ran out on the way: the certificate leaves it open.
+        return found
+    return replace(found, glitches=asked.answers, pulse=pulse)
 
 
 def _within(work: Callable[[], Found]) -> Found | None:

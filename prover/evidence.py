@@ -113,6 +113,7 @@ class Evidence:
     lassos      power-up states that refute something, or that need the longest
     glitches    answers to the questions about what happens within a half-cycle, in the order in which `glitch.find`
                 asks them
+    pulse       the run from the state that shows a glitch
     """
 
     settling: tuple[Model | None, ...]
@@ -126,6 +127,7 @@ class Evidence:
     everywhere: tuple[Layer, ...] | Ranking | Rounds | None
     lassos: tuple[Lasso, ...]
     glitches: tuple[Model | None, ...]
+    pulse: Lasso | None
 
 
 # -- writing -----------------------------------------------------------------------------------------------
@@ -141,6 +143,9 @@ def as_object(evidence: Evidence) -> Object:
     def number(path: Path) -> int | None:
         return numbers.setdefault(path, len(numbers)) if path else None
 
+    def run(of: Lasso) -> Object:
+        return {**track(of.track), "start": list(of.start)}
+
     out: Object = {
         "cone": evidence.cone,
         "parts": evidence.parts,
@@ -151,8 +156,9 @@ def as_object(evidence: Evidence) -> Object:
         "reset": None,
         "starts": [track(of) for of in evidence.starts],
         "everywhere": _everywhere(evidence.everywhere, track),
-        "lassos": [{**track(lasso.track), "start": list(lasso.start)} for lasso in evidence.lassos],
+        "lassos": [run(lasso) for lasso in evidence.lassos],
         "glitches": list(evidence.glitches),
+        "pulse": None if evidence.pulse is None else run(evidence.pulse),
     }
     if evidence.reset is not None:
         out["reset"] = _hold(evidence.reset, track)
@@ -227,7 +233,7 @@ def read(value: Any) -> Evidence:
     of = fields_of(
         value,
         "evidence",
-        "cone parts gray word matrix settling reset starts everywhere lassos glitches paths",
+        "cone parts gray word matrix settling reset starts everywhere lassos glitches pulse paths",
     )
     paths = [_path(x, f"paths/{i}", 0) for i, x in enumerate(list_of(of["paths"], "paths"))]
 
@@ -259,6 +265,7 @@ def read(value: Any) -> Evidence:
         everywhere=_read_everywhere(of["everywhere"], track),
         lassos=each_of(of["lassos"], "lassos", lasso),
         glitches=each_of(of["glitches"], "glitches", answer_of),
+        pulse=None if of["pulse"] is None else lasso(of["pulse"], "pulse"),
     )
 
 

@@ -8,7 +8,7 @@ of, so that what is told of them is told all the same.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from prover import certificate, path, tables
 from prover import expr as e
@@ -58,8 +58,17 @@ class Scope:
     why: str = ""
 
 
-def scope_of(whole: System, machine: System, good: Good | None) -> Scope:
-    """The good states of a machine, or what is looked at in their place, as regions of the whole divider."""
+def scope_of(whole: System, machine: System, good: Good | None, first: State | None = None) -> Scope:
+    """The good states of a machine, or what is looked at in their place, as regions of the whole divider; before all
+    others one state of it that is known to be among them."""
+    found = _scope_of(whole, machine, good)
+    if first is None:
+        return found
+    here = (e.eq(e.var(n, w), e.const(v, w)) for (n, w), v in zip(whole.variables, first, strict=True))
+    return replace(found, regions=(Region(e.conj(here)), *found.regions))
+
+
+def _scope_of(whole: System, machine: System, good: Good | None) -> Scope:
     if good is None:
         return Scope((), "", "the good states are not known")
     if good.phases is not None:

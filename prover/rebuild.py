@@ -7,7 +7,7 @@ and checking one both come this way, so the two can be compared word for word.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
 from prover import certificate, glitch, linear, path, recode, release, reset, tables
@@ -72,7 +72,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
         known = _held(ports, evidence.reset, owed, effort)
     scope, starts, why = _starts(ports, spec, whole, settling, known)
     if settling.depth is None:
-        if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, (), ()):
+        if evidence != Evidence(evidence.settling, False, False, (), (), None, None, (), None, (), (), None):
             raise Rejected("evidence about a divider of which nothing is known")
         return Rebuilt(whole, _nothing_known(ports, whole, settling, scope), owed.listed())
     machine = machine_of(whole, evidence, owed)
@@ -86,8 +86,7 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
     listed = evidence.everywhere.waves() if isinstance(evidence.everywhere, Rounds) else []
     goal = goal_of(spec, [*(run.wave() for run in rhythm.orbits), *listed, *(run.wave() for run in lassos)])
     rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
-    runs = {lasso.start: run for lasso, run in zip(evidence.lassos, lassos, strict=True)}
-    rhythm = _with_glitches(ports, whole, rhythm, evidence, goal, runs, owed)
+    rhythm = _with_glitches(ports, whole, rhythm, evidence, goal, owed)
     return Rebuilt(whole, rhythm, owed.listed())
 
 
@@ -171,19 +170,24 @@ def _with_glitches(
     rhythm: Rhythm,
     evidence: Evidence,
     goal: Goal,
-    runs: Mapping[State, Orbit],
     owed: Owed,
 ) -> Rhythm:
     """The rhythm with what the answers say of glitches, owing that there are no others."""
     good = good_of(rhythm, evidence.everywhere, goal)
     ask = Replay(evidence.glitches, "glitches", owed)
+    first = run = None
+    if evidence.pulse is not None:
+        first, run = evidence.pulse.start, _lasso(whole, rhythm.system, evidence.pulse, owed)
+        if not good.none and good_since(run, goal) != 0:
+            raise Rejected("pulse: not from a good state")
 
     def follow(state: State) -> Orbit | None:
-        run = runs.get(state)
-        return run if run is not None and (good.none or good_since(run, goal) == 0) else None
+        return run if state == first else None
 
-    found = glitch.find(ports, whole, scope_of(whole, rhythm.system, good), follow, ask.answer)
+    found = glitch.find(ports, whole, scope_of(whole, rhythm.system, good, first), follow, ask.answer)
     ask.finish()
+    if (found.found is None) != (evidence.pulse is None):
+        raise Rejected("pulse: it shows none")
     return replace(rhythm, good=good, glitches=found)
 
 

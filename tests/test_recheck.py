@@ -307,6 +307,37 @@ def test_a_glitch_cannot_be_denied(name: str) -> None:
             assert finding.verdict != "proved" or not all(discharge(o, Effort(60)) for o in again.obligations)
 
 
+# The loop of 000 and 001 is clean. Other codes but 111 lock up. From 111, which is good and on no loop, the output may
+# go to 1 at 011, back at 010, and to 1 again.
+ON_THE_WAY = """\
+module on_the_way (input clk, output tick);
+  reg [2:0] code;
+  always @(posedge clk)
+    case (code)
+      3'b000: code <= 3'b001;
+      3'b001, 3'b111: code <= 3'b000;
+      default: code <= 3'b110;
+    endcase
+  assign tick = code == 3'b000 | code == 3'b011;
+endmodule
+"""
+
+
+def test_a_glitch_of_a_good_state_that_no_loop_leads_to_is_certified(tmp_path: Path) -> None:
+    path = tmp_path / "on_the_way.v"
+    path.write_text(ON_THE_WAY, encoding="utf-8")
+    report = check([path], Spec(ratio=Fraction(2)))
+    (found,) = [f.glitch for f in report.findings if f.name == "glitch-free"]
+    assert found is not None
+    assert found.state["code"] == 7
+    certificate = certify(report, [path], Effort(60))
+    assert certificate.left_open == ()
+    outcome = recheck(written(tmp_path, certificate.text), sources=Path())
+    assert outcome.accepted, outcome
+    verdicts = {finding.name: finding.verdict for finding in outcome.findings}
+    assert (verdicts["recovery"], verdicts["glitch-free"]) == ("refuted", "refuted")
+
+
 def test_differences_are_told_of_every_kind() -> None:
     told = list(differences({"a": 1, "b": [1, 2], "c": "x\ny"}, {"a": True, "b": [1], "c": "x\nz", "d": 0}))
     assert told == [

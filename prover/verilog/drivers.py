@@ -435,24 +435,18 @@ class Drivers:
                 # Nothing reads it, or it would have been refused: it has no value to show.
                 continue
             word = joined(parts)
-            written = joined([to_gates[part.name] for part in reversed(self.slices[net])])
+            written = word
+            if self.gates:
+                written = joined([to_gates[part.name] for part in reversed(self.slices[net])])
             driven = self._driven(self.slices[net][0])
             where = self.report.where(net.offset)
             size = net.type.width
             for k in range(net.count):
                 name = net.part(k * size + size - 1, k * size)
                 value = cut(word, k * size + size - 1, k * size, self.cuts)
-                as_written = cut(written, k * size + size - 1, k * size, self.cuts)
-                out[name] = Signal(
-                    name,
-                    value,
-                    net.msb,
-                    net.lsb,
-                    net.type.signed,
-                    where,
-                    None if as_written is value else as_written,
-                    driven,
-                )
+                to_nets = value if written is word else cut(written, k * size + size - 1, k * size, self.cuts)
+                as_written = None if to_nets is value else to_nets
+                out[name] = Signal(name, value, net.msb, net.lsb, net.type.signed, where, as_written, driven)
         return out
 
 
