@@ -126,15 +126,15 @@ class _Search:
         if self.ask(EVERYWHERE, e.disj([reach.as_written, reach.late, reach.held])) is None:
             return ""
         if not self.scope.regions:
-            return self.scope.why
-        passes = self.first(reach.held)
-        if passes is not None:
-            return self._passed(passes)
+            return self.scope.why or "no state is known from which to look"
         pulses = self.first(reach.as_written)
         if pulses is not None:
             found = self._pulse(pulses)
             if found is not None:
                 return found
+        passes = self.first(reach.held)
+        if passes is not None:
+            return self._passed(passes)
         late = self.first(e.bvand(reach.late, e.bvnot(reach.as_written)))
         if late is not None:
             self.dues.append(_order_due(self.ports, reach, late))

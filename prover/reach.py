@@ -71,11 +71,11 @@ class Reach:
 
     @cached_property
     def changes(self) -> list[tuple[int, dict[str, Swing]]]:
-        """What the inputs do in each micro-step in which any of them may move."""
+        """What the inputs do in each micro-step in which any of them may move; what hangs on x always may."""
         out = []
         for number, (then, now) in enumerate(pairwise(self.moments)):
             swings = self._swings(self.inputs, then, now)
-            if any(s.first is not s.last for s in swings.values()):
+            if self.loose or any(s.first is not s.last for s in swings.values()):
                 out.append((number, swings))
         return out
 

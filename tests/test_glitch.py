@@ -20,18 +20,21 @@ from test_hazard import HERE, Delays, random_network
 from vcdvcd import VCDVCD
 
 from properties import glitch_free
-from prover import analyse, check
+from prover import analyse, check, glitch
 from prover import expr as e
 from prover.arrival import Glitch
 from prover.design import Design, Edge, Force, Register, Signal
 from prover.effort import Effort
 from prover.expr import Expr
 from prover.findings import Finding, Report
+from prover.good import EVERYWHERE, Scope
 from prover.hazard import Network
 from prover.ports import recognise
 from prover.report import terminal, vcd
 from prover.report.json import as_object
 from prover.rhythm import Rhythm
+from prover.settling import settle
+from prover.solve import find
 from prover.spec import Spec
 from prover.system import State
 
@@ -352,6 +355,18 @@ def test_what_a_latch_lets_through_is_not_taken_for_clean() -> None:
     shut = Register("held", 1, "latch", (), (Force(small.FALLING, decode, HERE),), None, HERE)
     closed = glitch_free.judge(analysed(small.design([registers[0], shut], held), claim), claim)
     assert (closed.verdict, closed.obligations) == ("proved", ())
+
+
+def test_an_output_that_hangs_on_x_is_not_taken_for_clean() -> None:
+    # A tri-state driver that lets go while q is 0: what is seen then may be anything.
+    q = e.var("q", 1)
+    registers = [small.flop("q", 1, small.CLOCK, e.bvnot(q))]
+    design = small.design(registers, e.ite(q, e.TRUE, e.var("?floating", 1)))
+    ports = recognise(design, Spec(ratio=Fraction(2), start="any"))
+    system, _ = settle(design, "clk", ports.running, ports.output_value, Effort(10))
+    scope = Scope((EVERYWHERE,), "everywhere")
+    found = glitch.find(ports, system, scope, lambda state: None, lambda goal: find(goal, Effort(10)))
+    assert found.open == "it hangs on a value that x stands for"
 
 
 # -- wide machines -----------------------------------------------------------------------------------------
