@@ -439,7 +439,8 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
 
     \b
     Example: subharmonic gate --junit gate.xml
-    Exit status: 0 proved, 1 refuted or a waiver expired, 2 bad input, 3 open, 70 our fault.
+    Exit status: 0 proved, 1 refuted or a waiver expired, 2 bad input, 3 open,
+    70 our fault.
     """
     named = {name: options[f"{name}_path"] for name in ("json", "html", "vcd", "junit", "sarif")}
     targets = Targets(**named, testbench=options["testbench_folder"])

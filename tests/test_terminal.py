@@ -9,7 +9,7 @@ from fractions import Fraction
 from pathlib import Path
 
 import pytest
-from hypothesis import given
+from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from machines import random_design
 from small import twisted_ring
@@ -63,6 +63,8 @@ def test_a_timeline_is_what_stepping_gives(seed: int) -> None:
         assert list(timeline.steady(begins, ends)) == expected
 
 
+# How fast a machine draws them says nothing of what is drawn.
+@settings(deadline=None, suppress_health_check=[HealthCheck.too_slow])
 @given(
     st.integers(0, 50),
     st.integers(1, 5000),
