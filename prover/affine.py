@@ -11,6 +11,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+MOST_SHORTENED = 160
+"""Equations up to which it is looked for shorter ones."""
+
 
 @dataclass(frozen=True, slots=True)
 class Equation:
@@ -70,7 +73,7 @@ class BitHull:
             Equation(
                 tuple((i, 1) for i in range(self.size) if mask >> i & 1), (mask & self.origin).bit_count() & 1
             )
-            for mask in _shorter(out)
+            for mask in (_shorter(out) if len(out) <= MOST_SHORTENED else out)
         ]
 
 
@@ -112,14 +115,8 @@ class WordHull:
         """Equations that say no more and no less than that a point is in the hull."""
         if self.origin is None:
             return []
-        solved: dict[int, list[int]] = {}
-        for row in _kernel(list(self.rows.values()), self.size, self.width):
-            # The last variables are given by the first where that can be.
-            _insert(solved, row[::-1], self.width)
-        _reduce(solved, self.mask)
         out = []
-        for reversed_row in solved.values():
-            row = reversed_row[::-1]
+        for row in _solved(_kernel(list(self.rows.values()), self.size, self.width), self.width):
             total = sum(a * o for a, o in zip(row, self.origin, strict=True)) & self.mask
             out.append(Equation(tuple((i, a) for i, a in enumerate(row) if a), total))
         return out
@@ -158,15 +155,29 @@ def _insert(rows: dict[int, list[int]], row: list[int], width: int) -> bool:
     return grown
 
 
-def _reduce(rows: dict[int, list[int]], mask: int) -> None:
-    """Take each row's first entry out of the rows before it, where it can be."""
-    for at in sorted(rows):
-        row = rows[at]
-        for other in rows.values():
-            if other is not row and other[at] and _twos(other[at]) >= _twos(row[at]):
-                times = other[at] >> _twos(row[at])
-                for i, x in enumerate(row):
-                    other[i] = (other[i] - times * x) & mask
+def _solved(rows: list[list[int]], width: int) -> list[list[int]]:
+    """Rows with the same sums, each of which gives a variable by the others: the last of those that the fewest twos
+    divide, so that its factor is 1 where that can be."""
+    mask = (1 << width) - 1
+    left = [row for row in rows if any(row)]
+    out: list[list[int]] = []
+    while left:
+        row, place = min(
+            ((row, j) for row in left for j, x in enumerate(row) if x),
+            key=lambda at: (_twos(at[0][at[1]]), -at[1]),
+        )
+        twos = _twos(row[place])
+        inverse = pow(row[place] >> twos, -1, 1 << width)
+        row[:] = [x * inverse & mask for x in row]
+        left = [other for other in left if other is not row]
+        for other in (*left, *out):
+            times = other[place] >> twos
+            if times:
+                for j, x in enumerate(row):
+                    other[j] = (other[j] - times * x) & mask
+        out.append(row)
+        left = [other for other in left if any(other)]
+    return out
 
 
 def _kernel(rows: list[list[int]], size: int, width: int) -> list[list[int]]:

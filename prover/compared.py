@@ -327,8 +327,23 @@ def _whatever_lag(pairs: Sequence[_Pair], effort: Effort) -> Outcome:
     places = [(at, pair) for pair in pairs if (at := equality.first_difference(*pair.orbits)) is not None]
     at, pair = min(places, key=lambda found: found[0])
     shown = pair.difference(at, 0)
-    text = f"no lag makes the outputs equal; without one they differ in {shown.text}"
+    text = f"{_own_lags(pairs, late, early)}; without one they differ in {shown.text}"
     return Outcome("refuted", text, difference=replace(shown, text=text))
+
+
+def _own_lags(pairs: Sequence[_Pair], late: Sequence[Shifts], early: Sequence[Shifts]) -> str:
+    """What is said where no one lag fits all starts: each may have one of its own."""
+    own: dict[int, str] = {}
+    for pair, behind, ahead in zip(pairs, late, early, strict=True):
+        lags = [equality.least_common([behind]), equality.least_common([ahead])]
+        fitting = [lag for lag in (lags[0], None if lags[1] is None else -lags[1]) if lag is not None]
+        if not fitting:
+            return "no lag makes the outputs equal"
+        cause = pair.followed.rhythms[0].starts[pair.places[0]].cause
+        inputs = "".join(f", {name}={value}" for name, value in pair.followed.inputs.items())
+        own.setdefault(min(fitting, key=abs), f"{cause}{inputs}")
+    told = "; ".join(f"{lag} half-cycles where {cause}" for lag, cause in list(own.items())[:4])
+    return f"the starts have different lags: {told}"
 
 
 # -- once both have settled --------------------------------------------------------------------------------

@@ -143,7 +143,7 @@ def _likely_lags(joint: Joint) -> list[int]:
     lags = sorted(range(-FURTHEST, FURTHEST + 1), key=lambda lag: (abs(lag), lag < 0))
     for _ in range(24):
         _, _, state = lockstep.random_start(joint, rng)
-        walk = lockstep.walked(joint, stepper, rng, state, 600, rng.choice((0.5, 0.95, 0.99)))
+        walk = lockstep.walked(stepper, rng, state, 600, rng.choice((0.5, 0.95, 0.99)))
         old, new = zip(*(look(*each) for each in walk), strict=True)
         lags = [lag for lag in lags if _same(old[max(-lag, 0) :], new[max(lag, 0) :])]
     return lags

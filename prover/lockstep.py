@@ -231,9 +231,11 @@ def differs_at(
 
 
 def walked(
-    joint: Joint, stepper: Stepper, rng: random.Random, state: State, count: int, stay: float = 0.5
+    stepper: Stepper, rng: random.Random, state: State, count: int, stay: float = 0.5, agreeing: bool = False
 ) -> Iterator[State]:
-    """States from one on, with inputs that stay where they are half the time and move anywhere otherwise."""
+    """States from one on, with inputs that stay where they are that often and move anywhere otherwise; if
+    they are to be `agreeing`, up to the first at which the outputs differ."""
+    joint = stepper.joint
     places = [joint.names.index(name.removesuffix(" moved")) for name, _ in joint.moves]
     for _ in range(count):
         yield state
@@ -242,7 +244,10 @@ def walked(
             for place, (_, width) in zip(places, joint.moves, strict=True)
         ]
         choices = [rng.getrandbits(width) for _, width in joint.choices]
-        state = stepper.run(*state, *moves, *choices)[: len(joint.variables)]
+        *after, at_rest, at_edge = stepper.run(*state, *moves, *choices)
+        if (at_rest or at_edge) and agreeing:
+            return
+        state = tuple(after)
 
 
 def _likely(rng: random.Random, width: int) -> int:

@@ -22,7 +22,7 @@ from typing import Protocol
 
 from prover import expr as e
 from prover.affine import BitHull, Equation, WordHull
-from prover.effort import Effort
+from prover.effort import Effort, OutOfEffort
 from prover.equality import Invariant
 from prover.expr import Expr
 from prover.joint import Joint
@@ -37,6 +37,9 @@ KINDS = (
     frozenset({"words", "ranges", "orders", "bits", "tables", "implications"}),
 )
 """Kinds of relations that are looked for together, tried in this order: the fewer, the sooner found."""
+
+LEAST_EFFORT = 2.0
+"""Seconds that each kind of relation has at least, if there are so many."""
 
 WALKS = 24
 """Runs that relations are mined from, at first."""
@@ -65,7 +68,13 @@ def invariant(joint: Joint, effort: Effort) -> Invariant | None:
     for depth, kinds in product(DEPTHS, KINDS):
         if "words" in kinds and not mined.words:
             continue
-        found = _fixpoint(joint, mined.fresh(kinds), depth, effort)
+        part = effort.share(max(effort.left / 2, LEAST_EFFORT))
+        try:
+            found = _fixpoint(joint, mined.fresh(kinds), depth, part)
+        except OutOfEffort:
+            # Other relations may do, and sooner.
+            effort.check()
+            continue
         if found is not None:
             return Invariant(_needed(joint, found, depth, effort), depth)
     return None
@@ -233,7 +242,7 @@ class _Mined:
         self.states: list[State] = []
         for _ in range(WALKS):
             _, _, state = random_start(joint, rng)
-            self.states += walked(joint, self.stepper, rng, state, WALKED, rng.choice((0.5, 0.95, 0.99)))
+            self.states += walked(self.stepper, rng, state, WALKED, rng.choice((0.5, 0.95, 0.99)))
             effort.check()
         self.rng = rng
 
@@ -404,9 +413,9 @@ def _broken(parts: Sequence[Expr]) -> Expr:
 
 
 def _take(state: _State, found: State) -> None:
-    """Take in a state and some that follow."""
+    """Take in a state and some that follow, which have to be in as well: from where the outputs differ none has."""
     mined = state.mined
-    for each in walked(mined.joint, mined.stepper, mined.rng, found, ONWARD):
+    for each in walked(mined.stepper, mined.rng, found, ONWARD, agreeing=True):
         state.add(each)
 
 

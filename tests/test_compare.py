@@ -14,6 +14,9 @@ from vcdvcd import VCDVCD
 
 import prover
 from prover import Pairing, Spec, cli
+from prover.ports import recognise
+from prover.trace import Rest
+from prover.trace import run as run_trace
 
 STATUS = {"proved": 0, "refuted": 1, "open": 3}
 PAIRS = [(case, pair) for case in cases("pairs") for pair in case.pairs]
@@ -76,6 +79,37 @@ def test_what_must_be_shown_is_among_the_pairs() -> None:
     assert verdicts == {"proved", "refuted"}
     assert any(pair.lag == 1 for _, pair in PAIRS)
     assert any(pair.differs is not None and pair.differs > 1 << 21 for _, pair in PAIRS)
+
+
+# Measured on a real part of the published 4018 function table, Q1 to Q5 inverted, one row an input cycle (a maker's
+# support forum; the by-4 rows are computed with the gate that the measured by-2 rows tell of).
+MEASURED = {
+    1: "11111 01111 10111 01111 10111",
+    2: "11111 01111 00111 10011 11001 01100 00110 10011",
+}
+
+
+@pytest.mark.parametrize("tap", MEASURED)
+def test_the_gated_counter_is_the_one_that_was_measured(tap: int) -> None:
+    spec = Spec(parameters={"TAP": tap}, output="q1")
+    rows = {name: inverted_rows(f"shift_5_{name}", spec, 8) for name in ("gated", "plain")}
+    measured = MEASURED[tap].split()
+    assert rows["gated"][: len(measured)] == measured
+    # A plain shift register is told from it by the third stage, after the third edge.
+    assert rows["plain"][:3] == measured[:3]
+    assert (rows["plain"][3] == measured[3]) == (tap == 2)
+    if tap == 1:
+        assert rows["plain"][3] == "01011"
+
+
+def inverted_rows(name: str, spec: Spec, count: int) -> list[str]:
+    """The five inverted stages, first to last, in each input cycle from all at 0."""
+    ports = recognise(prover.read([CASES / "pairs" / f"{name}.v"], spec), spec)
+    first = Rest(0, False, {}, {"q": 0, "clk": 0}, {})
+    rests = run_trace(ports.design, "clk", {}, first, [None] * (2 * count), 4)
+    # q is declared [5:1]: its lowest bit is the first stage.
+    words = [rest.registers["q"] for rest in rests[::2]]
+    return ["".join(str(1 - (word >> i & 1)) for i in range(5)) for word in words]
 
 
 # -- what a user sees --------------------------------------------------------------------------------------
@@ -252,6 +286,53 @@ def test_a_power_up_that_matters_only_beyond_its_loop_is_seen(tmp_path: Path) ->
     assert report(old, new, "--lag", "any")["lag_half_cycles"] == 4
     found = report(old, new, "--after", "any", "--lag", "any")
     assert found["verdict"] == "proved"
+
+
+def test_a_lag_is_found_while_inputs_move(tmp_path: Path) -> None:
+    text = "module a (input clk, input rst, input en, output tick);\n  reg q, late;\n"
+    text += (
+        "  always @(posedge clk) if (rst) q <= 0; else if (en) q <= ~q;\n  always @(negedge clk) late <= q;\n"
+    )
+    old, new = (written(tmp_path, n, f"{text}  assign tick = {n};\nendmodule\n") for n in ("q", "late"))
+    for options, lag in ((["--lag", "any"], 1), (["--lag", "1"], 1)):
+        found = report(old, new, "--moving", "en", *options)
+        assert (found["verdict"], found["lag_half_cycles"]) == ("proved", lag)
+    assert report(old, new, "--moving", "en")["verdict"] == "refuted"
+    # No lag: what is tried is told, and nothing is claimed of what is not.
+    other = written(tmp_path, "other", f"{text}  assign tick = q & late;\nendmodule\n")
+    found = report(old, other, "--moving", "en", "--lag", "any")
+    assert found["verdict"] == "open"
+    assert "-16 to 16" in found["says"]
+
+
+def test_each_start_may_have_a_lag_of_its_own() -> None:
+    # By hand: toggles on falling edges come one half-cycle after rising ones where reset is released while the clock is
+    # low, and one before them where it is released while the clock is high.
+    gray = str(CASES / "gauge" / "stage_by_16_gray.v")
+    ripple = str(CASES / "gauge" / "sonde_by_8_generate.v")
+    found = report(gray, ripple, "--new-set", "STAGES=4", "--lag", "any")
+    assert found["verdict"] == "refuted"
+    assert "different lags: 1 half-cycles where reset" in found["says"]
+    assert "; -1 half-cycles where reset" in found["says"]
+
+
+def test_what_follows_the_clock_is_equal_from_everywhere(tmp_path: Path) -> None:
+    text = "module a (input clk, output o); reg [2:0] c; always @(posedge clk) c <= c SHIFT 1; assign o = OUT; endmodule\n"
+    # What is shifted out is gone after three cycles; until then it holds the clock up.
+    drained = text.replace("SHIFT", "<<").replace("OUT", "clk & c == 0")
+    old, new = written(tmp_path, "plain", "module b (input clk, output o); reg c; always @(posedge clk) c <= c;\n"
+                       "  assign o = clk; endmodule\n"), written(tmp_path, "drained", drained)  # fmt: skip
+    found = report(old, new, "--after", "any")
+    assert found["verdict"] == "proved"
+    # By hand: 1 is gone at the third rising edge, six half-cycles after a state with the clock high; the low half-cycle
+    # before that edge is right already.
+    assert found["facts"]["settled_half_cycles"] == 5
+    assert (
+        report(old, written(tmp_path, "upside", drained.replace("clk & c", "~clk & c")), "--after", "any")[
+            "verdict"
+        ]
+        == "refuted"
+    )
 
 
 # -- Python ------------------------------------------------------------------------------------------------
