@@ -41,6 +41,9 @@ ENUMERATED = 256
 MOST_ENUMERATED = 1 << 14
 """Values up to which each is judged by itself, while there is effort, where not all can be had at once."""
 
+LEAST_SHARE = 2.0
+"""Seconds that a value has at least, while there are any: less would decide nothing."""
+
 Judge = Callable[[Design, Spec, Effort], Report]
 
 
@@ -127,14 +130,13 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     for number, each in enumerate(values):
         effort.doing = f"judging {values_text(each)}"
         # What a value leaves of its share goes to the others.
-        share = effort.left / max(1, (most - number) / 8)
+        share = max(LEAST_SHARE, effort.left / max(1, (most - number) / 8))
         try:
             found.add(each, judge(design, claimed_at(spec, {**fixed, **each}, each), effort.share(share)))
         except OutOfEffort:
             # What was found out about the values before stands.
             if not found.tried:
                 raise
-            break
         if effort.left <= 0:
             break
     return found.report(count, why)

@@ -18,6 +18,7 @@ from itertools import pairwise
 from prover import expr as e
 from prover import path
 from prover.certificate import Obligation, onwards
+from prover.certificate import part as part_of
 from prover.design import Design
 from prover.expr import Expr
 from prover.forms import ONE, ZERO, Beyond, Poly, at_least, equal, polynomial, total
@@ -466,14 +467,16 @@ def changes(course: Course) -> bool:
 
 
 @dataclass(frozen=True, slots=True)
-class Everywhere:
-    """Every power-up state is good within the greatest of `bounds`: a `certificate.CoverClaim` for each value.
+class Layer:
+    """Courses that every state gets on: a `certificate.CoverClaim` for each value, about some of the registers.
 
+    names       the registers, which depend on no others, and the clock, in the machine's order
     recoveries  for each course the runs that are behind before it is good (counted from its start, the loop taken
-                twice), and after how many half-cycles it is
+                twice), and after how many half-cycles it is; in layers before the last one, good is to be on a loop
     unrolled, merge  as in CoverClaim
     """
 
+    names: tuple[str, ...]
     courses: tuple[Course, ...]
     recoveries: tuple[tuple[int, Poly], ...]
     unrolled: int | None
@@ -481,33 +484,85 @@ class Everywhere:
 
     @property
     def bounds(self) -> tuple[Poly, ...]:
-        """Half-cycles, in all of which together every state is good."""
+        """Half-cycles, in the most of which every state is good."""
         if self.unrolled is not None:
             return (Poly.const(self.unrolled),)
         slow = dict.fromkeys(recovery for _, recovery in self.recoveries)
         return tuple(dict.fromkeys([*slow, Poly.const(self.merge)])) if self.merge else tuple(slow)
 
 
+@dataclass(frozen=True, slots=True)
+class Everywhere:
+    """Every power-up state is good within the greatest of `bounds`. The claim of a layer is made for states in which
+    the layer before it is on its loops; the last one is the whole machine's."""
+
+    layers: tuple[Layer, ...]
+
+    @property
+    def bounds(self) -> tuple[Poly, ...]:
+        """Half-cycles, in the most of which every state is good: what the layers take together."""
+        sums = [ZERO]
+        for layer in self.layers:
+            sums = list(dict.fromkeys(a + b for a in sums for b in layer.bounds))
+        return tuple(sums)
+
+    @property
+    def courses(self) -> tuple[Course, ...]:
+        """The courses of the whole machine."""
+        return self.layers[-1].courses
+
+
 def everywhere_obligations(
     system: System, premise: Expr, claim: Everywhere, wave: Wave
 ) -> Iterator[Obligation]:
     """The courses are runs, good when they are said to be, and no power-up state escapes them. Raises Unfit."""
-    if len(claim.courses) != len(claim.recoveries):
+    if not claim.layers or claim.layers[-1].names != tuple(system.names):
+        raise Unfit("the last layer is not the whole machine")
+    assumed = e.TRUE
+    before: set[str] = set()
+    for number, layer in enumerate(claim.layers):
+        last = layer is claim.layers[-1]
+        names = set(layer.names)
+        if not before <= names or system.clock not in names or not names <= set(system.names):
+            raise Unfit("layers that do not grow")
+        ours = system if last else part_of(system, names)
+        outside = {v.name for v in e.variables(ours.step)} & (set(system.names) - names)
+        if outside or tuple(ours.names) != layer.names:
+            raise Unfit("a layer that depends on registers outside it")
+        here = e.bvand(premise, assumed)
+        for each in layer_obligations(ours, premise, here, layer, wave if last else None):
+            yield Obligation(f"layer {number}, {each.name}", each.goal)
+        state = [e.var(name, width) for name, width in ours.variables]
+        loops = dict.fromkeys(course.loop for course in layer.courses)
+        places = dict.fromkeys(
+            (point.state, axes) for loop in loops for point, axes, _ in _placed(loop, ZERO)
+        )
+        assumed = e.disj(is_at(ours, state, at_, axes) for at_, axes in places)
+        before = names
+
+
+def layer_obligations(
+    system: System, premise: Expr, assumed: Expr, layer: Layer, wave: Wave | None
+) -> Iterator[Obligation]:
+    """The same of one layer. `assumed` is what may be assumed of a state, `premise` of the inputs; without a wave
+    good is to be on a loop."""
+    if len(layer.courses) != len(layer.recoveries):
         raise Unfit("not as many recoveries as courses")
-    if claim.merge < 0 or (claim.unrolled or 0) < 0 or any(behind < 0 for behind, _ in claim.recoveries):
+    if layer.merge < 0 or (layer.unrolled or 0) < 0 or any(behind < 0 for behind, _ in layer.recoveries):
         raise Unfit("less than nothing")
-    whole = [written_out(course) for course in claim.courses]
-    yield from course_obligations(system, premise, claim.courses, "everywhere")
-    for number, (course, (behind, recovery)) in enumerate(zip(whole, claim.recoveries, strict=True)):
-        wrong = e.disj(_not_good_from(course, behind, recovery, wave))
+    whole = [written_out(course) for course in layer.courses]
+    yield from course_obligations(system, premise, layer.courses, "courses")
+    for number, (course, (behind, recovery)) in enumerate(zip(whole, layer.recoveries, strict=True)):
+        late = [e.bvnot(at_least(recovery, length(course.lead)))]
+        wrong = e.disj(late if wave is None else _not_good_from(course, behind, recovery, wave))
         yield Obligation(f"course {number} is good after {recovery}", e.bvand(premise, wrong))
-    courses = list(zip(whole, (recovery for _, recovery in claim.recoveries), strict=True))
+    courses = list(zip(whole, (recovery for _, recovery in layer.recoveries), strict=True))
     for level in (0, 1):
         fixed = {system.clock: e.const(level, 1)}
-        (settled,) = e.substitute([system.settled], fixed)
+        settled, here = e.substitute([system.settled, assumed], fixed)
         state = [fixed.get(name, e.var(name, width)) for name, width in system.variables]
-        escapes = e.bvnot(_covered(system, state, claim, courses, wave))
-        yield Obligation(f"cover, clock {level}", e.conj([premise, settled, escapes]))
+        escapes = e.bvnot(_covered(system, state, layer, courses, wave))
+        yield Obligation(f"cover, clock {level}", e.conj([here, settled, escapes]))
 
 
 def written_out(course: Course) -> Course:
@@ -547,9 +602,9 @@ def _round(loop: Sequence[Part]) -> Runs:
 def _covered(
     system: System,
     state: list[Expr],
-    claim: Everywhere,
+    claim: Layer,
     courses: Sequence[tuple[Course, Poly]],
-    wave: Wave,
+    wave: Wave | None,
 ) -> Expr:
     levels: list[Expr] = []
     gone = 0
@@ -572,7 +627,7 @@ def _covered(
     for count in range(claim.merge + 1):
         if count == 0:
             reached.append(_on_courses(system, state, courses, None))
-        else:
+        elif wave is not None:
             reached.append(_behind_loops(system, state, levels, courses))
         onward()
     return e.disj(reached)

@@ -24,6 +24,10 @@ Atom = tuple[str, int, int]
 Monomial = tuple[Atom, ...]
 
 
+MOST_POWER = 16
+"""Powers of an input that are written out."""
+
+
 class Beyond(Exception):
     """What can't be written as a polynomial; the message says what it is."""
 
@@ -241,7 +245,8 @@ class _Reader:
         if op == "/":
             return a * Poly.const(1 / by)
         if op == "**":
-            if by.denominator != 1 or not 0 <= by <= 16:
+            most = MOST_POWER if a.constant is None else language.MOST_BITS
+            if by.denominator != 1 or not 0 <= by <= most or (a.constant or 0) > language.MOST_BITS:
                 raise Beyond(f"a power of {by}")
             return reduce(Poly.__mul__, [a] * int(by), ONE)
         # Only where the rest is the same for all inputs is the quotient a polynomial.

@@ -25,7 +25,7 @@ from prover.certificate import CoverClaim, Obligation, Stage, discharge
 from prover.domain import Values
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
-from prover.family import Claim, Course, Everywhere, Held, Pass, Piece, Point, Starts, Track, Unfit
+from prover.family import Claim, Course, Everywhere, Held, Layer, Pass, Piece, Point, Starts, Track, Unfit
 from prover.forms import ONE, ZERO, Beyond, Poly, at_least
 from prover.path import Beat, Item, Path, Repeat
 from prover.rhythm import Goal, Orbit
@@ -255,38 +255,38 @@ class FromEverywhere:
         spec = self.machines.spec_at(values)
         goal = Goal(spec.period, spec.high_half_cycles)
         seeds = [*starts, *corners(system)]
-        found = wide.cover(system, goal, system.settled, seeds, self.machines.effort, UNROLLED)
+        effort = self.machines.effort
+        found = wide.cover_in_stages(system, goal, seeds, effort, UNROLLED)
+        if found is None or not found.claims:
+            found = wide.cover(system, goal, system.settled, seeds, effort, UNROLLED)
         if any(line.recovery is None for line in found.lines):
             raise Lost(values)
         if not found.claims or found.worst is None:
             return None
-        claim = _pruned(system, found.claims[0], found.worst, self.machines.effort)
-        if any(claim.claim.spreads):
-            return None
-        widths = [width for _, width in system.variables]
-        courses = []
-        for run, recovery in zip(claim.claim.orbits, claim.claim.recoveries, strict=True):
-            if claim.claim.unrolled is None and not claim.claim.merge:
-                # Every place on it counts, so none has to be written out for itself.
-                lead, loop = (condensed(items, widths) for items in (run.lead, run.loop))
-                run = replace(run, lead=lead, loop=loop)
-            lead, loop = track_tree(run.lead, widths), track_tree(run.loop, widths)
-            courses.append((lead, loop, _behind(run, recovery), Leaf(recovery)))
-        courses.sort(key=lambda course: (repr(skeleton(course)), [leaf.value for leaf in leaves(course)]))
-        of = claim.claim
-        return ("everywhere", of.unrolled, of.merge, tuple(courses))
+        layers = []
+        stages = _pruned(system, found.claims, effort)
+        for stage in stages:
+            if any(stage.claim.spreads):
+                return None
+            layers.append(_layer_tree(stage, last=stage is stages[-1]))
+        return ("everywhere", tuple(layers))
 
     def claim(self, tree: Tree) -> Everywhere:
-        _, unrolled, merge, courses = tree
         return Everywhere(
-            tuple(Course(track_of(lead), track_of(loop)) for lead, loop, _, _ in courses),
-            tuple((behind, recovery) for _, _, behind, recovery in courses),
-            unrolled,
-            merge,
+            tuple(
+                Layer(
+                    names,
+                    tuple(Course(track_of(lead), track_of(loop)) for lead, loop, _, _ in courses),
+                    tuple((behind, recovery) for _, _, behind, recovery in courses),
+                    unrolled,
+                    merge,
+                )
+                for names, unrolled, merge, courses in tree[1]
+            )
         )
 
     def passes(self, claim: Everywhere) -> Iterator[Pass]:
-        for course in claim.courses:
+        for course in (course for layer in claim.layers for course in layer.courses):
             yield from family.passes((*course.lead, *course.loop))
 
     def obligations(self, premise: Expr, piece: Piece, claim: Everywhere) -> Iterator[Obligation]:
@@ -295,30 +295,52 @@ class FromEverywhere:
         yield from family.everywhere_obligations(self.machines.system, premise, claim, wave)
 
 
-def _pruned(system: System, stage: Stage, bound: int, effort: Effort) -> Stage:
-    """The claim without orbits that it holds without: what the solver came across by chance has no shape. States that
-    are on an orbit need not be given time to join one."""
-    claim = stage.claim
-    if claim.unrolled is None:
-        sooner = (replace(claim, merge=merge) for merge in range(claim.merge))
-        claim = next((c for c in sooner if not _fails(system, stage, c, bound, effort)), claim)
-    at = len(claim.orbits) - 1
-    while at >= 0 and len(claim.orbits) > 1:
-        kept = [i for i in range(len(claim.orbits)) if i != at]
-        fewer = replace(
-            claim,
-            orbits=tuple(claim.orbits[i] for i in kept),
-            recoveries=tuple(claim.recoveries[i] for i in kept),
-            spreads=tuple(claim.spreads[i] for i in kept),
-        )
-        if not _fails(system, stage, fewer, bound, effort):
-            claim = fewer
-        at -= 1
-    return replace(stage, claim=claim)
+def _layer_tree(stage: Stage, last: bool) -> Tree:
+    system, claim = stage.system, stage.claim
+    widths = [width for _, width in system.variables]
+    courses = []
+    for run, recovery in zip(claim.orbits, claim.recoveries, strict=True):
+        if claim.unrolled is None and not claim.merge:
+            # Every place on it counts, so none has to be written out for itself.
+            lead, loop = (condensed(items, widths) for items in (run.lead, run.loop))
+            run = replace(run, lead=lead, loop=loop)
+        behind = _behind(run, recovery) if last else 0
+        courses.append((track_tree(run.lead, widths), track_tree(run.loop, widths), behind, Leaf(recovery)))
+    courses.sort(key=lambda course: (repr(skeleton(course)), [leaf.value for leaf in leaves(course)]))
+    return (tuple(system.names), claim.unrolled, claim.merge, tuple(courses))
 
 
-def _fails(system: System, stage: Stage, claim: CoverClaim, bound: int, effort: Effort) -> bool:
-    return bool(certificate.stage_faults(system, [replace(stage, claim=claim)], bound, effort))
+def _pruned(system: System, stages: Sequence[Stage], effort: Effort) -> list[Stage]:
+    """The stages without orbits that they hold without: what the solver came across by chance has no shape. States
+    that are on an orbit need not be given time to join one."""
+    out: list[Stage] = []
+    for stage in stages:
+        ours = stage.system
+        assumed = certificate.assumption(ours, out[-1] if out else None)
+
+        def holds(claim: CoverClaim, ours: System = ours, assumed: Expr = assumed) -> bool:
+            return all(
+                discharge(each, effort) for each in certificate.cover_obligations(ours, assumed, claim)
+            )
+
+        claim = stage.claim
+        if claim.unrolled is None:
+            sooner = (replace(claim, merge=merge) for merge in range(claim.merge))
+            claim = next((each for each in sooner if holds(each)), claim)
+        at = len(claim.orbits) - 1
+        while at >= 0 and len(claim.orbits) > 1:
+            kept = [i for i in range(len(claim.orbits)) if i != at]
+            fewer = replace(
+                claim,
+                orbits=tuple(claim.orbits[i] for i in kept),
+                recoveries=tuple(claim.recoveries[i] for i in kept),
+                spreads=tuple(claim.spreads[i] for i in kept),
+            )
+            if holds(fewer):
+                claim = fewer
+            at -= 1
+        out.append(replace(stage, claim=claim))
+    return out
 
 
 def _behind(run: Orbit, recovery: int) -> int:

@@ -129,18 +129,18 @@ class _Search:
             self.items.append(cycle)
             state = after
             if count % (PACE << self.stumbles) == 0:
-                together = self._together()
+                together = self._together(state)
                 if together is not None:
                     repeats, previous = 0, None
                     state = self._append_jump(together)
         self.loop_from = self.seen[state]
 
-    def _together(self) -> Repeat | None:
-        """The last few cycles repeated, if these together have gone on with one stride and surely do so for long;
-        they are taken off the items."""
+    def _together(self, state: State) -> Repeat | None:
+        """The last few cycles repeated, if these together have gone on with one stride up to the state and surely do
+        so for long; they are taken off the items."""
         for size in range(2, GAIT + 1):
             block = self._gait(size)
-            if block is None:
+            if block is None or path.moved(path.first_state((block,)), block.stride, 1, self.widths) != state:
                 continue
             jump = self._extended(block)
             if jump.times >= 8:

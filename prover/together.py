@@ -87,17 +87,18 @@ class _Proof:
         first = next(machines.domain.values())
         self._add(first)
         scope = machines.at(first)[1]
-        everywhere, why_everywhere = self._searched(FromEverywhere(machines, self.claim))
+        starts, why_starts, wrong = None, "", dict.fromkeys(("ratio", "high-time", "reset"), "")
+        if scope != "any":
+            starts, why_starts = self._searched(FromStarts(machines), 0.5)
+            starts, wrong = self._gaps(starts)
+        everywhere, why_everywhere = self._searched(FromEverywhere(machines, self.claim), 0.7)
         why = dict.fromkeys(("ratio", "high-time", "no-stuck", "recovery"), why_everywhere)
         known = {name for name, reason in why.items() if not reason}
         why["settling"] = "; ".join(text for text, _ in machines.pulses)
         for _, values in machines.pulses:
             if e.evaluate([self.admitted], values) == [1]:
                 self._add(values)
-        starts = None
-        if scope != "any":
-            starts, why_starts = self._searched(FromStarts(machines))
-            starts, wrong = self._gaps(starts)
+        if starts is not None:
             known = known | set(wrong) if not why_starts else known - set(wrong)
             why |= {name: why_starts or wrong[name] for name in wrong}
         if machines.ports.reset is not None:
@@ -186,13 +187,17 @@ class _Proof:
     def _add(self, values: Values) -> None:
         self.singly[tuple(values.values())] = dict(values)
 
-    def _searched(self, kind: Kind) -> tuple[Found, str]:
-        """The pieces of a kind, and why they are not all."""
+    def _searched(self, kind: Kind, share: float) -> tuple[Found, str]:
+        """The pieces of a kind, and why they are not all; found in a share of the time that there is."""
+        machines, effort = self.machines, self.machines.effort
+        machines.effort = effort.share(effort.left * share)
         try:
-            found = Search(self.machines, kind).run()
+            found = Search(machines, kind).run()
         except Lost as lost:
             self._add(self._earlier(kind, lost.values))
             return Found((), ()), str(lost)
+        finally:
+            machines.effort = effort
         for values in found.left:
             self._add(values)
         return found, found.why

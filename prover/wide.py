@@ -724,9 +724,10 @@ def _range(loop: Sequence[Item], place: int, width: int) -> tuple[int, int]:
 
 
 def cover_in_stages(
-    system: System, goal: Goal | None, seeds: Sequence[State], effort: Effort
+    system: System, goal: Goal | None, seeds: Sequence[State], effort: Effort, unrolled: int = UNROLLED
 ) -> Cover | None:
-    """The cover of a cascade, stage by stage; None if the registers do not fall into several stages."""
+    """The cover of a cascade, stage by stage; None if the registers do not fall into several stages. Each stage is
+    unrolled for so many half-cycles at most."""
     parts = stages(system)
     if len(parts) < 2:
         return None
@@ -738,7 +739,7 @@ def cover_in_stages(
         stage = system if last else certificate.part(system, names)
         assumed = certificate.assumption(stage, claims[-1] if claims else None)
         starts = [project(system, seed, stage) for seed in seeds]
-        found = cover(stage, goal if last else None, assumed, starts, effort)
+        found = cover(stage, goal if last else None, assumed, starts, effort, unrolled)
         if not found.claims or found.worst is None:
             return found if last else None
         claims += found.claims

@@ -7,10 +7,11 @@ from fractions import Fraction
 from itertools import product
 
 import pytest
+import small
 from agreement import brute as enumeration
 from machines import random_design
 
-from prover import analyse, graph, orbit
+from prover import analyse, certificate, graph, orbit
 from prover import expr as e
 from prover.design import Design
 from prover.effort import Effort
@@ -93,6 +94,22 @@ def test_orbits_with_jumps_are_what_stepping_gives(seed: int) -> None:
         assert levels[t] == system.out(at)
         at = system.next(at)
     assert at == found.state(found.lead_half_cycles)
+
+
+def test_a_prescaler_that_ends_where_its_pace_is_looked_at_is_followed_rightly() -> None:
+    # Decades below a wide counter: after 64 cycles the prescaler is at its last count, where four pairs of cycles have
+    # gone on alike and the next does not.
+    pre, left = e.var("pre", 4), e.var("left", 24)
+    wraps = e.eq(pre, e.const(9, 4))
+    registers = [
+        small.flop("pre", 4, small.CLOCK, e.ite(wraps, e.const(0, 4), e.bvadd(pre, e.const(1, 4)))),
+        small.flop("left", 24, small.CLOCK, e.ite(wraps, e.bvadd(left, e.const(-1, 24)), left)),
+    ]
+    ports = recognise(small.design(registers, e.extract(left, 0, 0)), Spec(start="any"))
+    system, _ = settle(ports.design, ports.clock, ports.running, ports.output_value, Effort(60))
+    for phase in range(10):
+        run = orbit.trace(system, (phase, 12716364, 1), Effort(60), most=4000)
+        assert certificate.orbit_faults(system, run, Effort(60)) == []
 
 
 def test_a_graph_numbers_states_and_back() -> None:
