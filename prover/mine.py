@@ -22,7 +22,7 @@ from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.moving import AFTER
 from prover.unrolled import Broken
-from prover.watch import CHANGES, EDGES, FIRST, HELD, LEAST, MOST, Line, Watch
+from prover.watch import BY_MOVE, CHANGES, EDGES, FIRST, HELD, LEAST, MOST, SEEN, Line, Seed, Watch
 
 RUNS, STEPS = 64, 256
 """Random runs, and half-cycles of each."""
@@ -49,12 +49,12 @@ class Sampled:
 # -- runs --------------------------------------------------------------------------------------------------
 
 
-def sampled(system: Watch, effort: Effort, seed: int = 1) -> Sampled:
-    """Samples of random runs, up to the first that breaks the claim."""
-    runner = _Runner(system, seed)
+def sampled(system: Watch, effort: Effort, seeds: Sequence[Seed] = (), number: int = 1) -> Sampled:
+    """Samples of random runs, up to the first that breaks the claim. Some begin at the seeds."""
+    runner = _Runner(system, seeds, number)
     found: dict[bool, dict[Sample, None]] = {True: {}, False: {}}
     for steady, count in ((True, RUNS // 2), (False, RUNS)):
-        for _ in range(count):
+        for _ in range(4 * count if seeds else count):
             effort.check()
             samples, broken = runner.go(steady)
             found[steady] |= dict.fromkeys(samples)
@@ -66,9 +66,12 @@ def sampled(system: Watch, effort: Effort, seed: int = 1) -> Sampled:
 class _Runner:
     """Runs of a watch on numbers."""
 
-    def __init__(self, system: Watch, seed: int) -> None:
-        self.system, self.rng = system, random.Random(seed)
+    def __init__(self, system: Watch, seeds: Sequence[Seed], number: int) -> None:
+        self.system, self.rng = system, random.Random(number)
         machine = system.machine
+        names = {name for name, _ in machine.variables}
+        self.seeds = [seed for seed in seeds if not machine.rigid and names <= set(seed.registers)]
+        self.bits = e.compile_step(list(system.bits.values()), machine.names)
         choices = [name for name, _ in machine.choices]
         self.zeros = [0] * len(choices)
         self.moves = [name for name, _ in system.moves]
@@ -97,6 +100,8 @@ class _Runner:
 
     def go(self, steady: bool) -> tuple[list[Sample], Broken | None]:
         """The samples of one run, or how it breaks the claim. Steady: the inputs never move."""
+        if self.seeds and self.rng.random() < 0.8:
+            return self.from_seed(steady)
         rng, machine = self.rng, self.system.machine
         rigid = {name: self.word(width) for name, width in machine.rigid}
         pool = [self.inside(rigid) for _ in range(1 if steady else rng.randint(1, 4))]
@@ -115,7 +120,26 @@ class _Runner:
         started = {
             name: value for name, value in given.items() if name in rigid or name.startswith("!start")
         } | first
-        samples, moves = [tuple(sample)], [now]
+        return self.onward(tuple(sample), Broken(number, started, (now,)), pool)
+
+    def from_seed(self, steady: bool) -> tuple[list[Sample], Broken | None]:
+        """The same from a place on an orbit, which is a run's beginning; the pulse there has begun before."""
+        seed = self.rng.choice(self.seeds)
+        machine = self.system.machine
+        pool = [dict(seed.inputs)] if steady else [dict(seed.inputs), self.inside({}), self.inside({})]
+        values = {**seed.registers, **seed.inputs, EDGES: seed.edges, SEEN: 1, BY_MOVE: 0}
+        bits = self.bits(*(seed.registers[name] for name in machine.names))
+        values |= dict(zip(self.system.bits, bits, strict=True))
+        sample = tuple(values[name] for name in self.system.names)
+        return self.onward(sample, Broken(seed, dict(seed.inputs), (dict(seed.inputs),)), pool)
+
+    def onward(
+        self, sample: Sample, begun: Broken, pool: Sequence[dict[str, int]]
+    ) -> tuple[list[Sample], Broken | None]:
+        """From a first sample on, with inputs from the pool."""
+        rng = self.rng
+        samples, moves = [sample], list(begun.moves)
+        now = dict(rng.choice(pool))
         restless = rng.choice((0.02, 0.1, 0.5))
         for _ in range(STEPS):
             values = dict(zip(self.system.names, samples[-1], strict=True))
@@ -131,7 +155,7 @@ class _Runner:
                 break
             moves.append(chosen)
             if broken:
-                return samples, Broken(number, started, tuple(moves))
+                return samples, replace(begun, moves=tuple(moves))
             samples.append(tuple(after))
         return samples, None
 
@@ -254,6 +278,11 @@ class _Samples:
             for terms, offset in _relations(self.every, words, numbers):
                 fixed[terms] = None
                 yield Line(where, terms, offset, True)
+                if self.system.kind == "whole":
+                    # While the output is parked, edges go on being counted: what looks exact may hold on one side
+                    # only.
+                    yield Line(where, terms, offset, False)
+                    yield Line(where, tuple((name, -by) for name, by in terms), -offset, False)
             steady = self.steady_places.get(where, [])
             fixed |= {terms: None for terms, _ in _relations(self.steady, words, steady)}
         for terms in fixed:

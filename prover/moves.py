@@ -9,10 +9,10 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
-from prover import certificate, inductive, mine, monitor, observer, orbit, trace, unrolled
+from prover import analyse, certificate, inductive, mine, monitor, observer, orbit, trace, unrolled
 from prover import expr as e
 from prover import watch as watched
 from prover.effort import Effort, OutOfEffort
@@ -20,14 +20,15 @@ from prover.errors import InternalError
 from prover.expr import Expr
 from prover.moving import AFTER, Begin, Machine, machine_of
 from prover.observer import Breach, Limits, Nominal
-from prover.ports import Ports
-from prover.rhythm import Scope
+from prover.ports import Ports, with_holds
+from prover.rhythm import Goal, Scope
 from prover.settling import settle
 from prover.solve import find
+from prover.spec import Spec
 from prover.system import Inputs
 from prover.trace import Rest, Trace
 from prover.unrolled import Broken
-from prover.watch import Line, Watch, watch
+from prover.watch import Line, Seed, Watch, watch
 
 if TYPE_CHECKING:
     import numpy as np
@@ -39,6 +40,8 @@ class Question:
 
     varies   the nominal pulses hang on the inputs that move: the ratio changes. Else the input is an enable
     scope    where runs begin
+    seeds    places on orbits with the inputs held, near changes of the output
+    active   the value of an enable at which the divider runs
     recovers half-cycles within which the output is right from every state, at every value at which the divider runs,
              where that is proved of the divider with nothing moving
     """
@@ -50,6 +53,8 @@ class Question:
     varies: bool
     scope: Scope
     recovers: int | None = None
+    seeds: tuple[Seed, ...] = ()
+    active: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -230,32 +235,54 @@ def _watched(ports: Ports, machine: Machine, question: Question, effort: Effort)
     def made(bits: int) -> Watch:
         return watch(machine, question.nominal, "range" if question.varies else "whole", bits=bits)
 
-    found, broken = _invariants(made, "while inputs move", effort.share(effort.left / 2))
-    looked = unrolled.shortest(made(0), effort.share(effort.left / 3), MOST_DEPTH if broken else 0)
+    found, broken = _invariants(made, "while inputs move", effort.share(effort.left / 2), question.seeds)
+    seeds = question.seeds if broken is not None and isinstance(broken.begin, Seed) else None
+    looked = unrolled.shortest(made(0), effort.share(effort.left / 3), MOST_DEPTH if broken else 0, seeds)
     if found is None and broken is None:
         looked = unrolled.shortest(made(0), effort.share(effort.left / 2))
     broken = looked.broken or broken
     if broken is not None:
-        method = UNROLLED if looked.broken else "random runs; replayed on the machine"
+        method = BY_CHANCE if looked.broken is None else UNROLLED if seeds is None else FROM_ORBIT
         return Moves(question, False, trace=_broken(ports, machine, question, broken), method=method)
     if found is None:
         why = f"no invariants were found that show it; no run of up to {looked.covered} half-cycles breaks it"
         return Moves(question, False, open=why)
-    return _back(machine, question, len(found[1]), effort)
+    if question.varies:
+        return _back(machine, question, len(found[1]), effort)
+    return _idle(ports, question, _back(machine, question, len(found[1]), effort), effort)
+
+
+def _idle(ports: Ports, question: Question, found: Moves, effort: Effort) -> Moves:
+    """The answer with what the output does while the divider is stopped: it stays, on every loop of every state."""
+    if not found.proved or question.active is None or question.rigid:
+        return replace(found, proved=False, open=found.open or "where the output parks was not found out")
+    still = with_holds(ports, {question.moving[0]: 1 - question.active})
+    rhythm = analyse.rhythm_of(still, Spec(start="any"), effort)
+    (low, high) = e.evaluate([question.nominal.low, question.nominal.high], {})
+    if not rhythm.complete or not rhythm.loops:
+        why = rhythm.open or "not all loops are known"
+        return replace(found, proved=False, open=f"where the output parks was not found out: {why}")
+    if all(loop.stuck for loop in rhythm.loops):
+        return replace(found, parked=tuple(sorted({loop.wave.runs[0][0] for loop in rhythm.loops})))
+    if all(Goal(low + high, high).fits(loop.wave) for loop in rhythm.loops):
+        return found
+    return replace(
+        found, proved=False, open="from some state the output never parks while the divider is stopped"
+    )
 
 
 Make = Callable[[int], Watch]
 
 
 def _invariants(
-    make: Make, name: str, effort: Effort
+    make: Make, name: str, effort: Effort, seeds: Sequence[Seed] = ()
 ) -> tuple[tuple[Watch, tuple[Line, ...]] | None, Broken | None]:
     """Lines from which a claim follows, checked; or a run that breaks it; or neither. `make` gives the system with so
     many of the machine's comparisons told."""
     effort.say("looking at random runs")
     for bits in (0, MOST_COMPARED):
         system = make(bits)
-        found = mine.sampled(system, effort)
+        found = mine.sampled(system, effort, seeds)
         if found.broken is not None:
             return None, found.broken
         for all_of_them in (False, True):
@@ -275,6 +302,12 @@ def _invariants(
 MOST_COMPARED = 4
 """Comparisons of the machine's own by which states are told apart where less does not do."""
 
+
+FROM_ORBIT = (
+    "unrolled from places on the orbit: none of them has a shorter run that breaks the claim; replayed"
+)
+
+BY_CHANCE = "random runs; replayed on the machine"
 
 UNROLLED = "unrolled half-cycle by half-cycle: none that is shorter breaks the claim; replayed on the machine"
 
@@ -337,9 +370,18 @@ def _greatest(word: Expr, domain: Expr, effort: Effort) -> int:
     return low
 
 
+def _beginning(machine: Machine, begin: int | Seed) -> Begin:
+    if not isinstance(begin, Seed):
+        return machine.begins[begin]
+    widths = {r.name: r.width for r in machine.design.registers} | {machine.clock: 1}
+    return Begin(
+        {name: e.const(begin.registers[name], width) for name, width in widths.items()}, (), begin.cause
+    )
+
+
 def _broken(ports: Ports, machine: Machine, question: Question, broken: Broken) -> Trace:
     """The trace of a run that was found by unrolling or by chance."""
-    begin = machine.begins[broken.begin]
+    begin = _beginning(machine, broken.begin)
     names = [name for name, _ in machine.moving]
     moves = [broken.moves[0], *({name: move[name + AFTER] for name in names} for move in broken.moves[1:])]
     rests = replayed(ports, machine, begin, broken.given, moves)

@@ -7,6 +7,7 @@ an enable moves, the ratio's inputs keep any one value."""
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Sequence
 from dataclasses import replace
 
@@ -25,6 +26,7 @@ from prover.observer import Nominal
 from prover.ports import Ports, recognise, recognise_open
 from prover.solve import find
 from prover.spec import Ranges, Spec
+from prover.watch import Seed
 
 
 def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
@@ -168,8 +170,40 @@ def _questions(
         asked.append(Question(tuple(varying), (), held, claimed, True, scope, recovers))
     for name in enables:
         others = {other: value for other, value in held.items() if other != name}
-        asked.append(Question((name,), tuple(inputs), others, claimed, False, scope, recovers))
+        seeds = _seeds(ports, found, {name: active[name]})
+        asked.append(
+            Question((name,), tuple(inputs), others, claimed, False, scope, recovers, seeds, active[name])
+        )
     return asked
+
+
+MOST_CHANGES = 5
+"""Changes of the output, along each orbit, that runs begin before."""
+
+BEFORE = (1, 2, 3, 6, 20, 100)
+"""Half-cycles before such a change at which they do."""
+
+
+def _seeds(ports: Ports, found: Report, inputs: Values) -> tuple[Seed, ...]:
+    """Places on the orbits of the start states before changes of the output; none where these are not all
+    registers."""
+    names = {r.name for r in ports.design.registers}
+    seeds = []
+    for start, orbit in zip(found.rhythm.starts, found.rhythm.orbits, strict=True):
+        at, last = 0, None
+        for _, length in itertools.islice(orbit.runs(rounds=3), MOST_CHANGES):
+            at += length
+            for before in BEFORE:
+                if (
+                    last is not None
+                    and before < length
+                    and at <= orbit.lead_half_cycles + 2 * orbit.loop_half_cycles
+                ):
+                    values = found.rhythm.system.describe(orbit.state(at - before))
+                    cause = f"{start.cause}, then {at - before} half-cycles with nothing moving"
+                    seeds.append(Seed(values, inputs, length - before, cause))
+            last = at
+    return tuple(seed for seed in seeds if names <= set(seed.registers))
 
 
 def _recovers(found: Report) -> int | None:

@@ -13,7 +13,7 @@ from typing import Any
 
 from prover import expr as e
 from prover.effort import Effort
-from prover.watch import FIRST, Watch
+from prover.watch import FIRST, Seed, Watch
 
 DEEPEST = 200
 """Half-cycles that are unrolled."""
@@ -23,12 +23,12 @@ DEEPEST = 200
 class Broken:
     """A run that breaks the claim.
 
-    begin    which of the beginnings
+    begin    which of the beginnings, or a place on an orbit
     given    values of the inputs at the start, of rigid inputs and of free variables, by name
     moves    values of the moves in each half-cycle, the first one's after the start
     """
 
-    begin: int
+    begin: int | Seed
     given: Mapping[str, int]
     moves: tuple[Mapping[str, int], ...]
 
@@ -41,12 +41,15 @@ class Looked:
     covered: int
 
 
-def shortest(system: Watch, effort: Effort, deepest: int = DEEPEST) -> Looked:
-    """Unroll until a run breaks the claim, the depth is reached or the effort runs out. Where values that x stands
-    for decide, they are 0: a run of theirs could not be replayed."""
+def shortest(
+    system: Watch, effort: Effort, deepest: int = DEEPEST, seeds: Sequence[Seed] | None = None
+) -> Looked:
+    """Unroll until a run breaks the claim, the depth is reached or the effort runs out: from all beginnings, or from
+    the seeds where these are given. Where values that x stands for decide, they are 0: a run of theirs could not be
+    replayed."""
     import z3
 
-    chains = [_Chain(system, number) for number in range(len(system.begins))]
+    chains = [_Chain(system, begin) for begin in (range(len(system.begins)) if seeds is None else seeds)]
     depth = 0
     for depth in range(deepest):
         effort.doing = f"unrolling {depth + 1} half-cycles"
@@ -66,16 +69,21 @@ def shortest(system: Watch, effort: Effort, deepest: int = DEEPEST) -> Looked:
 class _Chain:
     """The steps from one beginning so far."""
 
-    def __init__(self, system: Watch, number: int) -> None:
+    def __init__(self, system: Watch, begin: int | Seed) -> None:
         import z3
 
-        self.system, self.number, self.depth = system, number, 0
+        self.system, self.begin, self.depth = system, begin, 0
         self.solver: Any = z3.SolverFor("QF_BV")
         self.memo: dict[e.Expr, Any] = {}
-        values, given = system.begins[number]
-        self.state: Sequence[e.Expr] = values
-        self.given = given
-        self._add(given)
+        if isinstance(begin, Seed):
+            # The pulse there is not seen to begin: what breaks the claim has to begin later.
+            at = {**begin.registers, **begin.inputs}
+            self.state: Sequence[e.Expr] = [
+                e.const(at.get(name, 0), width) for name, width in system.variables
+            ]
+        else:
+            self.state, given = system.begins[begin]
+            self._add(given)
 
     def _add(self, condition: e.Expr) -> None:
         (term,) = e.z3_terms([condition], self.memo)
@@ -111,12 +119,14 @@ class _Chain:
             return int(found.as_long())
 
         machine = self.system.machine
-        begin = machine.begins[self.number]
-        given = {name: value(name, width) for name, width in (*machine.rigid, *begin.free)}
-        first = {name: value(name, width) for name, width in machine.moving}
-        given |= {name: value(FIRST + name, width) for name, width in machine.moving}
         steps = [
             {name: value(f"{name}@{depth}", width) for name, width in self.system.moves}
             for depth in range(self.depth + 1)
         ]
-        return Broken(self.number, given, (first, *steps))
+        if isinstance(self.begin, Seed):
+            return Broken(self.begin, self.begin.inputs, (self.begin.inputs, *steps))
+        free = machine.begins[self.begin].free
+        given = {name: value(name, width) for name, width in (*machine.rigid, *free)}
+        first = {name: value(name, width) for name, width in machine.moving}
+        given |= {name: value(FIRST + name, width) for name, width in machine.moving}
+        return Broken(self.begin, given, (first, *steps))

@@ -46,6 +46,22 @@ LEAST, MOST = ("!least low", "!least high"), ("!most low", "!most high")
 of each are the ends for both."""
 
 
+@dataclass(frozen=True, slots=True)
+class Seed:
+    """A place on the orbit of a start state, which runs may begin at because its inputs have stood still until then.
+
+    registers  values of all registers and the clock, by name
+    inputs     those of the moving inputs
+    edges      half-cycles since the output changed last
+    cause      how it comes about
+    """
+
+    registers: Mapping[str, int]
+    inputs: Mapping[str, int]
+    edges: int
+    cause: str
+
+
 @dataclass(frozen=True)
 class Watch:
     """The transition system.
@@ -56,6 +72,7 @@ class Watch:
     within     one bit over the variables: the inputs have values for which the claim is made
     allowed    one bit over variables and moves: the moves that the claim allows, which keep within
     broken     one bit over the same: the claim is broken in this step
+    bits       what the bits of WHEN say, over the machine's variables
     longest    for `after`: half-cycles that no low and no high pulse may exceed
     begins     where runs begin: each variable over free variables, and one bit that says for which of these
     """
@@ -69,6 +86,7 @@ class Watch:
     within: Expr
     allowed: Expr
     broken: Expr
+    bits: Mapping[str, Expr]
     longest: tuple[int, int]
     begins: tuple[tuple[tuple[Expr, ...], Expr], ...]
 
@@ -161,6 +179,7 @@ class _Builder:
             within=e.conj([self.within(), *(e.eq(e.var(n, 1), bit) for n, bit in self.when.items())]),
             allowed=self.allowed(),
             broken=broken,
+            bits=self.when,
             longest=self.longest,
             begins=tuple(self.begins()),
         )

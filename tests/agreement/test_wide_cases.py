@@ -8,7 +8,7 @@ import json
 
 import pytest
 from cases_format import CASES, Case, Group, read_case
-from test_cases import check_starts, named, run
+from test_cases import check_moves, check_starts, named, run
 
 ALL = [
     (case, group)
@@ -31,6 +31,8 @@ def test_a_wide_case_is_judged_as_it_states(case: Case, group: Group) -> None:
                 stated.worst,
                 stated.exact,
             )
+    for name, moves in group.moves.items():
+        check_moves(found[name], moves)
     assert "recovery" in group.properties
     if group.from_reset is not None:
         check_starts(report["measured"], group.from_reset)
