@@ -675,8 +675,6 @@ class Targets:
 def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Status:
     spec = _spec(options)
     check_targets(targets.paths(), files)
-    if targets.certificate is not None and spec.each:
-        raise UserError("--certificate with --each", hint="check one value at a time, with --hold")
     dividers = _groups(files, spec)
     if dividers is not None:
         crew = _crew(options["workers"], options["cluster"])

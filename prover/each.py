@@ -8,8 +8,8 @@ order of the inputs as they are given, the last one changing fastest.
 from __future__ import annotations
 
 import itertools
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from typing import TYPE_CHECKING
 
@@ -33,6 +33,7 @@ from prover.ports import Ports, recognise
 from prover.spec import Ranges, Spec
 
 if TYPE_CHECKING:
+    from prover.family import Proof
     from prover.together import Together
 
 ENUMERATED = 256
@@ -68,6 +69,45 @@ class ValueRow:
 
 
 @dataclass(frozen=True, slots=True)
+class AtOnce:
+    """What a proof of all values at once comes to, but for those that are judged singly.
+
+    why     by property, why it is not known for the values that are not judged singly; "" if it is
+    first_known  properties of which the first value that fails, if there is one, is among those judged singly
+    dues    timing obligations that hold for all values together, by property
+    singly  values to be judged singly: those that the proof does not hold for, and those that decide something
+    ratios  the least and the greatest ratio that is claimed of the others, in input cycles, as far as they are known
+    bound   the greatest bound on their recovery, in half-cycles; `bounds` as they hang on the inputs
+    shapes  shapes of paths that are proved
+    """
+
+    why: Mapping[str, str]
+    first_known: frozenset[str]
+    dues: Mapping[str, tuple[Obligation, ...]]
+    singly: tuple[Values, ...]
+    ratios: tuple[Fraction, Fraction] | None
+    bound: int | None
+    bounds: tuple[str, ...]
+    shapes: int
+
+
+def bounds_text(proof: Proof) -> tuple[str, ...]:
+    """The bounds on the recovery, as they hang on the inputs."""
+    return tuple(dict.fromkeys(str(bound) for _, claim in proof.everywhere or () for bound in claim.bounds))
+
+
+@dataclass(frozen=True, slots=True)
+class Basis:
+    """What a report on each value rests on: the design, the claim as it was given, the report on each value that was
+    judged singly, and the proof of all others."""
+
+    design: Design
+    spec: Spec
+    reports: tuple[tuple[Values, Report], ...]
+    together: Together | None
+
+
+@dataclass(frozen=True, slots=True)
 class Each:
     """What a report on each value of some inputs covers.
 
@@ -78,6 +118,7 @@ class Each:
     shapes  shapes of paths that were proved for all other values at once; 0 where each was judged by itself
     shown   the value that the report's rhythm, facts and waves are about
     rows    all values that were judged, grouped
+    basis   what it rests on, while it is in the process that judged it
     """
 
     inputs: tuple[tuple[str, Ranges], ...]
@@ -89,6 +130,7 @@ class Each:
     shapes: int
     shown: dict[str, int]
     rows: tuple[ValueRow, ...]
+    basis: Basis | None = field(init=False, default=None, repr=False, compare=False)
 
     @property
     def domain(self) -> str:
@@ -111,11 +153,12 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     if not spec.each:
         return judge(design, in_numbers(design, spec), effort)
     domain = Domain.of(design, spec)
-    spec = _with_roles(spec, recognise(rigid(design, spec.each), spec))
-    found = _Merged(spec, domain)
+    given, spec = spec, with_roles(spec, recognise(rigid(design, spec.each), spec))
+    found = Merged(spec, domain)
     count = domain.count
     values: Iterator[dict[str, int]] = itertools.islice(domain.values(), ENUMERATED)
     most, why = min(count or ENUMERATED, ENUMERATED), ""
+    proved: Together | None = None
     if count is None or count > ENUMERATED:
         from prover.together import prove
 
@@ -123,9 +166,10 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
         if isinstance(together, str):
             why = together
         else:
-            found.together = together
-            values, most = iter(together.singly), len(together.singly)
-            if count is not None and count <= MOST_ENUMERATED and any(together.why.values()):
+            found.together = together.at_once
+            proved, singly = together, together.at_once.singly
+            values, most = (dict(each) for each in singly), len(singly)
+            if count is not None and count <= MOST_ENUMERATED and any(together.at_once.why.values()):
                 values, most = domain.values(), count
     for number, each in enumerate(values):
         effort.doing = f"judging {values_text(each)}"
@@ -139,10 +183,13 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
                 raise
         if effort.left <= 0:
             break
-    return found.report(count, why)
+    made = found.report(count, why)
+    if made.each is not None:
+        object.__setattr__(made.each, "basis", Basis(design, given, tuple(found.reports), proved))
+    return made
 
 
-def _with_roles(spec: Spec, ports: Ports) -> Spec:
+def with_roles(spec: Spec, ports: Ports) -> Spec:
     """The claim with the ports named as they were recognised for all values together."""
     reset = f"{ports.reset.port}={ports.reset.active}" if ports.reset else None
     holds = {name: value for name, value in ports.holds.items() if name not in spec.each}
@@ -189,7 +236,7 @@ def _worst(finding: Finding) -> int:
     return worst if isinstance(worst, int) else -1
 
 
-class _Merged:
+class Merged:
     """The values' reports, made one as they come in."""
 
     def __init__(self, spec: Spec, domain: Domain) -> None:
@@ -197,16 +244,14 @@ class _Merged:
         self.domain = domain
         self.tallies: dict[str, _Tally] = {}
         self.rows: list[ValueRow] = []
-        self.reports: dict[Verdict, Report] = {}
+        self.reports: list[tuple[Values, Report]] = []
         self.tried = 0
-        self.judged: list[Values] = []
-        self.together: Together | None = None
+        self.together: AtOnce | None = None
 
     def add(self, values: Values, report: Report) -> None:
         """Take in the report on the next value."""
         self.tried += 1
-        self.judged.append(values)
-        self.reports.setdefault(overall(report.findings), report)
+        self.reports.append((values, report))
         for finding in report.findings:
             self.tallies.setdefault(finding.name, _Tally()).add(_Found(values, finding, report))
         row = _row(values, report)
@@ -217,7 +262,10 @@ class _Merged:
 
     def report(self, count: int | None, why: str) -> Report:
         """All in one: about the value that is refuted first, else that is open first, else the first of all."""
-        shown = next(self.reports[v] for v in ("refuted", "open", "proved") if v in self.reports)
+        verdicts: dict[Verdict, Report] = {}
+        for _, report in self.reports:
+            verdicts.setdefault(overall(report.findings), report)
+        shown = next(verdicts[v] for v in ("refuted", "open", "proved") if v in verdicts)
         findings = [self._finding(name, tally, shown, count, why) for name, tally in self.tallies.items()]
         held = {name: shown.spec.holds[name] for name in self.spec.each}
         each = Each(
@@ -305,7 +353,8 @@ class _Merged:
         """Why a property is not known for the values that were not judged by themselves, "" if it is."""
         if self.together is None:
             return why or "there was no time for them"
-        left = [values for values in self.together.singly if values not in self.judged]
+        judged = [values for values, _ in self.reports]
+        left = [values for values in self.together.singly if values not in judged]
         if left:
             return f"there was no time for {values_text(left[0])}"
         return self.together.why.get(name, "this property is judged one value at a time")

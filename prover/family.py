@@ -224,9 +224,7 @@ def course_obligations(
     """No step of the courses is other than claimed, and every pass has a round. Raises Unfit for courses that are
     none of this machine."""
     for course in courses:
-        _check_form(system, (*course.lead, *course.loop))
-        if not course.loop:
-            raise Unfit("a course without a loop")
+        check_course(system, course)
     groups: dict[Axes, dict[Step, None]] = {}
     times: dict[Poly, None] = {}
     for course in courses:
@@ -247,6 +245,13 @@ def course_obligations(
         for step in members:
             wrong = e.bvor(wrong, _differs(system, step, moves))
         yield Obligation(f"{name}: steps {number}", e.conj([premise, within, wrong]))
+
+
+def check_course(system: System, course: Course) -> None:
+    """Raise Unfit for a course that is none of the machine's."""
+    _check_form(system, (*course.lead, *course.loop))
+    if not course.loop:
+        raise Unfit("a course without a loop")
 
 
 def _check_form(system: System, track: Sequence[Part]) -> None:
@@ -550,6 +555,8 @@ def layer_obligations(
         raise Unfit("not as many recoveries as courses")
     if layer.merge < 0 or (layer.unrolled or 0) < 0 or any(behind < 0 for behind, _ in layer.recoveries):
         raise Unfit("less than nothing")
+    for course in layer.courses:
+        check_course(system, course)
     whole = [written_out(course) for course in layer.courses]
     yield from course_obligations(system, premise, layer.courses, "courses")
     for number, (course, (behind, recovery)) in enumerate(zip(whole, layer.recoveries, strict=True)):
@@ -798,6 +805,12 @@ class Starts:
 
 def starts_obligations(origin: Origin, premise: Expr, starts: Starts) -> Iterator[Obligation]:
     """These are the start states, and these the courses that they run through. Raises Unfit."""
+    for course in starts.courses:
+        check_course(origin.system, course)
+    for state in starts.held.states if starts.held is not None else ():
+        if origin.resetting is None:
+            raise Unfit("states that reset leaves, and no reset")
+        _check_form(origin.resetting, (Point(state, 0),))
     firsts = [first_point(course.lead or course.loop).state for course in starts.courses]
     yield from start_obligations(origin, premise, starts.held, firsts)
     yield from course_obligations(origin.system, premise, starts.courses, "from the start")

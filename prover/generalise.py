@@ -29,7 +29,7 @@ from prover.family import Claim, Course, Everywhere, Held, Layer, Pass, Piece, P
 from prover.forms import ONE, ZERO, Beyond, Poly, at_least
 from prover.path import Beat, Item, Path, Repeat
 from prover.rhythm import Goal, Orbit
-from prover.rigid import Machines
+from prover.sample import Machines
 from prover.solve import find
 from prover.system import State, System
 

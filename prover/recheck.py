@@ -30,8 +30,10 @@ from prover.report.certificate import SCHEMA, Subject
 from prover.spec import Spec
 
 COMPARED = "subharmonic/comparison-certificate-1"
+VALUES = "subharmonic/values-certificate-1"
 KEYS = {
     SCHEMA: ("claim", "options", "sources", "evidence", "obligations"),
+    VALUES: ("claim", "options", "sources", "evidence", "obligations"),
     COMPARED: ("asked", "sides", "evidence", "obligations"),
 }
 """By schema: what has to be there for anything else to be looked at."""
@@ -173,6 +175,10 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
         from prover.pair_recheck import derive as derive_pair
 
         return derive_pair(stated, text, bases, effort)
+    if stated["schema"] == VALUES:
+        from prover.values_recheck import derive as derive_values
+
+        return derive_values(stated, text, bases, effort)
     subject = _subject(stated)
     base = base_of(subject, bases)
     effort.say("reading the sources")
@@ -297,23 +303,30 @@ def base_of(subject: Subject, bases: Sequence[Path]) -> Path:
 
 def _ports(subject: Subject, base: Path) -> Ports:
     """The design read anew and its ports. Raises Rejected where other files are read than stated."""
+    design = design_of(subject, base)
+    try:
+        return recognise(design, subject.spec)
+    except UserError as fault:
+        raise Rejected(f"the sources can't be read as the certificate says: {fault.message}") from None
+
+
+def design_of(subject: Subject, base: Path) -> Design:
+    """The design read anew. Raises Rejected where other files are read than stated."""
     from prover.verilog import read_design
 
     spec = subject.spec
-    include = tuple(str(base / folder) for folder in subject.include)
     try:
         design = read_design(
             [base / name for name in subject.files],
             module=spec.module,
             defines=spec.defines,
-            include=include,
+            include=tuple(str(base / folder) for folder in subject.include),
             parameters=spec.parameters,
         )
-        ports = recognise(design, replace(spec, include=include))
     except UserError as fault:
         raise Rejected(f"the sources can't be read as the certificate says: {fault.message}") from None
     check_files(design, subject, base)
-    return ports
+    return design
 
 
 def check_files(design: Design, subject: Subject, base: Path) -> None:

@@ -2,25 +2,25 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
+from itertools import chain
 
 from prover import expr as e
 from prover import family, glitch
-from prover import findings as timing
 from prover.certificate import Obligation, discharge
-from prover.design import Design, Register
+from prover.design import Design
 from prover.domain import Domain, Values
+from prover.each import AtOnce, bounds_text
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.expr import Expr
 from prover.family import Claim, Piece, Proof, Unfit
 from prover.forms import Beyond, Poly, at_least
 from prover.generalise import Found, FromEverywhere, FromStarts, Kind, Lost, Search, cases_at, least
-from prover.good import Scope
-from prover.rigid import Machines
-from prover.solve import find
+from prover.rigid import bound_obligations
+from prover.sample import Machines
+from prover.solve import Model, find
 from prover.spec import Spec
 
 
@@ -30,28 +30,14 @@ class Together:
 
     machines  the divider for all values
     proof     what holds of it, every obligation discharged
-    why       by property, why it is not known for the values that no one judges by themselves; "" if it is
-    first_known  properties of which the first value that fails, if there is one, is among those judged by themselves
-    dues      timing obligations that hold for all values together, by property
-    singly    values to be judged by themselves: those that no piece holds, and those that decide something
-    ratios    the least and the greatest ratio that is claimed in the pieces, in input cycles
-    bound     the greatest bound on the recovery in the pieces, in half-cycles; `bounds` as they hang on the inputs
+    glitches  the answers to the questions about glitches
+    at_once   what it comes to
     """
 
     machines: Machines
     proof: Proof
-    why: Mapping[str, str]
-    first_known: frozenset[str]
-    dues: Mapping[str, tuple[timing.Obligation, ...]]
-    singly: tuple[dict[str, int], ...]
-    ratios: tuple[Fraction, Fraction] | None
-    bound: int | None
-    bounds: tuple[str, ...]
-
-    @property
-    def shapes(self) -> int:
-        """Pieces in all."""
-        return len(self.proof.starts or ()) + len(self.proof.everywhere or ())
+    glitches: tuple[Model | None, ...]
+    at_once: AtOnce
 
 
 def prove(design: Design, spec: Spec, domain: Domain, effort: Effort) -> Together | str:
@@ -104,9 +90,6 @@ class _Proof:
         if machines.ports.reset is not None:
             # What comes of a flip-flop that is released late is a power-up state, from which the wave comes right.
             why["reset"] = why.get("reset", "the claim does not begin at reset") or why_everywhere
-            why["reset"] = why["reset"] or self._too_short(starts)
-        glitches = self._glitches(everywhere, starts) if not why_everywhere else None
-        why["glitch-free"] = why_everywhere if glitches is None else glitches.open
         bound = self._worst(everywhere) if not why_everywhere else None
         singly = tuple(sorted(self.singly.values(), key=lambda values: list(values.values())))
         proof = Proof(
@@ -117,69 +100,47 @@ class _Proof:
             why.get("reset", "no reset") == "",
             singly,
         )
-        self._check(proof)
-        bounds = tuple(dict.fromkeys(str(b) for _, claim in proof.everywhere or () for b in claim.bounds))
-        dues = self._dues(glitches)
-        return Together(machines, proof, why, frozenset(known), dues, singly, self._ratios(), bound, bounds)
+        if "reset" in why:
+            why["reset"] = why["reset"] or machines.too_short(proof)
+        glitches = self._glitches(proof) if proof.everywhere is not None else None
+        why["glitch-free"] = why_everywhere if glitches is None else glitches.open
+        self._check(proof, bound)
+        at_once = AtOnce(
+            why=why,
+            first_known=frozenset(known),
+            dues=machines.dues(glitches),
+            singly=singly,
+            ratios=self._ratios(),
+            bound=bound,
+            bounds=bounds_text(proof),
+            shapes=len(proof.starts or ()) + len(proof.everywhere or ()),
+        )
+        return Together(machines, proof, glitches.answers if glitches else (), at_once)
 
-    def _dues(self, glitches: glitch.Glitches | None) -> dict[str, tuple[timing.Obligation, ...]]:
-        """What timing analysis has to show, whatever the value: every register that sees the reset may be late."""
-        ports, races = self.machines.ports, self.machines.settling.races
-        port = ports.reset.port if ports.reset else ""
-        late = [
-            timing.Obligation(
-                f"the release of {port} has to meet recovery and removal at every flip-flop of {register.name} "
-                "before the same clock edge as elsewhere: where one sees it an edge later, the first pulse or gap "
-                "may have another length",
-                register.where,
-                register.name,
-            )
-            for register in ports.design.registers
-            if port and register.kind != "loop" and _sees(register, port)
-        ]
-        return {
-            "settling": tuple(
-                timing.Obligation(r.text, r.where, r.register) for r in races if r.kind != "pulse"
-            ),
-            "reset": tuple(late),
-            "glitch-free": tuple(
-                timing.Obligation(d.text, d.where, d.register) for d in (glitches.dues if glitches else ())
-            ),
-        }
-
-    def _glitches(self, everywhere: Found, starts: Found | None) -> glitch.Glitches:
+    def _glitches(self, proof: Proof) -> glitch.Glitches:
         """Whether the output may pulse on a step from a state of a loop, at any value."""
-        machines, regions = self.machines, []
+        machines = self.machines
         machines.effort.say("looking for glitches at every value")
-        for piece, claim in (*everywhere.pieces, *(starts.pieces if starts else ())):
-            regions += family.regions(machines.system, self._premise(piece), claim.courses)
-        seen = Scope(tuple(regions), "every state on a loop, at every value")
+
+        def ask(goal: Expr) -> Model | None:
+            return find(goal, machines.effort)
+
         found = glitch.find(
-            machines.ports,
-            machines.with_inputs,
-            seen,
-            lambda state: None,
-            lambda goal: find(goal, machines.effort),
+            machines.ports, machines.with_inputs, machines.on_loops(proof), lambda state: None, ask
         )
         for number, goal in enumerate(found.goals):
             if not discharge(Obligation(f"glitches {number}", goal), machines.effort):
                 raise InternalError("the absence of a glitch fails its check")
         return found
 
-    def _too_short(self, starts: Found | None) -> str:
-        """Whether reset is held for less than it needs."""
-        cycles = self.machines.spec.reset_cycles
-        needs = [claim.held.half_cycles for _, claim in (starts.pieces if starts else ()) if claim.held]
-        late = cycles is not None and any(count > 2 * cycles for count in needs)
-        return f"reset needs {max(needs)} half-cycles, which is more than it is held for" if late else ""
-
-    def _check(self, proof: Proof) -> None:
+    def _check(self, proof: Proof, bound: int | None) -> None:
         """Ask every obligation afresh."""
         machines = self.machines
         machines.effort.say("checking what was found for all values")
-        owed = family.proof_obligations(
+        proved = family.proof_obligations(
             machines.origin(), self.admitted, dict(machines.inputs), self.claim, proof
         )
+        owed = chain(proved, bound_obligations(machines, proof, bound) if bound is not None else ())
         faults = family.faults(owed, lambda each: discharge(each, machines.effort))
         if faults:
             raise InternalError(f"what was found for all values fails its check: {'; '.join(faults[:3])}")
@@ -304,9 +265,3 @@ class _Proof:
                 if most is not None:
                     ends.append(abs(Fraction(most[0], 2)))
         return (min(ends), max(ends)) if ends else None
-
-
-def _sees(register: Register, port: str) -> bool:
-    used = [x for edge in register.edges for x in (edge.clock, edge.data)]
-    used += [x for force in register.forces for x in (force.when, force.value)]
-    return any(v.name == port for v in e.variables(used))

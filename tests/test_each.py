@@ -223,7 +223,6 @@ def test_names_of_parameters_and_held_inputs_may_be_used_without_any_value_tried
         (["--each", "div", "--ratio", "4/div"], "divides by zero at div=0"),
         (["--each", "div", "--ratio", "4", "--where", "div > 20"], "no value"),
         (["--hold", "div=2", "--ratio", "6", "--where", "div > 2"], "--where without --each"),
-        (["--each", "div", "--ratio", "2*(div+1)", "--certificate", "c.json"], "--certificate with --each"),
     ],
 )
 def test_a_claim_that_means_nothing_is_refused(options: list[str], words: str, tmp_path: Path) -> None:

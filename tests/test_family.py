@@ -23,7 +23,7 @@ from prover.effort import Effort
 from prover.family import Claim, Proof
 from prover.findings import Report
 from prover.forms import Poly
-from prover.rigid import Machines
+from prover.sample import Machines
 from prover.spec import Spec
 from prover.together import Together, prove
 
@@ -97,7 +97,9 @@ def subject(tmp_path: Path) -> Callable[[str], tuple[Together, Machines, Claim]]
             together = prove(design, spec, domain, Effort(120))
             assert isinstance(together, Together)
             # A comparison with the running count may pulse on the way; all else is known of every subject.
-            assert not any(why for name, why in together.why.items() if name != "glitch-free"), together.why
+            assert not any(why for name, why in together.at_once.why.items() if name != "glitch-free"), (
+                together.at_once.why
+            )
             claim = Claim(spec.ratio_formula or Fraction(1), spec.high_formula, domain.fixed)
             _proved[name] = together, together.machines, claim
         return _proved[name]

@@ -61,6 +61,10 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
     from properties import judge_all
     from prover.collect import collect
 
+    if report.each is not None:
+        from prover.report import values_certificate
+
+        return values_certificate.certify(report, files, effort)
     standing = report.standing or report
     if standing.each is not None:
         raise UserError("--certificate while the ratio moves", hint="check one value at a time, with --hold")
