@@ -2,9 +2,13 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from prover.findings import Fact, Finding
-from prover.moves import Moves
 from prover.spec import Spec
+
+if TYPE_CHECKING:
+    from prover.moves import Moves
 
 NAME = "enable"
 
