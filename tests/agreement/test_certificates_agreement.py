@@ -33,7 +33,13 @@ LONG = "SUBHARMONIC_LONG" in os.environ
 
 SLOW = ("cascade_three", "cascade_three_eq", "ring_64_twisted_fixed")
 
-EVERY = [(case, group) for case in cases(*FOLDERS) for group in case.groups if not group.error]
+# A claim for each value of an input, held or moving, has no certificate: it is refused, as other tests have it.
+EVERY = [
+    (case, group)
+    for case in cases(*FOLDERS)
+    for group in case.groups
+    if not group.error and "--each" not in group.options and "ratio-change" not in group.properties
+]
 ALL = EVERY if LONG else [pair for pair in EVERY[::4] if pair[0].path.stem not in SLOW]
 
 
