@@ -33,7 +33,8 @@ LONG = "SUBHARMONIC_LONG" in os.environ
 
 SLOW = ("cascade_three", "cascade_three_eq", "ring_64_twisted_fixed")
 
-# A claim for each value of an input, held or moving, has no certificate: it is refused, as other tests have it.
+# A claim for each value of an input has a certificate of another form, and one of a ratio that moves has none: other
+# tests are about these.
 EVERY = [
     (case, group)
     for case in cases(*FOLDERS)
