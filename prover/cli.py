@@ -573,7 +573,7 @@ def _pairing(options: dict[str, Any]) -> Pairing:
         new=side("new"),
         holds=_numbers(options["holds"], "--hold"),
         maps=_pairs(options["maps"], "--map"),
-        moving=tuple(dict.fromkeys(options["moving"])),
+        moving=tuple(dict.fromkeys(name.strip() for name in options["moving"])),
         start=options["start"],
         lag=0 if lag is None else None if lag == "any" else read_number(lag, "--lag"),
         settled=options["after"] is not None,

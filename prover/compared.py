@@ -359,7 +359,7 @@ def on_loops(rhythm: Rhythm) -> Rhythm:
     runs: dict[tuple[tuple[int, int], ...], list[Orbit]] = {}
     for loop in rhythm.loops:
         orbit = rhythm.shown.get(loop.example)
-        if orbit is None or len(runs) == MOST_LOOPS:
+        if orbit is None or not orbit.closed or len(runs) == MOST_LOOPS:
             continue
         first = loop.example[-1]
         if loop.wave.runs not in runs:

@@ -93,23 +93,41 @@ def _settled(pair: Pair, pairing: Pairing, effort: Effort) -> Outcome:
     """The loops that all power-up states of each run into, for every value of the shared inputs."""
     if pair.input_bits > LISTED:
         return Outcome("open", f"{pair.input_bits} bits of inputs: too many values to follow each")
-    followed = []
-    for inputs in _values(pair):
-        ports = pair.held_at(inputs)
-        old, new = (_loops(*both, effort) for both in zip(ports, (pairing.old, pairing.new), strict=True))
-        followed.append(Followed(inputs, ports, (old, new)))
-    return compared.of_loops(Apiece(tuple(followed)), pairing.lag, effort)
+    values = [(inputs, pair.held_at(inputs)) for inputs in _values(pair)]
+    sides = [
+        (ports, replace(spec, start="any"))
+        for _, both in values
+        for ports, spec in zip(both, (pairing.old, pairing.new), strict=True)
+    ]
+    found = [analyse.from_power_up(*side, None, effort) for side in sides]
+    for place, (side, rhythm) in enumerate(zip(sides, found, strict=True)):
+        part = effort.share(effort.left / (len(sides) - place + 1))
+        found[place] = _with_loops(_timed(*side, rhythm, part), effort)
+    pairs = zip(found[::2], found[1::2], strict=True)
+    followed = tuple(Followed(*value, both) for value, both in zip(values, pairs, strict=True))
+    return compared.of_loops(Apiece(followed), pairing.lag, effort)
 
 
-def _loops(ports: Ports, spec: Spec, effort: Effort) -> Rhythm:
-    """All loops, with a state of each; and how long any state takes to show the wave, if they all show one."""
-    spec = replace(spec, start="any")
-    rhythm = analyse.from_power_up(ports, spec, None, effort)
+def _timed(ports: Ports, spec: Spec, rhythm: Rhythm, effort: Effort) -> Rhythm:
+    """How long any state takes to show the wave, where all loops show one; as it is where that is not found out."""
     waves = {loop.wave for loop in rhythm.loops}
-    if rhythm.complete and len(waves) == 1 and len(rhythm.loops[0].wave.runs) == 2:
-        (wave,) = waves
+    if not rhythm.complete or len(waves) != 1:
+        return rhythm
+    (wave,) = waves
+    if len(wave.runs) != 2:
+        return rhythm
+    try:
         goal = Goal(wave.period or 0, wave.high or 0)
-        rhythm = analyse.from_power_up(ports, spec, goal, effort)
+        timed = analyse.from_power_up(ports, spec, goal, effort)
+    except OutOfEffort:
+        return rhythm
+    return timed if timed.complete else rhythm
+
+
+def _with_loops(rhythm: Rhythm, effort: Effort) -> Rhythm:
+    """The rhythm with states on its loops, one for each wave, as starts."""
+    if not rhythm.complete:
+        return rhythm
     shown = dict(rhythm.shown)
     seen: set[Wave] = set()
     for loop in rhythm.loops:

@@ -88,11 +88,13 @@ def _settled(shown: Apiece, comparison: Comparison, effort: Effort) -> Settled |
 
 
 def _shows(ports: Ports, rhythm: Rhythm, spec: Spec, effort: Effort) -> Shows | None:
-    """What one divider comes to show, and the evidence; None where that is constant or has several pulses."""
+    """What one divider comes to show, and the evidence; None where that is constant or has several pulses, or where
+    the evidence can't be written."""
     wave = rhythm.loops[0].wave
-    if len(wave.runs) != 2:
+    if len(wave.runs) != 2 or rhythm.recovery is None or rhythm.recovery.worst is None:
         return None
     period, high = wave.period or 0, wave.high or 0
     bare = replace(rhythm, scope="any", starts=(), orbits=())
     report = Report(ports, claim_of(spec, period, high), bare, (), {}, (), (), 0.0)
-    return Shows(period, high, single.collect(report, effort, glitches=False))
+    found = single.collect(report, effort, glitches=False)
+    return None if found.everywhere is None else Shows(period, high, found)
