@@ -6,7 +6,6 @@ These are the first of the 2 000 that tests/agreement/test_fuzz_long.py runs.
 from __future__ import annotations
 
 import os
-import time
 from pathlib import Path
 
 import pytest
@@ -47,12 +46,9 @@ def survives(seed: int, folder: Path) -> int:
         "--vcd",
         "out.vcd",
     ]
-    began = time.monotonic()
     result = CliRunner().invoke(cli.main, arguments)
-    took = time.monotonic() - began
     about = f"seed {seed}: {result.output[-2000:]}"
     assert result.exit_code in (0, 1, 2, 3), about
-    assert took < 10 * EFFORT + 20, about
     left = sorted(os.listdir(folder))
     if result.exit_code == 2:
         assert result.stdout == "", about

@@ -29,19 +29,19 @@ ALTERATIONS = 8
 """Alterations tried of each certificate; there are some two hundred certificates."""
 
 LONG = "SUBHARMONIC_LONG" in os.environ
-"""All of them, which takes half an hour; else every fourth, and of the wide ones those that take seconds."""
+"""All of them, which takes half an hour; else every eighth, and of the wide ones those that take seconds."""
 
 SLOW = ("cascade_three", "cascade_three_eq", "ring_64_twisted_fixed")
 
-# A claim for each value of an input has a certificate of another form, and one of a ratio that moves has none: other
-# tests are about these.
+# A claim for each value of an input or for one that moves has a certificate of another form or none: other tests are
+# about these.
 EVERY = [
     (case, group)
     for case in cases(*FOLDERS)
     for group in case.groups
-    if not group.error and "--each" not in group.options and "ratio-change" not in group.properties
+    if not group.error and not {"--each", "--moving"} & set(group.options)
 ]
-ALL = EVERY if LONG else [pair for pair in EVERY[::4] if pair[0].path.stem not in SLOW]
+ALL = EVERY if LONG else [pair for pair in EVERY[::8] if pair[0].path.stem not in SLOW]
 
 
 @pytest.fixture(autouse=True)
