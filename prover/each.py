@@ -36,8 +36,12 @@ if TYPE_CHECKING:
     from prover.family import Proof
     from prover.together import Together
 
-ENUMERATED = 256
+ENUMERATED = 64
 """Values up to which each is judged by itself without looking for a proof of all at once."""
+
+FEW, SHARE_OF_FEW, SHARE = 512, 0.1, 0.75
+"""Values up to which judging each takes no longer than a search; the share of the effort that a proof of all at once
+may take for so few, and for more."""
 
 MOST_ENUMERATED = 1 << 14
 """Values up to which each is judged by itself, while there is effort, where not all can be had at once."""
@@ -156,13 +160,14 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     given, spec = spec, with_roles(spec, recognise(rigid(design, spec.each), spec))
     found = Merged(spec, domain)
     count = domain.count
-    values: Iterator[dict[str, int]] = itertools.islice(domain.values(), ENUMERATED)
-    most, why = min(count or ENUMERATED, ENUMERATED), ""
+    values: Iterator[dict[str, int]] = itertools.islice(domain.values(), MOST_ENUMERATED)
+    most, why = min(count or MOST_ENUMERATED, MOST_ENUMERATED), ""
     proved: Together | None = None
     if count is None or count > ENUMERATED:
         from prover.together import prove
 
-        together = prove(design, spec, domain, effort.share(effort.left * 0.75))
+        share = SHARE_OF_FEW if count is not None and count <= FEW else SHARE
+        together = prove(design, spec, domain, effort.share(effort.left * share))
         if isinstance(together, str):
             why = together
         else:
@@ -185,7 +190,8 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
             break
     made = found.report(count, why)
     if made.each is not None:
-        object.__setattr__(made.each, "basis", Basis(design, given, tuple(found.reports), proved))
+        basis = Basis(design, given, tuple(found.reports), proved if found.tried != count else None)
+        object.__setattr__(made.each, "basis", basis)
     return made
 
 

@@ -163,6 +163,19 @@ def agrees(report: Report, found: dict[int, brute.BruteResult[State]]) -> None:
     assert listed == sorted(found)
 
 
+def test_every_value_of_eight_bits_is_proved() -> None:
+    path = Path(__file__).parents[1] / "cases" / "gauge" / "sample_by_div.v"
+    spec = Spec(ratio_formula=formula.read("2*(div+1)", "--ratio"), each={"div": None}, parameters={"W": 8})
+    report = check([path], spec)
+    assert report.verdict == "proved"
+    assert report.each is not None
+    assert report.each.count == 256
+    assert report.each.shapes > 0
+    # From all ones the counter runs down to 0, 255 cycles, with the clock just risen.
+    recovery = next(finding for finding in report.findings if finding.name == "recovery")
+    assert (recovery.facts["worst_half_cycles"], recovery.facts["exact"]) == (510, True)
+
+
 def test_a_counterexample_is_of_the_machine_at_its_own_value(tmp_path: Path) -> None:
     # The ratio fails at 0 only (counted in the formula as 3), the high time at 2 only.
     options = [

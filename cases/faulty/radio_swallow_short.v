@@ -1,6 +1,6 @@
 // Radio clock by 4·b + a that swallows an extra cycle in a of b rounds, claimed for every pair of values: where a is
 // greater than b there are not rounds enough to swallow in, and by 2 and 3 it divides by 10 instead of 11.
-// check: --each b=2..15 --each a --ratio 4*b+a --high '10 if a > 0 else 8'
+// check: --each b=2..9 --each a --ratio 4*b+a --high '10 if a > 0 else 8'
 // verdict: refuted
 // ratio: refuted
 // high-time: proved

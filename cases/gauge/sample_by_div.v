@@ -13,7 +13,7 @@
 // from reset: period 4, high 2
 // loops: 1
 // false loops: 0
-// check: --set W=8 --each div=3..40 --ratio 2*(div+1) --high 2*div+2
+// check: --set W=8 --each div=3..255 --ratio 2*(div+1) --high 2*div+2
 // verdict: proved
 // ratio: proved
 // high-time: proved
