@@ -80,7 +80,7 @@ class Rigid:
             seen = reset.seen_by(self.ports)
             limit = max(self.settling.depth or 0, 2 * len(self.ports.design.registers) + 8)
             resetting = None
-            if seen.reset is not None and self.spec.start != "initial":
+            if seen.reset is not None and self.spec.start in (None, "reset"):
                 system, self.under_reset = self.settled(seen, seen.resetting, False)
                 if self.under_reset.depth is None or system.choices:
                     raise Unfit("the registers do not settle while reset is held, or hang on x")

@@ -87,7 +87,12 @@ class _Proof:
         if starts is not None:
             known = known | set(wrong) if not why_starts else known - set(wrong)
             why |= {name: why_starts or wrong[name] for name in wrong}
-        if machines.ports.reset is not None:
+            if why_everywhere:
+                # Where a flip-flop is released late the wave may fail to come right at any value.
+                known.discard("reset")
+        if machines.ports.reset is None:
+            why.pop("reset", None)
+        else:
             # What comes of a flip-flop that is released late is a power-up state, from which the wave comes right.
             why["reset"] = why.get("reset", "the claim does not begin at reset") or why_everywhere
         bound = self._worst(everywhere) if not why_everywhere else None

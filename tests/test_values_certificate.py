@@ -180,3 +180,32 @@ def test_values_that_are_missing_from_a_certificate_are_left_open() -> None:
     assert {finding.verdict for finding in fewer.report.findings} == {"open"}
     with pytest.raises(Rejected):
         made_of(basis.design, basis.spec, type(found)(tuple(reversed(found.singly)), None), Effort(60))
+
+
+FREE = """\
+module free #(parameter W = 7) (input clk, input rst, input [W-1:0] div, output reg tick);
+  reg [W-1:0] left;
+  INITIAL
+  always @(posedge clk)
+    RESET if (left == 0) begin left <= div; tick <= ~tick; end
+    else left <= left - 1'b1;
+endmodule
+"""
+
+
+@pytest.mark.parametrize("start", ["initial", "any", "reset"])
+def test_the_claim_may_begin_anywhere(start: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    initial = "initial begin left = 0; tick = 0; end" if start == "initial" else ""
+    cleared = "if (rst) begin left <= 0; tick <= 0; end else" if start == "reset" else ""
+    text = FREE.replace("INITIAL", initial).replace("RESET", cleared)
+    (tmp_path / "free.v").write_text(text, encoding="utf-8")
+    monkeypatch.chdir(tmp_path)
+    holds = {} if start == "reset" else {"rst": 0}
+    ratio = formula.read(RATIO, "--ratio")
+    report = check(["free.v"], Spec(ratio_formula=ratio, each={"div": None}, holds=holds))
+    assert report.verdict == "proved"
+    assert report.each is not None
+    assert report.each.shapes > 0
+    assert report.rhythm.scope == start
+    (tmp_path / "free.json").write_text(certify(report, ["free.v"], Effort(60)).text, encoding="utf-8")
+    assert recheck(tmp_path / "free.json").accepted
