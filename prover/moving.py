@@ -130,6 +130,9 @@ def machine_of(
     """
     effort.say("deriving the machine while inputs move")
     design, clock = ports.design, ports.clock
+    for name in (*(r.name for r in design.registers), *design.inputs):
+        if name.startswith("!") or name.endswith(AFTER):
+            raise OutOfEffort(f"the name {name} may be taken for one that stands for a move")
     names = list(moving)
     fixed = list(kept)
     inputs = Inputs.of({name: value for name, value in held.items() if name not in (*names, *fixed)})

@@ -64,7 +64,7 @@ def _assumptions(names: Sequence[str]) -> list[str]:
     one = "moves" if len(names) == 1 else "move"
     return [
         f"in ratio-change and enable {told} {one} at most once between two edges of the clock, all bits at once, and "
-        "settle before the next edge; everywhere else they are held"
+        "all settles before the next edge, in the order of the micro-steps; everywhere else they are held"
     ]
 
 

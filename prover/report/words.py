@@ -42,6 +42,12 @@ def origin(rhythm: Rhythm) -> str:
 
 def claim(report: Report) -> str:
     """What is claimed of the wave, in one sentence; "" for a measurement."""
+    told = _claimed(report)
+    moving = " and ".join(report.spec.moving)
+    return f"{told}; and while {moving} move{'s' * (len(report.spec.moving) == 1)}" if moving else told
+
+
+def _claimed(report: Report) -> str:
     spec = report.spec
     if spec.ratio is None:
         return ""
