@@ -70,18 +70,19 @@ class _Steps:
     def largest(self) -> list[int]:
         """The largest subset of the lines that every step keeps, by number."""
         left = list(range(len(self.lines)))
-        kept: list[int] = []
-        # A line at a time: one question about all of them together is far harder than all about one.
-        while len(kept) < len(left):
-            number = next(i for i in left if i not in kept)
-            goal = [*self.before(left), self.system.allowed, e.bvnot(self.then[number])]
-            model = find(e.conj(goal), self.effort)
-            if model is None:
-                kept.append(number)
-                continue
-            holds = self.evaluate(*(model.get(name, 0) for name in self.inputs))
-            left, kept = [i for i in left if holds[i]], []
-        return left
+        while True:
+            asked = list(left)
+            for number in asked:
+                # A line at a time: one question about all of them together is far harder than all about one.
+                if number not in left:
+                    continue
+                goal = [*self.before(left), self.system.allowed, e.bvnot(self.then[number])]
+                model = find(e.conj(goal), self.effort)
+                if model is not None:
+                    holds = self.evaluate(*(model.get(name, 0) for name in self.inputs))
+                    left = [i for i in left if holds[i]]
+            if left == asked:
+                return left
 
     def needed(self, left: Sequence[int]) -> list[int]:
         """Of an inductive set those lines that it takes: for nothing to be broken, and for one another to be kept."""

@@ -178,11 +178,9 @@ def candidates(system: Watch, found: Sampled, all_of_them: bool) -> list[Line]:
     bounds as they were found in a place, too, if all are wanted: what samples don't come near, they can't tell where
     it holds."""
     table = _Samples(system, found)
-    lines: dict[Line, None] = dict.fromkeys(table.never())
-    lines |= dict.fromkeys(table.bounds())
-    lines |= dict.fromkeys(table.orders())
-    lines |= dict.fromkeys(table.relations())
-    kept = [line for line in lines if all_of_them and not line.equal]
+    related = dict.fromkeys(table.relations())
+    lines = [*table.never(), *table.bounds(), *table.orders(), *related, *table.caught_up()]
+    kept = [line for line in related if all_of_them and not line.equal]
     return list(dict.fromkeys([*(table.general(line) for line in lines), *kept]))
 
 
@@ -204,19 +202,21 @@ class _Samples:
         self.widths = widths
         self.every = self.columns([*found.moving, *found.steady])
         self.steady = self.columns(found.steady)
-        self.places = self.by_bits(self.every)
-        self.steady_places = self.by_bits(self.steady)
+        # Most does not hang on whether the inputs are held from now on: what does is looked for by itself.
+        apart = {HELD, CHANGES}
+        self.places = self.by_bits(self.every, [name for name in self.bits if name not in apart])
+        self.steady_places = self.by_bits(self.steady, [name for name in self.bits if name not in apart])
 
     def columns(self, samples: Sequence[Sample]) -> Columns:
         """Each variable's values; of samples without a move the nominal pulses besides, by level."""
         values = dict(zip(self.system.names, zip(*samples, strict=True), strict=True)) if samples else {}
         return {name: list(values.get(name, ())) for name in self.system.names}
 
-    def by_bits(self, columns: Columns) -> dict[Where, list[int]]:
-        """The numbers of the samples in which the one-bit variables have these values."""
+    def by_bits(self, columns: Columns, bits: Sequence[str]) -> dict[Where, list[int]]:
+        """The numbers of the samples in which these variables have these values."""
         out: dict[Where, list[int]] = {}
-        for number, values in enumerate(zip(*(columns[name] for name in self.bits), strict=True)):
-            out.setdefault(tuple(zip(self.bits, values, strict=True)), []).append(number)
+        for number, values in enumerate(zip(*(columns[name] for name in bits), strict=True)):
+            out.setdefault(tuple(zip(bits, values, strict=True)), []).append(number)
         return out
 
     def totals(self, terms: Terms, numbers: Sequence[int] | None = None) -> list[int]:
@@ -271,7 +271,7 @@ class _Samples:
         the rhythm while inputs move."""
         # What the moving inputs are is of no use where they may move on: the words that they went into are looked
         # for.
-        words = [name for name in self.words if name not in self.moving or self.system.kind != "range"]
+        words = [name for name in self.words if name not in self.moving or self.system.kind == "whole"]
         fixed: dict[Terms, None] = {}
         rhythm: dict[tuple[Terms, int], None] = {}
         for where, numbers in self.places.items():
@@ -295,6 +295,21 @@ class _Samples:
             for (terms, offset), where in product(rhythm, self.places):
                 for above, limit in limits:
                     yield from self.limited(where, terms, offset, above, limit)
+
+    def caught_up(self) -> Iterator[Line]:
+        """What holds between words and inputs once these are held and the output has changed so many times."""
+        if self.system.kind != "after":
+            return
+        for where, numbers in self.by_bits(self.every, [name for name in self.bits if name != HELD]).items():
+            if not dict(where)[CHANGES]:
+                continue
+            for terms, offset in _relations(self.every, self.words, numbers):
+                if any(name in self.moving for name, _ in terms):
+                    yield Line(where, terms, offset, True)
+            for low, high in permutations(self.words, 2):
+                terms = ((high, 1), (low, -1))
+                if (low in self.moving) != (high in self.moving) and min(self.totals(terms, numbers)) >= 0:
+                    yield Line(where, terms, 0, False)
 
     def bounded(self, terms: Terms) -> Iterator[Line]:
         """The bounds of a sum in each place where it varies little."""

@@ -13,8 +13,67 @@ from prover.effort import Effort
 
 GAUGE = CASES / "gauge"
 
+HEAD = "module {} #(parameter W = 8) (input clk, rst, input [W-1:0] div, output {} out);\n"
 
-@pytest.mark.parametrize("width", [8, 16, 24])
+# Loaded at the end of a whole period, the half of it decoded: into a flip-flop, or not.
+PERIOD = """
+  reg [W:0] count;
+  reg [W-1:0] limit;
+  always @(posedge clk)
+    if (rst) begin count <= 0; limit <= div; end
+    else if (count == {limit, 1'b1}) begin count <= 0; limit <= div; end
+    else count <= count + 1'b1;
+"""
+
+TEXTS = {
+    # By hand: the divisor is read as a period begins. One that comes within a low pulse shows in the high one that
+    # follows, one that comes within a high pulse only after the low one.
+    "decoded": (HEAD.format("decoded", "") + PERIOD + "  assign out = count <= limit;\nendmodule\n", 2, 1),
+    "registered": (
+        HEAD.format("registered", "reg")
+        + PERIOD
+        + "  always @(posedge clk) out <= !rst && count <= limit;\nendmodule\n",
+        3,
+        1,
+    ),
+    # Through two flip-flops, each of which may be a pulse late where pulses have one input cycle.
+    "synchronised": (
+        HEAD.format("synchronised", "reg")
+        + """
+  reg [W-1:0] first, second, count;
+  always @(posedge clk) begin
+    {second, first} <= {first, div};
+    if (rst) {out, count} <= 0;
+    else if (count == 0) {out, count} <= {~out, second};
+    else count <= count - 1'b1;
+  end
+endmodule
+""",
+        3,
+        1,
+    ),
+    "prescaled": (
+        HEAD.format("prescaled", "reg")
+        + """
+  reg [3:0] pre;
+  reg [W-1:0] count, limit;
+  always @(posedge clk)
+    if (rst) begin pre <= 0; count <= 0; limit <= div; out <= 0; end
+    else if (pre != 9) pre <= pre + 1'b1;
+    else begin
+      pre <= 0;
+      count <= count == limit ? 0 : count + 1'b1;
+      if (count == limit) begin limit <= div; out <= ~out; end
+    end
+endmodule
+""",
+        1,
+        10,
+    ),
+}
+
+
+@pytest.mark.parametrize("width", [8, 24])
 @pytest.mark.parametrize(
     "path", [GAUGE / "sample_wrap.v", GAUGE / "sample_at_least.v", GAUGE / "sample_by_div.v"]
 )
@@ -23,3 +82,17 @@ def test_a_safe_divider_is_proved_for_every_value(path: Path, width: int) -> Non
     ports, question = asked(path, "--set", f"W={width}", "--moving", "div", "--ratio", "2*(div+1)")
     found = moves.answer(ports, question, Effort(300))
     assert (found.proved, found.back) == (True, 2 << width), found.open
+
+
+@pytest.mark.parametrize(
+    ("name", "width"), [*((name, 8) for name in TEXTS), ("decoded", 24), ("synchronised", 24)]
+)
+def test_other_ways_to_take_a_divisor_over_are_proved(name: str, width: int, tmp_path: Path) -> None:
+    text, pulses, scale = TEXTS[name]
+    path = tmp_path / f"{name}.v"
+    path.write_text(text)
+    ratio = f"{2 * scale}*(div+1)"
+    ports, question = asked(path, "--set", f"W={width}", "--moving", "div", "--ratio", ratio)
+    found = moves.answer(ports, question, Effort(300))
+    # As many of the longest pulses as the comment says may be as they were.
+    assert (found.proved, found.back) == (True, pulses * scale * (2 << width)), found.open
