@@ -225,7 +225,7 @@ def _certify(report: Report, task: Task, say: Callable[[Message], None]) -> None
 
     try:
         made = certify(report, task.files, Effort(task.spec.effort, _teller(say)))
-    except (OutOfEffort, UserError):
+    except OutOfEffort:
         return
     say({"certificate": made.text, "left_open": made.left_open})
 

@@ -206,7 +206,6 @@ def test_a_claim_that_is_false_has_no_invariants() -> None:
         (["--ratio", "2*(div+1)", "--moving", "div", "--moving", "div"], "given twice"),
         (["--ratio", "div", "--moving", "div"], "div=0"),
         (["--ratio", "16/3", "--mean", "--moving", "div"], "mean"),
-        (["--ratio", "2*(div+1)", "--moving", "div", "--certificate", "c.json"], "--certificate"),
     ],
 )
 def test_a_move_of_which_nothing_can_be_claimed_is_refused(
@@ -220,11 +219,20 @@ def test_a_move_of_which_nothing_can_be_claimed_is_refused(
     assert not list(tmp_path.iterdir())
 
 
-def test_a_certificate_says_what_it_leaves_open(tmp_path: Path) -> None:
-    made = tmp_path / "pump.json"
-    result = run(LATCH, "--ratio", "6", "--moving", "run", "--certificate", str(made))
+@pytest.mark.parametrize(
+    ("path", "options", "left"),
+    [
+        (LATCH, ["--ratio", "6", "--moving", "run"], "enable"),
+        (WRAP, ["--set", "W=2", "--ratio", "2*(div+1)", "--moving", "div"], "ratio-change"),
+    ],
+)
+def test_a_certificate_says_what_it_leaves_open(
+    path: Path, options: list[str], left: str, tmp_path: Path
+) -> None:
+    made = tmp_path / "made.json"
+    result = run(path, *options, "--certificate", str(made))
     assert result.exit_code == 0
-    assert "note: the certificate leaves enable open" in result.stderr
+    assert f"note: the certificate leaves {left} open" in result.stderr
     again = CliRunner().invoke(cli.main, ["recheck", str(made)], catch_exceptions=False)
     assert again.exit_code == 0, again.output
 

@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING, Any
 from prover import evidence, rebuild
 from prover import expr as e
 from prover.effort import Effort
-from prover.errors import InternalError, UserError
+from prover.errors import InternalError
 from prover.evidence import Evidence
 from prover.findings import Finding, Report, overall
 from prover.ports import Ports
@@ -61,16 +61,15 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
     from properties import judge_all
     from prover.collect import collect
 
+    if report.standing is not None:
+        # What inputs that move do rests on evidence that is not written.
+        moved = tuple(f.name for f in report.findings[len(report.standing.findings) :])
+        still = certify(report.standing, files, effort)
+        return Certificate(still.text, (*still.left_open, *moved))
     if report.each is not None:
         from prover.report import values_certificate
 
         return values_certificate.certify(report, files, effort)
-    standing = report.standing or report
-    if standing.each is not None:
-        raise UserError("--certificate while the ratio moves", hint="check one value at a time, with --hold")
-    # What inputs that move do rests on evidence that is not written.
-    moved = tuple(f.name for f in report.findings[len(standing.findings) :])
-    report = standing
     found = collect(report, effort)
     try:
         made = rebuild.rebuild(report.ports, report.spec, found, Effort(math.inf))
@@ -86,7 +85,7 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
                 )
             left_open += [ours.name] if ours.verdict == "open" else []
     subject = subject_of(report, files)
-    return Certificate(render(document(subject, report.ports, found, made, findings)), (*left_open, *moved))
+    return Certificate(render(document(subject, report.ports, found, made, findings)), tuple(left_open))
 
 
 def subject_of(report: Report, files: Sequence[str | Path]) -> Subject:
