@@ -78,6 +78,7 @@ def test_the_names_that_benches_have_are_those_that_inputs_are_kept_from(tmp_pat
         ("cell_loses_remainder", "16/3", {"mean": True}),
         ("prescaler_off_reset", "6", {}),
         ("latch_behind_a_decode", "8", {}),
+        ("pump_gated_bare", "6", {"moving": {"run": None}}),
     ]
     for name, ratio, more in others:
         text = (CASES / "faulty" / f"{name}.v").read_text()

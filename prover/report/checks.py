@@ -96,7 +96,7 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
             "initial begin",
             "  {running, last, t} = 0;",
             *(f"  {name} = 0;" for name in names(own) if name != "kept"),
-            *(f"  {line}" for line in (_reset(report, dut) if reset else ())),
+            *(f"  {line}" for line in (reset_first(report, dut) if reset else ())),
             "  // The start state: forced so that nothing else reacts, then let go.",
             *(f"  {line}" for line in dut.set(registers)),
             "  running = 1'b1;",
@@ -140,7 +140,7 @@ def _observation(check: Check) -> Iterator[str]:
     yield "endtask"
 
 
-def _reset(report: Report, dut: Dut) -> Iterator[str]:
+def reset_first(report: Report, dut: Dut) -> Iterator[str]:
     """Reset, for registers that a mended divider may have besides; an even number of half-cycles long."""
     reset = report.ports.reset
     if reset is None:

@@ -22,7 +22,7 @@ WIDTH = 64
 
 _OWN = """
 HALF_CYCLES BEGINS t out last failed as_reported running rose spans rising first odd moves began wanted whole changes
-kept back seen other run_again settled shown registers dut observe verdict ends_badly
+kept back seen other run_again settled shown registers dut observe verdict ends_badly moved shortest longest
 """
 RESERVED = frozenset(_OWN.split())
 """Names that a bench has for itself."""

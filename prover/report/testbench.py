@@ -6,9 +6,8 @@ divider mended; a mended divider has to find its way first, and is given time fo
 claimed and what came, whether that is what the report says, and ends with PASSED or FAILED.
 
 What is played is a scene: a run whose claim is checked at the end of each half-cycle (`checks`), a reset
-(`releases`), or changes that arrive in an order which zero delays do not show (`orders`). Not every refutation has a
-bench: `benches` says why where one has not.
-"""
+(`releases`), inputs that move (`movement`), or changes that arrive in an order which zero delays do not show
+(`orders`). Not every refutation has a bench: `benches` says why where one has not."""
 
 from __future__ import annotations
 
@@ -16,9 +15,10 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 
+from properties import WHILE_MOVING
 from prover import __version__
 from prover.findings import Finding, Report
-from prover.report import checks, orders, releases
+from prover.report import checks, movement, orders, releases
 from prover.report.dut import Dut, NoBench, Scene, literal, number, plain
 
 ABOUT = (
@@ -68,7 +68,9 @@ def render(report: Report, finding: Finding) -> str:
     """The bench for a refuted finding on the report's own machine, ended by a newline. Raises NoBench where there
     can't be one."""
     dut = Dut(report)
-    if finding.trace is not None or finding.name == "reset":
+    if finding.trace is not None and finding.name in {module.NAME for module in WHILE_MOVING}:
+        played = movement.scene(report, finding, dut)
+    elif finding.trace is not None or finding.name == "reset":
         played = releases.scene(report, finding, dut)
     elif finding.unsettled is not None or finding.counterexample is not None:
         played = checks.scene(report, finding, dut)

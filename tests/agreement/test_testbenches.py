@@ -74,6 +74,14 @@ MENDED: dict[str, list[tuple[str, str]]] = {
             "always @(posedge clk or negedge rst_n) if (!rst_n) phase <= 2'd0; else phase <= last",
         )
     ],
+    "pump_gated_bare": [
+        ("assign pump = half & run;", "reg held; always @* if (!half) held = run; assign pump = half & held;")
+    ],
+    "pump_gated_same_edge": [
+        ("held <= run;", ""),
+        ("{half, held, count} <= 4'd0", "{half, count} <= 3'd0"),
+        ("  assign pump", "  always @* if (!half) held = run;\n  assign pump"),
+    ],
     "radio_swallow_short": [
         ("reg [2:0] pre", "reg [3:0] pre"),
         ("pre == (more", "pre == (rounds == 4'd0 ? 4'd3 + swallow : more"),
@@ -81,6 +89,16 @@ MENDED: dict[str, list[tuple[str, str]]] = {
     "release_level": [("falling <= falling[1] ? 2'd0 : falling + 2'd1;", "falling <= rising;")],
     "reset_filtered": [("rst & (&seen)", "rst & seen[0]")],
     "restless_in_reset": [("if (rst) bad <= spin;", "bad <= 1'b0;")],
+    "sample_chopped": [
+        ("reg [W:0] count;", "reg [W:0] count; reg [W-1:0] limit;"),
+        ("count <= 0;\n", "count <= 0;\n      limit <= div;\n"),
+        (
+            "count <= count >= {div, 1'b1} ? 0 : count + 1'b1;",
+            "count <= count >= {limit, 1'b1} ? 0 : count + 1'b1;\n      if (count >= {limit, 1'b1}) limit <= div;",
+        ),
+        ("sample <= count <= div;", "sample <= count <= limit;"),
+    ],
+    "sample_overtaken": [("count == div", "count >= div")],
     "sample_no_zero": [("left == 4'd1", "left <= 4'd1")],
     "saturates_at_15": [("count == 4'd9", "count >= 4'd9")],
     "signed_never_there": [("reg signed [3:0]", "reg signed [4:0]")],
@@ -181,7 +199,12 @@ def simulate(
 
 
 def refuted(case: Case) -> list[Group]:
-    return [g for g in case.groups if any("refuted" in s.verdicts for s in g.properties.values())]
+    out = []
+    for group in case.groups:
+        verdicts = [each.verdicts for each in group.properties.values()]
+        verdicts += [each.verdicts for each in group.moves.values()]
+        out += [group] if any("refuted" in each for each in verdicts) else []
+    return out
 
 
 ALL = [
@@ -208,6 +231,15 @@ def agrees(finding: Finding, told: str) -> bool:
         levels = [finding.glitch.level, *(arrival.level for arrival in finding.glitch.arrivals)]
         changes = sum(a != b for a, b in pairwise(levels))
         return told.startswith(f"{changes} changes of the output where {finding.glitch.arrivals[0].name}, ")
+    if finding.trace is not None and finding.name in ("ratio-change", "enable"):
+        short = re.search(r"of (\d+) half-cycles?, shorter than (\d+)", finding.says)
+        wanted = numbers(told)[1:3] if "whole" in told else numbers(told)[1:2]
+        if short:
+            return wanted == [short[1], short[2]]
+        if "of part of a half-cycle" in finding.says:
+            return wanted[0] == "0"
+        goes_on = re.search(r"goes on after (\d+) half-cycles", finding.says)
+        return goes_on is not None and wanted == [goes_on[1]]
     if finding.name == "reset" or "arrive in this order" in told:
         return figures_agree(finding.says, told)
     if told.startswith(("a rise-to-rise gap of", "a high run of")) and "more than" not in told:
