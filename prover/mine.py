@@ -113,7 +113,9 @@ class _Runner:
             given[MOST[level]] = max(each[level] for each in lengths)
         number = rng.randrange(len(self.begins))
         free, begin = self.begins[number]
-        given = {v.name: given[v.name] if v.name in given else rng.getrandbits(v.width) for v in free} | rigid
+        # Choices that x leaves are 0 in a run: a trace of it has them so.
+        rest = {v.name: 0 if v.name.startswith("?") else rng.getrandbits(v.width) for v in free}
+        given = {v.name: given.get(v.name, rest[v.name]) for v in free} | rigid
         *sample, allowed = begin(*(given[v.name] for v in free))
         if not allowed:
             return [], None

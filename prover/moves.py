@@ -415,9 +415,11 @@ def replayed(
     """The run from a beginning, with the inputs and the free variables as given there."""
     design, outputs = machine.design, {ports.output: ports.output_value}
     names = [*(r.name for r in design.registers), machine.clock]
+    # Choices that x leaves are 0, as in all of the trace.
+    given = {v.name: 0 for v in e.variables([*begin.state.values(), ports.output_value])} | dict(given)
     registers = dict(zip(names, e.evaluate([begin.state[name] for name in names], given), strict=True))
     inputs = {**dict(machine.held.values), **{n: given[n] for n, _ in (*machine.rigid, *machine.moving)}}
-    (level,) = e.evaluate([ports.output_value], {**inputs, **registers})
+    (level,) = e.evaluate([ports.output_value], {**given, **inputs, **registers})
     first = Rest(0, False, inputs, registers, {ports.output: level})
     return trace.run(design, machine.clock, outputs, first, list(moves), machine.depth)
 

@@ -82,7 +82,9 @@ class _Chain:
                 e.const(at.get(name, 0), width) for name, width in system.variables
             ]
         else:
-            self.state, given = system.begins[begin]
+            zeros = {name: e.const(0, width) for name, width in system.machine.choices}
+            values, given = system.begins[begin]
+            *self.state, given = e.substitute([*values, given], zeros)
             self._add(given)
 
     def _add(self, condition: e.Expr) -> None:
