@@ -33,6 +33,9 @@ MOST_ENTRIES = 1 << 22
 MOST_MOVES = 1 << 22
 """Values before, values after and states up to which a machine's moves are laid out as a table."""
 
+MOST_CHOICE_BITS = 4
+"""Bits that x stands for up to which a machine is searched: they are 0 in the search, and no run may hang on them."""
+
 AT_ONCE = 1 << 20
 """Moves that are looked at together."""
 
@@ -91,7 +94,8 @@ def fits(machine: Machine, rows: int) -> bool:
     """Whether so many limits of the machine can be searched whole."""
     entries = machine.bits + machine.moving_bits
     moves = machine.bits + 2 * machine.moving_bits
-    return not machine.choices and rows << entries <= MOST_ENTRIES and 1 << moves <= MOST_MOVES
+    few = sum(width for _, width in machine.choices) <= MOST_CHOICE_BITS
+    return few and rows << entries <= MOST_ENTRIES and 1 << moves <= MOST_MOVES
 
 
 def search(machine: Machine, table: Table, limits: Limits, effort: Effort) -> Search:
@@ -232,8 +236,9 @@ def held(table: Table, reached: np.ndarray, period: np.ndarray, high: np.ndarray
     rank = np.where(phase >= 0, last, -1)
     level = np.where(on_loop[entry], level[entry], -1)
     still = np.where(level >= 0, last_misfit(after, (level >= 0) & (output != level), bits), -1)
+    # Of what no run reaches nothing is claimed: what is reached leads to nothing else.
     columns = (np.where(rank == 0, phase, -1), rank, level, still)
-    return Held(*(column.reshape(reached.shape) for column in columns))
+    return Held(*(np.where(reached, column.reshape(reached.shape), -1) for column in columns))
 
 
 def lead_and_loop(table: Table, value: int, state: int) -> tuple[int, int]:

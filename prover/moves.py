@@ -151,9 +151,12 @@ def _searched(ports: Ports, machine: Machine, question: Question, effort: Effort
         breach = observer.breach(rests, ports.output, question.nominal, question.varies)
         shown = _shown(rests, breach, cause, _lasts(ports, machine, rests, breach))
         return Moves(question, False, trace=shown, method=SHORTEST)
-    faults = observer.danger_faults(machine, limits, found.danger)
-    if faults:
-        raise InternalError(f"a table of dangers fails its check: {'; '.join(faults)}")
+    for choice in range(_choices(machine)):
+        faults = observer.danger_faults(machine, limits, found.danger, choice)
+        if faults and choice:
+            return Moves(question, False, open=f"a value that x stands for decides: {faults[0]}")
+        if faults:
+            raise InternalError(f"a table of dangers fails its check: {'; '.join(faults)}")
     claimed = _Claimed.of(machine, question.nominal)
     held = monitor.held(table, found.reached, claimed.high + claimed.low, claimed.high, effort)
     return _settled(ports, machine, question, found, held, claimed)
@@ -194,12 +197,17 @@ def _settled(
             rests, cause = _replayed(ports, machine, run.start, moves)
             breach = observer.repeats(rests, ports.output, nominal)
             return Moves(question, False, trace=_shown(rests, breach, cause), method=SHORTEST)
-    faults = observer.rank_faults(
-        table, runs, held.phase, held.rank, claimed.high + claimed.low, claimed.high
-    )
-    faults += observer.still_faults(table, parks, held.level, held.still)
-    if faults:
-        raise InternalError(f"a table of what comes after the last move fails its check: {'; '.join(faults)}")
+    for choice in range(_choices(machine)):
+        other = table if choice == 0 else observer.tables(machine, choice)
+        period = claimed.high + claimed.low
+        faults = observer.rank_faults(other, runs, held.phase, held.rank, period, claimed.high)
+        faults += observer.still_faults(other, parks, held.level, held.still)
+        if faults and choice:
+            return Moves(question, False, open=f"a value that x stands for decides: {faults[0]}")
+        if faults:
+            raise InternalError(
+                f"a table of what comes after the last move fails its check: {'; '.join(faults)}"
+            )
     return Moves(
         question,
         True,
@@ -209,6 +217,11 @@ def _settled(
         still=int(held.still[parks].max()) if parks.any() else None,
         method=f"all {int(reached.sum())} states and values that any run reaches; every step checked",
     )
+
+
+def _choices(machine: Machine) -> int:
+    """How many values the bits have that x stands for."""
+    return 1 << sum(width for _, width in machine.choices)
 
 
 def _state_after(machine: Machine, table: observer.Table, run: monitor.Run) -> int:

@@ -224,8 +224,9 @@ class Table:
         return found
 
 
-def tables(machine: Machine) -> Table:
-    """The machine's relations for every state and every value."""
+def tables(machine: Machine, choice: int = 0) -> Table:
+    """The machine's relations for every state and every value, where the bits that x stands for are those of a
+    number."""
     import numpy as np
 
     states, values = 1 << machine.bits, 1 << machine.moving_bits
@@ -233,6 +234,7 @@ def tables(machine: Machine) -> Table:
     numbers = np.arange(count, dtype=np.uint64)
     columns = _columns(machine.variables, numbers % np.uint64(states))
     columns |= _columns(machine.moving, numbers // np.uint64(states))
+    columns |= _columns(machine.choices, np.full(count, choice, dtype=np.uint64))
     *edge, output = e.arrays([*machine.edge, machine.output], columns)
     shape = (values, states)
     move = None
@@ -308,18 +310,22 @@ def starts(machine: Machine) -> tuple[np.ndarray, np.ndarray]:
     return np.concatenate(states), np.concatenate(values)
 
 
-def danger_faults(machine: Machine, limits: Limits, danger: np.ndarray) -> list[str]:
+def danger_faults(machine: Machine, limits: Limits, danger: np.ndarray, choice: int = 0) -> list[str]:
     """What is wrong with the claim that no run breaks any of the limits, and that each of the (rows, values, states)
-    is reached with the danger given at most, or not at all where that is −1: after the inputs have moved."""
+    is reached with the danger given at most, or not at all where that is −1: after the inputs have moved. The claim
+    is looked at where the bits that x stands for are those of `choice`, and has to hold for each."""
     import numpy as np
 
-    table = tables(machine)
+    table = tables(machine, choice)
+    plain = table if choice == 0 else tables(machine)
     faults = []
     row, value, state = np.nonzero(danger >= 0)
     if not limits.allowed[row, value].all():
         faults.append("a value that is not allowed")
     after = table.edge[value, state]
     was, now = table.output[value, state], table.output[value, after]
+    if (table.output != plain.output)[value, state].any() or (now != plain.output[value, after]).any():
+        faults.append("an output that hangs on what x stands for")
     at_edge, broken = after_edge(limits, row, after, was, now, danger[row, value, state])
     if broken.any():
         faults.append("a limit that an edge breaks")
@@ -334,6 +340,8 @@ def danger_faults(machine: Machine, limits: Limits, danger: np.ndarray) -> list[
             for rows, values, states, near in groups:
                 target = table.moved(values, np.full(len(values), to), states)
                 was, now = table.output[values, states], table.output[to, target]
+                if (now != plain.output[to, target]).any():
+                    faults.append("an output that hangs on what x stands for")
                 gone, broken = after_move(limits, rows, target, was, now, near)
                 if broken.any():
                     faults.append("a limit that a move breaks")
