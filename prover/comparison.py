@@ -21,7 +21,7 @@ from prover.errors import InternalError
 from prover.joint import Joint, build, starts_apart
 from prover.pair import Pair, Pairing
 from prover.ports import Ports
-from prover.rhythm import Goal, Rhythm, Start, Wave
+from prover.rhythm import Goal, Rhythm, Start
 from prover.solve import Model
 from prover.spec import Spec
 from prover.system import State
@@ -125,14 +125,15 @@ def _timed(ports: Ports, spec: Spec, rhythm: Rhythm, effort: Effort) -> Rhythm:
 
 
 def _with_loops(rhythm: Rhythm, effort: Effort) -> Rhythm:
-    """The rhythm with states on its loops, one for each wave, as starts."""
+    """The rhythm with states on its loops, one of each sort, as starts."""
     if not rhythm.complete:
         return rhythm
     shown = dict(rhythm.shown)
-    seen: set[Wave] = set()
+    seen: set[compared.Sort] = set()
     for loop in rhythm.loops:
-        if loop.wave not in seen and len(seen) < compared.MOST_LOOPS:
-            seen.add(loop.wave)
+        sort = compared.sort_of(rhythm, loop)
+        if sort not in seen and len(seen) < compared.MOST_LOOPS:
+            seen.add(sort)
             shown[loop.example] = analyse.follow(rhythm.system, loop.example, effort)
     return compared.on_loops(replace(rhythm, shown=shown))
 

@@ -335,6 +335,24 @@ def test_what_follows_the_clock_is_equal_from_everywhere(tmp_path: Path) -> None
     )
 
 
+def test_the_clock_and_its_complement_are_two_outputs(tmp_path: Path) -> None:
+    # By hand: q keeps what it powered up with, so the output is the clock for ever or its complement for ever. Both
+    # loops show the same wave, one half-cycle apart.
+    kept = written(tmp_path, "kept", "module a (input clk, output o);\n  reg q; always @(posedge clk) q <= q;\n"
+                   "  assign o = clk ^ q;\nendmodule\n")  # fmt: skip
+    set_soon = written(tmp_path, "soon", "module b (input clk, output o);\n  reg q; always @(posedge clk) q <= 1'b1;\n"
+                       "  assign o = clk & q;\nendmodule\n")  # fmt: skip
+    for pair in ((kept, set_soon), (set_soon, kept)):
+        found = report(*pair, "--after", "any")
+        assert found["verdict"] == "refuted"
+        assert sorted(found["difference"]["levels"]) == [0, 1]
+    assert report(kept, set_soon, "--after", "any", "--lag", "any")["verdict"] == "proved"
+    # Too wide for a state graph, from which alone it would be known of every loop.
+    wide = written(tmp_path, "wide", "module c (input clk, output o);\n  reg [31:0] r; always @(posedge clk) r <= r;\n"
+                   "  assign o = clk ^ ^r;\nendmodule\n")  # fmt: skip
+    assert report(wide, set_soon, "--after", "any", "--effort", "3")["verdict"] != "proved"
+
+
 # -- Python ------------------------------------------------------------------------------------------------
 
 
