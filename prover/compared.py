@@ -16,7 +16,7 @@ from prover.effort import Effort
 from prover.equality import Invariant, Shifts
 from prover.errors import InternalError
 from prover.findings import Fact, Obligation, Verdict
-from prover.joint import Joint
+from prover.joint import Joint, certain, lasts
 from prover.pair import SIDES, Pair, Pairing
 from prover.ports import Ports
 from prover.rhythm import Loop, Orbit, Rhythm, Start, Wave
@@ -173,7 +173,10 @@ def assumptions(pair: Pair, outcome: Outcome) -> tuple[str, ...]:
         "registers are two-valued; an unknown stands for both values",
     ]
     if pair.scope == "reset":
-        out.append("both are reset at the same time, long enough for both, and released between two edges")
+        held = outcome.evidence.joint.held if outcome.evidence and outcome.evidence.joint else None
+        sure = held is not None and (held.lasting or isinstance(outcome.evidence, Together))
+        long = f"for {_half_cycles(held.half_cycles)} or longer" if held and sure else "long enough for both"
+        out.append(f"both are reset at the same time, {long}, and released between two edges")
     moving = [each.name for each in pair.inputs if each.moving]
     if moving:
         out.append(
@@ -248,6 +251,11 @@ def of_runs(evidence: Apiece, lag: int | None, effort: Effort) -> Outcome:
     together = [pair for each in evidence.followed for pair in _together(each)]
     judged = _whatever_lag(together, effort) if lag is None else _with_lag(together, lag, effort)
     if judged.verdict == "refuted":
+        held = evidence.joint.held if evidence.joint is not None else None
+        if held is not None and not held.lasting and certain(held) is None:
+            return Outcome(
+                "open", "a difference may hang on how long reset has been held", obligations=obligations
+            )
         method = "both runs replayed on their machines"
     return replace(judged, method=method, obligations=obligations, evidence=evidence)
 
@@ -490,6 +498,10 @@ def _method(shown: Invariant | Collection[State]) -> str:
 def _of_run(joint: Joint, lag: int, run: Run) -> Outcome:
     """The difference that a run shows when both are run again; open where it hangs on what x stands for."""
     start = joint.starts[run.start]
+    if not lasts(joint, start, run.values):
+        return Outcome(
+            "open", f"a difference in half-cycle {run.half_cycle} may hang on how long reset has been held"
+        )
     rests = equality.replayed(joint, start, run.values, run.moves, run.half_cycle)
     if equality.hangs_on_x(joint, rests):
         return Outcome(

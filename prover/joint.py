@@ -14,7 +14,8 @@ import itertools
 import random
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, reduce
+from operator import and_, or_
 
 from prover import expr as e
 from prover.design import Design
@@ -41,18 +42,21 @@ class Start:
     first      every variable once the inputs have moved for the first time; the same where none moves
     differs    one bit over the same: the outputs differ at the rest
     cause      how the states come about
+    under      every register, and the clock, just before the release of reset; empty where it does not start there
     """
 
     rest: tuple[Expr, ...]
     first: tuple[Expr, ...]
     differs: Expr
     cause: str
+    under: tuple[Expr, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
 class Held:
     """Reset held for so many half-cycles. Each is every register, over registers, clock and shared inputs.
 
+    lasting  whether every state that it leaves then is left however long it is held; else some may be gone later
     rest     once arbitrary values have settled
     edge     after an edge of the clock
     move     after inputs have moved, over the moves as well
@@ -60,6 +64,7 @@ class Held:
     """
 
     half_cycles: int
+    lasting: bool
     rest: tuple[Expr, ...]
     edge: tuple[Expr, ...]
     move: tuple[Expr, ...]
@@ -160,22 +165,100 @@ MOST_START_BITS = 12
 
 def starts_apart(joint: Joint, inputs: Model) -> list[tuple[str, State, State]]:
     """How each start comes about, with the inputs held at values, and the registers and the clock of the old divider
-    and of the new one then. Raises OutOfEffort where there are too many."""
+    of the new one then. Raises OutOfEffort where there are too many."""
     out: dict[tuple[str, State, State], None] = {}
     clock = joint.both.clock
+    for cause, state in _lasting(joint, inputs):
+        values = dict(zip(joint.names, state, strict=True))
+        sides = []
+        for side in SIDES:
+            mine = (values[n] for n, _ in joint.own if n.startswith(f"{side}."))
+            sides.append((*mine, values[clock]))
+        out[cause, sides[0], sides[1]] = None
+    return list(out)
+
+
+def _lasting(joint: Joint, inputs: Model) -> Iterator[tuple[str, State]]:
+    """The start states with the inputs held at values, and how each comes about; of those that reset leaves only
+    such as it leaves however long it is held."""
+    listed: list[list[tuple[State, State]]] = []
     for start in joint.starts:
-        unknown = [v for v in unknowns(start) if v.name not in inputs]
+        free = e.variables([*start.first, *start.under])
+        unknown = [v for v in free if v.name not in inputs]
         if sum(v.width for v in unknown) > MOST_START_BITS:
             names = ", ".join(dict.fromkeys(v.name for v in unknown))
             raise OutOfEffort(f"too many start states: nothing forces {names}")
-        for _, state, _ in starts_of(start, inputs):
-            values = dict(zip(joint.names, state, strict=True))
-            sides = []
-            for side in SIDES:
-                mine = (values[n] for n, _ in joint.own if n.startswith(f"{side}."))
-                sides.append((*mine, values[clock]))
-            out[start.cause, sides[0], sides[1]] = None
-    return list(out)
+        run = e.compile_step([*start.first, *start.under], [v.name for v in free])
+        ranges = ((inputs[v.name],) if v.name in inputs else range(1 << v.width) for v in free)
+        found = (run(*values) for values in itertools.product(*ranges))
+        listed.append([(all_of[: len(start.first)], all_of[len(start.first) :]) for all_of in found])
+    held = joint.held
+    if held is None or held.lasting or certain(held) is None:
+        for start, states in zip(joint.starts, listed, strict=True):
+            yield from ((start.cause, first) for first, _ in states)
+        return
+    kept, longer = _gone_round(joint, held, inputs, [{under for _, under in states} for states in listed])
+    for start, states, left in zip(joint.starts, listed, kept, strict=True):
+        cause = _released(held.half_cycles + longer, start.under[-1].value)
+        yield from ((cause, first) for first, under in states if under in left)
+
+
+def _gone_round(
+    joint: Joint, held: Held, inputs: Model, left: Sequence[set[State]]
+) -> tuple[list[set[State]], int]:
+    """Of states under reset, those that remain however long it is held, and for how many half-cycles longer that
+    takes. Two half-cycles lead from each set into itself, so what remains is what goes round in it."""
+    names = [*(r.name for r in joint.both.design.registers), joint.both.clock]
+    free = [name for name, _ in joint.own if name not in names]
+    edge = e.compile_step(held.edge, [*names, *free])
+    values = tuple(inputs[name] for name in free)
+
+    def onward(state: State) -> State:
+        return (*edge(*state, *values), 1 - state[-1])
+
+    kept, longer = list(left), 0
+    while True:
+        following = [{onward(onward(state)) for state in states} for states in kept]
+        if [len(states) for states in following] == [len(states) for states in kept]:
+            return following, longer
+        kept, longer = following, longer + 2
+
+
+def certain(held: Held) -> Held | None:
+    """Reset held, if nothing of it hangs on what x stands for."""
+    known = e.variables([*held.rest, *held.edge, *held.move, *held.release])
+    return None if any(v.name.startswith("?") for v in known) else held
+
+
+LONGEST_ROUND = 4096
+"""Half-cycles of reset after which a state is looked for again."""
+
+
+def lasts(joint: Joint, start: Start, values: Model) -> bool:
+    """Whether a start state is seen to be left however long reset is held, as one that comes round again with the
+    inputs where they are."""
+    held = joint.held
+    if held is None or held.lasting:
+        return True
+    free = e.variables([*start.under, *start.rest])
+    known = {v.name: 0 for v in free} | values
+    names = [*(r.name for r in joint.both.design.registers), joint.both.clock]
+    first = tuple(e.evaluate(start.under, known))
+    inputs = {name: known.get(name, 0) for name in joint.both.free}
+    choices = [v.name for v in e.variables(held.edge) if v.name.startswith("?")]
+    edge = e.compile_step(held.edge, [*names, *inputs, *choices])
+    others = (*inputs.values(), *(0 for _ in choices))
+    state = first
+    for _ in range(LONGEST_ROUND):
+        state = (*edge(*state, *others), 1 - state[-1])
+        if state == first:
+            return True
+    return False
+
+
+def _released(half_cycles: int, level: int) -> str:
+    long = f" held for {half_cycles} half-cycles or longer" if half_cycles else ""
+    return f"reset{long}, released while the clock is {('low', 'high')[level]}"
 
 
 def moved(name: str) -> str:
@@ -233,11 +316,12 @@ class _Builder:
         first |= {n: e.var(moved(n), x.width) if n in self.moving else x for n, x in self.inputs.items()}
         begin = [*(first[n] for n in names), e.FALSE if lag else e.bvxor(out_old, out_new)]
         starts = []
-        for cause, level, rest in self._starts():
+        for cause, level, rest, under in self._starts():
             here = {**rest, self.clock: e.const(level, 1), **self.inputs}
             *begun, differs = _applied(begin, here, "begin")
             queued = queue.start(*_applied([out_old, out_new], here, "begin"))
-            starts.append(Start(tuple({**here, **queued}[n] for n in names), tuple(begun), differs, cause))
+            at_rest = tuple({**here, **queued}[n] for n in names)
+            starts.append(Start(at_rest, tuple(begun), differs, cause, under))
         return Joint(
             both=self.both,
             outputs=(out_old, out_new),
@@ -306,8 +390,8 @@ class _Builder:
 
     # -- starts ----------------------------------------------------------------------------------------------
 
-    def _starts(self) -> Iterable[tuple[str, int, Values]]:
-        """How each start comes about, the level of the clock in it, and the registers."""
+    def _starts(self) -> Iterable[tuple[str, int, Values, tuple[Expr, ...]]]:
+        """How each start comes about, the level of the clock in it, the registers, and all of that under reset."""
         if self.pair.scope == "initial":
             yield from self._initial()
             return
@@ -325,27 +409,32 @@ class _Builder:
         )
         count, under = self._under(edge, rest, move)
         phases = ([of[name] for name in self.names] for of in (rest, edge, move, release))
-        self.held = Held(count, *map(tuple, phases))
+        lasting = all(self._lasting(edge, values) for values in under)
+        self.held = Held(count, lasting, *map(tuple, phases))
         for level in (0, 1):
             values = under[level ^ (count & 1)]
             registers = _applied([release[n] for n in self.names], values, "release")
-            long = f" held for {count} half-cycles or longer" if count else ""
-            cause = f"reset{long}, released while the clock is {('low', 'high')[level]}"
-            yield cause, level, dict(zip(self.names, registers, strict=True))
+            still = tuple(values[n] for n in (*self.names, self.clock))
+            yield _released(count, level), level, dict(zip(self.names, registers, strict=True)), still
 
     def _under(self, edge: Values, rest: Values, move: Values) -> tuple[int, list[Values]]:
         """Reset held until what can become known is: the half-cycles, and every register then, begun with the clock
         low and with it high. Inputs that move are new in each half-cycle and have their own names in the last."""
-        limit = 4 * len(self.names) + 8
+        patience = 4 * len(self.names) + 8
         runs = [self._holding(edge, rest, move, level) for level in (0, 1)]
         values = [next(run) for run in runs]
-        count = 0
+        count = since = 0
+        fewest = self.design.state_bits + 1
         hanging = [self._hanging(here) for here in values]
-        while any(hanging) and count < limit:
+        while any(hanging) and count - since < patience:
             values = [next(run) for run in runs]
             count += 1
+            # A long shift register becomes known a bit at a time.
+            unlike = max(self._unlike(here) for here in values)
+            if unlike < fewest:
+                fewest, since = unlike, count
             # A register that is not forced is asked about less and less often.
-            if count < 6 or count & (count - 1) == 0 or count == limit:
+            if count < 6 or count & (count - 1) == 0 or not unlike or count - since == patience:
                 hanging = [self._hanging(here) for here in values]
             self.effort.check()
         zeros = {r.name: e.const(0, r.width) for r in self.design.registers}
@@ -390,7 +479,43 @@ class _Builder:
                     found.add(name)
         return found
 
-    def _initial(self) -> Iterable[tuple[str, int, Values]]:
+    def _unlike(self, values: Values) -> int:
+        """Bits of registers that are not the same after reset from each of some states, other things being equal."""
+        rng = random.Random(0)
+        listed = [values[name] for name in self.names]
+        used = e.variables(listed)
+        samples = []
+        for _ in range(SAMPLES):
+            known = {v.name: rng.getrandbits(v.width) if v.name in self.names else 0 for v in used}
+            samples.append(e.evaluate(listed, known))
+        columns = zip(*samples, strict=True)
+        return sum((reduce(or_, column) ^ reduce(and_, column)).bit_count() for column in columns)
+
+    def _lasting(self, edge: Values, values: Values) -> bool:
+        """Whether all states after reset remain however long it is held: then two half-cycles more, with the inputs
+        where they are, lead from no two of them to one. As they lead from these states into these states, each comes
+        round again."""
+        begun = [values[name] for name in self.names]
+        shared = set(self.inputs)
+        if {v.name for v in e.variables(begun)} <= shared:
+            return True
+        names = [*self.names, self.clock]
+        step = [edge[name] for name in names]
+        if any(v.name.startswith("?") for v in e.variables([*begun, *step])):
+            return False
+        after = dict(values)
+        for _ in range(2):
+            after |= dict(zip(names, e.substitute(step, after), strict=True))
+        ended = [after[name] for name in self.names]
+        used = e.variables([*begun, *ended])
+        others = {v.name: e.var(f"{v.name} else", v.width) for v in used if v.name not in shared}
+        same = [
+            e.conj(e.eq(a, b) for a, b in zip(side, e.substitute(side, others), strict=True))
+            for side in (begun, ended)
+        ]
+        return self.ask(e.bvand(e.bvnot(same[0]), same[1])) is None
+
+    def _initial(self) -> Iterable[tuple[str, int, Values, tuple[Expr, ...]]]:
         known = self.both.running.moment(self.design.inputs)
         rest = self._at_rest(known)
         for level in (0, 1):
@@ -404,6 +529,7 @@ class _Builder:
                 f"initial values, the clock {('low', 'high')[level]} at power-up",
                 level,
                 dict(zip(self.names, registers, strict=True)),
+                (),
             )
 
 

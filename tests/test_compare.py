@@ -335,6 +335,62 @@ def test_what_follows_the_clock_is_equal_from_everywhere(tmp_path: Path) -> None
     )
 
 
+WARMED = """module MODULE (input clk, input rst, PORTSoutput out);
+  reg [1:0] count;
+  reg [3:0] warm;
+  always @(posedge clk)
+    if (rst) begin
+      count <= 0;
+      if (warm != 15) warm <= warm + 1;
+    end else count <= count + 1;
+  assign out = count[1] ^ (warm == COLD && count == 0);
+endmodule
+"""
+
+
+def test_reset_is_held_until_no_more_comes_of_it(tmp_path: Path) -> None:
+    # By hand: reset lets `warm` rise to 15, which takes 15 input cycles from 0, so that after 30 half-cycles it is neither
+    # 12 nor 13; after 24 it may still be either.
+    def warmed(name: str, cold: str, ports: str = "") -> str:
+        text = WARMED.replace("MODULE", name).replace("COLD", cold).replace("PORTS", ports)
+        return written(tmp_path, name, text)
+
+    old, new = warmed("a", "12"), warmed("b", "13")
+    certificate = str(tmp_path / "c.json")
+    found = report(old, new, "--certificate", certificate)
+    assert found["verdict"] == "proved", found["says"]
+    assert CliRunner().invoke(cli.main, ["recheck", certificate]).exit_code == 0
+    found = report(old, warmed("c", "15"))
+    assert (found["verdict"], found["difference"]["old_half_cycle"]) == ("refuted", 0)
+    # Neither is a difference shown while inputs move that only a shorter reset allows for.
+    old, new = (warmed(f"m{n}", f"{n} && hint", "input hint, ") for n in (12, 13))
+    assert report(old, new, "--moving", "hint", "--effort", "5")["verdict"] != "refuted"
+    late = warmed("m15", "15 && hint", "input hint, ")
+    assert report(old, late, "--moving", "hint")["verdict"] == "refuted"
+
+
+def test_a_long_shift_register_is_filled_by_reset(tmp_path: Path) -> None:
+    # By hand: after 20 cycles of reset all of `gone` is 1. The count starts when the first 0 has come to the end, so
+    # an end that is a place later makes it an input cycle later.
+    text = """module a (input clk, input rst, output out);
+  reg [19:0] gone;
+  reg [1:0] count;
+  always @(posedge clk) begin
+    gone <= {gone[18:0], rst};
+    if (rst | gone[END]) count <= 0;
+    else count <= count + 1;
+  end
+  assign out = count[1];
+endmodule
+"""
+    early, late = (written(tmp_path, f"end{n}", text.replace("END", str(n))) for n in (18, 19))
+    same = written(tmp_path, "all", text.replace("gone[END]", "|gone[19:18]"))
+    assert report(late, same)["verdict"] == "proved"
+    assert report(early, late)["verdict"] == "refuted"
+    found = report(early, late, "--lag", "any")
+    assert (found["verdict"], found["lag_half_cycles"]) == ("proved", 2)
+
+
 def test_the_clock_and_its_complement_are_two_outputs(tmp_path: Path) -> None:
     # By hand: q keeps what it powered up with, so the output is the clock for ever or its complement for ever. Both
     # loops show the same wave, one half-cycle apart.
