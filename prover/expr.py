@@ -646,11 +646,13 @@ def _array_node(node: Expr, args: Sequence[np.ndarray], kind: Any) -> np.ndarray
     import numpy as np
 
     width = node.width
-    one, mask = kind(1), kind(_mask(width))
+    # Of a word that is too wide for numpy's the elements are Python integers.
+    number: Any = int if kind is object else kind
+    one, mask = number(1), number(_mask(width))
 
     def flip(a: np.ndarray, bits: int) -> np.ndarray:
         # Adding the sign bit maps signed order onto unsigned order.
-        return np.asarray(a ^ kind(1 << (bits - 1)))
+        return np.asarray(a ^ number(1 << (bits - 1)))
 
     match node.op:
         case "bvnot":
@@ -681,15 +683,15 @@ def _array_node(node: Expr, args: Sequence[np.ndarray], kind: Any) -> np.ndarray
         case "bvshl" | "bvlshr" | "bvashr":
             out = _array_shift(node.op, args[0], args[1], width, kind)
         case "concat":
-            out = (args[0] << kind(node.args[1].width)) | args[1]
+            out = (args[0] << number(node.args[1].width)) | args[1]
         case "extract":
-            out = (args[0] >> kind(int(node.params[1]))) & mask
+            out = (args[0] >> number(int(node.params[1]))) & mask
         case "zero_extend":
             out = args[0]
         case "sign_extend":
             below = node.args[0].width
-            negative = (args[0] >> kind(below - 1)) == one
-            out = np.where(negative, args[0] | kind(_mask(width) ^ _mask(below)), args[0])
+            negative = (args[0] >> number(below - 1)) == one
+            out = np.where(negative, args[0] | number(_mask(width) ^ _mask(below)), args[0])
         case "ite":
             out = np.where(args[0] == one, args[1], args[2])
         case "eq":
@@ -701,7 +703,10 @@ def _array_node(node: Expr, args: Sequence[np.ndarray], kind: Any) -> np.ndarray
             out = flip(args[0], bits) < flip(args[1], bits)
         case _:
             raise InternalError(f"unknown operator {node.op}")
-    return np.asarray(out).astype(kind)
+    # Comparisons are numbers, too, so that they can be joined to a word.
+    return (
+        np.asarray(out).astype(np.uint8).astype(kind) if out.dtype == bool else np.asarray(out).astype(kind)
+    )
 
 
 def _array_shift(op: str, a: np.ndarray, by: np.ndarray, width: int, kind: Any) -> np.ndarray:

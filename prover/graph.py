@@ -205,6 +205,9 @@ def ranks(graph: Graph, found: Basins, goal: Goal) -> Ranks:
 
     after, period = graph.successors[0], goal.period
     phase_on_loop = np.full(len(after), -1, dtype=np.int64)
+    if not any(loop.good for loop in found.loops):
+        # The period may be too long for a word.
+        return Ranks(phase_on_loop, phase_on_loop)
     for loop, states in zip(found.loops, found.members, strict=True):
         if loop.good:
             levels = graph.output[states].astype(np.uint8)[:period]

@@ -57,6 +57,10 @@ class Question:
     active: int | None = None
 
 
+COUNTED = 60
+"""Bits of a nominal length, in half-cycles, up to which tables can hold it."""
+
+
 @dataclass(frozen=True, slots=True)
 class Moves:
     """The answer.
@@ -90,7 +94,9 @@ def answer(ports: Ports, question: Question, effort: Effort) -> Moves:
             return Moves(
                 question, False, open="runs have no beginning: there is neither a reset nor an initial value"
             )
-        if monitor.fits(machine, limit_rows(machine, question)):
+        nominal = question.nominal
+        counted = max(nominal.high.width, nominal.low.width) <= COUNTED
+        if counted and monitor.fits(machine, limit_rows(machine, question)):
             return _searched(ports, machine, question, effort)
         return _watched(ports, machine, question, effort)
     except OutOfEffort as out:

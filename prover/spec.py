@@ -140,7 +140,9 @@ class Spec:
             return ""
         if self.ratio.denominator == 1:
             return str(self.ratio.numerator)
-        return str(float(self.ratio)) if self.ratio.denominator == 2 else str(self.ratio)
+        if self.ratio.denominator == 2 and self.ratio > 0:
+            return f"{self.ratio.numerator // 2}.5"
+        return str(self.ratio)
 
 
 def read_ratio(text: str) -> Fraction:

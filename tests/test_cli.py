@@ -9,6 +9,7 @@ import subprocess
 import sys
 import threading
 import time
+from fractions import Fraction
 from pathlib import Path
 
 import pytest
@@ -49,6 +50,59 @@ def python(*arguments: str) -> subprocess.CompletedProcess[str]:
 )
 def test_the_verdict_is_the_exit_status(tmp_path: Path, text: str, options: list[str], status: int) -> None:
     assert run("check", written(tmp_path, text), *options).exit_code == status
+
+
+LONG = 10**22 + Fraction(1, 2)
+"""A ratio whose period is no machine word, and that no float is."""
+
+# A sixth, counted in a word of 80 bits, which is negative from a count of 8 on.
+IN_80_BITS = """\
+module by_6 (input clk, input rst, output reg tick);
+  reg [3:0] count;
+  wire [79:0] place = {count, 76'd0} + 80'd1;
+  wire signed [79:0] shifted = $signed(place) >>> 3;
+  always @(posedge clk)
+    if (rst) {count, tick} <= 5'd0;
+    else begin
+      count <= place[79:76] >= 4'd5 || shifted < -80'sd5 ? 4'd0 : place[79:76] + 4'd1;
+      tick <= count < 4'd3;
+    end
+endmodule
+"""
+
+
+def test_claims_beyond_a_machine_word_are_judged_and_certified(tmp_path: Path) -> None:
+    source, certificate = written(tmp_path, BY_3), tmp_path / "c.json"
+    result = run(
+        "check", source, "--ratio", "10_000_000_000_000_000_000_000.5", "--high", "3", "--json", "-",
+        "--certificate", str(certificate),
+    )  # fmt: skip
+    assert result.exit_code == 1
+    told = json.loads(result.stdout)["spec"]
+    assert (Fraction(told["ratio"]), told["period_half_cycles"]) == (LONG, 2 * LONG)
+    assert run("recheck", str(certificate)).exit_code == 0
+
+
+def test_lengths_beyond_a_machine_word_are_judged_while_inputs_move(tmp_path: Path) -> None:
+    text = BY_3.replace("input rst", "input rst, input [1:0] div").replace(">= 2'd2", ">= div")
+    result = run(
+        "check",
+        written(tmp_path, text),
+        "--ratio",
+        f"{10**22}*(div+1)",
+        "--moving",
+        "div=1..2",
+        "--effort",
+        "5",
+    )
+    assert (result.exit_code, result.stderr) == (1, "")
+    assert "REFUTED   ratio-change" in result.stdout
+
+
+def test_words_of_more_than_64_bits(tmp_path: Path) -> None:
+    source = written(tmp_path, IN_80_BITS)
+    assert run("check", source, "--ratio", "6").exit_code == 0
+    assert run("check", source, "--ratio", "8").exit_code == 1
 
 
 def test_too_little_effort_is_open(tmp_path: Path) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from collections.abc import Sequence
 
 import numpy as np
 import pytest
@@ -26,6 +27,27 @@ def test_the_four_evaluations_agree(seed: int) -> None:
     columns = {v.name: np.array([s[v.name] for s in samples], dtype=np.uint64) for v in LEAVES}
     (array,) = e.arrays([root], columns)
     assert list(np.broadcast_to(array, len(samples))) == by_walk
+    _solver_agrees(root, samples, by_walk)
+
+
+@pytest.mark.parametrize("seed", range(40))
+def test_arrays_of_words_too_wide_for_numpy_agree(seed: int) -> None:
+    """Over and around 64 bits, where signs and shifts have their corners."""
+    rng = random.Random(2000 + seed)
+    root = random_expression(rng, LEAVES, rng.choice([63, 64, 65, 80, 129]), 4)
+    samples = [{v.name: rng.choice([0, rng.getrandbits(v.width), (1 << v.width) - 1]) for v in LEAVES}]
+    samples += [{v.name: rng.getrandbits(v.width) for v in LEAVES} for _ in range(7)]
+    by_walk = [e.evaluate([root], values)[0] for values in samples]
+    columns = {v.name: np.array([s[v.name] for s in samples], dtype=np.uint64) for v in LEAVES}
+    # What goes beyond a word somewhere inside is as wide as that everywhere.
+    bit = e.extract(e.concat(root, e.resize(root, 70, True)), 0, 0)
+    array, low = e.arrays([root, bit], columns)
+    assert [int(value) for value in np.broadcast_to(array, len(samples))] == by_walk
+    assert [int(value) for value in np.broadcast_to(low, len(samples))] == [value & 1 for value in by_walk]
+    _solver_agrees(root, samples, by_walk)
+
+
+def _solver_agrees(root: e.Expr, samples: Sequence[dict[str, int]], by_walk: Sequence[int]) -> None:
     (term,) = e.z3_terms([root])
     for values, wanted in zip(samples, by_walk, strict=True):
         pairs = [(z3.BitVec(v.name, v.width), z3.BitVecVal(values[v.name], v.width)) for v in LEAVES]
