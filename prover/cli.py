@@ -460,11 +460,11 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
         found = [row.outcome(kept) for row in shown]
         written = _results_of(found, targets, told.as_object(run))
         texts = [
-            _text_of(outcome, paths)
+            told.headed(row, _text_of(outcome, paths))
             for outcome, row, paths in zip(found, shown, written.waves, strict=True)
             if row.verdict != "proved"
         ]
-        text = "\n".join([*filter(None, texts), told.render(run)])
+        text = "\n".join([*filter(None, texts), told.render(run, bool(written.results))])
         text = _written_up(written.results, text, found)
     _print(text)
     for remark in written.remarks:

@@ -117,8 +117,8 @@ def _readdressed(text: str, files: Sequence[str], spec: Spec) -> str:
     from prover.verilog.source import read_source
 
     stated = _object(text)
-    _subject(stated)
-    if spec.ratio_formula is not None or spec.high_formula is not None:
+    form = _form_of(stated)
+    if form is written and (spec.ratio_formula is not None or spec.high_formula is not None):
         spec = in_numbers(read_it(files, spec), spec)
     read = read_source(files, defines=spec.defines, include=[Path(folder) for folder in spec.include]).files
     digests = tuple((written.relative(name), written.digest(Path(name))) for name in read)
@@ -128,13 +128,23 @@ def _readdressed(text: str, files: Sequence[str], spec: Spec) -> str:
     options = written.options(subject)
     named = {name: options[name] for name in ("files", "include")}
     different = list(
-        differences(
-            [stated["claim"], {**stated["options"], **named}], [written.claim(spec), options], "claim"
-        )
+        differences([stated["claim"], {**stated["options"], **named}], [form.claim(spec), options], "claim")
     )
     if different:
         raise Rejected("\n".join(different))
-    return written.render({**stated, "options": options, "sources": written.sources(subject)})
+    return written.render({**stated, "options": options, "sources": form.sources(subject)})
+
+
+def _form_of(stated: dict[str, Any]) -> Any:
+    """The module that writes certificates of this kind. Raises Rejected where this one is not of one piece."""
+    if stated["schema"] == VALUES:
+        from prover.report import values_certificate
+        from prover.values_recheck import subject_in
+
+        subject_in(stated)
+        return values_certificate
+    _subject(stated)
+    return written
 
 
 def _outcome(

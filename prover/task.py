@@ -184,8 +184,7 @@ def work(task: Task, say: Callable[[Message], None]) -> None:
                 "prover": identity(),
             }
         )
-        # A certificate speaks of one value of the inputs.
-        if task.certify and not task.spec.each:
+        if task.certify:
             _certify(report, task, say)
     except UserError as error:
         told = error.message, error.where, error.hint

@@ -23,7 +23,7 @@ from prover.values_rebuild import made_of
 def derive(stated: dict[str, Any], text: str, bases: Sequence[Path], effort: Effort) -> recheck.Derived:
     """Everything that the certificate claims, derived again. Raises Rejected where that comes to something else, and
     UserError where there are no sources."""
-    subject = _subject(stated)
+    subject = subject_in(stated)
     effort.say("reading the sources")
     design = recheck.design_of(subject, recheck.base_of(subject, bases))
     effort.say("deriving what the certificate claims")
@@ -47,8 +47,8 @@ def derive(stated: dict[str, Any], text: str, bases: Sequence[Path], effort: Eff
     return recheck.Derived(design.top, made.report.findings, made.obligations, scripts)
 
 
-def _subject(stated: dict[str, Any]) -> Subject:
-    """What the certificate says that it is about, and that it is of one piece."""
+def subject_in(stated: dict[str, Any]) -> Subject:
+    """What the certificate says that it is about. Raises Rejected where it is not of one piece."""
     try:
         claim, given, files = stated["claim"], stated["options"], stated["sources"]["files"]
         subject = Subject(

@@ -9,6 +9,7 @@ import sys
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import closing
 from dataclasses import dataclass, replace
+from datetime import date
 from pathlib import Path
 from typing import Any
 from xml.etree import ElementTree
@@ -19,7 +20,11 @@ from texts import BY_3, RING
 
 import prover
 from prover import cli, task
+from prover.errors import Where
 from prover.gate.ledger import Kept, Ledger, digest
+from prover.gate.manifest import Manifest, Waiver
+from prover.gate.runner import Excused, Run
+from prover.report.gate import render
 from prover.task import Answer, Task
 
 ROOT = Path(prover.__file__).parents[1]
@@ -355,9 +360,29 @@ def test_one_that_cant_be_read_stops_no_other(folder: Path) -> None:
     assert status == 2
     assert found == {**NEW, "third": ("error", "new")}
     assert (told["errors"][0]["file"], told["errors"][0]["line"]) == ("third.v", 6)
+    # Where the file is named is where there is something to be done.
     (folder / "third.v").unlink()
-    assert gate()[1] == {**KEPT, "third": ("error", "new")}
+    _, found, told = gate()
+    assert found == {**KEPT, "third": ("error", "new")}
+    assert (told["errors"][0]["file"], told["errors"][0]["line"]) == ("subharmonic.toml", 2)
     assert "ERROR    third" in run("gate").stdout
+
+
+def test_what_is_wrong_with_an_option_is_told_with_its_line_in_the_manifest(folder: Path) -> None:
+    """Also where only the sources show it, and for which value of a range."""
+    write(
+        folder,
+        MANIFEST.replace('ratio = "N"', 'ratio = "N - 2"').replace("high = 4", 'high = 4\nclock = "ck"'),
+    )
+    result = run("gate")
+    assert result.exit_code == 2
+    assert (
+        "divider counter[N=2]\nerror: subharmonic.toml:8: ratio 0: an output period has to be a whole number of "
+        'half-cycles\n    ratio = "N - 2"\n    ^\n'
+    ) in result.stdout
+    assert (
+        "divider sticks\nerror: subharmonic.toml:14: --clock ck: sticks has no such input\n" in result.stdout
+    )
 
 
 def test_a_crash_and_a_hang_cost_only_themselves_and_are_not_kept(
@@ -484,8 +509,7 @@ def test_without_a_certificate_recheck_judges_again(folder: Path, monkeypatch: p
     assert gate("--recheck")[1]["third"] == ("proved", "rechecked")
 
 
-def test_a_claim_for_each_value_has_no_certificate_and_is_judged_again(folder: Path) -> None:
-    text = """\
+STEPS = """\
 module steps (input clk, input rst, input [1:0] div, output reg tick);
   reg [1:0] left;
   always @(posedge clk or posedge rst)
@@ -494,12 +518,27 @@ module steps (input clk, input rst, input [1:0] div, output reg tick);
     else left <= left - 2'd1;
 endmodule
 """
-    write(folder, '[divider.steps]\nfiles = "steps.v"\neach = "div"\nratio = "2*(div+1)"\n', steps=text)
+
+
+def test_the_certificate_of_a_claim_for_each_value_is_kept_and_checked_again(folder: Path) -> None:
+    write(folder, '[divider.steps]\nfiles = "steps.v"\neach = "div"\nratio = "2*(div+1)"\n', steps=STEPS)
     assert gate()[1] == {"steps": ("proved", "new")}
     _, found, told = gate()
     assert found == {"steps": ("proved", "kept")}
-    assert not told["gate"]["dividers"][0]["certified"]
-    assert gate("--recheck")[1] == {"steps": ("proved", "new")}
+    assert told["gate"]["dividers"][0]["certified"]
+    write(folder, steps=f"// more\n{STEPS}")
+    assert gate("--recheck")[1] == {"steps": ("proved", "rechecked")}
+    # One that is about fewer values does not bear it out.
+    kept, report, certificate = taken("steps")
+    write(folder, '[divider.steps]\nfiles = "steps.v"\neach = "div=0..2"\nratio = "2*(div+1)"\n')
+    gate()
+    fewer = taken("steps")[2]
+    assert fewer != certificate
+    put(kept, report, fewer)
+    write(folder, '[divider.steps]\nfiles = "steps.v"\neach = "div"\nratio = "2*(div+1)"\n')
+    status, found, told = gate("--recheck")
+    assert (status, found) == (2, {"steps": ("error", "rechecked")})
+    assert "its kept certificate is rejected: " in told["errors"][0]["message"]
 
 
 # -- waivers -----------------------------------------------------------------------------------------------
@@ -555,11 +594,52 @@ def test_a_waiver_of_what_is_proved_by_now_is_told(folder: Path) -> None:
     write(folder, MANIFEST + '[defaults.waive.recovery]\nreason = "old"\nuntil = 2999-01-01\n')
     status, _, told = gate()
     assert status == 1
-    states = {each["divider"]: each["state"] for each in told["gate"]["waivers"]}
-    assert states == {"third": "needless", "counter": "needless", "sticks": "counts"}
+    # One of every divider is needed as long as one divider needs it.
+    assert [(each["divider"], each["state"]) for each in told["gate"]["waivers"]] == [(None, "counts")]
+    assert "waived    subharmonic.toml:14: all: recovery until 2999-01-01: old" in table(run("gate").stdout)
+    sticks = MANIFEST.index("[divider.sticks]")
+    write(folder, MANIFEST[:sticks] + '[defaults.waive.recovery]\nreason = "old"\nuntil = 2999-01-01\n')
+    assert (
+        "note      subharmonic.toml:10: all: recovery is proved by now: take its waiver out (old)"
+        in table(run("gate").stdout)
+    )
+    write(folder, MANIFEST + '[divider.third.waive.recovery]\nreason = "old"\nuntil = 2999-01-01\n')
     assert (
         "note      subharmonic.toml:14: third: recovery is proved by now: take its waiver out (old)"
         in table(run("gate").stdout)
+    )
+
+
+@pytest.mark.parametrize(
+    ("today", "told"),
+    [
+        (date(2028, 12, 16), "waived    subharmonic.toml:4: third: enable until 2028-12-31: old"),
+        (
+            date(2028, 12, 17),
+            "waived    subharmonic.toml:4: third: enable until 2028-12-31 (14 more days): old",
+        ),
+        (
+            date(2028, 12, 30),
+            "waived    subharmonic.toml:4: third: enable until 2028-12-31 (1 more day): old",
+        ),
+        (date(2028, 12, 31), "(today is the last day): old"),
+        (date(2029, 1, 1), "EXPIRED   subharmonic.toml:4: third: enable was waived until 2028-12-31: old"),
+    ],
+)
+def test_the_last_days_of_a_waiver_are_told(tmp_path: Path, today: date, told: str) -> None:
+    where = Where("subharmonic.toml", 4)
+    waiver = Waiver("enable", "old", date(2028, 12, 31), where)
+    days = (waiver.until - today).days
+    excused = Excused("third", waiver, "expired" if days < 0 else "counts", days, "")
+    manifest = Manifest(tmp_path / "subharmonic.toml", ())
+    assert told in render(Run(manifest, (), (excused,), 0.0, None))
+
+
+def test_a_waiver_of_what_is_not_judged_is_told(folder: Path) -> None:
+    """The divider has no input that moves, so that no enable is judged."""
+    write(folder, MANIFEST + 'waive.enable = { reason = "old", until = 2999-01-01 }\n')
+    assert "note      subharmonic.toml:14: sticks: enable is not judged: take its waiver out (old)" in table(
+        run("gate").stdout
     )
 
 

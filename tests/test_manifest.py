@@ -10,7 +10,7 @@ import pytest
 from cases_format import CASES, read_case
 
 from prover import cli
-from prover.errors import UserError
+from prover.errors import UserError, Where
 from prover.gate.manifest import Manifest, find_manifest, read_manifest
 from prover.spec import Spec
 
@@ -122,20 +122,29 @@ ENTRY = '[divider.a]\nfiles = "a.v"\nratio = 3\n'
 @pytest.mark.parametrize(
     ("text", "line", "message", "hint"),
     [
-        ("[divider.a\n", 1, "no TOML", "README"),
-        (ENTRY + ENTRY, 4, "no TOML", "README"),
-        ('[divider.a]\nfiles = "a.v', 2, "no TOML", "README"),
+        ("[divider.a\n", 1, "no TOML", "[divider.NAME]"),
+        (ENTRY + ENTRY, 4, "[divider.a] is there twice", "a name of its own"),
+        (ENTRY + "ratio = 4\n", 4, "ratio is there twice", "give it once"),
+        ("ratio = 3\n" + ENTRY, 1, "ratio stands above all tables", "below [divider.NAME]"),
+        ("[divider.a]\nfiles = a.v\n", 2, "no TOML", 'files = "…"'),
+        ("[divider.a]\nset = {\n  N = 3 }\n", 2, "no TOML", "on one line"),
+        ('[divider.""]\nfiles = "a.v"\nratio = 3\n', 1, "a divider without a name", "[divider.NAME]"),
+        ("[[divider]]\nfiles = 'a.v'\n", 1, "a list, where a table is wanted", "[divider.NAME]"),
+        ('[divider.a]\nfiles = "a.v', 2, "no TOML", "files = "),
         ("", None, "no divider in it", "[divider.NAME]"),
         ("[divider]\n", None, "no divider in it", "[divider.NAME]"),
         (ENTRY + "ratoi = 3\n", 4, "[divider.a] no key is called 'ratoi'", "did you mean ratio?"),
         (ENTRY + "source_duty = 50\n", 4, "'source_duty'", "did you mean source-duty?"),
-        (ENTRY + "\n\nvcd = 'a.vcd'\n", 6, "'vcd'", "did you mean "),
-        (ENTRY + "workers = 2\n", 4, "'workers'", "did you mean "),
+        (ENTRY + "\n\nvcd = 'a.vcd'\n", 6, "vcd is no part of a claim", "give --vcd to the command"),
+        (ENTRY + "workers = 2\n", 4, "workers is no part of a claim", "give --workers to the command"),
+        (ENTRY + "zzz = 2\n", 4, "'zzz'", "there are clock, "),
         ("[dividers.a]\nratio = 3\n", 1, "'dividers'", "did you mean divider?"),
-        ("[defaults]\nfiles = 'a.v'\n" + ENTRY, 2, "[defaults] no key is called 'files'", "did you mean"),
+        ("[defaults]\nfiles = 'a.v'\n" + ENTRY, 2, "[defaults] no key is called 'files'", "each divider's own"),
         ('[divider.a]\nfiles = "a.v"\n', 1, "[divider.a] no ratio", "ratio = 3"),
         ("[divider.a]\nratio = 3\n", 1, "[divider.a] no files", 'files = "divider.v"'),
         ("[divider.a]\nratio = 3\nfiles = []\n", 3, "no files", "say which"),
+        ("[divider.a]\nratio = 3\nfiles = ''\n", 3, "no files", "say which"),
+        ("[divider.a]\nfiles = 'a.v'\nratio = inf\n", 3, "inf, where a number is wanted", "a formula"),
         ("[divider.a]\nratio = 3\nfiles = [1, true]\n", 3, "true or false, where a text", "quotes"),
         ('[divider.a]\nfiles = "a.v"\nratio = "three"\nhigh = 1\n[divider.b]\n', 5, "no files", "say which"),
         ('[divider.a]\nfiles = "a.v"\nratio = 0\n', 3, "ratio 0: ", "positive"),
@@ -144,16 +153,19 @@ ENTRY = '[divider.a]\nfiles = "a.v"\nratio = 3\n'
         (ENTRY + "high = 6\n", 4, "high time 6", "between 1 and 5"),
         (ENTRY + 'start = "never"\n', 4, "'never' is not one of", ""),
         (ENTRY + "start = { a = 1 }\n", 4, "one value, not a table", "write start ="),
-        (ENTRY + 'set = "N=2..5"\n', 4, "'2..5' is not a whole number", "12"),
+        (ENTRY + 'set = "N=2..5"\n', 4, "'2..5' is not a whole number", 'set = { N = "2..512" }'),
         (ENTRY + 'set = { N = "5..2" }\n', 4, "no range of values", "2..512"),
         (ENTRY + "set = { N = { a = 1 } }\n", 4, "a table, where a text", ""),
         (ENTRY + 'set.N = "2..x"\n', 4, "no range of values", "2..512"),
         (ENTRY + 'set = { N = "1..99999" }\n', 1, "more than 20000 dividers", "narrow"),
         (ENTRY + 'waive = "recovery"\n', 4, "a text, where a table is wanted", ""),
-        (ENTRY + '[divider.a.waive]\nduty = { reason = "x", until = 2027-01-31 }\n', 5, "'duty'", "did you mean "),
+        (ENTRY + '[divider.a.waive]\nduty = { reason = "x", until = 2027-01-31 }\n', 5, "'duty'", "there are enable, "),
         (ENTRY + "[divider.a.waive.recovery]\nuntil = 2027-01-31\n", 4, "without a reason", "say why"),
         (ENTRY + '[divider.a.waive.recovery]\nreason = "x"\n', 4, "without its last day", "until ="),
-        (ENTRY + 'waive.ratio = { reason = "x", until = "soon" }\n', 4, "without its last day", "no quotes"),
+        (ENTRY + 'waive.ratio = { reason = "x", until = "2027-01-31" }\n', 4, "until is a text", "no quotes"),
+        (ENTRY + 'waive.ratio = { reason = "x", until = 2027-01-31T09:00:00Z }\n', 4, "until is a date or", "2027-01-31"),
+        (ENTRY + 'waive.ratio = { reason = "x", until = 31.12.2027 }\n', 4, "no TOML", "until = 2027-01-31"),
+        (ENTRY + 'waive.ratio = { reason = "x", until = 2027-02-30 }\n', 4, "no TOML", "until = 2027-01-31"),
         (ENTRY + 'waive.ratio = { reason = "x", till = 2027-01-31 }\n', 4, "'till'", "did you mean until?"),
         (ENTRY + "mean = 1\n", 4, "mean is true or false", "mean = true"),
         ('divider = 3\n', 1, "a number, where a table is wanted", ""),
@@ -169,6 +181,31 @@ def test_what_is_not_understood_is_told_with_its_line(
     assert hint in told.value.hint
     assert (told.value.where.line if told.value.where else None) == line
     assert "subharmonic.toml" in str(told.value)
+
+
+def test_a_mark_of_the_encoding_is_passed_over(tmp_path: Path) -> None:
+    assert [each.name for each in read(tmp_path, "\ufeff" + ENTRY).dividers] == ["a"]
+
+
+def test_what_the_sources_show_to_be_wrong_is_told_with_the_line_of_its_option(tmp_path: Path) -> None:
+    text = '[defaults]\nhold = { en = 1 }\n[divider.a]\nratio = 3\nfiles = ["x.v", "reset.v"]\noutput = "q"\n'
+    (divider,) = read(tmp_path, text).dividers
+    for message, line in (
+        ("--hold en: a has no such input", 2),
+        ("--output q: a has no such output", 6),
+        ("reset.v: No such file or directory", 5),
+        ("ratio 0: an output period has to be a whole number", 4),
+        ("something else", 3),
+    ):
+        placed = divider.placed(UserError(message, hint="h"))
+        assert (placed.where.line if placed.where else 0, placed.message, placed.hint) == (line, message, "h")
+    own = UserError("--hold en", Where("x.v", 9))
+    assert divider.placed(own) is own
+
+
+def test_properties_of_moving_inputs_can_be_waived(tmp_path: Path) -> None:
+    (divider,) = read(tmp_path, ENTRY + 'waive.enable = { reason = "x", until = 2027-01-31 }\n').dividers
+    assert [waiver.name for waiver in divider.waivers] == ["enable"]
 
 
 def test_a_manifest_that_cant_be_read(tmp_path: Path) -> None:

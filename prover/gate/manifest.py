@@ -47,6 +47,15 @@ MOST_DIVIDERS = 20_000
 LONGEST_KEY = 500
 """Characters of a line in which its key is looked for."""
 
+OF_THE_COMMAND = (
+    *("afresh", "certificate", "cluster", "html", "json", "junit", "ledger"),
+    *("recheck", "sarif", "testbench", "vcd", "workers"),
+)
+"""Options that a run has and a claim hasn't."""
+
+A_DATE = "until = 2027-01-31"
+FORM = 'a manifest is TOML: [divider.NAME], and below it files = "divider.v" and ratio = 3'
+
 Options = Mapping[str, Literal["one", "many", "flag"]]
 """The options of `check` that an entry takes: name, without dashes, to whether it has a value, or may have many."""
 
@@ -56,12 +65,14 @@ SpecOf = Callable[[Sequence[str]], Spec]
 
 @dataclass(frozen=True, slots=True)
 class Waiver:
-    """A property that is excused until the end of a day, and why. `where` is its place in the manifest."""
+    """A property that is excused until the end of a day, and why. `where` is its place in the manifest. It is
+    `shared` if it is every divider's."""
 
     name: str
     reason: str
     until: date
     where: Where
+    shared: bool = False
 
     def expired(self, today: date) -> bool:
         return today > self.until
@@ -82,6 +93,7 @@ class Divider:
     spec        the claim, include folders from the manifest's folder; without waivers
     waivers     these
     where       its place in the manifest
+    places      the places of its keys
     """
 
     entry: str
@@ -90,12 +102,24 @@ class Divider:
     spec: Spec
     waivers: tuple[Waiver, ...]
     where: Where
+    places: Mapping[str, Where] = field(default_factory=dict)
 
     @property
     def name(self) -> str:
         """The entry's name with the values of its ranges: tick[N=5]."""
         told = ",".join(f"{name}={value}" for name, value in self.parameters.items())
         return f"{self.entry}[{told}]" if told else self.entry
+
+    def placed(self, error: UserError) -> UserError:
+        """The error with a place: where it has none, that of the option that it speaks of, or of the entry."""
+        if error.where is not None:
+            return error
+        named = [name for name in re.findall(r"--([a-z]+(?:-[a-z]+)*)", error.message) if name in self.places]
+        if not named and any(error.message.startswith(file) for file in self.files):
+            named = ["files"]
+        if not named:
+            named = [name for name in re.findall(r"[a-z]+", error.message) if name in self.places]
+        return UserError(error.message, self.places[named[0]] if named else self.where, error.hint)
 
 
 @dataclass(frozen=True, slots=True)
@@ -127,7 +151,8 @@ def read_manifest(path: Path, options: Options, spec_of: SpecOf) -> Manifest:
     try:
         with path.open("rb") as file:
             data = file.read(MOST_BYTES + 1)
-        text = data.decode()
+        # Some editors begin a file with a mark of its encoding.
+        text = data.decode("utf-8-sig")
     except OSError as fault:
         raise UserError(
             f"can't read {path}: {fault.strerror or fault}", hint="give the path of a manifest"
@@ -155,6 +180,9 @@ class _Reader:
         except RecursionError:
             raise UserError(f"{self.path} nests too deeply", hint="is this a manifest?") from None
         self.lines = list(_keys_by_line(self.text))
+        for key in data:
+            if key in (*self.options, "files", "waive"):
+                raise self._error((key,), f"{key} stands above all tables", "put it below [divider.NAME]")
         self._known(data, ("defaults", "divider"), ())
         shared = self._table(data.get("defaults", {}), ("defaults",))
         self._known(shared, (*self.options, "waive"), ("defaults",))
@@ -169,6 +197,8 @@ class _Reader:
     def _entry(self, name: str, entry: object, shared: Mapping[str, object], most: int) -> Iterator[Divider]:
         """The dividers of one entry, `most` at most: one for each combination of the values of its ranges."""
         at = ("divider", name)
+        if not name.strip():
+            raise self._error(at, "a divider without a name", "write [divider.NAME]")
         own = self._table(entry, at)
         self._known(own, ("files", *self.options, "waive"), at)
         if "files" not in own:
@@ -176,7 +206,7 @@ class _Reader:
         if "ratio" not in own and "ratio" not in shared:
             raise self._error(at, "no ratio", "say what is claimed: ratio = 3")
         files = tuple(self._texts(own["files"], (*at, "files")))
-        if not files:
+        if not files or not all(file.strip() for file in files):
             raise self._error((*at, "files"), "no files", 'say which: files = "divider.v"')
         waivers = tuple(self._waivers(shared, ("defaults",)))
         ours = tuple(self._waivers(own, at))
@@ -194,10 +224,11 @@ class _Reader:
         if math.prod(sum(high - low + 1 for low, high in each) for each in ranges.values()) > most:
             raise self._error(at, f"more than {MOST_DIVIDERS} dividers", "narrow a range")
         spec, here = self._spec(arguments, at), self._where(at)
+        places = {key: self._where((*where[key], key)) for key in given if key != "waive"}
         for values in itertools.product(*(_values(each) for each in ranges.values())):
             parameters = dict(zip(ranges, values, strict=True))
             claim = replace(spec, parameters={**spec.parameters, **parameters}) if parameters else spec
-            yield Divider(name, parameters, files, claim, waivers, here)
+            yield Divider(name, parameters, files, claim, waivers, here, places)
 
     def _spec(self, arguments: Sequence[str], at: Sequence[str]) -> Spec:
         try:
@@ -206,7 +237,10 @@ class _Reader:
             # The option that is spoken of has a line here.
             words = re.findall(r"[a-z]+(?:-[a-z]+)*", f"{error.message} {error.hint}")
             named = [word for word in words if f"--{word}" in arguments]
-            raise self._error((*at, *named[:1]), error.message, error.hint) from None
+            hint = error.hint
+            if named[:1] == ["set"] and "whole number" in error.message:
+                hint += '; for several values write set = { N = "2..512" }'
+            raise self._error((*at, *named[:1]), error.message, hint) from None
         return replace(spec, include=tuple(os.path.normpath(folder) for folder in spec.include))
 
     # -- values --------------------------------------------------------------------------------------------
@@ -257,15 +291,17 @@ class _Reader:
         """A text, or a number as text."""
         if isinstance(value, str):
             return value
+        if isinstance(value, float) and not math.isfinite(value):
+            raise self._error(at, f"{value}, where a number is wanted", "write one, or a formula in quotes")
         if isinstance(value, (int, float)) and not isinstance(value, bool):
             return format(Decimal(repr(value)), "f") if isinstance(value, float) else str(value)
         raise self._error(at, f"{_kind(value)}, where a text or a number is wanted", "put it in quotes")
 
     def _waivers(self, entry: Mapping[str, object], at: Sequence[str]) -> Iterator[Waiver]:
-        from properties import NAMES
+        from properties import ALL
 
         waived = self._table(entry.get("waive", {}), (*at, "waive"))
-        self._known(waived, NAMES, (*at, "waive"))
+        self._known(waived, ALL, (*at, "waive"))
         for name, value in waived.items():
             here = (*at, "waive", name)
             table = self._table(value, here)
@@ -273,29 +309,34 @@ class _Reader:
             reason, until = table.get("reason"), table.get("until")
             if not isinstance(reason, str) or not reason.strip():
                 raise self._error(here, "a waiver without a reason", 'say why: reason = "…"')
+            if "until" not in table:
+                raise self._error(here, "a waiver without its last day", f"say until when: {A_DATE}")
             if not isinstance(until, date) or isinstance(until, datetime):
-                raise self._error(
-                    here,
-                    "a waiver without its last day",
-                    "write it as a date, with no quotes: until = 2027-01-31",
-                )
-            yield Waiver(name, reason.strip(), until, self._where(here))
+                told = f"until is {_kind(until)}, where a date is wanted"
+                raise self._error(here, told, f"write {A_DATE}, with no quotes")
+            yield Waiver(name, reason.strip(), until, self._where(here), at == ("defaults",))
 
     # -- places --------------------------------------------------------------------------------------------
 
     def _table(self, value: object, at: Sequence[str]) -> Mapping[str, Any]:
         if not isinstance(value, dict):
-            raise self._error(at, f"{_kind(value)}, where a table is wanted", f"write [{'.'.join(at)}]")
+            header = at if at != ("divider",) else ("divider", "NAME")
+            raise self._error(at, f"{_kind(value)}, where a table is wanted", f"write [{'.'.join(header)}]")
         return value
 
     def _known(self, table: Mapping[str, object], known: Iterable[str], at: Sequence[str]) -> None:
         """Refuse a key that means nothing, and name the nearest one that does."""
         names = list(known)
         for key in table:
-            if key not in names:
-                (nearest,) = difflib.get_close_matches(key, names, 1, 0)
-                there = f"; there are {', '.join(sorted(names))}" if len(names) > 1 else ""
-                raise self._error((*at, key), f"no key is called '{key}'", f"did you mean {nearest}?{there}")
+            if key in names:
+                continue
+            if key in OF_THE_COMMAND:
+                raise self._error((*at, key), f"{key} is no part of a claim", f"give --{key} to the command")
+            near = difflib.get_close_matches(key.lower(), names, 1)
+            hints = [f"did you mean {near[0]}?"] if near else []
+            hints += ["files are each divider's own;"] if key == "files" else []
+            hints += [f"there are {', '.join(sorted(names))}"]
+            raise self._error((*at, key), f"no key is called '{key}'", " ".join(hints))
 
     def _error(self, at: Sequence[str], message: str, hint: str) -> UserError:
         table = at[:2] if at[:1] == ("divider",) else at[:1] if at[:1] == ("defaults",) else ()
@@ -321,9 +362,34 @@ class _Reader:
         line, column = (int(found[1]), int(found[2])) if found and found[1] else (len(lines), 1)
         text = lines[min(line, len(lines)) - 1].rstrip("\r")
         what = message[: found.start()] if found else message
+        told, hint = _mistaken(what, lines[: min(line, len(lines))])
+        if told != what:
+            column = len(text) - len(text.lstrip()) + 1
         return UserError(
-            f"no TOML: {what}", Where(str(self.path), line, column, text), "see the README for its form"
+            told if told != what else f"no TOML: {what}", Where(str(self.path), line, column, text), hint
         )
+
+
+def _mistaken(what: str, lines: Sequence[str]) -> tuple[str, str]:
+    """What the TOML reader says of the last of these lines in the words of a manifest, and a hint."""
+    text = lines[-1]
+    twice = re.search(r"declare \((.*)\) twice", what)
+    if twice:
+        names = re.findall(r"'((?:[^'\\]|\\.)*)'", twice[1])
+        return (
+            f"[{'.'.join(names)}] is there twice",
+            "give each divider a name of its own, and each table once",
+        )
+    key = re.match(r"\s*([\w.\-\"']+)\s*=", text[:LONGEST_KEY])
+    if "overwrite" in what and key:
+        return f"{key[1]} is there twice", "give it once"
+    if re.search(r"\buntil\s*=", text):
+        return what, f"write a date as in {A_DATE}, with no quotes"
+    if what.startswith("Invalid value"):
+        return what, f'put texts in quotes: {key[1] if key else "files"} = "…"'
+    if text.rstrip("\r").rstrip().endswith(("{", ",")) and "{" in text:
+        return what, "an inline table stands on one line: set = { N = 3, WIDTH = 4 }"
+    return what, FORM
 
 
 def _values(ranges: Ranges) -> Iterator[int]:

@@ -108,11 +108,19 @@ class Row:
 
 @dataclass(frozen=True)
 class Excused:
-    """What is to be told of a waiver: that it counts, has expired, or excuses what is proved by now."""
+    """What is to be told of a waiver.
+
+    entry   whose it is, "" where it is every divider's
+    state   that it counts, has expired, or is needless
+    days    how many days it has left, today aside; negative where it has expired
+    why     why it is, or would be, needless: what it excuses is proved, or not judged; "" where it isn't
+    """
 
     entry: str
     waiver: Waiver
     state: Literal["counts", "expired", "needless"]
+    days: int
+    why: Literal["", "proved", "not judged"]
 
 
 @dataclass(frozen=True)
@@ -197,7 +205,7 @@ class _Gate:
         row = Row(divider, names, waived=waived)
         content = self._content(names, divider.spec)
         if isinstance(content, UserError):
-            row.came = Outcome(names, error=content, title=divider.name)
+            row.came = Outcome(names, error=divider.placed(content), title=divider.name)
         else:
             row.content = content
             row.key = key_of(content, divider.spec)
@@ -267,7 +275,8 @@ class _Gate:
         if content is None:
             return
         came = outcome(row.files, answer, content)
-        came = replace(came, title=row.divider.name)
+        error = row.divider.placed(came.error) if came.error else None
+        came = replace(came, title=row.divider.name, error=error)
         if came.report is None:
             row.came = came
             return
@@ -367,23 +376,27 @@ class _Gate:
             self.unkept = error
 
     def _excused(self, rows: Sequence[Row]) -> list[Excused]:
-        """Each waiver of each entry once; it is needless where all its dividers have that property proved."""
-        found: list[Excused] = []
-        by_entry: dict[str, list[Row]] = {}
+        """Each waiver once. It is about the rows of its entry; one that is shared, about those of all entries
+        that have none of their own."""
+        about: dict[tuple[str, Waiver], list[Row]] = {}
         for row in rows:
-            by_entry.setdefault(row.divider.entry, []).append(row)
-        for entry, group in by_entry.items():
-            for waiver in group[0].divider.waivers:
-                proved = all(_is_proved(row, waiver.name) for row in group)
-                state: Literal["counts", "expired", "needless"] = "needless" if proved else "counts"
-                found.append(Excused(entry, waiver, "expired" if waiver.expired(self.today) else state))
+            for waiver in row.divider.waivers:
+                about.setdefault(("" if waiver.shared else row.divider.entry, waiver), []).append(row)
+        found: list[Excused] = []
+        for (entry, waiver), group in about.items():
+            days, why = (waiver.until - self.today).days, _needless(group, waiver.name)
+            state: Literal["counts", "expired", "needless"] = "needless" if why else "counts"
+            found.append(Excused(entry, waiver, "expired" if days < 0 else state, days, why))
         return found
 
 
-def _is_proved(row: Row, name: str) -> bool:
-    if row.kept is None or row.came is not None:
-        return False
-    return any(each.name == name and each.verdict == "proved" for each in row.kept.properties)
+def _needless(rows: Sequence[Row], name: str) -> Literal["", "proved", "not judged"]:
+    """Why none of the rows needs the property to be waived; "" where one does, or where that is not known."""
+    judged = [row.kept for row in rows if row.kept is not None and row.came is None]
+    verdicts = {each.verdict for kept in judged for each in kept.properties if each.name == name}
+    if len(judged) < len(rows) or verdicts - {"proved"}:
+        return ""
+    return "proved" if verdicts else "not judged"
 
 
 def _waived(report: Report, waived: Mapping[str, str]) -> Report:

@@ -20,11 +20,24 @@ Object = dict[str, Any]
 SHOWN = 12
 """Digits of a digest that are shown."""
 
+SOON = 14
+"""Days before a waiver's last one from which on that is told."""
 
-def render(run: Run) -> str:
-    """The table of a run, what is to be told of waivers, and the sum of it, ended by a newline."""
+
+def headed(row: Row, text: str) -> str:
+    """A divider's report below the name that the manifest gives it; "" for none."""
+    return f"divider {harmless(row.divider.name)}\n{text}" if text else ""
+
+
+def render(run: Run, reported: bool = False) -> str:
+    """The table of a run, what is to be told of waivers, and the sum of it, ended by a newline; `reported` if it goes
+    to reports, too."""
     lines = list(_table([_line(group) for group in _groups(run.rows)]))
     lines += [line for each in run.excused for line in _waiver(each)]
+    if not reported and any(row.verdict == "proved" and _obligations(row) for row in run.rows):
+        lines.append(
+            "note      timing obligations are for timing analysis: see them with --html, --json or --sarif"
+        )
     return harmless("\n".join([*lines, _sum(run)])) + "\n"
 
 
@@ -50,7 +63,7 @@ def _line(rows: list[Row]) -> tuple[str, str, str, str]:
         if first.source == "new":
             slowest = max(rows, key=lambda row: row.kept.seconds if row.kept else 0.0)
             words[0] += f", the slowest {slowest.divider.name} {max(seconds):.2f} s"
-    obligations = sum(each.obligations for row in rows for each in (row.kept.properties if row.kept else ()))
+    obligations = sum(map(_obligations, rows))
     if first.verdict == "proved" and obligations:
         words.append(f"under {obligations} timing obligation{'s' * (obligations > 1)}")
     words += sorted({f"{name} waived" for row in rows for name in _excused_by(row)})
@@ -59,6 +72,11 @@ def _line(rows: list[Row]) -> tuple[str, str, str, str]:
     name = first.divider.name if len(rows) == 1 else first.divider.entry
     time = f"{sum(seconds):.2f} s" if first.source == "new" and seconds else first.source
     return first.verdict.upper(), name, "" if first.kept is None else time, "; ".join(filter(None, words))
+
+
+def _obligations(row: Row) -> int:
+    """How many timing obligations its verdict carries."""
+    return sum(each.obligations for each in row.kept.properties) if row.kept is not None else 0
 
 
 def _excused_by(row: Row) -> Iterator[str]:
@@ -84,7 +102,8 @@ def _ends(rows: Sequence[Row]) -> str:
 def _table(rows: Sequence[Sequence[str]]) -> Iterator[str]:
     """The cells in columns; the last one is as long as it likes."""
     shown = [[harmless(cell) for cell in row] for row in rows]
-    widths = [max((len(row[column]) for row in shown), default=0) for column in range(len(shown[0]) - 1)]
+    columns = max(map(len, shown), default=1) - 1
+    widths = [max(len(row[column]) for row in shown) for column in range(columns)]
     for row in shown:
         cells = [f"{cell:{width}}" for cell, width in zip(row, widths, strict=False)]
         yield "  ".join([*cells, row[-1]]).rstrip()
@@ -92,14 +111,26 @@ def _table(rows: Sequence[Sequence[str]]) -> Iterator[str]:
 
 def _waiver(each: Excused) -> Iterator[str]:
     waiver = each.waiver
-    at = f"{waiver.where}: {each.entry}: {waiver.name}"
+    at = f"{waiver.where}: {each.entry or 'all'}: {waiver.name}"
+    needless = f"{each.why}{' by now' * (each.why == 'proved')}" if each.why else ""
     if each.state == "expired":
         yield f"EXPIRED   {at} was waived until {waiver.until}: {waiver.reason}"
-        yield "          hint: mend the divider, or judge the reason anew and give it another date"
+        yield (
+            f"          hint: it is {needless}: take the waiver out"
+            if needless
+            else ("          hint: mend the divider, or judge the reason anew and give it another date")
+        )
     elif each.state == "needless":
-        yield f"note      {at} is proved by now: take its waiver out ({waiver.reason})"
+        yield f"note      {at} is {needless}: take its waiver out ({waiver.reason})"
     else:
-        yield f"waived    {at} until {waiver.until}: {waiver.reason}"
+        yield f"waived    {at} until {waiver.until}{_left(each.days)}: {waiver.reason}"
+
+
+def _left(days: int) -> str:
+    """How long it has left, where that is not long."""
+    if days > SOON:
+        return ""
+    return f" ({days} more day{'s' * (days > 1)})" if days else " (today is the last day)"
 
 
 def _sum(run: Run) -> str:
@@ -122,7 +153,7 @@ def as_object(run: Run) -> Object:
             "dividers": [_as_object(row) for row in run.rows],
             "waivers": [
                 {
-                    "divider": each.entry,
+                    "divider": each.entry or None,
                     "property": each.waiver.name,
                     "reason": each.waiver.reason,
                     "until": each.waiver.until.isoformat(),

@@ -66,18 +66,23 @@ def certify(report: Report, files: Sequence[str | Path], effort: Effort) -> Cert
 def document(subject: Subject, top: str, found: ValuesEvidence, made: Made) -> Object:
     """The certificate as plain dictionaries and lists."""
     findings = made.report.findings
-    files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
     return {
         "schema": SCHEMA,
         "verdict": overall(findings),
         "claim": claim(subject.spec),
         "options": options(subject),
-        "sources": {"files": files, "sha256": bound_to(subject)},
+        "sources": sources(subject),
         "top": top,
         "properties": [_property(finding) for finding in findings],
         "evidence": values_evidence.as_object(found),
         "obligations": [{"name": each.name, "script": each.script()} for each in made.obligations],
     }
+
+
+def sources(subject: Subject) -> Object:
+    """The files that were read, and what binds them to the claim."""
+    files = [{"path": path, "sha256": sha256} for path, sha256 in subject.digests]
+    return {"files": files, "sha256": bound_to(subject)}
 
 
 def claim(spec: Spec) -> Object:
