@@ -59,7 +59,7 @@ def discharge(obligation: Obligation, effort: Effort) -> bool:
         return not _all_assignments([obligation.goal], used)[0].any()
     import z3
 
-    solver = z3.SolverFor("QF_BV")
+    solver = z3.SolverFor("QF_BV", ctx=z3.Context())
     solver.set("timeout", max(1, int(effort.left * 1000)))
     solver.from_string(obligation.script())
     answer = solver.check()

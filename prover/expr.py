@@ -734,12 +734,15 @@ def _array_shift(op: str, a: np.ndarray, by: np.ndarray, width: int, kind: Any) 
 # -- z3 ----------------------------------------------------------------------------------------------------
 
 
-def z3_terms(roots: Sequence[Expr], memo: dict[Expr, z3.ExprRef] | None = None) -> list[z3.ExprRef]:
-    """The roots as z3 bit-vector terms; variables keep their names. A memo may be shared between calls."""
+def z3_terms(
+    roots: Sequence[Expr], memo: dict[Expr, z3.ExprRef] | None = None, context: z3.Context | None = None
+) -> list[z3.ExprRef]:
+    """The roots as z3 bit-vector terms of a context, z3's own unless given; variables keep their names. A memo may be
+    shared between calls that are of one context."""
     import z3
 
     memo = {} if memo is None else memo
-    bit = (z3.BitVecVal(1, 1), z3.BitVecVal(0, 1))
+    bit = (z3.BitVecVal(1, 1, context), z3.BitVecVal(0, 1, context))
     binary_terms: dict[str, Callable[[Any, Any], Any]] = {
         "bvand": lambda a, b: a & b, "bvor": lambda a, b: a | b, "bvxor": lambda a, b: a ^ b,
         "bvadd": lambda a, b: a + b, "bvsub": lambda a, b: a - b, "bvmul": lambda a, b: a * b,
@@ -754,9 +757,9 @@ def z3_terms(roots: Sequence[Expr], memo: dict[Expr, z3.ExprRef] | None = None) 
         args: list[Any] = [memo[a] for a in node.args]
         match node.op:
             case "const":
-                memo[node] = z3.BitVecVal(node.value, node.width)
+                memo[node] = z3.BitVecVal(node.value, node.width, context)
             case "var":
-                memo[node] = z3.BitVec(node.name, node.width)
+                memo[node] = z3.BitVec(node.name, node.width, context)
             case "bvnot":
                 memo[node] = ~args[0]
             case "bvneg":

@@ -12,7 +12,7 @@ from typing import Any
 from prover import expr as e
 from prover.effort import Effort
 from prover.expr import Expr
-from prover.solve import find
+from prover.solve import find, fresh_solver
 from prover.watch import Line, Watch
 
 SOON = 2000
@@ -100,15 +100,17 @@ class _Steps:
         """Lines that suffice for the goal to be impossible."""
         import z3
 
-        solver: Any = z3.SolverFor("QF_BV")
+        solver = fresh_solver()
         solver.set("timeout", SOON)
         terms = e.z3_terms(
-            [e.conj([self.system.within, self.system.allowed, goal]), *(self.now[i] for i in left)]
+            [e.conj([self.system.within, self.system.allowed, goal]), *(self.now[i] for i in left)],
+            context=solver.ctx,
         )
         solver.add(terms[0] == 1)
         marks = {f"!holds {i}": i for i in left}
-        for mark, term in zip(marks, terms[1:], strict=True):
-            solver.add(z3.Implies(z3.Bool(mark), term == 1))
-        if solver.check(*map(z3.Bool, marks)) != z3.unsat:
+        assumed = [z3.Bool(mark, solver.ctx) for mark in marks]
+        for mark, term in zip(assumed, terms[1:], strict=True):
+            solver.add(z3.Implies(mark, term == 1))
+        if solver.check(*assumed) != z3.unsat:
             return set(left)
         return {marks[str(each)] for each in solver.unsat_core()}

@@ -20,7 +20,7 @@ from prover import expr as e
 from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
 from prover.joint import MOST_START_BITS, Held, Joint, Start, starts_of, unknowns
-from prover.solve import Model
+from prover.solve import Model, fresh_solver
 
 State = tuple[int, ...]
 
@@ -269,11 +269,9 @@ class Frames:
     Frame 0 is a start, or any state if it is not `started`."""
 
     def __init__(self, joint: Joint, effort: Effort, started: bool = True) -> None:
-        import z3
-
         self.joint = joint
         self.effort = effort
-        self.solver = z3.SolverFor("QF_BV")
+        self.solver = fresh_solver()
         self.memo: dict[Expr, Any] = {}
         self.count = 0
         self.names = set(joint.names)
@@ -291,7 +289,7 @@ class Frames:
         return e.eq(self.which, e.const(number, self.which.width))
 
     def _term(self, x: Expr) -> Any:
-        return e.z3_terms([x], self.memo)[0]
+        return e.z3_terms([x], self.memo, self.solver.ctx)[0]
 
     def _assert(self, x: Expr) -> None:
         self.solver.add(self._term(x) == 1)
@@ -347,7 +345,7 @@ class Frames:
         self.effort.check()
         self.solver.push()
         self._assert(goal)
-        labels = {z3.Bool(label): x for label, x in held.items()}
+        labels = {z3.Bool(label, self.solver.ctx): x for label, x in held.items()}
         for label, x in labels.items():
             self.solver.add(z3.Implies(label, self._term(x) == 1))
         self.solver.set("timeout", max(1, int(self.effort.left * 1000)))

@@ -23,6 +23,7 @@ from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
 from prover.path import Beat, Item, Path, Repeat
 from prover.rhythm import Orbit
+from prover.solve import fresh_solver
 from prover.system import State, System
 
 PATIENCE = 6
@@ -254,9 +255,9 @@ def least(broken: Callable[[Expr], Expr], size: int, likely: int, effort: Effort
     none below that. Asks for any, then for a lesser one, halving the range as it goes."""
     import z3
 
-    (formula,) = e.z3_terms([broken(e.var("!round", size + 1))])
-    index = z3.BitVec("!round", size + 1)
-    solver = z3.SolverFor("QF_BV")
+    solver = fresh_solver()
+    (formula,) = e.z3_terms([broken(e.var("!round", size + 1))], context=solver.ctx)
+    index = z3.BitVec("!round", size + 1, solver.ctx)
     solver.add(formula == 1)
     low, high = 1, likely
 

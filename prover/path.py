@@ -8,13 +8,17 @@ nothing, and every question here is answered without unrolling them.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from bisect import bisect_right
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
-from itertools import groupby
+from itertools import accumulate, groupby
 
 State = tuple[int, ...]
 Run = tuple[int, int]
 """A level and the number of half-cycles for which the output keeps it."""
+
+FEW = 16
+"""Items up to which passing over them is no slower than a table of where they end."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -181,19 +185,55 @@ class Place:
     around: Repeat | None
 
 
+Cut = Callable[[Sequence[Item], int], tuple[Item, int]]
+"""From items and half-cycles after their start to the item there, and the half-cycles after its own start."""
+
+
 def place(path: Sequence[Item], at: int, widths: Sequence[int]) -> Place:
     """The place `at` half-cycles after the path's start. Raises IndexError beyond its end."""
+    return _place(path, at, widths, _item_at)
+
+
+class Places:
+    """The places in a path, for looking up many: each is found in the logarithm of the number of items, where
+    `place` passes over those before it."""
+
+    def __init__(self, path: Path, widths: Sequence[int]) -> None:
+        self._path, self._widths = path, widths
+        # By the identity of a body, which the path keeps alive: where each of its items ends.
+        self._ends: dict[int, list[int]] = {}
+
+    def at(self, half_cycle: int) -> Place:
+        """The place so many half-cycles after the path's start. Raises IndexError beyond its end."""
+        return _place(self._path, half_cycle, self._widths, self._item_at)
+
+    def _item_at(self, items: Sequence[Item], at: int) -> tuple[Item, int]:
+        if len(items) < FEW:
+            return _item_at(items, at)
+        if id(items) not in self._ends:
+            self._ends[id(items)] = list(accumulate(item.length for item in items))
+        ends = self._ends[id(items)]
+        number = bisect_right(ends, at)
+        if number == len(items):
+            raise IndexError("beyond the end of the path")
+        return items[number], at - ends[number] + items[number].length
+
+
+def _item_at(items: Sequence[Item], at: int) -> tuple[Item, int]:
+    for item in items:
+        if at < item.length:
+            return item, at
+        at -= item.length
+    raise IndexError("beyond the end of the path")
+
+
+def _place(path: Sequence[Item], at: int, widths: Sequence[int], cut: Cut) -> Place:
     offset: State = (0,) * len(widths)
     around: Repeat | None = None
     calm = 1
     items: Sequence[Item] = path
     while True:
-        for item in items:
-            if at < item.length:
-                break
-            at -= item.length
-        else:
-            raise IndexError("beyond the end of the path")
+        item, at = cut(items, at)
         if isinstance(item, Beat):
             return Place(moved(item.state, offset, 1, widths), item.level, calm, around)
         calm = item.length - at

@@ -16,6 +16,15 @@ from prover.expr import Expr
 
 Model = dict[str, int]
 
+
+def fresh_solver() -> Any:
+    """A solver in a context of its own (its `ctx`), so that what it finds hangs on nothing that was asked before:
+    z3's choices follow the numbers that a context gives to terms."""
+    import z3
+
+    return z3.SolverFor("QF_BV", ctx=z3.Context())
+
+
 TRIED = 10
 """Bits of variables up to which every assignment is tried: quicker than a solver's start."""
 
@@ -33,8 +42,8 @@ def find(goal: Expr, effort: Effort) -> Model | None:
         return _tried(goal, used)
     import z3
 
-    (term,) = e.z3_terms([goal])
-    solver = z3.SolverFor("QF_BV")
+    solver = fresh_solver()
+    (term,) = e.z3_terms([goal], context=solver.ctx)
     solver.set("timeout", max(1, int(effort.left * 1000)))
     solver.add(term == 1)
     answer = solver.check()
@@ -45,7 +54,7 @@ def find(goal: Expr, effort: Effort) -> Model | None:
     model = solver.model()
     values: Model = {}
     for v in e.variables([goal]):
-        value: Any = model.eval(z3.BitVec(v.name, v.width), model_completion=True)
+        value: Any = model.eval(z3.BitVec(v.name, v.width, solver.ctx), model_completion=True)
         values[v.name] = value.as_long()
     if e.evaluate([goal], values) != [1]:
         raise InternalError("the solver's model does not satisfy the question")

@@ -13,6 +13,7 @@ from typing import Any
 
 from prover import expr as e
 from prover.effort import Effort
+from prover.solve import fresh_solver
 from prover.watch import FIRST, Seed, Watch
 
 DEEPEST = 200
@@ -70,10 +71,8 @@ class _Chain:
     """The steps from one beginning so far."""
 
     def __init__(self, system: Watch, begin: int | Seed) -> None:
-        import z3
-
         self.system, self.begin, self.depth = system, begin, 0
-        self.solver: Any = z3.SolverFor("QF_BV")
+        self.solver: Any = fresh_solver()
         self.memo: dict[e.Expr, Any] = {}
         if isinstance(begin, Seed):
             # The pulse there is not seen to begin: what breaks the claim has to begin later.
@@ -88,7 +87,7 @@ class _Chain:
             self._add(given)
 
     def _add(self, condition: e.Expr) -> None:
-        (term,) = e.z3_terms([condition], self.memo)
+        (term,) = e.z3_terms([condition], self.memo, self.solver.ctx)
         self.solver.add(term == 1)
 
     def _now(self, wanted: Sequence[e.Expr]) -> list[e.Expr]:
@@ -102,7 +101,7 @@ class _Chain:
         """Whether the next step can break the claim."""
         allowed, broken = self._now([self.system.allowed, self.system.broken])
         self._add(allowed)
-        (term,) = e.z3_terms([broken], self.memo)
+        (term,) = e.z3_terms([broken], self.memo, self.solver.ctx)
         self.solver.set("timeout", max(1, int(effort.left * 1000)))
         return self.solver.check(term == 1)
 
@@ -117,7 +116,7 @@ class _Chain:
         model = self.solver.model()
 
         def value(name: str, width: int) -> int:
-            found: Any = model.eval(z3.BitVec(name, width), model_completion=True)
+            found: Any = model.eval(z3.BitVec(name, width, self.solver.ctx), model_completion=True)
             return int(found.as_long())
 
         machine = self.system.machine

@@ -3,8 +3,12 @@
 from __future__ import annotations
 
 import random
+from collections.abc import Iterator
 
-from prover.path import Beat, Item, Path, Repeat, folded, length, shifted, split
+import pytest
+
+from prover import path as paths
+from prover.path import Beat, Item, Path, Places, Repeat, folded, length, place, shifted, split
 
 WIDTHS = (5, 3)
 
@@ -51,3 +55,35 @@ def test_a_folded_path_is_the_same_half_cycles_and_shorter() -> None:
         assert written_out(folded(path, WIDTHS)) == list(path)
     counting = tuple(Beat((i // 2 % 32, 3), i % 2) for i in range(60))
     assert len(folded(counting, WIDTHS)) == 1
+
+
+def test_places_looked_up_one_after_another_are_those_of_single_look_ups(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    monkeypatch.setattr(paths, "FEW", 0)
+    rng = random.Random(7)
+    for _ in range(100):
+        path = random_path(rng, 2)
+        places = Places(path, WIDTHS)
+        for at, beat in enumerate(written_out(path)):
+            found = places.at(at)
+            assert (found.state, found.level) == (beat.state, beat.level)
+            assert found == place(path, at, WIDTHS)
+        with pytest.raises(IndexError):
+            places.at(length(path))
+
+
+def test_looking_up_every_place_passes_over_each_item_a_few_times() -> None:
+    passed = 0
+
+    class Counted(tuple[Item, ...]):
+        def __iter__(self) -> Iterator[Item]:
+            nonlocal passed
+            for item in tuple.__iter__(self):
+                passed += 1
+                yield item
+
+    path = Counted(Beat((i % 32, i % 8), i % 2) for i in range(5000))
+    places = Places(path, WIDTHS)
+    assert [places.at(i).state[0] for i in range(5000)] == [i % 32 for i in range(5000)]
+    assert passed <= 10 * len(path)

@@ -83,7 +83,7 @@ def _row(
     """A component of a state, or the output, which comes after the last of them."""
 
     def value(half_cycle: int) -> int:
-        there = timeline.orbit.place(half_cycle)
+        there = timeline.place(half_cycle)
         return (*there.state, there.level)[place]
 
     def steady(begins: int, ends: int) -> int | None:
@@ -134,5 +134,5 @@ def _values(timeline: Timeline, time: int, until: int | None) -> tuple[int | Non
     """State and output at a time; up to another, what keeps its value, and None for the rest."""
     if until is not None:
         return timeline.steady(time, until)
-    there = timeline.orbit.place(time)
+    there = timeline.place(time)
     return (*there.state, there.level)

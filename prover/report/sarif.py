@@ -355,7 +355,7 @@ class _Results:
                 before = values
 
     def _values(self, timeline: Timeline, at: int) -> Values:
-        place = timeline.orbit.place(at)
+        place = timeline.place(at)
         return {**self.report.rhythm.system.describe(place.state), self._out(): place.level}
 
     def _out(self) -> str:

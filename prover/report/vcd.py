@@ -98,7 +98,8 @@ def _orbit(report: Report, name: str, broken: Counterexample) -> str:
             file.put(piece.begins, timeline.steady(piece.begins, piece.ends)[:count])
             continue
         for time in range(piece.begins, piece.ends):
-            file.put(time, (*timeline.state(time), timeline.level(time))[:count])
+            there = timeline.place(time)
+            file.put(time, (*there.state, there.level)[:count])
     return file.close(ends)
 
 

@@ -15,7 +15,7 @@ from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from itertools import islice
 
-from prover.path import Place, length
+from prover.path import Place, Places, length
 from prover.report.words import digits
 from prover.rhythm import Orbit
 from prover.system import State
@@ -31,6 +31,8 @@ class Timeline:
         self.orbit = orbit
         self.lead = orbit.lead_half_cycles
         self.loop = orbit.loop_half_cycles
+        self._lead = Places(orbit.lead, orbit.widths)
+        self._loop = Places(orbit.loop, orbit.widths)
 
     @property
     def once(self) -> int:
@@ -41,19 +43,25 @@ class Timeline:
         """`wanted`, or the half-cycle at which an orbit that has not closed ends, whichever comes first."""
         return wanted if self.loop else min(wanted, self.once)
 
+    def place(self, half_cycle: int) -> Place:
+        """Where the orbit is; as Orbit.place says, but made to be asked for each half-cycle of a long one."""
+        if half_cycle < self.lead or not self.loop:
+            return self._lead.at(half_cycle)
+        return self._loop.at((half_cycle - self.lead) % self.loop)
+
     def state(self, half_cycle: int) -> State:
         """Register values, then the clock's level."""
-        return self.orbit.place(half_cycle).state
+        return self.place(half_cycle).state
 
     def level(self, half_cycle: int) -> int:
         """The output."""
-        return self.orbit.place(half_cycle).level
+        return self.place(half_cycle).level
 
     def spans(self, begins: int, ends: int) -> Iterator[tuple[Place, int]]:
         """The places from which a range of half-cycles runs on regularly, each with how far it does."""
         at = begins
         while at < ends:
-            place = self.orbit.place(at)
+            place = self.place(at)
             size = min(place.calm, ends - at)
             yield place, size
             at += size
@@ -94,7 +102,7 @@ class Timeline:
             # A long round: its output alone is known without looking at each half-cycle of it.
             return (*(None for _ in place.state), place.around.steady)
         shown = min(size, 2 * length(place.around.body)) if place.around else 1
-        rows = [(*p.state, p.level) for p in (self.orbit.place(at + i) for i in range(shown))]
+        rows = [(*p.state, p.level) for p in (self.place(at + i) for i in range(shown))]
         return tuple(column[0] if len(set(column)) == 1 else None for column in zip(*rows, strict=True))
 
 
