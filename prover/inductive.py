@@ -7,7 +7,6 @@ The order does not matter: there is one largest subset. If under it nothing is b
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
 
 from prover import expr as e
 from prover.effort import Effort
