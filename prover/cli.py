@@ -42,7 +42,7 @@ if TYPE_CHECKING:
     from prover.gate.runner import Run
     from prover.pair import Pairing
     from prover.pool import Crew
-    from prover.report.terminal import Look
+    from prover.report.look import Look
     from prover.several import Outcome
 
 PATIENCE = 1.0
@@ -419,7 +419,7 @@ def recheck(
     given = {} if effort is None else {"seconds": _seconds(effort)}
     with Progress(sys.stderr) as progress:
         outcome = recheck(certificate, solver, sources, by_clauses, tell=progress.tell, **given)
-    _print(told.render(outcome) + "\n")
+    _print(told.render(outcome, _look()) + "\n")
     return Status.REFUTED if outcome.differences else Status.OPEN if outcome.gave_up else Status.PROVED
 
 
@@ -464,7 +464,7 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
             for outcome, row, paths in zip(found, shown, written.waves, strict=True)
             if row.verdict != "proved"
         ]
-        text = "\n".join([*filter(None, texts), told.render(run, bool(written.results))])
+        text = "\n".join([*filter(None, texts), told.render(run, _look(), bool(written.results))])
         text = _written_up(written.results, text, found)
     _print(text)
     for remark in written.remarks:
@@ -487,7 +487,7 @@ def history(file: str, ledger: str | None) -> Status:
     from prover import gate as gates
     from prover.report import gate as told
 
-    _print(told.render_history(gates.events_of(file, ledger)))
+    _print(told.render_history(gates.events_of(file, ledger), _look()))
     return Status.PROVED
 
 
@@ -806,7 +806,7 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, ta
         found = outcomes(dividers, spec, crew, progress.tell)
         written = _results_of(found, targets)
         texts = [_text_of(*pair) for pair in zip(found, written.waves, strict=True)]
-        text = "\n".join([*filter(None, texts), told.summary(found) + "\n"])
+        text = "\n".join([*filter(None, texts), told.summary(found, _look()) + "\n"])
         text = _written_up(written.results, text, found)
     _print(text)
     for remark in written.remarks:
@@ -978,7 +978,7 @@ def _told(report: Report, traces: Sequence[str]) -> str:
 
 
 def _look() -> Look:
-    from prover.report.terminal import Look
+    from prover.report.look import Look
 
     return Look(_speaks_unicode(), _has_colour())
 
@@ -1049,6 +1049,8 @@ class Progress:
 
         spinner = Spinner("dots")
         with Live(spinner, console=Console(stderr=True), auto_refresh=False, transient=True) as live:
+            # A run that is killed can't give back a cursor that it hid.
+            live.console.show_cursor(True)
             while not self._over.wait(REFRESH):
                 spinner.update(text=Text(self._doing))
                 live.refresh()

@@ -178,7 +178,7 @@ class Local:
                     number = waiting.get_nowait()
                 except Empty:
                     return
-                name = tasks[number].files[0]
+                name = tasks[number].title or tasks[number].files[0]
 
                 def hear(doing: str, name: str = name) -> None:
                     tell(f"{count} of {len(tasks)} done; {name}: {doing}")

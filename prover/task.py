@@ -48,6 +48,7 @@ class Task:
     recheck      a certificate to be checked again, in place of all else
     sources      the sources' bytes by name; None: they are read where they are
     folder       with `sources`: the folder to work in, below the one they are laid out in
+    title        what it is called while it is done, here and nowhere else
     """
 
     files: tuple[str, ...]
@@ -56,6 +57,7 @@ class Task:
     recheck: str | None = None
     sources: Mapping[str, bytes] | None = None
     folder: str = "."
+    title: str = ""
 
     @property
     def limit(self) -> float:
@@ -244,7 +246,10 @@ def main(place: str) -> None:
     """Do the tasks that come in on standard input, a line each, and say on standard output what comes of them, a line
     a message; sources are laid out below the folder `place`. The end of the input ends the process at once, whatever
     it is doing: whoever wanted it is gone."""
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    # What ends its master's whole group, such as the end of a terminal, leaves it time to tidy up.
+    for name in ("SIGINT", "SIGTERM", "SIGHUP"):
+        if hasattr(signal, name):
+            signal.signal(getattr(signal, name), signal.SIG_IGN)
     out = os.fdopen(os.dup(1), "w", encoding="utf-8")
     # What libraries print may not come between the messages.
     os.dup2(2, 1)

@@ -371,6 +371,27 @@ def test_progress_leaves_no_thread_behind(monkeypatch: pytest.MonkeyPatch) -> No
     assert threading.active_count() == before
 
 
+def test_progress_hides_no_cursor_that_a_killed_run_could_not_give_back(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    """DECTCEM: ESC [ ? 25 l hides the cursor, ESC [ ? 25 h shows it (from memory)."""
+    monkeypatch.setattr(cli, "PATIENCE", 0.0)
+    monkeypatch.setenv("FORCE_COLOR", "1")
+    monkeypatch.setenv("TERM", "xterm")
+
+    class Terminal:
+        @staticmethod
+        def isatty() -> bool:
+            return True
+
+    with cli.Progress(Terminal()) as progress:  # type: ignore[arg-type]
+        progress.tell("something")
+        time.sleep(0.4)
+        sent = capsys.readouterr().err
+    assert "something" in sent
+    assert sent.rfind("\x1b[?25h") >= sent.rfind("\x1b[?25l")
+
+
 def test_no_progress_without_a_terminal(tmp_path: Path) -> None:
     done = python(
         "-m", "prover", "check", written(tmp_path, SECOND), "--ratio", "50000000", "--start", "reset"

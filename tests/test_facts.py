@@ -64,7 +64,8 @@ def test_source_edges(
 
 
 def test_edge_lists_that_alternate_are_flagged_for_people(tmp_path: Path) -> None:
-    from prover.report.terminal import Look, render
+    from prover.report.look import Look
+    from prover.report.terminal import render
 
     report = check(
         [CASES / "gauge/carrier_by_1_5.v"], Spec(ratio=Fraction("1.5"), high=2, output="carrier_n")
@@ -161,7 +162,8 @@ def found(design: Design, inputs: dict[str, int] | None = None) -> dict[str, int
 
 
 def test_depth_is_told_where_registers_clock_others(tmp_path: Path) -> None:
-    from prover.report.terminal import Look, render
+    from prover.report.look import Look
+    from prover.report.terminal import render
 
     text = render(check([CASES / "gauge/ping_by_7_ripple.v"], Spec(ratio=Fraction(7), output="ping")), Look())
     assert "registers between clk and their clock: 0 stage0.q, delay.q; 1 stage1.q; 2 stage2.q\n" in text

@@ -25,6 +25,7 @@ from prover.gate.ledger import Kept, Ledger, digest
 from prover.gate.manifest import Manifest, Waiver
 from prover.gate.runner import Excused, Run
 from prover.report.gate import render
+from prover.report.look import Look
 from prover.task import Answer, Task
 
 ROOT = Path(prover.__file__).parents[1]
@@ -632,7 +633,7 @@ def test_the_last_days_of_a_waiver_are_told(tmp_path: Path, today: date, told: s
     days = (waiver.until - today).days
     excused = Excused("third", waiver, "expired" if days < 0 else "counts", days, "")
     manifest = Manifest(tmp_path / "subharmonic.toml", ())
-    assert told in render(Run(manifest, (), (excused,), 0.0, None))
+    assert told in render(Run(manifest, (), (excused,), 0.0, None), Look())
 
 
 def test_a_waiver_of_what_is_not_judged_is_told(folder: Path) -> None:
@@ -714,6 +715,16 @@ def test_history_from_elsewhere(folder: Path, monkeypatch: pytest.MonkeyPatch) -
     for place, file in (("deeper", "../third.v"), ("..", "made/third.v")):
         monkeypatch.chdir(folder / place)
         assert run("history", file).stdout == told
+
+
+def test_history_goes_on_when_a_file_has_another_name(folder: Path) -> None:
+    gate()
+    (folder / "third.v").rename(folder / "moved.v")
+    write(folder, MANIFEST.replace("third.v", "moved.v"))
+    gate()
+    for name in ("third.v", "moved.v"):
+        lines = run("history", name).stdout.splitlines()[1:]
+        assert [line.split(maxsplit=5)[5] for line in lines] == ["first seen", "names of files"]
 
 
 def test_history_of_what_is_not_known(folder: Path) -> None:

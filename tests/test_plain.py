@@ -21,7 +21,7 @@ from prover.errors import Where
 from prover.findings import Report
 from prover.plain import Unreadable, freeze, thaw
 from prover.report import json as told
-from prover.report import terminal, vcd
+from prover.report import look, terminal, vcd
 from prover.report.certificate import certify
 from prover.spec import Spec
 
@@ -37,7 +37,7 @@ def rendered(report: Report) -> list[str]:
     report = dataclasses.replace(report, seconds=0.0)
     return [
         told.render(report),
-        terminal.render(report, terminal.Look(True, True), ()),
+        terminal.render(report, look.Look(True, True), ()),
         *(dump.text for dump in vcd.dumps(report)),
     ]
 

@@ -119,7 +119,13 @@ def test_leaving_early_ends_the_processes(tmp_path: Path, monkeypatch: pytest.Mo
     assert not _lives(pid)
 
 
-def test_a_process_whose_master_was_killed_goes_and_leaves_nothing(tmp_path: Path) -> None:
+@pytest.mark.parametrize(
+    ("number", "whole"), [(signal.SIGKILL, False), (signal.SIGHUP, True), (signal.SIGTERM, True)]
+)
+def test_a_process_whose_master_was_killed_goes_and_leaves_nothing(
+    tmp_path: Path, number: signal.Signals, whole: bool
+) -> None:
+    """Also where all its group is told to end, as by a terminal that goes."""
     (tmp_path / "ran").mkdir()
     (tmp_path / "temporary").mkdir()
     script = f"import os; open(os.path.join({str(tmp_path / 'ran')!r}, str(os.getpid())), 'w').close(); time.sleep(1000)"
@@ -137,11 +143,18 @@ list(pool.Local(1).run([Task(({str(tmp_path / "b.v")!r},), Spec(ratio=Fraction(3
         "TMPDIR": str(tmp_path / "temporary"),
     }
     process = subprocess.Popen(
-        [sys.executable, "-c", master], env=environment, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL
+        [sys.executable, "-c", master],
+        env=environment,
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.DEVNULL,
+        start_new_session=True,
     )
     (pid,) = _wait_for(tmp_path / "ran")
     assert os.listdir(tmp_path / "temporary")
-    process.send_signal(signal.SIGKILL)
+    if whole:
+        os.killpg(process.pid, number)
+    else:
+        process.send_signal(number)
     process.wait()
     _until(lambda: not _lives(pid))
     assert os.listdir(tmp_path / "temporary") == []

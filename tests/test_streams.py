@@ -69,7 +69,7 @@ def on_terminal(*arguments: str, **variables: str) -> str:
 
 
 def without_time(text: str) -> str:
-    return re.sub(r"took [\d.]+ s", "took", text)
+    return re.sub(r"(took|in) [\d.]+ s", r"\1", text)
 
 
 def test_a_terminal_gets_colour_unless_it_is_asked_not_to(tmp_path: Path) -> None:
@@ -82,6 +82,25 @@ def test_a_terminal_gets_colour_unless_it_is_asked_not_to(tmp_path: Path) -> Non
     assert without_time(COLOUR.sub("", coloured)) == without_time(plain.stdout)
     for quiet in ({"TERM": "xterm", "NO_COLOR": "1"}, {"TERM": "dumb"}):
         assert without_time(on_terminal(*command, **quiet)) == without_time(plain.stdout)
+
+
+def test_the_tables_of_a_gate_are_coloured_likewise(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.chdir(tmp_path)
+    written(tmp_path, BY_3)
+    name = next(tmp_path.glob("*.v")).name
+    manifest = (
+        f'[divider.sound]\nfiles = "{name}"\nratio = 3\n[divider.unknown]\nfiles = "none.v"\nratio = 3\n'
+    )
+    (tmp_path / "subharmonic.toml").write_text(manifest, encoding="utf-8")
+    piped("gate")
+    plain = piped("gate").stdout
+    coloured = on_terminal("gate", TERM="xterm")
+    assert "\x1b" not in plain
+    assert "\x1b[1;32mPROVED\x1b[0m" in coloured
+    assert "\x1b[1;31mERROR\x1b[0m" in coloured
+    assert without_time(COLOUR.sub("", coloured)) == without_time(plain)
+    assert without_time(on_terminal("gate", TERM="xterm", NO_COLOR="1")) == without_time(plain)
+    assert on_terminal("history", name, TERM="xterm") == piped("history", name).stdout
 
 
 def test_a_report_does_not_hang_on_the_width_of_a_window(tmp_path: Path) -> None:

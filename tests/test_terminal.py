@@ -17,7 +17,8 @@ from texts import BY_3, RING, SECOND, SPINS, STICKS_AT_7, checked, measured
 
 from prover import orbit
 from prover.effort import Effort
-from prover.report.terminal import Look, render
+from prover.report.look import Look
+from prover.report.terminal import render
 from prover.report.wave import ASCII, UNICODE, Drawing, Piece, Row, Timeline, draw, fold_text, plan
 from prover.rhythm import Orbit
 from prover.settling import settle

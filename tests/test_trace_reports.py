@@ -17,6 +17,7 @@ from prover.expr import var
 from prover.findings import Finding, Report
 from prover.report import json, terminal, vcd
 from prover.report.figures import Extent
+from prover.report.look import Look
 from prover.report.trace import Columns, drawing
 from prover.report.wave import ASCII, draw
 from prover.trace import Rest, Trace, run
@@ -35,7 +36,7 @@ def test_a_release_in_the_middle_of_a_half_cycle_is_drawn_there(tmp_path: Path) 
     # half-cycle 2.
     trace = replace(released_at(2, 10), begins=5, ends=9, text="a high run", cause="held")
     report, _ = report_of(tmp_path, trace)
-    text = terminal.render(report, terminal.Look(unicode=False))
+    text = terminal.render(report, Look(unicode=False))
     assert "counterexample to reset: a high run\n  start: held\n    rst=1  count=1  tick=1  clk=0\n" in text
     drawn = text[text.index("  half-cycle") :].splitlines()
     assert drawn[:6] == [

@@ -41,8 +41,8 @@ def _own(folder: Path) -> Ledger:
 
 
 def events_of(file: str, path: str | None) -> list[Event]:
-    """What the ledger has on the dividers that the file is part of. The manifest in force is the working folder's, or
-    else the file's. Raises UserError where that is nothing."""
+    """What the ledger has on the dividers that the file is or was part of. The manifest in force is the working
+    folder's, or else the file's. Raises UserError where that is nothing."""
     try:
         folder = find_manifest(Path()).parent
     except UserError:
@@ -53,11 +53,12 @@ def events_of(file: str, path: str | None) -> list[Event]:
     name = os.path.relpath(file, folder).replace(os.sep, "/")
     ledger = Ledger(place, to_read=True)
     try:
-        found = [event for event in ledger.history() if name in event.files]
+        events = list(ledger.history())
     finally:
         ledger.close()
-    if not found:
+    dividers = {event.divider for event in events if name in event.files}
+    if not dividers:
         raise UserError(
             f"the ledger {place} has nothing on {name}", hint="run the gate with it in the manifest"
         )
-    return found
+    return [event for event in events if event.divider in dividers]

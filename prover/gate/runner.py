@@ -235,6 +235,7 @@ class _Gate:
             kept = None
         include = tuple(self._named(folder) for folder in row.divider.spec.include)
         task = Task(row.files, replace(row.divider.spec, include=include), certify=True)
+        task = replace(task, title=row.divider.name)
         try:
             if kept is None:
                 return packed(task, content, self.base)

@@ -11,7 +11,8 @@ from prover.joint import Joint
 from prover.pair import SIDES
 from prover.ports import Ports
 from prover.report import apart, words
-from prover.report.terminal import EXTENT, WIDTH, Look, finished, indented, not_drawn, wrapped
+from prover.report.look import Look, finished
+from prover.report.terminal import EXTENT, WIDTH, indented, not_drawn, wrapped
 from prover.report.trace import drawing
 from prover.report.vcd import moves
 from prover.report.wave import ASCII, UNICODE, Style, draw

@@ -15,7 +15,7 @@ from prover import expr as e
 from prover.design import Signal, components, ended
 from prover.findings import Report
 from prover.output import harmless
-from prover.report.terminal import ASCII_TEXT
+from prover.report.look import ASCII_TEXT
 
 WIDTH = 64
 """Bits of a bench's counters, and more for longer times."""

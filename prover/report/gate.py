@@ -14,6 +14,7 @@ from prover.domain import ranges_text
 from prover.gate.ledger import Event
 from prover.gate.runner import Excused, Row, Run
 from prover.output import harmless
+from prover.report.look import Look, finished
 
 Object = dict[str, Any]
 
@@ -29,7 +30,7 @@ def headed(row: Row, text: str) -> str:
     return f"divider {harmless(row.divider.name)}\n{text}" if text else ""
 
 
-def render(run: Run, reported: bool = False) -> str:
+def render(run: Run, look: Look, reported: bool = False) -> str:
     """The table of a run, what is to be told of waivers, and the sum of it, ended by a newline; `reported` if it goes
     to reports, too."""
     lines = list(_table([_line(group) for group in _groups(run.rows)]))
@@ -38,7 +39,7 @@ def render(run: Run, reported: bool = False) -> str:
         lines.append(
             "note      timing obligations are for timing analysis: see them with --html, --json or --sarif"
         )
-    return harmless("\n".join([*lines, _sum(run)])) + "\n"
+    return finished([*lines, _sum(run)], look) + "\n"
 
 
 def _groups(rows: Sequence[Row]) -> Iterator[list[Row]]:
@@ -184,7 +185,7 @@ def _as_object(row: Row) -> Object:
 # -- history -----------------------------------------------------------------------------------------------
 
 
-def render_history(events: Sequence[Event]) -> str:
+def render_history(events: Sequence[Event], look: Look) -> str:
     """Verdicts over time: when, what, of which divider and content, and what had changed since its last verdict;
     ended by a newline. Dividers of one entry to which the same happened in one run stand in one line."""
     last: dict[str, Event] = {}
@@ -200,9 +201,7 @@ def render_history(events: Sequence[Event]) -> str:
         says = f"; {event.says}" if event.says and event.verdict != "proved" else ""
         when = event.run.replace("T", " ").removesuffix("+00:00")
         lines.append((when, event.verdict.upper(), name, event.sources[:SHOWN] or "-", changed + says))
-    return (
-        harmless("\n".join(_table([("UTC", "verdict", "divider", "content", "what changed"), *lines]))) + "\n"
-    )
+    return finished(_table([("UTC", "verdict", "divider", "content", "what changed"), *lines]), look) + "\n"
 
 
 def _changed(before: Event | None, now: Event) -> str:

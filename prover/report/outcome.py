@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from prover.output import harmless
 from prover.recheck import Outcome
+from prover.report.look import PLAIN, Look, finished
 
 
-def render(outcome: Outcome) -> str:
+def render(outcome: Outcome, look: Look = PLAIN) -> str:
     """The outcome as text: the verdicts that the certificate bears, who refuted its obligations, what is wrong."""
-    return harmless("\n".join(_lines(outcome)))
+    return finished(_lines(outcome), look)
 
 
 def _lines(outcome: Outcome) -> Iterator[str]:

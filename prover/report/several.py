@@ -13,6 +13,7 @@ from prover.errors import UserError
 from prover.findings import Report
 from prover.output import harmless
 from prover.report.json import Object, as_object
+from prover.report.look import Look, finished
 from prover.several import Outcome
 
 SCHEMA = "subharmonic/reports-1"
@@ -48,14 +49,14 @@ def word(outcome: Outcome) -> str:
     return "ERROR" if outcome.error else "FAULT" if outcome.fault else "OPEN"
 
 
-def summary(found: Sequence[Outcome]) -> str:
+def summary(found: Sequence[Outcome], look: Look) -> str:
     """A line for each divider and one for all, for people."""
     rows = [(word(o), o.name, _with_top(o)) for o in found]
     widest = max(len(harmless(name)) for _, name, _ in rows)
     lines = [f"{len(found)} divider{'s' * (len(found) != 1)}"]
     lines += [f"{verdict:8}  {harmless(name):{widest}}  {says}".rstrip() for verdict, name, says in rows]
     counted = Counter(verdict.lower() for verdict, _, _ in rows)
-    return harmless("\n".join([*lines, ", ".join(f"{count} {what}" for what, count in counted.items())]))
+    return finished([*lines, ", ".join(f"{count} {what}" for what, count in counted.items())], look)
 
 
 def _with_top(outcome: Outcome) -> str:

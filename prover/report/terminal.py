@@ -6,16 +6,14 @@ input gives the same text, but for the last line, which says how long it took.
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterable, Iterator, Sequence
-from dataclasses import dataclass
 
 from prover.arrival import Glitch
 from prover.domain import values_text
 from prover.facts import LIMITS
 from prover.findings import Counterexample, Finding, Report
-from prover.output import harmless
 from prover.report import figures, words
+from prover.report.look import PLAIN, Look, finished
 from prover.report.trace import drawing
 from prover.report.wave import ASCII, UNICODE, Style, Timeline, draw
 from prover.rhythm import Loop, Orbit, Rhythm
@@ -34,20 +32,8 @@ MOST_WORDS = 5
 MOST_ARRIVALS = 24
 """What is told of a glitch: values of words beside the output, and arrivals."""
 
-COLOURS = {"PROVED": "32", "MEASURED": "32", "REFUTED": "31", "OPEN": "33", "WAIVED": "33"}
 
-ASCII_TEXT = str.maketrans({"‾": "~", "…": "...", "µ": "u", "·": "*", "−": "-", "÷": "/", "→": "->"})
-
-
-@dataclass(frozen=True, slots=True)
-class Look:
-    """What the terminal can show: characters beyond ASCII, and colour."""
-
-    unicode: bool = True
-    colour: bool = False
-
-
-def render(report: Report, look: Look = Look(), traces: Sequence[str] = ()) -> str:
+def render(report: Report, look: Look = PLAIN, traces: Sequence[str] = ()) -> str:
     """The report as text. `traces` are the paths that waves were written to, told along with the findings."""
     style = UNICODE if look.unicode else ASCII
     lines: list[str] = []
@@ -67,21 +53,6 @@ def render(report: Report, look: Look = Look(), traces: Sequence[str] = ()) -> s
         if body:
             lines += [*body, ""]
     return finished(lines[:-1], look)
-
-
-def finished(lines: Iterable[str], look: Look) -> str:
-    """The lines as text for a terminal that looks so."""
-    text = harmless("\n".join(lines))
-    if not look.unicode:
-        text = text.translate(ASCII_TEXT)
-    return _coloured(text) if look.colour else text
-
-
-def _coloured(text: str) -> str:
-    words = "|".join(COLOURS)
-    return re.sub(
-        rf"(?m)^(verdict  )?({words})\b", lambda m: f"{m[1] or ''}\x1b[1;{COLOURS[m[2]]}m{m[2]}\x1b[0m", text
-    )
 
 
 # -- what was read and claimed -----------------------------------------------------------------------------
