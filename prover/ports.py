@@ -20,6 +20,10 @@ from prover.solve import constant
 from prover.spec import Spec
 from prover.system import Inputs
 
+CLOCK = re.compile(r"(?i)cl(oc)?k|^ck|ck$|cp$")
+RESET = re.compile(r"(?i)re?se?t|clr|clear")
+"""Names that break ties."""
+
 
 @dataclass(frozen=True, slots=True)
 class Reset:
@@ -74,9 +78,18 @@ def recognise(design: Design, spec: Spec) -> Ports:
         raise UserError(
             f"input {name} is neither clock, reset nor held",
             _where(design, name),
-            hint=f"give the value it has while the divider runs, such as --hold {name}=1",
+            hint=_what_it_may_be(name),
         )
     return ports
+
+
+def _what_it_may_be(name: str) -> str:
+    if RESET.search(name):
+        return (
+            f"name it with --reset {name}=0 or --reset {name}=1, the level at which it acts, if it is the reset; "
+            f"else give the value it has while the divider runs, such as --hold {name}=0"
+        )
+    return f"give the value it has while the divider runs, such as --hold {name}=1"
 
 
 def recognise_open(design: Design, spec: Spec, moving: Collection[str] = ()) -> Ports:
@@ -192,12 +205,18 @@ def _clock_inputs(design: Design, holds: Mapping[str, int]) -> dict[str, int]:
                 alone = len(e.variables([edge.clock])) == 1
                 found[v.name] = found.get(v.name, 0) + (1 if alone else 0)
     if not found:
-        # A divider of latches has no edge; what opens its latches is its clock.
+        # A divider of latches has no edge; what opens its latches and does not clear them is its clock.
+        clears = _held_by_level(design, "", holds)
         for register in design.registers:
             if register.kind == "latch":
                 for v in e.variables([force.when for force in register.forces]):
-                    if v.name in design.inputs and v.name not in holds:
+                    if v.name in design.inputs and v.name not in holds and v.name not in clears:
                         found[v.name] = found.get(v.name, 0) + 1
+    if not found:
+        # Nor has one of gates that hold their state in loops.
+        loops = [force for r in design.registers if r.kind == "loop" for force in r.forces]
+        inputs = e.variables([x for force in loops for x in (force.when, force.value)])
+        found = {v.name: 0 for v in inputs if v.name in design.inputs and v.name not in holds}
     return {name: count for name, count in found.items() if design.inputs[name] == 1}
 
 
@@ -225,7 +244,7 @@ def _clock(design: Design, spec: Spec, holds: Mapping[str, int]) -> str:
     best = max(candidates.values())
     names = [name for name, count in candidates.items() if count == best]
     if len(names) > 1:
-        named = [n for n in names if re.search(r"(?i)cl(oc)?k|^ck|ck$|cp$", n)]
+        named = [n for n in names if CLOCK.search(n)]
         names = named if len(named) == 1 else names
     if len(names) > 1:
         raise UserError(
@@ -239,6 +258,8 @@ def _clock(design: Design, spec: Spec, holds: Mapping[str, int]) -> str:
 def _reset(design: Design, spec: Spec, clock: str, holds: Mapping[str, int]) -> Reset | None:
     asynchronous = _asynchronous(design, clock, holds)
     synchronous = _synchronous(design, clock, holds)
+    if not asynchronous and not synchronous:
+        asynchronous = _held_by_level(design, clock, holds)
     if spec.reset is not None:
         name, equals, level = spec.reset.partition("=")
         _known_input(design, name, "--reset")
@@ -264,7 +285,7 @@ def _reset(design: Design, spec: Spec, clock: str, holds: Mapping[str, int]) -> 
         plain = {name: levels for name, levels in found.items() if len(levels) == 1}
         names = list(found)
         if len(names) > 1:
-            named = [n for n in names if n in plain and re.search(r"(?i)re?se?t|clr|clear", n)]
+            named = [n for n in names if n in plain and RESET.search(n)]
             names = named if len(named) == 1 else names
         if len(names) > 1 or (names and names[0] not in plain):
             raise UserError(
@@ -288,19 +309,29 @@ def _free_inputs(
     return [name for name in names if name != clock and name not in holds]
 
 
-def _asynchronous(design: Design, clock: str, holds: Mapping[str, int]) -> dict[str, set[int]]:
-    """Inputs of which one level forces a flip-flop to a constant, with those levels."""
+def _asynchronous(
+    design: Design, clock: str, holds: Mapping[str, int], kinds: Collection[str] = ("flip-flop",)
+) -> dict[str, set[int]]:
+    """Inputs of which one level forces a register of these kinds to a constant, with those levels."""
     found: dict[str, set[int]] = {}
     for register in design.registers:
-        if register.kind != "flip-flop":
+        if register.kind not in kinds:
             continue
         for force in register.forces:
-            for name in _free_inputs(design, [force.when], clock, holds):
+            # A loop of gates is open all the time; what clears it is part of what it takes on.
+            read = [force.when, force.value] if register.kind == "loop" else [force.when]
+            for name in _free_inputs(design, read, clock, holds):
                 for level in (0, 1):
                     when, value = e.substitute([force.when, force.value], {name: e.const(level, 1)})
                     if constant(when) == 1 and constant(value) is not None:
                         found.setdefault(name, set()).add(level)
     return found
+
+
+def _held_by_level(design: Design, clock: str, holds: Mapping[str, int]) -> dict[str, set[int]]:
+    """The same of latches and loops, but for inputs that set them at either level."""
+    found = _asynchronous(design, clock, holds, ("latch", "loop"))
+    return {name: levels for name, levels in found.items() if len(levels) == 1}
 
 
 def _synchronous(design: Design, clock: str, holds: Mapping[str, int]) -> dict[str, set[int]]:

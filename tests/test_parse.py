@@ -218,6 +218,7 @@ def test_refusal(tmp_path: Path, body: str, message: str | None) -> None:
         ("module m(a, y); input a; output y; reg y; reg y;", "declared twice"),
         ("module m(a, y); input a; output [3:0] y; reg y;", "give both the same range"),
         ("module m(a, y); input a; output reg y; wire y;", "declared twice"),
+        ("module m(input a, output y); reg y;", "write output reg y there"),
         ("module m(a, y); input a;", "has no direction"),
         ("module m(input output a, output y);", "one direction"),
         ("module m(input a, output y [1:0]);", "can't be a memory"),

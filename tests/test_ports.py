@@ -51,6 +51,9 @@ def run(*arguments: str) -> Result:
         "reg p; always @(posedge a) p <= ~p; always @(posedge p) q <= ~q;",
         "always @(posedge a or posedge clk) if (clk) q <= 0; else q <= ~q;",
         "reg l; always @* if (a) l = ~q; always @* if (!a) q = l;",
+        "reg l; always @* if (clk) l = 0; else if (a) l = ~q; always @* if (clk) q = 0; else if (!a) q = l;",
+        "wire k, n, s, r, t, b; nand (t, b, s), (s, t, a), (r, s, a, b), (b, r, n), (k, s, n), (n, r, k);\n"
+        "always @* q = k;",
     ],
 )
 def test_the_clock_is_what_clocks_registers(tmp_path: Path, body: str) -> None:
@@ -82,6 +85,17 @@ def test_a_clock_of_one_bit_of_a_vector_has_no_port_of_its_own(tmp_path: Path) -
         ("always @(posedge clk or negedge r) if (!r) q <= 1; else q <= ~q;", 0, "asynchronous"),
         ("wire n = ~r; always @(posedge clk or posedge n) if (n) q <= 0; else q <= ~q;", 0, "asynchronous"),
         ("always @(posedge clk) if (r) q <= 0; else q <= ~q;", 1, "synchronous"),
+        (
+            "reg l; always @* if (!r) l = 0; else if (!clk) l = ~q; always @* if (!r) q = 0; else if (clk) q = l;",
+            0,
+            "asynchronous",
+        ),
+        (
+            "wire k, n, s, g, t, b; nand (t, b, s), (s, t, clk, r), (g, s, clk, b), (b, g, n, r), (k, s, n);\n"
+            "nand (n, g, k, r); always @* q = k;",
+            0,
+            "asynchronous",
+        ),
         ("always @(posedge clk) q <= ~q & r;", 0, "synchronous"),
         ("always @(posedge clk) q <= r ? ~q : 1'b1;", 0, "synchronous"),
     ],
@@ -99,6 +113,7 @@ def test_an_input_that_only_loads_data_is_no_reset(tmp_path: Path) -> None:
     error = refused(tmp_path, text + "assign q = b; endmodule")
     assert "rst is neither clock, reset nor held" in error.message
     assert "--hold rst=" in error.hint
+    assert "--reset rst=0" in error.hint
 
 
 def test_several_resets_are_listed_and_one_can_be_named(tmp_path: Path) -> None:

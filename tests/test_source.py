@@ -76,6 +76,15 @@ def test_include_and_its_places(tmp_path: Path) -> None:
     assert made.files == tuple(str(tmp_path / f) for f in ("main.v", "outer.vh", "sub/inner.vh"))
 
 
+def test_include_beside_the_source_from_a_file_elsewhere(tmp_path: Path) -> None:
+    # A relative path starts from where the tool is run (IEEE 1364-2005 clause 19.5 leaves it open), so that files
+    # in a folder of headers name each other by that folder (common practice).
+    (tmp_path / "inc").mkdir()
+    (tmp_path / "inc" / "a.vh").write_text('`include "inc/b.vh"\n')
+    (tmp_path / "inc" / "b.vh").write_text("found")
+    assert expanded(tmp_path, '`include "inc/a.vh"') == "found"
+
+
 def test_include_from_a_named_folder(tmp_path: Path) -> None:
     (tmp_path / "lib").mkdir()
     (tmp_path / "lib" / "r.vh").write_text("found")

@@ -215,6 +215,13 @@ class Declarer:
         fits = isinstance(known, Net) and (known.direction is None) != (shape.direction is None)
         if isinstance(known, Net) and fits and not (known.complete and shape.complete):
             return self._complete(known, shape, name)
+        if isinstance(known, Net) and known.direction and not shape.direction and not known.local:
+            kind = " reg" if shape.kind == "variable" else ""
+            self.report.fail(
+                f"{printable(name.name)} is declared twice: its port declaration says all there is to say",
+                name.lineno,
+                f"write {known.direction}{kind} {printable(name.name)} there, and drop this declaration",
+            )
         if shape.msb < 0 == shape.lsb:
             self.report.fail(
                 f"{printable(name.name)}[{shape.msb}:0] has {shape.type.width} bits, which is hardly meant",

@@ -131,8 +131,8 @@ def read_source(
 ) -> Source:
     """Read the files in order, as one compilation unit, and carry out their directives.
 
-    `include looks beside the including file, then in the `include` folders, and reads nothing outside those
-    and the folders of the files given. Raises UserError for what can't be read or carried out.
+    `include looks beside the including file, beside the source, then in the `include` folders, and reads nothing
+    outside those and the folders of the files given. Raises UserError for what can't be read or carried out.
     """
     return _Preprocessor(files, defines or {}, include).run()
 
@@ -173,6 +173,7 @@ class _Preprocessor:
     opened: list[Path] = field(default_factory=list)
     expansions: int = 0
     expanded: int = 0
+    folder: Path = Path()
 
     def run(self) -> Source:
         if not self.files:
@@ -184,6 +185,7 @@ class _Preprocessor:
         paths = [Path(file) for file in self.files]
         self.roots = [Path(folder).resolve() for folder in (*(p.parent for p in paths), *self.include)]
         for path in paths:
+            self.folder = path.parent
             self._file(path, str(path), None)
         text = "".join(self.out)
         digest = hashlib.sha256(" ".join(text.split()).encode()).hexdigest()
@@ -398,7 +400,7 @@ class _Preprocessor:
         name = found.group(1) or found.group(2)
         if Path(name).is_absolute():
             raise UserError("`include of an absolute path", where, "give its folder with --include")
-        for base in (folder, *(Path(i) for i in self.include)):
+        for base in dict.fromkeys((folder, self.folder, *map(Path, self.include))):
             candidate = base / name
             try:
                 present = candidate.is_file()
