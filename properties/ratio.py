@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from math import ceil, floor
 
-from properties.runs import Exactly, OnAverage, Rule, gaps, judge_runs
+from properties.runs import Exactly, OnAverage, Rule, gaps, judge_runs, spans_of
 from prover.findings import Fact, Finding
 from prover.rhythm import Mean, Rhythm
 from prover.spec import Spec
@@ -35,7 +36,8 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding:
     rule: Rule
     if spec.ratio is not None and spec.mean:
         rule = OnAverage(Mean(spec.ratio))
-        lengths = {s.length for wave in waves for s in gaps([*wave.runs, *wave.runs, *wave.runs])}
+        rounds = [replace(orbit, lead=()) for orbit in rhythm.orbits if orbit.closed]
+        lengths = {span.length for orbit in rounds for span in spans_of(orbit, gaps)}
         facts["measured_gaps_half_cycles"] = sorted(lengths)
     else:
         rule = Exactly("rise-to-rise gap", gaps, spec.period)

@@ -210,7 +210,7 @@ def _open(release: Release, spec: Spec) -> str:
         return "no state that reset leaves is known"
     for freed in release.runs:
         if freed.orbit is None or freed.wave is None:
-            return f"{freed.cause}: {freed.orbit.why if freed.orbit else 'not followed'}"
+            return f"{freed.cause}: {_unknown(freed)}"
     for level in (0, 1):
         here = [freed for freed in release.on_time if freed.clock == level]
         if any(same_output(here[0], freed) is None for freed in here[1:]):
@@ -221,6 +221,13 @@ def _open(release: Release, spec: Spec) -> str:
             f"that {_count(spec.reset_cycles, 'input cycle')} are too few"
         )
     return ""
+
+
+def _unknown(freed: Freed) -> str:
+    """Why the wave after a release is not known."""
+    if freed.orbit is None:
+        return "not followed"
+    return freed.orbit.why or "a round of too many pulses to be written out"
 
 
 def _obligations(release: Release, goal: Goal) -> Iterator[Obligation]:

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+from bisect import bisect_right
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
+from itertools import accumulate
 from typing import Protocol
 
+from prover import path
 from prover.findings import Counterexample, Fact, Finding, Verdict
 from prover.path import Run
-from prover.rhythm import Mean, Orbit, Rhythm, Wave
+from prover.rhythm import Mean, Orbit, Rhythm
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,6 +48,25 @@ def high_runs(runs: Iterable[Run]) -> Iterator[Span]:
         at += length
 
 
+@dataclass(frozen=True, slots=True)
+class Round:
+    """Once round a loop that is entered at half-cycle `since`: half-cycles, and rises of the output."""
+
+    half_cycles: int
+    rises: int
+    since: int = 0
+
+    @staticmethod
+    def of(orbit: Orbit) -> Round | None:
+        """That of an orbit, or of its wave where that is known; None for one that did not close, or is stuck."""
+        wave = orbit.wave()
+        if not orbit.closed or (wave is not None and wave.stuck):
+            return None
+        if wave is not None:
+            return Round(wave.period or 0, len(wave.runs) // 2, orbit.lead_half_cycles)
+        return Round(orbit.loop_half_cycles, path.rises(orbit.loop), orbit.lead_half_cycles)
+
+
 class Rule(Protocol):
     """What measured spans have to be."""
 
@@ -59,9 +81,9 @@ class Rule(Protocol):
     def measure(self, runs: Iterable[Run]) -> Iterator[Span]:
         """The spans of the output's runs."""
 
-    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+    def broken(self, spans: Sequence[Span], once: Round | None) -> tuple[Span, str] | None:
         """The first span that is otherwise, and what is wrong with it. The spans are those of a lead-in and some
-        rounds of the wave; None of a wave is a run that did not close."""
+        rounds of a loop, which is None for a run that did not close."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -76,7 +98,7 @@ class Exactly:
     def holds(self) -> str:
         return f"every {self.noun} is {self.wanted} half-cycles"
 
-    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+    def broken(self, spans: Sequence[Span], once: Round | None) -> tuple[Span, str] | None:
         for span in spans:
             if span.length != self.wanted:
                 return span, f"a {self.noun} of {span.length} half-cycles, not {self.wanted}"
@@ -98,24 +120,28 @@ class OnAverage:
     def measure(self, runs: Iterable[Run]) -> Iterator[Span]:
         return gaps(runs)
 
-    def broken(self, spans: Sequence[Span], wave: Wave | None) -> tuple[Span, str] | None:
+    def broken(self, spans: Sequence[Span], once: Round | None) -> tuple[Span, str] | None:
         low, high = self.mean.lengths(span.length for span in spans)
         for span in spans:
             if span.length not in (low, high):
                 either = f"{low}" if low == high else f"{low} or {high}"
                 return span, f"a {self.noun} of {span.length} half-cycles, not {either}"
-        if wave is None or wave.period is None or not spans:
+        if once is None or not spans or once.half_cycles == 2 * self.mean.ratio * once.rises:
             return None
-        count = len(wave.runs) // 2
-        if wave.period == 2 * self.mean.ratio * count:
-            return None
-        # The first stretch that is once round.
-        sums = (sum(span.length for span in spans[i : i + count]) for i in range(len(spans)))
-        begins = next((span.begins for span, n in zip(spans, sums, strict=True) if n == wave.period), 0)
-        many = f"{count} {self.noun}s take" if count != 1 else f"a {self.noun} takes"
-        return Span(
-            begins, wave.period
-        ), f"{many} {wave.period} half-cycles, not {2 * self.mean.ratio * count}"
+        begins = next((span.begins for span in spans if span.begins >= once.since), once.since)
+        many = f"{once.rises} {self.noun}s take" if once.rises != 1 else f"a {self.noun} takes"
+        wanted = 2 * self.mean.ratio * once.rises
+        return Span(begins, once.half_cycles), f"{many} {once.half_cycles} half-cycles, not {wanted}"
+
+
+def spans_of(orbit: Orbit, measure: Measure) -> list[Span]:
+    """What is measured on the lead-in and the loop of an orbit; of spans that recur with a repeat the first ones."""
+    skips: list[tuple[int, int]] = []
+    found = list(measure(orbit.abridged(skips)))
+    ends = [at for at, _ in skips]
+    gone = list(accumulate((size for _, size in skips), initial=0))
+    # A span within which, or at the end of which, something is left out is that of the last round.
+    return [Span(s.begins + gone[bisect_right(ends, s.begins + s.length)], s.length) for s in found]
 
 
 def judge_runs(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[str, Fact]) -> Finding:
@@ -151,7 +177,8 @@ def _on_loops(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[str
     for loop in rhythm.loops:
         # Thrice round the wave shows every span of it whole.
         spans = list(rule.measure([*loop.wave.runs, *loop.wave.runs, *loop.wave.runs]))
-        if loop.stuck or rule.broken(spans, loop.wave):
+        once = None if loop.stuck else Round(loop.wave.period or 0, len(loop.wave.runs) // 2)
+        if loop.stuck or rule.broken(spans, once):
             orbit = rhythm.orbit_from(loop.example)
             broken = _broken(orbit, rule, "power-up state on a loop")
             if broken:
@@ -170,8 +197,8 @@ def _on_loops(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[str
 def _broken(orbit: Orbit, rule: Rule, cause: str) -> Counterexample | None:
     """The first span that breaks the rule, or a round in which there is none."""
     wave = orbit.wave()
-    spans = list(rule.measure(orbit.runs(rounds=3)))
-    broken = rule.broken(spans, wave)
+    spans = spans_of(orbit, rule.measure)
+    broken = rule.broken(spans, Round.of(orbit))
     if broken is not None:
         span, says = broken
         text = f"{says}, from half-cycle {span.begins} on"

@@ -128,6 +128,55 @@ def pieces(path: Sequence[Item]) -> Iterator[Run]:
                 yield from pieces(item.body)
 
 
+SHOWN = 3
+"""Rounds of a repeat after which what is measured between changes of the output goes on as it was: a round that has
+both levels has a change within, and two neighbouring rounds have a rise."""
+
+
+def abridged(path: Sequence[Item], skips: list[tuple[int, int]]) -> Iterator[Run]:
+    """The output's levels with their half-cycles, where no repeat goes on for more than SHOWN rounds.
+
+    Every gap and every pulse of the path is among those of the abridged one. What is left out is added to `skips`:
+    where, in half-cycles of the abridged path, and how many half-cycles."""
+    at = 0
+
+    def walk(items: Sequence[Item]) -> Iterator[Run]:
+        nonlocal at
+        for item in items:
+            if item.steady is not None:
+                at += item.length
+                yield item.steady, item.length
+            elif isinstance(item, Repeat):
+                for _ in range(min(item.times, SHOWN)):
+                    yield from walk(item.body)
+                if item.times > SHOWN:
+                    skips.append((at, item.length // item.times * (item.times - SHOWN)))
+
+    return walk(path)
+
+
+def rises(loop: Sequence[Item]) -> int:
+    """The number of rises of the output once round a loop."""
+    _, last, count = _rises(loop)
+    first = _rises(loop[:1])[0]
+    return count + int(not last and first)
+
+
+def _rises(path: Sequence[Item]) -> tuple[int, int, int]:
+    """The first level of a path that is not empty, its last, and the rises within it."""
+    first, before, total = -1, -1, 0
+    for item in path:
+        if item.steady is not None:
+            begins, ends, count = item.steady, item.steady, 0
+        else:
+            assert isinstance(item, Repeat)
+            begins, ends, count = _rises(item.body)
+            count = item.times * count + (item.times - 1) * int(not ends and begins)
+        total += count + int(before == 0 and begins == 1)
+        first, before = (begins if first < 0 else first), ends
+    return first, before, total
+
+
 def changes(path: Sequence[Item], limit: int) -> int:
     """The number of pieces of the path's output, or more than the limit."""
     total = 0

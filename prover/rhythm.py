@@ -132,6 +132,10 @@ class Orbit:
 
         return path.merged(parts())
 
+    def abridged(self, skips: list[tuple[int, int]]) -> Iterator[Run]:
+        """The output's runs where the lead-in and thrice the loop are abridged as by `path.abridged`."""
+        return path.merged(path.abridged((*self.lead, *self.loop * path.SHOWN), skips))
+
     def wave(self) -> Wave | None:
         """The loop's wave, None for a run that did not close or a round too long to write out."""
         if not self.loop or path.changes(self.loop, LONGEST_ROUND) > LONGEST_ROUND:

@@ -14,13 +14,14 @@ from click.testing import CliRunner
 from machines import random_design
 
 from properties import judge_all
-from prover import Spec, analyse, check, cli
+from properties.runs import gaps, high_runs, spans_of
+from prover import Spec, analyse, check, cli, path
 from prover import expr as e
 from prover.effort import Effort
 from prover.errors import UserError
 from prover.findings import Report
 from prover.ports import recognise
-from prover.rhythm import Wave
+from prover.rhythm import Orbit, Wave
 from prover.settling import settle
 from prover.system import State
 
@@ -187,3 +188,59 @@ def test_the_mean_may_be_a_formula_of_each_addend(tmp_path: Path) -> None:
     result = CliRunner().invoke(cli.main, ["check", str(path), *options], catch_exceptions=False)
     assert result.exit_code == 0, result.stdout
     assert "ratio 2 to 16" in result.stdout
+
+
+def test_a_mean_is_counted_where_the_round_is_too_long_to_write_out(tmp_path: Path) -> None:
+    # By the general law 24 bits and an odd addend M make M carries in 2^24 cycles, all gaps next to 2^24/M. Gaps of
+    # 48 and 49 have 48.3 as a mean as little as 48.
+    source = tmp_path / "accumulator.v"
+    source.write_text(ACCUMULATOR)
+    found = {}
+    for ratio in (Fraction(1 << 24, 349525), Fraction(483, 10)):
+        spec = Spec(ratio=ratio, mean=True, parameters={"W": 24, "M": 349525})
+        report = check([source], spec)
+        found[ratio] = report.findings[0]
+        assert report.findings[0].facts["measured_gaps_half_cycles"] == [96, 98]
+    assert [finding.verdict for finding in found.values()] == ["proved", "refuted"]
+    broken = found[Fraction(483, 10)].counterexample
+    assert broken is not None
+    assert broken.ends - broken.begins == 1 << 25
+
+
+@pytest.mark.parametrize("seed", range(50))
+def test_abridged_paths_have_the_same_spans_as_whole_ones(seed: int) -> None:
+    rng = random.Random(seed)
+
+    def items(depth: int) -> tuple[path.Item, ...]:
+        out: list[path.Item] = []
+        for _ in range(rng.randint(1, 4)):
+            if depth and rng.random() < 0.4:
+                out.append(path.Repeat(rng.randint(2, 7), (1,), items(depth - 1)))
+            else:
+                out.append(path.Beat((0,), rng.randint(0, 1)))
+        return tuple(out)
+
+    def written(items: tuple[path.Item, ...]) -> list[int]:
+        levels: list[int] = []
+        for item in items:
+            if isinstance(item, path.Repeat):
+                levels += item.times * written(item.body)
+            else:
+                levels.append(item.steady or 0)
+        return levels
+
+    orbit = Orbit(items(2), items(2), (32,))
+    loop = written(orbit.loop)
+    levels = written(orbit.lead) + 3 * loop
+    changes = [i for i in range(1, len(levels)) if levels[i] != levels[i - 1]]
+    by_hand = {
+        gaps: {(a, b - a) for a, b in pairwise(i for i in changes if levels[i])},
+        high_runs: {(a, b - a) for a, b in pairwise(changes) if levels[a]},
+    }
+    for measure, spans in by_hand.items():
+        found = {(span.begins, span.length) for span in spans_of(orbit, measure)}
+        assert found <= spans
+        assert {length for _, length in found} == {length for _, length in spans}
+        firsts = {n: min(at for at, m in spans if m == n) for _, n in spans}
+        assert firsts == {n: min(at for at, m in found if m == n) for _, n in found}
+    assert path.rises(orbit.loop) == sum(now > was for was, now in pairwise([loop[-1], *loop]))
