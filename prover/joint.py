@@ -409,7 +409,7 @@ class _Builder:
         )
         count, under = self._under(edge, rest, move)
         phases = ([of[name] for name in self.names] for of in (rest, edge, move, release))
-        lasting = all(self._lasting(edge, values) for values in under)
+        lasting = all(self._lasting(rest, edge, move, values) for values in under)
         self.held = Held(count, lasting, *map(tuple, phases))
         for level in (0, 1):
             values = under[level ^ (count & 1)]
@@ -491,24 +491,45 @@ class _Builder:
         columns = zip(*samples, strict=True)
         return sum((reduce(or_, column) ^ reduce(and_, column)).bit_count() for column in columns)
 
-    def _lasting(self, edge: Values, values: Values) -> bool:
-        """Whether all states after reset remain however long it is held: then two half-cycles more, with the inputs
-        where they are, lead from no two of them to one. As they lead from these states into these states, each comes
-        round again."""
+    def _lasting(self, rest: Values, edge: Values, move: Values, values: Values) -> bool:
+        """Whether all states after reset remain however long it is held.
+
+        They do where they hang on no register of before. Else two half-cycles more have to lead from no two of them
+        to one: as they lead from these states into these states, each comes round again. Where inputs move, the same
+        has to hold of the registers of before, whatever the inputs and other registers are: then longer reset only
+        begins elsewhere among them."""
         begun = [values[name] for name in self.names]
-        shared = set(self.inputs)
-        if {v.name for v in e.variables(begun)} <= shared:
+        before = {v.name for v in e.variables(begun)} & set(self.names)
+        if not before:
             return True
+        if any(v.name.startswith("?") for v in e.variables([*begun, *edge.values()])):
+            return False
+        if not self.moving:
+            return self._apart(begun, self._twice(edge, values))
+        own = [r.name for r in self.design.registers if r.name in before]
+        here = [e.var(r.name, r.width) for r in self.design.registers if r.name in before]
+        if any(of[x.name] is not x for x in here for of in (rest, move)):
+            return False
+        for level in (0, 1):
+            after = dict(zip(self.names, self._twice(edge, {self.clock: e.const(level, 1)}), strict=True))
+            ended = [after[name] for name in own]
+            if not {v.name for v in e.variables(ended)} <= before or not self._apart(here, ended):
+                return False
+        return True
+
+    def _twice(self, edge: Values, values: Values) -> list[Expr]:
+        """Every register two half-cycles later, with the inputs where they are."""
         names = [*self.names, self.clock]
         step = [edge[name] for name in names]
-        if any(v.name.startswith("?") for v in e.variables([*begun, *step])):
-            return False
         after = dict(values)
         for _ in range(2):
             after |= dict(zip(names, e.substitute(step, after), strict=True))
-        ended = [after[name] for name in self.names]
+        return [after[name] for name in self.names]
+
+    def _apart(self, begun: Sequence[Expr], ended: Sequence[Expr]) -> bool:
+        """Whether no two beginnings that differ, for the registers of before, come to one end."""
         used = e.variables([*begun, *ended])
-        others = {v.name: e.var(f"{v.name} else", v.width) for v in used if v.name not in shared}
+        others = {v.name: e.var(f"{v.name} else", v.width) for v in used if v.name in self.names}
         same = [
             e.conj(e.eq(a, b) for a, b in zip(side, e.substitute(side, others), strict=True))
             for side in (begun, ended)
