@@ -6,8 +6,12 @@ import math
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, replace
 
+from prover import expr as e
 from prover.design import Design, Register
+from prover.effort import Effort
 from prover.errors import UserError, Where
+from prover.expr import Expr
+from prover.forms import Beyond, Poly, at_least, condition
 from prover.formula import Formula
 from prover.spec import EACH_HINT, Ranges, Spec
 
@@ -36,15 +40,19 @@ def values_text(values: Values) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Domain:
-    """The values for which a claim is made: ranges for each input, and conditions over these and what is fixed."""
+    """The values for which a claim is made: ranges for each input, and conditions over these and what is fixed.
+
+    begins  a number of a value before which the conditions are known to admit none"""
 
     inputs: tuple[tuple[str, Ranges], ...]
     where: tuple[Formula, ...]
     fixed: Values
+    begins: int = 0
 
     @staticmethod
     def of(design: Design, spec: Spec) -> Domain:
-        """The domain of a claim. Raises UserError for values that the port cannot have, or if there are none."""
+        """The domain of a claim. Raises UserError for values that the port cannot have, or if there are none; where
+        that takes a search, see `begun`."""
         inputs = []
         for name, ranges in spec.each.items():
             most = (1 << design.inputs[name]) - 1
@@ -56,11 +64,40 @@ class Domain:
                 )
             inputs.append((name, ranges if ranges is not None else ((0, most),)))
         domain = Domain(tuple(inputs), spec.where, fixed_values(design, spec))
-        if next(domain.values(), None) is None:
-            raise UserError(
-                "--where leaves no values to judge", hint="give a condition that some values meet"
-            )
+        if domain.size <= MOST_LISTED and next(domain.values(), None) is None:
+            raise no_values()
         return domain
+
+    def begun(self, widths: Mapping[str, int], effort: Effort) -> Domain:
+        """The same, beginning with its first value. Raises UserError if there is none, or none can be found, and
+        OutOfEffort."""
+        from prover.solve import least
+
+        if next(self.values(), None) is not None:
+            return self
+        try:
+            first = least(self.admitted(widths), [(name, widths[name]) for name, _ in self.inputs], effort)
+        except Beyond:
+            raise UserError(
+                f"--where: none of the first {MOST_LISTED} values meets it, and it is too hard to search for others",
+                hint="begin nearer to the first one, with --each PORT=LOW..HIGH",
+            ) from None
+        if first is None:
+            raise no_values()
+        return replace(self, begins=self.number(first))
+
+    def admitted(self, widths: Mapping[str, int]) -> Expr:
+        """One bit over the inputs: they are of the domain. Raises Beyond."""
+        parts = []
+        names = {name: Poly.atom(name, widths[name]) for name, _ in self.inputs}
+        names |= {name: Poly.const(value) for name, value in self.fixed.items()}
+        for name, ranges in self.inputs:
+            inside = (
+                e.bvand(at_least(names[name], Poly.const(low)), at_least(Poly.const(high), names[name]))
+                for low, high in ranges
+            )
+            parts.append(e.disj(inside))
+        return e.conj([*parts, *(condition(each, names) for each in self.where)])
 
     @property
     def size(self) -> int:
@@ -77,7 +114,7 @@ class Domain:
     def values(self) -> Iterator[dict[str, int]]:
         """The values that meet the conditions, in order; the search for them stops after MOST_LISTED others."""
         missed = 0
-        for number in range(self.size):
+        for number in range(self.begins, self.size):
             values = self.value(number)
             if self.holds(values):
                 yield values
@@ -117,6 +154,11 @@ class Domain:
     def holds(self, values: Values) -> bool:
         """Whether the conditions admit the values."""
         return all(condition.value({**self.fixed, **values}) for condition in self.where)
+
+
+def no_values() -> UserError:
+    """The error of conditions that no value meets."""
+    return UserError("--where leaves no values to judge", hint="give a condition that some values meet")
 
 
 def _where(design: Design, name: str) -> Where | None:

@@ -156,7 +156,7 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     fixed = fixed_values(design, spec)
     if not spec.each:
         return judge(design, in_numbers(design, spec), effort)
-    domain = Domain.of(design, spec)
+    domain = Domain.of(design, spec).begun(design.inputs, effort)
     given, spec = spec, with_roles(spec, recognise(rigid(design, spec.each), spec))
     found = Merged(spec, domain)
     count = domain.count
@@ -353,7 +353,7 @@ class Merged:
     def _is_first(self, name: str, values: Values) -> bool:
         """Whether no smaller value than this one can fail."""
         known = self.together is not None and name in self.together.first_known
-        return known or next(self.domain.values()) == values
+        return known or next(self.domain.values(), None) == values
 
     def _missing(self, name: str, why: str) -> str:
         """Why a property is not known for the values that were not judged by themselves, "" if it is."""

@@ -18,7 +18,7 @@ from prover.effort import Effort
 from prover.expr import Expr
 from prover.family import Origin, Proof, Unfit, regions
 from prover.findings import Obligation as Due
-from prover.forms import Poly, at_least, condition
+from prover.forms import Poly, at_least
 from prover.glitch import Glitches
 from prover.good import Region, Scope
 from prover.ports import Ports, recognise
@@ -63,16 +63,7 @@ class Rigid:
 
     def admitted(self) -> Expr:
         """One bit: the inputs are of the domain. Raises Beyond."""
-        parts = []
-        names = {name: Poly.atom(name, width) for name, width in self.inputs}
-        names |= {name: Poly.const(value) for name, value in self.domain.fixed.items()}
-        for name, ranges in self.domain.inputs:
-            inside = (
-                e.bvand(at_least(names[name], Poly.const(low)), at_least(Poly.const(high), names[name]))
-                for low, high in ranges
-            )
-            parts.append(e.disj(inside))
-        return e.conj([*parts, *(condition(each, names) for each in self.domain.where)])
+        return self.domain.admitted(dict(self.inputs))
 
     def origin(self) -> Origin:
         """What start states are derived from. Raises Unfit where reset does not settle, or x takes part."""

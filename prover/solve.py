@@ -69,6 +69,28 @@ def _tried(goal: Expr, used: Sequence[Expr]) -> Model | None:
     return None
 
 
+def least(goal: Expr, inputs: Sequence[tuple[str, int]], effort: Effort) -> dict[str, int] | None:
+    """The first value of the inputs, in their order, for which the goal can be fulfilled."""
+    out: dict[str, int] = {}
+    model = find(goal, effort)
+    if model is None:
+        return None
+    for name, width in inputs:
+        word = e.var(name, width)
+        low, high = 0, model.get(name, 0)
+        while low < high:
+            middle = (low + high) // 2
+            lower = find(e.bvand(goal, e.bvule(word, e.const(middle, width))), effort)
+            if lower is None:
+                low = middle + 1
+            else:
+                model, high = lower, lower.get(name, 0)
+        out[name] = high
+        goal = e.bvand(goal, e.eq(word, e.const(high, width)))
+        model = find(goal, effort) or model
+    return out
+
+
 def constant(value: Expr) -> int | None:
     """The value that an expression always has, if there is one: by its form, else by samples and the solver."""
     if value.is_const:

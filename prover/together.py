@@ -17,10 +17,10 @@ from prover.errors import InternalError
 from prover.expr import Expr
 from prover.family import Claim, Piece, Proof, Unfit
 from prover.forms import Beyond, Poly, at_least
-from prover.generalise import Found, FromEverywhere, FromStarts, Kind, Lost, Search, cases_at, least
+from prover.generalise import Found, FromEverywhere, FromStarts, Kind, Lost, Search, cases_at
 from prover.rigid import bound_obligations
 from prover.sample import Machines
-from prover.solve import Model, find
+from prover.solve import Model, find, least
 from prover.spec import Spec
 
 

@@ -246,6 +246,24 @@ def test_a_claim_that_means_nothing_is_refused(options: list[str], words: str, t
     assert not (tmp_path / "c.json").exists()
 
 
+def test_values_far_from_the_first_are_found() -> None:
+    # Two of 2^24 values meet the conditions, far behind as many as are gone through one by one.
+    divider = str(Path(__file__).parents[1] / "cases" / "gauge" / "sample_by_div.v")
+    options = ("--set", "W=24", "--each", "div", "--ratio", "2*(div+1)")
+    far = ("--where", "div > 9000000", "--where", "div < 9000003")
+    found = json.loads(
+        run("check", divider, *options, *far, "--high", "2*(div+1)-(div==9000002)", "--json", "-").stdout
+    )
+    judged = {each["name"]: each for each in found["properties"]}
+    assert judged["ratio"]["verdict"] == "proved"
+    assert judged["high-time"]["verdict"] == "refuted"
+    assert judged["high-time"]["facts"]["at"] == {"div": 9000002}
+    none = run("check", divider, *options, "--where", "div > 9000000", "--where", "div < 9000001")
+    assert (none.exit_code, "leaves no values" in none.stderr) == (2, True)
+    hard = run("check", divider, *options, "--where", "div % 100000 == 99999")
+    assert (hard.exit_code, "hint: " in hard.stderr, "leaves no" in hard.stderr) == (2, True, False)
+
+
 def test_what_was_not_judged_for_want_of_effort_is_not_claimed(tmp_path: Path) -> None:
     path = written(tmp_path, BY_DIV)
     result = run("check", path, "--each", "div", "--ratio", "2*(div+1)", "--effort", "1e-9")
