@@ -458,7 +458,7 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
         progress.tell("writing the reports")
         shown = run.rows if any(targets.paths()) else [row for row in run.rows if row.verdict != "proved"]
         found = [row.outcome(kept) for row in shown]
-        written = _results_of(found, targets, told.as_object(run))
+        written = _results_of(found, targets, told.as_object(run), told.waivers(run))
         texts = [
             told.headed(row, _text_of(outcome, paths))
             for outcome, row, paths in zip(found, shown, written.waves, strict=True)
@@ -828,8 +828,13 @@ class Written:
     remarks: list[str]
 
 
-def _results_of(found: Sequence[Outcome], targets: Targets, more: dict[str, Any] | None = None) -> Written:
-    """What goes to the targets; `more` goes into the JSON."""
+def _results_of(
+    found: Sequence[Outcome],
+    targets: Targets,
+    more: dict[str, Any] | None = None,
+    waivers: Sequence[tuple[str, str]] = (),
+) -> Written:
+    """What goes to the targets; `more` goes into the JSON, `waivers` into the page."""
     from prover.report import several as told
     from prover.several import labels
 
@@ -848,7 +853,7 @@ def _results_of(found: Sequence[Outcome], targets: Targets, more: dict[str, Any]
     if targets.html is not None:
         from prover.report import html
 
-        written.results.append(Result(targets.html, html.render_several(found)))
+        written.results.append(Result(targets.html, html.render_several(found, waivers)))
     return written
 
 

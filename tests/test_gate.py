@@ -16,6 +16,7 @@ from xml.etree import ElementTree
 
 import pytest
 from click.testing import CliRunner, Result
+from pages import page
 from texts import BY_3, RING
 
 import prover
@@ -587,8 +588,15 @@ def test_an_expired_waiver_fails_the_gate(folder: Path) -> None:
 def test_an_expired_waiver_of_something_proved_fails_the_gate_as_well(folder: Path) -> None:
     entry = '[divider.third]\nfiles = "third.v"\nratio = 3\n'
     write(folder, entry + 'waive.recovery = { reason = "old", until = 2020-01-01 }\n')
-    status, found, _ = gate()
+    status, found, _ = gate("--html", "out.html")
     assert (status, found) == (1, {"third": ("proved", "new")})
+    root = page((folder / "out.html").read_text(encoding="utf-8"))
+    # The page is no all-clear either.
+    assert root.of("overall")[0].text == "error1 proved, but a waiver has expired"
+    (told,) = root.get("waivers").all("li")
+    assert told.text.startswith(
+        "EXPIRED subharmonic.toml:4: third: recovery was waived until 2020-01-01: old"
+    )
 
 
 def test_a_waiver_of_what_is_proved_by_now_is_told(folder: Path) -> None:

@@ -32,7 +32,7 @@ from prover.findings import Report
 from prover.ports import recognise
 from prover.report.html import page as html_page
 from prover.report.html import recovery, render, render_several, states
-from prover.report.html.markup import element
+from prover.report.html.markup import element, prose
 from prover.several import Outcome
 from prover.spec import Spec
 
@@ -80,7 +80,7 @@ def levels(line: Node, places: list[float]) -> list[int]:
 
 
 def numbers(picture: Node, kind: str) -> list[int]:
-    return [int(node.text) for node in picture.of(kind) if node.name == "text"]
+    return [int(node.text.replace(" ", "")) for node in picture.of(kind) if node.name == "text"]
 
 
 def test_the_wave_is_drawn_as_it_is(tmp_path: Path) -> None:
@@ -130,6 +130,8 @@ def test_long_stretches_are_folded_and_their_length_told(tmp_path: Path) -> None
     assert edges == [1, 1 + 49_999_998, 1 + 100_000_000]
     told = section(root, "facts").text
     assert "on source edges 1, 49999999, 100000001 (edge 1 rises)" in told
+    (ports,) = root.of("about")
+    assert [node.text for node in ports.all("dd")][1:4] == ["clk", "rst, active 1, synchronous", "tick"]
 
 
 def test_the_page_of_the_slowest_divider_is_small() -> None:
@@ -415,13 +417,43 @@ def test_each_state_is_in_one_bar(worst: int) -> None:
 def test_the_recovery_in_words() -> None:
     # Ten states: five good at once, two after 1, two after 4, and one that never is.
     assert recovery.summary([(0, 5), (1, 2), (4, 2)], 10) == (
-        "Of 10 power-up states, 5 are good from the start; the slowest 4 half-cycles (2 states); "
+        "Of 10 power-up states, 5 are good from the start; the slowest need 4 half-cycles (2 states); "
         "1 never becomes good."
     )
     assert recovery.summary([(2, 2), (4, 2)], 4) == (
         "Of 4 power-up states, 0 are good from the start; half of those that become good need at most 2 half-cycles; "
-        "the slowest 4 half-cycles (2 states)."
+        "the slowest need 4 half-cycles (2 states)."
     )
+
+
+def test_long_numbers_are_set_in_threes_and_read_as_they_were() -> None:
+    told = "period 4294967294 of 12345, at count=4294967295 in d_100000 and 3.14159 or 9999; 45 to 55 %"
+    made = prose(told)
+    assert re.sub("<[^>]*>", "", made).replace("&nbsp;", " ") == told
+    assert re.findall(r'<span class="digits">(.*?)</span>(?!<)(?!\d)', made) == [
+        "4<span>294</span><span>967</span><span>294</span>",
+        "12<span>345</span>",
+    ]
+    assert prose("<b>12") == "&lt;b&gt;12"
+    # What is markup already is not made text again.
+    assert prose(prose("<b>12345")) == prose("<b>12345")
+
+
+def test_no_number_of_the_ruler_is_crossed_by_a_tear(tmp_path: Path) -> None:
+    # A second of 50 MHz: eight digits at every fold.
+    root = page(render(checked(tmp_path, SECOND, "50000000", high=49_999_998)))
+    for picture in section(root, "wave").of("wave"):
+        tears = [float((node.attributes["d"] or "").split()[0][1:]) for node in picture.of("tear")]
+        spans = [
+            (float(node.attributes["x"] or ""), len(node.text) * 6.6)
+            for node in picture.of("number")
+            if node.name == "text"
+        ]
+        assert spans
+        # An 11 px letter of the pages' face is 6.6 px wide, and a tear reaches 3 px to the right.
+        assert not [
+            (x, at) for at in tears for x, wide in spans if x - wide / 2 < at + 3 and at < x + wide / 2
+        ]
 
 
 # -- two compared ------------------------------------------------------------------------------------------

@@ -51,7 +51,8 @@ def waves(rhythm: Rhythm, most: int) -> list[Shown]:
         for orbit in loop_orbits(rhythm, most):
             text, wave = words.of_orbit(orbit), orbit.wave()
             count = sum(loop.wave == wave for loop in rhythm.loops)
-            causes[text] = [f"{count} of {words.plural(len(rhythm.loops), 'loop')}"]
+            of_all = words.plural(len(rhythm.loops), "loop")
+            causes[text] = ["the only loop" if len(rhythm.loops) == 1 else f"{count} of {of_all}"]
             shown[text] = orbit
     return [Shown(text, tuple(dict.fromkeys(causes[text])), orbit) for text, orbit in shown.items()]
 

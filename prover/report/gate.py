@@ -127,6 +127,12 @@ def _waiver(each: Excused) -> Iterator[str]:
         yield f"waived    {at} until {waiver.until}{_left(each.days)}: {waiver.reason}"
 
 
+def waivers(run: Run) -> list[tuple[str, str]]:
+    """Of each waiver its state, and what there is to tell of it as one sentence."""
+    told = ((each.state, _waiver(each)) for each in run.excused)
+    return [(state, "; ".join(" ".join(line.split()) for line in lines)) for state, lines in told]
+
+
 def _left(days: int) -> str:
     """How long it has left, where that is not long."""
     if days > SOON:

@@ -110,7 +110,8 @@ def _verdict(finding: Finding, widest: int) -> Iterator[str]:
         yield from wrapped(f"obligation: {obligation.text}", indent)
         for where in dict.fromkeys([obligation.where, *(place for _, place in obligation.via)]):
             yield f"{indent}  {where}: {where.text.strip()}"
-    for name, told in words.facts_of(finding):
+    for name, parts in words.facts_of(finding):
+        told = ", ".join(parts)
         yield from wrapped(f"{name}: {told}", indent)
 
 

@@ -99,12 +99,13 @@ FACTS = (
 """Facts of findings that people are told, by the names that they read."""
 
 
-def facts_of(finding: Finding) -> Iterator[tuple[str, str]]:
-    """A finding's facts that its words don't say already: a name and what it is."""
+def facts_of(finding: Finding) -> Iterator[tuple[str, list[str]]]:
+    """A finding's facts that its words don't say already: a name and what it is, in several parts where it is
+    several things."""
     for key, name in FACTS:
         value = finding.facts.get(key)
         if value not in (None, "", [], {}):
-            yield name, fact(value)
+            yield name, [str(item) for item in value] if isinstance(value, list) else [fact(value)]
 
 
 def facts(report: Report) -> Iterator[tuple[str, str]]:

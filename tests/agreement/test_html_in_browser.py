@@ -104,6 +104,22 @@ def test_the_page_is_no_wider_than_the_window(
     assert window.requests == window.dialogs == []
 
 
+def test_tables_of_texts_are_read_on_a_phone_without_scrolling(
+    window: Browser, pages: dict[str, Path]
+) -> None:
+    window.window(390, 844, True)
+    window.media()
+    for kind in ("rings", "huge", "several"):
+        window.open(pages[kind])
+        window.evaluate("document.querySelectorAll('details').forEach(d => d.open = true)")
+        boxes = window.evaluate(
+            """[...document.querySelectorAll('table.told')].map(t => t.parentElement)
+            .map(b => [b.scrollWidth, b.clientWidth])"""
+        )
+        assert boxes
+        assert all(needed <= there for needed, there in boxes)
+
+
 @pytest.mark.parametrize("kind", KINDS)
 def test_every_part_of_a_page_is_there_to_be_seen(window: Browser, pages: dict[str, Path], kind: str) -> None:
     window.window(1280)

@@ -10,7 +10,7 @@ from prover.pair import SIDES
 from prover.report import apart, words
 from prover.report.compared import joint_of
 from prover.report.html import waves
-from prover.report.html.markup import Content, Markup, element
+from prover.report.html.markup import Content, Markup, element, prose
 from prover.report.html.sections import (
     BROKEN,
     Part,
@@ -53,7 +53,7 @@ def _found(comparison: Comparison) -> Iterator[Markup]:
     if outcome.obligations:
         due = words.plural(len(outcome.obligations), "obligation")
         rows.append(("rests on", element("a", due, href="#obligations")))
-    told = element("div", element("p", outcome.says, class_="says"), definitions(rows))
+    told = element("div", element("p", prose(outcome.says), class_="says"), definitions(rows))
     yield element("ol", element("li", element("div", ring_mark(word), class_=word), told), class_="verdicts")
 
 

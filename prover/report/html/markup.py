@@ -6,6 +6,7 @@ here: a plain string is a text, and only what `element` made is markup.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable
 from html import escape
 
@@ -29,6 +30,30 @@ Attribute = str | int | float | bool | None
 def text(content: str) -> Markup:
     """A text as markup: control characters as escapes, and nothing in it that means anything to a browser."""
     return content if isinstance(content, Markup) else Markup(escape(harmless(content), quote=True))
+
+
+_LONG = re.compile(r"(?<![\w=.'$-])\d{5,}(?![\w.])|(?<=\d) (?=%)")
+
+
+def prose(content: str) -> Markup:
+    """A text with the digits of long numbers set in threes, as a reader sees it; copied, the numbers are as before.
+    A per cent sign stays with its number. Numbers in names, after an equals sign and with a point stay as they
+    are."""
+    if isinstance(content, Markup):
+        return content
+    parts: list[Markup] = []
+    at = 0
+    for found in _LONG.finditer(content):
+        parts.append(text(content[at : found.start()]))
+        parts.append(_in_threes(found[0]) if found[0] != " " else Markup("&nbsp;"))
+        at = found.end()
+    return Markup("".join([*parts, text(content[at:])]))
+
+
+def _in_threes(digits: str) -> Markup:
+    first = len(digits) % 3 or 3
+    rest = (element("span", digits[at : at + 3]) for at in range(first, len(digits), 3))
+    return element("span", digits[:first], rest, class_="digits")
 
 
 def number(value: float) -> str:

@@ -16,7 +16,7 @@ from prover.pair import SIDES
 from prover.ports import Ports
 from prover.report import several, words
 from prover.report.html import compared
-from prover.report.html.markup import Markup, element, joined
+from prover.report.html.markup import Markup, element, joined, prose
 from prover.report.html.sections import Part, Place, about, parts, ring_mark, section
 from prover.several import Outcome
 
@@ -27,6 +27,9 @@ MOST_WHOLE = 100
 """Dividers in one file up to which each is told whole."""
 
 SOUND = ("proved", "measured")
+
+WORST = ("measured", "proved", "open", "refuted", "error", "fault")
+"""Outcomes, the worst last."""
 
 
 def render(report: Report) -> str:
@@ -45,16 +48,21 @@ def render(report: Report) -> str:
     return _file(title, joined([head, _contents(made), main]))
 
 
-def render_several(found: Sequence[Outcome]) -> str:
-    """What came of several dividers as one file: a table of all, then a section for each."""
+def render_several(found: Sequence[Outcome], waivers: Sequence[tuple[str, str]] = ()) -> str:
+    """What came of several dividers as one file: a table of all, then a section for each. `waivers` are those
+    of a gate, each with its state and what there is to say of it; one that has expired fails the gate."""
     count = words.plural(len(found), "divider")
     words_of = [several.word(outcome) for outcome in found]
     counted = ", ".join(f"{n} {word.lower()}" for word, n in Counter(words_of).items())
-    head = element("header", _maker(), element("h1", count), element("p", f"{counted}.", class_="claim"))
+    worst = max((word.lower() for word in words_of), key=WORST.index, default="measured")
+    if worst in SOUND and any(state == "expired" for state, _ in waivers):
+        worst, counted = "error", f"{counted}, but a waiver has expired"
+    overall = [ring_mark(worst), element("b", worst), element("span", counted)]
+    head = element("header", _maker(), element("h1", count), element("p", overall, class_=f"overall {worst}"))
     few = sum(word.lower() not in SOUND for word in words_of) <= MOST_OPEN
     brief = len(found) > MOST_WHOLE
     dividers = (_divider(outcome, i, few, brief) for i, outcome in enumerate(found))
-    main = element("main", _index(found), dividers, id="main")
+    main = element("main", _index(found), _waivers(waivers), dividers, id="main")
     return _file(f"{count}: {counted}", joined([head, main]))
 
 
@@ -72,7 +80,7 @@ def _opening(report: Report) -> list[Markup]:
     overall = [ring_mark(word), element("b", word), element("span", told)]
     claim = words.claim(report)
     line = f"Claim: {claim}." if claim else "A measurement: nothing is claimed."
-    return [element("p", overall, class_=f"overall {word}"), element("p", line, class_="claim")]
+    return [element("p", overall, class_=f"overall {word}"), element("p", prose(line), class_="claim")]
 
 
 def _contents(made: Sequence[Part]) -> Markup:
@@ -94,7 +102,7 @@ def render_compared(comparison: Comparison) -> str:
         _maker(),
         element("h1", compared.title(comparison)),
         element("p", ring_mark(word), element("b", word), class_=f"overall {word}"),
-        element("p", f"Claim: {comparison.claim}.", class_="claim"),
+        element("p", prose(f"Claim: {comparison.claim}."), class_="claim"),
         element("div", (_side(side, ports) for side, ports in sides), class_="sides"),
     )
     main = element("main", (section(part, place) for part in made), id="main")
@@ -109,10 +117,8 @@ def _side(side: str, ports: Ports) -> Markup:
 
 
 def _index(found: Sequence[Outcome]) -> Markup:
-    head = (
-        element("th", name, scope="col")
-        for name in ("divider", "verdict", "what is wrong, or measured", "file")
-    )
+    names = ("divider", "verdict", "remarks", "file")
+    head = (element("th", name, scope="col") for name in names)
     rows = []
     for index, outcome in enumerate(found):
         word = several.word(outcome).lower()
@@ -120,15 +126,34 @@ def _index(found: Sequence[Outcome]) -> Markup:
         link = element("a", _top(outcome), href=f"#{_key(index)}top")
         cells = [
             element("th", link, scope="row"),
-            element("td", mark, class_="short"),
-            element("td", several.says(outcome), class_="long"),
-            element("td", element("span", outcome.name, class_="name"), class_="long"),
+            element("td", mark, class_="short", data_head=names[1]),
+            element("td", _remarks(outcome), class_="long", data_head=names[2]),
+            element("td", element("span", outcome.name, class_="name"), class_="long", data_head=names[3]),
         ]
         rows.append(element("tr", cells))
-    table = element("table", element("thead", element("tr", head)), element("tbody", rows))
+    table = element("table", element("thead", element("tr", head)), element("tbody", rows), class_="told")
     title = element("h2", "All dividers", id="index-title", class_="title")
     inner = element("div", table, class_="scroll")
     return element("section", title, inner, id="index", class_="index", aria_labelledby="index-title")
+
+
+def _waivers(told: Sequence[tuple[str, str]]) -> list[Markup]:
+    if not told:
+        return []
+    title = element("h2", "Waivers", id="waivers-title", class_="title")
+    items = element("ul", (element("li", text, class_=state) for state, text in told))
+    return [element("section", title, items, id="waivers", class_="index", aria_labelledby="waivers-title")]
+
+
+def _remarks(outcome: Outcome) -> Markup:
+    """What is wrong or measured, then what is waived, and what the verdict rests on."""
+    findings = outcome.report.findings if outcome.report else ()
+    told = [several.says(outcome)]
+    told += [f"{f.name} waived" for f in findings if f.waived is not None and f.verdict != "proved"]
+    due = sum(len(finding.obligations) for finding in findings)
+    if due and several.word(outcome) == "PROVED":
+        told.append(f"under {due} timing obligation{'s' * (due > 1)}")
+    return prose("; ".join(filter(None, told)))
 
 
 def _key(index: int) -> str:

@@ -33,7 +33,8 @@ def summary(recovery: Pairs, total: int) -> str:
         if _median(recovery) > 0:
             median = words.plural(_median(recovery), "half-cycle")
             told.append(f"half of those that become good need at most {median}")
-        told.append(f"the slowest {words.plural(needed, 'half-cycle')} ({words.plural(count, 'state')})")
+        need = f"need{'s' * (count == 1)} {words.plural(needed, 'half-cycle')}"
+        told.append(f"the slowest {need} ({words.plural(count, 'state')})")
     if good < total:
         told.append(f"{total - good} never become{'s' * (total - good == 1)} good")
     return "; ".join(told) + "."
@@ -106,7 +107,7 @@ def plot(recovery: Pairs, total: int, within: int | None, key: str) -> Markup:
     told = summary(recovery, total)
     below = "half-cycles until good" + (f", {size} a bar" if size > 1 else "")
     parts.append(element("text", below, x=LEFT, y=TOP + HEIGHT + 36, class_="scale start"))
-    parts.append(element("text", "states", x=LEFT - 8, y=TOP - 8, class_="scale end"))
+    parts.append(element("text", "states, log scale", x=0, y=TOP - 8, class_="scale start"))
     picture = element(
         "svg",
         element("title", "States by the half-cycles that they need until they are good", id=f"{key}-title"),

@@ -16,11 +16,11 @@ from prover.ports import Ports
 from prover.report import figures, words
 from prover.report.figures import Extent
 from prover.report.html import recovery, states, waves
-from prover.report.html.markup import Content, Markup, element, joined
+from prover.report.html.markup import Content, Markup, element, joined, prose
 from prover.report.html.waves import Dimension, Scene
 from prover.report.trace import drawing as of_trace
 from prover.report.wave import Drawing, Piece, Row, Timeline
-from prover.rhythm import Loop, Orbit
+from prover.rhythm import Loop, Orbit, Rhythm
 from prover.settling import Unsettled
 from prover.system import State
 from prover.trace import Trace
@@ -34,6 +34,8 @@ MOST_MICRO_STEPS = 64
 MOST_VALUES = 100
 MOST_ARRIVALS = 40
 MOST_WORDS = 8
+
+UNIT = "Period and high time are in half-cycles."
 
 LONG = frozenset({"for example", "reason for waiving it", "what is wrong, or the worst"})
 """Headings of columns that hold texts."""
@@ -136,24 +138,31 @@ def _name(name: str) -> Markup:
 
 def definitions(rows: Sequence[tuple[str, Content]], kind: str | None = None) -> Markup:
     """Terms and what they are, in pairs."""
-    pairs = (joined([element("dt", term), element("dd", content)]) for term, content in rows)
+    told = ((term, prose(content) if isinstance(content, str) else content) for term, content in rows)
+    pairs = (joined([element("dt", term), element("dd", content)]) for term, content in told)
     return element("dl", pairs, class_=kind)
 
 
 def _table(head: Sequence[str], rows: Sequence[Sequence[Content]], kind: str | None = None) -> Markup:
     """A table in a box of its own, which scrolls if it is too wide. The first cell of a row is its heading;
-    those under a heading of `LONG` may be broken."""
+    those under a heading of `LONG` may be broken. Where the window is narrow the cells of a row stand one below the
+    other, each beside its heading, but for tables of a kind."""
     titles = (element("th", name, scope="col") for name in head)
     kinds = ["long" if name in LONG else "short" for name in head]
     body = (
         element(
             "tr",
-            element("th", row[0], scope="row"),
-            (element("td", cell, class_=kind) for cell, kind in zip(row[1:], kinds[1:], strict=True)),
+            element("th", row[0], scope="row", data_head=head[0]),
+            (
+                element("td", cell, class_=kind, data_head=name)
+                for cell, kind, name in zip(row[1:], kinds[1:], head[1:], strict=True)
+            ),
         )
         for row in rows
     )
-    made = element("table", element("thead", element("tr", titles)), element("tbody", body), class_=kind)
+    made = element(
+        "table", element("thead", element("tr", titles)), element("tbody", body), class_=kind or "told"
+    )
     return element("div", made, class_="scroll")
 
 
@@ -179,7 +188,7 @@ def _verdict(finding: Finding, place: Place) -> Markup:
         rows.append(("bound", finding.bound))
     if finding.method:
         rows.append(("method", finding.method))
-    rows += words.facts_of(finding)
+    rows += [(name, _lines(parts)) for name, parts in words.facts_of(finding)]
     if finding.obligations:
         link = element(
             "a", words.plural(len(finding.obligations), "obligation"), href=f"#{place.key}obligations"
@@ -187,8 +196,13 @@ def _verdict(finding: Finding, place: Place) -> Markup:
         rows.append(("rests on", link))
     if finding.waived is not None:
         rows.append(("waived", finding.waived))
-    content = element("div", head, element("p", finding.says, class_="says"), definitions(rows))
+    content = element("div", head, element("p", prose(finding.says), class_="says"), definitions(rows))
     return element("li", element("div", ring_mark(finding.verdict), class_=finding.verdict), content)
+
+
+def _lines(parts: Sequence[str]) -> Content:
+    """A text, or several with a line for each."""
+    return parts[0] if len(parts) == 1 else [element("div", prose(part)) for part in parts]
 
 
 def _each_value(report: Report, place: Place) -> Iterator[Markup]:
@@ -217,7 +231,7 @@ def _each_value(report: Report, place: Place) -> Iterator[Markup]:
 def _waves(report: Report, place: Place) -> Iterator[Markup]:
     shown = figures.waves(report.rhythm, MOST_WAVES)
     for count, wave in enumerate(shown):
-        yield heading(place, wave.text[:1].upper() + wave.text[1:], kind="sub")
+        yield heading(place, prose(wave.text[:1].upper() + wave.text[1:]), kind="sub")
         yield element("p", f"From: {', '.join(wave.causes)}.", class_="quiet")
         drawing = figures.steady(report, wave.orbit, STEADY)
         if drawing is not None:
@@ -230,7 +244,16 @@ def _waves(report: Report, place: Place) -> Iterator[Markup]:
     if not shown and report.rhythm.settling.unsettled is not None:
         yield element("p", "Nothing to measure: the micro-steps never settle.")
     elif not shown:
-        yield element("p", f"Not known: {report.rhythm.open or 'no start state'}.")
+        yield element("p", _without_wave(report.rhythm))
+
+
+def _without_wave(rhythm: Rhythm) -> str:
+    """Why there is no wave to be drawn."""
+    levels = sorted({loop.wave.runs[0][0] for loop in rhythm.loops if loop.stuck})
+    if rhythm.complete and levels:
+        where = "the only loop" if len(rhythm.loops) == 1 else f"each of {len(rhythm.loops)} loops"
+        return f"There is none: on {where} the output stays {' or '.join(map(str, levels))}."
+    return f"Not known: {rhythm.open or 'no start state'}."
 
 
 def _steady_scene(report: Report, orbit: Orbit, drawing: Drawing, key: str) -> Scene:
@@ -258,7 +281,7 @@ def _counterexamples(report: Report, place: Place) -> Iterator[Markup]:
         at = finding.facts.get("at") if finding.witness else None
         where = f", at {values_text(at)}" if isinstance(at, dict) else ""
         yield heading(place, finding.name, where, kind="sub")
-        yield element("p", element("strong", broken.text))
+        yield element("p", element("strong", prose(broken.text)))
         start = broken.orbit.start if isinstance(broken, Counterexample) else id(broken.rests)
         key = (id(finding.witness), start, broken.begins, broken.ends)
         if key in shown:
@@ -427,14 +450,14 @@ def _states(report: Report, place: Place) -> Iterator[Markup]:
     if census is not None and census.recovery:
         total = sum(census.leading)
         yield heading(place, "Recovery", kind="sub")
-        yield element("p", recovery.summary(census.recovery, total))
+        yield element("p", prose(recovery.summary(census.recovery, total)))
         if census.recovery[-1][0] > 0:
             yield element(
                 "figure", recovery.plot(census.recovery, total, report.spec.within, f"{place.key}recovery")
             )
     elif rhythm.recovery is not None:
         yield heading(place, "Recovery", kind="sub")
-        yield element("p", _bound(report))
+        yield element("p", prose(_bound(report)))
 
 
 def _bound(report: Report) -> str:
@@ -455,10 +478,10 @@ def _loops(report: Report) -> Iterator[Markup]:
     count = len(rhythm.loops)
     if rhythm.complete:
         where = "the one loop that there is" if count == 1 else f"one of {count} loops"
-        yield element("p", f"From every power-up state the machine runs into {where}.")
+        yield element("p", f"From every power-up state the machine runs into {where}. {UNIT}")
     else:
         yield element(
-            "p", f"{words.plural(count, 'loop')} of the states that were covered; there may be more."
+            "p", f"{words.plural(count, 'loop')} of the states that were covered; there may be more. {UNIT}"
         )
     head = ["loop", "kind", "period", "high", "states"]
     head += ["power-up states that run into it"] if census else []
@@ -528,7 +551,7 @@ def obligations(due: Sequence[tuple[str, Obligation]]) -> Iterator[Markup]:
 
 
 def _obligation(name: str, due: Obligation) -> list[Markup]:
-    return [element("span", f"{due.text} ({name})"), *_source(due.where)]
+    return [element("span", prose(f"{due.text} ({name})")), *_source(due.where)]
 
 
 def _source(where: Where) -> list[Markup]:

@@ -178,7 +178,7 @@ def _names(drawing: Drawing, frame: _Frame) -> Markup:
     texts = [element("text", drawing.ruler, x=0, y=16, class_="quiet")]
     for row, top in zip(drawing.rows, frame.tops, strict=True):
         inner = [element("title", row.name)] if _short(row.name) != row.name else []
-        texts.append(element("text", *inner, _short(row.name), x=0, y=top + LEVEL + 5))
+        texts.append(element("text", *inner, _short(row.name), x=0, y=top + LEVEL))
     box = f"0 0 {number(frame.names)} {number(frame.height)}"
     return element(
         "svg", texts, class_="names", width=frame.names, height=frame.height, viewBox=box, aria_hidden="true"
@@ -214,6 +214,7 @@ def _ruler(drawing: Drawing, frame: _Frame, places: Places) -> Markup:
     ticks: list[str] = []
     numbered: list[tuple[float, float, Markup]] = []
     wanted: list[tuple[bool, bool, float, int]] = []
+    torn = [(x, x + frame.width(piece)) for x, piece in places if piece.folded]
     for x, piece in places:
         if piece.folded:
             middle, half = x + frame.width(piece) / 2, len(_fold_text(piece, drawing.per)) * CHARACTER / 2 + 4
@@ -232,19 +233,25 @@ def _ruler(drawing: Drawing, frame: _Frame, places: Places) -> Markup:
     for quiet, later, place, label in sorted(wanted):
         if quiet and later and (label - drawing.phase) % every:
             continue
-        half = len(str(label)) * CHARACTER / 2 + 2
-        # The first number of a piece stays within it.
+        shown = digits(label)
+        half = len(shown) * CHARACTER / 2 + 2
+        # The first number of a piece stays within it, and none is crossed by a tear where that can be.
         begins = place - (half if later and place > half else 4)
+        begins = next((max(begins, b) for a, b in torn if a <= begins < b), begins)
+        begins = next((a - 2 * half for a, b in torn if a < begins + 2 * half <= b), begins)
+        crossed = any(begins < b and a < begins + 2 * half for a, b in torn)
+        if crossed and quiet:
+            continue
         if all(begins + 2 * half <= a or b <= begins for a, b, _ in numbered):
             kind = "number" if quiet else "number launch"
-            made = element("text", str(label), x=begins + half, y=15, class_=kind)
+            made = element("text", shown, x=begins + half, y=15, class_=kind)
             numbered.append((begins, begins + 2 * half, made))
     texts = [made for _, _, made in sorted(numbered, key=lambda entry: entry[0])]
     return joined([element("path", d="".join(ticks), class_="tick"), *texts])
 
 
 def _every(drawing: Drawing, frame: _Frame, places: Places) -> int:
-    longest = max(len(str(piece.ends // drawing.per + drawing.origin)) for _, piece in places)
+    longest = max(len(digits(piece.ends // drawing.per + drawing.origin)) for _, piece in places)
     room = frame.column * drawing.per
     steps = (1, 2, 4, 8, 16, 32, 64) if room > 2 * WIDER else (2, 4, 8, 16, 32, 64)
     return next(step for step in steps if step * room >= longest * CHARACTER + 8 or step == 64)
