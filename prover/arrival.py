@@ -81,8 +81,12 @@ class Glitch:
     @property
     def first(self) -> int:
         """The number of the arrival at which the output first changes."""
-        levels = [self.level, *(arrival.level for arrival in self.arrivals)]
-        return next(i for i, (a, b) in enumerate(pairwise(levels)) if a != b)
+        return self._edges()[0]
+
+    @property
+    def back(self) -> int:
+        """The number of the arrival at which it changes for the second time."""
+        return self._edges()[1]
 
     @property
     def between(self) -> Mapping[str, int]:
@@ -92,8 +96,12 @@ class Glitch:
     @property
     def changes(self) -> int:
         """How often the output changes in the half-cycle."""
+        return len(self._edges())
+
+    def _edges(self) -> list[int]:
+        """The numbers of the arrivals at which the output changes."""
         levels = [self.level, *(arrival.level for arrival in self.arrivals)]
-        return sum(a != b for a, b in pairwise(levels))
+        return [i for i, (a, b) in enumerate(pairwise(levels)) if a != b]
 
 
 class Replay:

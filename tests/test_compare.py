@@ -72,6 +72,11 @@ def check_wave(wave: Path, found: Any) -> None:
         shown = dump[name][time]
         if "[" not in found[side]["output"]:
             assert shown == str(level)
+        if side == "old":
+            (marked,) = (n for n in dump.signals if n.endswith(".broken"))
+            assert dump[marked][time] == "1"
+    # An output that is a register has one trace, not two.
+    assert not [n for n in dump.signals if n.endswith("_2")]
 
 
 def test_what_must_be_shown_is_among_the_pairs() -> None:

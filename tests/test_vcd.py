@@ -85,6 +85,39 @@ def test_a_refuted_ratio_shows_its_gap(tmp_path: Path) -> None:
     assert {b - a for a, b in itertools.pairwise(rises)} == {6}
     assert broken.begins in rises
     assert broken.ends in rises
+    # A viewer shows from which rise to which.
+    marked = read_back(tmp_path, text)["by_3.broken"].tv
+    assert marked == [(0, "0"), (broken.begins, "1"), (broken.ends, "0")]
+
+
+def test_what_is_broken_within_what_is_elided_is_marked_where_it_is(tmp_path: Path) -> None:
+    report = checked(tmp_path, SECOND, "50000000")
+    finding = found(report, "high-time")
+    assert finding.counterexample is not None
+    moved = dataclasses.replace(finding.counterexample, begins=1_000_000, ends=1_000_003)
+    text = vcd.render(report, dataclasses.replace(finding, counterexample=moved))
+    assert text is not None
+    assert read_back(tmp_path, text)["second.broken"].tv == [(0, "0"), (1_000_000, "1"), (1_000_003, "0")]
+
+
+def test_a_pulse_is_marked_from_its_first_arrival_to_its_second(tmp_path: Path) -> None:
+    report = checked(tmp_path, STICKS_AT_7, "5", high=4)
+    text = vcd.render(report, found(report, "glitch-free"))
+    assert text is not None
+    dump = read_back(tmp_path, text)
+    tick = dump["sticks_at_7.tick"].tv
+    assert [time for time, _ in dump["sticks_at_7.broken"].tv[1:]] == [time for time, _ in tick[1:3]]
+
+
+def test_a_broken_of_the_design_keeps_its_name(tmp_path: Path) -> None:
+    text = BY_3.replace("late", "broken")
+    report = checked(tmp_path, text, "4")
+    made = vcd.render(report, found(report, "ratio"))
+    assert made is not None
+    names = [t.var.reference for t in tokenize(io.BytesIO(made.encode())) if t.kind is TokenKind.VAR]
+    assert names.count("broken") == 1
+    assert names[-1] == "broken_2"
+    assert "late" not in names
 
 
 def test_registers_stand_in_the_scope_of_their_module(tmp_path: Path) -> None:

@@ -115,10 +115,14 @@ def dump(comparison: Comparison, found: Difference, shown: Apart) -> str:
         *elided([piece for piece in pieces if piece.folded]),
     ]
     variables = [Variable(pair.old.clock, 1, "wire")]
+    # Whether the output is no register under its own name, which would be declared twice.
+    apart: list[bool] = []
     for side, ports, system in zip(SIDES, (pair.old, pair.new), shown.systems, strict=True):
         variables += [Variable(f"{side}.{name}", width, "reg") for name, width in system.variables[:-1]]
-        variables.append(Variable(f"{side}.{ports.output}", 1, "wire"))
-    file = File(f"{pair.old.design.top}_and_{pair.new.design.top}", variables, comment)
+        apart.append(ports.output not in system.names)
+        variables += [Variable(f"{side}.{ports.output}", 1, "wire")] * apart[-1]
+    differs = (found.old_half_cycle, found.old_half_cycle + 1)
+    file = File(f"{pair.old.design.top}_and_{pair.new.design.top}", variables, comment, broken=differs)
     for piece in pieces:
         times = [piece.begins] if piece.folded else range(piece.begins, piece.ends)
         for time in times:
@@ -126,7 +130,8 @@ def dump(comparison: Comparison, found: Difference, shown: Apart) -> str:
                 _values(timeline, time, piece.ends if piece.folded else None) for timeline in both.timelines
             )
             # The clock's level is the last component of each state; it is shown once.
-            file.put(time, [old[-2], *old[:-2], old[-1], *new[:-2], new[-1]])
+            outputs = [values[-1:] * alone for values, alone in zip((old, new), apart, strict=True)]
+            file.put(time, [old[-2], *old[:-2], *outputs[0], *new[:-2], *outputs[1]])
     return file.close(ends)
 
 

@@ -71,7 +71,8 @@ def moves(design: Design, clock: str, name: str, trace: Trace) -> str:
     widths = {r.name: r.width for r in design.registers} | {clock: 1}
     states = [Variable(n, widths[n], "wire" if n == clock else "reg") for n in trace.rests[0].registers]
     seen = [Variable(n, 1, "wire") for n in trace.rests[0].outputs if n not in widths]
-    file = File(design.top, [*inputs, *states, *seen], comment)
+    broken = (2 * trace.begins, 2 * trace.ends)
+    file = File(design.top, [*inputs, *states, *seen], comment, broken=broken)
     for rest in trace.rests:
         named = {**rest.outputs, **rest.inputs, **rest.registers}
         time = 2 * rest.half_cycle + rest.moved
@@ -91,7 +92,7 @@ def _orbit(report: Report, name: str, broken: Counterexample) -> str:
         f"broken from time {broken.begins} to {broken.ends}; loop: {loop}",
         *elided([piece for piece in pieces if piece.folded]),
     ]
-    file = _file(report, comment)
+    file = _file(report, comment, (broken.begins, broken.ends))
     count = len(report.rhythm.system.variables) + _output_apart(report)
     for piece in pieces:
         if piece.folded:
@@ -201,7 +202,8 @@ def _arrivals(report: Report, name: str, glitch: Glitch) -> str:
         for n in glitch.arrivals[0].seen
         if n != report.ports.output
     ]
-    file = File(design.top, [*seen, Variable(report.ports.output, 1, "wire")], comment)
+    output = Variable(report.ports.output, 1, "wire")
+    file = File(design.top, [*seen, output], comment, broken=(glitch.first + 1, glitch.back + 1))
     file.put(0, [*(glitch.state.get(v.name) for v in seen), glitch.level])
     for time, arrival in enumerate(glitch.arrivals, 1):
         file.put(time, [*(arrival.seen[v.name] for v in seen), arrival.level])
@@ -216,7 +218,7 @@ def _output_apart(report: Report) -> bool:
     return report.ports.output not in report.rhythm.system.names
 
 
-def _file(report: Report, comment: Sequence[str]) -> File:
+def _file(report: Report, comment: Sequence[str], broken: tuple[int, int] | None = None) -> File:
     """A dump of the registers, the clock, the output where it stands apart, and every input that is held."""
     system, ports = report.rhythm.system, report.ports
     kinds = ["reg"] * (len(system.variables) - 1) + ["wire"]
@@ -224,7 +226,7 @@ def _file(report: Report, comment: Sequence[str]) -> File:
     if _output_apart(report):
         moving.append(Variable(ports.output, 1, "wire"))
     held = [(Variable(n, ports.design.inputs[n], "wire"), value) for n, value in ports.running.values]
-    return File(ports.design.top, moving, comment, held)
+    return File(ports.design.top, moving, comment, held, broken)
 
 
 @dataclass(frozen=True, slots=True)
@@ -237,7 +239,10 @@ class Variable:
 
 
 class File:
-    """A dump being written: variables that `put` gives values, and others that are held at one."""
+    """A dump being written: variables that `put` gives values, and others that are held at one.
+
+    `broken` is from when to when (exclusive) the claim is, in time units: a wire of that name is 1 there, since few
+    viewers show comments."""
 
     def __init__(
         self,
@@ -245,6 +250,7 @@ class File:
         moving: Sequence[Variable],
         comment: Sequence[str],
         held: Sequence[tuple[Variable, int]] = (),
+        broken: tuple[int, int] | None = None,
     ) -> None:
         from vcd import VCDWriter
 
@@ -261,6 +267,11 @@ class File:
         self._variables = [self._declare(variable) for variable in moving]
         for variable, value in held:
             self._declare(variable, value)
+        self._marks: list[tuple[int, int]] = []
+        if broken is not None:
+            # Last, so that a name of the design's stays as it is.
+            self._broken = self._declare(Variable("broken", 1, "wire"), 0)
+            self._marks = [(broken[0], 1), (max(broken[1], broken[0] + 1), 0)]
 
     def _declare(self, variable: Variable, value: int | None = None) -> Any:
         *scopes, last = [_word(part + index) for part, index in components(variable.name)]
@@ -275,10 +286,17 @@ class File:
 
     def put(self, time: int, values: Sequence[int | None]) -> None:
         """The values of the variables from a time on; None is x."""
+        self._mark(time)
         for variable, value in zip(self._variables, values, strict=True):
             self._writer.change(variable, time, "x" if value is None else value)
 
+    def _mark(self, time: int) -> None:
+        """Where the claim begins and ceases to be broken, up to a time."""
+        while self._marks and self._marks[0][0] <= time:
+            self._writer.change(self._broken, *self._marks.pop(0))
+
     def close(self, time: int) -> str:
+        self._mark(time)
         self._writer.close(time)
         return self._text.getvalue()
 
