@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from properties.glitch_free import facts_of
 from prover.findings import Fact, Finding
 from prover.spec import Spec
 
@@ -23,6 +24,7 @@ def judge(found: Moves, spec: Spec) -> Finding:
     )
     facts: dict[str, Fact] = {"inputs": list(found.question.moving)}
     if found.trace is not None:
+        facts |= facts_of(found.glitch) if found.glitch is not None else {}
         return Finding(NAME, "refuted", claim, found.trace.text, found.method, facts=facts, trace=found.trace)
     if not found.proved or found.back is None:
         return Finding(NAME, "open", claim, found.open, found.method, facts=facts)
@@ -30,4 +32,10 @@ def judge(found: Moves, spec: Spec) -> Finding:
     word = "exactly" if found.exact else "at most"
     back = f"the new ratio holds {word} {found.back} half-cycles after the last move"
     says = f"no pulse is too short or too long; {back}"
-    return Finding(NAME, "proved", claim, says, found.method, f"{found.back} half-cycles", facts)
+    if not found.question.steady:
+        says += "; what happens within a half-cycle aside, of which settling and glitch-free tell"
+    if found.owed:
+        says += f"; under {len(found.owed)} timing obligation{'s' * (len(found.owed) != 1)}"
+    return Finding(
+        NAME, "proved", claim, says, found.method, f"{found.back} half-cycles", facts, obligations=found.owed
+    )

@@ -352,3 +352,38 @@ def bit_name(design: Design, name: str, bit: int) -> str:
     signal = design.signals.get(name)
     msb, lsb = (signal.msb, signal.lsb) if signal else (register.width - 1, 0)
     return element(name, lsb + bit if msb >= lsb else lsb - bit)
+
+
+# -- in words -----------------------------------------------------------------------------------------------
+
+SAID = {
+    "function": "no gates can cure that, for it is what they compute",
+    "gates": "the gates as they are written do that, what they compute does not",
+}
+
+MOST_TOLD = 6
+"""Bits or values that are told in a sentence; the rest is counted."""
+
+
+def told(glitch: Glitch) -> str:
+    """What happens, in words that go on from `the output`."""
+    arrival = glitch.arrivals[glitch.first]
+    before = {name: value for name, value in glitch.state.items() if name in arrival.seen}
+    moved = [f"{a.name} {a.old}→{a.new}" for a in glitch.arrivals[: glitch.first + 1]]
+    ends = glitch.arrivals[-1].level
+    kept = f"stay {ends}" if ends == glitch.level else f"go from {glitch.level} to {ends} once"
+    between = {name: value for name, value in arrival.seen.items() if before.get(name) != value}
+    return (
+        f"pulses to {arrival.level} at the {glitch.edge} edge from {_values(before)}, where it should {kept}: once "
+        f"{_listed(moved)} {'has' if len(moved) == 1 else 'have'} arrived before the rest, {_values(between)}; "
+        f"{SAID[glitch.kind]}"
+    )
+
+
+def _values(values: Mapping[str, int]) -> str:
+    return _listed([f"{name}={value}" for name, value in values.items()])
+
+
+def _listed(parts: list[str]) -> str:
+    more = f" and {len(parts) - MOST_TOLD} more" if len(parts) > MOST_TOLD else ""
+    return ", ".join(parts[:MOST_TOLD]) + more

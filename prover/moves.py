@@ -3,7 +3,7 @@
 Two questions are asked. While the ratio changes (its inputs move): is no pulse shorter or longer than the nominal
 ones of the values so far, and when does the last of them hold? While an enable moves: is no pulse shorter than
 nominal, where does the output park, and when is the ratio back? The engines of `monitor` answer; what they say is
-used after `observer` has checked it."""
+used after `observer` has checked it. What they say is about rests; `within` looks at the ways between these."""
 
 from __future__ import annotations
 
@@ -18,6 +18,7 @@ from prover import watch as watched
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
 from prover.expr import Expr
+from prover.findings import Obligation
 from prover.moving import AFTER, Begin, Machine, machine_of
 from prover.observer import Breach, Limits, Nominal
 from prover.ports import Ports, with_holds
@@ -29,9 +30,12 @@ from prover.system import Inputs
 from prover.trace import Rest, Trace
 from prover.unrolled import Broken
 from prover.watch import Line, Seed, Watch, watch
+from prover.within import Found, Ways
 
 if TYPE_CHECKING:
     import numpy as np
+
+    from prover.arrival import Glitch
 
 
 @dataclass(frozen=True, slots=True)
@@ -42,6 +46,7 @@ class Question:
     scope    where runs begin
     seeds    places on orbits with the inputs held, near changes of the output
     active   the value of an enable at which the divider runs
+    steady   nothing pulses within a half-cycle while the inputs are held; else that is not looked at again here
     recovers half-cycles within which the output is right from every state, at every value at which the divider runs,
              where that is proved of the divider with nothing moving
     """
@@ -55,6 +60,7 @@ class Question:
     recovers: int | None = None
     seeds: tuple[Seed, ...] = ()
     active: int | None = None
+    steady: bool = True
 
 
 COUNTED = 60
@@ -67,6 +73,8 @@ class Moves:
 
     proved   no run breaks the claim
     trace    a run that does
+    glitch   where it does so within a half-cycle, by a pulse of the output, an order of arrival that shows it
+    owed     timing obligations under which it is proved
     back     half-cycles after the last move within which the output is right for good, None where not known
     exact    some state really needs that long
     parked   levels at which the output stays while the divider is not enabled
@@ -78,6 +86,8 @@ class Moves:
     question: Question
     proved: bool
     trace: Trace | None = None
+    glitch: Glitch | None = None
+    owed: tuple[Obligation, ...] = ()
     back: int | None = None
     exact: bool = False
     parked: tuple[int, ...] = ()
@@ -165,10 +175,35 @@ def _searched(ports: Ports, machine: Machine, question: Question, effort: Effort
             raise InternalError(f"a table of dangers fails its check: {'; '.join(faults)}")
     claimed = _Claimed.of(machine, question.nominal)
     held = monitor.held(table, found.reached, claimed.high + claimed.low, claimed.high, effort)
-    return _settled(ports, machine, question, found, held, claimed)
+    answered = _settled(ports, machine, question, found, held, claimed)
+    if not (answered.proved and question.steady):
+        return answered
+    ways = Ways(ports, machine, question.nominal, effort)
+    pulse = ways.first(found)
+    if pulse is None:
+        return _under(answered, ways.reached(found))
+    moves = [dict(observer.named(machine.moving, value)) for value in (*pulse.values, pulse.values[-1])]
+    rests, cause = _replayed(ports, machine, pulse.start, moves)
+    return _pulsed(question, ways, rests, cause, SHORTEST)
 
 
-SHORTEST = "breadth-first search of all runs: none that is shorter breaks the claim; replayed on the machine"
+def _under(found: Moves, way: Found) -> Moves:
+    """The answer about rests with what happens between them."""
+    why = way.open or (f"{way.text}; whether a run gets there is not known" if way.text else "")
+    return replace(found, proved=False, open=why) if why else replace(found, owed=way.owed)
+
+
+def _pulsed(question: Question, ways: Ways, rests: tuple[Rest, ...], cause: str, method: str) -> Moves:
+    """The answer that on the last edge of a run something pulses."""
+    before, last = rests[-2:]
+    found = ways.at({**before.inputs, **before.registers})
+    if not found.text:
+        return Moves(question, False, open="a pulse within a half-cycle that hangs on what x stands for")
+    shown = Trace(rests, last.half_cycle, last.half_cycle + 1, found.text, cause, on_the_way=True)
+    return Moves(question, False, trace=shown, glitch=found.glitch, method=method)
+
+
+SHORTEST = "breadth-first search of all runs: no shorter one shows the like; replayed on the machine"
 
 
 def _settled(
@@ -266,9 +301,31 @@ def _watched(ports: Ports, machine: Machine, question: Question, effort: Effort)
     if found is None:
         why = f"no invariants were found that show it; no run of up to {looked.covered} half-cycles breaks it"
         return Moves(question, False, open=why)
-    if question.varies:
-        return _back(machine, question, len(found[1]), effort)
-    return _idle(ports, question, _back(machine, question, len(found[1]), effort), effort)
+    pulse = _pulsing(ports, machine, question, found, effort) if question.steady else Moves(question, True)
+    if not pulse.proved:
+        return pulse
+    back = _back(machine, question, len(found[1]), effort)
+    return replace(back if question.varies else _idle(ports, question, back, effort), owed=pulse.owed)
+
+
+def _pulsing(
+    ports: Ports,
+    machine: Machine,
+    question: Question,
+    found: tuple[Watch, tuple[Line, ...]],
+    effort: Effort,
+) -> Moves:
+    """What happens within a half-cycle, where lines are known that hold of all runs."""
+    ways = Ways(ports, machine, question.nominal, effort.share(effort.left / 2))
+    way = ways.under(*found)
+    if way.text:
+        system = ways.pulsing(found[0], way)
+        for seeds, method in ((None, UNROLLED), (question.seeds, FROM_ORBIT)):
+            looked = unrolled.shortest(system, effort.share(effort.left / 3), seeds=seeds)
+            if looked.broken is not None:
+                rests, cause = _run(ports, machine, looked.broken)
+                return _pulsed(question, ways, rests, cause, method)
+    return _under(Moves(question, True), way)
 
 
 def _idle(ports: Ports, question: Question, found: Moves, effort: Effort) -> Moves:
@@ -322,13 +379,11 @@ MOST_COMPARED = 4
 """Comparisons of the machine's own by which states are told apart where less does not do."""
 
 
-FROM_ORBIT = (
-    "unrolled from places on the orbit: none of them has a shorter run that breaks the claim; replayed"
-)
+FROM_ORBIT = "unrolled from places on the orbit: none of them has a shorter run that shows the like; replayed"
 
 BY_CHANCE = "random runs; replayed on the machine"
 
-UNROLLED = "unrolled half-cycle by half-cycle: none that is shorter breaks the claim; replayed on the machine"
+UNROLLED = "unrolled half-cycle by half-cycle: no shorter run shows the like; replayed on the machine"
 
 MOST_DEPTH = 200
 """Half-cycles that are unrolled where it is known that some run breaks the claim."""
@@ -396,6 +451,15 @@ def _beginning(machine: Machine, begin: int | Seed) -> Begin:
     return Begin(
         {name: e.const(begin.registers[name], width) for name, width in widths.items()}, (), begin.cause
     )
+
+
+def _run(ports: Ports, machine: Machine, broken: Broken) -> tuple[tuple[Rest, ...], str]:
+    """The run that was found by unrolling or by chance, up to the edge of its last half-cycle, and how it begins."""
+    begin = _beginning(machine, broken.begin)
+    names = [name for name, _ in machine.moving]
+    moves = [broken.moves[0], *({name: move[name + AFTER] for name in names} for move in broken.moves[1:])]
+    rests = replayed(ports, machine, begin, broken.given, moves)
+    return (rests[:-1] if rests[-1].moved else rests), begin.cause
 
 
 def _broken(ports: Ports, machine: Machine, question: Question, broken: Broken) -> Trace:

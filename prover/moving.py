@@ -59,6 +59,7 @@ class Machine:
     output      one bit over the variables and the moving inputs
     begins      where runs begin
     depth       micro-steps within which every edge, every move and every release settles
+    reactions   micro-steps within which every edge does
     """
 
     design: Design
@@ -72,6 +73,7 @@ class Machine:
     output: Expr
     begins: tuple[Begin, ...]
     depth: int
+    reactions: int
 
     @cached_property
     def names(self) -> list[str]:
@@ -145,7 +147,8 @@ def machine_of(
         frozen, before, moved, settled_when(frozen.registers, before), asked, "a move of an input"
     )
     begins, depth = _begins(ports, frozen, inputs, set(fixed), scope, asked)
-    system = build(frozen, clock, inputs, ports.output_value, max(len(at_edge) - 1, 1))
+    reactions = max(len(at_edge) - 1, 1)
+    system = build(frozen, clock, inputs, ports.output_value, reactions)
     needed = _needed(system, at_move[-1]) | set(fixed)
     variables = tuple((name, width) for name, width in system.variables if name in needed)
     return Machine(
@@ -160,6 +163,7 @@ def machine_of(
         output=system.output,
         begins=begins,
         depth=max(len(at_edge), len(at_move), depth),
+        reactions=reactions,
     )
 
 

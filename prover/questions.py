@@ -64,7 +64,8 @@ def _assumptions(names: Sequence[str]) -> list[str]:
     one = "moves" if len(names) == 1 else "move"
     return [
         f"in ratio-change and enable {told} {one} at most once between two edges of the clock, all bits at once, and "
-        "all settles before the next edge, in the order of the micro-steps; everywhere else they are held"
+        "all settles before the next edge, in the order of the micro-steps, with no pulse that the move makes on the "
+        "way; everywhere else they are held"
     ]
 
 
@@ -165,14 +166,18 @@ def _questions(
     claimed = nominal_of(design, spec, inputs, effort)
     held = {**dict(ports.running.values), **active}
     scope, recovers = found.rhythm.scope, _recovers(found)
+    # What pulses with nothing moving is told there, and may be waived there.
+    steady = all(f.verdict == "proved" for f in found.findings if f.name in ("settling", "glitch-free"))
     asked = []
     if varying:
-        asked.append(Question(tuple(varying), (), held, claimed, True, scope, recovers))
+        asked.append(Question(tuple(varying), (), held, claimed, True, scope, recovers, steady=steady))
     for name in enables:
         others = {other: value for other, value in held.items() if other != name}
         seeds = _seeds(ports, found, {name: active[name]})
         asked.append(
-            Question((name,), tuple(inputs), others, claimed, False, scope, recovers, seeds, active[name])
+            Question(
+                (name,), tuple(inputs), others, claimed, False, scope, recovers, seeds, active[name], steady
+            )
         )
     return asked
 

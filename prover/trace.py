@@ -43,6 +43,7 @@ class Trace:
     begins, ends  half-cycles between which the claim is broken (ends exclusive)
     text          what is seen there
     cause         how the start comes about
+    on_the_way    it is broken within the last half-cycle, between the rests before and after its edge
     """
 
     rests: tuple[Rest, ...]
@@ -50,6 +51,7 @@ class Trace:
     ends: int
     text: str
     cause: str
+    on_the_way: bool = False
 
     @property
     def half_cycles(self) -> int:

@@ -31,6 +31,8 @@ def scene(report: Report, finding: Finding, dut: Dut) -> Scene:
     """The run that refutes. Raises NoBench where it shows what goes on for ever."""
     trace = finding.trace
     assert trace is not None
+    if trace.on_the_way:
+        raise NoBench("what its run shows lies within a half-cycle, where a simulator knows no delays")
     if trace.text.startswith("the output"):
         raise NoBench("what its run shows goes on for ever")
     first, varies = trace.rests[0], finding.name == "ratio-change"

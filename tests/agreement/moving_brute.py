@@ -7,9 +7,10 @@ those of the next.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from itertools import product
+from functools import cached_property
+from itertools import pairwise, product
 
 from agreement import brute
 
@@ -42,6 +43,14 @@ class Circuit:
         self.look = e.compile_step([*wanted, design.signals[output].value], self.names)
         self.values = range(1 << design.inputs[moving])
         self.known: dict[tuple[State, State], State] = {}
+        # Registers that the output is made of, now or later.
+        self.matters = {v.name for v in e.variables([design.signals[output].value])}
+        for _ in design.registers:
+            for register in design.registers:
+                if register.name in self.matters:
+                    of = [x for edge in register.edges for x in (edge.clock, edge.data)]
+                    of += [x for force in register.forces for x in (force.when, force.value)]
+                    self.matters |= {v.name for v in e.variables(of)}
 
     def at(self, state: State, value: int, reset: int = 0) -> State:
         """All that there is: registers, clock and inputs."""
@@ -49,6 +58,18 @@ class Circuit:
 
     def out(self, state: State, value: int) -> int:
         return self.look(*self.at(state, value))[-1]
+
+    @cached_property
+    def gated(self) -> list[int]:
+        """Where `look` has the clocks that several bits make."""
+        out, at = [], 0
+        for register in self.registers:
+            for edge in register.edges:
+                if register.name in self.matters and len(e.variables([edge.clock])) > 1:
+                    out.append(at)
+                at += 2
+            at += 2 * len(register.forces)
+        return out
 
     def edge(self, state: State, value: int, reset: int = 0) -> State:
         """After an edge of the clock."""
@@ -62,15 +83,51 @@ class Circuit:
     def settle(self, before: State, now: State) -> State:
         first = (before, now)
         if first not in self.known:
-            for _ in range(40):
-                after = self.micro(before, now)
-                if after == now:
-                    break
-                before, now = now, after
-            else:
-                raise AssertionError("a machine that does not settle")
-            self.known[first] = now
+            self.known[first] = self.chain(before, now)[-1]
         return self.known[first]
+
+    def chain(self, before: State, now: State) -> list[State]:
+        """The moments from before a change to where all has settled."""
+        out = [before, now]
+        for _ in range(40):
+            after = self.micro(*out[-2:])
+            if after == out[-1]:
+                return out
+            out.append(after)
+        raise AssertionError("a machine that does not settle")
+
+    def pulses(self, state: State, value: int) -> bool:
+        """Whether on an edge the output changes more often than the rests show, or a set or clear that is inactive
+        in two moments is active between them, for some order of the bits that change in a micro-step; or a gated
+        clock, low before and after, is high on the way."""
+        turned = (*state[:-1], 1 - state[-1])
+        chain = self.chain(self.at(state, value), self.at(turned, value))
+        levels = [self.look(*moment)[-1] for moment in chain]
+        if sum(a != b for a, b in pairwise(levels)) > 1:
+            return True
+        for clock in self.gated:
+            first, *between, last = (self.look(*moment)[clock] for moment in chain)
+            if any(between) and not first and not last:
+                return True
+        for number, (then, now) in enumerate(pairwise(chain)):
+            seen = [self.look(*mixed) for mixed in mixes(then, now)]
+            if most_changes([each[-1] for each in seen]) > (seen[0][-1] != seen[-1][-1]):
+                return True
+            for place, when, wanted in self.forces():
+                passes = any(each[when] for each in seen) and not seen[0][when] and not seen[-1][when]
+                if passes and any(self.look(*moment)[wanted] != moment[place] for moment in chain[number:]):
+                    return True
+        return False
+
+    def forces(self) -> Iterator[tuple[int, int, int]]:
+        """Each force: its register's place, and where `look` has its condition and its value."""
+        at = 0
+        for place, register in enumerate(self.registers):
+            at += 2 * len(register.edges)
+            for _ in register.forces:
+                if register.name in self.matters:
+                    yield place, at, at + 1
+                at += 2
 
     def micro(self, before: State, now: State) -> State:
         """Edges that a register sees take effect where nothing forces it, before or now; forces win, the first most."""
@@ -121,16 +178,37 @@ class Circuit:
         return step, {state: self.out(state, value) for state in step}
 
 
+def mixes(then: State, now: State) -> list[State]:
+    """What there is when some of the bits that change have done so: a place for each set of them."""
+    changed = [(i, 1 << b) for i in range(len(then)) for b in range(8) if (then[i] ^ now[i]) >> b & 1]
+    out = [then]
+    for i, bit in changed:
+        out += [(*each[:i], each[i] ^ bit, *each[i + 1 :]) for each in out]
+    return out
+
+
+def most_changes(levels: Sequence[int]) -> int:
+    """How often a level changes at most while one bit after the other does so, in any order."""
+    most = [0] * len(levels)
+    for chosen in range(1, len(levels)):
+        before = [chosen ^ 1 << bit for bit in range(chosen.bit_length()) if chosen >> bit & 1]
+        most[chosen] = max(most[each] + (levels[each] != levels[chosen]) for each in before)
+    return most[-1]
+
+
 @dataclass(frozen=True)
 class Found:
     """What enumeration comes to.
 
-    broken  half-cycles of the shortest run that breaks the claim on pulses, and whether a move ends it
-    reached states reached, by the inputs' value, where none does
+    broken  half-cycles of the shortest run that breaks the claim on pulses, and whether a move ends it; if none does
+            at rest, of the shortest to a pulse within a half-cycle
+    reached states reached, by the inputs' value, where none does at rest
+    within  whether the claim is broken by a pulse within the last half-cycle
     """
 
     broken: tuple[int, bool] | None
     reached: dict[int, set[State]]
+    within: bool = False
 
 
 def enumerate_runs(circuit: Circuit, nominal: Nominal, long_too: bool) -> Found:
@@ -144,7 +222,7 @@ def enumerate_runs(circuit: Circuit, nominal: Nominal, long_too: bool) -> Found:
     for value in nominal:
         here |= {(state, value, frozenset([value]), None) for state in circuit.starts(value)}
     seen: set[Node] = set()
-    half_cycle = 0
+    half_cycle, pulsed = 0, None
     while here:
         moved: set[Node] = set()
         for (state, value, values, pulse), to in product(here, nominal):
@@ -160,8 +238,9 @@ def enumerate_runs(circuit: Circuit, nominal: Nominal, long_too: bool) -> Found:
         moved -= seen
         seen |= moved
         half_cycle += 1
-        here = set()
+        here, pulses = set(), False
         for state, value, values, pulse in moved:
+            pulses = pulses or circuit.pulses(state, value)
             then = circuit.edge(state, value)
             level, now = circuit.out(state, value), circuit.out(then, value)
             lasted = None if pulse is None else min(pulse[0] + 1, most)
@@ -176,10 +255,12 @@ def enumerate_runs(circuit: Circuit, nominal: Nominal, long_too: bool) -> Found:
                 if long_too and lasted + 1 > max(nominal[v][level] for v in values):
                     return Found((half_cycle + 1, False), {})
                 here.add((then, value, values, (lasted, pulse[1])))
+        if pulses and pulsed is None:
+            pulsed = (half_cycle + 1, False)
     reached: dict[int, set[State]] = {value: set() for value in nominal}
     for state, value, _, _ in seen:
         reached[value].add(state)
-    return Found(None, reached)
+    return Found(pulsed, reached, within=pulsed is not None)
 
 
 def longest_way_back(circuit: Circuit, states: set[State], value: int, low: int, high: int) -> int | None:
