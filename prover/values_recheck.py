@@ -13,6 +13,7 @@ from prover.effort import Effort
 from prover.errors import UserError
 from prover.evidence import Malformed, each_of, list_of, number_of, text_of
 from prover.rebuild import Rejected
+from prover.release import NotShown
 from prover.report import values_certificate as written
 from prover.report.certificate import Subject, options, render
 from prover.spec import PLAIN_RATIO, Ranges, Spec
@@ -33,7 +34,7 @@ def derive(stated: dict[str, Any], text: str, bases: Sequence[Path], effort: Eff
             raise Rejected(f"no such input: {missing[0]}")
         found = read(stated["evidence"], {name: design.inputs[name] for name in subject.spec.each})
         made = made_of(design, subject.spec, found, effort)
-    except (Malformed, Rejected) as fault:
+    except (Malformed, Rejected, NotShown) as fault:
         raise Rejected(f"the evidence doesn't bear it: {fault}") from None
     except UserError as fault:
         raise Rejected(f"the options don't fit the sources: {fault.message}") from None

@@ -121,6 +121,17 @@ def test_any_alteration_of_a_certificate_on_values_is_rejected(name: str) -> Non
         assert str(told.value), other
 
 
+def test_a_course_with_another_level_is_rejected() -> None:
+    # The release of reset would be refuted by it, with a trace that the divider does not run through.
+    document = json.loads(made("listed")[1])
+    for half_cycle in document["evidence"]["singly"][0]["paths"][0]:
+        if isinstance(half_cycle, dict) and "level" in half_cycle:
+            half_cycle["level"] ^= 1
+            with pytest.raises(Rejected):
+                derive(render(document), [Path()], Effort(60))
+            half_cycle["level"] ^= 1
+
+
 def test_evidence_comes_out_of_a_certificate_as_it_went_in() -> None:
     for name in SUBJECTS:
         written = json.loads(made(name)[1])["evidence"]
