@@ -226,7 +226,10 @@ def _of_states(joint: Joint, lag: int, found: set[State] | lockstep.Divergence, 
 
 def _different(joint: Joint, lag: int, found: lockstep.Divergence) -> Outcome:
     """A difference, with inputs left where they are wherever that shows it too."""
-    run = Run(joint.starts.index(found.start), found.values, found.moves, found.half_cycle)
+    known = {v.name for v in e.variables(found.start.rest)}
+    values = {name: value for name, value in found.values.items() if name in known}
+    moves = found.moves if joint.moves else ()
+    run = Run(joint.starts.index(found.start), values, moves, found.half_cycle)
     return compared.of_both(Together(joint, _calmed(joint, run)), lag)
 
 

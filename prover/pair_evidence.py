@@ -38,6 +38,9 @@ DEEPEST = 16
 WIDEST = 1 << 16
 """Bits of a word in a relation."""
 
+LONGEST_RUN = 1 << 22
+"""Half-cycles of a run that is written."""
+
 Object = dict[str, Any]
 
 
@@ -161,7 +164,7 @@ def read(value: Any) -> PairEvidence:
     if kind == "settled":
         of = fields_of(value, "evidence", "kind values")
         return Settled(each_of(of["values"], "values", _read_settled))
-    if kind not in READERS:
+    if not isinstance(kind, str) or kind not in READERS:
         raise Malformed("evidence: of no known kind")
     names, reader = READERS[kind]
     of = fields_of(value, "evidence", f"kind lag answers {names}")
@@ -203,6 +206,8 @@ def _read_relations(of: Any) -> Invariant:
     for i, x in enumerate(list_of(of["nodes"], "nodes")):
         nodes.append(_node(x, f"nodes/{i}", nodes))
     places = each_of(of["parts"], "parts", lambda x, where: number_of(x, where, 0, len(nodes) - 1))
+    if len(set(places)) != len(places):
+        raise Malformed("parts: one of them twice")
     return Invariant(tuple(nodes[i] for i in places), number_of(of["depth"], "depth", 1, DEEPEST))
 
 
@@ -240,7 +245,7 @@ def _read_run(of: Any) -> Run:
         number_of(of["start"], "start", 0),
         _model(of["values"], "values"),
         each_of(of["moves"], "moves", state_of),
-        number_of(of["half_cycle"], "half_cycle", 0),
+        number_of(of["half_cycle"], "half_cycle", 0, LONGEST_RUN),
     )
 
 

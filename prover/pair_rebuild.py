@@ -173,7 +173,7 @@ def _both(pair: Pair, pairing: Pairing, found: Both, owed: Owed, effort: Effort)
         if pairing.lag is None:
             raise Rejected("a run, which shows nothing of other lags")
     else:
-        if not isinstance(shown, Invariant) and any(len(state) != len(joint.variables) for state in shown):
+        if not isinstance(shown, Invariant) and not all(_fits(joint, state) for state in shown):
             raise Rejected("states of something else")
         claim = shown if isinstance(shown, Invariant) else Invariant((equality.in_set(joint, shown),), 1)
         known = set(joint.variables)
@@ -182,7 +182,18 @@ def _both(pair: Pair, pairing: Pairing, found: Both, owed: Owed, effort: Effort)
                 raise Rejected("relations between something else than the two dividers")
         owed.add(equality.obligations(joint, claim))
     outcome = compared.of_both(Together(joint, shown), found.lag)
+    difference = outcome.difference
+    if isinstance(shown, Run) and difference is not None:
+        moved = difference.half_cycle + (not difference.at_edge) if joint.moves else 0
+        if len(shown.moves) != moved:
+            raise Rejected("run: not as many moves as there are before its end")
     return Rebuilt(outcome, owed.listed(), joint)
+
+
+def _fits(joint: Joint, state: State) -> bool:
+    """Whether the values are such as the variables can have."""
+    widths = [width for _, width in joint.variables]
+    return len(state) == len(widths) and not any(x >> w for x, w in zip(state, widths, strict=True))
 
 
 def _check_run(joint: Joint, run: Run) -> None:
@@ -195,5 +206,5 @@ def _check_run(joint: Joint, run: Run) -> None:
         raise Rejected("run: not of these two dividers")
     known = {v.name: v.width for v in e.variables(joint.starts[run.start].rest)}
     for name, value in run.values.items():
-        if name in known and value >> known[name]:
+        if name not in known or value >> known[name]:
             raise Rejected(f"run: {name} has no value {value}")

@@ -219,7 +219,7 @@ def _object(text: str) -> dict[str, Any]:
         stated = json.loads(text)
     except (ValueError, RecursionError) as fault:
         raise Rejected(f"no JSON: {fault}") from None
-    if not isinstance(stated, dict) or stated.get("schema") not in KEYS:
+    if not isinstance(stated, dict) or stated.get("schema") not in list(KEYS):
         raise Rejected(f"schema: not {' or '.join(KEYS)}")
     for key in KEYS[stated["schema"]]:
         if key not in stated:

@@ -6,6 +6,7 @@ import json
 import random
 import subprocess
 import sys
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -150,6 +151,56 @@ def test_alterations_are_rejected() -> None:
         with pytest.raises(Rejected) as told:
             derive(render(other), [Path()], Effort(60))
         assert str(told.value), other
+
+
+def altered_at(name: str, *places: str | int) -> tuple[Any, Any, Any]:
+    """A subject's certificate; in it what holds the value at a place; and the place there."""
+    document = holder = json.loads(made(name)[1])
+    for place in places[:-1]:
+        holder = holder[place]
+    return document, holder, places[-1]
+
+
+@pytest.mark.parametrize(
+    ("name", "place", "change"),
+    [
+        # A value that a variable of one bit can't have, though its lowest bit is right.
+        ("states", ("evidence", "states", -1, -1), lambda x: x + 2),
+        ("relations", ("evidence", "parts"), lambda parts: [*parts, parts[0]]),
+        ("relations", ("evidence", "kind"), lambda _: ["relations"]),
+        ("run", ("schema",), lambda _: []),
+        ("run", ("evidence", "half_cycle"), lambda _: 10**30),
+        # What plays no part, and moves after the end.
+        ("run", ("evidence", "values"), lambda values: {**values, "some": 0}),
+        ("run", ("evidence", "moves"), lambda moves: [*moves, moves[0]]),
+        ("run", ("evidence", "moves"), lambda moves: moves[:-1]),
+    ],
+)
+def test_what_stands_for_the_same_is_rejected_too(
+    name: str, place: tuple[str | int, ...], change: Callable[[Any], Any]
+) -> None:
+    document, holder, last = altered_at(name, *place)
+    derive(render(document), [Path()], Effort(60))
+    holder[last] = change(holder[last])
+    with pytest.raises(Rejected):
+        derive(render(document), [Path()], Effort(60))
+
+
+def test_a_certificate_is_of_the_run_that_it_names() -> None:
+    # Whatever the divisor moves to, as long as it is not 0, shows the difference in half-cycle 1.
+    paths = (["cases/pairs/sample_up.v"], ["cases/pairs/sample_live.v"])
+    text = certify(compare(*paths, Pairing(moving=("divisor",))), *paths, Effort(60))
+    document = json.loads(text or "")
+    moves = document["evidence"]["moves"]
+    shown = set()
+    for value in range(8):
+        document["evidence"]["moves"] = [[value], *moves[1:]]
+        try:
+            derive(render(document), [Path()], Effort(60))
+            shown.add(value)
+        except Rejected:
+            pass
+    assert shown == {moves[0][0]}
 
 
 @pytest.mark.parametrize("name", ["runs", "lag", "relations", "states", "run", "settled"])

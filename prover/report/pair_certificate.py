@@ -15,7 +15,7 @@ from pathlib import Path
 
 from prover import expr as e
 from prover import pair_evidence
-from prover.compared import Comparison, claim
+from prover.compared import Apart, Comparison, claim
 from prover.effort import Effort
 from prover.errors import InternalError
 from prover.joint import Joint
@@ -26,6 +26,7 @@ from prover.ports import Ports
 from prover.rebuild import Rejected
 from prover.report.certificate import Object, Subject, digest, options, relative, render
 from prover.spec import Spec
+from prover.trace import Trace
 
 SCHEMA = "subharmonic/comparison-certificate-1"
 
@@ -97,6 +98,7 @@ def document(subjects: Subjects, pair: Pair, found: PairEvidence, made: Rebuilt)
         "lag_half_cycles": outcome.lag,
         "settled_half_cycles": outcome.facts.get("settled_half_cycles"),
         "differs": None if difference is None else [difference.old_half_cycle, difference.new_half_cycle],
+        "trace_sha256": _trace(difference.shown) if difference is not None else None,
         "asked": asked(subjects.pairing),
         "sides": sides(subjects),
         "sha256": bound_to(subjects),
@@ -105,6 +107,14 @@ def document(subjects: Subjects, pair: Pair, found: PairEvidence, made: Rebuilt)
         "evidence": pair_evidence.as_object(found),
         "obligations": [{"name": each.name, "script": each.script()} for each in made.obligations],
     }
+
+
+def _trace(shown: Apart | Trace) -> str | None:
+    """The SHA-256 of a run of both side by side, in hexadecimal: every input and register at every rest."""
+    if not isinstance(shown, Trace):
+        return None
+    rests = [[r.half_cycle, r.moved, dict(r.inputs), dict(r.registers)] for r in shown.rests]
+    return hashlib.sha256(dumps(rests).encode()).hexdigest()
 
 
 def asked(pairing: Pairing) -> Object:
