@@ -39,6 +39,7 @@ from prover.spec import (
 if TYPE_CHECKING:
     from prover.compared import Comparison
     from prover.findings import Report
+    from prover.gate import Ledger, Manifest
     from prover.gate.runner import Run
     from prover.pair import Pairing
     from prover.pool import Crew
@@ -203,8 +204,8 @@ READING: tuple[Decorator, ...] = (
     ),
 )
 CLAIMING = (
-    click.option("--ratio", required=True, metavar="N", help="Input cycles a period: 2.5, 2*(n+1)."),
-    click.option("--mean", is_flag=True, help="The ratio, such as 16/3, is that of the mean gap."),
+    click.option("--ratio", required=True, metavar="N", help="Input cycles a period: 2.5, 2*n."),
+    click.option("--mean", is_flag=True, help="The ratio is that of the mean gap: 16/3."),
     click.option("--high", metavar="H", help="High time in half-cycles [N, which is 50 %]."),
     click.option(
         "--each", multiple=True, metavar="PORT[=VALUES]", help="Claim it for each value: div=1..15."
@@ -241,22 +242,26 @@ FIGURES: tuple[Decorator, ...] = (
     HTML,
 )
 TRACES = (
-    _written("--vcd", "Write the wave of each property that is refuted."),
+    _written("--vcd", "Write the wave of what is refuted."),
     _written("--junit", "Write the verdicts as JUnit XML."),
     _written("--sarif", "Write the verdicts as SARIF 2.1.0."),
     click.option(
         "--testbench",
         "testbench_folder",
         metavar="DIR",
-        help="Write a test bench for each of them.",
+        help="Write a test bench for what is refuted.",
         shell_complete=completion.folders,
     ),
 )
 CERTIFYING = (_written("--certificate", "Write what the verdicts rest on, for `recheck`."),)
-CREWS = (
+CREW: tuple[Decorator, ...] = (
     click.option("--workers", metavar="N", help="Dividers at once, in processes [the cores]."),
     click.option("--cluster", metavar="ADDRESS", help="Judge several on this Dask cluster."),
 )
+WAIT = "Time the cluster may be without workers [60]."
+# Where a screen is full only the README tells of the last one.
+CREWS: tuple[Decorator, ...] = (*CREW, click.option("--wait", metavar="SECONDS", help=WAIT, hidden=True))
+CREWS_OF_GATE: tuple[Decorator, ...] = (*CREW, click.option("--wait", metavar="SECONDS", help=WAIT))
 
 
 def _sided(side: str) -> tuple[Decorator, ...]:
@@ -432,7 +437,7 @@ def recheck(
     JSON,
     HTML,
     *TRACES,
-    *CREWS,
+    *CREWS_OF_GATE,
 )
 def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
     """Judge the dividers of a manifest, subharmonic.toml, of which something has changed, and tell all verdicts.
@@ -445,13 +450,14 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
     named = {name: options[f"{name}_path"] for name in ("json", "html", "vcd", "junit", "sarif")}
     targets = Targets(**named, testbench=options["testbench_folder"])
     _check_folder(targets)
-    crew = _crew(options["workers"], options["cluster"])
+    crew = _crew(options["workers"], options["cluster"], options["wait"])
     from prover import gate as gates
     from prover.report import gate as told
 
     listed = gates.read(manifest, _manifest_options(), _spec_of)
-    check_targets(targets.paths(), [str(listed.path)])
-    with Progress(sys.stderr) as progress, closing(gates.opened(listed, ledger)) as kept:
+    sources = (str(listed.folder / file) for divider in listed.dividers for file in divider.files)
+    check_targets(targets.paths(), [str(listed.path), *dict.fromkeys(sources)])
+    with Progress(sys.stderr) as progress, closing(_opened(listed, ledger, progress)) as kept:
         run = gates.run_gate(
             listed, kept, crew, afresh=options["afresh"], recheck=options["recheck"], tell=progress.tell
         )
@@ -464,14 +470,25 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
             for outcome, row, paths in zip(found, shown, written.waves, strict=True)
             if row.verdict != "proved"
         ]
-        text = "\n".join([*filter(None, texts), told.render(run, _look(), bool(written.results))])
-        text = _written_up(written.results, text, found)
+        table = told.render(run, _look(), bool(written.results))
+        full = "\n".join([*filter(None, texts), table])
+        text, unwritten = _sent(written.results, _sources(found), full, table)
     _print(text)
     for remark in written.remarks:
         _complain(remark)
-    if run.unkept is not None:
-        _complain(_user_error(run.unkept))
-    return _worst(_statuses(run))
+    if unwritten is not None:
+        _complain(_user_error(unwritten))
+    for error in filter(None, (run.lost, run.unkept)):
+        _complain(_user_error(error))
+    return _worst([*_statuses(run), Status.PROVED if unwritten is None else Status.USAGE])
+
+
+def _opened(listed: Manifest, path: str | None, progress: Progress) -> Ledger:
+    """The ledger, for which a run may have to wait."""
+    from prover import gate as gates
+
+    progress.tell("opening the ledger, which another run may be writing to")
+    return gates.opened(listed, path)
 
 
 @main.command(short_help="Tell a divider's verdicts over time.")
@@ -493,7 +510,7 @@ def history(file: str, ledger: str | None) -> Status:
 
 def _manifest_options() -> dict[str, Literal["one", "many", "flag"]]:
     """The options of `check` that a manifest has, and what is given with them."""
-    apart = ("waivers", "workers", "cluster")
+    apart = ("waivers", "workers", "cluster", "wait")
     return {
         option.opts[0].removeprefix("--"): "flag" if option.is_flag else "many" if option.multiple else "one"
         for option in check.params
@@ -519,7 +536,7 @@ def _statuses(run: Run) -> Iterator[Status]:
     yield from (kinds[row.verdict] for row in run.rows if row.verdict != "proved")
     if run.expired:
         yield Status.REFUTED
-    if run.unkept is not None:
+    if run.unkept is not None or run.lost is not None:
         yield Status.USAGE
 
 
@@ -638,14 +655,14 @@ def _waivers(texts: Iterable[str]) -> dict[str, str]:
     return waivers
 
 
-def _seconds(text: str) -> float:
+def _seconds(text: str, option: str = "--effort") -> float:
     try:
         value = float(text)
     except ValueError:
         value = math.nan
     if not 0 < value <= LONGEST_EFFORT:
         raise UserError(
-            f"--effort {text}: not a time", hint=f"give seconds, more than 0 and up to {LONGEST_EFFORT}"
+            f"{option} {text}: not a time", hint=f"give seconds, more than 0 and up to {LONGEST_EFFORT}"
         )
     return value
 
@@ -677,7 +694,7 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
     check_targets(targets.paths(), files)
     dividers = _groups(files, spec)
     if dividers is not None:
-        crew = _crew(options["workers"], options["cluster"])
+        crew = _crew(options["workers"], options["cluster"], options["wait"])
         return _run_several(dividers, spec, crew, targets)
     with Progress(sys.stderr) as progress:
         report = _judged(files, spec, targets, progress.tell)
@@ -686,12 +703,12 @@ def _run(files: Sequence[str], options: dict[str, Any], targets: Targets) -> Sta
         benches, without = _benches(report, targets.testbench)
         results = [*_json(report, targets.json), *_html(report, targets.html), *waves, *benches]
         results += [*_exchanged(files, report, targets), *certified]
-        check_targets([result.path for result in results], report.ports.design.files)
-        piped = [result.text for result in results if result.path == STANDARD_OUTPUT]
-        text = "".join(piped) or _told(report, [wave.path for wave in waves])
-        write_files([result for result in results if result.path != STANDARD_OUTPUT])
-    if STANDARD_OUTPUT not in targets.paths() or piped:
-        _print(text)
+        full = "" if STANDARD_OUTPUT in targets.paths() else _told(report, [wave.path for wave in waves])
+        alone = full and _told(report, [])
+        text, unwritten = _sent(results, report.ports.design.files, full, alone)
+    _print(text)
+    if unwritten is not None:
+        raise unwritten
     for remark in [*remarks, *without]:
         _complain(remark)
     return status_of(report)
@@ -716,14 +733,13 @@ def _compare(old: Sequence[str], new: Sequence[str], pairing: Pairing, targets: 
             results.append(Result(targets.html, html.render_compared(found)))
         certified, remarks = _pair_certificate(found, targets.certificate, old, new, progress.tell)
         results += certified
-        check_targets(
-            [result.path for result in results], [*found.pair.old.design.files, *found.pair.new.design.files]
-        )
-        piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
-        text = piped or told.render(found, _look(), written) + "\n"
-        write_files([result for result in results if result.path != STANDARD_OUTPUT])
-    if piped or STANDARD_OUTPUT not in targets.paths():
-        _print(text)
+        sources = [*found.pair.old.design.files, *found.pair.new.design.files]
+        aside = STANDARD_OUTPUT in targets.paths()
+        full, alone = ("" if aside else f"{told.render(found, _look(), waves)}\n" for waves in (written, []))
+        text, unwritten = _sent(results, sources, full, alone)
+    _print(text)
+    if unwritten is not None:
+        raise unwritten
     for remark in remarks:
         _complain(remark)
     return {"proved": Status.PROVED, "refuted": Status.REFUTED, "open": Status.OPEN}[found.verdict]
@@ -775,17 +791,19 @@ def _groups(files: Sequence[str], spec: Spec) -> list[tuple[str, ...]] | None:
     return groups(files, spec)
 
 
-def _crew(workers: str | None, cluster: str | None) -> Crew:
+def _crew(workers: str | None, cluster: str | None, wait: str | None) -> Crew:
     """Who judges several dividers."""
     if cluster is not None:
         if workers is not None:
             raise UserError(
                 "--workers and --cluster", hint="give one of them: a cluster has workers of its own"
             )
-        from prover.cluster import Cluster, needs
+        from prover.cluster import WAIT, Cluster, needs
 
         needs()
-        return Cluster(cluster)
+        return Cluster(cluster, WAIT if wait is None else _seconds(wait, "--wait"))
+    if wait is not None:
+        raise UserError("--wait without --cluster", hint="it is for a cluster's workers")
     from prover.pool import Local, cores
 
     count = cores() if workers is None else read_number(workers, "--workers")
@@ -806,9 +824,13 @@ def _run_several(dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, ta
         found = outcomes(dividers, spec, crew, progress.tell)
         written = _results_of(found, targets)
         texts = [_text_of(*pair) for pair in zip(found, written.waves, strict=True)]
-        text = "\n".join([*filter(None, texts), told.summary(found, _look()) + "\n"])
-        text = _written_up(written.results, text, found)
+        table = told.summary(found, _look()) + "\n"
+        text, unwritten = _sent(
+            written.results, _sources(found), "\n".join([*filter(None, texts), table]), table
+        )
     _print(text)
+    if unwritten is not None:
+        raise unwritten
     for remark in written.remarks:
         _complain(remark)
     return _worst(_status_of_outcome(outcome) for outcome in found)
@@ -864,13 +886,22 @@ def _text_of(outcome: Outcome, waves: Sequence[str]) -> str:
     return harmless(_user_error(outcome.error)) + "\n" if outcome.error is not None else ""
 
 
-def _written_up(results: Sequence[Result], text: str, found: Sequence[Outcome]) -> str:
-    """Write the results to their files; what goes to standard output: one of them, or the text for people."""
+def _sources(found: Sequence[Outcome]) -> list[str]:
+    return [file for outcome in found for file in outcome.files]
+
+
+def _sent(
+    results: Sequence[Result], sources: Sequence[str], text: str, alone: str
+) -> tuple[str, UserError | None]:
+    """Write the results to their files. What goes to standard output: one of them, or the text for people; where no
+    file could be written, the text that speaks of none, for verdicts are not lost by that; and why none was."""
     piped = "".join(result.text for result in results if result.path == STANDARD_OUTPUT)
-    sources = [file for outcome in found for file in outcome.files]
-    check_targets([result.path for result in results], sources)
-    write_files([result for result in results if result.path != STANDARD_OUTPUT])
-    return piped or text
+    try:
+        check_targets([result.path for result in results], sources)
+        write_files([result for result in results if result.path != STANDARD_OUTPUT])
+    except UserError as error:
+        return piped or alone, error
+    return piped or text, None
 
 
 def _worst(statuses: Iterable[Status]) -> Status:

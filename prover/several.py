@@ -129,7 +129,8 @@ def _with_modules(content: _Content, listed: Sequence[_Content]) -> Iterator[str
 def outcomes(
     dividers: Sequence[tuple[str, ...]], spec: Spec, crew: Crew, tell: Callable[[str], None]
 ) -> list[Outcome]:
-    """Each divider's outcome, in order. One that can't be read, or a fault of ours, doesn't stop the others."""
+    """Each divider's outcome, in order. One that can't be read, or a fault of ours, doesn't stop the others. Raises
+    UserError where none could be judged."""
     found: dict[int, Outcome] = {}
     tasks: dict[int, Task] = {}
     contents: dict[int, Content] = {}
@@ -143,9 +144,17 @@ def outcomes(
                 del tasks[number]
                 found[number] = Outcome(files, error=error)
     numbers = list(tasks)
-    for at, answer in crew.run(list(tasks.values()), tell):
-        number = numbers[at]
-        found[number] = outcome(dividers[number], answer, contents.get(number))
+    judged = 0
+    try:
+        for at, answer in crew.run(list(tasks.values()), tell):
+            number = numbers[at]
+            found[number] = outcome(dividers[number], answer, contents.get(number))
+            judged += 1
+    except UserError as error:
+        if not judged:
+            raise
+        # What is known is told, and of the others why it is not.
+        found |= {number: Outcome(dividers[number], error=error) for number in numbers if number not in found}
     return [found[number] for number in range(len(dividers))]
 
 

@@ -105,6 +105,29 @@ def test_words_of_more_than_64_bits(tmp_path: Path) -> None:
     assert run("check", source, "--ratio", "8").exit_code == 1
 
 
+@pytest.mark.parametrize("command", ["check", "several", "compare", "gate"])
+def test_verdicts_are_told_also_where_a_result_cant_be_written(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, command: str
+) -> None:
+    """No file can be made in a system's folder of processes; the text names no wave that was not written."""
+    monkeypatch.chdir(tmp_path)
+    Path("a.v").write_text(BY_3)
+    Path("b.v").write_text(BY_3.replace("by_3", "other").replace("2'd2", "2'd1"))
+    Path("subharmonic.toml").write_text('[divider.b]\nfiles = "b.v"\nratio = 3\n')
+    asked = {
+        "check": ["check", "b.v", "--ratio", "3", "--vcd", "b.vcd"],
+        "several": ["check", "a.v", "b.v", "--ratio", "3", "--vcd", "./"],
+        "compare": ["compare", "a.v", "b.v", "--vcd", "b.vcd"],
+        "gate": ["gate", "--vcd", "./"],
+    }[command]
+    result = run(*asked, "--html", "/proc/out.html")
+    assert result.exit_code == 2
+    assert "REFUTED" in result.stdout
+    assert ".vcd" not in result.stdout
+    assert result.stderr.startswith("error: can't write /proc/out.html")
+    assert not list(tmp_path.glob("*.vcd"))
+
+
 def test_too_little_effort_is_open(tmp_path: Path) -> None:
     result = run("check", written(tmp_path, BY_3), "--ratio", "3", "--effort", "1e-9")
     assert result.exit_code == 3

@@ -21,7 +21,7 @@ from texts import BY_3, RING
 
 import prover
 from prover import cli, task
-from prover.errors import Where
+from prover.errors import UserError, Where
 from prover.gate.ledger import Kept, Ledger, digest
 from prover.gate.manifest import Manifest, Waiver
 from prover.gate.runner import Excused, Run
@@ -63,12 +63,15 @@ class Inline:
 
     folder: Path
     works: bool = True
+    lost_after: int | None = None
     apart: bool = False
 
     def run(self, tasks: Sequence[Task], tell: Callable[[str], None]) -> Iterator[tuple[int, Answer]]:
         home = os.getcwd()
         for number, asked in enumerate(tasks):
             assert self.works
+            if number == self.lost_after:
+                raise UserError("the cluster is gone")
             said: list[task.Message] = []
             task._laid_out(Task.from_json(asked.as_json()), str(self.folder), said.append)
             os.chdir(home)
@@ -100,7 +103,7 @@ def inline(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Inline:
     place = tmp_path / "place"
     place.mkdir()
     crew = Inline(place)
-    monkeypatch.setattr(cli, "_crew", lambda workers, cluster: given(workers, cluster) if workers else crew)
+    monkeypatch.setattr(cli, "_crew", lambda workers, *rest: given(workers, *rest) if workers else crew)
     return crew
 
 
@@ -413,16 +416,41 @@ task.main(place)
     assert gate()[1] == {**KEPT, "third": ("proved", "new"), "counter[N=4]": ("proved", "new")}
 
 
+def test_what_is_known_is_told_also_where_whoever_judges_is_lost(folder: Path, inline: Inline) -> None:
+    gate()
+    write(
+        folder, **{name: text.replace("2'd1", "2'b1").replace("3'd1", "3'b1") for name, text in TEXTS.items()}
+    )
+    inline.lost_after = 1
+    result = run("gate", "--json", "out.json")
+    assert result.exit_code == 2
+    assert result.stderr.startswith("error: the cluster is gone")
+    told = json.loads(Path("out.json").read_text())["gate"]["dividers"]
+    assert [(each["name"], each["verdict"], each["source"]) for each in told] == [
+        ("third", "proved", "new"),
+        *((f"counter[N={n}]", "proved", "kept") for n in (2, 4, 6)),
+        ("sticks", "open", "new"),
+    ]
+    # It is no event, and the next run goes on from there.
+    assert "OPEN" not in run("history", "sticks.v").stdout
+    inline.lost_after = None
+    assert gate()[1] == {**KEPT, "sticks": ("refuted", "new")}
+
+
 @pytest.mark.parametrize(
     ("options", "message"),
     [
         (["missing.toml"], "can't read missing.toml"),
         (["--workers", "0"], "--workers 0"),
+        (["--workers", "1", "--wait", "5"], "--wait without --cluster"),
+        (["--ledger", ""], "--ledger '' names no file"),
+        (["--ledger", "-"], "--ledger '-' names no file"),
+        (["--ledger", "."], "is a folder"),
         (["--vcd", "a.vcd"], "several dividers"),
         (["--json", "nowhere/a.json"], "no folder"),
         (["--json", "subharmonic.toml"], "would be overwritten"),
         (["--html", "third.v"], "would be overwritten"),
-        (["--ledger", "third.v"], "is damaged: file is not a database"),
+        (["--ledger", "third.v"], "is no ledger, or one that is damaged"),
         (["--ledger", "/proc/ledger.sqlite"], "can't write the ledger"),
         (["--ledger", "third.v/ledger.sqlite"], "can't write the ledger"),
     ],

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import random
+import signal
 import sqlite3
 import subprocess
 import sys
@@ -194,7 +195,7 @@ def test_a_file_cut_short_is_told(path: Path, size: float) -> None:
 def test_another_file_is_no_ledger(path: Path) -> None:
     path.parent.mkdir()
     path.write_text("module tick; endmodule\n" * 100)
-    with pytest.raises(UserError, match="is damaged: file is not a database"):
+    with pytest.raises(UserError, match="is no ledger, or one that is damaged from its beginning"):
         Ledger(path)
     path.unlink()
     damaged(path, "CREATE TABLE kept (key)")
@@ -224,7 +225,7 @@ def test_a_file_in_place_of_the_folder(path: Path) -> None:
 
 def test_a_folder_in_place_of_the_file(path: Path) -> None:
     path.mkdir(parents=True)
-    with pytest.raises(UserError, match=r"can't write the ledger .*: unable to open database file"):
+    with pytest.raises(UserError, match="is a folder"):
         Ledger(path)
 
 
@@ -294,6 +295,33 @@ def test_a_ledger_that_another_run_holds_is_told(path: Path, monkeypatch: pytest
         with pytest.raises(UserError, match=r"has been locked by another run for 0.05 seconds"):
             Ledger(path)
         other.execute("ROLLBACK")
+    read_all(path, 1)
+
+
+def test_waiting_for_another_run_can_be_interrupted(path: Path) -> None:
+    """The one that holds the ledger goes on until this one has ended, so that it ends by the signal alone."""
+    filled(path, 1)
+    script = """
+import sys
+from pathlib import Path
+from prover.gate.ledger import Ledger
+print("x", flush=True)
+Ledger(Path(sys.argv[1]))
+"""
+    with closing(sqlite3.connect(path, isolation_level=None)) as other:
+        other.execute("BEGIN EXCLUSIVE")
+        process = subprocess.Popen(
+            [sys.executable, "-c", script, str(path)],
+            stdout=subprocess.PIPE,
+            stderr=subprocess.PIPE,
+            env=ENVIRONMENT,
+        )
+        assert process.stdout is not None
+        process.stdout.read(1)
+        time.sleep(0.3)
+        process.send_signal(signal.SIGINT)
+        _, told = process.communicate(timeout=module.PATIENCE / 2)
+        assert b"KeyboardInterrupt" in told
     read_all(path, 1)
 
 

@@ -9,6 +9,7 @@ from prover.errors import UserError
 from prover.gate.ledger import Event, Ledger
 from prover.gate.manifest import Manifest, Options, SpecOf, find_manifest, read_manifest
 from prover.gate.runner import Run, run_gate
+from prover.output import STANDARD_OUTPUT
 
 __all__ = ["Event", "Ledger", "Manifest", "Run", "events_of", "opened", "read", "run_gate"]
 
@@ -23,6 +24,8 @@ def read(path: str | None, options: Options, spec_of: SpecOf) -> Manifest:
 
 def opened(manifest: Manifest, path: str | None) -> Ledger:
     """The ledger at the path, or the manifest's own."""
+    if path is not None and path in ("", STANDARD_OUTPUT):
+        raise UserError(f"--ledger '{path}' names no file", hint="give the path of one")
     return Ledger(Path(path)) if path is not None else _own(manifest.folder)
 
 

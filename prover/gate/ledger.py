@@ -11,6 +11,7 @@ from __future__ import annotations
 import hashlib
 import json
 import sqlite3
+import time
 import zlib
 from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager
@@ -27,6 +28,9 @@ VERSION = 1
 
 PATIENCE = 60.0
 """Seconds to wait for another run that is writing."""
+
+STEP = 0.2
+"""Seconds that SQLite waits at a time: it can't be interrupted meanwhile."""
 
 MOST_BYTES = 1 << 30
 """Bytes of one text: what claims to be longer is damaged."""
@@ -115,22 +119,41 @@ def digest(text: str) -> str:
     return hashlib.sha256(text.encode()).hexdigest()
 
 
+class _Patient(sqlite3.Connection):
+    """A connection that waits for other runs, and can be interrupted while it does."""
+
+    def execute(self, sql: str, parameters: Any = ()) -> sqlite3.Cursor:
+        end = time.monotonic() + PATIENCE
+        while True:
+            try:
+                return super().execute(sql, parameters)
+            except sqlite3.OperationalError as fault:
+                if not _is_busy(fault) or time.monotonic() >= end:
+                    raise
+
+
+def _is_busy(fault: sqlite3.Error) -> bool:
+    return getattr(fault, "sqlite_errorname", "").startswith(("SQLITE_BUSY", "SQLITE_LOCKED"))
+
+
 class Ledger:
     """An open ledger. Everything here raises UserError where the file can't be read or written."""
 
     def __init__(self, path: Path, to_read: bool = False) -> None:
         """Open the ledger, made anew if there is none, and see that it can be written; `to_read` only opens it."""
         self.path = path
+        if path.is_dir():
+            raise UserError(f"the ledger {path} is a folder", hint="give the path of a file with --ledger")
+        how: dict[str, Any] = {"timeout": STEP, "isolation_level": None, "factory": _Patient}
         with self._guarded():
             if to_read:
-                place = f"{path.resolve().as_uri()}?mode=ro"
-                self._base = sqlite3.connect(place, timeout=PATIENCE, isolation_level=None, uri=True)
+                self._base = sqlite3.connect(f"{path.resolve().as_uri()}?mode=ro", uri=True, **how)
             else:
                 try:
                     path.parent.mkdir(parents=True, exist_ok=True)
                 except OSError as fault:
                     raise self._unusable(f"can't make its folder: {fault.strerror or fault}") from None
-                self._base = sqlite3.connect(path, timeout=PATIENCE, isolation_level=None)
+                self._base = sqlite3.connect(path, **how)
         try:
             with self._guarded():
                 if to_read:
@@ -291,7 +314,7 @@ class Ledger:
     def _told(self, fault: sqlite3.Error) -> UserError:
         """SQLite's error for people: its code says who has to do something about it."""
         name = getattr(fault, "sqlite_errorname", "")
-        if name.startswith(("SQLITE_BUSY", "SQLITE_LOCKED")):
+        if _is_busy(fault):
             return UserError(
                 f"the ledger {self.path} has been locked by another run for {PATIENCE:g} seconds",
                 hint="wait for it, or name another file with --ledger",
@@ -300,6 +323,11 @@ class Ledger:
             ("SQLITE_FULL", "SQLITE_IOERR", "SQLITE_READONLY", "SQLITE_CANTOPEN", "SQLITE_PERM")
         ):
             return self._unusable(str(fault))
+        if name == "SQLITE_NOTADB":
+            return UserError(
+                f"{self.path} is no ledger, or one that is damaged from its beginning",
+                hint="name another file with --ledger; if it is one, move it away: all is judged anew",
+            )
         return self._damaged(str(fault))
 
     def _unusable(self, why: str) -> UserError:

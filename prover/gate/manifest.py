@@ -49,7 +49,7 @@ LONGEST_KEY = 500
 
 OF_THE_COMMAND = (
     *("afresh", "certificate", "cluster", "html", "json", "junit", "ledger"),
-    *("recheck", "sarif", "testbench", "vcd", "workers"),
+    *("recheck", "sarif", "testbench", "vcd", "wait", "workers"),
 )
 """Options that a run has and a claim hasn't."""
 

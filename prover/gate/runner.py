@@ -12,7 +12,7 @@ import hashlib
 import json
 import os
 import time
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import UTC, date, datetime, timedelta
 from fractions import Fraction
@@ -48,6 +48,7 @@ class Row:
     kept      the verdict as the ledger has it
     came      what came of it instead where there is none to keep: an error, a fault, open
     rejected  why the certificate of a kept verdict was rejected
+    skipped   whether nobody got round to it
     decided   when the verdict was found, in UTC, as ISO 8601
     """
 
@@ -62,6 +63,7 @@ class Row:
     rejected: tuple[str, ...] = ()
     gave_up: tuple[str, ...] = ()
     waived: Mapping[str, str] = field(default_factory=dict)
+    skipped: bool = False
 
     @property
     def verdict(self) -> Literal["proved", "refuted", "open", "error", "fault"]:
@@ -130,7 +132,8 @@ class Run:
     rows      the dividers, in the manifest's order
     excused   the waivers
     seconds   how long it took
-    unkept    why verdicts could not be kept, "" if all were
+    unkept    why verdicts could not be kept, None if all were
+    lost      why some dividers could not be judged, None if all were
     """
 
     manifest: Manifest
@@ -138,6 +141,7 @@ class Run:
     excused: tuple[Excused, ...]
     seconds: float
     unkept: UserError | None
+    lost: UserError | None = None
 
     @property
     def expired(self) -> tuple[Excused, ...]:
@@ -160,7 +164,7 @@ def run_gate(
 ) -> Run:
     """Bring the ledger up to date with the manifest. `afresh`: as if it were empty. `recheck`: certificates of kept
     verdicts are checked again, and what they don't bear out is judged again. Raises UserError where the ledger can't
-    be read, and where the cluster is lost."""
+    be read."""
     gate = _Gate(manifest, ledger, crew, afresh, recheck, today or date.today(), tell)
     return gate.run()
 
@@ -175,6 +179,7 @@ class _Gate:
     today: date
     tell: Tell
     unkept: UserError | None = None
+    lost: UserError | None = None
     contents: dict[object, Content | UserError] = field(default_factory=dict)
 
     def run(self) -> Run:
@@ -187,15 +192,28 @@ class _Gate:
             task = self._looked_up(row)
             if task is not None:
                 asked.append((row, task))
-        for number, answer in self.crew.run([task for _, task in asked], self.tell):
-            row, task = asked[number]
+        left = dict(enumerate(asked))
+        for number, answer in self._answers([task for _, task in asked]):
+            row, task = left.pop(number)
             if task.recheck is None:
                 self._judged(row, answer)
             else:
                 self._rechecked(row, answer)
+        for row, _ in left.values():
+            row.skipped = True
+            row.came = Outcome(row.files, title=row.divider.name, open="not judged")
         self._note(rows)
         excused = tuple(self._excused(rows))
-        return Run(self.manifest, tuple(rows), excused, time.monotonic() - began, self.unkept)
+        return Run(self.manifest, tuple(rows), excused, time.monotonic() - began, self.unkept, self.lost)
+
+    def _answers(self, tasks: Sequence[Task]) -> Iterator[tuple[int, Answer]]:
+        """What the crew answers until it is lost, if it is: what is known by then is told all the same."""
+        if not tasks:
+            return
+        try:
+            yield from self.crew.run(tasks, self.tell)
+        except UserError as error:
+            self.lost = error
 
     # -- what is known already -----------------------------------------------------------------------------
 
@@ -367,7 +385,8 @@ class _Gate:
         if self.unkept is not None:
             return
         try:
-            self.ledger.note(self._event(row) for row in rows if row.verdict != "fault" and not row.gave_up)
+            told = [row for row in rows if row.verdict != "fault" and not row.gave_up and not row.skipped]
+            self.ledger.note(map(self._event, told))
             used = {row.key for row in rows}
             old = self.ledger.older_than((datetime.now(UTC) - REMEMBERED).isoformat())
             forgotten = [key for key in old if key not in used]

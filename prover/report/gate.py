@@ -43,15 +43,19 @@ def render(run: Run, look: Look, reported: bool = False) -> str:
 
 
 def _groups(rows: Sequence[Row]) -> Iterator[list[Row]]:
-    """Rows that share a line: neighbours of one entry with ranges that are proved, and of one source."""
+    """Rows that share a line: neighbours of one entry with ranges that are proved, and of one source; and all that
+    nobody got round to."""
+    skipped = [row for row in rows if row.skipped]
     for (_, folds, *_), group in groupby(
-        rows,
+        (row for row in rows if not row.skipped),
         key=lambda row: (row.divider.entry, row.divider.parameters and row.verdict == "proved", row.source),
     ):
         if folds:
             yield list(group)
         else:
             yield from ([row] for row in group)
+    if skipped:
+        yield skipped
 
 
 def _line(rows: list[Row]) -> tuple[str, str, str, str]:
@@ -59,6 +63,9 @@ def _line(rows: list[Row]) -> tuple[str, str, str, str]:
     first = rows[0]
     seconds = [row.kept.seconds for row in rows if row.kept is not None]
     words = [first.says]
+    if first.skipped:
+        more = f" and {len(rows) - 1} more" if len(rows) > 1 else ""
+        return first.verdict.upper(), first.divider.name + more, "", first.says
     if len(rows) > 1:
         words = [f"{_ends(rows)}: {len(rows)} dividers"]
         if first.source == "new":

@@ -5,11 +5,13 @@ from __future__ import annotations
 import json
 import os
 import signal
+import socket
 import subprocess
 import sys
 import time
 from collections.abc import Iterator
 from dataclasses import dataclass, field
+from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
@@ -17,6 +19,10 @@ import pytest
 from texts import BY_3, RING, STICKS_AT_7
 
 import prover
+from prover import cluster as module
+from prover.errors import UserError
+from prover.spec import Spec
+from prover.task import Task
 
 ROOT = Path(prover.__file__).parents[1]
 ENVIRONMENT = {**os.environ, "PYTHONPATH": str(ROOT)}
@@ -177,6 +183,31 @@ def test_a_worker_killed_in_the_middle_changes_nothing(cluster: Dask, sources: P
     assert running.poll() is None
     cluster.add()
     assert outcome(running, sources) == here
+
+
+def test_without_a_worker_the_run_ends_with_an_error_and_what_is_known(cluster: Dask, sources: Path) -> None:
+    (sources.parent / "subharmonic.toml").write_text(MANIFEST)
+    command = [sys.executable, "-m", "prover", "gate", "--cluster", cluster.address, "--wait", "1"]
+    done = subprocess.run(
+        command, cwd=sources.parent, env=ENVIRONMENT, capture_output=True, check=False, text=True
+    )
+    assert done.returncode == 2
+    assert done.stderr.startswith(f"error: --cluster {cluster.address}: no worker for 1 s")
+    assert done.stdout.splitlines()[-2:] == [
+        "OPEN  third and 3 more    not judged",
+        "4 dividers: 4 open",
+    ]
+
+
+@pytest.mark.parametrize("address", ["127.0.0.1:{}", "foo://127.0.0.1:{}", "127.0.0.1", "127.0.0.1:x"])
+def test_what_is_no_scheduler_is_told_soon(monkeypatch: pytest.MonkeyPatch, address: str) -> None:
+    """Something that listens and says nothing, a scheme that is none, no port: a client of Dask hangs on some."""
+    monkeypatch.setattr(module, "PATIENCE", 1)
+    with socket.create_server(("127.0.0.1", 0)) as silent:
+        crew = module.Cluster(address.format(silent.getsockname()[1]))
+        task = Task(("a.v",), Spec(ratio=Fraction(3)))
+        with pytest.raises(UserError, match="no scheduler answers"):
+            next(crew.run([task], lambda doing: None))
 
 
 def test_where_no_scheduler_answers_or_it_dies_the_run_ends_with_an_error(
