@@ -301,6 +301,7 @@ divider("wire [3:0] net = $clog2(5) % 3 - $unsigned(count);"),
     "simulation only": [
         divider('reg q; always @(posedge clk) begin q <= #1 ~q; $display("%b", q); end', before=BENCH),
         divider("specify (clk => tick) = 1; endspecify nand #2 (net, clk, count[0]);"),
+        divider("assert property (@(posedge clk) 1);"),
     ],
 }  # fmt: skip
 
@@ -337,11 +338,10 @@ REFUSED = {
     ],
     "files outside the given folders": [divider("", before='`include "/rates.vh"\n')],
     "arrays of several dimensions": [divider("logic [1:0][3:0] net;"), divider("reg [3:0] m [0:1][0:1];")],
-    "structs, interfaces, packages, assertions": [
+    "structs, interfaces, packages": [
         divider("typedef struct packed {logic a;} pair; pair net;"),
         divider("", before="interface plug; endinterface\n"),
         divider("", before="package rates; endpackage\n"),
-        divider("assert property (@(posedge clk) 1);"),
     ],
     "switches, pulls and strengths": [
         divider("wire net; tran (net, tick);"),

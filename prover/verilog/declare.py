@@ -52,7 +52,7 @@ class Shape:
 @dataclass(slots=True, eq=False)
 class Declarer:
     """Makes nets and constants; `nets` lists every net in order, `initial` the initial values to work out,
-    `drivers` the continuous assignments that come with declarations."""
+    `drivers` the continuous assignments that come with declarations, `headed` the ports that a port list declares."""
 
     report: Report
     executor: Executor
@@ -60,6 +60,7 @@ class Declarer:
     initial: list[tuple[Scope, Net, tree.Node]] = field(default_factory=list)
     drivers: list[tuple[Scope, tree.Node, tree.Node, int]] = field(default_factory=list)
     blocks: dict[tuple[int, Scope], Scope] = field(default_factory=dict)
+    headed: set[Net] = field(default_factory=set)
 
     def env(self, scope: Scope) -> Environment:
         """Constants of a scope."""
@@ -289,6 +290,11 @@ class Declarer:
         kind = net.kind if net.kind != "net" else shape.kind
         if kind == "variable" and direction in ("input", "inout"):
             self.report.fail(f"an {direction} can't be declared reg", name.lineno, "leave the reg out")
+        if net in self.headed:
+            # Not by clause 12.3.4, but simulators and synthesis have long taken it, and in one way.
+            self.report.note(
+                f"{printable(name.name)} is declared again: the port list alone should say reg", name.lineno
+            )
         if net.words:
             self.report.fail(
                 f"port {printable(name.name)} can't be a memory", name.lineno, "pass its words as one vector"

@@ -152,7 +152,9 @@ class Hierarchy:
             words = [w for w in type_.words if w not in ("input", "output", "inout")]
             typed = tree.Type([direction, *words], type_.ranges, type_.enum, type_.named, type_.lineno)
             net = self.declarer.net(self.declarer.shape(typed, scope), item.name, scope)
-            net.complete = True
+            # `output q` alone may yet become a reg.
+            net.complete = net.complete or net.direction != "output"
+            self.declarer.headed.add(net)
             if item.name.value is not None:
                 self.declarer.first_value(net, item.name, scope)
             ports.append(net)

@@ -73,6 +73,7 @@ class Sizer:
         self.report = env.report
         self.types: dict[int, Type] = {}
         self.places: dict[int, Place] = {}
+        self.outside: dict[int, tuple[str, Any]] = {}
 
     def type_of(self, node: Any) -> Task[Type]:
         """The type of the node on its own (clauses 5.4.1 and 5.5.1)."""
@@ -182,7 +183,15 @@ class Sizer:
     # -- names and their parts -----------------------------------------------------------------------------
 
     def place(self, node: Any) -> Task[Place]:
-        """What a name with selects stands for (clause 5.2)."""
+        """What a name with selects stands for (clause 5.2); a constant one has to lie inside the declaration."""
+        found: Place = yield self._place(node)
+        if id(node) in self.outside:
+            message, at = self.outside[id(node)]
+            self.report.fail(message, at, "stay inside the declared range")
+        return found
+
+    def _place(self, node: Any) -> Task[Place]:
+        """The same; what lies outside is left in `outside`, for the side of a ?: that is not taken has a type too."""
         known = self.places.get(id(node))
         if known is not None:
             return known
@@ -203,7 +212,7 @@ class Sizer:
                 self.report.fail(f"memory {name} can only be used word by word", node, f"write {name}[index]")
             first, last = found.words
             word = yield self._position(
-                chain.pop(0).ptr, max(first, last), min(first, last), found.count, name
+                chain.pop(0).ptr, max(first, last), min(first, last), found.count, name, node
             )
         msb, lsb = _bounds(found)
         type_ = found.type
@@ -212,22 +221,22 @@ class Sizer:
         if chain:
             if len(chain) > 1:
                 self.report.fail(f"{name} has no further part to select", chain[1], "select once")
-            low, width = yield self._select(chain[0], msb, lsb, type_.width, name)
+            low, width = yield self._select(chain[0], msb, lsb, type_.width, name, node)
             signed = False
         made = Place(found, word, low, width, signed)
         self.places[id(node)] = made
         return made
 
-    def _position(self, node: Any, msb: int, lsb: int, count: int, name: str) -> Task[int | Expr]:
-        """Where an index points, counted from the bottom."""
+    def _position(self, node: Any, msb: int, lsb: int, count: int, name: str, whole: Any) -> Task[int | Expr]:
+        """Where an index points, counted from the bottom; `whole` is the name with all its selects."""
         value: Value = yield self.alone(node)
         low: int | Expr = self._moved(value, msb, lsb)
         if isinstance(low, int) and not 0 <= low < count:
-            self.report.fail(
+            self.outside[id(whole)] = (
                 f"index {self._number(value)} lies outside {name}[{msb}:{lsb}]",
                 node,
-                "stay inside the declared range",
             )
+            return 0
         return low
 
     @staticmethod
@@ -246,9 +255,11 @@ class Sizer:
         moved = e.bvsub(index, start) if msb >= lsb else e.bvsub(start, index)
         return e.bvadd(moved, e.const(more, size))
 
-    def _select(self, node: Any, msb: int, lsb: int, count: int, name: str) -> Task[tuple[int | Expr, int]]:
+    def _select(
+        self, node: Any, msb: int, lsb: int, count: int, name: str, whole: Any
+    ) -> Task[tuple[int | Expr, int]]:
         if isinstance(node, vast.Pointer):
-            low: int | Expr = yield self._position(node.ptr, msb, lsb, count, name)
+            low: int | Expr = yield self._position(node.ptr, msb, lsb, count, name, whole)
             return low, 1
         if isinstance(node, tree.IndexedSelect):
             width: int = yield self.number(node.width, "the width of a part select")
@@ -271,13 +282,11 @@ class Sizer:
             low = right - lsb if msb >= lsb else lsb - right
             width = abs(left - right) + 1
         if isinstance(low, int) and not 0 <= low <= count - width:
-            self.report.fail(
-                f"this part lies outside {name}[{msb}:{lsb}]", node, "stay inside the declared range"
-            )
+            self.outside[id(whole)] = (f"this part lies outside {name}[{msb}:{lsb}]", node)
         return low, width
 
     def _type_place(self, node: Any) -> Task[Type]:
-        place: Place = yield self.place(node)
+        place: Place = yield self._place(node)
         return Type(place.width, place.signed)
 
     def _build_place(self, node: Any, to: Type) -> Task[Expr]:
@@ -467,6 +476,10 @@ class Sizer:
 
     def _build_logical(self, node: Any, to: Type) -> Task[Expr]:
         left: Expr = yield self.condition(node.left)
+        if left is (e.FALSE if isinstance(node, vast.Land) else e.TRUE):
+            # The right side decides nothing, and may select what isn't there: `i > 0 && q[i - 1]`.
+            yield self.type_of(node.right)
+            return e.resize(left, to.width, False)
         right: Expr = yield self.condition(node.right)
         bit = e.bvand(left, right) if isinstance(node, vast.Land) else e.bvor(left, right)
         return e.resize(bit, to.width, False)

@@ -8,7 +8,7 @@ the expanded text, so that every node of the tree carries an offset for its line
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 from typing import Any
 
@@ -139,7 +139,7 @@ def _identifier(value: str) -> str:
 
 
 def tokenize(source: Source, notes: list[tuple[str, int]]) -> list[Any]:
-    """All tokens of the text, attributes and specify blocks left out; what is left out for good is noted."""
+    """All tokens of the text, attributes, specify blocks and assertions left out; what is left out is noted."""
     text, position, out = source.text, 0, []
     while position < len(text):
         found = _LEXEME.match(text, position)
@@ -174,7 +174,80 @@ def tokenize(source: Source, notes: list[tuple[str, int]]) -> list[Any]:
             position = end.end()
         else:
             out.append(_classified(kind or "", value, start, out))
+    return without_assertions(out, notes)
+
+
+_CLAIMS = frozenset({"assert", "assume", "cover", "restrict"})
+MAX_PARENTHESES = 100
+_BEFORE_STATEMENT = frozenset({"SEMICOLON", "BEGIN", "END", "ELSE", "RPAREN", "ENDGENERATE"})
+
+
+def without_assertions(tokens: list[Any], notes: list[tuple[str, int]]) -> list[Any]:
+    """The tokens with assertions, and the properties and sequences that these name, left out and noted.
+
+    They say what should hold and make no hardware. What is no assertion, such as a task of that name, stays."""
+    names = [t.value if t.type == "ID" else "" for t in tokens]
+    if not any(name in _CLAIMS or name in ("property", "sequence") for name in names):
+        return tokens
+    own = {name for name, before in zip(names[1:], tokens, strict=False) if before.type in ("TASK", "MODULE")}
+    out: list[Any] = []
+    position = 0
+    while position < len(tokens):
+        end = None
+        if names[position] and names[position] not in own:
+            end = _assertion_end(tokens, names, position, out[-1].type if out else "")
+        if end is None:
+            out.append(tokens[position])
+            position += 1
+            continue
+        if end > len(tokens):
+            # What never ends is no assertion, and neither is anything in it.
+            return out + tokens[position:]
+        notes.append(("assertion passed over: it makes no hardware", tokens[position].lineno))
+        labelled = [t.type for t in out[-2:]] == ["ID", "COLON"] and out[-3].type in _BEFORE_STATEMENT
+        if labelled and names[position + 1] in ("property", "sequence"):
+            # Inside a process it could be the label of a case.
+            del out[-2:]
+        out.append(_token("SEMICOLON", ";", tokens[position].lineno))
+        position = end
     return out
+
+
+def _assertion_end(tokens: list[Any], names: list[str], start: int, before: str) -> int | None:
+    """Where the assertion, property or sequence that starts here has ended, beyond the last token if it never does;
+    None if none starts here. `before` is the kind of the token that is left before it."""
+    never = len(tokens) + 1
+
+    def after(kinds: Collection[str], position: int) -> int:
+        found = (i for i in range(position, len(tokens)) if tokens[i].type in kinds)
+        return next(found, never - 1) + 1
+
+    def is_at(position: int, kind: str) -> bool:
+        return position < len(tokens) and tokens[position].type == kind
+
+    if names[start] in ("property", "sequence") and before in _BEFORE_STATEMENT:
+        close = "end" + names[start]
+        end = next((i + 1 for i in range(start, len(tokens)) if names[i] == close), never)
+        return _skip_label(tokens, end)
+    if names[start] not in _CLAIMS or before not in _BEFORE_STATEMENT | {"COLON"}:
+        return None
+    end = start + 1 + (names[start + 1 : start + 2] in (["property"], ["sequence"]))
+    if not is_at(end, "LPAREN"):
+        return None
+    depth, end = 1, end + 1
+    while depth:
+        end = after(("LPAREN", "RPAREN"), end)
+        if end == never or depth > MAX_PARENTHESES:
+            return never
+        depth += 1 if tokens[end - 1].type == "LPAREN" else -1
+    # An action is a system task, or two with an else between.
+    if is_at(end, "SYSTEM"):
+        end = after(("SEMICOLON",), end)
+        if not is_at(end, "ELSE"):
+            return end
+    if is_at(end, "ELSE"):
+        return after(("SEMICOLON",), end) if is_at(end + 1, "SYSTEM") else None
+    return end + 1 if is_at(end, "SEMICOLON") else None
 
 
 def _classified(kind: str, value: str, start: int, before: list[Any]) -> Any:

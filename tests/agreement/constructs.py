@@ -432,6 +432,27 @@ SURVEY = [
 
 VERILOG = [
     Accepted(
+        "an output of the port list declared again as reg",
+        "module d (input clk, output [1:0] n, output tick);\nreg [1:0] n; reg tick = 0;\n"
+        "always @(posedge clk) begin n <= n + 1; tick <= n[1]; end\nendmodule\n",
+        note="n is declared again",
+        line=2,
+    ),
+    Accepted(
+        "a select beyond the word on the side of a ?: that is not taken",
+        module(
+            "reg [1:0] n; integer i; always @(posedge clk) for (i = 0; i < 2; i = i + 1)\n"
+            "n[i] <= i == 0 ? ~n[1] : n[i - 1]; assign tick = n[1];"
+        ),
+    ),
+    Accepted(
+        "a select beyond the word behind an && that is decided",
+        module(
+            "reg [1:0] n; integer i; always @(posedge clk) for (i = 0; i < 2; i = i + 1)\n"
+            "n[i] <= (i > 0 && n[i - 1]) || (i == 0 && !n[1]); assign tick = n[1];"
+        ),
+    ),
+    Accepted(
         "a constant function",
         module(
             "function integer bits; input integer v; begin bits = 0; while (v > 0) begin bits = bits + 1;\n"
@@ -725,7 +746,42 @@ VERILOG = [
 
 # -- SystemVerilog -------------------------------------------------------------------------------------------
 
+ASSERTED = """\
+module d (input clk, output logic tick);
+  logic [1:0] n;
+  property wrap; @(posedge clk) n == 2 |=> n == 0; endproperty : wrap
+  sequence start; n == 0 ##1 n == 1; endsequence
+  wraps: assert property (wrap) else $error("no wrap at %0d", n);
+  assume property (@(posedge clk) !$isunknown(n));
+  cover property (@(posedge clk) start);
+  always_ff @(posedge clk) begin
+    assert (n < 3) else $error("lost");
+    if (n >= 2) begin n <= 0; tick <= ~tick; end else n <= n + 1;
+    case (n)
+      0: assert (n != 3);
+      default: assert (1'b1) $display("fine"); else $error("odd");
+    endcase
+  end
+endmodule
+"""
+UNASSERTED = """\
+module d (input clk, output reg tick);
+  reg [1:0] n;
+  always @(posedge clk) if (n >= 2) begin n <= 0; tick <= ~tick; end else n <= n + 1;
+endmodule
+"""
+
 SYSTEM = [
+    Accepted("assertions", ASSERTED, "6", plain=UNASSERTED, note="assertion passed over", line=3),
+    Accepted(
+        "a task named assert",
+        module(
+            "reg [1:0] n; wire cover = n == 2; task assert; input wrap; n <= wrap ? 0 : n + 1; endtask\n"
+            "always @(posedge clk) assert(cover); assign tick = n == 1;"
+        ),
+        "3",
+        2,
+    ),
     Accepted(
         "logic driven by assign and by a process",
         module(
@@ -1032,7 +1088,7 @@ REFUSED = [
     Refused(
         "an assignment pattern", clocked("posedge clk", "tick <= '{default: 0};"), "assignment pattern", 3
     ),
-    Refused("an assertion", clocked("posedge clk", "begin assert (x); tick <= ~tick; end"), "assert", 3),
+    Refused("an assertion that acts", clocked("posedge clk", "assert (x) tick <= ~tick;"), "tick", 3),
     Refused(
         "a reversed part select", module("wire [3:0] w = 0; assign tick = ^w[0:1];"), "w[0:1] runs against", 2
     ),
