@@ -456,7 +456,7 @@ def replayed(
     levels = e.evaluate(joint.outputs, _zeros(joint.outputs) | at_rest)
     first = Rest(0, False, inputs, registers, dict(zip(outputs, levels, strict=True)))
     wanted: list[Mapping[str, int] | None] = [dict(zip(names, move, strict=True)) for move in moves]
-    wanted = (wanted + [None] * ends)[: ends + 1]
+    wanted = (wanted + [None] * (ends + 1))[: ends + 1]
     return run(both.design, both.clock, outputs, first, wanted, joint.limit)
 
 
