@@ -808,7 +808,7 @@ def _crew(workers: str | None, cluster: str | None, wait: str | None) -> Crew:
 
     count = cores() if workers is None else read_number(workers, "--workers")
     if not 0 < count <= MOST_WORKERS:
-        raise UserError(f"--workers {workers}: not so many", hint=f"give 1 to {MOST_WORKERS}")
+        raise UserError(f"--workers {workers}: no number of processes", hint=f"give 1 to {MOST_WORKERS}")
     return Local(count)
 
 
@@ -1084,7 +1084,15 @@ class Progress:
         from rich.text import Text
 
         spinner = Spinner("dots")
-        with Live(spinner, console=Console(stderr=True), auto_refresh=False, transient=True) as live:
+        # A stream in another one's place would not tell what it can show.
+        with Live(
+            spinner,
+            console=Console(stderr=True),
+            auto_refresh=False,
+            transient=True,
+            redirect_stdout=False,
+            redirect_stderr=False,
+        ) as live:
             # A run that is killed can't give back a cursor that it hid.
             live.console.show_cursor(True)
             while not self._over.wait(REFRESH):

@@ -407,10 +407,13 @@ def test_progress_hides_no_cursor_that_a_killed_run_could_not_give_back(
         def isatty() -> bool:
             return True
 
+    streams = sys.stdout, sys.stderr
     with cli.Progress(Terminal()) as progress:  # type: ignore[arg-type]
         progress.tell("something")
         time.sleep(0.4)
         sent = capsys.readouterr().err
+        # Else what they can show would be told wrongly.
+        assert streams == (sys.stdout, sys.stderr)
     assert "something" in sent
     assert sent.rfind("\x1b[?25h") >= sent.rfind("\x1b[?25l")
 

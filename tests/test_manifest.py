@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import os
+import subprocess
+import sys
 from datetime import date
 from fractions import Fraction
 from pathlib import Path
@@ -9,6 +12,7 @@ from pathlib import Path
 import pytest
 from cases_format import CASES, read_case
 
+import prover
 from prover import cli
 from prover.errors import UserError, Where
 from prover.gate.manifest import Manifest, find_manifest, read_manifest
@@ -203,6 +207,31 @@ def test_what_the_sources_show_to_be_wrong_is_told_with_the_line_of_its_option(t
     assert divider.placed(own) is own
 
 
+def test_names_that_no_file_can_have_are_told_with_their_line(tmp_path: Path) -> None:
+    """The system call takes a name that ends with a null byte; an encoding may lack a character."""
+    (tmp_path / "subharmonic.toml").write_text(
+        '[divider.a]\nratio = 3\nfiles = "\\u0000.v"\n', encoding="utf-8"
+    )
+    (tmp_path / "by_name.toml").write_text('[divider.a]\nratio = 3\nfiles = "\u00b5.v"\n', encoding="utf-8")
+    ascii_only = {"LC_ALL": "C", "PYTHONUTF8": "0", "PYTHONCOERCECLOCALE": "0"}
+    kept = {name: value for name, value in os.environ.items() if name not in ("LANG", "LC_CTYPE")}
+    for name, more, told in (
+        ("subharmonic.toml", {}, r"error: subharmonic.toml:3: ?.v: no name of a file"),
+        ("by_name.toml", ascii_only, "v: file names are in ascii here, which"),
+    ):
+        done = subprocess.run(
+            [sys.executable, "-m", "prover", "gate", name],
+            cwd=tmp_path,
+            env={**kept, "PYTHONPATH": str(Path(prover.__file__).parents[1]), **more},
+            capture_output=True,
+            encoding="utf-8",
+            check=False,
+        )
+        assert (done.returncode, done.stderr) == (2, "")
+        assert f"error: {name}:3: " in done.stdout
+        assert told in done.stdout
+
+
 def test_properties_of_moving_inputs_can_be_waived(tmp_path: Path) -> None:
     (divider,) = read(tmp_path, ENTRY + 'waive.enable = { reason = "x", until = 2027-01-31 }\n').dividers
     assert [waiver.name for waiver in divider.waivers] == ["enable"]
@@ -213,7 +242,7 @@ def test_a_manifest_that_cant_be_read(tmp_path: Path) -> None:
         (tmp_path / "subharmonic.toml").write_bytes(data)
         with pytest.raises(UserError, match=r"subharmonic\.toml"):
             read_manifest(tmp_path / "subharmonic.toml", {}, cli._spec_of)
-    for name in ("missing.toml", "."):
+    for name in ("missing.toml", "missing/"):
         with pytest.raises(UserError, match="can't read"):
             read_manifest(tmp_path / name, {}, cli._spec_of)
 
@@ -228,6 +257,9 @@ def test_the_nearest_manifest_is_in_force(tmp_path: Path, monkeypatch: pytest.Mo
     assert find_manifest(Path()) == Path("../../subharmonic.toml")
     (inner / "subharmonic.toml").write_text(ENTRY)
     assert find_manifest(Path()) == Path("subharmonic.toml")
+    monkeypatch.chdir(tmp_path)
+    found = read_manifest(Path("a/b"), cli._manifest_options(), cli._spec_of)
+    assert (found.path, found.folder) == (Path("a/b/subharmonic.toml"), Path("a/b"))
 
 
 def test_the_manifest_of_the_cases_names_cases_and_sweeps_a_parameter() -> None:

@@ -37,6 +37,7 @@ from typing import Any, Literal
 
 from prover.errors import UserError, Where
 from prover.spec import Ranges, Spec, read_each
+from prover.verilog.source import printable
 
 NAME = "subharmonic.toml"
 
@@ -115,7 +116,7 @@ class Divider:
         if error.where is not None:
             return error
         named = [name for name in re.findall(r"--([a-z]+(?:-[a-z]+)*)", error.message) if name in self.places]
-        if not named and any(error.message.startswith(file) for file in self.files):
+        if not named and any(error.message.startswith(printable(file)) for file in self.files):
             named = ["files"]
         if not named:
             named = [name for name in re.findall(r"[a-z]+", error.message) if name in self.places]
@@ -142,12 +143,15 @@ def find_manifest(folder: Path) -> Path:
         if (place / NAME).is_file():
             return Path(os.path.relpath(place / NAME))
     raise UserError(
-        f"there is no {NAME} here nor in a folder above", hint="write one, or name a manifest's path"
+        f"there is no {NAME} here nor in a folder above",
+        hint=f"write one, or name a manifest's path; {FORM}",
     )
 
 
 def read_manifest(path: Path, options: Options, spec_of: SpecOf) -> Manifest:
-    """The manifest in a file. Raises UserError, with the line, for whatever is not understood."""
+    """The manifest in a file, or right in a folder. Raises UserError, with the line, for what is not understood."""
+    if path.is_dir():
+        path = path / NAME
     try:
         with path.open("rb") as file:
             data = file.read(MOST_BYTES + 1)

@@ -8,7 +8,9 @@ directives; those that change nothing here (`timescale and its kin) are dropped.
 from __future__ import annotations
 
 import hashlib
+import os
 import re
+import sys
 from bisect import bisect_right
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
@@ -137,6 +139,21 @@ def read_source(
     return _Preprocessor(files, defines or {}, include).run()
 
 
+def _check_name(name: str) -> None:
+    """Raise UserError where no file can be called so here. A manifest has names that no system has given."""
+    try:
+        encoded = os.fsencode(name)
+    except UnicodeEncodeError:
+        where = sys.getfilesystemencoding()
+        raise UserError(
+            f"{printable(name)}: file names are in {where} here, which lacks a character of it",
+            None,
+            "set a locale of UTF-8, such as LC_ALL=C.UTF-8",
+        ) from None
+    if b"\0" in encoded:
+        raise UserError(f"{printable(name)}: no name of a file", None, "name a Verilog source file")
+
+
 def _load(path: Path, name: str, where: Where | None) -> _File:
     try:
         with path.open("rb") as handle:
@@ -182,6 +199,8 @@ class _Preprocessor:
             if not re.fullmatch(r"[A-Za-z_][\w$]*", name, re.ASCII):
                 raise UserError(f"{printable(name)} is no macro name", None, "write --define NAME=TEXT")
             self.macros[name] = _Macro(text, None)
+        for named in (*self.files, *self.include):
+            _check_name(str(named))
         paths = [Path(file) for file in self.files]
         self.roots = [Path(folder).resolve() for folder in (*(p.parent for p in paths), *self.include)]
         for path in paths:
