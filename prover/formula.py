@@ -59,6 +59,9 @@ def read(text: str, option: str) -> Formula:
     if len(plain) > LONGEST:
         raise UserError(f"{option}: a formula of {len(plain)} characters", hint=f"give at most {LONGEST}")
     try:
+        # Python would pass over a comment, and join lines within brackets.
+        if "#" in plain or not plain.isprintable():
+            raise ValueError
         tree = ast.parse(plain, mode="eval").body
     except (SyntaxError, ValueError, MemoryError, RecursionError):
         raise UserError(f"{option} '{plain}' is not a formula", hint=HINT) from None

@@ -74,7 +74,8 @@ def test_numbers_are_exact() -> None:
 @pytest.mark.parametrize(
     "text",
     ["", "2*", "a.real", "a[0]", "f(a)", "[a]", "lambda: 1", "a := 1", "'x'", "1e5", "1j", "min()", "min(a=1)",
-     "a & 1", "a << 1", "~a", "__import__('os')", "max(*a)", "a if b", "(" * 150, "-" * 300, "1\n2", "True"],
+     "a & 1", "a << 1", "~a", "__import__('os')", "max(*a)", "a if b", "(" * 150, "-" * 300, "1\n2", "True",
+     "2*a # + 1", "(2\n*a)", "2*\\\na"],
 )  # fmt: skip
 def test_what_is_no_formula_is_refused_with_a_hint(text: str) -> None:
     with pytest.raises(UserError) as error:
