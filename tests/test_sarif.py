@@ -255,6 +255,53 @@ def test_a_file_from_elsewhere_has_its_whole_address(tmp_path: Path, monkeypatch
     assert "uriBaseId" not in artifact["location"]
 
 
+def prints(folder: Path, *arguments: str) -> dict[str, tuple[str, str, int]]:
+    """Of each result by its fingerprint: rule, kind, and line."""
+    path = folder / "out.sarif"
+    CliRunner().invoke(cli.main, ["check", *arguments, "--sarif", str(path)], catch_exceptions=False)
+    results = json.loads(path.read_text(encoding="utf-8"))["runs"][0]["results"]
+    found = {
+        r["partialFingerprints"]["claim/v1"]: (
+            r["ruleId"],
+            r["kind"],
+            r["locations"][0]["physicalLocation"]["region"]["startLine"],
+        )
+        for r in results
+    }
+    # No two results of a run have one print.
+    assert len(found) == len(results)
+    return found
+
+
+def test_fingerprints_stay_while_lines_move_and_verdicts_change(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    Path("a.v").write_text(STICKS_AT_7)
+    asked = ("a.v", "--ratio", "5", "--high", "4")
+    first = prints(tmp_path, *asked)
+    Path("a.v").write_text("// two\n// lines\n" + STICKS_AT_7)
+    moved = prints(tmp_path, *asked)
+    assert {name: (rule, kind, line + 2) for name, (rule, kind, line) in first.items()} == moved
+    # The count that held itself goes on: what was refuted is proved under the print that it had.
+    Path("a.v").write_text(STICKS_AT_7.replace("count == 3'd4", "count >= 3'd4"))
+    mended = prints(tmp_path, *asked)
+    assert mended.keys() == first.keys()
+    assert {name: (first[name][1], mended[name][1]) for name in first if first[name][0] == "no-stuck"} == {
+        name: ("fail", "pass") for name in first if first[name][0] == "no-stuck"
+    }
+    # Another claim, another file and another working folder: another print, another print, the same.
+    claimed = {name for name, (rule, _, _) in first.items() if rule == "ratio"}
+    assert not claimed & prints(tmp_path, "a.v", "--ratio", "6", "--high", "4").keys()
+    Path("b.v").write_text(Path("a.v").read_text())
+    assert not claimed & prints(tmp_path, "b.v", *asked[1:]).keys()
+    inner = tmp_path / "elsewhere"
+    inner.mkdir()
+    (inner / "a.v").write_text(STICKS_AT_7)
+    monkeypatch.chdir(inner)
+    assert prints(inner, *asked).keys() == first.keys()
+
+
 def test_hostile_texts_stay_plain_text(tmp_path: Path) -> None:
     hostile = "[click](http:0) {0} \x1b[2J\x00 \ud800 \u202e é <b>"
     report = checked(tmp_path, RING, "3")

@@ -20,7 +20,9 @@ was made: the same input gives the same bytes.
 
 from __future__ import annotations
 
+import hashlib
 import os
+from collections import Counter
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from json import dumps
 from pathlib import Path
@@ -62,6 +64,9 @@ LEAST_FOLD = 8
 MOST_VALUES = 32
 """Registers whose values a step holds."""
 
+FINGERPRINT = "claim/v1"
+"""The name of the fingerprint that results have (clause 3.27.17), with the version of how it is made."""
+
 MOST_RELATED = 16
 MOST_WAVES = 3
 
@@ -81,6 +86,8 @@ class Log:
         self.found = found
         self.rules = [module.NAME for module in EVERY] + [MEASURED]
         self.artifacts: dict[str, Object] = {}
+        self.known: Counter[str] = Counter()
+        """How many results have had an identity so far."""
         self.named: dict[str, str] = {}
         """The path of each file by the name that places in it bear."""
 
@@ -94,7 +101,7 @@ class Log:
                 self._artifact(path)
                 self.named.setdefault(printable(path, MAX_SHOWN), path)
             if report is not None:
-                results += _Results(self, report).all()
+                results += _Results(self, report, outcome.title).all()
                 notes += [
                     self._notification("note", note.message, note.where) for note in report.ports.design.notes
                 ]
@@ -127,7 +134,8 @@ class Log:
 
     def _left_open(self, name: str, outcome: Outcome) -> Object:
         where = Where(printable(outcome.name, MAX_SHOWN), 1)
-        return self.result(name, "open", f"{name}: {outcome.open}", self.location(where))
+        identity = (outcome.title, _portable(outcome.name))
+        return self.result(name, "open", f"{name}: {outcome.open}", self.location(where), identity)
 
     def _failure(self, outcome: Outcome) -> Object:
         """Why a divider has no report."""
@@ -141,8 +149,16 @@ class Log:
     def _notification(self, level: str, said: str, where: Where) -> Object:
         return {"level": level, "message": message(said), "locations": [self.location(where)]}
 
-    def result(self, name: str, kind: str, said: str, location: Object, **more: Any) -> Object:
-        """A result of a rule. Only what fails has a level."""
+    def result(
+        self, name: str, kind: str, said: str, location: Object, identity: Sequence[str], **more: Any
+    ) -> Object:
+        """A result of a rule. Only what fails has a level. What its `identity` is with that of the rule tells it from
+        all other results, and is the same in the next run: it says nothing of lines, verdicts and this machine."""
+        named = "\0".join((name, *identity))
+        self.known[named] += 1
+        print_of = hashlib.sha256(
+            f"{named}\0{self.known[named]}".encode(errors="surrogateescape")
+        ).hexdigest()
         return {
             "ruleId": name,
             "ruleIndex": self.rules.index(name),
@@ -150,6 +166,7 @@ class Log:
             "level": "error" if kind == "fail" else "none",
             "message": message(said),
             "locations": [location],
+            "partialFingerprints": {FINGERPRINT: print_of[:32]},
             **more,
         }
 
@@ -187,6 +204,12 @@ def address(path: str) -> Object:
     return {"uri": quote(os.fsencode(inner.replace(os.sep, "/"))), "uriBaseId": ROOT}
 
 
+def _portable(path: str) -> str:
+    """A file's name that is the same on every machine: from the working folder, or without folders if outside it."""
+    inner = address(path)
+    return str(inner["uri"]) if "uriBaseId" in inner else os.path.basename(path)
+
+
 def message(said: str) -> Object:
     """A message object."""
     return {"text": text(said)}
@@ -219,8 +242,8 @@ def _rule(name: str, said: str, level: str) -> Object:
 class _Results:
     """The results on one divider: what its findings say, and where."""
 
-    def __init__(self, log: Log, report: Report) -> None:
-        self.log, self.report = log, report
+    def __init__(self, log: Log, report: Report, title: str) -> None:
+        self.log, self.report, self.title = log, report, title
         self.design = report.ports.design
         self.registers = {register.name: register for register in self.design.registers}
         names = [v.name for v in e.variables([report.ports.output_value])]
@@ -229,24 +252,34 @@ class _Results:
 
     def all(self) -> Iterator[Object]:
         for finding in self.report.findings:
-            shown = _Results(self.log, finding.witness) if finding.witness else self
-            yield shown._of_finding(finding)
+            shown = _Results(self.log, finding.witness, self.title) if finding.witness else self
+            yield shown._of_finding(finding, self._identity(finding.claim))
             for obligation in finding.obligations:
                 location = self.log.location(obligation.where, obligation.register)
-                yield self.log.result(finding.name, "review", f"obligation: {obligation.text}", location)
+                said, identity = f"obligation: {obligation.text}", self._identity("due", obligation.text)
+                yield self.log.result(finding.name, "review", said, location, identity)
         judged = {finding.name for finding in self.report.findings}
         for name in self.log.rules:
             if name not in judged and name != MEASURED:
                 said = f"{self._who()}: nothing is claimed"
-                yield self.log.result(name, "notApplicable", said, self.log.location(self._output()))
+                place = self.log.location(self._output())
+                yield self.log.result(name, "notApplicable", said, place, self._identity())
         for wave in figures.waves(self.report.rhythm, MOST_WAVES):
             said = f"{self._who()}: {wave.text}, from: {', '.join(wave.causes)}"
-            yield self.log.result(MEASURED, "informational", said, self.log.location(self._output()))
+            place = self.log.location(self._output())
+            yield self.log.result(MEASURED, "informational", said, place, self._identity())
+
+    def _identity(self, *more: str) -> list[str]:
+        """What tells this divider, and more about it, from all others in a run and stays as it is in the next."""
+        chosen = {**self.design.parameters, **self.report.ports.holds}
+        values = [f"{name}={value}" for name, value in sorted(chosen.items())]
+        where = _portable(self.design.files[0])
+        return [self.title, where, self.design.top, self.report.ports.output, *values, *more]
 
     def _who(self) -> str:
         return f"{self.design.top}, output {self.report.ports.output}"
 
-    def _of_finding(self, finding: Finding) -> Object:
+    def _of_finding(self, finding: Finding, identity: Sequence[str]) -> Object:
         kind = {"proved": "pass", "refuted": "fail", "open": "open"}[finding.verdict]
         said = f"{self._who()}: {finding.says}"
         if kind != "pass":
@@ -268,7 +301,8 @@ class _Results:
             "facts": dict(finding.facts),
             "assumptions": list(self.report.assumptions),
         }
-        return self.log.result(finding.name, kind, said, self.log.location(self._place(finding)), **more)
+        place = self.log.location(self._place(finding))
+        return self.log.result(finding.name, kind, said, place, identity, **more)
 
     # -- where -----------------------------------------------------------------------------------------------
 
