@@ -44,7 +44,7 @@ if TYPE_CHECKING:
     from prover.pair import Pairing
     from prover.pool import Crew
     from prover.report.look import Look
-    from prover.several import Outcome
+    from prover.several import Lapse, Outcome
 
 PATIENCE = 1.0
 """Seconds a run may last before it shows what it is doing."""
@@ -464,7 +464,7 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
         progress.tell("writing the reports")
         shown = run.rows if any(targets.paths()) else [row for row in run.rows if row.verdict != "proved"]
         found = [row.outcome(kept) for row in shown]
-        written = _results_of(found, targets, told.as_object(run), told.waivers(run))
+        written = _results_of(found, targets, told.as_object(run), told.waivers(run), told.lapses(run))
         texts = [
             told.headed(row, _text_of(outcome, paths))
             for outcome, row, paths in zip(found, shown, written.waves, strict=True)
@@ -855,8 +855,10 @@ def _results_of(
     targets: Targets,
     more: dict[str, Any] | None = None,
     waivers: Sequence[tuple[str, str]] = (),
+    lapses: Sequence[Lapse] = (),
 ) -> Written:
-    """What goes to the targets; `more` goes into the JSON, `waivers` into the page."""
+    """What goes to the targets; `more` goes into the JSON, `waivers` into the page, `lapses` into what other programs
+    collect."""
     from prover.report import several as told
     from prover.several import labels
 
@@ -869,7 +871,7 @@ def _results_of(
             written.results.extend([*waves, *benches])
             written.remarks.extend(f"{outcome.title or outcome.name}: {remark}" for remark in without)
         written.waves.append([wave.path for wave in waves])
-    written.results.extend(_of_all(found, targets))
+    written.results.extend(_of_all(found, targets, lapses))
     if targets.json is not None:
         written.results.append(Result(targets.json, told.render_json(found, more)))
     if targets.html is not None:
@@ -918,17 +920,17 @@ def _exchanged(files: Sequence[str], came: Report | Exception, targets: Targets)
     return _of_all([failed(one, came) if isinstance(came, Exception) else Outcome(one, came)], targets)
 
 
-def _of_all(found: Sequence[Outcome], targets: Targets) -> list[Result]:
+def _of_all(found: Sequence[Outcome], targets: Targets, lapses: Sequence[Lapse] = ()) -> list[Result]:
     """The same on all dividers of a run."""
     results: list[Result] = []
     if targets.junit is not None:
         from prover.report import junit
 
-        results.append(Result(targets.junit, junit.render(found, datetime.now(UTC))))
+        results.append(Result(targets.junit, junit.render(found, datetime.now(UTC), lapses)))
     if targets.sarif is not None:
         from prover.report import sarif
 
-        results.append(Result(targets.sarif, sarif.render(found)))
+        results.append(Result(targets.sarif, sarif.render(found, lapses)))
     return results
 
 

@@ -15,7 +15,7 @@ from pathlib import Path
 
 from prover.content import Content, read_content
 from prover.effort import OutOfEffort
-from prover.errors import UserError
+from prover.errors import UserError, Where
 from prover.findings import Report
 from prover.output import harmless
 from prover.plain import Unreadable
@@ -45,6 +45,16 @@ class Outcome:
     def name(self) -> str:
         """The first file, which holds the divider's top."""
         return self.files[0]
+
+
+@dataclass(frozen=True, slots=True)
+class Lapse:
+    """A waiver of a gate that has expired: whose it is and of which property, what to say of it, and where it stands
+    in the manifest."""
+
+    name: str
+    says: str
+    where: Where
 
 
 @dataclass(frozen=True, slots=True)

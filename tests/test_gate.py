@@ -616,7 +616,7 @@ def test_an_expired_waiver_fails_the_gate(folder: Path) -> None:
 def test_an_expired_waiver_of_something_proved_fails_the_gate_as_well(folder: Path) -> None:
     entry = '[divider.third]\nfiles = "third.v"\nratio = 3\n'
     write(folder, entry + 'waive.recovery = { reason = "old", until = 2020-01-01 }\n')
-    status, found, _ = gate("--html", "out.html")
+    status, found, _ = gate("--html", "out.html", "--junit", "out.xml", "--sarif", "out.sarif")
     assert (status, found) == (1, {"third": ("proved", "new")})
     root = page((folder / "out.html").read_text(encoding="utf-8"))
     # The page is no all-clear either.
@@ -625,6 +625,18 @@ def test_an_expired_waiver_of_something_proved_fails_the_gate_as_well(folder: Pa
     assert told.text.startswith(
         "EXPIRED subharmonic.toml:4: third: recovery was waived until 2020-01-01: old"
     )
+    suites = ElementTree.parse(folder / "out.xml").getroot()
+    assert [(suite.get("name"), suite.get("failures")) for suite in suites] == [
+        ("third", "0"),
+        ("waivers", "1"),
+    ]
+    (failure,) = suites.iter("failure")
+    assert failure.get("message") == "the waiver expired on 2020-01-01: old"
+    log = json.loads((folder / "out.sarif").read_text())["runs"][0]
+    (failed,) = (result for result in log["results"] if result["kind"] == "fail")
+    assert (failed["ruleId"], failed["level"]) == ("waiver", "error")
+    place = failed["locations"][0]["physicalLocation"]
+    assert (place["artifactLocation"]["uri"], place["region"]["startLine"]) == ("subharmonic.toml", 4)
 
 
 def test_a_waiver_of_what_is_proved_by_now_is_told(folder: Path) -> None:

@@ -15,6 +15,7 @@ from prover.gate.ledger import Event
 from prover.gate.runner import Excused, Row, Run
 from prover.output import harmless
 from prover.report.look import Look, finished
+from prover.several import Lapse
 
 Object = dict[str, Any]
 
@@ -138,6 +139,18 @@ def waivers(run: Run) -> list[tuple[str, str]]:
     """Of each waiver its state, and what there is to tell of it as one sentence."""
     told = ((each.state, _waiver(each)) for each in run.excused)
     return [(state, "; ".join(" ".join(line.split()) for line in lines)) for state, lines in told]
+
+
+def lapses(run: Run) -> list[Lapse]:
+    """The waivers that have expired, as reports for other programs take them."""
+    return [
+        Lapse(
+            f"{each.entry or 'all'}: {each.waiver.name}",
+            f"the waiver expired on {each.waiver.until}: {each.waiver.reason}",
+            each.waiver.where,
+        )
+        for each in run.expired
+    ]
 
 
 def _left(days: int) -> str:

@@ -8,7 +8,7 @@ analysis. The host is always `localhost`: which machine it was says nothing abou
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from datetime import datetime
 from xml.etree.ElementTree import Element, SubElement, indent, tostring
 
@@ -18,31 +18,50 @@ from prover.facts import LIMITS
 from prover.findings import Finding, Report
 from prover.output import harmless
 from prover.report import figures, words
-from prover.several import Outcome
+from prover.several import Lapse, Outcome
 
 MOST_WAVES = 3
 
 
-def render(found: Sequence[Outcome], when: datetime) -> str:
-    """The outcomes as XML text, ended by a newline; `when` is the time of the run, of which no zone is told."""
+def render(found: Sequence[Outcome], when: datetime, lapses: Sequence[Lapse] = ()) -> str:
+    """The outcomes as XML text, ended by a newline; `when` is the time of the run, of which no zone is told. Waivers
+    that have expired fail in a suite of their own."""
     root = Element("testsuites")
     for number, outcome in enumerate(found):
         _suite(root, number, outcome, when)
+    if lapses:
+        cases = [(each.name, _said("failure", "expired", each.says)) for each in lapses]
+        _made(root, len(found), lapses[0].where.file, "waivers", when, 0.0, cases)
     indent(root)
     return '<?xml version="1.0" encoding="UTF-8"?>\n' + tostring(root, encoding="unicode") + "\n"
 
 
 def _suite(root: Element, number: int, outcome: Outcome, when: datetime) -> None:
     report = outcome.report
-    cases = list(_cases(outcome))
-    kinds = [None if said is None else said.tag for _, said in cases]
-    seconds = f"{report.seconds if report else 0:.3f}"
     name = outcome.title or (report.ports.design.top if report else outcome.name)
+    seconds = report.seconds if report else 0.0
+    told = "\n".join(_told(report)) if report else ""
+    _made(root, number, outcome.name, name, when, seconds, list(_cases(outcome)), _properties(outcome), told)
+
+
+def _made(
+    root: Element,
+    number: int,
+    package: str,
+    name: str,
+    when: datetime,
+    seconds: float,
+    cases: Sequence[tuple[str, Element | None]],
+    about: Iterable[tuple[str, str]] = (),
+    told: str = "",
+) -> None:
+    """A suite with its cases: the name of each, and the element that says why it did not pass."""
+    kinds = [None if said is None else said.tag for _, said in cases]
     suite = _added(
         root,
         "testsuite",
         id=str(number),
-        package=outcome.name,
+        package=package,
         name=name,
         timestamp=when.strftime("%Y-%m-%dT%H:%M:%S"),
         hostname="localhost",
@@ -50,16 +69,16 @@ def _suite(root: Element, number: int, outcome: Outcome, when: datetime) -> None
         failures=str(kinds.count("failure")),
         errors=str(kinds.count("error")),
         skipped=str(kinds.count("skipped")),
-        time=seconds,
+        time=f"{seconds:.3f}",
     )
     properties = _added(suite, "properties")
-    for key, value in _properties(outcome):
+    for key, value in about:
         _added(properties, "property", name=key, value=value)
     for title, said in cases:
         case = _added(suite, "testcase", name=title, classname=name, time="0.000")
         if said is not None:
             case.append(said)
-    _added(suite, "system-out").text = harmless("\n".join(_told(report))) if report else ""
+    _added(suite, "system-out").text = harmless(told)
     _added(suite, "system-err").text = ""
 
 

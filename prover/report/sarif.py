@@ -42,7 +42,7 @@ from prover.report import figures
 from prover.report.certificate import digest
 from prover.report.wave import UNICODE, Timeline, fold_text, plan, points_of_interest
 from prover.settling import Unsettled
-from prover.several import Outcome
+from prover.several import Lapse, Outcome
 from prover.trace import Rest, Trace
 from prover.verilog.source import MAX_SHOWN, printable
 
@@ -54,6 +54,9 @@ ROOT = "ROOT"
 
 MEASURED = "measured"
 """The rule of results that only inform."""
+
+WAIVER = "waiver"
+"""The rule of waivers that have expired."""
 
 MOST_STEPS = 96
 """Half-cycles told of one counterexample, folds aside."""
@@ -74,17 +77,17 @@ Object = dict[str, Any]
 Values = Mapping[str, int]
 
 
-def render(found: Sequence[Outcome]) -> str:
-    """The outcomes as one log with one run, ended by a newline."""
-    return dumps(Log(found).as_object(), indent=2) + "\n"
+def render(found: Sequence[Outcome], lapses: Sequence[Lapse] = ()) -> str:
+    """The outcomes as one log with one run, ended by a newline. A waiver that has expired is a result that fails."""
+    return dumps(Log(found, lapses).as_object(), indent=2) + "\n"
 
 
 class Log:
     """One run of the tool: the files it read are numbered as results come to speak of them."""
 
-    def __init__(self, found: Sequence[Outcome]) -> None:
-        self.found = found
-        self.rules = [module.NAME for module in EVERY] + [MEASURED]
+    def __init__(self, found: Sequence[Outcome], lapses: Sequence[Lapse] = ()) -> None:
+        self.found, self.lapses = found, lapses
+        self.rules = [*(module.NAME for module in EVERY), MEASURED, WAIVER]
         self.artifacts: dict[str, Object] = {}
         self.known: Counter[str] = Counter()
         """How many results have had an identity so far."""
@@ -109,6 +112,9 @@ class Log:
                 results += [self._left_open(name, outcome) for name in NAMES]
             else:
                 notes.append(self._failure(outcome))
+        for lapse in self.lapses:
+            place = self.location(lapse.where)
+            results.append(self.result(WAIVER, "fail", f"{lapse.name}: {lapse.says}", place, [lapse.name]))
         readable = all(outcome.error is None and not outcome.fault for outcome in self.found)
         run: Object = {
             "tool": {"driver": self._driver()},
@@ -123,6 +129,7 @@ class Log:
     def _driver(self) -> Object:
         rules = [_rule(module.NAME, described(module), "error") for module in EVERY]
         rules.append(_rule(MEASURED, "the wave that the divider makes; nothing is claimed of it", "none"))
+        rules.append(_rule(WAIVER, "no waiver of a gate stands beyond its last day", "error"))
         return {
             "name": "Subharmonic",
             "version": __version__,
@@ -186,7 +193,7 @@ class Log:
         if path not in self.artifacts:
             made: Object = {
                 "location": {**address(path), "index": len(self.artifacts)},
-                "sourceLanguage": "verilog",
+                "sourceLanguage": "toml" if path.endswith(".toml") else "verilog",
             }
             try:
                 made["hashes"] = {"sha-256": digest(Path(path))}
@@ -260,7 +267,7 @@ class _Results:
                 yield self.log.result(finding.name, "review", said, location, identity)
         judged = {finding.name for finding in self.report.findings}
         for name in self.log.rules:
-            if name not in judged and name != MEASURED:
+            if name not in judged and name not in (MEASURED, WAIVER):
                 said = f"{self._who()}: nothing is claimed"
                 place = self.log.location(self._output())
                 yield self.log.result(name, "notApplicable", said, place, self._identity())

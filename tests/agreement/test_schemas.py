@@ -21,8 +21,9 @@ from jsonschema import Draft7Validator
 from lxml import etree
 
 from prover.api import check
+from prover.errors import Where
 from prover.report import junit, sarif
-from prover.several import Outcome, failed
+from prover.several import Lapse, Outcome, failed
 
 WHEN = datetime(2031, 5, 6, 7, 8, 9, tzinfo=UTC)
 WIDE_EFFORT = 2.0
@@ -84,6 +85,13 @@ def test_a_case_is_valid_by_both_schemas(case: Case) -> None:
     # What the schema leaves to the prose of the standard.
     results = log["runs"][0]["results"]
     assert all((result["level"] == "none") == (result["kind"] != "fail") for result in results)
+
+
+def test_expired_waivers_are_valid_by_both_schemas() -> None:
+    lapse = Lapse("third: recovery", "the waiver expired on 2020-01-01: <old>", Where("subharmonic.toml", 4))
+    outcomes = list(found(read_case(CASES / "gauge" / "chopper_by_2.v")))
+    junit_schema().assertValid(etree.fromstring(junit.render(outcomes, WHEN, [lapse]).encode()))
+    assert not list(sarif_schema().iter_errors(json.loads(sarif.render(outcomes, [lapse]))))
 
 
 def test_the_schemas_reject_what_they_should() -> None:
