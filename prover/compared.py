@@ -177,6 +177,9 @@ def assumptions(pair: Pair, outcome: Outcome) -> tuple[str, ...]:
         sure = held is not None and (held.lasting or isinstance(outcome.evidence, Together))
         long = f"for {_half_cycles(held.half_cycles)} or longer" if held and sure else "long enough for both"
         out.append(f"both are reset at the same time, {long}, and released between two edges")
+    if outcome.lag:
+        side, count = ("new", outcome.lag) if outcome.lag > 0 else ("old", -outcome.lag)
+        out.append(f"what the {side} output shows before half-cycle {count} is compared with nothing")
     moving = [each.name for each in pair.inputs if each.moving]
     if moving:
         out.append(

@@ -310,6 +310,18 @@ def test_a_lag_is_found_while_inputs_move(tmp_path: Path) -> None:
     assert "-16 to 16" in found["says"]
 
 
+def test_what_is_compared_with_nothing_is_told(tmp_path: Path) -> None:
+    # By hand: the second output is the first one an input cycle late, and 1 before that.
+    text = "module a (input clk, input rst, output q); reg one, two;\n  always @(posedge clk) {two, one} <= rst ? 2'b10 : {one, ~one};\n"  # fmt: skip
+    old, new = (written(tmp_path, n, f"{text}  assign q = {n};\nendmodule\n") for n in ("one", "two"))
+    found = report(old, new, "--lag", "2")
+    assert found["verdict"] == "proved"
+    assert "what the new output shows before half-cycle 2 is compared with nothing" in found["assumptions"]
+    found = report(new, old, "--lag", "-2")
+    assert found["verdict"] == "proved"
+    assert "what the old output shows before half-cycle 2 is compared with nothing" in found["assumptions"]
+
+
 def test_each_start_may_have_a_lag_of_its_own() -> None:
     # By hand: toggles on falling edges come one half-cycle after rising ones where reset is released while the clock is
     # low, and one before them where it is released while the clock is high.
