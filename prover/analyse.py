@@ -37,11 +37,8 @@ from prover.solve import find
 from prover.spec import Spec
 from prover.system import State, System, cone, lies_at, project
 
-COVERED_FIRST = 16
-COVERED_IF_UNKNOWN = 18
-"""Bits of state up to which a machine's graph comes before a cover: where the wave to be expected is known, and where
-it is not, which leaves a cover little to go by."""
-"""Bits of a state up to which the graph is quicker than to look for a cover."""
+GRAPH_FIRST = 19
+"""Bits of a state, the clock's level among them, up to which the graph is no slower than a cover may be."""
 
 MOST_LOOPS_FOLLOWED = 64
 """Loops of a large graph that are followed state by state to look at their steps."""
@@ -453,8 +450,7 @@ def _by_either(rhythm: Rhythm, goal: Goal | Mean | None, effort: Effort) -> Rhyt
     Covers know waves of one pulse only."""
     several = isinstance(goal, Mean) or (goal is not None and bool(goal.runs))
     uneven = goal is None and any(wave and len(wave.runs) > 2 for wave in map(Orbit.wave, rhythm.orbits))
-    most = COVERED_FIRST if goal else COVERED_IF_UNKNOWN
-    if (several or uneven or rhythm.system.bits <= most) and graph.fits(rhythm.system):
+    if (several or uneven or rhythm.system.bits <= GRAPH_FIRST) and graph.fits(rhythm.system):
         return _by_graph(rhythm, goal, effort)
     if several or isinstance(goal, Mean):
         why = (

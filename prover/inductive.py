@@ -7,6 +7,7 @@ The order does not matter: there is one largest subset. If under it nothing is b
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 from prover import expr as e
 from prover.effort import Effort
@@ -68,6 +69,7 @@ class _Steps:
 
     def largest(self) -> list[int]:
         """The largest subset of the lines that every step keeps, by number."""
+        asker = _Asker([self.system.within, self.system.allowed], self.now, self.then, self.effort)
         left = list(range(len(self.lines)))
         while True:
             asked = list(left)
@@ -75,8 +77,7 @@ class _Steps:
                 # A line at a time: one question about all of them together is far harder than all about one.
                 if number not in left:
                     continue
-                goal = [*self.before(left), self.system.allowed, e.bvnot(self.then[number])]
-                model = find(e.conj(goal), self.effort)
+                model = asker.broken(number, left)
                 if model is not None:
                     holds = self.evaluate(*(model.get(name, 0) for name in self.inputs))
                     left = [i for i in left if holds[i]]
@@ -113,3 +114,45 @@ class _Steps:
         if solver.check(*assumed) != z3.unsat:
             return set(left)
         return {marks[str(each)] for each in solver.unsat_core()}
+
+
+class _Asker:
+    """One solver for all questions whether a step breaks a line: the lines are told to it once, and each question
+    assumes some of them."""
+
+    def __init__(
+        self, given: Sequence[Expr], now: Sequence[Expr], then: Sequence[Expr], effort: Effort
+    ) -> None:
+        import z3
+
+        self.effort = effort
+        self.solver = fresh_solver()
+        context = self.solver.ctx
+        self.variables = e.variables([*given, *now, *then])
+        terms = e.z3_terms([e.conj(given), *now, *then], context=context)
+        self.solver.add(terms[0] == 1)
+        before, after = terms[1 : 1 + len(now)], terms[1 + len(now) :]
+        self.holds = [z3.Bool(f"!holds {i}", context) for i in range(len(now))]
+        self.breaks = [z3.Bool(f"!breaks {i}", context) for i in range(len(then))]
+        for mark, term in zip(self.holds, before, strict=True):
+            self.solver.add(z3.Implies(mark, term == 1))
+        for mark, term in zip(self.breaks, after, strict=True):
+            self.solver.add(z3.Implies(mark, term == 0))
+
+    def broken(self, number: int, left: Sequence[int]) -> dict[str, int] | None:
+        """A step from where some lines hold to where one does not, or None. Raises OutOfEffort."""
+        import z3
+
+        self.effort.check()
+        self.solver.set("timeout", max(1, int(self.effort.left * 1000)))
+        answer = self.solver.check(self.breaks[number], *(self.holds[i] for i in left))
+        if answer == z3.unsat:
+            return None
+        if answer != z3.sat:
+            raise OutOfEffort(f"the solver gave up while {self.effort.doing}")
+        model = self.solver.model()
+        out = {}
+        for v in self.variables:
+            value: Any = model.eval(z3.BitVec(v.name, v.width, self.solver.ctx), model_completion=True)
+            out[v.name] = value.as_long()
+        return out
