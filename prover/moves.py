@@ -356,9 +356,9 @@ def _invariants(
     """Lines from which a claim follows, checked; or a run that breaks it; or neither. `make` gives the system with so
     many of the machine's comparisons told."""
     effort.say("looking at random runs")
-    for bits in (0, MOST_COMPARED):
+    for number, bits in itertools.product(SAMPLES, (0, MOST_COMPARED)):
         system = make(bits)
-        found = mine.sampled(system, effort, seeds)
+        found = mine.sampled(system, effort, seeds, number)
         if found.broken is not None:
             return None, found.broken
         for all_of_them in (False, True):
@@ -374,6 +374,9 @@ def _invariants(
                 return (system, proved), None
     return None, None
 
+
+SAMPLES = (1, 2, 3)
+"""Random numbers with which runs are drawn: one lot may have missed what another shows."""
 
 MOST_COMPARED = 4
 """Comparisons of the machine's own by which states are told apart where less does not do."""
