@@ -33,6 +33,8 @@ from prover.ports import recognise
 from prover.report.html import page as html_page
 from prover.report.html import recovery, render, render_several, states
 from prover.report.html.markup import element, prose
+from prover.report.html.waves import Scene, figure
+from prover.report.wave import Drawing, Piece, Row
 from prover.several import Outcome
 from prover.spec import Spec
 
@@ -454,6 +456,15 @@ def test_no_number_of_the_ruler_is_crossed_by_a_tear(tmp_path: Path) -> None:
         assert not [
             (x, at) for at in tears for x, wide in spans if x - wide / 2 < at + 3 and at < x + wide / 2
         ]
+
+
+def test_a_value_too_long_for_its_box_is_told_all_the_same() -> None:
+    clock = Row("clk", 1, lambda at: at % 2, lambda begins, ends: None)
+    ring = Row("ring", 90, lambda at: 10**20 + at, lambda begins, ends: 10**20)
+    pieces = (Piece(0, 3), Piece(3, 40, folded=True), Piece(40, 42))
+    scene = Scene(Drawing("half-cycle", 0, 0, (clock, ring), pieces), 0, (), "a ring", "ring")
+    told = re.findall(r">(?:<title>ring=(\d+)</title>)?…<", figure(scene))
+    assert [int(value) - 10**20 for value in told] == [0, 1, 2, 0, 40, 41]
 
 
 # -- two compared ------------------------------------------------------------------------------------------

@@ -17,7 +17,7 @@ from prover.ports import Ports
 from prover.report import several, words
 from prover.report.html import compared
 from prover.report.html.markup import Markup, element, joined, prose
-from prover.report.html.sections import Part, Place, about, parts, ring_mark, section
+from prover.report.html.sections import MOST_STACKED, Part, Place, about, parts, ring_mark, section
 from prover.several import Outcome
 
 MOST_OPEN = 4
@@ -131,7 +131,8 @@ def _index(found: Sequence[Outcome]) -> Markup:
             element("td", element("span", outcome.name, class_="name"), class_="long", data_head=names[3]),
         ]
         rows.append(element("tr", cells))
-    table = element("table", element("thead", element("tr", head)), element("tbody", rows), class_="told")
+    kind = "told" if len(rows) <= MOST_STACKED else None
+    table = element("table", element("thead", element("tr", head)), element("tbody", rows), class_=kind)
     title = element("h2", "All dividers", id="index-title", class_="title")
     inner = element("div", table, class_="scroll")
     return element("section", title, inner, id="index", class_="index", aria_labelledby="index-title")

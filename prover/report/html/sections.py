@@ -35,6 +35,9 @@ MOST_VALUES = 100
 MOST_ARRIVALS = 40
 MOST_WORDS = 8
 
+MOST_STACKED = 16
+"""Rows of a table of texts up to which their cells stand one below the other in a narrow window."""
+
 UNIT = "Period and high time are in half-cycles."
 
 LONG = frozenset({"for example", "reason for waiving it", "what is wrong, or the worst"})
@@ -146,7 +149,7 @@ def definitions(rows: Sequence[tuple[str, Content]], kind: str | None = None) ->
 def _table(head: Sequence[str], rows: Sequence[Sequence[Content]], kind: str | None = None) -> Markup:
     """A table in a box of its own, which scrolls if it is too wide. The first cell of a row is its heading;
     those under a heading of `LONG` may be broken. Where the window is narrow the cells of a row stand one below the
-    other, each beside its heading, but for tables of a kind."""
+    other, each beside its heading, but for tables of a kind and for long ones."""
     titles = (element("th", name, scope="col") for name in head)
     kinds = ["long" if name in LONG else "short" for name in head]
     body = (
@@ -160,9 +163,8 @@ def _table(head: Sequence[str], rows: Sequence[Sequence[Content]], kind: str | N
         )
         for row in rows
     )
-    made = element(
-        "table", element("thead", element("tr", titles)), element("tbody", body), class_=kind or "told"
-    )
+    kind = kind or ("told" if len(rows) <= MOST_STACKED else None)
+    made = element("table", element("thead", element("tr", titles)), element("tbody", body), class_=kind)
     return element("div", made, class_="scroll")
 
 

@@ -328,17 +328,23 @@ def _values(row: Row, top: float, frame: _Frame, places: Places) -> Iterator[Mar
             if kept is None:
                 yield element("path", d=_hatched(begins, ends, high, low), class_="hatch")
             else:
-                yield element("text", str(kept), x=(begins + ends) / 2, y=middle + 4, class_="value")
+                yield _value(row, kept, begins, ends, middle)
             continue
         for first, last, value in value_runs(row, piece):
             a = x + (first - piece.begins) * frame.column
             b = x + (last - piece.begins) * frame.column
             opens, closes = first > piece.begins or first == 0, last < piece.ends
             boxes.append(_box(a, b, high, low, opens, closes))
-            shown = str(value)
-            if len(shown) * CHARACTER + 4 <= b - a:
-                yield element("text", shown, x=(a + b) / 2, y=middle + 4, class_="value")
+            yield _value(row, value, a, b, middle)
     yield element("path", d="".join(boxes), class_="line thin")
+
+
+def _value(row: Row, value: int | None, a: float, b: float, middle: float) -> Markup:
+    """A value in the room from a to b; one that is too long for it is told where it is pointed at."""
+    shown = str(value)
+    fits = len(shown) * CHARACTER + 4 <= b - a
+    inner = [shown] if fits else [element("title", f"{row.name}={shown}"), "…"]
+    return element("text", inner, x=(a + b) / 2, y=middle + 4, class_="value")
 
 
 def _box(a: float, b: float, high: float, low: float, opens: bool, closes: bool) -> str:
