@@ -10,7 +10,7 @@ from collections.abc import Sequence
 from typing import Any
 
 from prover import expr as e
-from prover.effort import Effort
+from prover.effort import Effort, OutOfEffort
 from prover.expr import Expr
 from prover.solve import find, fresh_solver
 from prover.watch import Line, Watch
