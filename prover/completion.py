@@ -11,7 +11,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import click
-from click.shell_completion import CompletionItem
+from click.shell_completion import BashComplete, CompletionItem, add_completion_class
 
 MOST_READ = 1 << 20
 """Bytes of a file that are looked at for modules."""
@@ -19,6 +19,17 @@ MOST_READ = 1 << 20
 MODULE = re.compile(r"^\s*module\s+(?:automatic\s+|static\s+)?(\\\S+|[A-Za-z_][\w$]*)", re.MULTILINE)
 
 Items = list[CompletionItem]
+
+
+class Bash(BashComplete):
+    """As click has it, but that no blank comes after a sign that something has to follow."""
+
+    source_template = BashComplete.source_template.replace(
+        "COMPREPLY+=($value)\n", "COMPREPLY+=($value)\n            [[ $value == *= ]] && compopt -o nospace\n"
+    )
+
+
+add_completion_class(Bash)
 
 
 def files(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
@@ -51,6 +62,6 @@ def _modules_in(path: str) -> Iterator[str]:
 
 def properties(context: click.Context, parameter: click.Parameter, begun: str) -> Items:
     """The properties, with the sign that a reason follows."""
-    from properties import NAMES
+    from properties import ALL
 
-    return [CompletionItem(f"{name}=") for name in NAMES if name.startswith(begun)]
+    return [CompletionItem(f"{name}=") for name in ALL if name.startswith(begun)]

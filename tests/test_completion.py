@@ -74,9 +74,9 @@ def test_the_modules_of_the_files_are_offered(tmp_path: Path) -> None:
 
 
 def test_properties_are_offered_with_a_place_for_the_reason() -> None:
-    from properties import NAMES
+    from properties import ALL
 
-    assert texts("check", "--waive", "") == [f"{name}=" for name in NAMES]
+    assert texts("check", "--waive", "") == [f"{name}=" for name in ALL]
     assert texts("check", "--waive", "rec") == ["recovery="]
 
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import os
+import pty
 import re
 import subprocess
 import sys
@@ -19,6 +21,43 @@ COMP_CWORD=$((${{#COMP_WORDS[@]}} - 1))
 _subharmonic_completion subharmonic
 printf '%s\\n' "${{COMPREPLY[@]}}"
 """
+
+
+def test_no_blank_comes_after_a_property_that_waits_for_its_reason(tmp_path: Path) -> None:
+    """As a user sees it: Tab is pressed in an interactive bash, and the rest is typed."""
+    program = tmp_path / "subharmonic"
+    program.write_text(f'#!/bin/sh\nPYTHONPATH="{ROOT}" exec "{sys.executable}" -m prover "$@"\n')
+    program.chmod(0o755)
+    (tmp_path / "rc").write_text(
+        f'PATH="{tmp_path}:$PATH"\nPS1="ready> "\neval "$(_SUBHARMONIC_COMPLETE=bash_source subharmonic)"\n'
+    )
+    ours, theirs = pty.openpty()
+    shell = subprocess.Popen(
+        ["bash", "--noprofile", "--rcfile", str(tmp_path / "rc"), "-i"],
+        stdin=theirs,
+        stdout=theirs,
+        stderr=theirs,
+        cwd=tmp_path,
+        env={**os.environ, "TERM": "dumb"},
+        start_new_session=True,
+    )
+    os.close(theirs)
+    seen = ""
+
+    def until(wanted: str) -> None:
+        nonlocal seen
+        while wanted not in seen:
+            seen += os.read(ours, 4096).decode()
+
+    until("ready> ")
+    os.write(ours, b"subharmonic check --waive no\t")
+    until("no-stuck=")
+    os.write(ours, b"because\n")
+    until("because")
+    assert "no-stuck=because" in seen
+    os.write(ours, b"exit\n")
+    shell.wait(60)
+    os.close(ours)
 
 
 @pytest.mark.parametrize(
