@@ -101,6 +101,9 @@ def status_after(work: Callable[[], object]) -> int:
     except (KeyboardInterrupt, click.Abort):
         _complain("interrupted")
         return Status.INTERRUPTED
+    except MemoryError:
+        _complain("open: out of memory; nothing is claimed")
+        return Status.OPEN
     except Exception as fault:
         if _out_of_effort(fault):
             _complain(f"open: {fault}; nothing is claimed\nhint: give more --effort")

@@ -19,7 +19,7 @@ from dataclasses import dataclass, field
 from queue import Empty, SimpleQueue
 from typing import Protocol
 
-from prover.task import Answer, Message, Task, collected
+from prover.task import OUT_OF_MEMORY, Answer, Message, Task, collected
 
 Tell = Callable[[str], None]
 
@@ -77,6 +77,9 @@ class Worker:
             return Answer(
                 open=f"no answer after {task.limit:g} seconds, past its effort: its process was ended"
             )
+        if process.returncode == -signal.SIGKILL:
+            # Nothing of ours sends this one: that is how a system gets memory back.
+            return Answer(open=f"its process was killed from outside, as where a system is {OUT_OF_MEMORY}")
         return Answer(fault=f"its process {_how_it_ended(process.returncode)}")
 
     def close(self) -> None:

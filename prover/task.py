@@ -32,6 +32,8 @@ from prover.spec import Spec
 
 Message = dict[str, Any]
 
+OUT_OF_MEMORY = "out of memory: fewer --workers leave more to each"
+
 BETWEEN = 0.2
 """Seconds between two messages of progress."""
 
@@ -193,6 +195,8 @@ def work(task: Task, say: Callable[[Message], None]) -> None:
         say({"error": freeze(told, content)[0], "content": content.digest if content else ""})
     except OutOfEffort as out:
         say({"open": str(out)})
+    except MemoryError:
+        say({"open": OUT_OF_MEMORY})
     except Exception as fault:
         if os.environ.get("SUBHARMONIC_TRACEBACK"):
             import traceback

@@ -72,9 +72,9 @@ def test_every_task_is_answered_with_who_answers(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("how", "says"),
     [
-        ("os.kill(os.getpid(), 9)", "its process was ended by signal SIGKILL"),
+        ("os.kill(os.getpid(), 11)", "its process was ended by signal SIGSEGV"),
         ("os._exit(3)", "its process ended with status 3"),
-        ("raise MemoryError('no more')", "MemoryError: no more"),
+        ("raise ValueError('no more')", "ValueError: no more"),
         ("print('noise', flush=True)", "proved"),
     ],
 )
@@ -84,6 +84,18 @@ def test_one_that_crashes_or_prints_costs_only_itself(
     monkeypatch.setattr("prover.pool.MAIN", BAD.format(when="before", how=how))
     found = [told(answer) for answer in answers(tasks(tmp_path))]
     assert found == ["proved", says, "proved"]
+
+
+@pytest.mark.parametrize("how", ["os.kill(os.getpid(), 9)", "raise MemoryError"])
+def test_one_that_memory_runs_out_for_is_left_open(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, how: str
+) -> None:
+    """By signal 9 a system ends what has taken too much."""
+    monkeypatch.setattr("prover.pool.MAIN", BAD.format(when="before", how=how))
+    found = answers(tasks(tmp_path))
+    assert [told(found[0]), told(found[2])] == ["proved", "proved"]
+    assert (found[1].fault, found[1].report) == ("", None)
+    assert "out of memory: fewer --workers leave more to each" in found[1].open
 
 
 def test_one_that_hangs_costs_only_itself(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
