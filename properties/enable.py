@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from properties.glitch_free import facts_of
+from prover.domain import among
 from prover.findings import Fact, Finding
 from prover.spec import Spec
 
@@ -18,8 +19,12 @@ def judge(found: Moves, spec: Spec) -> Finding:
     """No pulse of any run is shorter than nominal; where the divider does not run the output comes to stay; where it
     runs the wave is right some half-cycles after the last move."""
     (name,) = found.question.moving
+    kept = found.question.rigid
+    told = f"however {name} moves"
+    if kept:
+        told += f" while {' and '.join(kept)} keep{'s' * (len(kept) == 1)} any one value{among(spec, kept)}"
     claim = (
-        f"however {name} moves, no pulse is shorter than nominal, the output parks while the divider is stopped, and "
+        f"{told}, no pulse is shorter than nominal, the output parks while the divider is stopped, and "
         "the ratio comes back"
     )
     facts: dict[str, Fact] = {"inputs": [name]}

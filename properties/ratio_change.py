@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from properties.glitch_free import facts_of
+from prover.domain import among
 from prover.findings import Fact, Finding
 from prover.spec import Spec
 
@@ -17,9 +18,10 @@ NAME = "ratio-change"
 def judge(found: Moves, spec: Spec) -> Finding:
     """Every pulse of every run lies between the shortest and the longest nominal one of its level, among the values
     that the inputs have had so far; some half-cycles after the last move the wave is that of the last value."""
-    names = " and ".join(found.question.moving)
+    moving = found.question.moving
+    told = f"however {' and '.join(moving)} move{'s' * (len(moving) == 1)}{among(spec, moving)}"
     claim = (
-        f"however {names} moves, no pulse is shorter than the shortest or longer than the longest nominal one of the "
+        f"{told}, no pulse is shorter than the shortest or longer than the longest nominal one of the "
         "values so far, and the last ratio comes to hold"
     )
     facts: dict[str, Fact] = {"inputs": list(found.question.moving)}

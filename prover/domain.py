@@ -28,6 +28,15 @@ def domain_text(inputs: Iterable[tuple[str, Ranges]], where: Iterable[str]) -> s
     return told + (f", where {conditions}" if conditions else "")
 
 
+def among(spec: Spec, names: Iterable[str]) -> str:
+    """The values that inputs may take, in words that go on from their names: " within div=1..15, where div != 3"; ""
+    for all that they have."""
+    given = {**spec.each, **spec.moving}
+    bounded = [(name, ranges) for name in names if (ranges := given.get(name)) is not None]
+    told = domain_text(bounded, (condition.text for condition in spec.where))
+    return f" within {told}" if bounded else told
+
+
 def ranges_text(ranges: Iterable[tuple[int, int]]) -> str:
     """Ranges as they are written: 0,2,8..15."""
     return ",".join(str(low) if low == high else f"{low}..{high}" for low, high in ranges)
@@ -58,7 +67,7 @@ class Domain:
             most = (1 << design.inputs[name]) - 1
             if ranges is not None and ranges[-1][1] > most:
                 raise UserError(
-                    f"--each {name}={ranges_text(ranges)}: the port has {design.inputs[name]} bits",
+                    f"{name}={ranges_text(ranges)}: the port has {design.inputs[name]} bits",
                     _where(design, name),
                     hint=f"give values from 0 to {most}",
                 )

@@ -43,7 +43,7 @@ def report(design: Design, spec: Spec, effort: Effort, judge: Judge) -> Report:
     for number, question in enumerate(asked):
         answers.append(moves.answer(ports, question, effort.share(effort.left / (len(asked) - number))))
     findings = with_waivers([*found.findings, *(_finding(each, spec) for each in answers)], spec)
-    assumed = _assumptions([*varying, *enables])
+    assumed = _assumptions(asked)
     return replace(
         found,
         spec=replace(spec, ratio=found.spec.ratio, high=found.spec.high),
@@ -59,14 +59,24 @@ def _finding(answer: Moves, spec: Spec) -> Finding:
     return ratio_change.judge(answer, spec) if answer.question.varies else enable.judge(answer, spec)
 
 
-def _assumptions(names: Sequence[str]) -> list[str]:
-    told = " and ".join(names)
-    one = "moves" if len(names) == 1 else "move"
+def _assumptions(asked: Sequence[Question]) -> list[str]:
+    """What is assumed of the moves, in a sentence."""
+    told = []
+    for question in asked:
+        name = "ratio-change" if question.varies else "enable"
+        moves = f"in {name} {_doing(question.moving, 'move')}"
+        told.append(
+            moves + (f" while {_doing(question.rigid, 'keep')} any one value" if question.rigid else "")
+        )
     return [
-        f"in ratio-change and enable {told} {one} at most once between two edges of the clock, all bits at once, and "
-        "all settles before the next edge, in the order of the micro-steps, with no pulse that the move makes on the "
-        "way; everywhere else they are held"
+        f"{' and '.join(told)}, at most once between two edges of the clock, all bits at once, and all settles "
+        "before the next edge, in the order of the micro-steps, with no pulse that the move makes on the way; "
+        "everywhere else they are held"
     ]
+
+
+def _doing(names: Sequence[str], verb: str) -> str:
+    return f"{' and '.join(names)} {verb}{'s' * (len(names) == 1)}"
 
 
 # -- who is what -------------------------------------------------------------------------------------------
