@@ -965,13 +965,16 @@ def _certificate(
     """The certificate and what to say of it: it may bear out less than the report says."""
     if path is None:
         return [], []
+    from properties import WHILE_MOVING
     from prover.effort import Effort
     from prover.report.certificate import certify
 
     made = certify(report, files, Effort(report.spec.effort, tell))
-    left = ", ".join(made.left_open)
-    remark = f"note: the certificate leaves {left} open: what that rests on is too large to be written"
-    return [Result(path, made.text)], [remark] if left else []
+    moved = [name for name in made.left_open if name in {module.NAME for module in WHILE_MOVING}]
+    left = ", ".join(name for name in made.left_open if name not in moved)
+    remarks = [f"note: the certificate leaves {left} open: what that rests on is too large to be written"]
+    held = f"note: the certificate is of the divider with its inputs held: it bears out nothing of {', '.join(moved)}"
+    return [Result(path, made.text)], [*(remarks if left else []), *([held] if moved else [])]
 
 
 def _is_folder(path: str) -> bool:

@@ -9,13 +9,13 @@ CaDiCaL refutes its clauses, with a proof that is checked).
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
-from prover import clausal, solvers
+from prover import clausal, domain, solvers
 from prover.certificate import Obligation
 from prover.design import Design
 from prover.effort import Effort, OutOfEffort
@@ -211,7 +211,13 @@ def derive(text: str, bases: Sequence[Path], effort: Effort) -> Derived:
             "\n".join(different) or "the text is not in the form in which certificates are written"
         )
     scripts = tuple((each["name"], each["script"]) for each in stated["obligations"])
-    return Derived(ports.design.top, findings, made.obligations, scripts)
+    return Derived(with_held(ports.design.top, ports.holds), findings, made.obligations, scripts)
+
+
+def with_held(top: str, holds: Mapping[str, int]) -> str:
+    """A divider's name with what its inputs are held at."""
+    held = domain.values_text(holds)
+    return f"{top}, with {held} held" if held else top
 
 
 def _object(text: str) -> dict[str, Any]:

@@ -45,7 +45,8 @@ def derive(stated: dict[str, Any], text: str, bases: Sequence[Path], effort: Eff
             "\n".join(different) or "the text is not in the form in which certificates are written"
         )
     scripts = tuple((each["name"], each["script"]) for each in stated["obligations"])
-    return recheck.Derived(design.top, made.report.findings, made.obligations, scripts)
+    top = recheck.with_held(design.top, subject.spec.holds)
+    return recheck.Derived(top, made.report.findings, made.obligations, scripts)
 
 
 def subject_in(stated: dict[str, Any]) -> Subject:
