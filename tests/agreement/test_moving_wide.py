@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -93,6 +94,8 @@ def test_other_ways_to_take_a_divisor_over_are_proved(name: str, width: int, tmp
     path.write_text(text)
     ratio = f"{2 * scale}*(div+1)"
     ports, question = asked(path, "--set", f"W={width}", "--moving", "div", "--ratio", ratio)
+    # A compare of words may pulse within a half-cycle, which is told with nothing moving.
+    question = replace(question, steady=name != "decoded")
     found = moves.answer(ports, question, Effort(300))
     # As many of the longest pulses as the comment says may be as they were.
     assert (found.proved, found.back) == (True, pulses * scale * (2 << width)), found.open
