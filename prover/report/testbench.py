@@ -84,6 +84,9 @@ def render(report: Report, finding: Finding) -> str:
         f"module {_name(report, finding)};",
         # Before any escaped name: preprocessors may take a quote in one for the beginning of a string.
         "  task ends_badly; `TESTBENCH_FAIL; endtask",
+        "`ifdef TESTBENCH_DUMP",
+        "  initial begin $dumpfile(`TESTBENCH_DUMP); $dumpvars; end",
+        "`endif",
         "",
         *(f"  {line}".rstrip() for line in _body(finding, dut, played)),
         "endmodule",

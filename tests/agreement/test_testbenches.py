@@ -20,6 +20,7 @@ import pytest
 from agreement.simulator import delay_gates
 from agreement.test_cases_agreement import spec_of
 from cases_format import CASES, Case, Group, cases, read_case
+from vcdvcd import VCDVCD
 
 from prover.api import check
 from prover.findings import Finding
@@ -571,6 +572,21 @@ def test_the_status_is_what_the_user_defines(tmp_path: Path) -> None:
     made, _ = testbench.benches(check([path], Spec(ratio=Fraction(4))))
     ran = simulate(tmp_path, made[0], text, ["-DTESTBENCH_FAIL=$finish_and_return(42)"])
     assert (ran.status, ran.printed.endswith("\nFAILED\n")) == (42, True)
+
+
+def test_all_waves_are_dumped_where_the_user_names_a_file(tmp_path: Path) -> None:
+    text = "module top (input clk, output reg q); always @(posedge clk) q <= ~q; endmodule\n"
+    path = tmp_path / "source.v"
+    path.write_text(text)
+    made, _ = testbench.benches(check([path], Spec(ratio=Fraction(4))))
+    simulate(tmp_path, made[0], text)
+    assert not (tmp_path / "wave.vcd").exists()
+    simulate(tmp_path, made[0], text, ['-DTESTBENCH_DUMP="wave.vcd"'])
+    dump = VCDVCD(str(tmp_path / "wave.vcd"))
+    (name,) = (signal for signal in dump.signals if signal.endswith(".dut.q"))
+    # By 2, as it is written: 200 units from rise to fall.
+    rises = [time for time, value in dump[name].tv if value == "1"][-3:]
+    assert {later - sooner for sooner, later in pairwise(rises)} == {400}
 
 
 def test_a_long_run_is_bounded(tmp_path: Path) -> None:
