@@ -735,19 +735,23 @@ def test_history_tells_what_changed(folder: Path) -> None:
     gate()
     write(folder, MANIFEST.replace("high = 4", "high = 5"))
     gate()
-    write(folder, EXCUSED.replace("UNTIL", "2999-12-31"), **TEXTS)
-    gate()
+    for until in ("2999-12-31", "2998-12-31", "2020-02-29"):
+        write(folder, EXCUSED.replace("UNTIL", until), **TEXTS)
+        gate()
     lines = run("history", "sticks.v").stdout.splitlines()
     assert lines[0].split() == ["UTC", "verdict", "divider", "content", "what", "changed"]
     told = [line.split(maxsplit=5)[2:] for line in lines[1:]]
     assert [(verdict, name) for verdict, name, *_ in told] == [
-        *(("REFUTED", "sticks"), ("PROVED", "sticks"), ("REFUTED", "sticks"), ("PROVED", "sticks"))
+        *(("REFUTED", "sticks"), ("PROVED", "sticks"), ("REFUTED", "sticks"), ("PROVED", "sticks")),
+        *(("PROVED", "sticks"), ("REFUTED", "sticks")),
     ]
     assert [changed for *_, changed in told] == [
         "first seen; no-stuck, recovery",
         "sources",
         "high 4 -> 5; high-time, recovery, reset",
-        "sources, high 5 -> 4, waiver of no-stuck, waiver of recovery",
+        "sources, high 5 -> 4, a waiver of no-stuck, a waiver of recovery",
+        "another waiver of no-stuck, another waiver of recovery",
+        "no waiver of no-stuck, no waiver of recovery; no-stuck, recovery",
     ]
     contents = [content for _, _, content, _ in told]
     assert contents[0] == contents[3]

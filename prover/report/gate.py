@@ -240,7 +240,9 @@ def _changed(before: Event | None, now: Event) -> str:
     told += _pairs(before.options, now.options)
     if before.prover != now.prover:
         told.append(f"prover {before.prover} -> {now.prover}")
-    told += [f"waiver of {name}" for name in _pairs_of(before.waived, now.waived)]
+    for name in _pairs_of(before.waived, now.waived):
+        how = "no" if name not in now.waived else "another" if name in before.waived else "a"
+        told.append(f"{how} waiver of {name}")
     if before.files != now.files:
         told.append("names of files")
     return ", ".join(told) or "the verdict"
