@@ -103,6 +103,9 @@ def _cut(word: Expr, high: int, low: int, memo: dict[tuple[Expr, int, int], Expr
             lower: Expr = yield _cut(a, high, 0, memo)
             parts.append(lower)
         made = e.rebuild(word, parts)
+    elif op in ("bvadd", "bvsub", "bvmul", "bvneg") and high < word.width - 1:
+        sum_: Expr = yield _cut(word, high, 0, memo)
+        made = e.extract(sum_, high, low)
     elif op == "ite":
         then: Expr = yield _cut(args[1], high, low, memo)
         other: Expr = yield _cut(args[2], high, low, memo)
