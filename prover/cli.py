@@ -98,8 +98,9 @@ def status_after(work: Callable[[], object]) -> int:
     except click.ClickException as error:
         _complain(_usage_error(error))
         return Status.USAGE
-    except (KeyboardInterrupt, click.Abort):
-        _complain("interrupted")
+    except (KeyboardInterrupt, click.Abort) as stop:
+        # One that click has caught is the cause of its own.
+        _complain("; ".join(filter(None, ("interrupted", str(stop.__cause__ or stop)))))
         return Status.INTERRUPTED
     except MemoryError:
         _complain("open: out of memory; nothing is claimed")
@@ -461,9 +462,13 @@ def gate(manifest: str | None, ledger: str | None, **options: Any) -> Status:
     sources = (str(listed.folder / file) for divider in listed.dividers for file in divider.files)
     check_targets(targets.paths(), [str(listed.path), *dict.fromkeys(sources)])
     with Progress(sys.stderr) as progress, closing(_opened(listed, ledger, progress)) as kept:
-        run = gates.run_gate(
-            listed, kept, crew, afresh=options["afresh"], recheck=options["recheck"], tell=progress.tell
-        )
+        how = {name: options[name] for name in ("afresh", "recheck")}
+        try:
+            run = gates.run_gate(listed, kept, crew, **how, tell=progress.tell)
+        except KeyboardInterrupt:
+            raise KeyboardInterrupt(
+                "what was judged by then is kept, and the next run goes on from there"
+            ) from None
         progress.tell("writing the reports")
         shown = run.rows if any(targets.paths()) else [row for row in run.rows if row.verdict != "proved"]
         found = [row.outcome(kept) for row in shown]

@@ -8,7 +8,7 @@ import subprocess
 import sys
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import closing
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from datetime import date
 from pathlib import Path
 from typing import Any
@@ -64,6 +64,7 @@ class Inline:
     folder: Path
     works: bool = True
     lost_after: int | None = None
+    lost_by: BaseException = field(default_factory=lambda: UserError("the cluster is gone"))
     apart: bool = False
 
     def run(self, tasks: Sequence[Task], tell: Callable[[str], None]) -> Iterator[tuple[int, Answer]]:
@@ -71,7 +72,7 @@ class Inline:
         for number, asked in enumerate(tasks):
             assert self.works
             if number == self.lost_after:
-                raise UserError("the cluster is gone")
+                raise self.lost_by
             said: list[task.Message] = []
             task._laid_out(Task.from_json(asked.as_json()), str(self.folder), said.append)
             os.chdir(home)
@@ -414,6 +415,16 @@ task.main(place)
     assert status == 70
     assert found == {**NEW, "third": ("fault", "new"), "counter[N=4]": ("open", "new")}
     assert gate()[1] == {**KEPT, "third": ("proved", "new"), "counter[N=4]": ("proved", "new")}
+
+
+def test_an_interrupted_run_says_what_is_kept(folder: Path, inline: Inline) -> None:
+    inline.lost_after, inline.lost_by = 2, KeyboardInterrupt()
+    result = run("gate")
+    assert (result.exit_code, result.stdout) == (130, "")
+    assert "interrupted; what was judged by then is kept" in result.stderr
+    inline.lost_after = None
+    found = gate()[1]
+    assert [source for _, source in found.values()] == ["kept", "kept", "new", "new", "new"]
 
 
 def test_what_is_known_is_told_also_where_whoever_judges_is_lost(folder: Path, inline: Inline) -> None:
