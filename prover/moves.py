@@ -305,7 +305,7 @@ def _watched(ports: Ports, machine: Machine, question: Question, effort: Effort)
     if not pulse.proved:
         return pulse
     back = _back(machine, question, len(found[1]), effort)
-    return replace(back if question.varies else _idle(ports, question, back, effort), owed=pulse.owed)
+    return replace(back if question.varies else _idle(ports, question, back, found, effort), owed=pulse.owed)
 
 
 def _pulsing(
@@ -328,23 +328,82 @@ def _pulsing(
     return _under(Moves(question, True), way)
 
 
-def _idle(ports: Ports, question: Question, found: Moves, effort: Effort) -> Moves:
-    """The answer with what the output does while the divider is stopped: it stays, on every loop of every state."""
-    if not found.proved or question.active is None or question.rigid:
-        return replace(found, proved=False, open=found.open or "where the output parks was not found out")
-    still = with_holds(ports, {question.moving[0]: 1 - question.active})
-    rhythm = analyse.rhythm_of(still, Spec(start="any"), effort)
-    (low, high) = e.evaluate([question.nominal.low, question.nominal.high], {})
-    if not rhythm.complete or not rhythm.loops:
-        why = rhythm.open or "not all loops are known"
-        return replace(found, proved=False, open=f"where the output parks was not found out: {why}")
-    if all(loop.stuck for loop in rhythm.loops):
-        return replace(found, parked=tuple(sorted({loop.wave.runs[0][0] for loop in rhythm.loops})))
-    if all(Goal(low + high, high).fits(loop.wave) for loop in rhythm.loops):
-        return found
-    return replace(
-        found, proved=False, open="from some state the output never parks while the divider is stopped"
-    )
+def _idle(
+    ports: Ports, question: Question, found: Moves, invariant: tuple[Watch, tuple[Line, ...]], effort: Effort
+) -> Moves:
+    """The answer with what the output does while the divider is stopped: it stays, on every loop of every state, or
+    by what holds of all runs."""
+    why = found.open or "where the output parks was not found out"
+    if not found.proved or question.active is None:
+        return replace(found, proved=False, open=why)
+    if not question.rigid:
+        still = with_holds(ports, {question.moving[0]: 1 - question.active})
+        rhythm = analyse.rhythm_of(still, Spec(start="any"), effort.share(effort.left / 2))
+        (low, high) = e.evaluate([question.nominal.low, question.nominal.high], {})
+        if rhythm.complete and rhythm.loops:
+            if all(loop.stuck for loop in rhythm.loops):
+                return replace(found, parked=tuple(sorted({loop.wave.runs[0][0] for loop in rhythm.loops})))
+            if all(Goal(low + high, high).fits(loop.wave) for loop in rhythm.loops):
+                return found
+        why = f"{why}: {rhythm.open or 'there are several kinds of loops'}"
+    try:
+        parked = _parked(question, *invariant, effort)
+    except OutOfEffort as out:
+        return replace(found, proved=False, open=str(out))
+    if parked is None:
+        return replace(found, proved=False, open=why)
+    levels, within = parked
+    return replace(found, parked=levels, still=within)
+
+
+MOST_SETTLING = 6
+"""Half-cycles after a stop, as synchronisers take them, from which on the output is looked at."""
+
+
+def _parked(
+    question: Question, system: Watch, lines: Sequence[Line], effort: Effort
+) -> tuple[tuple[int, ...], int] | None:
+    """The levels that the output keeps for good some half-cycles after a stop, wherever lines hold that every step
+    keeps, and half-cycles within which it is at one; None where this is not shown.
+
+    A level is kept if no further edge leaves it. One that is not has to end: no pulse of it that goes on while the
+    divider is stopped is longer than nominal."""
+    machine, nominal = system.machine, question.nominal
+    if machine.choices:
+        return None
+    effort.say("looking at where the output parks")
+    widths = dict(system.variables)
+    active = e.var(question.moving[0], 1)
+    stopped = e.eq(active, e.const(1 - (question.active or 0), 1))
+    inside = e.conj([system.within, *(line.expr(widths) for line in lines), stopped])
+
+    def never(*goal: Expr) -> bool:
+        question = e.conj([inside, *goal])
+        if find(question, effort) is not None:
+            return False
+        if not certificate.discharge(certificate.Obligation("where the output parks", question), effort):
+            raise InternalError("where the output parks fails its check")
+        return True
+
+    state: Sequence[Expr] = [e.var(name, width) for name, width in machine.variables]
+    levels = [machine.output]
+    for settled in range(MOST_SETTLING + 1):
+        state = e.substitute(machine.edge, dict(zip(machine.names, state, strict=True)))
+        levels += e.substitute([machine.output], dict(zip(machine.names, state, strict=True)))
+        was, then = levels[-2:]
+        kept = [at for at in (0, 1) if never(e.eq(was, e.const(at, 1)), e.eq(then, e.const(1 - at, 1)))]
+        if len(kept) == 2:
+            return (0, 1), settled
+        if kept:
+            leaves = e.const(1 - kept[0], 1)
+            edges = e.bvadd(
+                e.zero_extend(e.var(watched.EDGES, widths[watched.EDGES]), 1),
+                e.const(1, widths[watched.EDGES] + 1),
+            )
+            longest = e.resize(nominal.of(1 - kept[0]), edges.width, False)
+            if never(e.eq(levels[0], leaves), e.eq(levels[1], leaves), e.bvule(longest, edges)):
+                return (kept[0],), settled + _greatest(nominal.of(1 - kept[0]), nominal.domain, effort)
+    return None
 
 
 Make = Callable[[int], Watch]

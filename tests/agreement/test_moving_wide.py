@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from fractions import Fraction
 from pathlib import Path
 
 import pytest
 from cases_format import CASES
 from test_moves import asked
 
-from prover import moves
+from prover import Spec, check, moves
 from prover.effort import Effort
 
 GAUGE = CASES / "gauge"
@@ -99,3 +100,32 @@ def test_other_ways_to_take_a_divisor_over_are_proved(name: str, width: int, tmp
     found = moves.answer(ports, question, Effort(300))
     # As many of the longest pulses as the comment says may be as they were.
     assert (found.proved, found.back) == (True, pulses * scale * (2 << width)), found.open
+
+
+STOPS = {
+    # By hand: what is stopped where its output is low has at most one high pulse left, of as many half-cycles as the
+    # ratio has input cycles; a count that stands still leaves the output as it is, which its loops show, without a time.
+    "low": ("if (run | out)", (0,), 24_000_000),
+    "at once": ("if (run)", (0, 1), None),
+}
+
+STOPPED = """
+module stopped (input clk, rst, run, output reg out);
+  reg [23:0] count;
+  always @(posedge clk)
+    if (rst) {out, count} <= 0;
+    else GUARD
+      if (count == 24'd11_999_999) {out, count} <= {~out, 24'd0};
+      else count <= count + 1'b1;
+endmodule
+"""
+
+
+@pytest.mark.parametrize("name", STOPS)
+def test_where_a_wide_divider_parks(name: str, tmp_path: Path) -> None:
+    guard, parked, within = STOPS[name]
+    path = tmp_path / "stopped.v"
+    path.write_text(STOPPED.replace("GUARD", guard))
+    found = check([path], Spec(ratio=Fraction(24_000_000), moving={"run": None})).findings[-1]
+    assert (found.name, found.verdict) == ("enable", "proved"), found.says
+    assert (found.facts["parked"], found.facts["park_half_cycles"]) == (list(parked), within)
