@@ -7,7 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 
 import pytest
-from machines import random_design
+from machines import random_design, random_expression
 
 from prover import certificate, recode
 from prover import expr as e
@@ -17,6 +17,7 @@ from prover.ports import Ports, recognise
 from prover.settling import settle
 from prover.spec import Spec
 from prover.system import State, System, cone, project
+from prover.verilog.words import cut, reads
 
 PREFIX = "number[W-1] = gray[W-1]; for (i = W-2; i >= 0; i = i-1) number[i] = number[i+1] ^ gray[i];"
 SHIFTS = "number = gray; for (i = 1; i < W; i = i*2) number = number ^ (number >> i);"
@@ -117,3 +118,27 @@ endmodule
 """
     kept = recode.live(from_text(tmp_path, text))
     assert kept.variables == (("count", 8), ("copy[7]", 1), ("clk", 1))
+
+
+def test_selections_from_sums_are_what_plain_selections_are() -> None:
+    rng = random.Random(5)
+    leaves = [e.var("a", 9), e.var("b", 9)]
+    for _ in range(600):
+        even = e.const(rng.getrandbits(9) << rng.randrange(9) & 511, 9)
+        other = rng.choice([even, random_expression(rng, leaves, 9, 2)])
+        op = rng.choice(["bvadd", "bvadd", "bvsub", "bvmul"])
+        word = e.binary(op, random_expression(rng, leaves, 9, 3), other)
+        high = rng.randrange(9)
+        low = rng.randrange(high + 1)
+        values = {leaf.name: rng.getrandbits(9) for leaf in leaves}
+        found, wanted = e.evaluate([cut(word, high, low), word], values)
+        assert found == (wanted >> low) & ((1 << (high - low + 1)) - 1)
+
+
+@pytest.mark.parametrize(
+    ("step", "bit", "mask"), [(1, 25, (1 << 26) - 1), (1 << 28, 31, 15 << 28), (12, 6, 124)]
+)
+def test_a_bit_of_a_sum_hangs_on_those_from_which_it_gets_a_carry(step: int, bit: int, mask: int) -> None:
+    # By the addition that is taught at school; below the constant's lowest one there is nothing to carry.
+    count = e.var("count", 32)
+    assert reads([cut(e.bvadd(count, e.const(step, 32)), bit, bit)]) == {"count": mask}

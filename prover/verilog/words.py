@@ -103,6 +103,13 @@ def _cut(word: Expr, high: int, low: int, memo: dict[tuple[Expr, int, int], Expr
             lower: Expr = yield _cut(a, high, 0, memo)
             parts.append(lower)
         made = e.rebuild(word, parts)
+    elif op == "bvadd" and (still := min(low, _zeros_below(args))):
+        # Where a constant is zero nothing is carried.
+        upper = []
+        for a in args:
+            higher: Expr = yield _cut(a, high, still, memo)
+            upper.append(higher)
+        made = e.extract(e.bvadd(*upper), high - still, low - still)
     elif op in ("bvadd", "bvsub", "bvmul", "bvneg") and high < word.width - 1:
         sum_: Expr = yield _cut(word, high, 0, memo)
         made = e.extract(sum_, high, low)
@@ -123,6 +130,11 @@ def _cut(word: Expr, high: int, low: int, memo: dict[tuple[Expr, int, int], Expr
         made = e.extract(word, high, low)
     memo[word, high, low] = made
     return made
+
+
+def _zeros_below(args: Sequence[Expr]) -> int:
+    """How many of the lowest bits are zero in one of the words for certain."""
+    return max(((a.value & -a.value).bit_length() - 1 for a in args if a.is_const and a.value), default=0)
 
 
 def reads(roots: Iterable[Expr]) -> dict[str, int]:
