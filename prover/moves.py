@@ -132,7 +132,14 @@ class _Claimed:
 
 def limit_rows(machine: Machine, question: Question) -> int:
     """Limits that the claim comes to, at most."""
-    return 4 << machine.moving_bits if question.varies else 2
+    most = 4 << machine.moving_bits if question.varies else 2
+    if monitor.fits(machine, most) or machine.bits + machine.moving_bits > MOST_COUNTED_BITS:
+        return most
+    return len(limits_of(machine, question).level)
+
+
+MOST_COUNTED_BITS = 18
+"""Bits of a state and the moving inputs up to which the different nominal lengths are counted."""
 
 
 def limits_of(machine: Machine, question: Question) -> Limits:

@@ -273,3 +273,18 @@ def test_waivers_name_properties_of_moves() -> None:
         OVERTAKEN, "--ratio", "2*(div+1)", "--moving", "div=0..3", "--waive", "ratio-change=set while halted"
     )
     assert result.exit_code == 0, result.output
+
+
+def test_few_values_of_a_wide_port_are_searched_whole(tmp_path: Path) -> None:
+    """By hand: a new count is loaded as a pulse ends. From 16 half-cycles of the old count, just begun, to 2 of the new
+    one: right from the last 2 of the old pulse on."""
+    path = tmp_path / "top_bits.v"
+    path.write_text(
+        "module top_bits (input clk, rst, input [7:0] div, output reg q);\n  reg [2:0] count;\n"
+        "  always @(posedge clk)\n    if (rst) {q, count} <= 0;\n"
+        "    else if (count == 0) begin count <= div[7:5]; q <= ~q; end\n    else count <= count - 1;\nendmodule\n"
+    )
+    values = ",".join(str(32 * i) for i in range(8))
+    ports, question = asked(path, "--moving", f"div={values}", "--ratio", "2*(div//32+1)")
+    found = moves.answer(ports, question, Effort(60))
+    assert (found.proved, found.back, found.exact) == (True, 14, True), found.open
