@@ -224,6 +224,30 @@ def _gone_round(
         kept, longer = following, longer + 2
 
 
+def _left(joint: Joint, held: Held) -> set[State]:
+    """All states under reset, however long it is held and however the inputs move: registers, clock, inputs."""
+    registers = len(joint.both.design.registers)
+    names = [name for name, _ in joint.own]
+    moving = [names.index(name.removesuffix(" moved")) for name, _ in joint.moves]
+    rest, edge = e.compile_step(held.rest, names), e.compile_step(held.edge, names)
+    move = e.compile_step(held.move, [*names, *(name for name, _ in joint.moves)])
+    every = list(itertools.product(*(range(1 << width) for _, width in joint.moves)))
+
+    def onward(state: State) -> Iterator[State]:
+        after = (*edge(*state), 1 - state[registers], *state[registers + 1 :])
+        for values in every:
+            then = list(after)
+            for place, value in zip(moving, values, strict=True):
+                then[place] = value
+            yield (*move(*after, *values), *then[registers:])
+
+    states = itertools.product(*(range(1 << width) for _, width in joint.own))
+    left = {(*rest(*state), *state[registers:]) for state in states}
+    while len(following := {then for state in left for then in onward(state)}) < len(left):
+        left = following
+    return left
+
+
 def certain(held: Held) -> Held | None:
     """Reset held, if nothing of it hangs on what x stands for."""
     known = e.variables([*held.rest, *held.edge, *held.move, *held.release])
@@ -245,6 +269,9 @@ def lasts(joint: Joint, start: Start, values: Model) -> bool:
     names = [*(r.name for r in joint.both.design.registers), joint.both.clock]
     first = tuple(e.evaluate(start.under, known))
     inputs = {name: known.get(name, 0) for name in joint.both.free}
+    small = sum(width for _, width in joint.own) <= MOST_START_BITS
+    if joint.moves and small and certain(held) is not None:
+        return (*first, *inputs.values()) in _left(joint, held)
     choices = [v.name for v in e.variables(held.edge) if v.name.startswith("?")]
     edge = e.compile_step(held.edge, [*names, *inputs, *choices])
     others = (*inputs.values(), *(0 for _ in choices))
