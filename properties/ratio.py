@@ -38,6 +38,8 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding:
         rule = OnAverage(Mean(spec.ratio))
         rounds = [replace(orbit, lead=()) for orbit in rhythm.orbits if orbit.closed]
         lengths = {span.length for orbit in rounds for span in spans_of(orbit, gaps)}
+        if rhythm.accumulator is not None:
+            lengths = {2 * near(spec.ratio) for near in (floor, ceil)}
         facts["measured_gaps_half_cycles"] = sorted(lengths)
     else:
         rule = Exactly("rise-to-rise gap", gaps, spec.period)

@@ -34,7 +34,8 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding | None:
     if release is None:
         return None
     said = claim(spec)
-    goal = goal_of(spec, [each.wave for each in release.runs])
+    adds = rhythm.accumulator
+    goal = adds.goal if adds is not None else goal_of(spec, [each.wave for each in release.runs])
     facts = _facts(release)
     late = {freed.flop.register: freed for freed in _that_matter(release, goal) if freed.flop}
     if late:
@@ -47,7 +48,7 @@ def judge(rhythm: Rhythm, spec: Spec) -> Finding | None:
     if short is not None:
         return _refuted(release, said, facts, *short)
     obligations = tuple(_obligations(release, goal))
-    why = _open(release, spec)
+    why = _open(release, spec, adds is not None)
     if why:
         return Finding(NAME, "open", said, why, METHOD, facts=facts, obligations=obligations)
     held = release.held
@@ -203,13 +204,14 @@ def _never_right_if_late(release: Release, goal: Goal) -> Broken | None:
 # -- what is open, owed, and told --------------------------------------------------------------------------
 
 
-def _open(release: Release, spec: Spec) -> str:
+def _open(release: Release, spec: Spec, adds: bool) -> str:
+    """Why nothing is claimed, "" if there is no reason. With an accumulator every late release ends well."""
     if release.open:
         return release.open
     if not release.on_time:
         return "no state that reset leaves is known"
-    for freed in release.runs:
-        if freed.orbit is None or freed.wave is None:
+    for freed in release.on_time if adds else release.runs:
+        if freed.orbit is None or (freed.wave is None and not freed.right):
             return f"{freed.cause}: {_unknown(freed)}"
     for level in (0, 1):
         here = [freed for freed in release.on_time if freed.clock == level]
@@ -260,7 +262,7 @@ def _that_matter(release: Release, goal: Goal) -> Iterator[Freed]:
 
 
 def _blemishes(freed: Freed, goal: Goal) -> Iterator[Pulse]:
-    for pulse in pulses(freed):
+    for pulse in pulses(freed) if goal is not NOWHERE else ():
         if pulse.length not in _nominal(pulse.level, goal):
             yield pulse
 

@@ -148,6 +148,9 @@ def judge_runs(rhythm: Rhythm, name: str, claim: str, rule: Rule, facts: dict[st
     """Whether every measured span follows the rule, on the orbits of the rhythm's scope.
 
     Without start states the scope is every loop of every power-up state."""
+    if rhythm.accumulator is not None:
+        # It was found for this claim, and shows it of every run.
+        return Finding(name, "proved", claim, rule.holds, rhythm.methods["orbit"], facts=facts)
     if rhythm.scope == "any":
         return _on_loops(rhythm, name, claim, rule, facts)
     found: Verdict = "proved" if rhythm.orbits else "open"

@@ -9,9 +9,11 @@ from __future__ import annotations
 import random
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
+from math import ceil
 
-from prover import certificate, glitch, graph, linear, orbit, path, recode, reset, tables
+from prover import accumulator, certificate, glitch, graph, linear, orbit, path, recode, reset, tables
 from prover import expr as e
+from prover.accumulator import Accumulator
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError, UserError
 from prover.expr import Expr
@@ -36,6 +38,9 @@ from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
 from prover.system import State, System, cone, lies_at, project
+
+LONGEST_SHOWN = 4000
+"""Half-cycles of a run that are shown where its round is not followed."""
 
 GRAPH_FIRST = 19
 """Bits of a state, the clock's level among them, up to which the graph is no slower than a cover may be."""
@@ -101,7 +106,9 @@ def _begun(
         return _nothing_known(ports, spec, system, settling, scope, why), system, held, under
     won = _races_won(ports, settling, starts, effort)
     machine, starts = _machine(system, starts, effort)
-    orbits = _orbits(machine, starts, effort)
+    adds = _accumulator(machine, spec, starts, effort)
+    orbits = _orbits(machine, starts, effort) if adds is None else _begun_only(machine, starts, adds)
+    methods = {"orbit": "orbit of each start state, traced with jumps; every step checked"}
     rhythm = Rhythm(
         system=machine,
         settling=settling,
@@ -116,8 +123,9 @@ def _begun(
         reset_half_cycles=held.half_cycles if held else None,
         unforced=held.unforced if held else (),
         open=held.problem if held else "",
-        methods={"orbit": "orbit of each start state, traced with jumps; every step checked"},
+        methods=methods if adds is None else {"orbit": adds.method(), "power-up": adds.method()},
         races_won=won,
+        accumulator=adds,
     )
     return rhythm, system, held, under
 
@@ -182,6 +190,37 @@ def _orbits(system: System, starts: Sequence[Start], effort: Effort) -> tuple[Or
         known |= orbit.onward(run.loop)
         found.append(run)
     return tuple(found)
+
+
+def _accumulator(system: System, spec: Spec, starts: Sequence[Start], effort: Effort) -> Accumulator | None:
+    """What shows a claim on average of a machine too wide for its graph; None where that is not so from the start."""
+    if spec.ratio is None or not spec.mean or graph.fits(system) or not starts:
+        return None
+    try:
+        found = accumulator.look(
+            system, starts[0].state, Mean(spec.ratio, spec.high), effort.share(effort.left / 3)
+        )
+    except OutOfEffort:
+        return None
+    if found is None:
+        return None
+    runs = _begun_only(system, starts, found)
+    return found if all(accumulator.starts_well(system, found, run) for run in runs) else None
+
+
+def _begun_only(system: System, starts: Sequence[Start], adds: Accumulator) -> tuple[Orbit, ...]:
+    """The first pulses of orbits whose round is not followed."""
+    return tuple(_first_pulses(system, start.state, adds) for start in starts)
+
+
+def _first_pulses(system: System, state: State, adds: Accumulator) -> Orbit:
+    """The beginning of a run: at least the first few pulses, or as many as there is room for."""
+    beats: list[path.Beat] = []
+    for _ in range(min(LONGEST_SHOWN, adds.worst + 8 * ceil(adds.mean))):
+        beats.append(path.Beat(state, system.out(state)))
+        state = system.next(state)
+    widths = tuple(width for _, width in system.variables)
+    return Orbit(path.folded(beats, widths), (), widths, "a round that is not followed")
 
 
 def follow(
@@ -300,6 +339,7 @@ def _release(
     effort: Effort,
 ) -> Release:
     """Every release of reset, followed as long as there is time."""
+    adds = rhythm.accumulator
     effort.say("releasing reset")
     limit = _limit(ports, rhythm.settling)
     found = releases(ports, under, held, limit)
@@ -319,6 +359,9 @@ def _release(
         if everything is None:
             return freed
         state = recode.placed(everything, whole, machine)
+        if adds is not None:
+            run = _first_pulses(machine, state, adds)
+            return replace(freed, orbit=run, right=accumulator.gets_right(machine, adds, state))
         if state not in done:
             run = follow(machine, state, ours, known, refuted)
             done[state] = run, run.wave()
@@ -433,6 +476,10 @@ def _goal(spec: Spec, rhythm: Rhythm) -> Goal | Mean | None:
 
 def _with_power_up(rhythm: Rhythm, whole: System, goal: Goal | Mean | None, effort: Effort) -> Rhythm:
     """The rhythm completed with every power-up state, by the first engine that can take the machine."""
+    adds = rhythm.accumulator
+    if adds is not None:
+        recovery = Recovery(adds.worst, adds.slowest is not None, adds.slowest)
+        return replace(rhythm, recovery=recovery, never_stuck=True)
     found = _by_either(rhythm, goal, effort)
     lost = found.recovery.lost if found.recovery else None
     for run in (lost, found.stuck):

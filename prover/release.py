@@ -79,6 +79,7 @@ class Freed:
     flop     the flip-flop that is released an edge later, None if all are released together
     orbit    the run from that state on; None until it is followed
     wave     what it runs into; None where that is not known
+    right    whether the wave is known to be right from that state on, though it is not written out
     """
 
     start: State
@@ -90,6 +91,7 @@ class Freed:
     flop: Flop | None = None
     orbit: Orbit | None = None
     wave: Wave | None = None
+    right: bool = False
 
     def followed(self, orbit: Orbit | None, wave: Wave | None) -> Freed:
         """The same with its run."""

@@ -22,6 +22,7 @@ from prover.settling import Settling
 from prover.system import State, System
 
 if TYPE_CHECKING:
+    from prover.accumulator import Accumulator
     from prover.certificate import Stage
     from prover.glitch import Glitches
     from prover.release import Release
@@ -311,6 +312,7 @@ class Rhythm:
     shown      orbits of some power-up states, such as examples of loops, for findings to be shown by
     good       the good states; None where they are not known
     glitches   whether the output may pulse within a half-cycle; None where nothing was claimed
+    accumulator  what shows the claim on average of every state, and stands for a round that is too long to follow
     release    what reset does; None for a divider without one, and where nothing is claimed
     races_won  the wave from reset if the edge won each race against a clear; None where there is no race
     """
@@ -336,6 +338,7 @@ class Rhythm:
     good: Good | None = None
     glitches: Glitches | None = None
     release: Release | None = None
+    accumulator: Accumulator | None = None
 
     def orbit_from(self, state: State) -> Orbit:
         """The orbit of a state: one that is shown, or followed now."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from math import ceil
 
 from prover.facts import loop_orbits
 from prover.findings import Counterexample, Report
@@ -44,7 +45,8 @@ def waves(rhythm: Rhythm, most: int) -> list[Shown]:
     causes: dict[str, list[str]] = {}
     shown: dict[str, Orbit] = {}
     for start, orbit in zip(rhythm.starts, rhythm.orbits, strict=True):
-        text = words.of_orbit(orbit)
+        adds = rhythm.accumulator
+        text = words.of_orbit(orbit) if adds is None else words.of_accumulator(adds)
         causes.setdefault(text, []).append(start.cause)
         shown.setdefault(text, orbit)
     if not rhythm.starts:
@@ -60,15 +62,22 @@ def waves(rhythm: Rhythm, most: int) -> list[Shown]:
 def steady(report: Report, orbit: Orbit, extent: Extent) -> Drawing | None:
     """Clock and output from a rise on, under the numbers of the source edges that it falls on; twice round if
     that is short. None for a wave that isn't known or never changes."""
-    wave = orbit.wave()
-    if wave is None or wave.period is None:
-        return None
+    wave, adds = orbit.wave(), report.rhythm.accumulator
     timeline = Timeline(orbit)
-    rise = next(
-        t for t in timeline.edges(max(1, timeline.lead), timeline.once + wave.period + 1) if timeline.level(t)
-    )
-    rounds = 2 if wave.period <= extent.most // 3 else 1
-    ends = rise + rounds * wave.period + 2
+    if adds is not None:
+        # Of a round that is not followed the first three gaps.
+        begins, period = max(1, adds.worst), 3 * ceil(2 * adds.mean)
+        edges = timeline.edges(begins, orbit.lead_half_cycles)
+    elif wave is None or wave.period is None:
+        return None
+    else:
+        period = wave.period
+        edges = timeline.edges(max(1, timeline.lead), timeline.once + period + 1)
+    rise = next(t for t in edges if timeline.level(t))
+    rounds = 2 if period <= extent.most // 3 else 1
+    ends = rise + rounds * period + 2
+    if adds is not None:
+        ends = min(ends, orbit.lead_half_cycles)
     points = points_of_interest(timeline, rise, ends, None)
     pieces = plan(rise, ends, points, extent.margin, extent.most, extent.least_fold)
     clock_high = timeline.state(rise)[-1]

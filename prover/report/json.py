@@ -137,6 +137,9 @@ def _from_reset(rhythm: Rhythm) -> Object | None:
     """The wave of the first start state that has one (reset released at either level, or initial values)."""
     for orbit in rhythm.orbits:
         wave = _wave(orbit)
+        if rhythm.accumulator is not None:
+            goal = rhythm.accumulator.goal
+            wave |= {"period_half_cycles": goal.period, "high_half_cycles": goal.high}
         if wave["period_half_cycles"] is not None:
             return wave
     return None

@@ -5,7 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterator
 from fractions import Fraction
 from itertools import pairwise
+from math import ceil, floor
 
+from prover.accumulator import Accumulator
 from prover.arrival import Glitch
 from prover.each import ValueRow, row_text
 from prover.facts import number
@@ -182,6 +184,17 @@ def of_orbit(orbit: Orbit) -> str:
     if wave is None:
         return f"not known: {orbit.why}" if orbit.why else "a round of too many runs to write out"
     return of_wave(wave)
+
+
+def of_accumulator(found: Accumulator) -> str:
+    """The wave of a round that is too long to follow."""
+    goal, gaps = found.goal, sorted({2 * floor(found.mean), 2 * ceil(found.mean)})
+    count = Fraction(goal.period, 2) / found.mean
+    highs = sorted(set(found.runs(1)))
+    told = [" or ".join(map(str, lengths)) for lengths in (gaps, highs)]
+    return (
+        f"period {goal.period} half-cycles with {count} pulses: gaps of {told[0]} half-cycles, high {told[1]}"
+    )
 
 
 def of_wave(wave: Wave) -> str:
