@@ -284,6 +284,10 @@ divider("generate if (1) wire c = clk; endgenerate"),
         divider("wire signed [3:0] net = $signed(count) >>> 1 ** 2;"),
 divider("wire [3:0] net = $clog2(5) % 3 - $unsigned(count);"),
     ],
+    "real constants": [
+        divider("localparam integer N = 27e6 / 2 - 1; wire net = count >= 57.6e3 / 9600 - 0.5;"),
+        divider("localparam integer N = $rtoi($ceil(2.5)) + $itor(3) / $floor(2.5);"),
+    ],
     "selects and concatenation": [
         divider("reg [7:0] r; reg c; always @(posedge clk) {c, r[count +: 2]} <= {3{r[count]}} + r[5 -: 2];")
     ],
@@ -328,8 +332,9 @@ REFUSED = {
         clocked("wait (q) q <= 1;"),
         divider("reg q; initial forever #5 q = ~q;"),
     ],
-    "reals, random numbers, files": [
-        divider("wire [3:0] net = 4 * 0.5;"),
+    "real variables, random numbers, files": [
+        divider("real net;"),
+        divider("wire [3:0] net = 7.5 % 2;"),
         clocked("q <= $random;"),
         divider('reg [3:0] m [0:3]; initial $readmemh("m.hex", m);'),
     ],

@@ -252,3 +252,71 @@ def test_refusal(tmp_path: Path, body: str, message: str) -> None:
         design(tmp_path, body)
     assert caught.value.where is not None
     assert caught.value.where.line == 2
+
+
+@pytest.mark.parametrize(
+    ("text", "value"), [("35.7", 36), ("35.5", 36), ("-1.5", -2), ("1.5", 2), ("0.49999999999999994", 0)]
+)
+def test_a_real_is_rounded_where_it_is_assigned(tmp_path: Path, text: str, value: int) -> None:
+    """The examples of clause 4.8.2, ties away from zero, and the double next below a half."""
+    assert outcomes(design(tmp_path, f"assign y = {text};")) == {value & 255}
+    assert outcomes(design(tmp_path, f"localparam signed [7:0] P = {text}; assign y = P;")) == {value & 255}
+
+
+@pytest.mark.parametrize("text", ["a < 6.5", "6.5 > a", "a <= 6.5", "!(a > 6.5)", "!(6.5 <= a)", "a <= 6.0"])
+def test_a_limit_with_a_fraction_divides_the_counts(tmp_path: Path, text: str) -> None:
+    made = design(tmp_path, f"assign y = {text};", 1)
+    assert [outcomes(made, a=a) for a in (0, 6, 7, 255)] == [{1}, {1}, {0}, {0}], "clause 5.1.7"
+
+
+def test_a_count_is_never_a_fraction(tmp_path: Path) -> None:
+    made = design(tmp_path, "parameter N = 50e6/9600; assign y = a == N;", 1)
+    assert outcomes(made, a=208) == {0}
+    assert "never holds" in str(made.notes[0])
+
+
+def test_a_parameter_takes_its_own_type(tmp_path: Path) -> None:
+    path = tmp_path / "m.v"
+    path.write_text(
+        "module m #(parameter real F = 27, parameter integer N = F/2, parameter V = 2.5, parameter [3:0] R = 2.5)\n"
+        "(input clk, output [7:0] y); assign y = V * 2; endmodule\n"
+    )
+    made = read_design([path])
+    # A fraction has no place among whole numbers; V is given its override's type (clause 12.2).
+    assert made.parameters == {"F": 27, "N": 14, "R": 3}
+    assert outcomes(made) == {5}
+    made = read_design([path], parameters={"F": 8, "V": 3})
+    assert made.parameters == {"F": 8, "N": 4, "V": 3, "R": 3}
+    assert outcomes(made) == {6}
+
+
+@pytest.mark.parametrize(
+    ("body", "message"),
+    [
+        ("assign y = 255.5;", "doesn't fit 8 bits"),
+        ("assign y = 1e999 > 1;", "too large"),
+        ("assign y = 1e308 * 10 > 1;", "too large"),
+        ("assign y = 10.0 ** 400 > 1;", "too large"),
+        ("assign y = (-2.0) ** 0.5 > 1;", "no value"),
+        ("assign y = 0.0 ** 0 > 1;", "no value"),
+        ("assign y = 64'd9007199254740993 + 0.5 > 1;", "no exact real"),
+        ("assign y = $rtoi(3e9);", "32 bits"),
+        ("assign y = $itor(2.5);", "itor takes"),
+        ("assign y = $rtoi(1.5, 2);", "one argument"),
+        ("assign y = $clog2(8.5);", "real number 8.5"),
+        ("assign y = a[1.0];", "real number"),
+        ("assign y = {2.0{a}};", "real number 2.0"),
+        ("assign y = ~1.5;", "real number"),
+        ("assign y = 2 ** 0.5 | 1;", "real number"),
+        ("assign y = (a[0] ? 1.5 : 2.5);", "known constant"),
+        ("assign y = {8{a}} < 1.5;", "64 bits"),
+        ("parameter signed P = 2.5; assign y = P;", "range"),
+        ("reg r; always @* case (a) 1.0: r = 1; default: r = 0; endcase", "real number"),
+        ("wire [7:0] #1.5 w = a; real v; assign y = w;", "real isn't supported"),
+    ],
+)
+def test_a_real_that_is_refused(tmp_path: Path, body: str, message: str) -> None:
+    with pytest.raises(UserError, match=message) as caught:
+        design(tmp_path, body)
+    assert caught.value.where is not None
+    assert caught.value.hint

@@ -20,6 +20,7 @@ from prover.verilog.names import (
     Constant,
     Lazy,
     Net,
+    Real,
     Report,
     Routine,
     Scope,
@@ -306,7 +307,7 @@ class Declarer:
     # -- parameters ----------------------------------------------------------------------------------------
 
     def parameters(
-        self, node: tree.Parameters, scope: Scope, outer: Mapping[str, Constant], used: set[str]
+        self, node: tree.Parameters, scope: Scope, outer: Mapping[str, Constant | Real], used: set[str]
     ) -> list[str]:
         """Declare parameters, worked out when first used; `outer` overrides them. Returns the names."""
         for name in node.names:
@@ -335,20 +336,31 @@ class Declarer:
                 try:
                     entry.get(self.report, name)
                 except UserError:
-                    # A real or a string, say, is no harm unless it is used; then the error comes again.
+                    # What can't be read is no harm unless it is used; then the error comes again.
                     continue
 
     def _parameter(
-        self, type_: tree.Type | None, name: tree.Named, scope: Scope, given: Constant | None
-    ) -> Callable[[], Constant]:
-        def make() -> Constant:
+        self, type_: tree.Type | None, name: tree.Named, scope: Scope, given: Constant | Real | None
+    ) -> Callable[[], Constant | Real]:
+        def make() -> Constant | Real:
             what = f"parameter {printable(name.name)}"
-            value = given or run(Sizer(self.env(scope)).constant(name.value, what))
+            sizer = Sizer(self.env(scope))
+            value = given or run(sizer.constant(name.value, what))
             if type_ is None:
                 return value
+            if type_.words == ["real"] and not type_.ranges and not type_.named:
+                return value if isinstance(value, Real) else Real(sizer.as_real(value.number, name.lineno))
             shape = self.shape(type_, scope)
             if shape.plain and not type_.named and not type_.enum:
                 return value
+            if isinstance(value, Real):
+                if (not type_.ranges and type_.words == ["signed"]) or type_.enum or type_.named:
+                    self.report.fail(
+                        f"{what} is the real number {value.value}", name.lineno, "give it a range"
+                    )
+                bits = sizer.rounded(value.value, shape.type, name.lineno)
+                bits &= (1 << shape.type.width) - 1
+                return Constant(bits, 0, 0, shape.type, True, shape.msb, shape.lsb)
             if not type_.ranges and type_.words == ["signed"]:
                 return Constant(value.bits, value.x, value.z, Type(value.type.width, True))
             planes = [e.resize(e.const(p, value.type.width), shape.type.width, value.type.signed).value

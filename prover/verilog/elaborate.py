@@ -18,7 +18,7 @@ from prover.verilog.deep import run
 from prover.verilog.drivers import Drivers
 from prover.verilog.execute import Environment, Executor, State
 from prover.verilog.hierarchy import Connection, Hierarchy, Primitive
-from prover.verilog.names import Constant, Net, Report, Scope, Type
+from prover.verilog.names import Constant, Net, Real, Report, Scope, Type
 from prover.verilog.parse import parse_chunk, read_chunks
 from prover.verilog.parts import Place
 from prover.verilog.processes import Driver, Processes
@@ -174,10 +174,14 @@ class Elaboration:
         out: dict[str, int] = {}
         for name in names:
             try:
-                out[name] = scope.names[name].get(self.report, name).number
+                value = scope.names[name].get(self.report, name)
             except UserError:
-                # A real or a string that nothing used; a use would have been refused before.
+                # What can't be read and nothing used; a use would have been refused before.
                 continue
+            if not isinstance(value, Real):
+                out[name] = value.number
+            elif value.value.is_integer():
+                out[name] = int(value.value)
         return out
 
     # -- drivers of nets -----------------------------------------------------------------------------------

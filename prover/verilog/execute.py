@@ -19,7 +19,18 @@ from prover.design import element
 from prover.expr import Expr
 from prover.verilog import tree
 from prover.verilog.deep import Task, run
-from prover.verilog.names import MAX_CALL_DEPTH, Constant, Lazy, Net, Report, Routine, Scope, Type, words
+from prover.verilog.names import (
+    MAX_CALL_DEPTH,
+    Constant,
+    Lazy,
+    Net,
+    Real,
+    Report,
+    Routine,
+    Scope,
+    Type,
+    words,
+)
 from prover.verilog.parts import Place, write_part, written_mask
 from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
@@ -132,7 +143,7 @@ class Environment:
             entry = entry.get(self.report, node.name)
         if entry is None:
             self.report.fail(f"{name} isn't declared", node, f"declare {name}, or correct the name")
-        if not isinstance(entry, (Net, Constant, Routine)):
+        if not isinstance(entry, (Net, Constant, Real, Routine)):
             self.report.fail(
                 f"{name} is the name of a block or instance, not a value", node, "name something inside it"
             )

@@ -17,7 +17,7 @@ from prover.verilog import tree
 from prover.verilog.declare import Declarer
 from prover.verilog.deep import run
 from prover.verilog.execute import Environment, Executor
-from prover.verilog.names import Constant, Net, Report, Scope, Type
+from prover.verilog.names import Constant, Net, Real, Report, Scope, Type
 from prover.verilog.sizing import Sizer, constant
 from prover.verilog.source import printable
 
@@ -68,11 +68,11 @@ class Hierarchy:
     primitives: list[Primitive] = field(default_factory=list)
     scopes: int = 0
     _pending: list[tuple[Scope, list[Any], dict[tuple[str, ...], Any], int]] = field(default_factory=list)
-    _defparams: list[tuple[tree.Defparam, Constant]] = field(default_factory=list)
+    _defparams: list[tuple[tree.Defparam, Constant | Real]] = field(default_factory=list)
     _used: set[int] = field(default_factory=set)
 
     def elaborate(
-        self, top: tree.Module, parameters: Mapping[str, Constant]
+        self, top: tree.Module, parameters: Mapping[str, Constant | Real]
     ) -> tuple[Scope, list[Net], list[str]]:
         """Lay the top module flat: its scope, its ports and its parameters' names, in order."""
         scope = Scope("", None, "module", top.name)
@@ -98,7 +98,7 @@ class Hierarchy:
         self,
         module: tree.Module,
         scope: Scope,
-        outer: Mapping[str, Constant],
+        outer: Mapping[str, Constant | Real],
         defparams: dict[tuple[str, ...], Any],
         depth: int,
     ) -> tuple[list[Net], list[str]]:
@@ -415,7 +415,7 @@ class Hierarchy:
         instance: tree.Instance,
         module: tree.Module,
         name: str,
-        given: dict[str, Constant],
+        given: dict[str, Constant | Real],
         scope: Scope,
         defparams: dict[tuple[str, ...], Any],
         depth: int,
@@ -433,8 +433,10 @@ class Hierarchy:
         for port, value, at in self._matched(instance, module, ports, scope):
             self.connections.append(Connection(port, inner, scope, value, index, count, at))
 
-    def _overrides(self, item: tree.Instances, module: tree.Module, scope: Scope) -> dict[str, Constant]:
-        given: dict[str, Constant] = {}
+    def _overrides(
+        self, item: tree.Instances, module: tree.Module, scope: Scope
+    ) -> dict[str, Constant | Real]:
+        given: dict[str, Constant | Real] = {}
         sources = item.parameters
         if item.delay is not None:
             sources = [

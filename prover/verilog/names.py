@@ -145,6 +145,13 @@ class Constant:
         return self.bits
 
 
+@dataclass(slots=True, frozen=True)
+class Real:
+    """A real constant: a double, which has no width."""
+
+    value: float
+
+
 @dataclass(slots=True, eq=False)
 class Routine:
     """A function or task: the scope that holds its arguments and locals, its result, its body."""
@@ -163,13 +170,13 @@ class Routine:
 class Lazy:
     """A name worked out when first used: a parameter, whose value may need later ones, or a routine."""
 
-    make: Callable[[], Constant | Routine]
+    make: Callable[[], Constant | Real | Routine]
     offset: int
-    value: Constant | Routine | None = None
+    value: Constant | Real | Routine | None = None
     busy: bool = False
     parameter: bool = False
 
-    def get(self, report: Report, name: str) -> Constant | Routine:
+    def get(self, report: Report, name: str) -> Constant | Real | Routine:
         """The constant or routine; UserError where it needs itself."""
         if self.value is None:
             if self.busy:
@@ -190,7 +197,7 @@ class Lazy:
         return self.value
 
 
-Entry = Any  # Net | Constant | Routine | Lazy | Scope; a closed union would make every lookup a cast
+Entry = Any  # Net | Constant | Real | Routine | Lazy | Scope; a closed union would make every lookup a cast
 
 
 @dataclass(slots=True, eq=False)

@@ -178,7 +178,6 @@ def _explain(source: Source, chunk: Chunk, token: Any) -> UserError:
         return UserError(f"{shown} isn't supported", where, "write the divider without it")
     hints = {
         "REFUSED": "&&& belongs to SystemVerilog patterns and timing checks; write && or &",
-        "FLOATNUMBER": "real numbers aren't supported; write an integer",
     }
     at = chunk.tokens.index(token) if token in chunk.tokens else 0
     before = chunk.tokens[at - 1] if at else None

@@ -16,13 +16,14 @@ from pyverilog.vparser import ast as vast
 
 from prover import expr as e
 from prover.expr import Expr
-from prover.verilog import tree
+from prover.verilog import reals, tree
 from prover.verilog.deep import Task, run
-from prover.verilog.names import MAX_WIDTH, Constant, Net, Report, Routine, Type
+from prover.verilog.names import MAX_WIDTH, Constant, Net, Real, Report, Routine, Type
 from prover.verilog.parts import Place, constant_word, literal, read_part
 from prover.verilog.source import printable
 from prover.verilog.words import cut, joined
 
+_ROUND = "round it first: localparam integer N = …, or $rtoi"
 _CAST_TYPES = {
     "int": Type(32, True),
     "integer": Type(32, True),
@@ -42,7 +43,7 @@ class Env(Protocol):
         """Where refusals and notes go."""
 
     def find(self, node: Any, routine: bool = False) -> Any:
-        """The Net, Constant or Routine that an identifier stands for; UserError if nothing. Inside a function
+        """The Net, Constant, Real or Routine that an identifier stands for; UserError if nothing. Inside a function
         its name is the result's, unless a `routine` is asked for."""
 
     def named_type(self, name: str) -> Type | None:
@@ -74,6 +75,7 @@ class Sizer:
         self.types: dict[int, Type] = {}
         self.places: dict[int, Place] = {}
         self.outside: dict[int, tuple[str, Any]] = {}
+        self.reals: dict[int, bool] = {}
 
     def type_of(self, node: Any) -> Task[Type]:
         """The type of the node on its own (clauses 5.4.1 and 5.5.1)."""
@@ -104,23 +106,35 @@ class Sizer:
 
     def condition(self, node: Any) -> Task[Expr]:
         """One bit: the node is not zero."""
+        real: bool = yield self.is_real(node)
+        if real:
+            number: float = yield self.real(node)
+            return e.TRUE if number else e.FALSE
         value: Value = yield self.alone(node)
         return e.nonzero(value.word)
 
     def assigned(self, node: Any, width: int) -> Task[Expr]:
         """The node as the right side of an assignment to `width` bits (clause 5.4.1, last paragraph)."""
+        real: bool = yield self.is_real(node)
+        if real:
+            number: float = yield self.real(node)
+            return e.const(self.rounded(number, Type(width, False), node), width)
         own: Type = yield self.type_of(node)
         word: Expr = yield self.build(node, Type(max(width, own.width), own.signed))
         if word.is_const and width < word.width:
             negative = own.signed and bool(word.value >> (word.width - 1))
-            number = word.value - (1 << word.width) if negative else word.value
-            if not -(1 << (width - 1)) <= number < 1 << width:
+            whole = word.value - (1 << word.width) if negative else word.value
+            if not -(1 << (width - 1)) <= whole < 1 << width:
                 left = word.value & ((1 << width) - 1)
-                self.report.note(f"constant {number} is cut to {width} bits and becomes {left}", node)
+                self.report.note(f"constant {whole} is cut to {width} bits and becomes {left}", node)
         return cut(word, width - 1, 0) if width < word.width else e.resize(word, width, own.signed)
 
-    def constant(self, node: Any, what: str) -> Task[Constant]:
+    def constant(self, node: Any, what: str) -> Task[Constant | Real]:
         """The node as a constant; UserError names `what` needs it."""
+        real: bool = yield self.is_real(node)
+        if real:
+            number: float = yield self.real(node)
+            return Real(number)
         bare = self.pattern(node)
         if bare is not None:
             return bare
@@ -131,7 +145,9 @@ class Sizer:
 
     def number(self, node: Any, what: str) -> Task[int]:
         """The node as a whole number."""
-        found: Constant = yield self.constant(node, what)
+        found: Constant | Real = yield self.constant(node, what)
+        if isinstance(found, Real):
+            self.report.fail(f"{what} is the real number {found.value}", node, _ROUND)
         if found.x | found.z:
             self.report.fail(f"{what} can't be x or z", node, "use digits")
         return found.number
@@ -175,10 +191,127 @@ class Sizer:
 
     def _refuse(self, node: Any) -> NoReturn:
         if isinstance(node, vast.FloatConst):
-            self.report.fail("real numbers aren't supported", node, "write an integer")
+            self.report.fail("a real number can't stand here", node, _ROUND)
         self.report.fail(
             f"{type(node).__name__} isn't supported in an expression", node, "the README lists what is read"
         )
+
+    # -- real constants ------------------------------------------------------------------------------------
+
+    def is_real(self, node: Any) -> Task[bool]:
+        """Is the node's own type real? What takes no real then refuses it, for it has no width."""
+        known = self.reals.get(id(node))
+        if known is None:
+            known = isinstance(node, vast.FloatConst)
+            if isinstance(node, vast.Identifier):
+                known = isinstance(self.env.find(node), Real)
+            elif isinstance(node, vast.SystemCall):
+                known = node.syscall in reals.REAL_FUNCTIONS
+            for part in reals.operands(node):
+                inner: bool = yield self.is_real(part)
+                known = known or inner
+            self.reals[id(node)] = known
+        return known
+
+    def real(self, node: Any) -> Task[float]:
+        """The value of a constant as a real; an integer is worked out on its own first (clause 5.5.2)."""
+        is_real: bool = yield self.is_real(node)
+        if isinstance(node, vast.Identifier) and is_real:
+            named: float = self.env.find(node).value
+            return named
+        inner: tuple[Any, ...] = reals.operands(node)
+        if not is_real:
+            integer: float = yield self._converted(node)
+            return integer
+        if isinstance(node, vast.Cond):
+            test: Expr = yield self.condition(node.cond)
+            if not test.is_const:
+                self.report.fail("a real number must be a known constant", node, _ROUND)
+            inner = (node.true_value if test.value else node.false_value,)
+        elif isinstance(node, vast.SystemCall):
+            inner = (self._argument(node),)
+        values = []
+        for part in inner:
+            value: float = yield self.real(part)
+            values.append(value)
+        try:
+            if isinstance(node, vast.FloatConst):
+                return reals.literal(node.value)
+            if isinstance(node, vast.SystemCall):
+                if node.syscall == "itor" and (self.reals[id(inner[0])] or abs(values[0]) >= 1 << 31):
+                    self.report.fail("$itor takes an integer of 32 bits", node, "write 1.0 * value")
+                return reals.REAL_FUNCTIONS[node.syscall](values[0])
+            if len(values) == 1:
+                return -values[0] if isinstance(node, vast.Uminus) else values[0]
+            return reals.combined(type(node), values[0], values[1])
+        except ValueError as error:
+            self.report.fail(str(error), node, "correct the numbers")
+
+    def _converted(self, node: Any) -> Task[float]:
+        number: int = yield self.number(node, "a number beside a real one")
+        own: Type = yield self.type_of(node)
+        word: Expr = yield self.build(node, Type(own.width + 64, own.signed))
+        if not word.is_const or self._number(Value(word, own.signed)) != number:
+            # Clause 5.5.2 cuts it to its own width, and not every simulator does.
+            self.report.fail(
+                f"this overflows its {own.width} bits before it becomes real", node, "write 1.0 *"
+            )
+        return self.as_real(number, node)
+
+    def as_real(self, number: int, at: Any) -> float:
+        """The integer as a real; UserError where it is no exact one."""
+        if abs(number) >> reals.EXACT_BITS:
+            self.report.fail(f"{number} is no exact real number", at, "write it as a real, as in 1e18")
+        return float(number)
+
+    def rounded(self, value: float, to: Type, at: Any) -> int:
+        """The real as an integer of that type; simulators differ on what doesn't fit."""
+        number = reals.rounded(value)
+        if not -(1 << (to.width - 1)) <= number < 1 << (to.width - to.signed):
+            self.report.fail(f"the real number {value} doesn't fit {to.width} bits", at, "give it more bits")
+        return number
+
+    def _argument(self, node: Any) -> Any:
+        if len(node.args) != 1 or node.args[0] is None:
+            name = printable(node.syscall)
+            self.report.fail(f"${name} takes one argument", node, f"write ${name}(value)")
+        return node.args[0]
+
+    def _real_comparison(self, node: Any) -> Task[Expr]:
+        """A comparison with a real: of two constants, or of a word with the integer next to the real."""
+        if type(node) not in reals.COMPARISONS:
+            self.report.fail("=== and !== of a real number are no Verilog", node, "write == or !=")
+        sides: list[float | Value] = []
+        for side in (node.left, node.right):
+            real: bool = yield self.is_real(side)
+            value = None if real else (yield self.alone(side))
+            if value is None or value.word.is_const:
+                number: float = yield self.real(side)
+                sides.append(number)
+            else:
+                sides.append(value)
+        left, right = sides
+        if isinstance(left, Value):
+            (word, signed), limit, mirrored = left, right, False
+        elif isinstance(right, Value):
+            (word, signed), limit, mirrored = right, left, True
+        else:
+            return e.TRUE if reals.COMPARISONS[type(node)](left, right) else e.FALSE
+        assert isinstance(limit, float)
+        if word.width > reals.EXACT_BITS:
+            what = f"a comparison of {word.width} bits with a real number"
+            self.report.fail(what, node, _ROUND)
+        if type(node) in (vast.Eq, vast.NotEq) and not limit.is_integer():
+            holds = "always" if isinstance(node, vast.NotEq) else "never"
+            self.report.note(f"this comparison {holds} holds: {limit} is no whole number", node)
+            return e.const(isinstance(node, vast.NotEq), 1)
+        bound = reals.whole_bound(type(node), limit, mirrored)
+        width = max(word.width, bound.bit_length()) + 1
+        both = [e.resize(word, width, signed), e.const(bound, width)][:: -1 if mirrored else 1]
+        signed = signed or bound < 0
+        bit = _comparison(type(node), both[0], both[1], signed)
+        self._remark(node, both[0], both[1], bit, signed)
+        return bit
 
     # -- names and their parts -----------------------------------------------------------------------------
 
@@ -206,6 +339,8 @@ class Sizer:
                 f"{printable(found.name)} is a routine, not a value", base, "call it with arguments"
             )
         name = printable(base.name)
+        if isinstance(found, Real):
+            self.report.fail(f"{name} is a real number, which can't stand here", base, _ROUND)
         word: int | Expr | None = None
         if isinstance(found, Net) and found.words:
             if not chain or not isinstance(chain[0], vast.Pointer):
@@ -373,8 +508,10 @@ class Sizer:
 
     def _type_system(self, node: Any) -> Task[Type]:
         name = node.syscall
-        if name in ("clog2", "bits"):
+        if name in ("clog2", "bits", "rtoi"):
             return Type(32, True)
+        if name in reals.REAL_FUNCTIONS:
+            self.report.fail(f"${name} gives a real number, which can't stand here", node, _ROUND)
         if name not in ("signed", "unsigned") or len(node.args) != 1 or node.args[0] is None:
             self.report.fail(
                 f"${printable(name)} isn't supported in an expression", node, "the README lists what is read"
@@ -383,7 +520,9 @@ class Sizer:
         return Type(own.width, name == "signed")
 
     def _type_cast(self, node: Any) -> Task[Type]:
-        own: Type = yield self.type_of(node.value)
+        real: bool = yield self.is_real(node.value)
+        if not (real and isinstance(node.type, str)) or node.type in ("signed", "unsigned"):
+            own: Type = yield self.type_of(node.value)
         if node.type in ("signed", "unsigned"):
             return Type(own.width, node.type == "signed")
         if isinstance(node.type, str):
@@ -474,17 +613,28 @@ class Sizer:
         value: Value = yield self.alone(node.right)
         return e.resize(_REDUCTIONS[type(node)](value.word), to.width, False)
 
+    def _build_not(self, node: Any, to: Type) -> Task[Expr]:
+        test: Expr = yield self.condition(node.right)
+        return e.resize(e.bvnot(test), to.width, False)
+
     def _build_logical(self, node: Any, to: Type) -> Task[Expr]:
         left: Expr = yield self.condition(node.left)
         if left is (e.FALSE if isinstance(node, vast.Land) else e.TRUE):
             # The right side decides nothing, and may select what isn't there: `i > 0 && q[i - 1]`.
-            yield self.type_of(node.right)
+            real: bool = yield self.is_real(node.right)
+            if not real:
+                yield self.type_of(node.right)
             return e.resize(left, to.width, False)
         right: Expr = yield self.condition(node.right)
         bit = e.bvand(left, right) if isinstance(node, vast.Land) else e.bvor(left, right)
         return e.resize(bit, to.width, False)
 
     def _build_comparison(self, node: Any, to: Type) -> Task[Expr]:
+        for side in (node.left, node.right):
+            real: bool = yield self.is_real(side)
+            if real:
+                found: Expr = yield self._real_comparison(node)
+                return e.resize(found, to.width, False)
         common: Type = yield self._type_wide(node)
         exact = isinstance(node, (vast.Eql, vast.NotEql))
         if exact and any(p and (p.x | p.z) for p in map(self.pattern, (node.left, node.right))):
@@ -563,11 +713,20 @@ class Sizer:
             found: Type = yield self.type_of(node.args[0])
             number &= (1 << found.width) - 1
             return e.const(max(0, number - 1).bit_length() if number else 0, to.width)
+        if node.syscall == "rtoi":
+            # Clause 17.8: the fraction is dropped.
+            real: float = yield self.real(self._argument(node))
+            return e.const(self.rounded(float(int(real)), Type(32, True), node), to.width)
         value: Value = yield self.alone(node.args[0])
         return e.resize(value.word, to.width, to.signed)
 
     def _build_cast(self, node: Any, to: Type) -> Task[Expr]:
         own: Type = yield self.type_of(node)
+        real: bool = yield self.is_real(node.value)
+        if real:
+            # A cast converts as an assignment does (IEEE 1800-2017 clause 6.24.1).
+            word: Expr = yield self.assigned(node.value, own.width)
+            return e.resize(word, to.width, to.signed)
         value: Value = yield self.alone(node.value)
         return e.resize(e.resize(value.word, own.width, value.signed), to.width, to.signed)
 
@@ -650,8 +809,7 @@ _WIDE: dict[Any, Callable[[Expr, Expr], Expr]] = {
     vast.Xor: e.bvxor, vast.Xnor: lambda a, b: e.bvnot(e.bvxor(a, b)),
 }  # fmt: skip
 _REDUCTIONS: dict[Any, Callable[[Expr], Expr]] = {
-    vast.Ulnot: lambda a: e.bvnot(e.nonzero(a)), vast.Uor: e.nonzero,
-    vast.Unor: lambda a: e.bvnot(e.nonzero(a)),
+    vast.Uor: e.nonzero, vast.Unor: lambda a: e.bvnot(e.nonzero(a)),
     vast.Uand: lambda a: e.eq(a, e.const(-1, a.width)),
     vast.Unand: lambda a: e.bvnot(e.eq(a, e.const(-1, a.width))),
     vast.Uxor: e.parity, vast.Uxnor: lambda a: e.bvnot(e.parity(a)),
@@ -670,6 +828,7 @@ _RULES: list[tuple[tuple[Any, ...], Any, Any]] = [
     ((vast.Sll, vast.Srl, vast.Sla, vast.Sra), _S._type_left, _S._build_shift),
     ((vast.Power,), _S._type_left, _S._build_power),
     ((vast.Uminus, vast.Unot), _S._type_unary, _S._build_unary),
+    ((vast.Ulnot,), _S._type_bit, _S._build_not),
     (tuple(_REDUCTIONS), _S._type_bit, _S._build_reduction),
     ((vast.Land, vast.Lor), _S._type_bit, _S._build_logical),
     (_COMPARISONS, _S._type_bit, _S._build_comparison),

@@ -702,6 +702,64 @@ VERILOG = [
             "always @(posedge g) q <= ~q; assign tick = q;"
         ),
     ),
+    Accepted(
+        "a real limit with a fraction",
+        module(
+            "parameter F_IN = 50e3, F_OUT = 9600.0; reg [2:0] n;\n"
+            "always @(posedge clk) if (n >= F_IN/F_OUT - 1) n <= 0; else n <= n + 1;\n"
+            "assign tick = n < F_IN/(2*F_OUT);"
+        ),
+        # 5.2 - 1 = 4.2: the count runs from 0 to 5, and is below 2.6 for three cycles.
+        "6",
+    ),
+    Accepted(
+        "an integer from reals",
+        module(
+            "localparam integer N = 57.6e3/9600 - 0.5; reg [2:0] n;\n"
+            "always @(posedge clk) if (n >= N - 1) n <= 0; else n <= n + 1; assign tick = n >= N/2;"
+        ),
+        # 5.5 is a tie and becomes 6.
+        "6",
+    ),
+    Accepted(
+        "an instance given reals",
+        "module c (input k, output q); parameter real F = 1; parameter [2:0] N = 1; reg [2:0] n;\n"
+        "always @(posedge k) n <= n == N ? 0 : n + 1'd1; assign q = n > F; endmodule\n"
+        + module("c #(.F(3e6/2e6), .N(2.6)) u (clk, tick);"),
+        "4",
+    ),
+    Accepted(
+        "$rtoi of a real",
+        module(
+            "localparam N = $rtoi(50e6/9.2e6); reg [2:0] n;\n"
+            "always @(posedge clk) n <= n == N ? 0 : n + 1; assign tick = n > N / 2;"
+        ),
+        "6",
+    ),
+    Accepted(
+        "int' of a real",
+        module(
+            "localparam int N = int'(50e6/9.2e6) + 4'(1.0 > 2.0); reg [2:0] n;\n"
+            "always @(posedge clk) n <= n == N ? 0 : n + 1; assign tick = n > N / 2;"
+        ),
+        "6",
+        system=True,
+    ),
+    Accepted(
+        "a generate if of reals",
+        module(
+            f"parameter F = 27e6; {COUNT} if (F / 2 > 13.4e6) assign tick = n[1]; else assign tick = n[0];"
+        ),
+    ),
+    Accepted(
+        "equality with a fraction",
+        module(
+            "localparam N = 5/2.0; reg [1:0] n;\nalways @(posedge clk)\nif (n == N) n <= 0; else n <= n + 1;\n"
+            "assign tick = n[1];"
+        ),
+        note="never holds: 2.5 is no whole number",
+        line=4,
+    ),
     Accepted("a real that nothing uses", module(f"parameter real F = 1.5; {COUNT} assign tick = n[1];")),
     Accepted(
         "strings as parameters",
@@ -1056,7 +1114,23 @@ REFUSED = [
         "$readmemh", f'{RESET}reg [3:0] m [0:3];\ninitial $readmemh("m.hex", m);\nendmodule\n', "$readmemh", 3
     ),
     Refused("a real", f"{RESET}real r;\nendmodule\n", "real", 2),
-    Refused("a real constant that is used", module("parameter F = 2.5;\nassign tick = F > 2;"), "real", 2),
+    Refused("a bit of a real", module("parameter F = 2.5;\nassign tick = F[0];"), "F is a real number", 3),
+    Refused("a remainder of reals", module("assign tick =\n7.5 % 2;"), "real number", 3),
+    Refused("a shift of a real", module("parameter F = 2.5;\nassign tick = F << 1;"), "real number", 3),
+    Refused("a real inside a concatenation", module("assign tick =\n{1'b0, 2.0};"), "real number", 3),
+    Refused("=== of a real", module("assign tick =\nclk === 1.0;"), "===", 3),
+    Refused("a real as a bound", module("parameter N = 8.0;\nreg [N-1:0] n;"), "bound real 7.0", 3),
+    Refused(
+        "a real that is too large", module("localparam integer N = 3e9;\nassign tick = N;"), "32 bits", 2
+    ),
+    Refused("a real division by zero", module("localparam N = 1.0/0;\nassign tick = N > 1;"), "zero", 2),
+    Refused("a real that varies", module("assign tick =\nclk * 0.5 > 0;"), "beside a real", 3),
+    Refused(
+        "a sum that overflows beside a real",
+        module("localparam N = 50_000_000 * 100 + 0.5;\nassign tick = N > 1;"),
+        "overflows 32 bits",
+        2,
+    ),
     Refused(
         "an initial value that isn't constant",
         f"{RESET}initial\ntick = x;\nendmodule\n",

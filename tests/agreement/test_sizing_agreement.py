@@ -87,6 +87,44 @@ def test_row_of_x_is_left_open(tmp_path: Path, clause: str, width: int, text: st
     assert {0, (1 << width) - 1} <= outcomes, clause
 
 
+# Doubles, conversion by rounding and the operators of clauses 4.8.1, 4.8.2 and 17.8, in 32 bits; values by Icarus.
+REALS = [
+    "2.5", "-2.5", "0.49999999999999994", "-0.5", "1.5e0_0", "50_000_000/115200.0 + 0.5", "27e6/2 - 1", "7/2 + 0.5",
+    "50e6/(2*9600.0)", "1e9/3", "0.1 + 0.2 == 0.3", "2.0**0.5*1e6", "2.0**24", "4.0**2", "10.0**-1*25", "-(1.5)",
+    "+1.5", "(1 ? 3 : 2.5)/2", "(0 ? 2.5 : 7)/2*1.0", "!2.5", "!0.0", "0.5 && 1", "0.0 || 0", "2.5 > 2",
+    "3.0 == 3", "2.5 >= 3", "2.5 != 2.5", "-1 < 0.5", "4'd15 < 15.5", "4'sd15 < 0.5", "$rtoi(-2.9)", "$rtoi(5208.9) + 1",
+    "$itor(7)/2", "$ceil(2.1) + $floor(-2.1)", "$rtoi(50e6/9600)", "1.0*1e-320 > 0", "3 - 0.5*4 ? 5 : 6", "R", "-R*3", "R > 2",
+    "I/2", "I/2.0", "I + R", "V", "G", "B", "U",
+]  # fmt: skip
+SIDES = ["6.5", "6.0", "-1.5", "-1.0", "-2", "0.0", "15.0", "15.5", "-8.0", "-8.5", "40.0"]
+
+
+def test_real_constants(tmp_path: Path) -> None:
+    rows = [(f"o{i}", 32, text) for i, text in enumerate(REALS)]
+    for operator in ("<", "<=", ">", ">=", "==", "!="):
+        for side in SIDES:
+            for name in ("u4", "s4", "(u4 + 4'd9)", "s8"):
+                rows += [(f"o{len(rows)}", 1, f"{name} {operator} {side}")]
+                rows += [(f"o{len(rows)}", 1, f"{side} {operator} {name}")]
+    ports = [f"input {'signed ' if s else ''}[{w - 1}:0] {n}" for n, (w, s) in INPUTS.items()]
+    ports += [f"output signed [{width - 1}:0] {name}" for name, width, _ in rows]
+    # What a parameter's own type makes of a real (clause 12.2): V keeps the fraction.
+    body = "  parameter real R = 2.5; parameter integer I = 2.5; parameter V = 2.5; parameter real G = 7;\n"
+    body += "  parameter [7:0] B = -1.5; parameter signed [3:0] U = -7.5;\n"
+    body += "".join(f"  assign {name} = {text};\n" for name, _, text in rows)
+    source = tmp_path / "many.v"
+    source.write_text(f"module many({', '.join(ports)});\n{body}endmodule\n")
+    vectors = [
+        dict.fromkeys(INPUTS, 0) | {"u4": v & 15, "s4": v & 15, "s8": (v * 3 - 9) & 255} for v in range(16)
+    ]
+    expected = _simulate(tmp_path, source, [r[0] for r in rows], [r[1] for r in rows], vectors)
+    signals = read_design([source]).signals
+    for name, width, text in rows:
+        for vector, known in zip(vectors, expected[name], strict=True):
+            found = format(evaluate([signals[name].value], vector)[0], f"0{width}b")
+            assert found == known, f"{text} at {vector}: {found}, simulator {known}"
+
+
 class Writer:
     """Random expressions over the inputs; depth bounds their size."""
 
