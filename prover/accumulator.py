@@ -15,27 +15,16 @@ Limits: one register holds the place on the circle and moves with one edge of th
 
 from __future__ import annotations
 
-import random
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from fractions import Fraction
 from itertools import accumulate, pairwise
 from math import ceil, floor, gcd
 
-from prover import certificate
 from prover import expr as e
 from prover.certificate import Obligation
-from prover.effort import Effort
-from prover.errors import InternalError
 from prover.expr import Expr
 from prover.rhythm import Goal, Mean, Orbit
-from prover.solve import find
 from prover.system import State, System
-
-LEAST_BITS = 8
-"""Bits of a register from which it is looked at as an accumulator."""
-
-SAMPLED = 512
-"""Input cycles of a run, and places on the circle, that are looked at."""
 
 BEHIND = 8
 """Half-cycles by which the output may be behind the accumulator, at most."""
@@ -144,7 +133,7 @@ class Accumulator:
 # -- what has to hold --------------------------------------------------------------------------------------
 
 
-class _Steps:
+class Steps:
     """The states some half-cycles on, as expressions over one at the start."""
 
     def __init__(self, system: System) -> None:
@@ -164,7 +153,7 @@ class _Steps:
 
 def obligations(system: System, found: Accumulator) -> list[Obligation]:
     """What has to hold for every power-up state to be good after `worst` half-cycles, and for good."""
-    steps, at = _Steps(system), system.names.index(found.register)
+    steps, at = Steps(system), system.names.index(found.register)
     first = steps[0][at]
     moves = e.eq(steps[0][-1], e.const(found.level, 1))
     onward = e.ite(moves, found.next_place(first), found.place(first))
@@ -176,19 +165,20 @@ def obligations(system: System, found: Accumulator) -> list[Obligation]:
         Obligation(
             "it goes on by its stride", e.conj([there, e.bvnot(e.eq(found.place(steps[1][at]), onward))])
         ),
-        Obligation("the output is that of the arc", e.bvand(there, _wrong(steps, found, at, found.behind))),
+        Obligation("the output is that of the arc", e.bvand(there, wrong(steps, found, at, found.behind))),
         Obligation(
             "every power-up state gets on the circle",
             e.bvand(system.settled, e.bvnot(found.on_circle(steps[found.joined][at]))),
         ),
     ]
     for count in range(found.worst, found.joined + found.behind):
-        late = e.bvand(system.settled, _wrong(steps, found, at, count))
+        late = e.bvand(system.settled, wrong(steps, found, at, count))
         out.append(Obligation(f"the output is right after {count} half-cycles", late))
     return out
 
 
-def _wrong(steps: _Steps, found: Accumulator, at: int, count: int) -> Expr:
+def wrong(steps: Steps, found: Accumulator, at: int, count: int) -> Expr:
+    """True of a state from which the output is not that of the place, so many half-cycles on."""
     state = steps[count]
     return e.bvnot(e.eq(steps.output(count), found.wanted(state[at], state[-1])))
 
@@ -213,172 +203,30 @@ def starts_well(system: System, found: Accumulator, orbit: Orbit) -> bool:
 def gets_right(system: System, found: Accumulator, state: State) -> bool:
     """Whether the wave is the arc's once every power-up state has become good."""
     at = system.names.index(found.register)
-    run = _Run(system)
     value, clock = e.var("value", found.width), e.var("clock", 1)
     place = e.compile_step([found.on_circle(value), found.wanted(value, clock)], ["value", "clock"])
-    state = run.onward(state, found.worst)
+    state = onward(system, state, found.worst)
     if not place(state[at], state[-1])[0]:
         return False
     for _ in range(found.behind):
-        state_after, level = run(state)
-        if level != place(state[at], state[-1])[1]:
+        if system.out(state) != place(state[at], state[-1])[1]:
             return False
-        state = state_after
+        state = system.next(state)
     return True
 
 
-# -- finding it --------------------------------------------------------------------------------------------
+def needs_long(system: System, found: Accumulator, state: State) -> bool:
+    """Whether a state is at rest, and not good before `worst`."""
+    values = dict(zip(system.names, state, strict=True))
+    if len(state) != len(system.names) or e.evaluate([system.settled], values) != [1]:
+        return False
+    return found.worst == 0 or e.evaluate(
+        [wrong(Steps(system), found, system.names.index(found.register), found.worst - 1)], values
+    ) == [1]
 
 
-class _Run:
-    """Steps on numbers: the next state, and the output in this one. Values that x stands for are 0."""
-
-    def __init__(self, system: System) -> None:
-        choices = [name for name, _ in system.choices]
-        self.zeros = [0] * len(choices)
-        self.step = e.compile_step([*system.step, system.output], [*system.names, *choices])
-
-    def __call__(self, state: State) -> tuple[State, int]:
-        *after, level = self.step(*state, *self.zeros)
-        return tuple(after), level
-
-    def onward(self, state: State, count: int) -> State:
-        for _ in range(count):
-            state, _ = self(state)
-        return state
-
-
-def look(system: System, start: State, mean: Mean, effort: Effort) -> Accumulator | None:
-    """An accumulator with the mean that decides the output, checked; None if there is none of which that is shown.
-
-    Raises OutOfEffort."""
-    effort.say("looking for an accumulator")
-    run = _Run(system)
-    start = run.onward(start, 4 * BEHIND)
-    for place, (name, width) in enumerate(system.variables):
-        if width < LEAST_BITS:
-            continue
-        for level in (0, 1):
-            begins = start if start[-1] == level else run.onward(start, 1)
-            circle = _circle(run, begins, place, width)
-            if circle is None or Fraction(circle[1], circle[2]) != mean.ratio:
-                continue
-            base, modulus, stride = circle
-            arc = _arc(run, begins, place, width, circle)
-            if arc is None:
-                continue
-            for late in (False, True):
-                found = Accumulator(name, width, base, modulus, stride, level, arc, late, BEHIND)
-                proved = _proved(system, found, effort) if found.has(mean) else None
-                if proved is not None:
-                    return proved
-    return None
-
-
-def _circle(run: _Run, state: State, place: int, width: int) -> tuple[int, int, int] | None:
-    """Base, modulus and stride of a register that goes on by one vector, or by one of two, once an input cycle."""
-    size = 1 << width
-    values = []
-    for _ in range(SAMPLED):
-        values.append(state[place])
-        held, _ = run(state)
-        state, _ = run(held)
-        if held[place] != state[place]:
-            # It moves with the other edge.
-            return None
-    strides = sorted({(b - a) % size for a, b in pairwise(values)})
-    if len(strides) == 1 and 0 < strides[0] < size:
-        return 0, size, strides[0]
-    if len(strides) != 2:
-        return None
-    # One of the two is a stride less than the other is a whole circle more.
-    for stride, back in (strides, strides[::-1]):
-        modulus = (stride - back) % size
-        begins = [b for a, b in pairwise(values) if (b - a) % size == back]
-        if stride < modulus and begins:
-            base = _base(run, state, place, size, stride, back, begins[0])
-            if base is not None and all((value - base) % size < modulus for value in values):
-                return base, modulus, stride
-    return None
-
-
-def _base(run: _Run, state: State, place: int, size: int, stride: int, back: int, landed: int) -> int | None:
-    """The least value on the circle: where it lands from the first value that goes back. `landed` is one that it
-    lands on, less than a stride further."""
-
-    def goes_back(value: int) -> bool:
-        there = (*state[:place], value % size, *state[place + 1 :])
-        return (run.onward(there, 2)[place] - value) % size == back
-
-    high = landed - back
-    low = high - stride
-    if not goes_back(high) or goes_back(low):
-        return None
-    while high - low > 1:
-        middle = (low + high) // 2
-        low, high = (low, middle) if goes_back(middle) else (middle, high)
-    return (high + back) % size
-
-
-def _arc(
-    run: _Run, state: State, place: int, width: int, circle: tuple[int, int, int]
-) -> tuple[int, int] | None:
-    """Where on the circle the output is 1, by samples and bisection; None where that is no one arc."""
-    base, modulus, stride = circle
-
-    def level(x: int) -> int:
-        """The output where the accumulator is at x, and has been going on for a while."""
-        before = (base + (x - BEHIND // 2 * stride) % modulus) % (1 << width)
-        there = run.onward((*state[:place], before, *state[place + 1 :]), BEHIND)
-        return run(there)[1]
-
-    rng = random.Random(0)
-    spots = sorted(
-        {rng.randrange(modulus) for _ in range(SAMPLED)} | {x * modulus // SAMPLED for x in range(SAMPLED)}
-    )
-    levels = [level(x) for x in spots]
-    edges: dict[int, list[int]] = {0: [], 1: []}
-    for (low, was), (high, now) in pairwise(
-        [*zip(spots, levels, strict=True), (spots[0] + modulus, levels[0])]
-    ):
-        if was == now:
-            continue
-        while high - low > 1:
-            middle = (low + high) // 2
-            low, high = (middle, high) if level(middle % modulus) == was else (low, middle)
-        edges[now].append(high % modulus)
-    if [len(edges[value]) for value in (0, 1)] != [1, 1]:
-        return None
-    return edges[1][0], (edges[0][0] - edges[1][0]) % modulus
-
-
-def _proved(system: System, found: Accumulator, effort: Effort) -> Accumulator | None:
-    """The accumulator with all that is known of its power-up states, checked; None if it fails."""
-    steps, at = _Steps(system), system.names.index(found.register)
-    first = found.on_circle(steps[0][at])
-    behind = next((n for n in range(BEHIND + 1) if _never(first, steps, found, at, n, effort)), None)
-    joined = 0
-    while find(e.bvand(system.settled, e.bvnot(found.on_circle(steps[joined][at]))), effort) is not None:
-        joined += 1
-        if joined > JOINED:
-            return None
-    if behind is None:
-        return None
-    # On the circle the place says what the output has to be, at every half-cycle that follows.
-    worst = behind + joined
-    late = None
-    while worst > joined and late is None:
-        late = find(e.bvand(system.settled, _wrong(steps, found, at, worst - 1)), effort)
-        worst -= late is None
-    if worst == 0:
-        late = find(system.settled, effort) or {}
-    slowest = None if late is None else tuple(late.get(name, 0) for name in system.names)
-    done = replace(found, behind=behind, joined=joined, worst=worst, slowest=slowest)
-    faults = [owed.name for owed in obligations(system, done) if not certificate.discharge(owed, effort)]
-    if faults:
-        raise InternalError(f"an accumulator fails its check: {'; '.join(faults)}")
-    return done
-
-
-def _never(first: Expr, steps: _Steps, found: Accumulator, at: int, count: int, effort: Effort) -> bool:
-    return find(e.bvand(first, _wrong(steps, found, at, count)), effort) is None
+def onward(system: System, state: State, count: int) -> State:
+    """The state so many half-cycles on."""
+    for _ in range(count):
+        state = system.next(state)
+    return state

@@ -9,7 +9,6 @@ from __future__ import annotations
 import random
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
-from math import ceil
 
 from prover import accumulator, certificate, glitch, graph, linear, orbit, path, recode, reset, tables
 from prover import expr as e
@@ -38,9 +37,6 @@ from prover.settling import Settling, settle
 from prover.solve import find
 from prover.spec import Spec
 from prover.system import State, System, cone, lies_at, project
-
-LONGEST_SHOWN = 4000
-"""Half-cycles of a run that are shown where its round is not followed."""
 
 GRAPH_FIRST = 19
 """Bits of a state, the clock's level among them, up to which the graph is no slower than a cover may be."""
@@ -106,8 +102,8 @@ def _begun(
         return _nothing_known(ports, spec, system, settling, scope, why), system, held, under
     won = _races_won(ports, settling, starts, effort)
     machine, starts = _machine(system, starts, effort)
-    adds = _accumulator(machine, spec, starts, effort)
-    orbits = _orbits(machine, starts, effort) if adds is None else _begun_only(machine, starts, adds)
+    adding = _accumulator(machine, spec, starts, effort)
+    adds, orbits = adding or (None, _orbits(machine, starts, effort))
     methods = {"orbit": "orbit of each start state, traced with jumps; every step checked"}
     rhythm = Rhythm(
         system=machine,
@@ -192,35 +188,24 @@ def _orbits(system: System, starts: Sequence[Start], effort: Effort) -> tuple[Or
     return tuple(found)
 
 
-def _accumulator(system: System, spec: Spec, starts: Sequence[Start], effort: Effort) -> Accumulator | None:
-    """What shows a claim on average of a machine too wide for its graph; None where that is not so from the start."""
+def _accumulator(
+    system: System, spec: Spec, starts: Sequence[Start], effort: Effort
+) -> tuple[Accumulator, tuple[Orbit, ...]] | None:
+    """What shows a claim on average of a machine too wide for its graph, and the first pulses from the start states;
+    None where it is not so from the start."""
     if spec.ratio is None or not spec.mean or graph.fits(system) or not starts:
         return None
+    from prover import circle
+
     try:
-        found = accumulator.look(
-            system, starts[0].state, Mean(spec.ratio, spec.high), effort.share(effort.left / 3)
-        )
+        ours, mean = effort.share(effort.left / 3), Mean(spec.ratio, spec.high)
+        found = circle.look(system, starts[0].state, mean, ours)
+        if found is None:
+            return None
+        runs = tuple(circle.first_pulses(system, start.state, found, ours) for start in starts)
     except OutOfEffort:
         return None
-    if found is None:
-        return None
-    runs = _begun_only(system, starts, found)
-    return found if all(accumulator.starts_well(system, found, run) for run in runs) else None
-
-
-def _begun_only(system: System, starts: Sequence[Start], adds: Accumulator) -> tuple[Orbit, ...]:
-    """The first pulses of orbits whose round is not followed."""
-    return tuple(_first_pulses(system, start.state, adds) for start in starts)
-
-
-def _first_pulses(system: System, state: State, adds: Accumulator) -> Orbit:
-    """The beginning of a run: at least the first few pulses, or as many as there is room for."""
-    beats: list[path.Beat] = []
-    for _ in range(min(LONGEST_SHOWN, adds.worst + 8 * ceil(adds.mean))):
-        beats.append(path.Beat(state, system.out(state)))
-        state = system.next(state)
-    widths = tuple(width for _, width in system.variables)
-    return Orbit(path.folded(beats, widths), (), widths, "a round that is not followed")
+    return (found, runs) if all(accumulator.starts_well(system, found, run) for run in runs) else None
 
 
 def follow(
@@ -360,7 +345,9 @@ def _release(
             return freed
         state = recode.placed(everything, whole, machine)
         if adds is not None:
-            run = _first_pulses(machine, state, adds)
+            from prover import circle
+
+            run = circle.first_pulses(machine, state, adds, ours)
             return replace(freed, orbit=run, right=accumulator.gets_right(machine, adds, state))
         if state not in done:
             run = follow(machine, state, ours, known, refuted)

@@ -43,15 +43,13 @@ def collect(report: Report, effort: Effort, glitches: bool = True) -> Evidence:
     hold = _within(lambda: _hold(rhythm, effort))
     followed = rhythm.scope != "reset" or hold is not None
     goal = goal_of(spec, [*(orbit.wave() for orbit in rhythm.orbits), *(loop.wave for loop in rhythm.loops)])
-    if rhythm.accumulator is not None:
-        # What it shows has no evidence yet: a certificate leaves that open.
-        return of_machine(rhythm.system, whole, answers)
+    adds = rhythm.accumulator
     found = replace(
         of_machine(rhythm.system, whole, answers),
         reset=hold,
         starts=tuple(track(orbit) for orbit in rhythm.orbits) if followed else (),
-        everywhere=_within(lambda: _everywhere(rhythm, goal, effort)),
-        lassos=_within(lambda: _lassos(report, whole, effort)) or (),
+        everywhere=adds or _within(lambda: _everywhere(rhythm, goal, effort)),
+        lassos=() if adds else _within(lambda: _lassos(report, whole, effort)) or (),
     )
     return _with_glitches(report, whole, found, goal, effort) if glitches else found
 

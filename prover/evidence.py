@@ -10,6 +10,7 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, TypeVar
 
+from prover.accumulator import BEHIND, JOINED, Accumulator
 from prover.path import Beat, Item, Path, Repeat
 from prover.solve import Model
 from prover.system import State
@@ -109,7 +110,7 @@ class Evidence:
     matrix      how all registers are read as one count of steps; None where they are not
     reset       the states that reset leaves, and its release; None where there is none, or where they are not certain
     starts      the runs of the start states, in order
-    everywhere  about all power-up states: the stages of a cover, a ranking, or a list of loops
+    everywhere  about all power-up states: the stages of a cover, a ranking, a list of loops, or an accumulator
     lassos      power-up states that refute something, or that need the longest
     glitches    answers to the questions about what happens within a half-cycle, in the order in which `glitch.find`
                 asks them
@@ -124,7 +125,7 @@ class Evidence:
     matrix: Matrix | None
     reset: Hold | None
     starts: tuple[Track, ...]
-    everywhere: tuple[Layer, ...] | Ranking | Rounds | None
+    everywhere: tuple[Layer, ...] | Ranking | Rounds | Accumulator | None
     lassos: tuple[Lasso, ...]
     glitches: tuple[Model | None, ...]
     pulse: Lasso | None
@@ -188,7 +189,7 @@ def _matrix(of: Matrix) -> Object:
 
 
 def _everywhere(
-    of: tuple[Layer, ...] | Ranking | Rounds | None, track: Callable[[Track], Object]
+    of: tuple[Layer, ...] | Ranking | Rounds | Accumulator | None, track: Callable[[Track], Object]
 ) -> Object | None:
     if of is None:
         return None
@@ -198,7 +199,12 @@ def _everywhere(
         levels = ["".join(map(str, shown)) for shown in of.levels]
         members = [list(states) for states in of.members]
         return {"kind": "loops", "members": members, "levels": levels, "distance": list(of.distance)}
+    if isinstance(of, Accumulator):
+        return {"kind": "accumulator", **{name: getattr(of, name) for name in ACCUMULATOR.split()}}
     return {"kind": "cover", "stages": [_layer(layer, track) for layer in of]}
+
+
+ACCUMULATOR = "register width base modulus stride level arc late behind joined worst slowest"
 
 
 def _layer(layer: Layer, track: Callable[[Track], Object]) -> Object:
@@ -298,7 +304,7 @@ def _read_matrix(value: Any) -> Matrix:
 
 def _read_everywhere(
     value: Any, track: Callable[[Any, str], Track]
-) -> tuple[Layer, ...] | Ranking | Rounds | None:
+) -> tuple[Layer, ...] | Ranking | Rounds | Accumulator | None:
     if value is None:
         return None
     kind = value.get("kind") if isinstance(value, dict) else None
@@ -316,7 +322,34 @@ def _read_everywhere(
         if len(members) != len(levels):
             raise Malformed("levels: not as many as loops")
         return Rounds(members, levels, _numbers(of["distance"], "distance"))
+    if kind == "accumulator":
+        return _read_accumulator(value)
     raise Malformed("everywhere: of no known kind")
+
+
+def _read_accumulator(value: Any) -> Accumulator:
+    of = fields_of(value, "everywhere", f"kind {ACCUMULATOR}")
+    width = number_of(of["width"], "width", 1)
+    modulus = number_of(of["modulus"], "modulus", 2, 1 << width)
+    arc = each_of(of["arc"], "arc", lambda x, where: number_of(x, where, 0, modulus - 1))
+    if len(arc) != 2 or not arc[1] or not isinstance(of["late"], bool):
+        raise Malformed("everywhere: not an arc, or neither late nor not")
+    joined = number_of(of["joined"], "joined", 0, JOINED)
+    behind = number_of(of["behind"], "behind", 0, BEHIND)
+    return Accumulator(
+        register=text_of(of["register"], "register"),
+        width=width,
+        base=number_of(of["base"], "base", 0, (1 << width) - 1),
+        modulus=modulus,
+        stride=number_of(of["stride"], "stride", 1, modulus - 1),
+        level=number_of(of["level"], "level", 0, 1),
+        arc=(arc[0], arc[1]),
+        late=of["late"],
+        behind=behind,
+        joined=joined,
+        worst=number_of(of["worst"], "worst", joined, joined + behind),
+        slowest=_state_or_none(of["slowest"], "slowest"),
+    )
 
 
 def _read_layer(value: Any, where: str, track: Callable[[Any, str], Track]) -> Layer:

@@ -104,8 +104,8 @@ class _Search:
             count += 1
             if count % 1024 == 0:
                 self.effort.say(f"following an orbit, cycle {count}")
-                if self.most is not None and len(self.items) > self.most:
-                    raise OutOfEffort(f"an orbit of more than {self.most} items")
+            if self.most is not None and len(self.items) > self.most:
+                raise OutOfEffort(f"an orbit of more than {self.most} items")
             *middle_list, first = run(*state, *choices)
             middle = tuple(middle_list)
             *after_list, second = run(*middle, *choices)

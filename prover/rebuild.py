@@ -10,8 +10,9 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, replace
 
-from prover import certificate, glitch, linear, path, recode, release, reset, tables
+from prover import accumulator, certificate, glitch, linear, path, recode, release, reset, tables
 from prover import expr as e
+from prover.accumulator import Accumulator
 from prover.certificate import CoverClaim, Obligation, Stage
 from prover.effort import Effort, OutOfEffort
 from prover.errors import InternalError
@@ -26,6 +27,7 @@ from prover.rhythm import (
     Goal,
     Good,
     Loop,
+    Mean,
     Orbit,
     Recovery,
     Rhythm,
@@ -81,11 +83,15 @@ def rebuild(ports: Ports, spec: Spec, evidence: Evidence, effort: Effort) -> Reb
         system=machine, settling=settling, scope=scope, starts=starts, orbits=(), loops=(), complete=False,
         recovery=None, stuck=None, never_stuck=False, open=why,
     ), evidence.starts, owed)  # fmt: skip
+    rhythm = _adding(rhythm, spec, evidence.everywhere, owed)
     rhythm = _with_release(rhythm, ports, spec, whole, evidence.reset, known, owed)
     lassos = [_lasso(whole, machine, lasso, owed) for lasso in evidence.lassos]
     listed = evidence.everywhere.waves() if isinstance(evidence.everywhere, Rounds) else []
     goal = goal_of(spec, [*(run.wave() for run in rhythm.orbits), *listed, *(run.wave() for run in lassos)])
-    rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
+    if rhythm.accumulator is None:
+        rhythm = _everywhere(rhythm, evidence, goal, lassos, machine is whole, owed)
+    elif lassos:
+        raise Rejected("lassos: beside an accumulator, which leaves no state out")
     rhythm = _with_glitches(ports, whole, rhythm, evidence, goal, owed)
     return Rebuilt(whole, rhythm, owed.listed())
 
@@ -150,7 +156,9 @@ def _nothing_known(ports: Ports, whole: System, settling: Settling, scope: Scope
 # -- within a half-cycle -----------------------------------------------------------------------------------
 
 
-def good_of(rhythm: Rhythm, known: tuple[Layer, ...] | Ranking | Rounds | None, goal: Goal) -> Good:
+def good_of(
+    rhythm: Rhythm, known: tuple[Layer, ...] | Ranking | Rounds | Accumulator | None, goal: Goal
+) -> Good:
     """The good states as the evidence has them, or what is looked at in their place."""
     machine = rhythm.system
     if isinstance(known, Ranking):
@@ -159,6 +167,8 @@ def good_of(rhythm: Rhythm, known: tuple[Layer, ...] | Ranking | Rounds | None, 
     loops: list[Orbit] = []
     if isinstance(known, Rounds):
         loops = known.orbits(machine)
+    elif isinstance(known, Accumulator):
+        known = None
     elif known is not None:
         loops = [orbit_of(each.track, machine, "a stage's orbit") for each in known[-1].orbits]
     return of_runs(rhythm, loops, known is not None, goal)
@@ -398,8 +408,12 @@ def _with_release(
 
     waves = {state: run.wave() for state, run in done.items()}
 
+    adds = rhythm.accumulator
+
     def followed(each: release.Freed) -> release.Freed:
-        return each.followed(done.get(places[each]), waves.get(places[each]))
+        state = places[each]
+        right = adds is not None and state in done and accumulator.gets_right(machine, adds, state)
+        return replace(each.followed(done.get(state), waves.get(state)), right=right)
 
     found = replace(
         found,
@@ -446,6 +460,25 @@ def owe_orbits(system: System, orbits: Sequence[Orbit], name: str, owed: Owed) -
             owed.add([Obligation(f"{name}/{number}, {each.name}", each.goal)])
 
 
+def _adding(rhythm: Rhythm, spec: Spec, found: object, owed: Owed) -> Rhythm:
+    """The rhythm with an accumulator that shows the claim of every state, owing that it does."""
+    if not isinstance(found, Accumulator):
+        return rhythm
+    machine = rhythm.system
+    if spec.ratio is None or not spec.mean or (found.register, found.width) not in machine.variables[:-1]:
+        raise Rejected("accumulator: no register, or beside a claim on a mean")
+    if not found.has(Mean(spec.ratio, spec.high)):
+        raise Rejected("accumulator: of another mean, or with several waves")
+    if machine.choices or not all(accumulator.starts_well(machine, found, run) for run in rhythm.orbits):
+        raise Rejected("accumulator: not from every start state")
+    if found.slowest is not None and not accumulator.needs_long(machine, found, found.slowest):
+        raise Rejected("accumulator: a state that is said to need long does not")
+    owed.add(accumulator.obligations(machine, found))
+    recovery = Recovery(found.worst, found.slowest is not None, found.slowest)
+    methods = {"orbit": found.method(), "power-up": found.method()}
+    return replace(rhythm, accumulator=found, recovery=recovery, never_stuck=True, methods=methods)
+
+
 # -- all power-up states -----------------------------------------------------------------------------------
 
 
@@ -486,7 +519,7 @@ def _everywhere(
             owed.add([tables.rounds_at_rest(rhythm.system, known)])
     elif isinstance(known, Ranking):
         bound = _ranking(rhythm.system, known, goal, owed)
-    elif known is not None:
+    elif known is not None and not isinstance(known, Accumulator):
         bound, listed = _cover(rhythm.system, known, goal, owed)
     complete = known is not None
     lost = next((run for run in lassos if _is_lost(run, goal)), None)

@@ -2,17 +2,25 @@
 
 from __future__ import annotations
 
+import json
 import random
+from dataclasses import replace
 from fractions import Fraction
 from math import gcd
 from pathlib import Path
 
 import pytest
 
-from prover import Spec, accumulator, analyse, check, graph
+from prover import Spec, analyse, check, circle, graph
+from prover.accumulator import Accumulator
 from prover.api import read
+from prover.certificate import discharge
+from prover.collect import collect
 from prover.effort import Effort
+from prover.evidence import as_object
+from prover.evidence import read as read_evidence
 from prover.ports import recognise
+from prover.rebuild import Rejected, rebuild
 from prover.rhythm import Mean
 
 # Added to at one edge of the clock, round a circle of M values; the output is a decode, or a flip-flop or two behind it.
@@ -52,7 +60,7 @@ def test_what_single_steps_show_is_what_the_graph_shows(seed: int, tmp_path: Pat
     report = check([source], spec)
     assert report.rhythm.accumulator is None
     system, first = report.rhythm.system, report.rhythm.starts[0].state
-    found = accumulator.look(system, first, Mean(ratio), Effort(60))
+    found = circle.look(system, first, Mean(ratio), Effort(60))
     verdicts = {finding.name: finding.verdict for finding in report.findings}
     if found is None:
         # Then the arc or the rest is too short, or cosets have several waves.
@@ -117,4 +125,44 @@ def test_what_does_not_go_on_by_one_stride_is_not_shown(wrong: str, tmp_path: Pa
     rhythm = analyse.rhythm_of(ports, spec, Effort(60))
     assert graph.fits(rhythm.system)
     for start in rhythm.starts:
-        assert accumulator.look(rhythm.system, start.state, Mean(Fraction(256, 7)), Effort(60)) is None
+        assert circle.look(rhythm.system, start.state, Mean(Fraction(256, 7)), Effort(60)) is None
+
+
+def test_what_is_said_of_an_accumulator_is_rechecked(tmp_path: Path) -> None:
+    source = tmp_path / "adder.v"
+    source.write_text(
+        "module adder (input clk, input rst, output reg q);\n"
+        "  reg [25:0] sum;\n"
+        "  wire [25:0] next = sum + 26'd4321;\n"
+        "  always @(posedge clk)\n"
+        "    if (rst) sum <= 0; else sum <= next >= 26'd50_000_000 ? next - 26'd50_000_000 : next;\n"
+        "  always @(negedge clk) q <= sum >= 26'd12_000_000;\n"
+        "endmodule\n"
+    )
+    spec = Spec(ratio=Fraction(50_000_000, 4321), mean=True, effort=60)
+    report = check([source], spec)
+    evidence = collect(report, Effort(60))
+    found = evidence.everywhere
+    assert isinstance(found, Accumulator)
+    assert read_evidence(json.loads(json.dumps(as_object(evidence)))) == evidence
+
+    def holds(changed: Accumulator) -> bool:
+        try:
+            rebuilt = rebuild(report.ports, spec, replace(evidence, everywhere=changed), Effort(60))
+        except Rejected:
+            return False
+        return all(discharge(owed, Effort(60)) for owed in rebuilt.obligations)
+
+    assert holds(found)
+    begins, size = found.arc
+    assert not holds(replace(found, base=found.base + 1))
+    assert not holds(replace(found, modulus=found.modulus - 1))
+    assert not holds(replace(found, stride=found.stride + 1))
+    assert not holds(replace(found, level=1 - found.level))
+    assert not holds(replace(found, arc=(begins + 1, size)))
+    assert not holds(replace(found, arc=(begins, size + 1)))
+    assert not holds(replace(found, late=not found.late))
+    assert not holds(replace(found, behind=0, worst=found.joined))
+    assert not holds(replace(found, worst=found.worst - 1))
+    assert found.slowest is not None
+    assert not holds(replace(found, slowest=report.rhythm.starts[0].state))
