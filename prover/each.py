@@ -39,7 +39,7 @@ if TYPE_CHECKING:
 ENUMERATED = 64
 """Values up to which each is judged by itself without looking for a proof of all at once."""
 
-FEW, SHARE_OF_FEW, SHARE = 512, 0.1, 0.75
+FEW, SHARE_OF_FEW, SHARE = 512, 0.25, 0.75
 """Values up to which judging each takes no longer than a search; the share of the effort that a proof of all at once
 may take for so few, and for more."""
 

@@ -39,6 +39,11 @@ REMEMBERED = timedelta(days=90)
 """How long a verdict is kept that no divider of the manifest has any more."""
 
 
+RECHECKING = 600.0
+"""Seconds at least for a certificate to be checked again, as for `recheck`: a large one takes longer than it took to
+find."""
+
+
 @dataclass
 class Row:
     """What came of one divider.
@@ -264,7 +269,8 @@ class _Gate:
                 row.kept, row.source = None, "new"
                 return packed(task, content, self.base)
             certificate = self.ledger.text(kept, "certificate")
-            return packed(replace(task, certify=False, recheck=certificate), content, self.base)
+            patient = replace(task.spec, effort=max(task.spec.effort, RECHECKING))
+            return packed(replace(task, spec=patient, certify=False, recheck=certificate), content, self.base)
         except UserError as error:
             if row.kept is not None:
                 raise
