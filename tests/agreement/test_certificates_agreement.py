@@ -4,7 +4,6 @@ alteration passes."""
 from __future__ import annotations
 
 import json
-import os
 import random
 from pathlib import Path
 
@@ -12,6 +11,7 @@ import drup
 import pytest
 from cases_format import Case, Group, cases
 from click.testing import CliRunner
+from long_runs import LONG
 from test_recheck import ROOT, with_one_alteration
 
 from prover import clausal, cli
@@ -28,7 +28,6 @@ MOST_BITS = 64
 ALTERATIONS = 8
 """Alterations tried of each certificate; there are some two hundred certificates."""
 
-LONG = "SUBHARMONIC_LONG" in os.environ
 """All of them, which takes half an hour; else every eighth, and of the wide ones those that take seconds."""
 
 SLOW = ("cascade_three", "cascade_three_eq", "ring_64_twisted_fixed")
@@ -41,7 +40,7 @@ EVERY = [
     for group in case.groups
     if not group.error and not {"--each", "--moving"} & set(group.options)
 ]
-ALL = EVERY if LONG else [pair for pair in EVERY[::8] if pair[0].path.stem not in SLOW]
+ALL = EVERY if LONG else [pair for pair in EVERY[::12] if pair[0].path.stem not in SLOW]
 
 
 @pytest.fixture(autouse=True)

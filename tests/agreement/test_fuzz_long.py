@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-import os
 from collections import Counter
 from pathlib import Path
 
 import pytest
+from long_runs import LONG
 from test_fuzz import FEW, survives
 
-MANY = 2_000 if "SUBHARMONIC_LONG" in os.environ else 600
+MANY = 2_000 if LONG else 400
 BATCH = 200
 
 

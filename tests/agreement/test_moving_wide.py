@@ -8,6 +8,7 @@ from pathlib import Path
 
 import pytest
 from cases_format import CASES
+from long_runs import LONG
 from test_moves import asked
 
 from prover import Spec, check, moves
@@ -75,7 +76,10 @@ endmodule
 }
 
 
-@pytest.mark.parametrize("width", [8, 24])
+WIDE = ["decoded", "synchronised"]
+
+
+@pytest.mark.parametrize("width", [8, 24] if LONG else [8])
 @pytest.mark.parametrize(
     "path", [GAUGE / "sample_wrap.v", GAUGE / "sample_at_least.v", GAUGE / "sample_by_div.v"]
 )
@@ -87,7 +91,7 @@ def test_a_safe_divider_is_proved_for_every_value(path: Path, width: int) -> Non
 
 
 @pytest.mark.parametrize(
-    ("name", "width"), [*((name, 8) for name in TEXTS), ("decoded", 24), ("synchronised", 24)]
+    ("name", "width"), [*((name, 8) for name in TEXTS), *((name, 24) for name in WIDE if LONG)]
 )
 def test_other_ways_to_take_a_divisor_over_are_proved(name: str, width: int, tmp_path: Path) -> None:
     text, pulses, scale = TEXTS[name]

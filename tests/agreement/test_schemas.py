@@ -18,6 +18,7 @@ import pytest
 from agreement.test_cases_agreement import spec_of
 from cases_format import CASES, Case, cases, read_case
 from jsonschema import Draft7Validator
+from long_runs import LONG
 from lxml import etree
 
 from prover.api import check
@@ -70,7 +71,7 @@ def found(case: Case) -> Iterator[Outcome]:
 
 
 EVERY = [*cases(), *(read_case(path) for path in sorted((CASES / "wide").glob("*.v")))]
-ALL = EVERY if "SUBHARMONIC_LONG" in os.environ else EVERY[::3]
+ALL = EVERY if LONG else EVERY[::4]
 """Every case in the long run, else every third."""
 
 

@@ -20,6 +20,7 @@ import pytest
 from agreement.simulator import delay_gates
 from agreement.test_cases_agreement import spec_of
 from cases_format import CASES, Case, Group, cases, read_case
+from long_runs import LONG
 from vcdvcd import VCDVCD
 
 from prover.api import check
@@ -241,11 +242,12 @@ def refuted(case: Case) -> list[Group]:
     return out
 
 
-ALL = [
+EVERY = [
     pytest.param(case, group, id=f"{case.name}: {shlex.join(group.options)}")
     for case in [*cases(), *(read_case(path) for path in sorted((CASES / "wide").glob("*.v")))]
     for group in refuted(case)
 ]
+ALL = EVERY if LONG else EVERY[::2]
 
 
 def numbers(text: str) -> list[str]:
