@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from properties.glitch_free import facts_of
+from properties.moves import judged
 from prover.domain import among
 from prover.findings import Fact, Finding
 from prover.spec import Spec
@@ -27,24 +27,9 @@ def judge(found: Moves, spec: Spec) -> Finding:
         f"{told}, no pulse is shorter than nominal, the output parks while the divider is stopped, and "
         "the ratio comes back"
     )
-    facts: dict[str, Fact] = {"inputs": [name]}
-    if found.trace is not None:
-        facts |= facts_of(found.glitch) if found.glitch is not None else {}
-        return Finding(NAME, "refuted", claim, found.trace.text, found.method, facts=facts, trace=found.trace)
-    if not found.proved or found.back is None:
-        return Finding(NAME, "open", claim, found.open, found.method, facts=facts)
-    facts |= {"back_half_cycles": found.back, "exact": found.exact, "parked": list(found.parked)}
-    facts["park_half_cycles"] = found.still
-    word = "exactly" if found.exact else "at most"
-    back = f"the ratio is back {word} {found.back} half-cycles after the last move"
-    says = f"no short pulse; {_parked(name, found)}; {back}"
-    if not found.question.steady:
-        says += "; what happens within a half-cycle aside, of which settling and glitch-free tell"
-    if found.owed:
-        says += f"; under {len(found.owed)} timing obligation{'s' * (len(found.owed) != 1)}"
-    return Finding(
-        NAME, "proved", claim, says, found.method, f"{found.back} half-cycles", facts, obligations=found.owed
-    )
+    facts: dict[str, Fact] = {"parked": list(found.parked), "park_half_cycles": found.still}
+    says = f"no short pulse; {_parked(name, found)}; the ratio is back"
+    return judged(NAME, claim, found, says, facts)
 
 
 def _parked(name: str, found: Moves) -> str:

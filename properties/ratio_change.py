@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from properties.glitch_free import facts_of
+from properties.moves import judged
 from prover.domain import among
-from prover.findings import Fact, Finding
+from prover.findings import Finding
 from prover.spec import Spec
 
 if TYPE_CHECKING:
@@ -24,20 +24,4 @@ def judge(found: Moves, spec: Spec) -> Finding:
         f"{told}, no pulse is shorter than the shortest or longer than the longest nominal one of the "
         "values so far, and the last ratio comes to hold"
     )
-    facts: dict[str, Fact] = {"inputs": list(found.question.moving)}
-    if found.trace is not None:
-        facts |= facts_of(found.glitch) if found.glitch is not None else {}
-        return Finding(NAME, "refuted", claim, found.trace.text, found.method, facts=facts, trace=found.trace)
-    if not found.proved or found.back is None:
-        return Finding(NAME, "open", claim, found.open, found.method, facts=facts)
-    facts |= {"back_half_cycles": found.back, "exact": found.exact}
-    word = "exactly" if found.exact else "at most"
-    back = f"the new ratio holds {word} {found.back} half-cycles after the last move"
-    says = f"no pulse is too short or too long; {back}"
-    if not found.question.steady:
-        says += "; what happens within a half-cycle aside, of which settling and glitch-free tell"
-    if found.owed:
-        says += f"; under {len(found.owed)} timing obligation{'s' * (len(found.owed) != 1)}"
-    return Finding(
-        NAME, "proved", claim, says, found.method, f"{found.back} half-cycles", facts, obligations=found.owed
-    )
+    return judged(NAME, claim, found, "no pulse is too short or too long; the new ratio holds", {})

@@ -21,7 +21,7 @@ from itertools import accumulate, pairwise
 from math import ceil, floor, gcd
 
 from prover import expr as e
-from prover.certificate import Obligation
+from prover.certificate import Obligation, onwards
 from prover.expr import Expr
 from prover.rhythm import Goal, Mean, Orbit
 from prover.system import State, System
@@ -134,21 +134,26 @@ class Accumulator:
 
 
 class Steps:
-    """The states some half-cycles on, as expressions over one at the start."""
+    """The states and outputs some half-cycles on, as expressions over one at the start."""
 
     def __init__(self, system: System) -> None:
         self.system = system
         self.states = [[e.var(name, width) for name, width in system.variables]]
+        self.outputs: list[Expr] = []
 
     def __getitem__(self, count: int) -> list[Expr]:
-        while len(self.states) <= count:
-            values = dict(zip(self.system.names, self.states[-1], strict=True))
-            self.states.append(e.substitute(list(self.system.step), values))
+        self._follow(count)
         return self.states[count]
 
     def output(self, count: int) -> Expr:
-        values = dict(zip(self.system.names, self[count], strict=True))
-        return e.substitute([self.system.output], values)[0]
+        self._follow(count + 1)
+        return self.outputs[count]
+
+    def _follow(self, count: int) -> None:
+        while len(self.states) <= count:
+            *after, level = onwards(self.system, self.states[-1], len(self.outputs))
+            self.states.append(after)
+            self.outputs.append(level)
 
 
 def obligations(system: System, found: Accumulator) -> list[Obligation]:

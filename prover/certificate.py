@@ -618,30 +618,42 @@ def _is_at(system: System, state: Sequence[Expr], beat: State, axes: Axes) -> Ex
     may then fail, but nothing false passes."""
     shift = [e.const(value, width) for value, (_, width) in zip(beat, system.variables, strict=True)]
     within = e.TRUE
+    first = list(shift)
+    strides = [stride for _, stride in axes]
     for i, (count, stride) in enumerate(axes):
-        others = [other for j, (_, other) in enumerate(axes) if j != i]
-        free = [
-            (stride[r] & -stride[r], r)
-            for r in range(len(stride))
-            if stride[r] and not any(other[r] for other in others)
-        ]
-        if not free:
+        index = round_at(system, state, first, strides, i)
+        if index is None:
             return e.FALSE
-        unit, register = min(free)
-        width = system.variables[register][1]
-        # stride · index = difference (mod 2^width): divide by the power of two, then by the odd rest.
-        twos = unit.bit_length() - 1
-        difference = e.bvsub(state[register], e.const(beat[register], width))
-        exact = e.extract(difference, width - 1, twos)
-        inverse = pow(stride[register] >> twos, -1, 1 << (width - twos))
-        index = e.bvmul(exact, e.const(inverse, width - twos))
-        if count < 1 << (width - twos):
-            within = e.bvand(within, e.bvult(index, e.const(count, width - twos)))
+        if count < 1 << index.width:
+            within = e.bvand(within, e.bvult(index, e.const(count, index.width)))
         for r, (_, w) in enumerate(system.variables):
             if stride[r]:
                 moved = e.bvmul(e.resize(index, w, False), e.const(stride[r], w))
                 shift[r] = e.bvadd(shift[r], moved)
     return e.conj([within, *(e.eq(a, b) for a, b in zip(state, shift, strict=True))])
+
+
+def round_at(
+    system: System, state: Sequence[Expr], first: Sequence[Expr], strides: Sequence[State], number: int
+) -> Expr | None:
+    """In which round of one of the repeats around a place a state is, if `first` is the place in the first round of
+    all: read from a register that no other repeat moves. None where there is no such register."""
+    stride = strides[number]
+    others = [other for i, other in enumerate(strides) if i != number]
+    free = [
+        (stride[r] & -stride[r], r)
+        for r in range(len(stride))
+        if stride[r] and not any(other[r] for other in others)
+    ]
+    if not free:
+        return None
+    unit, register = min(free)
+    width = system.variables[register][1]
+    # stride · index = difference (mod 2^width): divide by the power of two, then by the odd rest.
+    twos = unit.bit_length() - 1
+    exact = e.extract(e.bvsub(state[register], first[register]), width - 1, twos)
+    inverse = pow(stride[register] >> twos, -1, 1 << (width - twos))
+    return e.bvmul(exact, e.const(inverse, width - twos))
 
 
 def reset_goal(system: System, level: int, count: int, wanted: Sequence[State]) -> Obligation:

@@ -68,12 +68,12 @@ def first_pulses(system: System, state: State, found: Accumulator, effort: Effor
     """The beginning of a run whose round is not followed: its first few pulses, every step checked."""
     room = found.worst + 8 * ceil(found.mean)
     widths = tuple(width for _, width in system.variables)
-    lead: path.Path = ()
     if room <= MOST_BEATS:
-        at = state
+        beats: list[path.Item] = []
         for _ in range(room):
-            lead, at = (*lead, path.Beat(at, system.out(at))), system.next(at)
-        lead = path.folded(lead, widths)
+            beats.append(path.Beat(state, system.out(state)))
+            state = system.next(state)
+        lead = path.folded(beats, widths)
     else:
         run = orbit.trace(system, state, effort, most=MOST_ITEMS)
         lead, _ = path.split((*run.lead, *run.loop), room, widths)

@@ -17,7 +17,7 @@ from itertools import pairwise
 
 from prover import expr as e
 from prover import path
-from prover.certificate import Obligation, onwards
+from prover.certificate import Obligation, onwards, round_at
 from prover.certificate import part as part_of
 from prover.design import Design
 from prover.expr import Expr
@@ -719,23 +719,12 @@ def is_at(system: System, state: Sequence[Expr], point: Sequence[Poly], axes: Ax
     wanted = words(system, point)
     within = e.TRUE
     moves: list[tuple[Expr, State]] = []
+    strides = [stride for _, stride in axes]
     for i, (count, stride) in enumerate(axes):
-        others = [other for j, (_, other) in enumerate(axes) if j != i]
-        free = [
-            (stride[r] & -stride[r], r)
-            for r in range(len(stride))
-            if stride[r] and not any(other[r] for other in others)
-        ]
-        if not free:
+        index = round_at(system, state, wanted, strides, i)
+        if index is None:
             return e.FALSE
-        unit, register = min(free)
-        width = system.variables[register][1]
-        # stride · index = difference (mod 2^width): divide by the power of two, then by the odd rest.
-        twos = unit.bit_length() - 1
-        exact = e.extract(e.bvsub(state[register], wanted[register]), width - 1, twos)
-        inverse = pow(stride[register] >> twos, -1, 1 << (width - twos))
-        index = e.bvmul(exact, e.const(inverse, width - twos))
-        size = max(count.size, width + 1)
+        size = max(count.size, index.width + 1)
         within = e.bvand(within, e.bvslt(e.resize(index, size, False), count.word(size)))
         moves.append((index, stride))
     pairs = zip(state, words(system, point, moves), strict=True)

@@ -87,16 +87,7 @@ def _subjects(stated: dict[str, Any]) -> Subjects:
 
 
 def _subject(of: dict[str, Any]) -> Subject:
-    spec = Spec(
-        module=of["module"],
-        clock=of["clock"],
-        reset=of["reset"],
-        output=of["output"],
-        parameters=of["parameters"],
-        holds=of["holds"],
-        defines=of["defines"],
-        include=tuple(of["include"]),
-    )
+    spec = Spec(**recheck.reading(of))
     digests = tuple((file["path"], file["sha256"]) for file in of["read"])
     subject = Subject(spec, tuple(of["files"]), tuple(of["include"]), digests)
     recheck.check_kinds(subject)

@@ -239,6 +239,12 @@ def _judged(made: Rebuilt, spec: Spec) -> tuple[Finding, ...]:
     return judge_all(made.rhythm, spec)
 
 
+def reading(options: Mapping[str, Any]) -> dict[str, Any]:
+    """The options of a certificate that the reading of a divider hangs on, as a Spec takes them."""
+    same = ("module", "clock", "reset", "output", "parameters", "holds", "defines")
+    return {**{name: options[name] for name in same}, "include": tuple(options["include"])}
+
+
 def _subject(stated: dict[str, Any]) -> Subject:
     """What the certificate says that it is about, and that it is of one piece."""
     try:
@@ -247,14 +253,7 @@ def _subject(stated: dict[str, Any]) -> Subject:
             ratio=Fraction(claim["ratio"]),
             mean=claim["mean"] is True,
             high=claim["high_half_cycles"],
-            module=options["module"],
-            clock=options["clock"],
-            reset=options["reset"],
-            output=options["output"],
-            parameters=options["parameters"],
-            holds=options["holds"],
-            defines=options["defines"],
-            include=tuple(options["include"]),
+            **reading(options),
             start=claim["start"],
             within=claim["within"],
             reset_cycles=claim["reset_cycles"],

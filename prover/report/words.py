@@ -6,14 +6,17 @@ from collections.abc import Iterator
 from fractions import Fraction
 from itertools import pairwise
 from math import ceil, floor
+from typing import TYPE_CHECKING
 
-from prover.accumulator import Accumulator
 from prover.arrival import Glitch
 from prover.each import ValueRow, row_text
 from prover.facts import number
 from prover.findings import Fact, Finding, Report
 from prover.rhythm import Loop, Orbit, Rhythm, Wave
 from prover.system import State
+
+if TYPE_CHECKING:
+    from prover.accumulator import Accumulator
 
 MOST_RUNS = 8
 """Runs of a wave that are spelt out."""
