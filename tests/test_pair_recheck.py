@@ -11,10 +11,9 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from click.testing import CliRunner, Result
-from test_recheck import with_one_alteration
+from test_recheck import run, with_one_alteration, written
 
-from prover import Pairing, Spec, cli, compare, pair_evidence
+from prover import Pairing, Spec, compare, pair_evidence
 from prover.certificate import discharge
 from prover.compared import Comparison
 from prover.effort import Effort
@@ -61,16 +60,6 @@ def made(name: str) -> tuple[Comparison, str]:
         assert text is not None
         _made[name] = found, text
     return _made[name]
-
-
-def written(folder: Path, text: str) -> Path:
-    path = folder / "certificate.json"
-    path.write_text(text, encoding="utf-8", newline="\n")
-    return path
-
-
-def run(*arguments: str) -> Result:
-    return CliRunner().invoke(cli.main, list(arguments), catch_exceptions=False)
 
 
 @pytest.mark.parametrize("name", SUBJECTS)

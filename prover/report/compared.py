@@ -6,13 +6,12 @@ from collections.abc import Iterator, Sequence
 
 from prover.compared import Apart, Comparison, Together
 from prover.errors import InternalError
-from prover.facts import LIMITS
 from prover.joint import Joint
 from prover.pair import SIDES
 from prover.ports import Ports
 from prover.report import apart, words
 from prover.report.look import Look, finished
-from prover.report.terminal import EXTENT, WIDTH, indented, not_drawn, wrapped
+from prover.report.terminal import EXTENT, WIDTH, indented, not_drawn, small_print, wrapped
 from prover.report.trace import drawing
 from prover.report.vcd import moves
 from prover.report.wave import ASCII, UNICODE, Style, draw
@@ -26,7 +25,7 @@ def render(comparison: Comparison, look: Look, traces: Sequence[str] = ()) -> st
         _header(comparison),
         _found(comparison),
         _different(comparison, UNICODE if look.unicode else ASCII),
-        _small_print(comparison, traces),
+        small_print(comparison.notes, comparison.assumptions, traces),
     ):
         body = list(section)
         if body:
@@ -100,15 +99,6 @@ def _states(shown: Apart) -> Iterator[str]:
         yield words.fact(dict(shown.inputs))
     for side, orbit, system in zip(SIDES, shown.orbits, shown.systems, strict=True):
         yield f"{side}: {words.fact(dict(system.describe(orbit.start)))}"
-
-
-def _small_print(comparison: Comparison, traces: Sequence[str]) -> Iterator[str]:
-    for note in comparison.notes:
-        yield from wrapped(f"note: {note}", "")
-    for trace in traces:
-        yield f"trace written to {trace}"
-    yield from wrapped("assumed: " + "; ".join(comparison.assumptions), "")
-    yield from wrapped(LIMITS, "")
 
 
 def dump(comparison: Comparison) -> str | None:

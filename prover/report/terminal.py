@@ -46,7 +46,7 @@ def render(report: Report, look: Look = PLAIN, traces: Sequence[str] = ()) -> st
         _loops(report),
         _facts(report),
         _counterexamples(report, style),
-        _small_print(report, traces),
+        small_print(report.notes, report.assumptions, traces),
         _last(report),
     ):
         body = list(section)
@@ -304,12 +304,13 @@ def _micro_steps(rhythm: Rhythm, unsettled: Unsettled) -> Iterator[str]:
 # -- small print -------------------------------------------------------------------------------------------
 
 
-def _small_print(report: Report, traces: Sequence[str]) -> Iterator[str]:
-    for note in report.notes:
+def small_print(notes: Sequence[str], assumptions: Sequence[str], traces: Sequence[str]) -> Iterator[str]:
+    """What closes a report: remarks, the waves that were written, what is assumed, and the limits of a proof."""
+    for note in notes:
         yield from wrapped(f"note: {note}", "")
     for trace in traces:
         yield f"trace written to {trace}"
-    yield from wrapped("assumed: " + "; ".join(report.assumptions), "")
+    yield from wrapped("assumed: " + "; ".join(assumptions), "")
     yield from wrapped(LIMITS, "")
 
 
